@@ -1,0 +1,41 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L2 (model). The sites: one or two arms of a volume lattice, or a uniform grid in ln v, and their distribution
+ * over ranks. Knows L0, L1. */
+#ifndef EBBTURN_LATTICE_H
+#define EBBTURN_LATTICE_H
+
+#include "ebbturn/operators.h"
+
+#include <petscsys.h>
+
+/* Global index i ascending in v. Arm 0 (right): v = sector + 4n, n = 0..sites[0]-1, global index sites[1] + n.
+ * Arm 1 (left; empty on half lattices): v = -(4 - sector) - 4n, global index sites[1] - 1 - n.
+ * On both arms |v| = first + 4n and the operator reads alike in |v|; the crossing link joins the two first sites. */
+struct ebb_lattice {
+  const struct ebb_prescription *prescription;
+  double sector;
+  bool half;           /* one arm */
+  double first[2];     /* |v| of each arm's first site */
+  PetscInt sites[2];   /* per arm */
+  double cross;        /* C of the crossing link (0 on half lattices) */
+  double edge;         /* C below the first site kept in its diagonal (half lattices only) */
+  double lnv_min, dx;  /* grid in ln v (prescription->grid): v_i = exp(lnv_min + i dx), i < sites[0] */
+  PetscInt begin, end; /* this rank's global indices [begin, end) */
+};
+
+PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, double sector, PetscInt sites, MPI_Comm comm,
+                                struct ebb_lattice *lattice);
+PetscErrorCode ebb_lattice_make_grid(const struct ebb_prescription *prescription, double lnv_min, double lnv_max,
+                                     PetscInt points, MPI_Comm comm, struct ebb_lattice *lattice);
+
+PetscInt ebb_lattice_size(const struct ebb_lattice *lattice);              /* sites of all arms */
+double ebb_lattice_v(const struct ebb_lattice *lattice, PetscInt global); /* signed v */
+double ebb_lattice_weight(const struct ebb_lattice *lattice, PetscInt global);
+/* Edges of the cell of a site, in |v|: |v| -+ 2, or exp(x -+ dx/2) on a grid. */
+void ebb_lattice_cell(const struct ebb_lattice *lattice, PetscInt global, double *low, double *high);
+/* This rank's sites on an arm: n in [*begin, *end). */
+void ebb_lattice_local(const struct ebb_lattice *lattice, int arm, PetscInt *begin, PetscInt *end);
+PetscInt ebb_lattice_global(const struct ebb_lattice *lattice, int arm, PetscInt n);
+
+#endif

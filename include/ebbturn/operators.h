@@ -1,0 +1,51 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L1 (operators). The catalogue of prescriptions: rows of the constraint as pure functions of doubles.
+ * No PETSc, no allocation, cannot fail. Knows L0 only. */
+#ifndef EBBTURN_OPERATORS_H
+#define EBBTURN_OPERATORS_H
+
+#include <stdbool.h>
+#include <stddef.h>
+
+/* Every flat operator with a scalar clock has the form (v on the lattice epsilon + 4Z, Theta in units of A0 = 3 pi G)
+ *
+ *     (Theta psi)(v) = B(v)^{-1/2} [ C(v) (x(v) - x(v+4)) + C(v-4) (x(v) - x(v-4)) ],   x = psi/sqrt(B)
+ *
+ * with a measure B and a hop weight C: a positive quadratic form sum_v C(v) |x(v+4) - x(v)|^2. */
+struct ebb_prescription {
+  const char *name;
+  const char *title;
+  const char *formula; /* one or two lines of plain text */
+  const char *source;
+  const char *bibtex;
+  bool continuum; /* a stand-in for the continuum (Wheeler-DeWitt) operator: a turning point is never physical here */
+  bool grid;      /* lives on a uniform grid in ln v instead of a volume lattice (wdw); measure and hop are NULL */
+  bool one_orientation; /* no hop crosses v = 0: a half lattice in every sector */
+  bool exact_law;       /* v obeys the two-exponential law exactly (solvable ordering, sectors 2 and 4) */
+  double (*measure)(double v); /* B(v), v > 0; even in v */
+  double (*hop)(double v);     /* C(v) of the link v -> v + 4, any real v; C(-v - 4) = C(v) where both orientations couple */
+  /* Link weight below the first site of a half lattice that stays in the first diagonal element although the hop leaves
+   * the lattice; 0 where the hop vanishes or, for aps at sector 4, where v = 0 is eliminated (even sector). */
+  double (*edge)(double sector);
+  /* Large-v expansions in 1/v: B(v) = (1/v) sum_j b[j] v^-j,  C(v) = v sum_j c[j] v^-j, j = 0..terms-1. */
+  void (*measure_series)(size_t terms, double b[]);
+  void (*hop_series)(size_t terms, double c[]);
+};
+
+size_t ebb_prescriptions(void);
+const struct ebb_prescription *ebb_prescription_at(size_t index);
+const struct ebb_prescription *ebb_prescription_find(const char *name); /* NULL when there is none */
+
+/* True where the sector is a half lattice v = epsilon + 4n, n >= 0; false: epsilon + 4Z, both orientations coupled. */
+bool ebb_prescription_half(const struct ebb_prescription *p, double sector);
+
+/* Matrix elements in units of A0 on a half lattice of the given sector or (half = false) on epsilon + 4Z.
+ * v: a lattice value. diagonal = theta(v, v), offdiagonal = theta(v, v + 4). */
+double ebb_prescription_diagonal(const struct ebb_prescription *p, bool half, double sector, double v);
+double ebb_prescription_offdiagonal(const struct ebb_prescription *p, double v);
+
+/* |(v+1)|^{1/3} - |v-1|^{1/3}| evaluated without cancellation at large v. */
+double ebb_cube_root_step(double v);
+
+#endif

@@ -1,0 +1,84 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L0 (base). The settings of a model as plain values, and the schema: one row per setting that drives parsing,
+ * range checks, help, `explain`, JSON and the HDF5 attributes. Knows no file format and no physics beyond the rows. */
+#ifndef EBBTURN_SETTINGS_H
+#define EBBTURN_SETTINGS_H
+
+#include "ebbturn/problems.h"
+
+#include <stdbool.h>
+#include <stddef.h>
+#include <stdio.h>
+
+enum { EBB_NAME_MAX = 64, EBB_PATH_MAX = 1024, EBB_TITLE_MAX = 256, EBB_LEVELS_MAX = 32, EBB_COMPONENTS_MAX = 16 };
+
+/* Bits of output.keep. */
+enum ebb_keep { EBB_KEEP_MOMENTS = 1, EBB_KEEP_QUANTILES = 2, EBB_KEEP_PROBABILITY = 4, EBB_KEEP_STATE = 8 };
+
+struct ebb_gravity_settings {
+  char prescription[EBB_NAME_MAX];
+  double immirzi;
+  double polymer_scale; /* always set after ebb_settings_resolve; NAN before it when not given */
+  double area_gap;      /* NAN when not given; at most one of polymer_scale and area_gap may be given */
+  double newton;
+  double sector; /* epsilon in (0, 4] */
+  char curvature[EBB_NAME_MAX];
+  double cosmological_constant;
+};
+
+struct ebb_clock_settings {
+  char kind[EBB_NAME_MAX];
+  double from, to; /* NAN when not given */
+  int samples;
+};
+
+struct ebb_state_settings {
+  char profile[EBB_NAME_MAX];
+  double momentum;        /* centre of the Gaussian in p_phi */
+  double relative_spread; /* sigma_p/momentum */
+  double bounce_at;       /* gaussian_momentum */
+  double squeeze;         /* gaussian_momentum */
+  char channel[EBB_NAME_MAX]; /* right | left: full lattices */
+  double v0;              /* gaussian_lnv (INFINITY allowed), gaussian_volume */
+  double at;              /* clock value at which the profile is given */
+  char branch[EBB_NAME_MAX]; /* contracting | expanding | both (both: wdw only) */
+  double spread, b0, chirp;  /* gaussian_volume */
+  double v, density;         /* from_effective; density in units of 1/G^2 */
+  double lnv0;               /* wdw */
+  char file[EBB_PATH_MAX];   /* profile `file`, relative to the model's folder; stored as given */
+  double weight[2];          /* complex weight (re, im) of a component of a superposition */
+  struct ebb_state_settings *component; /* [components], owned; NULL unless profile is superposition */
+  size_t components;
+};
+
+struct ebb_lattice_settings {
+  double volume_max;     /* largest v (not physical volume) of the lattice; 0 = auto */
+  int points;            /* 0 = not given; N: a wall after N sites (wdw: number of grid points) */
+  double lnv_min, lnv_max; /* wdw; NAN when not given */
+};
+
+struct ebb_numerics_settings {
+  char propagator[EBB_NAME_MAX]; /* auto | modes | eigenpairs | chebyshev | krylov */
+  double tolerance;
+};
+
+struct ebb_output_settings {
+  char file[EBB_PATH_MAX]; /* as given, relative to the model's folder; empty = <model name>.h5 beside the model */
+  unsigned keep;           /* bits of enum ebb_keep */
+  int every;               /* keep every n-th sample's state */
+  double quantile[EBB_LEVELS_MAX];
+  size_t quantiles;
+};
+
+struct ebb_settings {
+  char title[EBB_TITLE_MAX];
+  struct ebb_gravity_settings gravity;
+  struct ebb_clock_settings clock;
+  struct ebb_state_settings state;
+  struct ebb_lattice_settings lattice;
+  struct ebb_numerics_settings numerics;
+  struct ebb_output_settings output;
+};
+
+#endif
