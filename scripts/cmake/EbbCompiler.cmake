@@ -1,0 +1,26 @@
+# SPDX-License-Identifier: BSD-2-Clause
+#
+# How every file of the project is compiled: target ebb_options.
+
+set(CMAKE_C_STANDARD 17)
+set(CMAKE_C_STANDARD_REQUIRED ON)
+set(CMAKE_C_EXTENSIONS OFF)
+
+if(EBB_NATIVE)
+  set(CMAKE_C_FLAGS_RELEASE "-O3 -march=native -DNDEBUG")
+else()
+  set(CMAKE_C_FLAGS_RELEASE "-O2 -DNDEBUG")
+endif()
+# -Og, not -O0: PETSc's flags carry _FORTIFY_SOURCE, which glibc refuses without optimisation.
+set(CMAKE_C_FLAGS_DEBUG "-Og -g")
+
+add_library(ebb_options INTERFACE)
+# One rounding per operation: a contracted multiply-add makes results depend on the compiler.
+target_compile_options(ebb_options INTERFACE -Wall -Wextra -Wpedantic -ffp-contract=off $<$<BOOL:${EBB_WERROR}>:-Werror>)
+# POSIX 2008 and M_PI beside strict C17.
+target_compile_definitions(ebb_options INTERFACE _XOPEN_SOURCE=700 "EBB_VERSION=\"${PROJECT_VERSION}\"")
+
+if(EBB_SANITIZE)
+  add_compile_options(-fsanitize=address,undefined -fno-sanitize-recover=undefined -fno-omit-frame-pointer -g)
+  add_link_options(-fsanitize=address,undefined)
+endif()
