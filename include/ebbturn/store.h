@@ -6,7 +6,13 @@
  * A result is written as PATH.part and renamed to PATH by ebb_store_commit, so that a file of that name is never half
  * written. All functions here are collective on the communicator given at creation, and an error on any rank is
  * returned on every rank. Object times are off, creation order is not tracked, every dataset has its fill value (NaN for doubles) written, the
- * library version bound is V110: equal runs give equal bytes outside /provenance. */
+ * library version bound is V110: equal runs give equal bytes outside /provenance.
+ *
+ * Failures of files (missing, damaged, refused, disk full) are told without PETSc's trace: the functions return
+ * PETSC_ERR_FILE_OPEN, _READ or _WRITE, the same on every rank, and ebb_store_reason gives the sentence to print.
+ * The first failure of a write ends the store: later calls return its code at once, commit removes PATH.part.
+ *
+ * communicator MPI_COMM_NULL: one process, which need not have started MPI or PETSc (`show`). */
 #ifndef EBBTURN_STORE_H
 #define EBBTURN_STORE_H
 
@@ -30,6 +36,14 @@ struct ebb_dataset {
   bool is_complex;       /* compound {r, i}, the committed type "/complex128" */
 };
 
+/* The sentence about the last file failure, without "error:" and without a full stop; false where there was none since
+ * the last create or open. The text lives until the next call. Not collective. */
+bool ebb_store_reason(const char **text);
+/* For PetscPushErrorHandler: silent for file failures that have a reason, PETSc's trace for everything else. With it,
+ * PetscCall may carry a file failure up to the function that prints it. */
+PetscErrorCode ebb_store_error_handler(MPI_Comm comm, int line, const char *function, const char *file,
+                                       PetscErrorCode code, PetscErrorType type, const char *message, void *context);
+
 /* Opens PATH.part for writing. Fails (PETSC_ERR_FILE_OPEN, message names the path and the reason) when the folder is not
  * writable, or when PATH exists and force is false: both are looked at before anything is written. */
 PetscErrorCode ebb_store_create(MPI_Comm comm, const char *path, bool force, struct ebb_store **store);
@@ -45,7 +59,7 @@ PetscErrorCode ebb_store_destroy(struct ebb_store **store);
 PetscErrorCode ebb_store_set_text(struct ebb_store *store, const char *object, const char *name, const char *value);
 PetscErrorCode ebb_store_set_real(struct ebb_store *store, const char *object, const char *name, double value);
 PetscErrorCode ebb_store_set_integer(struct ebb_store *store, const char *object, const char *name, long long value);
-/* Readers: *found = false (and value untouched) where the attribute is missing. text is PetscMalloc'ed. */
+/* Readers: *found = false (and value untouched) where the attribute is missing or of another type. text is PetscMalloc'ed. */
 PetscErrorCode ebb_store_get_text(struct ebb_store *store, const char *object, const char *name, char **text, bool *found);
 PetscErrorCode ebb_store_get_real(struct ebb_store *store, const char *object, const char *name, double *value, bool *found);
 
@@ -66,8 +80,17 @@ PetscErrorCode ebb_store_extent(struct ebb_store *store, const char *path, int *
 PetscErrorCode ebb_store_read(struct ebb_store *store, const char *path, const hsize_t start[], const hsize_t count[],
                               void *values);
 
-/* Calls visit for every group and dataset in alphabetical order (path, is_dataset). */
+/* As ebb_store_extent, with what the values are. Text datasets are only recognised, not read. */
+enum ebb_kind { EBB_KIND_REAL, EBB_KIND_COMPLEX, EBB_KIND_TEXT, EBB_KIND_OTHER };
+PetscErrorCode ebb_store_inspect(struct ebb_store *store, const char *path, enum ebb_kind *kind, int *rank,
+                                 hsize_t extent[], bool *found);
+
+/* Calls visit for every group and dataset in alphabetical order (path, is_dataset); without the named type and without
+ * the root's netCDF dimensions (store_scale.c). Stops at the first non-zero return and returns it. */
 PetscErrorCode ebb_store_walk(struct ebb_store *store, PetscErrorCode (*visit)(const char *path, bool is_dataset, void *context),
                               void *context);
+/* The same for the names of an object's attributes. */
+PetscErrorCode ebb_store_walk_attributes(struct ebb_store *store, const char *object,
+                                         PetscErrorCode (*visit)(const char *name, void *context), void *context);
 
 #endif
