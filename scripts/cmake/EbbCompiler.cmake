@@ -1,6 +1,6 @@
 # SPDX-License-Identifier: BSD-2-Clause
 #
-# How every file of the project is compiled: target ebb_options.
+# How every file of the project is compiled: target ebb_options (libraries), ebb_program (executables).
 
 set(CMAKE_C_STANDARD 17)
 set(CMAKE_C_STANDARD_REQUIRED ON)
@@ -20,7 +20,12 @@ target_compile_options(ebb_options INTERFACE -Wall -Wextra -Wpedantic -ffp-contr
 # POSIX 2008 and M_PI beside strict C17.
 target_compile_definitions(ebb_options INTERFACE _XOPEN_SOURCE=700 "EBB_VERSION=\"${PROJECT_VERSION}\"")
 
+# Executables link ebb_program instead.
+add_library(ebb_program INTERFACE)
+target_link_libraries(ebb_program INTERFACE ebb_options)
+
 if(EBB_SANITIZE)
   add_compile_options(-fsanitize=address,undefined -fno-sanitize-recover=undefined -fno-omit-frame-pointer -g)
   add_link_options(-fsanitize=address,undefined)
+  target_sources(ebb_program INTERFACE "${PROJECT_SOURCE_DIR}/tests/support/keep_loaded.c")
 endif()
