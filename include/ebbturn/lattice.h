@@ -24,12 +24,12 @@ struct ebb_lattice {
   PetscInt begin, end; /* this rank's global indices [begin, end) */
 };
 
-PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, double sector, PetscInt sites, MPI_Comm comm,
-                                struct ebb_lattice *lattice);
+PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, double sector, PetscInt sites,
+                                MPI_Comm comm, struct ebb_lattice *lattice);
 PetscErrorCode ebb_lattice_make_grid(const struct ebb_prescription *prescription, double lnv_min, double lnv_max,
                                      PetscInt points, MPI_Comm comm, struct ebb_lattice *lattice);
 
-PetscInt ebb_lattice_size(const struct ebb_lattice *lattice);              /* sites of all arms */
+PetscInt ebb_lattice_size(const struct ebb_lattice *lattice);             /* sites of all arms */
 double ebb_lattice_v(const struct ebb_lattice *lattice, PetscInt global); /* signed v */
 double ebb_lattice_weight(const struct ebb_lattice *lattice, PetscInt global);
 /* Edges of the cell of a site, in |v|: |v| -+ 2, or exp(x -+ dx/2) on a grid. */

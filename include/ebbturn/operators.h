@@ -21,10 +21,11 @@ struct ebb_prescription {
   const char *bibtex;
   bool continuum; /* a stand-in for the continuum (Wheeler-DeWitt) operator: a turning point is never physical here */
   bool grid;      /* lives on a uniform grid in ln v instead of a volume lattice (wdw); measure and hop are NULL */
-  bool one_orientation; /* no hop crosses v = 0: a half lattice in every sector */
-  bool exact_law;       /* v obeys the two-exponential law exactly (solvable ordering, sectors 2 and 4) */
+  bool one_orientation;        /* no hop crosses v = 0: a half lattice in every sector */
+  bool exact_law;              /* v obeys the two-exponential law exactly (solvable ordering, sectors 2 and 4) */
   double (*measure)(double v); /* B(v), v > 0; even in v */
-  double (*hop)(double v);     /* C(v) of the link v -> v + 4, any real v; C(-v - 4) = C(v) where both orientations couple */
+  double (*hop)(
+      double v); /* C(v) of the link v -> v + 4, any real v; C(-v - 4) = C(v) where both orientations couple */
   /* Link weight below the first site of a half lattice that stays in the first diagonal element although the hop leaves
    * the lattice; 0 where the hop vanishes or, for aps at sector 4, where v = 0 is eliminated (even sector). */
   double (*edge)(double sector);

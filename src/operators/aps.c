@@ -11,8 +11,8 @@ static double measure(double v)
 /* C^+(v)/(3 pi G K) = |v+2| ||v+1| - |v+3||/8 */
 static double hop(double v) { return fabs(v + 2.0) * fabs(fabs(v + 1.0) - fabs(v + 3.0)) / 8.0; }
 
-/* Sector 2: C(-2) = 0. Sector 4: B(0) = 0 makes the row of v = 0 a constraint, Psi(0) = (Psi(4) + Psi(-4))/2; on the even
- * sector the flux between 0 and 4 then vanishes and C(0) drops out of theta(4,4). */
+/* Sector 2: C(-2) = 0. Sector 4: B(0) = 0 makes the row of v = 0 a constraint, Psi(0) = (Psi(4) + Psi(-4))/2; on the
+ * even sector the flux between 0 and 4 then vanishes and C(0) drops out of theta(4,4). */
 static double edge(double sector)
 {
   (void)sector;

@@ -1,7 +1,8 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "rows.h"
 
-/* Sectors 2 and 4 only: |epsilon - 2|/4 is the hop C(epsilon - 4) towards v <= 0, which B(0)^{-1/2} = 0 switches off. */
+/* Sectors 2 and 4 only: |epsilon - 2|/4 is the hop C(epsilon - 4) towards v <= 0, which B(0)^{-1/2} = 0 switches off.
+ */
 static double edge(double sector) { return ebb_solvable_hop(sector - 4.0); }
 
 const struct ebb_prescription ebb_prescription_slqc = {

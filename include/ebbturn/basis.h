@@ -1,0 +1,65 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L3 (solve). Real functions e_j on the sites in which the constraint is diagonal: generalised eigenfunctions of
+ * the infinite lattice, eigenvectors of a walled one, or standing waves of the continuum grid. A physical state is
+ *     Psi(i, phi) = sum_j A_j e_j(i) exp(i omega_j phi),
+ * and everything that measures it sees rows of e through a cursor, never the whole table. Knows L0 to L2. */
+#ifndef EBBTURN_BASIS_H
+#define EBBTURN_BASIS_H
+
+#include "ebbturn/constants.h"
+#include "ebbturn/lattice.h"
+
+#include <petscsys.h>
+
+struct ebb_basis;  /* opaque */
+struct ebb_cursor; /* opaque: walks outward along an arm */
+
+/* Which of the two eigenchannels of a full lattice a mode belongs to; EBB_CHANNEL_ONLY on half lattices. */
+enum ebb_channel { EBB_CHANNEL_ONLY, EBB_CHANNEL_RIGHT, EBB_CHANNEL_LEFT };
+
+/* Per mode, what the matching to the large-volume waves found (modes only).
+ * e -> C_+- sqrt(8/(pi |v|)) cos(k ln|v| + alpha) on the right (+) and left (-) arm. */
+struct ebb_mode_info {
+  double alpha;   /* phase */
+  double c_plus;  /* C_+; 1 on half lattices */
+  double c_minus; /* C_-; 0 on half lattices */
+  double first;   /* e at the first site of its arm, 0 where it underflows */
+};
+
+/* Generalised eigenfunctions of an infinite lattice, normalised to delta(k - k') on k > 0.
+ * k: [n] > 0, ascending within a channel. channel: [n] or NULL (all EBB_CHANNEL_ONLY, or RIGHT on a full lattice).
+ * Recursion in flux form with a log scale; normalised against the large-v series of the operator at the first site
+ * where the series' last term is below 1e-17. Cost: n x (matching volume)/4 flops x 5. Not collective. Source of the
+ * normalisation: sum over sites -> (1/4) int dv, so that sqrt(8/(pi v)) cos(k ln v + alpha) are the standing waves of
+ * the line in ln v. */
+PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscInt n, const double k[],
+                                      const enum ebb_channel channel[], struct ebb_basis **basis);
+
+/* All eigenvectors of the lattice cut by a wall after its last site (LAPACK dstevr), unit l2 norm, k_j = sqrt(zeta_j)/2
+ * ascending. Sign: sign(last component) (-1)^j, that is positive at the
+ * first site of a half lattice, where the component itself may underflow. Storage sites^2. */
+PetscErrorCode ebb_basis_create_eigenpairs(const struct ebb_lattice *lattice, struct ebb_basis **basis);
+
+/* cos(k x), sin(k x) on the grid in x = ln v, for k_j = 2 pi (j0 + j)/L, j < n; functions 2j (cos) and 2j + 1 (sin),
+ * both with frequency kappa k_j and scaled by 1/sqrt(2 pi). */
+PetscErrorCode ebb_basis_create_waves(const struct ebb_lattice *lattice, PetscInt j0, PetscInt n,
+                                      struct ebb_basis **basis);
+
+PetscErrorCode ebb_basis_destroy(struct ebb_basis **basis);
+
+PetscInt ebb_basis_size(const struct ebb_basis *basis);
+const double *ebb_basis_k(const struct ebb_basis *basis);                  /* [size] */
+const struct ebb_mode_info *ebb_basis_info(const struct ebb_basis *basis); /* [size], NULL unless modes */
+double ebb_basis_match_error(const struct ebb_basis *basis); /* size of the first omitted series term, modes */
+double ebb_basis_match_volume(const struct ebb_basis *basis);
+
+/* A cursor standing before site n of an arm. next writes rows n..n+count-1, [count][size], and moves on. */
+PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor);
+void ebb_cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows);
+/* Modes only: largest |relative amplitude| and |phase| difference between the wave carried by the recursion to here and
+ * the normalised one; 0 before the matching volume. A direct measurement of accumulated rounding. */
+double ebb_cursor_drift(const struct ebb_cursor *cursor);
+void ebb_cursor_close(struct ebb_cursor **cursor);
+
+#endif

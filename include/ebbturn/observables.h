@@ -1,0 +1,117 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L4 (measure). Expectation values, quantiles and probabilities of states given site by site. Knows L0 to L3;
+ * knows nothing of files. */
+#ifndef EBBTURN_OBSERVABLES_H
+#define EBBTURN_OBSERVABLES_H
+
+#include "ebbturn/state.h"
+
+/* Raw sums over sites, one value per clock sample. Links are pairs of neighbouring sites of one arm, outward. */
+enum ebb_sum {
+  EBB_SUM_NORM,       /* sum w |psi|^2 */
+  EBB_SUM_V,          /* |v| */
+  EBB_SUM_V2,         /* v^2 */
+  EBB_SUM_LNV,        /* ln|v| */
+  EBB_SUM_LNV2,       /* ln^2|v| */
+  EBB_SUM_ROOT,       /* Re <psi|sqrt(Theta) psi> */
+  EBB_SUM_THETA,      /* <Theta> by the operator's quadratic form on the sites */
+  EBB_SUM_THETA_ROOT, /* ||sqrt(Theta) psi||^2 */
+  EBB_SUM_SANDWICH,   /* <Theta^{1/2} v^-2 Theta^{1/2}> */
+  EBB_SUM_DENSITY,    /* <v^-1 Theta v^-1> by the quadratic form */
+  EBB_SUM_SLOPE,      /* d<|v|>/dphi = -2 Im <psi| |v| sqrt(Theta) psi> */
+  EBB_SUM_SLOPE2,     /* d<v^2>/dphi */
+  EBB_SUM_INVERSE,    /* <Theta^{-1/2}> */
+  EBB_SUM_DRESSED,    /* <Theta^{-1/4} |v|^{4/3} Theta^{-1/4}> */
+  EBB_SUM_SHIFT_RE,   /* Re sum conj(psi_{n+1}) psi_n (grid: <b^2>) */
+  EBB_SUM_SHIFT_IM,   /* Im of the same (grid: <b>), expansion positive */
+  EBB_SUM_SHIFT2,     /* Re sum conj(psi_{n+2}) psi_n (grid: unused) */
+  EBB_SUM_FIRST,      /* |psi|^2 of the arms' first sites */
+  EBB_SUM_EDGE,       /* probability at v > 0.9 v_max (both ends of a grid: outermost 2 percent) */
+  EBB_SUM_EDGE_V,     /* |v|-weighted probability at v > v_max/EBB_EDGE_RATIO */
+  EBB_SUM_EDGE_V2,    /* v^2-weighted */
+  EBB_SUM_EDGE_0,     /* unweighted, same sites */
+  EBB_SUMS
+};
+#define EBB_EDGE_RATIO 1.15
+
+/* What a call computes besides the sums. */
+struct ebb_sheet_request {
+  size_t levels;
+  const double *level; /* [levels] ascending in (0, 1) */
+  bool probability;    /* keep |psi|^2 of this rank's sites */
+  bool state;          /* keep psi of this rank's sites */
+};
+
+/* Results for m clock samples; sums and quantiles are the same on all ranks. */
+struct ebb_sheet {
+  PetscInt m, local;
+  double *sum[EBB_SUMS + 1]; /* each [m]; the last row serves the search for the mode */
+  double *quantile;          /* [m][levels]: |v| below which the level lies, mass of a site uniform over its cell */
+  double *mode;              /* [m]: |v| of the most probable site */
+  double *probability;       /* [m][local] ascending global order, or NULL */
+  double complex *psi;       /* [m][local], or NULL */
+};
+PetscErrorCode ebb_sheet_clear(struct ebb_sheet *sheet);
+
+/* Whatever can give the state at clock values: a packet in a basis, or a stepping propagator. */
+struct ebb_source {
+  const struct ebb_lattice *lattice;
+  const struct ebb_constants *constants;
+  MPI_Comm comm;
+  PetscErrorCode (*evaluate)(struct ebb_source *source, PetscInt m, const double phi[],
+                             const struct ebb_sheet_request *request, struct ebb_sheet *sheet);
+  void *data;
+  PetscInt batch; /* samples that are best asked for at once; 0 = any */
+};
+
+/* Source over a packet (not owned). Collective. Cost of evaluate: sites x modes x 12 m flops in dgemm, plus a few
+ * percent; memory per rank: 16 (24, 32 with state, probability kept) bytes x sites/ranks x m. */
+void ebb_source_packet(struct ebb_source *source, const struct ebb_packet *packet, const struct ebb_lattice *lattice,
+                       const struct ebb_constants *constants, MPI_Comm comm);
+
+/* For stepping propagators: sums over this rank's sites from fields given in ascending local order, with two more
+ * values beyond each end (0 where there is no site). field[f]: [local + 4], index 2 is the first local site. Fields:
+ * psi, sqrt(Theta) psi, Theta^{-1/4} psi. sheet must hold room for sample s. */
+PetscErrorCode ebb_sheet_allocate(struct ebb_source *source, PetscInt m, const struct ebb_sheet_request *request,
+                                  struct ebb_sheet *sheet);
+void ebb_sheet_add_fields(struct ebb_source *source, const double complex *const field[3], PetscInt s,
+                          struct ebb_sheet *sheet);
+/* Reduces over ranks and computes quantiles and modes. */
+PetscErrorCode ebb_sheet_finish(struct ebb_source *source, const struct ebb_sheet_request *request,
+                                struct ebb_sheet *sheet);
+
+/* Moments as they are reported. */
+enum ebb_moment {
+  EBB_MOMENT_NORM,
+  EBB_MOMENT_V_MEAN,
+  EBB_MOMENT_V_SPREAD,
+  EBB_MOMENT_LNV_MEAN,
+  EBB_MOMENT_LNV_SPREAD,
+  EBB_MOMENT_VOLUME_MEAN,
+  EBB_MOMENT_VOLUME_SPREAD,
+  EBB_MOMENT_DENSITY_MEAN,
+  EBB_MOMENT_DENSITY_SANDWICH,
+  EBB_MOMENT_DENSITY_OF_MEANS,
+  EBB_MOMENT_MOMENTUM_MEAN,
+  EBB_MOMENT_MOMENTUM_SPREAD,
+  EBB_MOMENT_SIN2_B_MEAN,
+  EBB_MOMENT_HUBBLE_MEAN,
+  EBB_MOMENT_HUBBLE_SPREAD,
+  EBB_MOMENT_INVERSE_MOMENTUM_MEAN,
+  EBB_MOMENT_DRESSED_A4,
+  EBB_MOMENTS
+};
+struct ebb_moment_info {
+  const char *name, *units, *long_name;
+};
+extern const struct ebb_moment_info ebb_moment_table[EBB_MOMENTS];
+
+/* All moments of sample s from the sums. Formulas: density_mean = rho_c <v^-1 Theta v^-1>/(3 pi G), density_sandwich =
+ * rho_c <Theta^{1/2} v^-2 Theta^{1/2}>/(3 pi G), density_of_means = <p>^2/(2 <V>^2), hubble = sin 2b/(2 gamma lambda);
+ * densities times G^2. dressed_a4 = <Theta^{-1/4} a^4 Theta^{-1/4}>/<Theta^{-1/2}>, a = V^{1/3} (Agullo, Ashtekar,
+ * Nelson, Class. Quantum Grav. 30, 085014 (2013), from memory). */
+void ebb_moments_from_sums(const struct ebb_constants *constants, const struct ebb_lattice *lattice,
+                           const struct ebb_sheet *sheet, PetscInt s, double moment[EBB_MOMENTS]);
+
+#endif

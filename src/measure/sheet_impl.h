@@ -1,0 +1,33 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L4 (measure). The accumulation kernels behind sheets. */
+#ifndef EBBTURN_MEASURE_SHEET_IMPL_H
+#define EBBTURN_MEASURE_SHEET_IMPL_H
+
+#include "ebbturn/observables.h"
+
+enum { EBB_SHEET_FIELDS = 3, EBB_GRID_FIELDS = 4 };
+
+/* One site of a block: pointers to its fields' real and imaginary parts, m samples each. psi of the next two sites
+ * outward (rows that exist always: beyond a wall they hold zeros). */
+struct ebb_site_rows {
+  const double *psi[2], *root[2], *quarter[2];
+  const double *next[2], *after[2];
+  const double *slope[2]; /* grid only: d psi/dx */
+};
+
+/* Adds one lattice site to samples [s0, s0 + m) of the sheet. n: outward index on the arm. */
+void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, const struct ebb_site_rows *rows,
+                        PetscInt s0, PetscInt m, struct ebb_sheet *sheet);
+/* The link across v = 0 of a full lattice, or the weight kept below the first site of a half lattice. */
+void ebb_kernel_first(const struct ebb_lattice *lattice, const double *const right[2], const double *const left[2],
+                      PetscInt s0, PetscInt m, struct ebb_sheet *sheet);
+/* Adds one grid point; Theta = -kappa^2 d^2/dx^2. */
+void ebb_kernel_grid(const struct ebb_lattice *lattice, double kappa, PetscInt n, const struct ebb_site_rows *rows,
+                     PetscInt s0, PetscInt m, struct ebb_sheet *sheet);
+
+/* Quantiles from the sheet's probabilities (needs sheet->probability). Collective. */
+PetscErrorCode ebb_sheet_quantiles(const struct ebb_source *source, size_t levels, const double level[],
+                                   struct ebb_sheet *sheet);
+
+#endif

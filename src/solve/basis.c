@@ -1,0 +1,73 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "basis_impl.h"
+
+PetscErrorCode ebb_basis_allocate(const struct ebb_basis_kind *kind, const struct ebb_lattice *lattice, PetscInt n,
+                                  struct ebb_basis **basis)
+{
+  struct ebb_basis *b;
+
+  PetscFunctionBegin;
+  *basis = NULL;
+  PetscCheck(n > 0, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
+             "a basis needs at least one function, got %" PetscInt_FMT, n);
+  PetscCall(PetscNew(&b));
+  b->kind = kind;
+  b->lattice = *lattice;
+  b->n = n;
+  *basis = b;
+  PetscCall(PetscCalloc1(n, &b->k));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_basis_destroy(struct ebb_basis **basis)
+{
+  PetscFunctionBegin;
+  if (!*basis) PetscFunctionReturn(0);
+  if ((*basis)->data) (*basis)->kind->destroy(*basis);
+  PetscCall(PetscFree((*basis)->info));
+  PetscCall(PetscFree((*basis)->k));
+  PetscCall(PetscFree(*basis));
+  PetscFunctionReturn(0);
+}
+
+PetscInt ebb_basis_size(const struct ebb_basis *basis) { return basis->n; }
+
+const double *ebb_basis_k(const struct ebb_basis *basis) { return basis->k; }
+
+const struct ebb_mode_info *ebb_basis_info(const struct ebb_basis *basis) { return basis->info; }
+
+double ebb_basis_match_error(const struct ebb_basis *basis) { return basis->match_error; }
+
+double ebb_basis_match_volume(const struct ebb_basis *basis) { return basis->match_volume; }
+
+PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor)
+{
+  struct ebb_cursor *c;
+
+  PetscFunctionBegin;
+  *cursor = NULL;
+  PetscCall(PetscNew(&c));
+  c->basis = basis;
+  c->arm = arm;
+  *cursor = c;
+  PetscCall(basis->kind->cursor_open(basis, c));
+  ebb_cursor_next(c, n, NULL);
+  PetscFunctionReturn(0);
+}
+
+void ebb_cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows)
+{
+  if (count > 0) cursor->basis->kind->cursor_next(cursor, count, rows);
+}
+
+double ebb_cursor_drift(const struct ebb_cursor *cursor)
+{
+  return cursor->basis->kind->cursor_drift ? cursor->basis->kind->cursor_drift(cursor) : 0.0;
+}
+
+void ebb_cursor_close(struct ebb_cursor **cursor)
+{
+  if (!*cursor) return;
+  (void)PetscFree((*cursor)->data);
+  (void)PetscFree(*cursor);
+}

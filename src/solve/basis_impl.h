@@ -1,0 +1,36 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L3 (solve). What a kind of basis has to provide; see ebbturn/basis.h. */
+#ifndef EBBTURN_SOLVE_BASIS_IMPL_H
+#define EBBTURN_SOLVE_BASIS_IMPL_H
+
+#include "ebbturn/basis.h"
+
+struct ebb_basis_kind {
+  PetscErrorCode (*cursor_open)(const struct ebb_basis *basis, struct ebb_cursor *cursor); /* sets cursor->data */
+  void (*cursor_next)(struct ebb_cursor *cursor, PetscInt count, double *rows);
+  double (*cursor_drift)(const struct ebb_cursor *cursor); /* NULL: always 0 */
+  void (*destroy)(struct ebb_basis *basis);                /* frees data */
+};
+
+struct ebb_basis {
+  const struct ebb_basis_kind *kind;
+  struct ebb_lattice lattice;
+  PetscInt n;
+  double *k;                  /* [n] */
+  struct ebb_mode_info *info; /* [n] or NULL */
+  double match_error, match_volume;
+  void *data;
+};
+
+struct ebb_cursor {
+  const struct ebb_basis *basis;
+  int arm;
+  PetscInt site; /* row that next writes first */
+  void *data;    /* one PetscMalloc'ed block */
+};
+
+PetscErrorCode ebb_basis_allocate(const struct ebb_basis_kind *kind, const struct ebb_lattice *lattice, PetscInt n,
+                                  struct ebb_basis **basis);
+
+#endif

@@ -1,0 +1,431 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Generalised eigenfunctions by outward recursion in flux form,
+ *     y_n = y_{n-1} - zeta B(v_n) x_n,   x_{n+1} = x_n + y_n / C(v_n),   e = sqrt(B) x,
+ * which loses 2e-14 by v = 1e6 where (diagonal - zeta) e loses 5e-10. Below v = 2k the solution grows by exp(pi k/2): x
+ * and y carry a common power of two. One pass to the matching volume gives the amplitude; every later pass starts from
+ * the normalised first value, so a cursor needs no memory of the sites before it. */
+#include "basis_impl.h"
+#include "series.h"
+
+#include <float.h>
+#include <math.h>
+#include <string.h>
+
+enum {
+  STEP_BITS = 256, /* rescaling unit 2^256; a value is let grow to 2^200 before it */
+  CHECK_EVERY = 8 /* sites between rescaling checks: growth per site is below (4k/v)^2, 1e6^8 < 2^200 for k < 1e3 v/4 */
+};
+static const double GROWN = 0x1p200, SHRINK = 0x1p-256;
+static const double TINY_TERM = 1e-17;  /* series terms beyond are below a rounding of the leading one */
+static const double MATCH_MARGIN = 1.1; /* matching volume over the volume where the series reaches TINY_TERM */
+
+/* Values on one arm: x and y of all modes, times 2^(STEP_BITS e). */
+struct walk {
+  const struct ebb_lattice *lattice;
+  PetscInt n;       /* modes */
+  PetscInt site;    /* x stands at this site, y on the link below it */
+  double v;         /* |v| of the site */
+  PetscInt growing; /* sites before which rescaling is checked */
+  double *x, *y, *zeta, *scale;
+  int *e;
+};
+
+struct modes {
+  double *x0[2], *y0[2]; /* per arm: first site and flux below it, times 2^(STEP_BITS e0) */
+  int *e0[2];
+  struct ebb_series *series;
+  double *zeta;
+  double *phase;        /* alpha */
+  double *amplitude[2]; /* per arm: signed C sqrt(8/pi) */
+  PetscInt growing;
+};
+
+static void walk_rescale(struct walk *w)
+{
+  for (PetscInt j = 0; j < w->n; j++) {
+    if (fabs(w->x[j]) > GROWN || fabs(w->y[j]) > GROWN) {
+      w->x[j] *= SHRINK;
+      w->y[j] *= SHRINK;
+      w->e[j]++;
+    }
+    w->scale[j] = w->e[j] >= 0 ? ldexp(1.0, w->e[j] > 3 ? 3 * STEP_BITS : w->e[j] * STEP_BITS)
+                               : (w->e[j] < -4 ? 0.0 : ldexp(1.0, w->e[j] * STEP_BITS));
+  }
+}
+
+/* After the growing region every value is of order one: fold the powers of two in for good. */
+static void walk_settle(struct walk *w)
+{
+  for (PetscInt j = 0; j < w->n; j++) {
+    w->x[j] = ldexp(w->x[j], w->e[j] * STEP_BITS);
+    w->y[j] = ldexp(w->y[j], w->e[j] * STEP_BITS);
+    w->e[j] = 0;
+    w->scale[j] = 1.0;
+  }
+}
+
+/* The inner loops, one pass over the modes per site; vectorised by the compiler. */
+static void emit(PetscInt n, double root, const double *restrict x, const double *restrict scale, double *restrict row)
+{
+  for (PetscInt j = 0; j < n; j++) row[j] = root * x[j] * scale[j];
+}
+
+static void advance(PetscInt n, double b, double over_c, const double *restrict zeta, double *restrict x,
+                    double *restrict y)
+{
+  for (PetscInt j = 0; j < n; j++) {
+    y[j] -= zeta[j] * b * x[j];
+    x[j] += y[j] * over_c;
+  }
+}
+
+static void walk_next(struct walk *w, PetscInt count, double *rows, bool settle)
+{
+  const struct ebb_prescription *p = w->lattice->prescription;
+
+  for (PetscInt i = 0; i < count; i++) {
+    const double b = p->measure(w->v);
+
+    if (w->site <= w->growing && w->site % CHECK_EVERY == 0) walk_rescale(w);
+    if (settle && w->site == w->growing) walk_settle(w);
+    if (rows) emit(w->n, sqrt(b), w->x, w->scale, rows + i * w->n);
+    advance(w->n, b, 1.0 / p->hop(w->v), w->zeta, w->x, w->y);
+    w->site++;
+    w->v += 4.0;
+  }
+}
+
+static PetscErrorCode walk_create(const struct ebb_lattice *lattice, int arm, PetscInt n, const double zeta[],
+                                  PetscInt growing, void **block, struct walk **walk)
+{
+  struct walk *w;
+  double *values;
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc(sizeof *w + (size_t)n * (4 * sizeof(double) + sizeof(int)), block));
+  w = *block;
+  values = (double *)(w + 1);
+  *w = (struct walk){.lattice = lattice,
+                     .n = n,
+                     .v = lattice->first[arm],
+                     .growing = growing,
+                     .x = values,
+                     .y = values + n,
+                     .zeta = values + 2 * n,
+                     .scale = values + 3 * n,
+                     .e = (int *)(values + 4 * n)};
+  memcpy(w->zeta, zeta, (size_t)n * sizeof(double));
+  for (PetscInt j = 0; j < n; j++) w->scale[j] = 1.0;
+  memset(w->e, 0, (size_t)n * sizeof(int));
+  *walk = w;
+  PetscFunctionReturn(0);
+}
+
+/* Complex amplitude A of x = Re(A v^{ik} S_x(v)), y = Re(A v^{ik} S_y(v)) at the link above the previous site: x and y
+ * at the same site are a well-conditioned pair (neighbouring sites would not be). */
+static double complex wave_amplitude(const struct ebb_series *series, double v, double x, double y)
+{
+  double complex sx, sy;
+  double det, p, q;
+
+  ebb_series_values(series, v, &sx, &sy);
+  det = creal(sx) * cimag(sy) - cimag(sx) * creal(sy);
+  p = (x * cimag(sy) - y * cimag(sx)) / det; /* x = p Re sx - q Im sx, y = p Re sy - q Im sy */
+  q = (x * creal(sy) - y * creal(sx)) / det;
+  return (p + I * q) * cexp(-I * series->k * log(v));
+}
+
+/* Runs modes with given starting values to the matching site; amplitude [n], times 2^(STEP_BITS exponent[n]). */
+static PetscErrorCode run_to_match(const struct ebb_lattice *lattice, int arm, PetscInt n, const double zeta[],
+                                   const struct ebb_series series[], double x0, double y0, PetscInt growing,
+                                   PetscInt match, double complex amplitude[], int exponent[])
+{
+  void *block;
+  struct walk *w;
+  const struct ebb_prescription *p = lattice->prescription;
+
+  PetscFunctionBegin;
+  PetscCall(walk_create(lattice, arm, n, zeta, growing, &block, &w));
+  for (PetscInt j = 0; j < n; j++) {
+    w->x[j] = x0;
+    w->y[j] = y0;
+  }
+  walk_next(w, match, NULL, false);
+  for (PetscInt j = 0; j < n; j++) {
+    const double flux = w->y[j] - zeta[j] * p->measure(w->v) * w->x[j]; /* y on the link above this site */
+    amplitude[j] = wave_amplitude(&series[j], w->v, w->x[j], flux);
+    exponent[j] = w->e[j];
+  }
+  PetscCall(PetscFree(block));
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode modes_cursor_open(const struct ebb_basis *basis, struct ebb_cursor *cursor)
+{
+  const struct modes *m = basis->data;
+  struct walk *w;
+
+  PetscFunctionBegin;
+  PetscCall(walk_create(&basis->lattice, cursor->arm, basis->n, m->zeta, m->growing, &cursor->data, &w));
+  for (PetscInt j = 0; j < basis->n; j++) {
+    w->x[j] = m->x0[cursor->arm][j];
+    w->y[j] = m->y0[cursor->arm][j];
+    w->e[j] = m->e0[cursor->arm][j];
+  }
+  walk_rescale(w);
+  PetscFunctionReturn(0);
+}
+
+static void modes_cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows)
+{
+  walk_next(cursor->data, count, rows, true);
+  cursor->site += count;
+}
+
+static double modes_cursor_drift(const struct ebb_cursor *cursor)
+{
+  const struct walk *w = cursor->data;
+  const struct modes *m = cursor->basis->data;
+  double worst = 0.0;
+
+  if (w->v < cursor->basis->match_volume) return 0.0;
+  for (PetscInt j = 0; j < w->n; j++) {
+    const double flux = w->y[j] - w->zeta[j] * w->lattice->prescription->measure(w->v) * w->x[j];
+    const double complex a = wave_amplitude(&m->series[j], w->v, w->x[j], flux);
+    const double complex want = m->amplitude[cursor->arm][j] * cexp(I * m->phase[j]);
+
+    worst = fmax(worst, cabs(a - want) / sqrt(8.0 / EBB_PI));
+  }
+  return worst;
+}
+
+static void modes_destroy(struct ebb_basis *basis)
+{
+  struct modes *m = basis->data;
+
+  for (int arm = 0; arm < 2; arm++) {
+    (void)PetscFree(m->x0[arm]);
+    (void)PetscFree(m->y0[arm]);
+    (void)PetscFree(m->e0[arm]);
+    (void)PetscFree(m->amplitude[arm]);
+  }
+  (void)PetscFree(m->series);
+  (void)PetscFree(m->zeta);
+  (void)PetscFree(m->phase);
+  (void)PetscFree(basis->data);
+}
+
+static const struct ebb_basis_kind modes_kind = {modes_cursor_open, modes_cursor_next, modes_cursor_drift,
+                                                 modes_destroy};
+
+/* Half lattice: one solution, flux below the first site = (edge weight) x. */
+static PetscErrorCode normalise_half(struct ebb_basis *basis, PetscInt match)
+{
+  struct modes *m = basis->data;
+  double complex *amplitude;
+  int *exponent;
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc2(basis->n, &amplitude, basis->n, &exponent));
+  PetscCall(run_to_match(&basis->lattice, 0, basis->n, m->zeta, m->series, 1.0, basis->lattice.edge, m->growing, match,
+                         amplitude, exponent));
+  for (PetscInt j = 0; j < basis->n; j++) {
+    const double scale = sqrt(8.0 / EBB_PI) / cabs(amplitude[j]);
+
+    m->x0[0][j] = scale;
+    m->y0[0][j] = scale * basis->lattice.edge;
+    m->e0[0][j] = -exponent[j];
+    m->phase[j] = carg(amplitude[j]);
+    m->amplitude[0][j] = sqrt(8.0 / EBB_PI);
+    basis->info[j] = (struct ebb_mode_info){.alpha = m->phase[j], .c_plus = 1.0};
+  }
+  PetscCall(PetscFree2(amplitude, exponent));
+  PetscFunctionReturn(0);
+}
+
+/* Two-channel problem of one k. w[arm][u]: amplitude of fundamental solution u on an arm (common scale per arm).
+ * Wanted: real (a, b) and t = tan alpha with Im(e^{-i alpha} (w a)) = 0 on both arms. Both roots are returned in
+ * c[root]. */
+struct channel {
+  double alpha, a[2], c[2]; /* phase; combination of the solutions; real amplitudes on the arms */
+};
+
+static void solve_channels(double complex w[2][2], struct channel out[2])
+{
+  const double dr = creal(w[0][0]) * creal(w[1][1]) - creal(w[0][1]) * creal(w[1][0]);
+  const double di = cimag(w[0][0]) * cimag(w[1][1]) - cimag(w[0][1]) * cimag(w[1][0]);
+  const double mixed = cimag(w[0][0]) * creal(w[1][1]) + creal(w[0][0]) * cimag(w[1][1]) -
+                       cimag(w[0][1]) * creal(w[1][0]) - creal(w[0][1]) * cimag(w[1][0]);
+  /* det(Im w - t Re w) = dr t^2 - mixed t + di; roots as tan = (numerator, denominator) so that t = infinity is allowed
+   */
+  const double root = sqrt(fmax(mixed * mixed - 4.0 * dr * di, 0.0));
+  const double q = 0.5 * (mixed + copysign(root, mixed));
+  const double numerator[2] = {q, di}, denominator[2] = {dr, q};
+
+  for (int r = 0; r < 2; r++) {
+    const double alpha = atan2(numerator[r], denominator[r]);
+    double complex turned[2][2];
+    int best = 0;
+    double norm;
+
+    for (int arm = 0; arm < 2; arm++)
+      for (int u = 0; u < 2; u++) turned[arm][u] = w[arm][u] * cexp(-I * alpha);
+    /* null vector of the imaginary part, from its larger row relative to that row's size */
+    const double size0 = hypot(cimag(turned[0][0]), cimag(turned[0][1])) / (cabs(w[0][0]) + cabs(w[0][1]));
+    const double size1 = hypot(cimag(turned[1][0]), cimag(turned[1][1])) / (cabs(w[1][0]) + cabs(w[1][1]));
+    if (size1 > size0) best = 1;
+    out[r].a[0] = cimag(turned[best][1]);
+    out[r].a[1] = -cimag(turned[best][0]);
+    norm = hypot(out[r].a[0], out[r].a[1]);
+    out[r].alpha = alpha;
+    for (int u = 0; u < 2; u++) out[r].a[u] /= norm;
+    for (int arm = 0; arm < 2; arm++)
+      out[r].c[arm] = creal(turned[arm][0]) * out[r].a[0] + creal(turned[arm][1]) * out[r].a[1];
+  }
+}
+
+/* Signs: positive at the first site of the channel's own arm, and positive amplitude there (alpha absorbs pi). */
+static void orient(struct channel *ch, int arm)
+{
+  if (ch->a[arm] < 0.0)
+    for (int u = 0; u < 2; u++) {
+      ch->a[u] = -ch->a[u];
+      ch->c[u] = -ch->c[u];
+    }
+  if (ch->c[arm] < 0.0) {
+    ch->alpha += ch->alpha > 0.0 ? -EBB_PI : EBB_PI;
+    for (int u = 0; u < 2; u++) ch->c[u] = -ch->c[u];
+  }
+}
+
+static void store_channel(struct ebb_basis *basis, PetscInt j, const struct channel *ch, const int shift[2])
+{
+  struct modes *m = basis->data;
+  const double cross = basis->lattice.cross, flux = cross * (ch->a[0] - ch->a[1]);
+  /* the arms' amplitudes carry 2^(STEP_BITS shift[arm]); bring both to the larger shift */
+  const int top = shift[0] > shift[1] ? shift[0] : shift[1];
+  const double c0 = ldexp(ch->c[0], (shift[0] - top) * STEP_BITS), c1 = ldexp(ch->c[1], (shift[1] - top) * STEP_BITS);
+  const double scale = sqrt(8.0 / EBB_PI) / hypot(c0, c1);
+
+  for (int arm = 0; arm < 2; arm++) {
+    m->x0[arm][j] = scale * ch->a[arm];
+    m->y0[arm][j] = arm == 0 ? scale * flux : -scale * flux;
+    m->e0[arm][j] = -top;
+    m->amplitude[arm][j] = scale * (arm == 0 ? c0 : c1);
+  }
+  m->phase[j] = ch->alpha;
+  basis->info[j] = (struct ebb_mode_info){.alpha = ch->alpha,
+                                          .c_plus = m->amplitude[0][j] * sqrt(EBB_PI / 8.0),
+                                          .c_minus = m->amplitude[1][j] * sqrt(EBB_PI / 8.0)};
+}
+
+/* Full lattice: two solutions, x = 1 at one of the first sites and 0 at the other; the crossing link feeds both arms.
+ */
+static PetscErrorCode normalise_full(struct ebb_basis *basis, const enum ebb_channel channel[], PetscInt match)
+{
+  struct modes *m = basis->data;
+  const double cross = basis->lattice.cross;
+  const PetscInt n = basis->n;
+  double complex *amplitude[2][2];
+  int *exponent[2][2];
+
+  PetscFunctionBegin;
+  for (int arm = 0; arm < 2; arm++)
+    for (int u = 0; u < 2; u++) {
+      PetscCall(PetscMalloc2(n, &amplitude[arm][u], n, &exponent[arm][u]));
+      PetscCall(run_to_match(&basis->lattice, arm, n, m->zeta, m->series, arm == u ? 1.0 : 0.0,
+                             arm == u ? cross : -cross, m->growing, match, amplitude[arm][u], exponent[arm][u]));
+    }
+  for (PetscInt j = 0; j < n; j++) {
+    double complex w[2][2];
+    int shift[2];
+    struct channel ch[2];
+    int pick;
+    const int arm = channel && channel[j] == EBB_CHANNEL_LEFT ? 1 : 0;
+
+    for (int a = 0; a < 2; a++) {
+      shift[a] = exponent[a][0][j] > exponent[a][1][j] ? exponent[a][0][j] : exponent[a][1][j];
+      for (int u = 0; u < 2; u++) w[a][u] = amplitude[a][u][j] * ldexp(1.0, (exponent[a][u][j] - shift[a]) * STEP_BITS);
+    }
+    solve_channels(w, ch);
+    /* right: |C_+| > |C_-|, compared at a common scale */
+    {
+      const int top = shift[0] > shift[1] ? shift[0] : shift[1];
+      const double s0 = ldexp(1.0, (shift[0] - top) * STEP_BITS), s1 = ldexp(1.0, (shift[1] - top) * STEP_BITS);
+      const double share0 = fabs(ch[0].c[0] * s0) / hypot(ch[0].c[0] * s0, ch[0].c[1] * s1);
+      const double share1 = fabs(ch[1].c[0] * s0) / hypot(ch[1].c[0] * s0, ch[1].c[1] * s1);
+      const int right = share0 >= share1 ? 0 : 1;
+      pick = arm == 0 ? right : 1 - right;
+    }
+    orient(&ch[pick], arm);
+    store_channel(basis, j, &ch[pick], shift);
+  }
+  for (int arm = 0; arm < 2; arm++)
+    for (int u = 0; u < 2; u++) PetscCall(PetscFree2(amplitude[arm][u], exponent[arm][u]));
+  PetscFunctionReturn(0);
+}
+
+/* Series of every mode, the matching site and the end of the growing region. */
+static PetscErrorCode prepare(struct ebb_basis *basis, PetscInt *match)
+{
+  struct modes *m = basis->data;
+  const struct ebb_prescription *p = basis->lattice.prescription;
+  double b[EBB_SERIES_TERMS + 1], c[EBB_SERIES_TERMS + 1], reach = 0.0, k_max = 0.0;
+  const double first = fmax(basis->lattice.first[0], basis->lattice.half ? 0.0 : basis->lattice.first[1]);
+
+  PetscFunctionBegin;
+  p->measure_series(EBB_SERIES_TERMS + 1, b);
+  p->hop_series(EBB_SERIES_TERMS + 1, c);
+  for (PetscInt j = 0; j < basis->n; j++) {
+    PetscCheck(basis->k[j] > 0.0, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
+               "mode %" PetscInt_FMT ": k = %g, must be above 0", j, basis->k[j]);
+    m->zeta[j] = 4.0 * basis->k[j] * basis->k[j];
+    ebb_series_make(basis->k[j], b, c, &m->series[j]);
+    reach = fmax(reach, ebb_series_reach(&m->series[j], TINY_TERM));
+    k_max = fmax(k_max, basis->k[j]);
+  }
+  /* waves oscillate beyond v = 2k; a quarter more and whole checking steps */
+  m->growing = CHECK_EVERY * ((PetscInt)(2.5 * k_max / 4.0 / CHECK_EVERY) + 2);
+  *match = (PetscInt)ceil((MATCH_MARGIN * reach - basis->lattice.first[0]) / 4.0);
+  if (*match < m->growing) *match = m->growing;
+  basis->match_volume = first + 4.0 * (double)*match;
+  basis->match_error = TINY_TERM;
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscInt n, const double k[],
+                                      const enum ebb_channel channel[], struct ebb_basis **basis)
+{
+  struct modes *m;
+  PetscInt match;
+
+  PetscFunctionBegin;
+  PetscCheck(!lattice->prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "modes need a volume lattice");
+  PetscCall(ebb_basis_allocate(&modes_kind, lattice, n, basis));
+  PetscCall(PetscArraycpy((*basis)->k, k, n));
+  PetscCall(PetscCalloc1(n, &(*basis)->info));
+  PetscCall(PetscNew(&m));
+  (*basis)->data = m;
+  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+    PetscCall(PetscMalloc1(n, &m->x0[arm]));
+    PetscCall(PetscMalloc1(n, &m->y0[arm]));
+    PetscCall(PetscMalloc1(n, &m->e0[arm]));
+    PetscCall(PetscMalloc1(n, &m->amplitude[arm]));
+  }
+  PetscCall(PetscMalloc1(n, &m->series));
+  PetscCall(PetscMalloc1(n, &m->zeta));
+  PetscCall(PetscMalloc1(n, &m->phase));
+  PetscCall(prepare(*basis, &match));
+  if (lattice->half)
+    PetscCall(normalise_half(*basis, match));
+  else
+    PetscCall(normalise_full(*basis, channel, match));
+  for (PetscInt j = 0; j < n; j++) {
+    const int arm = channel && channel[j] == EBB_CHANNEL_LEFT ? 1 : 0;
+    const int e = m->e0[arm][j];
+    (*basis)->info[j].first =
+        e < -4 ? 0.0 : ldexp(m->x0[arm][j], e * STEP_BITS) * sqrt(lattice->prescription->measure(lattice->first[arm]));
+  }
+  PetscFunctionReturn(0);
+}

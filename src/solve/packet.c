@@ -1,0 +1,263 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "profile_input.h"
+
+#include <cblas.h>
+#include <math.h>
+#include <string.h>
+
+enum { ROWS = 256 };
+
+static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_constants *constants,
+                               struct ebb_packet **packet)
+{
+  const PetscInt n = ebb_basis_size(basis);
+  struct ebb_packet *p;
+
+  PetscFunctionBegin;
+  PetscCall(PetscNew(&p));
+  *packet = p;
+  p->basis = basis;
+  p->n = n;
+  p->channel_purity = 1.0;
+  PetscCall(PetscMalloc1(n, &p->amplitude));
+  PetscCall(PetscMalloc1(n, &p->omega));
+  PetscCall(PetscMalloc1(n, &p->share));
+  for (PetscInt j = 0; j < n; j++) p->omega[j] = constants->kappa * ebb_basis_k(basis)[j];
+  PetscFunctionReturn(0);
+}
+
+/* Amplitudes, shares and moments of p_phi from normalised coefficients c and quadrature weights w. norm: probability of
+ * a function with w |c|^2 = 1 (1, or 1/2 for a cosine beside its sine). */
+static void finish(struct ebb_packet *p, const double w[], double norm, const double complex c[])
+{
+  double peak = 0.0, p2 = 0.0;
+  const struct ebb_mode_info *info = ebb_basis_info(p->basis);
+
+  for (PetscInt j = 0; j < p->n; j++) {
+    p->amplitude[j] = w[j] * c[j];
+    p->share[j] = norm * w[j] * creal(c[j] * conj(c[j]));
+    peak = fmax(peak, creal(c[j] * conj(c[j])));
+    p->momentum_mean += p->share[j] * p->omega[j];
+    p->inverse_momentum_mean += p->share[j] / p->omega[j];
+  }
+  for (PetscInt j = 0; j < p->n; j++)
+    p2 += p->share[j] * (p->omega[j] - p->momentum_mean) * (p->omega[j] - p->momentum_mean);
+  p->momentum_spread = sqrt(p2);
+  p->low_weight = creal(c[0] * conj(c[0])) / peak;
+  for (PetscInt j = 0; info && j < p->n; j++) {
+    const double own = fmax(info[j].c_plus * info[j].c_plus, info[j].c_minus * info[j].c_minus);
+    if (p->share[j] > 1e-6 / (double)p->n) p->channel_purity = fmin(p->channel_purity, own); /* modes that matter */
+  }
+}
+
+/* Which channels a state on a full lattice needs: both as soon as one component is an l2 vector. */
+static void channels_needed(const struct ebb_components *components, bool *right, bool *left)
+{
+  *right = *left = false;
+  for (PetscInt i = 0; i < components->n; i++) {
+    const bool vector = !components->profile[i]->spectral(&components->input[i]);
+    const bool wants_left = !strcmp(components->input[i].settings->channel, "left");
+
+    *left = *left || vector || wants_left;
+    *right = *right || vector || !wants_left;
+  }
+}
+
+PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
+                                       const struct ebb_plan *plan, bool check, struct ebb_packet **packet)
+{
+  const PetscInt nodes = check ? plan->check_n : plan->n;
+  const double *node = check ? plan->check_k : plan->k, *weight = check ? plan->check_weight : plan->weight;
+  struct ebb_components components;
+  struct ebb_basis *basis;
+  enum ebb_channel *channel;
+  bool right, left;
+  PetscInt n = 0;
+  double *k, *w, *one;
+  double complex *c;
+
+  PetscFunctionBegin;
+  *packet = NULL;
+  PetscCall(ebb_components_resolve(request, &components));
+  channels_needed(&components, &right, &left);
+  PetscCall(PetscMalloc5(2 * nodes, &k, 2 * nodes, &w, 2 * nodes, &one, 2 * nodes, &channel, 2 * nodes, &c));
+  for (int pass = 0; pass < 2; pass++) {
+    if (pass == 1 && (lattice->half || !left)) break;
+    if (pass == 0 && !lattice->half && !right) continue;
+    for (PetscInt j = 0; j < nodes; j++, n++) {
+      k[n] = node[j];
+      w[n] = weight[j];
+      one[n] = 1.0;
+      channel[n] = lattice->half ? EBB_CHANNEL_ONLY : pass == 0 ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
+    }
+  }
+  PetscCall(ebb_basis_create_modes(lattice, n, k, channel, &basis));
+  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(
+      ebb_components_coefficients(&components, basis, lattice, channel, w, one, request->comm, c, &(*packet)->lost));
+  finish(*packet, w, 1.0, c);
+  PetscCall(PetscFree5(k, w, one, channel, c));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
+                                            struct ebb_packet **packet)
+{
+  struct ebb_components components;
+  struct ebb_basis *basis;
+  const double *k;
+  double *w, *cell;
+  double complex *c;
+  PetscInt n;
+
+  PetscFunctionBegin;
+  *packet = NULL;
+  PetscCall(ebb_components_resolve(request, &components));
+  PetscCall(ebb_basis_create_eigenpairs(lattice, &basis));
+  PetscCall(allocate(basis, request->constants, packet));
+  n = ebb_basis_size(basis);
+  k = ebb_basis_k(basis);
+  PetscCall(PetscMalloc3(n, &w, n, &cell, n, &c));
+  for (PetscInt j = 0; j < n; j++) {
+    const double below = j > 0 ? k[j - 1] : k[0], above = j + 1 < n ? k[j + 1] : k[j];
+
+    w[j] = 1.0;
+    cell[j] = sqrt(0.5 * (above - below));
+  }
+  PetscCall(
+      ebb_components_coefficients(&components, basis, lattice, NULL, w, cell, request->comm, c, &(*packet)->lost));
+  finish(*packet, w, 1.0, c);
+  PetscCall(PetscFree3(w, cell, c));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_packet_create_waves(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
+                                       struct ebb_packet **packet)
+{
+  const struct ebb_state_settings *s = &request->settings->state;
+  const double length = lattice->dx * (double)lattice->sites[0], step = 2.0 * EBB_PI / length;
+  const bool out = strcmp(s->branch, "contracting") != 0, in = strcmp(s->branch, "expanding") != 0;
+  struct ebb_components components;
+  struct ebb_basis *basis;
+  double low, high, sum = 0.0, *w;
+  double complex *c;
+  PetscInt j0, n;
+
+  PetscFunctionBegin;
+  *packet = NULL;
+  PetscCall(ebb_components_resolve(request, &components));
+  components.profile[0]->reach_k(&components.input[0], &low, &high);
+  j0 = PetscMax((PetscInt)ceil(low / step), 1);
+  n = PetscMax((PetscInt)floor(high / step) - j0 + 1, 1);
+  PetscCall(ebb_basis_create_waves(lattice, j0, n, &basis));
+  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(PetscMalloc2(2 * n, &w, 2 * n, &c));
+  for (PetscInt j = 0; j < n; j++) {
+    const double k = ebb_basis_k(basis)[2 * j], x = (k - components.input[0].k0) / (2.0 * components.input[0].sigma_k);
+    const double complex spectral = cexp(-(1.0 + I * s->squeeze) * x * x - I * k * request->constants->kappa * s->at);
+    const double complex plus = in ? spectral * cexp(-I * k * s->lnv0) : 0.0;  /* exp(+ikx), contracting */
+    const double complex minus = out ? spectral * cexp(I * k * s->lnv0) : 0.0; /* exp(-ikx), expanding */
+
+    c[2 * j] = plus + minus;
+    c[2 * j + 1] = I * (plus - minus);
+    w[2 * j] = w[2 * j + 1] = step;
+    /* over a period cos^2/(2 pi) sums to length/(4 pi) = 1/(2 step) */
+    sum += 0.5 * step * creal(c[2 * j] * conj(c[2 * j]) + c[2 * j + 1] * conj(c[2 * j + 1]));
+  }
+  for (PetscInt j = 0; j < 2 * n; j++) c[j] /= sqrt(sum);
+  finish(*packet, w, 0.5, c);
+  PetscCall(PetscFree2(w, c));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_packet_destroy(struct ebb_packet **packet)
+{
+  PetscFunctionBegin;
+  if (!*packet) PetscFunctionReturn(0);
+  PetscCall(ebb_basis_destroy(&(*packet)->basis));
+  PetscCall(PetscFree((*packet)->amplitude));
+  PetscCall(PetscFree((*packet)->omega));
+  PetscCall(PetscFree((*packet)->share));
+  PetscCall(PetscFree(*packet));
+  PetscFunctionReturn(0);
+}
+
+static double field_factor(enum ebb_field field, double omega)
+{
+  switch (field) {
+  case EBB_FIELD_ROOT:
+    return omega;
+  case EBB_FIELD_INVERSE_QUARTER:
+    return 1.0 / sqrt(omega);
+  case EBB_FIELD_QUARTER:
+    return sqrt(omega);
+  default:
+    return 1.0;
+  }
+}
+
+PetscErrorCode ebb_phases_make(const struct ebb_packet *packet, PetscInt m, const double phi[], PetscInt fields,
+                               const enum ebb_field field[], struct ebb_phases *phases)
+{
+  PetscFunctionBegin;
+  *phases = (struct ebb_phases){.n = packet->n, .m = m, .fields = fields, .columns = 2 * fields * m};
+  PetscCall(PetscMalloc1((size_t)packet->n * (size_t)phases->columns, &phases->table));
+  for (PetscInt j = 0; j < packet->n; j++) {
+    double *row = phases->table + (size_t)j * (size_t)phases->columns;
+    for (PetscInt s = 0; s < m; s++) {
+      const double complex a = packet->amplitude[j] * cexp(I * packet->omega[j] * phi[s]);
+      for (PetscInt f = 0; f < fields; f++) {
+        const double factor = field_factor(field[f], packet->omega[j]);
+        row[(2 * f) * m + s] = factor * creal(a);
+        row[(2 * f + 1) * m + s] = factor * cimag(a);
+      }
+    }
+  }
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_phases_clear(struct ebb_phases *phases)
+{
+  PetscFunctionBegin;
+  PetscCall(PetscFree(phases->table));
+  PetscFunctionReturn(0);
+}
+
+void ebb_phases_sum(const struct ebb_phases *phases, PetscInt rows, const double *e, double *out)
+{
+  const int n = (int)phases->n, columns = (int)phases->columns;
+
+  cblas_dgemm(CblasRowMajor, CblasNoTrans, CblasNoTrans, (int)rows, columns, n, 1.0, e, n, phases->table, columns, 0.0,
+              out, columns);
+}
+
+PetscErrorCode ebb_packet_values(const struct ebb_packet *packet, const struct ebb_lattice *lattice, double phi,
+                                 enum ebb_field field, double complex values[])
+{
+  struct ebb_phases phases;
+  double *e, *out;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_phases_make(packet, 1, &phi, 1, &field, &phases));
+  PetscCall(PetscMalloc2((size_t)ROWS * (size_t)packet->n, &e, ROWS * 2, &out));
+  for (int arm = 0; arm < 2; arm++) {
+    struct ebb_cursor *cursor;
+    PetscInt begin, end;
+
+    ebb_lattice_local(lattice, arm, &begin, &end);
+    if (begin >= end) continue;
+    PetscCall(ebb_cursor_open(packet->basis, arm, begin, &cursor));
+    for (PetscInt n = begin; n < end; n += ROWS) {
+      const PetscInt count = PetscMin(end - n, ROWS);
+
+      ebb_cursor_next(cursor, count, e);
+      ebb_phases_sum(&phases, count, e, out);
+      for (PetscInt r = 0; r < count; r++)
+        values[ebb_lattice_global(lattice, arm, n + r) - lattice->begin] = out[2 * r] + I * out[2 * r + 1];
+    }
+    ebb_cursor_close(&cursor);
+  }
+  PetscCall(PetscFree2(e, out));
+  PetscCall(ebb_phases_clear(&phases));
+  PetscFunctionReturn(0);
+}

@@ -1,0 +1,206 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Nodes in k. On an interval at whose ends c(k) is negligible the midpoint rule of step dk reproduces the state but for
+ * images a distance 2 pi/dk away in ln v, so it is exact to rounding once they lie beyond every site; the rule shifted
+ * by half a step turns the sign of the images, and the difference of the two measures them. Where the interval is cut
+ * at k = 0, Gauss-Legendre with more nodes than (phase range)/4. */
+#include "profile_input.h"
+
+#include <gsl/gsl_integration.h>
+#include <math.h>
+#include <string.h>
+
+enum { COARSE_MIN = 64, GAUSS_EXTRA = 40, LOOK = 2, GRID_PER_UNIT = 64 };
+static const double NEGLIGIBLE = 1e-27;  /* of |c|^2 relative to its maximum: above the rounding of an overlap */
+static const double IMAGE_MARGIN = 10.0; /* distance in ln v kept beyond the packet's own reach */
+static const double TAIL_SHARE = 1e-2;   /* of the tolerance that the lattice edge may use */
+static const double FEWEST_V = 256.0;    /* never a smaller lattice than this */
+static const double MOST_V = 4e7;        /* nor, unasked, one larger: 1e7 sites */
+
+struct reach {
+  double k_low, k_high; /* interval in k */
+  double lnv;           /* reach in ln v at the clock value where the state is given */
+  double lnv_clock;     /* the same over the clock range */
+  bool vector;          /* some component is an l2 vector: the interval is a bound, to be trimmed */
+};
+
+static struct reach reach_of(const struct ebb_components *components, double from, double to)
+{
+  struct reach r = {.k_low = INFINITY};
+
+  for (PetscInt i = 0; i < components->n; i++) {
+    const struct ebb_profile_input *in = &components->input[i];
+    double low, high;
+    const double lnv = components->profile[i]->reach_lnv(in);
+    const double clock = in->constants->kappa * fmax(fabs(from - in->at), fabs(to - in->at));
+
+    components->profile[i]->reach_k(in, &low, &high);
+    r.k_low = fmin(r.k_low, low);
+    r.k_high = fmax(r.k_high, high);
+    r.lnv = fmax(r.lnv, lnv);
+    r.lnv_clock = fmax(r.lnv_clock, lnv + clock);
+    if (!components->profile[i]->spectral(in)) r.vector = true;
+  }
+  return r;
+}
+
+static PetscErrorCode midpoints(double low, double high, PetscInt n, double shift, double **k, double **w)
+{
+  const double step = (high - low) / (double)n;
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc1(n, k));
+  PetscCall(PetscMalloc1(n, w));
+  for (PetscInt j = 0; j < n; j++) {
+    (*k)[j] = low + ((double)j + shift) * step;
+    (*w)[j] = step;
+  }
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode gauss(double low, double high, PetscInt n, double **k, double **w)
+{
+  gsl_integration_glfixed_table *table = gsl_integration_glfixed_table_alloc((size_t)n);
+
+  PetscFunctionBegin;
+  PetscCheck(table, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for %" PetscInt_FMT " Gauss-Legendre nodes", n);
+  PetscCall(PetscMalloc1(n, k));
+  PetscCall(PetscMalloc1(n, w));
+  for (PetscInt j = 0; j < n; j++) gsl_integration_glfixed_point(low, high, (size_t)j, &(*k)[j], &(*w)[j], table);
+  gsl_integration_glfixed_table_free(table);
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode choose_nodes(struct ebb_plan *plan, double period)
+{
+  const double width = plan->k_high - plan->k_low;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_plan_clear(plan));
+  plan->period = period;
+  if (plan->uniform) {
+    plan->n = plan->check_n = PetscMax((PetscInt)ceil(width * period / (2.0 * EBB_PI)), COARSE_MIN);
+    PetscCall(midpoints(plan->k_low, plan->k_high, plan->n, 0.5, &plan->k, &plan->weight));
+    PetscCall(midpoints(plan->k_low, plan->k_high, plan->n, 1.0, &plan->check_k, &plan->check_weight));
+  } else {
+    plan->n = PetscMax((PetscInt)ceil(width * period / 4.0), COARSE_MIN) + GAUSS_EXTRA;
+    plan->check_n = plan->n + plan->n / 8 + 1;
+    PetscCall(gauss(plan->k_low, plan->k_high, plan->n, &plan->k, &plan->weight));
+    PetscCall(gauss(plan->k_low, plan->k_high, plan->check_n, &plan->check_k, &plan->check_weight));
+  }
+  PetscFunctionReturn(0);
+}
+
+/* Cuts the interval of an l2 vector to where its |c|^2 matters, on nodes that resolve it at its own clock value. */
+static PetscErrorCode trim(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
+                           const struct reach *reach, struct ebb_plan *plan)
+{
+  struct ebb_packet *packet;
+  double peak = 0.0;
+  PetscInt first, last;
+
+  PetscFunctionBegin;
+  plan->uniform = true;
+  PetscCall(choose_nodes(plan, 2.0 * reach->lnv + IMAGE_MARGIN));
+  PetscCall(ebb_packet_create_modes(request, lattice, plan, false, &packet));
+  for (PetscInt j = 0; j < packet->n; j++) peak = fmax(peak, packet->share[j]);
+  first = plan->n;
+  last = 0;
+  for (PetscInt j = 0; j < packet->n; j++) {
+    const PetscInt node = j % plan->n; /* the second channel repeats the nodes */
+
+    if (packet->share[j] < NEGLIGIBLE * peak) continue;
+    first = PetscMin(first, node);
+    last = PetscMax(last, node);
+  }
+  const double step = (plan->k_high - plan->k_low) / (double)plan->n;
+  const double low = plan->k_low + ((double)first - 3.0) * step, high = plan->k_low + ((double)last + 4.0) * step;
+
+  plan->k_low = low < 2.0 * step ? 0.0 : low;
+  plan->k_high = high;
+  PetscCall(ebb_packet_destroy(&packet));
+  PetscFunctionReturn(0);
+}
+
+/* Large-volume form of the state at one clock value: sqrt(v) psi on the right or left arm at x = ln v. */
+static double density_far(const struct ebb_packet *packet, const double complex turned[], double x, bool left)
+{
+  const struct ebb_mode_info *info = ebb_basis_info(packet->basis);
+  const double *k = ebb_basis_k(packet->basis);
+  double complex sum = 0.0;
+
+  for (PetscInt j = 0; j < packet->n; j++)
+    sum += turned[j] * ((left ? info[j].c_minus : info[j].c_plus) * cos(k[j] * x + info[j].alpha));
+  return 8.0 / EBB_PI * creal(sum * conj(sum));
+}
+
+/* v_max and tail: beyond v_max the v^2-weighted probability is below the share of the tolerance at both ends. */
+static PetscErrorCode find_edge(const struct ebb_packet *packet, const struct ebb_lattice *lattice, double from,
+                                double to, double tolerance, double x_high, struct ebb_plan *plan)
+{
+  const double *k = ebb_basis_k(packet->basis);
+  const double x_low = log(fmax(k[0], 1.0));
+  const PetscInt grid = PetscMax((PetscInt)((x_high - x_low) * GRID_PER_UNIT), 2);
+  const double clock[LOOK] = {from, to}, limit = TAIL_SHARE * tolerance;
+  double complex *turned;
+  double *tail, edge = log(FEWEST_V);
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc2(packet->n, &turned, grid + 1, &tail));
+  plan->tail = 0.0;
+  for (int c = 0; c < LOOK; c++) {
+    for (PetscInt j = 0; j < packet->n; j++) turned[j] = packet->amplitude[j] * cexp(I * packet->omega[j] * clock[c]);
+    tail[grid] = 0.0;
+    for (PetscInt i = grid - 1; i >= 0; i--) { /* v^2-weighted, integrated from above; dv/4 = v dx/4 */
+      const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
+      double p = density_far(packet, turned, x, false);
+
+      if (!lattice->half) p += density_far(packet, turned, x, true);
+      tail[i] = tail[i + 1] + exp(2.0 * x) * p;
+    }
+    for (PetscInt i = grid; i >= 0; i--) {
+      if (tail[i] < limit * tail[0]) continue;
+      edge = fmax(edge, x_low + (x_high - x_low) * (double)(i + 1) / (double)grid);
+      plan->tail = fmax(plan->tail, i < grid ? tail[i + 1] / tail[0] : 0.0);
+      break;
+    }
+  }
+  plan->v_max = exp(edge);
+  PetscCall(PetscFree2(turned, tail));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_plan_make(const struct ebb_state_request *request, const struct ebb_lattice *lattice, double from,
+                             double to, struct ebb_plan *plan)
+{
+  struct ebb_components components;
+  struct ebb_packet *packet;
+  struct reach reach;
+  double period, x_high;
+
+  PetscFunctionBegin;
+  *plan = (struct ebb_plan){0};
+  PetscCall(ebb_components_resolve(request, &components));
+  reach = reach_of(&components, from, to);
+  plan->k_low = reach.k_low;
+  plan->k_high = reach.k_high;
+  if (reach.vector) PetscCall(trim(request, lattice, &reach, plan));
+  plan->uniform = plan->k_low > 0.0;
+  period = 2.0 * reach.lnv_clock + IMAGE_MARGIN;
+  PetscCall(choose_nodes(plan, period));
+  PetscCall(ebb_packet_create_modes(request, lattice, plan, false, &packet));
+  x_high = fmin(log(plan->k_high) + reach.lnv_clock + 1.0, log(MOST_V));
+  PetscCall(find_edge(packet, lattice, from, to, request->settings->numerics.tolerance, x_high, plan));
+  PetscCall(ebb_packet_destroy(&packet));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_plan_clear(struct ebb_plan *plan)
+{
+  PetscFunctionBegin;
+  PetscCall(PetscFree(plan->k));
+  PetscCall(PetscFree(plan->weight));
+  PetscCall(PetscFree(plan->check_k));
+  PetscCall(PetscFree(plan->check_weight));
+  PetscFunctionReturn(0);
+}
