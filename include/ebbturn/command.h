@@ -6,6 +6,7 @@
 
 #include "ebbturn/settings.h"
 
+#include <petscsys.h>
 #include <stdbool.h>
 #include <stddef.h>
 
@@ -60,5 +61,9 @@ const struct ebb_command *ebb_command_find(const char *name);
 /* Shared by commands that take a MODEL: rank 0 reads, parses and checks; problems are printed by rank 0 and the exit code
  * (0, 2 or 4) is the same on all ranks; settings and text are broadcast. Caller clears settings and frees *text. */
 int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, struct ebb_settings *settings, char **text);
+
+/* The exit code for an error that a library call returned: a file failure (4; rank 0 prints the reason that the store gives)
+ * or a bug (70; the trace was printed when it was raised). 0 for no error. */
+int ebb_exit_from_error(PetscErrorCode error);
 
 #endif

@@ -81,4 +81,20 @@ struct ebb_settings {
   struct ebb_output_settings output;
 };
 
+/* Marks every setting as not given (NAN, 0, "" by type), without components. */
+void ebb_settings_unset(struct ebb_settings *settings);
+/* The default of every setting that has one, except those of `state`, which belong to a profile. */
+void ebb_settings_defaults(struct ebb_settings *settings);
+/* Sets polymer_scale from area_gap, or from the default area gap where neither is given. */
+void ebb_settings_resolve(struct ebb_settings *settings);
+/* Frees what the settings own (components); accepts zeroed settings. */
+void ebb_settings_clear(struct ebb_settings *settings);
+
+/* The settings that are set, as JSON in the order of the schema, numbers with 17 digits, `auto` and infinity as words,
+ * other infinities and nan as "infinity", "-infinity", "nan". As YAML contains JSON, the text is again a model with the same
+ * settings (polymer_scale stands for area_gap). Deterministic. malloc'ed; NULL when memory is out. */
+char *ebb_settings_json(const struct ebb_settings *settings);
+/* One line per setting: key, value, unit, letter. */
+void ebb_settings_print(const struct ebb_settings *settings, FILE *out);
+
 #endif

@@ -1,0 +1,33 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "ebbturn/command.h"
+#include "ebbturn/input.h"
+
+#include <stdlib.h>
+
+static int run(const struct ebb_invocation *invocation);
+
+const struct ebb_command ebb_command_evolve = {
+    .name = "evolve",
+    .synopsis = "MODEL [-o RESULT]",
+    .summary = "evolve a state in its clock and store observables, bounce and states",
+    .operands_min = 1,
+    .operands_max = 1,
+    .options = EBB_OPTION_SET | EBB_OPTION_OUTPUT | EBB_OPTION_FORCE | EBB_OPTION_PROGRESS | EBB_OPTION_LIBRARY,
+    .parallel = true,
+    .run = run,
+};
+
+static int run(const struct ebb_invocation *invocation)
+{
+  struct ebb_settings settings;
+  char *text;
+  const int code = ebb_command_load(invocation, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, &text);
+  int rank = 0;
+
+  if (code != EBB_EXIT_OK) return code;
+  MPI_Comm_rank(PETSC_COMM_WORLD, &rank);
+  if (rank == 0) fprintf(stderr, "ebbturn: error: 'evolve' cannot compute yet\n");
+  ebb_settings_clear(&settings);
+  free(text);
+  return EBB_EXIT_USAGE;
+}

@@ -1,0 +1,162 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "ebbturn/command.h"
+#include "ebbturn/input.h"
+#include "ebbturn/operators.h"
+
+#include <string.h>
+
+static int run(const struct ebb_invocation *invocation);
+
+const struct ebb_command ebb_command_explain = {
+    .name = "explain",
+    .synopsis = "NAME",
+    .summary = "say everything about one prescription or setting",
+    .help = "NAME is a prescription (slqc) or the key of a setting (gravity.immirzi). For a prescription: formula,\n"
+            "source and the settings that matter; for a setting: letter, unit, type, range, default and source.",
+    .operands_min = 1,
+    .operands_max = 1,
+    .options = EBB_OPTION_BIBTEX,
+    .run = run,
+};
+
+static const char *type_name(enum ebb_type type)
+{
+  switch (type) {
+  case EBB_TYPE_REAL:
+    return "number";
+  case EBB_TYPE_INTEGER:
+    return "whole number";
+  case EBB_TYPE_NAME:
+    return "one word of a list";
+  case EBB_TYPE_TEXT:
+    return "text";
+  case EBB_TYPE_PATH:
+    return "file name";
+  case EBB_TYPE_REALS:
+    return "list of numbers";
+  case EBB_TYPE_FLAGS:
+    return "list of words";
+  case EBB_TYPE_COMPLEX:
+    return "number or [real, imaginary]";
+  case EBB_TYPE_PARTS:
+    return "list of sections";
+  case EBB_TYPE_EMPTY:
+    return "empty list";
+  }
+  return "";
+}
+
+static void row(const char *name, const char *value) { printf("  %-14s %s\n", name, value); }
+
+/* Rows of the explanation that a setting has only sometimes. */
+static void explain_values(const struct ebb_setting *setting)
+{
+  struct ebb_text text = {0};
+
+  ebb_setting_append_range(&text, setting);
+  if (text.length > 0) row("range", ebb_text_get(&text));
+  ebb_text_clear(&text);
+  if (setting->word) row("or the word", setting->word);
+  for (size_t i = 0; ebb_input_choice(setting, i); i++)
+    ebb_text_append(&text, "%s%s", i ? ", " : "", ebb_input_choice(setting, i));
+  if (text.length > 0) row("choices", ebb_text_get(&text));
+  ebb_text_clear(&text);
+  if (setting->fallback && setting->fallback[0]) row("default", setting->fallback);
+}
+
+/* Which profiles take or need a key of `state`. */
+static void explain_profiles(const struct ebb_setting *setting)
+{
+  const struct ebb_setting *profile = ebb_setting_find("state.profile");
+  struct ebb_text text = {0};
+
+  if (!setting->profiles || setting->profiles == EBB_PROFILE_ALL) return;
+  for (size_t i = 0; ebb_setting_choice(profile, i); i++) {
+    const unsigned bit = ebb_profile_bit(ebb_setting_choice(profile, i));
+
+    if (setting->profiles & bit)
+      ebb_text_append(&text, "%s%s%s", text.length ? ", " : "", ebb_setting_choice(profile, i),
+                      setting->profiles_required & bit ? " (required)" : "");
+  }
+  if (setting->profiles & EBB_PROFILE_GRID)
+    ebb_text_append(&text, "%sgaussian_momentum on a grid in ln v%s", text.length ? ", " : "",
+                    setting->profiles_required & EBB_PROFILE_GRID ? " (required)" : "");
+  row("profiles", ebb_text_get(&text));
+  ebb_text_clear(&text);
+}
+
+static void explain_setting(const struct ebb_setting *setting)
+{
+  printf("%s: %s\n", setting->key, setting->sentence);
+  if (setting->letter) row("letter", setting->letter);
+  row("type", type_name(setting->type));
+  if (setting->unit) row("unit", setting->unit);
+  explain_values(setting);
+  if (setting->hint) row("note", setting->hint);
+  explain_profiles(setting);
+  if (setting->places & EBB_ON_VOLUME) row("belongs to", "prescriptions on a lattice of volumes");
+  if (setting->places & EBB_ON_GRID) row("belongs to", "prescriptions on a grid in ln v");
+  if (setting->places & EBB_COMPONENT_ONLY) row("belongs to", "a component of a superposition");
+  if (setting->places_required & EBB_ON_GRID) row("required", "on a grid in ln v");
+  if (setting->places_required & EBB_FOR_RANGE) row("required", "by commands that evolve");
+  if (setting->source) row("source", setting->source);
+}
+
+/* Keys of the lattice and the state depend on the kind of lattice; those of gravity and clock matter to everyone. */
+static void explain_prescription(const struct ebb_prescription *prescription)
+{
+  const unsigned here = prescription->grid ? EBB_ON_GRID : EBB_ON_VOLUME;
+  const char *name = "settings";
+
+  printf("%s: %s\n", prescription->name, prescription->title);
+  row("formula", prescription->formula);
+  row("source", prescription->source);
+  for (size_t i = 0; i < ebb_setting_count(); i++) {
+    const struct ebb_setting *setting = ebb_setting_at(i);
+    const unsigned places = setting->places & (EBB_ON_GRID | EBB_ON_VOLUME);
+
+    if (!ebb_setting_in(setting, "gravity") && !ebb_setting_in(setting, "lattice")) continue;
+    if ((places && !(places & here)) || !strcmp(ebb_setting_leaf(setting), "prescription")) continue;
+    row(name, setting->key);
+    name = "";
+  }
+}
+
+static int complain(const char *before, const char *word, const char *after, const char *nearest)
+{
+  struct ebb_text quoted = {0};
+
+  ebb_text_append_quoted(&quoted, word, strlen(word));
+  fprintf(stderr, "ebbturn: error: %s%s%s", before, ebb_text_get(&quoted), after);
+  if (nearest) fprintf(stderr, "; nearest is '%s'", nearest);
+  fprintf(stderr, "\n  try       'ebbturn list'\n");
+  ebb_text_clear(&quoted);
+  return EBB_EXIT_USAGE;
+}
+
+static int run(const struct ebb_invocation *invocation)
+{
+  const char *name = invocation->operand[0];
+  const struct ebb_prescription *prescription = ebb_prescription_find(name);
+  const struct ebb_setting *setting = ebb_setting_find(name);
+  struct ebb_nearest nearest;
+
+  if (prescription && invocation->bibtex)
+    printf("%s\n", prescription->bibtex);
+  else if (prescription)
+    explain_prescription(prescription);
+  else if (setting && invocation->bibtex)
+    return complain("", name, " is a setting; only prescriptions have a BibTeX entry", NULL);
+  else if (setting)
+    explain_setting(setting);
+  if (prescription || setting) return EBB_EXIT_OK;
+  ebb_nearest_start(&nearest, name);
+  for (size_t i = 0; i < ebb_prescriptions(); i++) ebb_nearest_try(&nearest, ebb_prescription_at(i)->name);
+  for (size_t i = 0; i < ebb_setting_count(); i++) {
+    /* a bare last part, `immirzi`, points at its key */
+    if (!strcmp(ebb_setting_leaf(ebb_setting_at(i)), name))
+      return complain("unknown name ", name, "", ebb_setting_at(i)->key);
+    ebb_nearest_try(&nearest, ebb_setting_at(i)->key);
+  }
+  return complain("unknown name ", name, "", ebb_nearest_word(&nearest));
+}

@@ -1,0 +1,81 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "ebbturn/command.h"
+
+#include "ebbturn/input.h"
+#include "ebbturn/store.h"
+
+#include <mpi.h>
+#include <stdlib.h>
+
+/* This rank's place; a single process where MPI does not run. */
+static bool whole_world(int *rank)
+{
+  int up = 0;
+
+  *rank = 0;
+  if (MPI_Initialized(&up) || !up) return false;
+  return MPI_Comm_rank(MPI_COMM_WORLD, rank) == MPI_SUCCESS;
+}
+
+/* Rank 0's text on every rank; length [bytes] as it stands in the file. NULL everywhere where rank 0 has none. */
+static char *broadcast_text(char *text, size_t *length)
+{
+  int rank;
+  long long bytes = text ? (long long)*length : -1;
+
+  if (!whole_world(&rank)) return text;
+  if (MPI_Bcast(&bytes, 1, MPI_LONG_LONG, 0, MPI_COMM_WORLD) || bytes < 0) return NULL;
+  if (rank != 0) text = calloc((size_t)bytes + 1, 1);
+  /* a model is at most a megabyte: no memory for it on one rank ends the job, as the others could only hang */
+  if (!text) MPI_Abort(MPI_COMM_WORLD, EBB_EXIT_BUG);
+  if (MPI_Bcast(text, (int)bytes, MPI_CHAR, 0, MPI_COMM_WORLD)) MPI_Abort(MPI_COMM_WORLD, EBB_EXIT_BUG);
+  *length = (size_t)bytes;
+  return text;
+}
+
+int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, struct ebb_settings *settings, char **text)
+{
+  const char *path = invocation->operand[0];
+  struct ebb_problems *problems = ebb_problems_create();
+  size_t length = 0;
+  int rank, code = EBB_EXIT_OK;
+
+  *text = NULL;
+  ebb_settings_unset(settings);
+  (void)whole_world(&rank);
+  if (!problems) return EBB_EXIT_BUG;
+  if (rank == 0) *text = ebb_input_read(path, &length, problems);
+  *text = broadcast_text(*text, &length);
+  if (!*text) {
+    code = EBB_EXIT_FILE;
+  } else if (!ebb_input_parse(*text, length, invocation->override, (size_t)invocation->overrides, need, settings,
+                              problems)) {
+    code = EBB_EXIT_USAGE; /* every rank parses the same bytes and finds the same */
+    ebb_settings_clear(settings);
+    free(*text);
+    *text = NULL;
+  }
+  if (code != EBB_EXIT_OK && rank == 0) ebb_problems_print(problems, stderr, path);
+  ebb_problems_destroy(&problems);
+  return code;
+}
+
+int ebb_exit_from_error(PetscErrorCode error)
+{
+  const char *reason;
+  int rank;
+
+  if (!error) return EBB_EXIT_OK;
+  (void)whole_world(&rank);
+  if (error == PETSC_ERR_FILE_OPEN || error == PETSC_ERR_FILE_READ || error == PETSC_ERR_FILE_WRITE ||
+      error == PETSC_ERR_FILE_UNEXPECTED) {
+    if (rank == 0 && ebb_store_reason(&reason)) fprintf(stderr, "ebbturn: error: %s\n", reason);
+    return EBB_EXIT_FILE;
+  }
+  if (rank == 0)
+    fprintf(stderr,
+            "ebbturn: error: this is a bug in ebbturn (code %d)\n"
+            "  try       report it with the model file and the trace above\n",
+            (int)error);
+  return EBB_EXIT_BUG;
+}

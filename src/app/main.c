@@ -1,0 +1,76 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "command_line.h"
+
+#include "ebbturn/store.h"
+
+#include <omp.h>
+#include <slepcsys.h>
+#include <stdlib.h>
+#include <string.h>
+
+/* An option for PETSc that nothing has asked for is most often misspelt. */
+static PetscErrorCode warn_of_unused(const struct ebb_invocation *invocation)
+{
+  PetscInt count;
+  char **name, **value;
+  PetscMPIInt rank;
+
+  PetscFunctionBegin;
+  PetscCallMPI(MPI_Comm_rank(PETSC_COMM_WORLD, &rank));
+  PetscCall(PetscOptionsLeftGet(NULL, &count, &name, &value));
+  for (PetscInt i = 0; rank == 0 && i < count; i++)
+    for (int j = 0; j < invocation->library_argc; j++)
+      if (invocation->library_argv[j][0] == '-' && !strcmp(invocation->library_argv[j] + 1, name[i]))
+        fprintf(stderr, "ebbturn: warning: nothing used the PETSc option '-%s'\n", name[i]);
+  PetscCall(PetscOptionsLeftRestore(NULL, &count, &name, &value));
+  PetscFunctionReturn(0);
+}
+
+/* SLEPc gets arguments of its own: ours mean nothing to it, and a .petscrc lying about must not change a run. */
+static int run_parallel(char *program, const struct ebb_command *command, const struct ebb_invocation *invocation)
+{
+  static char no_file[] = "-skip_petscrc";
+  const int options = invocation->library_argc;
+  int count = 2 + options, code;
+  char **arguments = calloc((size_t)count + 1, sizeof *arguments), **given = arguments;
+
+  if (!arguments) return EBB_EXIT_BUG;
+  arguments[0] = program;
+  arguments[1] = no_file;
+  for (int i = 0; i < options; i++) arguments[2 + i] = invocation->library_argv[i];
+  if (SlepcInitialize(&count, &arguments, NULL, NULL)) {
+    free(given);
+    return EBB_EXIT_BUG; /* PETSc said why */
+  }
+  if (PetscPushErrorHandler(ebb_store_error_handler, NULL))
+    code = EBB_EXIT_BUG;
+  else {
+    code = command->run(invocation);
+    if (warn_of_unused(invocation)) code = EBB_EXIT_BUG;
+    if (PetscPopErrorHandler()) code = EBB_EXIT_BUG;
+  }
+  if (SlepcFinalize() && code == EBB_EXIT_OK) code = EBB_EXIT_BUG;
+  free(given);
+  return code;
+}
+
+int main(int argc, char *argv[])
+{
+  const bool speaks = ebb_early_rank() == 0;
+  const struct ebb_command *command;
+  struct ebb_invocation invocation;
+  int code;
+
+  /* Before anything else: threads of libraries that spin between parallel ranks cost factors of ten. */
+  if (!getenv("OMP_NUM_THREADS")) omp_set_num_threads(1);
+  if (ebb_command_line(argc, argv, speaks ? stdout : NULL, speaks ? stderr : NULL, &command, &invocation, &code) ==
+      EBB_INTENT_RUN) {
+    if (command->parallel)
+      code = run_parallel(argv[0], command, &invocation);
+    else
+      code = speaks ? command->run(&invocation) : EBB_EXIT_OK;
+  }
+  ebb_command_line_clear(&invocation);
+  if (fflush(stdout) && code == EBB_EXIT_OK) code = EBB_EXIT_FILE; /* a full disk behind a pipe or a redirection */
+  return code;
+}
