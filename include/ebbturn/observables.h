@@ -31,6 +31,9 @@ enum ebb_sum {
   EBB_SUM_EDGE_V,     /* |v|-weighted probability at v > v_max/EBB_EDGE_RATIO */
   EBB_SUM_EDGE_V2,    /* v^2-weighted */
   EBB_SUM_EDGE_0,     /* unweighted, same sites */
+  EBB_SUM_INNER_V,    /* the same three sums over the window of the same ratio below it */
+  EBB_SUM_INNER_V2,
+  EBB_SUM_INNER_0,
   EBB_SUMS
 };
 #define EBB_EDGE_RATIO 1.15
@@ -41,6 +44,7 @@ struct ebb_sheet_request {
   const double *level; /* [levels] ascending in (0, 1) */
   bool probability;    /* keep |psi|^2 of this rank's sites */
   bool state;          /* keep psi of this rank's sites */
+  double v_limit;      /* > 0: sites beyond it may be left out (packets do, propagators that step do not) */
 };
 
 /* Results for m clock samples; sums and quantiles are the same on all ranks. */

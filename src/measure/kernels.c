@@ -6,6 +6,25 @@
 
 #include <math.h>
 
+/* Probability near the edge, in the last window of ratio EBB_EDGE_RATIO and in the one below it. */
+static void edges(double w, double v, double v_max, bool outer, const struct ebb_site_rows *r, PetscInt s0, PetscInt m,
+                  struct ebb_sheet *sheet)
+{
+  const bool last = v > v_max / EBB_EDGE_RATIO;
+  double *plain = sheet->sum[last ? EBB_SUM_EDGE_0 : EBB_SUM_INNER_0] + s0;
+  double *first = sheet->sum[last ? EBB_SUM_EDGE_V : EBB_SUM_INNER_V] + s0;
+  double *second = sheet->sum[last ? EBB_SUM_EDGE_V2 : EBB_SUM_INNER_V2] + s0;
+
+  for (PetscInt s = 0; s < m; s++) {
+    const double p = w * (r->psi[0][s] * r->psi[0][s] + r->psi[1][s] * r->psi[1][s]);
+
+    plain[s] += p;
+    first[s] += v * p;
+    second[s] += v * v * p;
+    if (v > 0.9 * v_max || outer) sheet->sum[EBB_SUM_EDGE][s0 + s] += p;
+  }
+}
+
 /* Sums of one site alone. w: cell weight. */
 static void diagonal(double w, double v, double v_max, bool outer, const struct ebb_site_rows *r, PetscInt s0,
                      PetscInt m, struct ebb_sheet *sheet)
@@ -41,15 +60,7 @@ static void diagonal(double w, double v, double v_max, bool outer, const struct 
     inverse[s] += q2;
     dressed[s] += v43 * q2;
   }
-  if (v > v_max / EBB_EDGE_RATIO || outer)
-    for (PetscInt s = 0; s < m; s++) {
-      const double p = w * (pr[s] * pr[s] + pi[s] * pi[s]);
-
-      sheet->sum[EBB_SUM_EDGE_0][s0 + s] += p;
-      sheet->sum[EBB_SUM_EDGE_V][s0 + s] += v * p;
-      sheet->sum[EBB_SUM_EDGE_V2][s0 + s] += v2 * p;
-      if (v > 0.9 * v_max || outer) sheet->sum[EBB_SUM_EDGE][s0 + s] += p;
-    }
+  if (v > v_max / (EBB_EDGE_RATIO * EBB_EDGE_RATIO) || outer) edges(w, v, v_max, outer, r, s0, m, sheet);
 }
 
 static void most_probable(double v, const struct ebb_site_rows *r, PetscInt s0, PetscInt m, struct ebb_sheet *sheet,

@@ -17,8 +17,8 @@ PetscErrorCode ebb_sheet_allocate(struct ebb_source *source, PetscInt m, const s
   for (int i = 0; i <= EBB_SUMS; i++) sheet->sum[i] = block + (size_t)i * (size_t)m;
   PetscCall(PetscCalloc1(m, &sheet->mode));
   if (request->levels) PetscCall(PetscMalloc1((size_t)m * request->levels, &sheet->quantile));
-  if (request->levels || request->probability) PetscCall(PetscMalloc1((size_t)m * (size_t)local, &sheet->probability));
-  if (request->state) PetscCall(PetscMalloc1((size_t)m * (size_t)local, &sheet->psi));
+  if (request->levels || request->probability) PetscCall(PetscCalloc1((size_t)m * (size_t)local, &sheet->probability));
+  if (request->state) PetscCall(PetscCalloc1((size_t)m * (size_t)local, &sheet->psi));
   PetscFunctionReturn(0);
 }
 

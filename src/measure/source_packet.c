@@ -4,6 +4,7 @@
  * kernels while they are in cache. The table of rows is never held. */
 #include "sheet_impl.h"
 
+#include <math.h>
 #include <string.h>
 
 enum { ROWS = 192, HALO = 2, COLUMN_TILE = 16 };
@@ -91,7 +92,7 @@ static void keep_block(const struct ebb_lattice *lattice, int arm, PetscInt n, P
   }
 }
 
-static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct ebb_phases *phases,
+static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct ebb_phases *phases, double v_limit,
                               struct ebb_sheet *sheet)
 {
   const struct ebb_packet *packet = source->data;
@@ -104,6 +105,7 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
 
   PetscFunctionBegin;
   ebb_lattice_local(lattice, arm, &begin, &end);
+  if (v_limit > 0.0 && !grid) end = PetscMin(end, (PetscInt)fmax((v_limit - lattice->first[arm]) / 4.0, 0.0) + 1);
   if (begin >= end) PetscFunctionReturn(0);
   PetscCall(PetscMalloc2((size_t)ROWS * (size_t)packet->n, &e, (size_t)(ROWS + HALO) * (size_t)columns, &block));
   PetscCall(ebb_cursor_open(packet->basis, arm, begin, &cursor));
@@ -166,7 +168,7 @@ static PetscErrorCode evaluate(struct ebb_source *source, PetscInt m, const doub
   PetscFunctionBegin;
   PetscCall(ebb_sheet_allocate(source, m, request, sheet));
   PetscCall(make_table(source, m, phi, &phases));
-  for (int arm = 0; arm < 2; arm++) PetscCall(sum_arm(source, arm, &phases, sheet));
+  for (int arm = 0; arm < 2; arm++) PetscCall(sum_arm(source, arm, &phases, request->v_limit, sheet));
   if (!source->lattice->prescription->grid) PetscCall(sum_first(source, &phases, sheet));
   PetscCall(ebb_phases_clear(&phases));
   PetscCall(ebb_sheet_finish(source, request, sheet));

@@ -1,0 +1,42 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L4 (measure). The error of every reported number, made of measured contributions. Knows L0 to L3. */
+#ifndef EBBTURN_BUDGET_H
+#define EBBTURN_BUDGET_H
+
+#include "ebbturn/observables.h"
+
+enum ebb_contribution {
+  EBB_ERROR_EDGE,          /* probability beyond the last site, extrapolated from the two windows before it */
+  EBB_ERROR_QUADRATURE,    /* difference to an independent rule in k */
+  EBB_ERROR_NORMALISATION, /* |norm - 1| and the drift of the recursion against the large-volume waves */
+  EBB_ERROR_PROPAGATION,   /* stepping propagators: remainder of the series, drift of norm and <Theta> */
+  EBB_ERROR_ROUNDING,      /* sums of the length of the lattice */
+  EBB_CONTRIBUTIONS
+};
+extern const char *const ebb_contribution_names[EBB_CONTRIBUTIONS];
+extern const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS];
+
+struct ebb_budget {
+  double quadrature[EBB_MOMENTS];  /* relative (absolute over the moment's scale where it may vanish) */
+  double quadrature_quantile;      /* relative */
+  double drift;                    /* of the recursion */
+  double propagation;              /* relative error of the state vector */
+  double rounding;                 /* relative */
+  double worst[EBB_CONTRIBUTIONS]; /* largest relative error of the mean volume seen so far, per contribution */
+  double edge_probability;         /* largest P(v > 0.9 v_max) seen so far */
+};
+
+/* Errors of all moments of sample s; updates worst and edge_probability. */
+void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *constants,
+                       const struct ebb_lattice *lattice, const struct ebb_sheet *sheet, PetscInt s,
+                       const double moment[EBB_MOMENTS], double error[EBB_MOMENTS]);
+/* Absolute error of a quantile q of sample s. density: probability per unit v there. */
+double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_sheet *sheet, PetscInt s, double q);
+/* Measures the quadrature contribution: moments (and quantiles) of the same samples from the two rules. */
+void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *constants,
+                        const struct ebb_lattice *lattice, const struct ebb_sheet *rule, const struct ebb_sheet *check,
+                        size_t levels);
+enum ebb_contribution ebb_budget_largest(const struct ebb_budget *budget);
+
+#endif

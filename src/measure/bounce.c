@@ -1,0 +1,388 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "ebbturn/bounce.h"
+
+#include <math.h>
+#include <string.h>
+
+enum { NODES = 9, SECTION = 17, SECTIONS = 12, OUTSIDE_TRIES = 6, LIMIT_DOUBLINGS = 48 };
+static const double NEGLIGIBLE_TAIL = 1e-18; /* v^2-weighted share beyond the sites that the search looks at */
+static const double CLOSE = 1e-4;            /* of the bracket: half width of the parabola's support */
+static const double SECTIONED = 1e-9;        /* of the bracket: where sectioning for the median stops */
+static const double EDGE_ALLOWED = 1e-3;     /* probability at the lattice edge above which no verdict is given */
+static const double ERROR_ALLOWED = 1e-2;    /* relative error of the bounce volume above which no verdict is given */
+static const double HALF_CELL = 2.0;
+
+const char *const ebb_verdict_names[] = {"no", "yes", "undecided"};
+
+/* One evaluation, sums only. */
+static PetscErrorCode look(struct ebb_source *source, PetscInt m, const double phi[], double v_limit, double v[],
+                           double slope[])
+{
+  const struct ebb_sheet_request request = {.v_limit = v_limit};
+  struct ebb_sheet sheet;
+
+  PetscFunctionBegin;
+  PetscCall(source->evaluate(source, m, phi, &request, &sheet));
+  for (PetscInt s = 0; s < m; s++) {
+    if (v) v[s] = sheet.sum[EBB_SUM_V][s] / sheet.sum[EBB_SUM_NORM][s];
+    slope[s] = sheet.sum[EBB_SUM_SLOPE][s] / sheet.sum[EBB_SUM_NORM][s];
+  }
+  PetscCall(ebb_sheet_clear(&sheet));
+  PetscFunctionReturn(0);
+}
+
+/* Volume beyond which the v^2-weighted probability is negligible at clock values [m]: doubled from the mean. */
+static PetscErrorCode reach(struct ebb_source *source, PetscInt m, const double phi[], double start, double *limit)
+{
+  const struct ebb_lattice *lattice = source->lattice;
+  const struct ebb_sheet_request request = {.probability = true};
+  const double top = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+  struct ebb_sheet sheet;
+  double tail[LIMIT_DOUBLINGS + 1] = {0.0};
+
+  PetscFunctionBegin;
+  *limit = 0.0;
+  if (lattice->prescription->grid) PetscFunctionReturn(0);
+  PetscCall(source->evaluate(source, m, phi, &request, &sheet));
+  for (PetscInt s = 0; s < m; s++)
+    for (PetscInt i = 0; i < sheet.local; i++) {
+      const double v = fabs(ebb_lattice_v(lattice, lattice->begin + i));
+      const double weight = v * v * sheet.probability[(size_t)s * (size_t)sheet.local + (size_t)i];
+      double step = start;
+
+      for (int d = 0; d < LIMIT_DOUBLINGS && (d == 0 || v > step); d++) {
+        tail[d] += weight; /* mass beyond start 2^(d-1); d = 0: everything */
+        if (d > 0) step *= 2.0;
+      }
+    }
+  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, tail, LIMIT_DOUBLINGS, MPI_DOUBLE, MPI_SUM, source->comm));
+  for (int d = 1; d < LIMIT_DOUBLINGS; d++)
+    if (tail[d] < NEGLIGIBLE_TAIL * tail[0]) {
+      const double candidate = start * ldexp(1.0, d - 1);
+      if (candidate < top) *limit = candidate;
+      break;
+    }
+  PetscCall(ebb_sheet_clear(&sheet));
+  PetscFunctionReturn(0);
+}
+
+/* Index of the bracket [i, i+1] in which the slope turns from negative to positive at the smallest volume; -1: none. */
+static PetscInt bracket_of(const struct ebb_samples *samples)
+{
+  PetscInt best = -1;
+
+  for (PetscInt i = 0; i + 1 < samples->m; i++) {
+    if (!(samples->slope[i] < 0.0 && samples->slope[i + 1] >= 0.0)) continue;
+    if (best < 0 || fmin(samples->v[i], samples->v[i + 1]) < fmin(samples->v[best], samples->v[best + 1])) best = i;
+  }
+  return best;
+}
+
+/* Looks for a bracket beyond the range on the side the packet comes from: exponential growth away from a bounce means
+ * the turning point is at most ln(v/v_bounce)/kappa away, about where V+ e^X and V- e^-X balance. */
+static PetscErrorCode bracket_outside(struct ebb_source *source, const struct ebb_samples *samples, double *low,
+                                      double *high, bool *found)
+{
+  const double kappa = source->constants->kappa;
+  const bool before = samples->slope[0] > 0.0;
+  double phi = before ? samples->phi[0] : samples->phi[samples->m - 1];
+  double v = before ? samples->v[0] : samples->v[samples->m - 1];
+  double slope = before ? samples->slope[0] : samples->slope[samples->m - 1];
+
+  PetscFunctionBegin;
+  *found = false;
+  for (int i = 0; i < OUTSIDE_TRIES; i++) {
+    const double plus = fmax(v + slope / kappa, 1e-12 * v), minus = fmax(v - slope / kappa, 1e-12 * v);
+    const double away = before ? -0.5 * log(plus / minus) / kappa : 0.5 * log(minus / plus) / kappa;
+    const double next = phi + away + (before ? -0.02 : 0.02) / kappa; /* a little beyond, to bracket it */
+    double next_v, next_slope;
+
+    PetscCall(look(source, 1, &next, 0.0, &next_v, &next_slope));
+    if (before ? next_slope < 0.0 : next_slope >= 0.0) {
+      *low = before ? next : phi;
+      *high = before ? phi : next;
+      *found = true;
+      PetscFunctionReturn(0);
+    }
+    phi = next;
+    v = next_v;
+    slope = next_slope;
+  }
+  PetscFunctionReturn(0);
+}
+
+/* Root of the interpolant through n nodes (barycentric, weights of Chebyshev points of the first kind), by bisection.
+ */
+static double interpolated_root(int n, const double x[], const double f[], double low, double high)
+{
+  for (int step = 0; step < 100; step++) {
+    const double middle = 0.5 * (low + high);
+    double above = 0.0, below = 0.0, value = 0.0;
+    bool hit = false;
+
+    for (int i = 0; i < n; i++) {
+      const double weight = (i % 2 ? -1.0 : 1.0) * sin((2.0 * i + 1.0) * EBB_PI / (2.0 * n));
+      const double distance = middle - x[i];
+
+      if (distance == 0.0) {
+        value = f[i];
+        hit = true;
+        break;
+      }
+      above += weight / distance * f[i];
+      below += weight / distance;
+    }
+    if (!hit) value = above / below;
+    if (value < 0.0)
+      low = middle;
+    else
+      high = middle;
+  }
+  return 0.5 * (low + high);
+}
+
+/* Turning point of the mean in [low, high]. curvature: d^2 v/dphi^2 there. */
+static PetscErrorCode refine_mean(struct ebb_source *source, double low, double high, double v_limit, double *root,
+                                  double *curvature)
+{
+  double x[NODES], f[NODES], near[2], g[2];
+
+  PetscFunctionBegin;
+  for (int i = 0; i < NODES; i++)
+    x[i] = 0.5 * (low + high) - 0.5 * (high - low) * cos((2.0 * i + 1.0) * EBB_PI / (2.0 * NODES));
+  PetscCall(look(source, NODES, x, v_limit, NULL, f));
+  *root = interpolated_root(NODES, x, f, low, high);
+  near[0] = *root - CLOSE * (high - low);
+  near[1] = *root + CLOSE * (high - low);
+  PetscCall(look(source, 2, near, v_limit, NULL, g));
+  *curvature = (g[1] - g[0]) / (near[1] - near[0]);
+  if (*curvature > 0.0) *root = near[0] - g[0] / *curvature;
+  PetscFunctionReturn(0);
+}
+
+/* Minimum of the median between low and high by sections of SECTION points: the median is piecewise smooth (kinks where
+ * it passes a cell edge), so nothing of higher order is used. */
+static PetscErrorCode refine_median(struct ebb_source *source, double low, double high, double v_limit, double *clock,
+                                    struct ebb_value *median)
+{
+  const double level = 0.5, width = high - low;
+  const struct ebb_sheet_request request = {.levels = 1, .level = &level, .v_limit = v_limit};
+
+  PetscFunctionBegin;
+  for (int round = 0; round < SECTIONS; round++) {
+    double phi[SECTION];
+    struct ebb_sheet sheet;
+    PetscInt best = 0;
+
+    for (int i = 0; i < SECTION; i++) phi[i] = low + (high - low) * i / (SECTION - 1);
+    PetscCall(source->evaluate(source, SECTION, phi, &request, &sheet));
+    for (PetscInt i = 1; i < SECTION; i++)
+      if (sheet.quantile[i] < sheet.quantile[best]) best = i;
+    *clock = phi[best];
+    median->value = sheet.quantile[best];
+    {
+      const PetscInt a = PetscMax(best - 1, 0), b = PetscMin(best + 1, SECTION - 1);
+      median->error = fmax(sheet.quantile[a], sheet.quantile[b]) - sheet.quantile[best];
+      low = phi[a];
+      high = phi[b];
+    }
+    PetscCall(ebb_sheet_clear(&sheet));
+    if (high - low < SECTIONED * width) break;
+  }
+  PetscFunctionReturn(0);
+}
+
+/* Did every kept quantile turn between the first and the last sample? -1: not known. */
+static int quantiles_turn(const struct ebb_samples *samples)
+{
+  if (!samples->quantile || samples->levels == 0 || samples->m < 3) return -1;
+  for (size_t q = 0; q < samples->levels; q++) {
+    PetscInt least = 0;
+
+    for (PetscInt s = 1; s < samples->m; s++)
+      if (samples->quantile[(size_t)s * samples->levels + q] < samples->quantile[(size_t)least * samples->levels + q])
+        least = s;
+    if (least == 0 || least == samples->m - 1) return 0;
+  }
+  return 1;
+}
+
+/* Volume, density and mode at the bounce clock, with errors from the budget and the independent rule. */
+static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *check, const struct ebb_budget *budget,
+                                double clock, double v_limit, struct ebb_bounce *bounce, double *check_slope)
+{
+  const struct ebb_sheet_request request = {.v_limit = v_limit};
+  struct ebb_budget local = *budget;
+  struct ebb_sheet sheet, other;
+  double moment[EBB_MOMENTS], error[EBB_MOMENTS], p;
+
+  PetscFunctionBegin;
+  PetscCall(source->evaluate(source, 1, &clock, &request, &sheet));
+  *check_slope = 0.0;
+  if (check) {
+    PetscCall(check->evaluate(check, 1, &clock, &request, &other));
+    ebb_budget_compare(&local, source->constants, source->lattice, &sheet, &other, 0);
+    *check_slope = other.sum[EBB_SUM_SLOPE][0] - sheet.sum[EBB_SUM_SLOPE][0];
+    PetscCall(ebb_sheet_clear(&other));
+  }
+  ebb_moments_from_sums(source->constants, source->lattice, &sheet, 0, moment);
+  ebb_budget_errors(&local, source->constants, source->lattice, &sheet, 0, moment, error);
+  bounce->v = (struct ebb_value){moment[EBB_MOMENT_V_MEAN], error[EBB_MOMENT_V_MEAN]};
+  bounce->density = (struct ebb_value){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
+  bounce->v_mode = (struct ebb_value){
+      sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};
+  p = moment[EBB_MOMENT_MOMENTUM_MEAN];
+  bounce->effective_volume = (struct ebb_value){
+      p * source->constants->volume_unit / sqrt(source->constants->theta_scale),
+      error[EBB_MOMENT_MOMENTUM_MEAN] * source->constants->volume_unit / sqrt(source->constants->theta_scale)};
+  PetscCall(ebb_sheet_clear(&sheet));
+  PetscFunctionReturn(0);
+}
+
+static void derive(const struct ebb_constants *c, struct ebb_bounce *b)
+{
+  b->volume = (struct ebb_value){c->volume_unit * b->v.value, c->volume_unit * b->v.error};
+  b->ratio.value = b->volume.value / b->effective_volume.value;
+  b->ratio.error =
+      b->ratio.value * (b->volume.error / b->volume.value + b->effective_volume.error / b->effective_volume.value);
+  b->effective_density.value = c->newton * c->newton * c->critical_density;
+  b->effective_density.error = 4.0 * PETSC_MACHINE_EPSILON * b->effective_density.value;
+}
+
+static void blank(struct ebb_bounce *bounce)
+{
+  const struct ebb_value none = {NAN, NAN};
+
+  memset(bounce, 0, sizeof *bounce);
+  bounce->verdict = EBB_VERDICT_UNDECIDED;
+  bounce->estimator = "mean";
+  bounce->clock = bounce->v = bounce->volume = bounce->density = bounce->ratio = none;
+  bounce->v_median = bounce->v_mode = bounce->effective_volume = bounce->effective_density = none;
+  bounce->turning_v = NAN;
+}
+
+static PetscErrorCode say(struct ebb_bounce *bounce, enum ebb_verdict verdict, const char *reason)
+{
+  PetscFunctionBegin;
+  bounce->verdict = verdict;
+  PetscCall(PetscStrncpy(bounce->reason, reason, sizeof bounce->reason));
+  PetscFunctionReturn(0);
+}
+
+/* The continuum operator has no turning point; what a grid shows is told apart here. */
+static PetscErrorCode judge_continuum(const struct ebb_lattice *lattice, const struct ebb_samples *samples, bool turned,
+                                      double turning_v, struct ebb_bounce *bounce)
+{
+  char text[512];
+
+  PetscFunctionBegin;
+  if (lattice->prescription->grid) {
+    PetscCall(
+        say(bounce, EBB_VERDICT_NO,
+            !turned || samples->m < 2
+                ? "the mean volume runs through the clock range without a turning point"
+                : "the mean turns, but the lowest quantile runs on towards v = 0: expanding and contracting parts pass "
+                  "each other and neither turns"));
+  } else if (!turned) {
+    PetscCall(say(bounce, EBB_VERDICT_NO, "no turning point in the clock range"));
+  } else {
+    bounce->turning_v = turning_v;
+    PetscCall(PetscSNPrintf(
+        text, sizeof text,
+        "the turning point at v = %.6g is the grid's: a wave exp(ik ln v) turns where the step 4 no longer "
+        "resolves it, v = 2k; the matrix depends on v/step alone, so with step 2 it turns at %.6g and "
+        "with step 1 at %.6g, towards 0 in the continuum",
+        turning_v, 0.5 * turning_v, 0.25 * turning_v));
+    PetscCall(say(bounce, EBB_VERDICT_NO, text));
+  }
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode judge(const struct ebb_samples *samples, const struct ebb_budget *budget, bool mean_exists,
+                            struct ebb_bounce *b)
+{
+  const int turned = quantiles_turn(samples);
+  char text[512];
+
+  PetscFunctionBegin;
+  if (budget->edge_probability > EDGE_ALLOWED) {
+    PetscCall(PetscSNPrintf(text, sizeof text,
+                            "%.2g of the probability lies at the lattice edge, more than %.0e: enlarge "
+                            "lattice.volume_max",
+                            budget->edge_probability, EDGE_ALLOWED));
+    PetscCall(say(b, EBB_VERDICT_UNDECIDED, text));
+  } else if (!(b->v.error <= ERROR_ALLOWED * b->v.value)) {
+    PetscCall(PetscSNPrintf(text, sizeof text, "the bounce volume is known to %.2g only, more than %.0e of it",
+                            b->v.error / b->v.value, ERROR_ALLOWED));
+    PetscCall(say(b, EBB_VERDICT_UNDECIDED, text));
+  } else if (turned == 0 && !b->outside) {
+    PetscCall(
+        say(b, EBB_VERDICT_UNDECIDED,
+            "the mean turns inside the clock range but not every quantile kept does: widen clock.from and clock.to"));
+  } else {
+    PetscCall(PetscSNPrintf(text, sizeof text, "%s volume turns%s%s", mean_exists ? "the mean" : "the median",
+                            b->outside ? " outside the clock range" : "",
+                            turned == 1 ? ", and so does every quantile kept" : ""));
+    PetscCall(say(b, EBB_VERDICT_YES, text));
+  }
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *check, const struct ebb_samples *samples,
+                               const struct ebb_budget *budget, bool mean_exists, struct ebb_bounce *bounce)
+{
+  const struct ebb_lattice *lattice = source->lattice;
+  PetscInt at;
+  bool found;
+  double low, high, root, curvature, limit, median_clock, slope_error, ends[2];
+
+  PetscFunctionBegin;
+  blank(bounce);
+  at = bracket_of(samples);
+  found = at >= 0;
+  if (lattice->prescription->grid) {
+    PetscCall(judge_continuum(lattice, samples, found, NAN, bounce));
+    PetscFunctionReturn(0);
+  }
+  if (found) {
+    low = samples->phi[at];
+    high = samples->phi[at + 1];
+  } else {
+    PetscCall(bracket_outside(source, samples, &low, &high, &found));
+    bounce->outside = found;
+  }
+  if (!found) {
+    PetscCall(
+        say(bounce, EBB_VERDICT_NO, "no turning point in the clock range, nor where the trend of the mean points"));
+    PetscFunctionReturn(0);
+  }
+  ends[0] = low;
+  ends[1] = high;
+  PetscCall(reach(source, 2, ends, at >= 0 ? samples->v[at] : samples->v[0], &limit));
+  PetscCall(refine_mean(source, low, high, limit, &root, &curvature));
+  PetscCall(values_at(source, check, budget, root, limit, bounce, &slope_error));
+  if (lattice->prescription->continuum) {
+    const double turning = bounce->v.value;
+    const bool outside = bounce->outside;
+
+    blank(bounce);
+    bounce->outside = outside;
+    PetscCall(judge_continuum(lattice, samples, true, turning, bounce));
+    PetscFunctionReturn(0);
+  }
+  /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
+  bounce->clock =
+      (struct ebb_value){root, (fabs(slope_error) + bounce->v.error * source->constants->kappa) / curvature +
+                                   4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
+  PetscCall(refine_median(source, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
+  bounce->v_median.error += bounce->v.error / bounce->v.value * bounce->v_median.value + 1e-14 * bounce->v_median.value;
+  if (!mean_exists) {
+    bounce->estimator = "median";
+    PetscCall(values_at(source, check, budget, median_clock, limit, bounce, &slope_error));
+    bounce->clock = (struct ebb_value){median_clock, SECTIONED * 3.0 * (high - low) + bounce->clock.error};
+    bounce->v = bounce->v_median;
+  }
+  derive(source->constants, bounce);
+  PetscCall(judge(samples, budget, mean_exists, bounce));
+  PetscFunctionReturn(0);
+}
