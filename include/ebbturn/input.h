@@ -26,4 +26,7 @@ char *ebb_input_read(const char *path, size_t *length, struct ebb_problems *prob
 /* Choice index of a setting, catalogues of other layers included; NULL past the end. */
 const char *ebb_input_choice(const struct ebb_setting *setting, size_t index);
 
+/* Version of the YAML library. */
+const char *ebb_input_library(void);
+
 #endif

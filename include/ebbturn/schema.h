@@ -23,7 +23,7 @@ enum ebb_type {
 
 /* Which keys of `state` a profile takes: bit i is choice i of state.profile, the last one gaussian_momentum on a grid.
  */
-enum ebb_profile {
+enum ebb_profile_bit {
   EBB_PROFILE_GAUSSIAN_MOMENTUM = 1,
   EBB_PROFILE_GAUSSIAN_LNV = 2,
   EBB_PROFILE_GAUSSIAN_VOLUME = 4,
@@ -66,7 +66,7 @@ struct ebb_setting {
   const char *hint;             /* follows a range message in place of the default */
   const char *sentence;
   const char *source;
-  unsigned profiles, profiles_required; /* bits of enum ebb_profile; keys of `state` only */
+  unsigned profiles, profiles_required; /* bits of enum ebb_profile_bit; keys of `state` only */
   unsigned places, places_required;     /* bits of enum ebb_place; 0: everywhere, nowhere */
   bool input_only;                      /* another way to say a setting: resolved into that one, not stored */
 };

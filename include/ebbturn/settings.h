@@ -90,9 +90,9 @@ void ebb_settings_resolve(struct ebb_settings *settings);
 /* Frees what the settings own (components); accepts zeroed settings. */
 void ebb_settings_clear(struct ebb_settings *settings);
 
-/* The settings that are set, as JSON in the order of the schema, numbers with 17 digits, `auto` and infinity as words,
- * other infinities and nan as "infinity", "-infinity", "nan". As YAML contains JSON, the text is again a model with the same
- * settings (polymer_scale stands for area_gap). Deterministic. malloc'ed; NULL when memory is out. */
+/* The settings that are set, as JSON in the order of the schema: numbers with 17 digits; `auto` and infinity as words,
+ * other infinities and nan as "infinity", "-infinity", "nan". As YAML contains JSON, the text is again a model with the
+ * same settings (polymer_scale stands for area_gap). Deterministic. malloc'ed; NULL when memory is out. */
 char *ebb_settings_json(const struct ebb_settings *settings);
 /* One line per setting: key, value, unit, letter. */
 void ebb_settings_print(const struct ebb_settings *settings, FILE *out);

@@ -1,11 +1,12 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "command_line.h"
 
+#include "ebbturn/input.h"
+
 #include <H5public.h>
 #include <mpi.h>
 #include <petscversion.h>
 #include <slepcversion.h>
-#include <yaml.h>
 
 static void list_commands(FILE *out)
 {
@@ -71,5 +72,5 @@ void ebb_help_version(FILE *out)
 #else
   fprintf(out, "MPI     %d.%d\n", MPI_VERSION, MPI_SUBVERSION);
 #endif
-  fprintf(out, "libyaml %s\n", yaml_get_version_string());
+  fprintf(out, "libyaml %s\n", ebb_input_library());
 }

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "input_tree.h"
 
+#include "ebbturn/input.h"
 #include "ebbturn/text.h"
 
 #include <stdlib.h>
@@ -193,9 +194,14 @@ void ebb_yaml_parse(struct ebb_yaml *yaml, const char *text, size_t length, cons
 {
   struct build build = {
       .yaml = yaml, .text = text, .length = length, .prefix = prefix, .lines = lines, .problems = problems};
+  static const char mark[] = "\xef\xbb\xbf"; /* of byte order: libyaml skips it only where it guesses the encoding */
   enum step step = STEP_ON;
 
   *yaml = (struct ebb_yaml){0};
+  if (length >= sizeof mark - 1 && !memcmp(text, mark, sizeof mark - 1)) {
+    build.text = text += sizeof mark - 1;
+    build.length = length -= sizeof mark - 1;
+  }
   if (length > EBB_YAML_BYTES_MAX) {
     complain(&build, 0, "more than 1 MiB; this is no model file");
     return;
@@ -227,6 +233,8 @@ void ebb_yaml_parse(struct ebb_yaml *yaml, const char *text, size_t length, cons
     yaml->root = NULL;
   }
 }
+
+const char *ebb_input_library(void) { return yaml_get_version_string(); }
 
 void ebb_yaml_clear(struct ebb_yaml *yaml)
 {
