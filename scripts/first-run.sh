@@ -10,7 +10,8 @@ cd "$(dirname "${BASH_SOURCE[0]}")/.."
 jobs=${EBB_JOBS:-2}
 results=build/first-run # the script's own folder: --force overwrites nothing but its own last result
 
-ebb_install "${EBB_PACKAGES[@]}"
+# shellcheck disable=SC2086 # a list of words
+ebb_install $EBB_PACKAGES
 python=$(ebb_python numpy h5py matplotlib)
 
 echo "== configure and build"
@@ -27,7 +28,7 @@ build/ebbturn evolve inputs/first_bounce.yaml -o "$results/first_bounce.h5" --fo
 ((verdict <= 1)) || exit "$verdict"
 
 echo "== draw"
-MPLBACKEND=Agg "$python" scripts/plot_bounce.py "$results/first_bounce.h5" -o "$results/first_bounce.png"
+MPLBACKEND=Agg "$python" scripts/plot_bounce.py "$results/first_bounce.h5" -o "$results/first_bounce"
 
 cat <<END
 

@@ -16,7 +16,8 @@ case $preset in
   *) folder=build-$preset ;;
 esac
 
-ebb_install "${EBB_PACKAGES[@]}" "${EBB_TEST_PACKAGES[@]}"
+# shellcheck disable=SC2086 # lists of words
+ebb_install $EBB_PACKAGES $EBB_TEST_PACKAGES
 
 echo "== configure ($preset)"
 cmake --preset "$preset" -DEBB_TESTS=ON -DEBB_FUZZ=ON
