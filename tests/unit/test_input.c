@@ -3,7 +3,6 @@
  * Good models: defaults, every decision about scalars, overrides, profiles, JSON. Bad ones: tests/cli/bad_models.h. */
 #include "ebbturn/constants.h"
 #include "ebbturn/input.h"
-#include "ebbturn/operators.h"
 
 #include "support/start.h"
 
@@ -443,58 +442,4 @@ Test(input, the_print_names_every_setting_with_its_unit)
   cr_expect_not_null(strstr(text, "lambda"));
   free(text);
   ebb_settings_clear(&s);
-}
-
-/* The schema is data: what the code relies on is checked for every row. */
-Test(schema, every_row_is_sound)
-{
-  for (size_t i = 0; i < ebb_setting_count(); i++) {
-    const struct ebb_setting *row = ebb_setting_at(i);
-
-    cr_expect_eq(ebb_setting_find(row->key), row);
-    cr_expect(row->sentence && row->sentence[0], "%s", row->key);
-    cr_expect_lt(strlen(row->key), EBB_NAME_MAX);
-    cr_expect(row->choices || row->catalogue || (row->type != EBB_TYPE_NAME && row->type != EBB_TYPE_FLAGS), "%s",
-              row->key);
-    cr_expect(row->unit || (row->type != EBB_TYPE_REAL && row->type != EBB_TYPE_INTEGER), "%s", row->key);
-    if (row->type == EBB_TYPE_INTEGER) /* 0 stands for "not given", and int holds every value */
-      cr_expect(row->range.low >= 1 && row->range.high <= 2147483647.0, "%s", row->key);
-    cr_expect_eq(row->profiles_required & ~row->profiles, 0, "%s", row->key);
-    cr_expect_eq(ebb_setting_of_state(row), row->profiles != 0, "%s", row->key);
-    for (size_t j = 0; row->choices && row->choices[j]; j++) cr_expect_lt(strlen(row->choices[j]), EBB_NAME_MAX);
-    for (size_t j = i + 1; j < ebb_setting_count(); j++) { /* the rows of a section stand together */
-      const size_t length = ebb_setting_section(row);
-      const bool same =
-          length == ebb_setting_section(ebb_setting_at(j)) && !strncmp(row->key, ebb_setting_at(j)->key, length);
-
-      cr_expect(!same || length == 0 || !strncmp(row->key, ebb_setting_at(j - 1)->key, length + 1), "%s", row->key);
-    }
-  }
-}
-
-/* A default that could not be assigned would leave the setting as not given: JSON would lack it. */
-Test(schema, every_default_is_accepted_as_an_input)
-{
-  for (size_t i = 0; i < ebb_setting_count(); i++) {
-    const struct ebb_setting *row = ebb_setting_at(i);
-    char set[256], message[256];
-    struct ebb_settings s;
-
-    if (!row->fallback || ebb_setting_of_state(row) || (row->places & EBB_ON_GRID)) continue;
-    snprintf(set, sizeof set, "%s=%s", row->key, row->fallback[0] ? row->fallback : "''");
-    cr_expect(parse(CLOCK STATE, (const char *const[]){set, NULL}, NEED_ALL, &s, message), "%s: %s", set, message);
-    ebb_settings_clear(&s);
-  }
-  cr_expect_not_null(ebb_prescription_find(ebb_setting_find("gravity.prescription")->fallback));
-}
-
-Test(schema, profile_bits_follow_the_choices)
-{
-  cr_expect_eq(ebb_profile_bit("gaussian_momentum"), EBB_PROFILE_GAUSSIAN_MOMENTUM);
-  cr_expect_eq(ebb_profile_bit("gaussian_lnv"), EBB_PROFILE_GAUSSIAN_LNV);
-  cr_expect_eq(ebb_profile_bit("gaussian_volume"), EBB_PROFILE_GAUSSIAN_VOLUME);
-  cr_expect_eq(ebb_profile_bit("from_effective"), EBB_PROFILE_FROM_EFFECTIVE);
-  cr_expect_eq(ebb_profile_bit("superposition"), EBB_PROFILE_SUPERPOSITION);
-  cr_expect_eq(ebb_profile_bit("file"), EBB_PROFILE_FILE);
-  cr_expect_eq(ebb_profile_bit("x"), 0);
 }
