@@ -240,10 +240,12 @@ static PetscErrorCode read_back(struct ebb_store *s)
 static PetscErrorCode publish(struct ebb_store *s)
 {
   char copy[EBB_STORE_PATH_MAX];
+  struct stat size;
   int folder;
 
   PetscFunctionBegin;
   EBB_QUIETLY(read_back(s));
+  if (!fstat(s->part_fd, &size)) (void)!ftruncate(s->part_fd, size.st_size); /* gives back room beyond the end */
   if (fsync(s->part_fd)) PetscFunctionReturn(ebb_store_fail(s, PETSC_ERR_FILE_WRITE, strerror(errno), "finish"));
   if (rename(s->part, s->path)) {
     PetscFunctionReturn(ebb_store_fail(s, PETSC_ERR_FILE_WRITE, strerror(errno), "finish"));

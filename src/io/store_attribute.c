@@ -95,11 +95,13 @@ enum attribute_kind { ATTRIBUTE_TEXT, ATTRIBUTE_REAL, ATTRIBUTE_INTEGER };
 static PetscErrorCode set_attribute(struct ebb_store *store, const char *object, const char *name,
                                     enum attribute_kind kind, const void *value)
 {
+  double bytes = kind == ATTRIBUTE_TEXT ? (double)strlen(value) : sizeof(double);
   PetscErrorCode code = 0;
   hid_t id;
   herr_t e = -1;
 
   PetscFunctionBegin;
+  EBB_QUIETLY(ebb_store_reserve(store, bytes, name));
   if (!ebb_store_exists(store->file, object)) code = ebb_store_group(store, object);
   if (!code) {
     id = H5Oopen(store->file, object, H5P_DEFAULT);

@@ -2,16 +2,10 @@
  *
  * Datasets: defining and writing. Contiguous, allocated and filled with NaN when defined, so that a full disk is met
  * before the computation and a block nobody wrote is seen. */
-#ifndef _GNU_SOURCE
-#define _GNU_SOURCE /* fallocate */
-#endif
 #include "store_impl.h"
 
-#include <errno.h>
-#include <fcntl.h>
 #include <math.h>
 #include <string.h>
-#include <unistd.h>
 
 /* Bytes given to HDF5 at once: MPI counts are ints, and HDF5 1.10 passes a contiguous transfer on as one count. */
 enum { TRANSFER_MAX = 1 << 30 };
@@ -47,28 +41,6 @@ static hid_t creation_list(const struct ebb_store *store, bool is_complex)
   }
   (void)H5Pclose(list);
   return H5I_INVALID_HID;
-}
-
-/* Rank 0 asks the file system for the room first, where it can: a refusal there is a plain error before HDF5 has
- * changed anything, whereas one inside HDF5 leaves the ranks with different pictures of the file. */
-static PetscErrorCode reserve(struct ebb_store *store, const struct ebb_dataset *what)
-{
-#ifdef FALLOC_FL_KEEP_SIZE
-  enum { MARGIN = 1 << 16 }; /* headers and heaps that come along */
-  off_t bytes = what->is_complex ? 2 * sizeof(double) : sizeof(double), end;
-
-  PetscFunctionBegin;
-  for (int d = 0; d < what->rank; d++) bytes *= (off_t)what->extent[d];
-  end = lseek(store->part_fd, 0, SEEK_END);
-  if (end >= 0 && fallocate(store->part_fd, FALLOC_FL_KEEP_SIZE, end, bytes + MARGIN) &&
-      (errno == ENOSPC || errno == EDQUOT || errno == EFBIG)) {
-    PetscFunctionReturn(ebb_store_fail(store, PETSC_ERR_FILE_WRITE, strerror(errno), "make room for '%s' (%.3g MB) in",
-                                       what->path, 1e-6 * (double)bytes));
-  }
-#else
-  PetscFunctionBegin;
-#endif
-  PetscFunctionReturn(0);
 }
 
 /* Everything about a new dataset that is open: words and scales. */
@@ -116,9 +88,12 @@ static PetscErrorCode define_local(struct ebb_store *store, const struct ebb_dat
 
 PetscErrorCode ebb_store_define(struct ebb_store *store, const struct ebb_dataset *dataset)
 {
+  double bytes = dataset->is_complex ? 2 * sizeof(double) : sizeof(double);
+
   PetscFunctionBegin;
   EBB_QUIETLY(ebb_store_writable(store));
-  EBB_QUIETLY(ebb_store_agree(store, store->rank == 0 ? reserve(store, dataset) : 0));
+  for (int d = 0; d < dataset->rank; d++) bytes *= (double)dataset->extent[d];
+  EBB_QUIETLY(ebb_store_reserve(store, bytes, dataset->path));
   EBB_QUIETLY(ebb_store_agree(store, define_local(store, dataset)));
   PetscFunctionReturn(0);
 }

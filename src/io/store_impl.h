@@ -19,6 +19,7 @@ struct ebb_store {
   hid_t complex_memory;    /* {r, i} as doubles in memory */
   hid_t complex_committed; /* the same as named type of the file; H5I_INVALID_HID until a complex dataset needs it */
   int part_fd;             /* rank 0: holds the lock on the part file and is synced at commit; otherwise -1 */
+  off_t reserved;          /* rank 0: bytes the file system has promised (store_room.c) */
   bool writing;
   bool broken; /* a write failed: the ranks' pictures of the file may differ, so HDF5 is not asked again */
 };
@@ -41,6 +42,9 @@ void ebb_store_forget(void);
 
 /* What was asked of a store that is no longer, or never was, open for writing: 0 when it may be written. Collective. */
 PetscErrorCode ebb_store_writable(struct ebb_store *store);
+
+/* Makes sure of so many more bytes in the file system; what: for the message. Collective and agreed. */
+PetscErrorCode ebb_store_reserve(struct ebb_store *store, double bytes, const char *what);
 
 /* Creates the group and its parents where missing. Collective, not agreed. */
 PetscErrorCode ebb_store_group(struct ebb_store *store, const char *path);
