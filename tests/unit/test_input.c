@@ -345,6 +345,8 @@ Test(input, overrides_follow_the_same_rules)
       {{"state.v0=1"},
        "--set 'state.v0=1': state.v0 does not belong to profile 'gaussian_momentum', which takes "
        "momentum, relative_spread, bounce_at, squeeze, channel"},
+      {{"gravity.area_gap=4", "gravity.polymer_scale=2"},
+       "--set 'gravity.area_gap=4': gravity.area_gap is the square of gravity.polymer_scale; give at most one of them"},
       {{"clock.to=-2"}, "--set 'clock.to=-2': clock.to = -2 1/sqrt(G) must be above clock.from = -1 1/sqrt(G)"},
       {{"clock.to=[1"},
        "--set 'clock.to=[1': not valid YAML: did not find expected ',' or ']' while parsing a flow sequence"},
