@@ -64,7 +64,7 @@ static herr_t visit_error(unsigned depth, const H5E_error2_t *error, void *conte
 
 PetscErrorCode ebb_store_fail(struct ebb_store *store, PetscErrorCode code, const char *cause, const char *doing, ...)
 {
-  char innermost[EBB_STORE_REASON_MAX] = "", action[EBB_STORE_REASON_MAX / 4];
+  char innermost[EBB_STORE_REASON_MAX + 32] = "", action[EBB_STORE_REASON_MAX / 4];
   va_list arguments;
 
   va_start(arguments, doing);
@@ -72,6 +72,8 @@ PetscErrorCode ebb_store_fail(struct ebb_store *store, PetscErrorCode code, cons
   va_end(arguments);
   if (!cause) (void)H5Ewalk2(H5E_DEFAULT, H5E_WALK_UPWARD, visit_error, innermost);
   (void)H5Eclear2(H5E_DEFAULT);
+  /* What HDF5 cannot read of a file that opened is damage; its words alone do not say so. */
+  if (!cause && !store->writing) strcat(innermost, innermost[0] ? "; the file is damaged" : "the file is damaged");
   if (!cause) cause = innermost[0] ? innermost : "HDF5 gives no reason";
   ebb_store_say("cannot %s '%s': %.*s", action, store->path, EBB_STORE_REASON_MAX / 2, cause);
   if (store->writing) store->broken = true;
