@@ -17,6 +17,9 @@ set(CMAKE_C_FLAGS_DEBUG "-Og -g")
 add_library(ebb_options INTERFACE)
 # One rounding per operation: a contracted multiply-add makes results depend on the compiler.
 target_compile_options(ebb_options INTERFACE -Wall -Wextra -Wpedantic -ffp-contract=off $<$<BOOL:${EBB_WERROR}>:-Werror>)
+# gcc without its full optimisation, and more so with sanitizers, sees uninitialised variables behind every PetscCall.
+target_compile_options(ebb_options INTERFACE
+                       $<$<AND:$<C_COMPILER_ID:GNU>,$<CONFIG:Debug>>:-Wno-maybe-uninitialized>)
 # POSIX 2008 and M_PI beside strict C17.
 target_compile_definitions(ebb_options INTERFACE _XOPEN_SOURCE=700 "EBB_VERSION=\"${PROJECT_VERSION}\"")
 
