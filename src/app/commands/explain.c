@@ -2,6 +2,8 @@
 #include "ebbturn/command.h"
 #include "ebbturn/input.h"
 #include "ebbturn/operators.h"
+#include "ebbturn/propagator.h"
+#include "ebbturn/state.h"
 
 #include <string.h>
 
@@ -10,9 +12,11 @@ static int run(const struct ebb_invocation *invocation);
 const struct ebb_command ebb_command_explain = {
     .name = "explain",
     .synopsis = "NAME",
-    .summary = "say everything about one prescription or setting",
-    .help = "NAME is a prescription (slqc) or the key of a setting (gravity.immirzi). For a prescription: formula,\n"
-            "source and the settings that matter; for a setting: letter, unit, type, range, default and source.",
+    .summary = "say everything about one entry of a catalogue or one setting",
+    .help =
+        "NAME is a prescription (slqc), a profile (gaussian_momentum), a propagator (modes) or the key of a setting\n"
+        "(gravity.immirzi). For an entry of a catalogue: formula, source and the settings that matter; for a setting:\n"
+        "letter, unit, type, range, default and source.",
     .operands_min = 1,
     .operands_max = 1,
     .options = EBB_OPTION_BIBTEX,
@@ -102,15 +106,20 @@ static void explain_setting(const struct ebb_setting *setting)
   if (setting->source) row("source", setting->source);
 }
 
+static void explain_entry(const char *name, const char *title, const char *formula, const char *source)
+{
+  printf("%s: %s\n", name, title);
+  if (formula) row("formula", formula);
+  if (source) row("source", source);
+}
+
 /* Keys of the lattice and the state depend on the kind of lattice; those of gravity and clock matter to everyone. */
 static void explain_prescription(const struct ebb_prescription *prescription)
 {
   const unsigned here = prescription->grid ? EBB_ON_GRID : EBB_ON_VOLUME;
   const char *name = "settings";
 
-  printf("%s: %s\n", prescription->name, prescription->title);
-  row("formula", prescription->formula);
-  row("source", prescription->source);
+  explain_entry(prescription->name, prescription->title, prescription->formula, prescription->source);
   for (size_t i = 0; i < ebb_setting_count(); i++) {
     const struct ebb_setting *setting = ebb_setting_at(i);
     const unsigned places = setting->places & (EBB_ON_GRID | EBB_ON_VOLUME);
@@ -120,6 +129,40 @@ static void explain_prescription(const struct ebb_prescription *prescription)
     row(name, setting->key);
     name = "";
   }
+}
+
+static void explain_profile(const struct ebb_profile *profile)
+{
+  const unsigned bit = ebb_profile_bit(profile->name);
+  const char *name = "settings";
+
+  explain_entry(profile->name, profile->title, profile->formula, profile->source);
+  for (size_t i = 0; i < ebb_setting_count(); i++) {
+    const struct ebb_setting *setting = ebb_setting_at(i);
+
+    if (!(setting->profiles & bit) || setting->profiles == EBB_PROFILE_ALL) continue;
+    row(name, setting->key);
+    name = "";
+  }
+}
+
+/* True where the name is one of a catalogue or a setting, and was explained. */
+static bool explain(const char *name)
+{
+  const struct ebb_prescription *prescription = ebb_prescription_find(name);
+  const struct ebb_profile *profile = ebb_profile_find(name);
+  const struct ebb_propagator *propagator = ebb_propagator_find(name);
+  const struct ebb_setting *setting = ebb_setting_find(name);
+
+  if (prescription)
+    explain_prescription(prescription);
+  else if (profile)
+    explain_profile(profile);
+  else if (propagator)
+    explain_entry(name, propagator->title, propagator->formula, propagator->source);
+  else if (setting)
+    explain_setting(setting);
+  return prescription || profile || propagator || setting;
 }
 
 static int complain(const char *before, const char *word, const char *after, const char *nearest)
@@ -134,24 +177,14 @@ static int complain(const char *before, const char *word, const char *after, con
   return EBB_EXIT_USAGE;
 }
 
-static int run(const struct ebb_invocation *invocation)
+static int complain_of_unknown(const char *name)
 {
-  const char *name = invocation->operand[0];
-  const struct ebb_prescription *prescription = ebb_prescription_find(name);
-  const struct ebb_setting *setting = ebb_setting_find(name);
   struct ebb_nearest nearest;
 
-  if (prescription && invocation->bibtex)
-    printf("%s\n", prescription->bibtex);
-  else if (prescription)
-    explain_prescription(prescription);
-  else if (setting && invocation->bibtex)
-    return complain("", name, " is a setting; only prescriptions have a BibTeX entry", NULL);
-  else if (setting)
-    explain_setting(setting);
-  if (prescription || setting) return EBB_EXIT_OK;
   ebb_nearest_start(&nearest, name);
   for (size_t i = 0; i < ebb_prescriptions(); i++) ebb_nearest_try(&nearest, ebb_prescription_at(i)->name);
+  for (size_t i = 0; i < ebb_profiles(); i++) ebb_nearest_try(&nearest, ebb_profile_at(i)->name);
+  for (size_t i = 0; i < ebb_propagators(); i++) ebb_nearest_try(&nearest, ebb_propagator_at(i)->name);
   for (size_t i = 0; i < ebb_setting_count(); i++) {
     /* a bare last part, `immirzi`, points at its key */
     if (!strcmp(ebb_setting_leaf(ebb_setting_at(i)), name))
@@ -159,4 +192,19 @@ static int run(const struct ebb_invocation *invocation)
     ebb_nearest_try(&nearest, ebb_setting_at(i)->key);
   }
   return complain("unknown name ", name, "", ebb_nearest_word(&nearest));
+}
+
+static int run(const struct ebb_invocation *invocation)
+{
+  const char *name = invocation->operand[0];
+  const struct ebb_prescription *prescription = ebb_prescription_find(name);
+
+  if (!invocation->bibtex) return explain(name) ? EBB_EXIT_OK : complain_of_unknown(name);
+  if (prescription) {
+    printf("%s\n", prescription->bibtex);
+    return EBB_EXIT_OK;
+  }
+  if (ebb_setting_find(name) || ebb_profile_find(name) || ebb_propagator_find(name))
+    return complain("", name, " has no BibTeX entry; prescriptions have one", NULL);
+  return complain_of_unknown(name);
 }

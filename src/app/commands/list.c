@@ -2,6 +2,8 @@
 #include "ebbturn/command.h"
 #include "ebbturn/input.h"
 #include "ebbturn/operators.h"
+#include "ebbturn/propagator.h"
+#include "ebbturn/state.h"
 
 #include <string.h>
 
@@ -23,16 +25,28 @@ static void list_prescriptions(void)
     printf("  %-20s %s\n", ebb_prescription_at(i)->name, ebb_prescription_at(i)->title);
 }
 
-static void list_choices(const char *key)
+static void list_profiles(void)
 {
-  const struct ebb_setting *setting = ebb_setting_find(key);
-
-  for (size_t i = 0; ebb_input_choice(setting, i); i++) printf("  %s\n", ebb_input_choice(setting, i));
+  for (size_t i = 0; i < ebb_profiles(); i++) printf("  %-20s %s\n", ebb_profile_at(i)->name, ebb_profile_at(i)->title);
 }
 
-static void list_profiles(void) { list_choices("state.profile"); }
-static void list_clocks(void) { list_choices("clock.kind"); }
-static void list_propagators(void) { list_choices("numerics.propagator"); }
+static void list_propagators(void)
+{
+  const struct ebb_setting *setting = ebb_setting_find("numerics.propagator");
+
+  for (size_t i = 0; ebb_setting_choice(setting, i); i++) {
+    const struct ebb_propagator *one = ebb_propagator_find(ebb_setting_choice(setting, i));
+
+    printf("  %-20s %s\n", ebb_setting_choice(setting, i), one ? one->title : "the program chooses and says why");
+  }
+}
+
+static void list_clocks(void)
+{
+  const struct ebb_setting *setting = ebb_setting_find("clock.kind");
+
+  for (size_t i = 0; ebb_setting_choice(setting, i); i++) printf("  %s\n", ebb_setting_choice(setting, i));
+}
 
 static void list_commands(void)
 {
