@@ -118,4 +118,22 @@ extern const struct ebb_moment_info ebb_moment_table[EBB_MOMENTS];
 void ebb_moments_from_sums(const struct ebb_constants *constants, const struct ebb_lattice *lattice,
                            const struct ebb_sheet *sheet, PetscInt s, double moment[EBB_MOMENTS]);
 
+struct ebb_propagator;
+
+/* Source that steps, from the state `start` (a packet, needed during this call only) at clock value phi0. tolerance: of
+ * the moments; kind: a propagator that steps. Samples are best asked for in order, either way; a value near the
+ * smallest mean volume seen, or near phi0, is reached from a state kept there. Collective. Memory: 200 to 450 bytes per
+ * site. Cost: 2 |phi - phi'| sqrt(Theta_max) applications of Theta from one sample to the next. */
+PetscErrorCode ebb_source_steps_create(struct ebb_source *source, const struct ebb_packet *start, double phi0,
+                                       const struct ebb_propagator *kind, double tolerance,
+                                       const struct ebb_lattice *lattice, const struct ebb_constants *constants,
+                                       MPI_Comm comm);
+/* Before the first evaluate: leaves out Theta^{-1/4} psi, which halves the cost; EBB_SUM_INVERSE and EBB_SUM_DRESSED
+ * are 0 then. */
+void ebb_source_steps_plain(struct ebb_source *source);
+/* Largest error of a state evaluated so far, relative to its norm: what the propagator reports, summed over the steps
+ * that led there, and the relative drift of <psi|psi>, <psi|sqrt(Theta) psi> and <Theta>. */
+double ebb_source_steps_error(const struct ebb_source *source);
+PetscErrorCode ebb_source_steps_destroy(struct ebb_source *source);
+
 #endif

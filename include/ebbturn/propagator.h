@@ -31,8 +31,8 @@ size_t ebb_propagators(void);
 const struct ebb_propagator *ebb_propagator_at(size_t index);
 const struct ebb_propagator *ebb_propagator_find(const char *name); /* NULL when there is none */
 
-/* kind must step, op must have a spectrum in [0, high]; op is not owned. tolerance: error per step asked for, relative
- * to the norm. Collective. */
+/* kind must step, op must have a spectrum in [0, high]; op is not owned. tolerance: of the whole evolution, relative
+ * to the norm; a step uses a thousandth of it. Collective. */
 PetscErrorCode ebb_stepper_create(const struct ebb_propagator *kind, const struct ebb_operator *op, double tolerance,
                                   struct ebb_stepper **stepper);
 /* psi, root: [local]. Collective. Cost: |t| sqrt(high) applications of Theta in all for chebyshev, however large t. */
