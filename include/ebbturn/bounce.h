@@ -10,7 +10,7 @@
 enum ebb_verdict { EBB_VERDICT_NO, EBB_VERDICT_YES, EBB_VERDICT_UNDECIDED };
 extern const char *const ebb_verdict_names[]; /* "no", "yes", "undecided" */
 
-struct ebb_value {
+struct ebb_measured {
   double value, error; /* error absolute */
 };
 
@@ -19,7 +19,7 @@ struct ebb_bounce {
   char reason[512];
   const char *estimator; /* "mean" or "median" */
   bool outside;          /* the turning point lies outside the clock range */
-  struct ebb_value clock, v, volume, density, ratio, v_median, v_mode, effective_volume, effective_density;
+  struct ebb_measured clock, v, volume, density, ratio, v_median, v_mode, effective_volume, effective_density;
   double turning_v; /* continuum operators on a lattice: where the grid turns the packet; NAN otherwise */
 };
 
@@ -47,8 +47,8 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
  * 2 sd(Re digamma(1 + ik)); ln v(phi) + ln v(-phi) - 2 kappa phi -> lnv_sum = 2 <Re digamma(1 + ik)>
  * (Kaminski, Pawlowski, arXiv:1001.2663). */
 struct ebb_law {
-  struct ebb_value v_plus, v_minus, d_plus, d_minus, clock, v_min;
-  struct ebb_value recall_bound, lnv_sum, v_bound;
+  struct ebb_measured v_plus, v_minus, d_plus, d_minus, clock, v_min;
+  struct ebb_measured recall_bound, lnv_sum, v_bound;
   double residual;
 };
 PetscErrorCode ebb_law_find(struct ebb_source *source, const struct ebb_packet *packet,

@@ -17,12 +17,14 @@ enum ebb_contribution {
 extern const char *const ebb_contribution_names[EBB_CONTRIBUTIONS];
 extern const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS];
 
+enum { EBB_DRIFTS = 12 };
+
 struct ebb_budget {
   double quadrature[EBB_MOMENTS];  /* relative (absolute over the moment's scale where it may vanish) */
   double quadrature_quantile;      /* relative */
-  double drift;                    /* of the recursion */
+  double drift_v[EBB_DRIFTS];      /* volumes, ascending, at which the recursion was compared with the waves */
+  double drift[EBB_DRIFTS];        /* largest relative difference up to there */
   double propagation;              /* relative error of the state vector */
-  double rounding;                 /* relative */
   double worst[EBB_CONTRIBUTIONS]; /* largest relative error of the mean volume seen so far, per contribution */
   double edge_probability;         /* largest P(v > 0.9 v_max) seen so far */
 };
@@ -33,6 +35,9 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *co
                        const double moment[EBB_MOMENTS], double error[EBB_MOMENTS]);
 /* Absolute error of a quantile q of sample s. density: probability per unit v there. */
 double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_sheet *sheet, PetscInt s, double q);
+/* Measures the drift of a packet's recursion at volumes from the matching one to the last site. Collective. */
+PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct ebb_packet *packet,
+                                        const struct ebb_lattice *lattice, MPI_Comm comm);
 /* Measures the quadrature contribution: moments (and quantiles) of the same samples from the two rules. */
 void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *constants,
                         const struct ebb_lattice *lattice, const struct ebb_sheet *rule, const struct ebb_sheet *check,

@@ -34,6 +34,8 @@ enum ebb_sum {
   EBB_SUM_INNER_V,    /* the same three sums over the window of the same ratio below it */
   EBB_SUM_INNER_V2,
   EBB_SUM_INNER_0,
+  EBB_SUM_EDGE_DRESSED, /* |v|^{4/3} |Theta^{-1/4} psi|^2 over the last window, and over the one below */
+  EBB_SUM_INNER_DRESSED,
   EBB_SUMS
 };
 #define EBB_EDGE_RATIO 1.15
@@ -104,6 +106,7 @@ enum ebb_moment {
   EBB_MOMENT_HUBBLE_SPREAD,
   EBB_MOMENT_INVERSE_MOMENTUM_MEAN,
   EBB_MOMENT_DRESSED_A4,
+  EBB_MOMENT_THETA_MEAN,
   EBB_MOMENTS
 };
 struct ebb_moment_info {

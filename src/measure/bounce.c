@@ -95,7 +95,7 @@ static PetscErrorCode bracket_outside(struct ebb_source *source, const struct eb
     const double plus = fmax(v + slope / kappa, 1e-12 * v), minus = fmax(v - slope / kappa, 1e-12 * v);
     const double away = before ? -0.5 * log(plus / minus) / kappa : 0.5 * log(minus / plus) / kappa;
     const double next = phi + away + (before ? -0.02 : 0.02) / kappa; /* a little beyond, to bracket it */
-    double next_v, next_slope;
+    double next_v = NAN, next_slope = NAN;
 
     PetscCall(look(source, 1, &next, 0.0, &next_v, &next_slope));
     if (before ? next_slope < 0.0 : next_slope >= 0.0) {
@@ -145,7 +145,7 @@ static double interpolated_root(int n, const double x[], const double f[], doubl
 static PetscErrorCode refine_mean(struct ebb_source *source, double low, double high, double v_limit, double *root,
                                   double *curvature)
 {
-  double x[NODES], f[NODES], near[2], g[2];
+  double x[NODES], f[NODES], near[2], g[2] = {NAN, NAN};
 
   PetscFunctionBegin;
   for (int i = 0; i < NODES; i++)
@@ -163,7 +163,7 @@ static PetscErrorCode refine_mean(struct ebb_source *source, double low, double 
 /* Minimum of the median between low and high by sections of SECTION points: the median is piecewise smooth (kinks where
  * it passes a cell edge), so nothing of higher order is used. */
 static PetscErrorCode refine_median(struct ebb_source *source, double low, double high, double v_limit, double *clock,
-                                    struct ebb_value *median)
+                                    struct ebb_measured *median)
 {
   const double level = 0.5, width = high - low;
   const struct ebb_sheet_request request = {.levels = 1, .level = &level, .v_limit = v_limit};
@@ -227,12 +227,12 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
   }
   ebb_moments_from_sums(source->constants, source->lattice, &sheet, 0, moment);
   ebb_budget_errors(&local, source->constants, source->lattice, &sheet, 0, moment, error);
-  bounce->v = (struct ebb_value){moment[EBB_MOMENT_V_MEAN], error[EBB_MOMENT_V_MEAN]};
-  bounce->density = (struct ebb_value){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
-  bounce->v_mode = (struct ebb_value){
+  bounce->v = (struct ebb_measured){moment[EBB_MOMENT_V_MEAN], error[EBB_MOMENT_V_MEAN]};
+  bounce->density = (struct ebb_measured){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
+  bounce->v_mode = (struct ebb_measured){
       sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};
   p = moment[EBB_MOMENT_MOMENTUM_MEAN];
-  bounce->effective_volume = (struct ebb_value){
+  bounce->effective_volume = (struct ebb_measured){
       p * source->constants->volume_unit / sqrt(source->constants->theta_scale),
       error[EBB_MOMENT_MOMENTUM_MEAN] * source->constants->volume_unit / sqrt(source->constants->theta_scale)};
   PetscCall(ebb_sheet_clear(&sheet));
@@ -241,7 +241,7 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
 
 static void derive(const struct ebb_constants *c, struct ebb_bounce *b)
 {
-  b->volume = (struct ebb_value){c->volume_unit * b->v.value, c->volume_unit * b->v.error};
+  b->volume = (struct ebb_measured){c->volume_unit * b->v.value, c->volume_unit * b->v.error};
   b->ratio.value = b->volume.value / b->effective_volume.value;
   b->ratio.error =
       b->ratio.value * (b->volume.error / b->volume.value + b->effective_volume.error / b->effective_volume.value);
@@ -251,7 +251,7 @@ static void derive(const struct ebb_constants *c, struct ebb_bounce *b)
 
 static void blank(struct ebb_bounce *bounce)
 {
-  const struct ebb_value none = {NAN, NAN};
+  const struct ebb_measured none = {NAN, NAN};
 
   memset(bounce, 0, sizeof *bounce);
   bounce->verdict = EBB_VERDICT_UNDECIDED;
@@ -334,7 +334,8 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   const struct ebb_lattice *lattice = source->lattice;
   PetscInt at;
   bool found;
-  double low, high, root, curvature, limit, median_clock, slope_error, ends[2];
+  double low = NAN, high = NAN, root = NAN, curvature = NAN, limit = 0.0, median_clock = NAN, slope_error = 0.0,
+         ends[2];
 
   PetscFunctionBegin;
   blank(bounce);
@@ -372,14 +373,14 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   }
   /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
   bounce->clock =
-      (struct ebb_value){root, (fabs(slope_error) + bounce->v.error * source->constants->kappa) / curvature +
-                                   4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
+      (struct ebb_measured){root, (fabs(slope_error) + bounce->v.error * source->constants->kappa) / curvature +
+                                      4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
   PetscCall(refine_median(source, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   bounce->v_median.error += bounce->v.error / bounce->v.value * bounce->v_median.value + 1e-14 * bounce->v_median.value;
   if (!mean_exists) {
     bounce->estimator = "median";
     PetscCall(values_at(source, check, budget, median_clock, limit, bounce, &slope_error));
-    bounce->clock = (struct ebb_value){median_clock, SECTIONED * 3.0 * (high - low) + bounce->clock.error};
+    bounce->clock = (struct ebb_measured){median_clock, SECTIONED * 3.0 * (high - low) + bounce->clock.error};
     bounce->v = bounce->v_median;
   }
   derive(source->constants, bounce);

@@ -43,6 +43,100 @@ static double beyond(double last, double inner)
   return r < SLOW / (1.0 + SLOW) ? last * r / (1.0 - r) : last * SLOW;
 }
 
+/* Drift of the recursion where the packet of a sample lies: up to REACH spreads above its mean. */
+static double drift_of(const struct ebb_budget *budget, double v, double spread)
+{
+  static const double REACH = 6.0;
+  double drift = budget->drift[0];
+
+  for (int i = 1; i < EBB_DRIFTS && budget->drift_v[i - 1] < v + REACH * spread; i++)
+    drift = fmax(drift, budget->drift[i]);
+  return drift;
+}
+
+/* Rounding of a sum whose terms spread over many sites: a random walk of one rounding per site that matters. */
+static double rounding_of(double spread)
+{
+  static const double WIDTH = 6.0, STEP = 4.0;
+  return 2.0 * PETSC_MACHINE_EPSILON * (2.0 + sqrt(WIDTH * spread / STEP));
+}
+
+/* Largest |<e_j|e_j> - 1| and |<e_j|e_j+1>| over all vectors; the same on every rank, as every rank holds them all. */
+static PetscErrorCode measure_orthonormality(const struct ebb_packet *packet, const struct ebb_lattice *lattice,
+                                             double *worst)
+{
+  enum { ROWS = 64 };
+  const PetscInt n = packet->n;
+  double *rows, *own, *next;
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc1((size_t)ROWS * (size_t)n, &rows));
+  PetscCall(PetscCalloc1(n, &own));
+  PetscCall(PetscCalloc1(n, &next));
+  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+    struct ebb_cursor *cursor;
+
+    PetscCall(ebb_cursor_open(packet->basis, arm, 0, &cursor));
+    for (PetscInt i = 0; i < lattice->sites[arm]; i += ROWS) {
+      const PetscInt count = PetscMin(ROWS, lattice->sites[arm] - i);
+
+      ebb_cursor_next(cursor, count, rows);
+      for (PetscInt r = 0; r < count; r++)
+        for (PetscInt j = 0; j < n; j++) {
+          own[j] += rows[r * n + j] * rows[r * n + j];
+          if (j + 1 < n) next[j] += rows[r * n + j] * rows[r * n + j + 1];
+        }
+    }
+    ebb_cursor_close(&cursor);
+  }
+  *worst = 0.0;
+  for (PetscInt j = 0; j < n; j++) *worst = fmax(*worst, fmax(fabs(own[j] - 1.0), fabs(next[j])));
+  PetscCall(PetscFree(rows));
+  PetscCall(PetscFree(own));
+  PetscCall(PetscFree(next));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct ebb_packet *packet,
+                                        const struct ebb_lattice *lattice, MPI_Comm comm)
+{
+  const double match = ebb_basis_match_volume(packet->basis);
+  const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+  const double top = log(fmax(v_max, match)), bottom = log(fmax(match, 1.0));
+
+  PetscFunctionBegin;
+  for (int i = 0; i < EBB_DRIFTS; i++) {
+    budget->drift[i] = 0.0;
+    budget->drift_v[i] = exp(bottom + (top - bottom) * i / (EBB_DRIFTS - 1));
+  }
+  if (match == 0.0) { /* eigenvectors of a walled lattice: how far from orthonormal they came */
+    PetscCall(measure_orthonormality(packet, lattice, &budget->drift[0]));
+    PetscFunctionReturn(0);
+  }
+  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+    struct ebb_cursor *cursor = NULL;
+    PetscInt begin, end, here = -1;
+
+    ebb_lattice_local(lattice, arm, &begin, &end);
+    for (int i = 0; i < EBB_DRIFTS; i++) {
+      const PetscInt site = PetscMax((PetscInt)((budget->drift_v[i] - lattice->first[arm]) / 4.0), 0) + 1;
+      /* each rank looks at the sites it owns; the last one looks as far as the matching volume where that is beyond */
+      const bool mine = (site >= begin && site < end) || (end == lattice->sites[arm] && site >= end && begin < end);
+
+      if (!mine) continue;
+      if (!cursor)
+        PetscCall(ebb_cursor_open(packet->basis, arm, site, &cursor));
+      else
+        ebb_cursor_next(cursor, site - here, NULL);
+      here = site;
+      budget->drift[i] = fmax(budget->drift[i], ebb_cursor_drift(cursor));
+    }
+    ebb_cursor_close(&cursor);
+  }
+  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, budget->drift, EBB_DRIFTS, MPI_DOUBLE, MPI_MAX, comm));
+  PetscFunctionReturn(0);
+}
+
 void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
@@ -54,8 +148,8 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)), lnv_max = log(v_max);
   const double state =
       budget->propagation; /* error of the state vector: a mean moves by 2 |state| times its own spread */
-  const double normalisation = fabs(moment[EBB_MOMENT_NORM] - 1.0) + 2.0 * budget->drift;
-  const double common = normalisation + budget->rounding;
+  const double normalisation = fabs(moment[EBB_MOMENT_NORM] - 1.0) + 2.0 * drift_of(budget, v, dv);
+  const double rounding = rounding_of(dv), common = normalisation + rounding;
   const double far = 2.0 * state * sqrt(sheet->sum[EBB_SUM_V2][s]) + state * state * v_max;
   double contribution[EBB_CONTRIBUTIONS];
 
@@ -65,12 +159,12 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   contribution[EBB_ERROR_QUADRATURE] = budget->quadrature[EBB_MOMENT_V_MEAN];
   contribution[EBB_ERROR_NORMALISATION] = normalisation;
   contribution[EBB_ERROR_PROPAGATION] = far / v;
-  contribution[EBB_ERROR_ROUNDING] = budget->rounding;
+  contribution[EBB_ERROR_ROUNDING] = rounding;
   for (int i = 0; i < EBB_CONTRIBUTIONS; i++) budget->worst[i] = fmax(budget->worst[i], contribution[i]);
   budget->edge_probability = fmax(budget->edge_probability, sheet->sum[EBB_SUM_EDGE][s]);
 
   error[EBB_MOMENT_NORM] =
-      edge0 + 2.0 * state + 2.0 * budget->drift + budget->rounding + budget->quadrature[EBB_MOMENT_NORM];
+      edge0 + 2.0 * state + 2.0 * drift_of(budget, v, dv) + rounding + budget->quadrature[EBB_MOMENT_NORM];
   error[EBB_MOMENT_V_MEAN] = v * (budget->quadrature[EBB_MOMENT_V_MEAN] + common) + edge1 + far;
   {
     /* variance = <v^2> - <v>^2: the errors of both, cancellation included */
@@ -99,16 +193,20 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   error[EBB_MOMENT_DENSITY_OF_MEANS] =
       2.0 * moment[EBB_MOMENT_DENSITY_OF_MEANS] *
       (error[EBB_MOMENT_V_MEAN] / v + error[EBB_MOMENT_MOMENTUM_MEAN] / moment[EBB_MOMENT_MOMENTUM_MEAN]);
-  /* a^4 weighs large volumes like v^{4/3} */
-  error[EBB_MOMENT_DRESSED_A4] += moment[EBB_MOMENT_DRESSED_A4] * (edge2 / (v * v) + far / v + 4.0 * normalisation);
+  /* a^4 weighs large volumes like v^{4/3}, and Theta^{-1/4} weighs the slow modes that live there */
+  error[EBB_MOMENT_DRESSED_A4] += moment[EBB_MOMENT_DRESSED_A4] *
+                                  (far / v + 4.0 * normalisation +
+                                   beyond(sheet->sum[EBB_SUM_EDGE_DRESSED][s], sheet->sum[EBB_SUM_INNER_DRESSED][s]) /
+                                       fmax(sheet->sum[EBB_SUM_DRESSED][s], 1e-300));
   error[EBB_MOMENT_HUBBLE_SPREAD] = fmax(error[EBB_MOMENT_HUBBLE_SPREAD], 0.0);
 }
 
 double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_sheet *sheet, PetscInt s, double q)
 {
   const double edge0 = beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
-  const double missing = edge0 + fabs(sheet->sum[EBB_SUM_NORM][s] - 1.0) + 2.0 * budget->drift + budget->rounding;
   const double v = sheet->sum[EBB_SUM_V][s], spread = sqrt(fmax(sheet->sum[EBB_SUM_V2][s] - v * v, 1.0));
+  const double missing =
+      edge0 + fabs(sheet->sum[EBB_SUM_NORM][s] - 1.0) + 2.0 * drift_of(budget, v, spread) + rounding_of(spread);
   /* a shift of probability moves the quantile by shift/density; away from the outer tails the density exceeds a few
    * percent of 1/spread */
   static const double THIN = 20.0;

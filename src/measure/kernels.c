@@ -14,6 +14,8 @@ static void edges(double w, double v, double v_max, bool outer, const struct ebb
   double *plain = sheet->sum[last ? EBB_SUM_EDGE_0 : EBB_SUM_INNER_0] + s0;
   double *first = sheet->sum[last ? EBB_SUM_EDGE_V : EBB_SUM_INNER_V] + s0;
   double *second = sheet->sum[last ? EBB_SUM_EDGE_V2 : EBB_SUM_INNER_V2] + s0;
+  double *dressed = sheet->sum[last ? EBB_SUM_EDGE_DRESSED : EBB_SUM_INNER_DRESSED] + s0;
+  const double v43 = cbrt(v * v * v * v);
 
   for (PetscInt s = 0; s < m; s++) {
     const double p = w * (r->psi[0][s] * r->psi[0][s] + r->psi[1][s] * r->psi[1][s]);
@@ -21,6 +23,7 @@ static void edges(double w, double v, double v_max, bool outer, const struct ebb
     plain[s] += p;
     first[s] += v * p;
     second[s] += v * v * p;
+    dressed[s] += v43 * w * (r->quarter[0][s] * r->quarter[0][s] + r->quarter[1][s] * r->quarter[1][s]);
     if (v > 0.9 * v_max || outer) sheet->sum[EBB_SUM_EDGE][s0 + s] += p;
   }
 }

@@ -13,9 +13,9 @@ static void recall(const struct ebb_packet *packet, struct ebb_law *law)
   for (PetscInt j = 0; j < packet->n; j++) mean += packet->share[j] * gsl_sf_psi_1piy(k[j]);
   for (PetscInt j = 0; j < packet->n; j++) square += packet->share[j] * pow(gsl_sf_psi_1piy(k[j]) - mean, 2);
   /* shares are resolved to a few roundings each */
-  law->lnv_sum = (struct ebb_value){2.0 * mean, 16.0 * PETSC_MACHINE_EPSILON * fabs(mean) * sqrt((double)packet->n)};
-  law->recall_bound = (struct ebb_value){2.0 * sqrt(square), 16.0 * PETSC_MACHINE_EPSILON * (mean * mean + square) *
-                                                                 sqrt((double)packet->n) / fmax(sqrt(square), 1e-8)};
+  law->lnv_sum = (struct ebb_measured){2.0 * mean, 16.0 * PETSC_MACHINE_EPSILON * fabs(mean) * sqrt((double)packet->n)};
+  law->recall_bound = (struct ebb_measured){2.0 * sqrt(square), 16.0 * PETSC_MACHINE_EPSILON * (mean * mean + square) *
+                                                                    sqrt((double)packet->n) / fmax(sqrt(square), 1e-8)};
 }
 
 PetscErrorCode ebb_law_find(struct ebb_source *source, const struct ebb_packet *packet,

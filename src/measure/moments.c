@@ -23,6 +23,7 @@ const struct ebb_moment_info ebb_moment_table[EBB_MOMENTS] = {
     [EBB_MOMENT_INVERSE_MOMENTUM_MEAN] = {"inverse_momentum_mean", "1", "<Theta^(-1/2)>"},
     [EBB_MOMENT_DRESSED_A4] = {"dressed_a4", "length^4",
                                "dressed scale factor, <Theta^(-1/4) a^4 Theta^(-1/4)>/<Theta^(-1/2)>, a = V^(1/3)"},
+    [EBB_MOMENT_THETA_MEAN] = {"theta_mean", "1", "<Theta> by the operator's quadratic form on the sites, conserved"},
 };
 
 static double spread(double square, double mean) { return sqrt(fmax(square - mean * mean, 0.0)); }
@@ -72,6 +73,7 @@ void ebb_moments_from_sums(const struct ebb_constants *c, const struct ebb_latti
   moment[EBB_MOMENT_MOMENTUM_SPREAD] = spread(sheet->sum[EBB_SUM_THETA_ROOT][s] / norm, p);
   shift_moments(c, lattice, sheet, s, moment);
   moment[EBB_MOMENT_INVERSE_MOMENTUM_MEAN] = sheet->sum[EBB_SUM_INVERSE][s] / norm;
+  moment[EBB_MOMENT_THETA_MEAN] = scale * sheet->sum[EBB_SUM_THETA][s] / norm;
   moment[EBB_MOMENT_DRESSED_A4] =
       cbrt(pow(c->volume_unit, 4.0)) * sheet->sum[EBB_SUM_DRESSED][s] / sheet->sum[EBB_SUM_INVERSE][s];
 }

@@ -14,6 +14,9 @@ enum { COARSE_MIN = 64, GAUSS_EXTRA = 40, LOOK = 2, GRID_PER_UNIT = 64 };
 static const double NEGLIGIBLE = 1e-27;  /* of |c|^2 relative to its maximum: above the rounding of an overlap */
 static const double IMAGE_MARGIN = 10.0; /* distance in ln v kept beyond the packet's own reach */
 static const double TAIL_SHARE = 1e-2;   /* of the tolerance that the lattice edge may use */
+static const double BULK_END = 1e-8;     /* probability left beyond the bulk of a packet */
+static const double FAR = 30.0;          /* a lattice never reaches farther than this many times the bulk: a slow tail
+                                            (c(0) > 0, or a vector cut off in a file) is left to the error budget */
 static const double FEWEST_V = 256.0;    /* never a smaller lattice than this */
 static const double MOST_V = 4e7;        /* nor, unasked, one larger: 1e7 sites */
 
@@ -134,6 +137,15 @@ static double density_far(const struct ebb_packet *packet, const double complex 
   return 8.0 / EBB_PI * creal(sum * conj(sum));
 }
 
+/* x beyond which BULK_END of the probability lies; plain[i]: probability above cell i, not normalised. */
+static double bulk_end(PetscInt grid, const double plain[], double x_low, double x_high)
+{
+  PetscInt i = grid;
+
+  while (i > 0 && plain[i] < BULK_END * plain[0]) i--;
+  return x_low + (x_high - x_low) * (double)(i + 1) / (double)grid;
+}
+
 /* v_max and tail: beyond v_max the v^2-weighted probability is below the share of the tolerance at both ends. */
 static PetscErrorCode find_edge(const struct ebb_packet *packet, const struct ebb_lattice *lattice, double from,
                                 double to, double tolerance, double x_high, struct ebb_plan *plan)
@@ -143,30 +155,36 @@ static PetscErrorCode find_edge(const struct ebb_packet *packet, const struct eb
   const PetscInt grid = PetscMax((PetscInt)((x_high - x_low) * GRID_PER_UNIT), 2);
   const double clock[LOOK] = {from, to}, limit = TAIL_SHARE * tolerance;
   double complex *turned;
-  double *tail, edge = log(FEWEST_V);
+  double *tail, *plain, edge = log(FEWEST_V);
 
   PetscFunctionBegin;
-  PetscCall(PetscMalloc2(packet->n, &turned, grid + 1, &tail));
+  PetscCall(PetscMalloc3(packet->n, &turned, grid + 1, &tail, grid + 1, &plain));
   plan->tail = 0.0;
   for (int c = 0; c < LOOK; c++) {
     for (PetscInt j = 0; j < packet->n; j++) turned[j] = packet->amplitude[j] * cexp(I * packet->omega[j] * clock[c]);
-    tail[grid] = 0.0;
+    tail[grid] = plain[grid] = 0.0;
     for (PetscInt i = grid - 1; i >= 0; i--) { /* v^2-weighted, integrated from above; dv/4 = v dx/4 */
       const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
       double p = density_far(packet, turned, x, false);
 
       if (!lattice->half) p += density_far(packet, turned, x, true);
       tail[i] = tail[i + 1] + exp(2.0 * x) * p;
+      plain[i] = plain[i + 1] + p;
     }
+    const double bulk = bulk_end(grid, plain, x_low, x_high);
+
+    /* from above: to where the v^2-weighted tail matters, but not farther than FAR beyond where the bulk ends */
     for (PetscInt i = grid; i >= 0; i--) {
-      if (tail[i] < limit * tail[0]) continue;
-      edge = fmax(edge, x_low + (x_high - x_low) * (double)(i + 1) / (double)grid);
+      const double x = x_low + (x_high - x_low) * (double)(i + 1) / (double)grid;
+
+      if (tail[i] < limit * tail[0] || x > bulk + log(FAR)) continue;
+      edge = fmax(edge, x);
       plan->tail = fmax(plan->tail, i < grid ? tail[i + 1] / tail[0] : 0.0);
       break;
     }
   }
   plan->v_max = exp(edge);
-  PetscCall(PetscFree2(turned, tail));
+  PetscCall(PetscFree3(turned, tail, plain));
   PetscFunctionReturn(0);
 }
 

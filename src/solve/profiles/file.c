@@ -2,21 +2,48 @@
 #include "ebbturn/state.h"
 
 #include <math.h>
+#include <stdbool.h>
+
+/* Half width in standard deviations of k; what lies outside is found missing when the vector is resolved. */
+static const double REACH = 14.0;
+
+/* First two moments of zeta = 4 k^2 by the solvable operator (x = sqrt|v| psi, C = |v + 2|/4) on neighbouring sites:
+ * they bound the interval in k whatever the prescription, which changes zeta by O(1) only. */
+static void zeta_moments(const struct ebb_profile_input *in, double *mean, double *square)
+{
+  double norm = 0.0;
+
+  *mean = *square = 0.0;
+  for (PetscInt i = 0; i < in->file_sites; i++) {
+    const double v = in->file_v[i];
+    const double complex x = sqrt(fabs(v)) * in->file_psi[i];
+    double complex action = 0.0;
+
+    for (int side = -1; side <= 1; side += 2) {
+      const PetscInt j = i + side;
+      const bool there = j >= 0 && j < in->file_sites && fabs(fabs(in->file_v[j] - v) - 4.0) < 1e-6;
+      const double complex y = there ? sqrt(fabs(in->file_v[j])) * in->file_psi[j] : 0.0;
+
+      action += 0.25 * fabs(v + 2.0 * side) * (x - y);
+    }
+    action *= sqrt(fabs(v));
+    norm += creal(in->file_psi[i] * conj(in->file_psi[i]));
+    *mean += creal(conj(in->file_psi[i]) * action);
+    *square += creal(action * conj(action));
+  }
+  *mean /= norm;
+  *square /= norm;
+}
 
 static void resolve(struct ebb_profile_input *in)
 {
-  double sum = 0.0, mean = 0.0;
+  double mean, square;
 
-  for (PetscInt i = 0; i < in->file_sites; i++) {
-    const double p = creal(in->file_psi[i] * conj(in->file_psi[i]));
-    sum += p;
-    mean += p * fabs(in->file_v[i]);
-  }
-  in->v0 = sum > 0.0 ? mean / sum : 1.0;
   in->at = in->settings->at;
   in->branch = "";
-  in->k0 = fmax(0.25 * in->v0, 1.0);
-  in->sigma_k = 1.0;
+  zeta_moments(in, &mean, &square);
+  in->k0 = fmax(0.5 * sqrt(fmax(mean, 0.0)), 1.0);
+  in->sigma_k = fmax(sqrt(fmax(square - mean * mean, 0.0)) / (8.0 * in->k0), 0.1);
 }
 
 static bool spectral(const struct ebb_profile_input *in)
@@ -51,11 +78,8 @@ static void reach_v(const struct ebb_profile_input *in, double *low, double *hig
 
 static void reach_k(const struct ebb_profile_input *in, double *low, double *high)
 {
-  double v_low, v_high;
-
-  reach_v(in, &v_low, &v_high);
-  *low = 0.0;
-  *high = 0.5 * v_high + 10.0; /* Theta <= 3 pi G v^2; ten more for the exponential tail */
+  *low = fmax(in->k0 - REACH * in->sigma_k, 0.0);
+  *high = in->k0 + REACH * in->sigma_k;
 }
 
 static double reach_lnv(const struct ebb_profile_input *in)
@@ -63,7 +87,7 @@ static double reach_lnv(const struct ebb_profile_input *in)
   double v_low, v_high;
 
   reach_v(in, &v_low, &v_high);
-  return log(2.0 * v_high) + 4.0;
+  return fmax(log(2.0 * v_high / in->k0), 0.0) + 2.0 + REACH / (2.0 * in->sigma_k);
 }
 
 const struct ebb_profile ebb_profile_file = {

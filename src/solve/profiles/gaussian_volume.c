@@ -36,15 +36,20 @@ static void reach_v(const struct ebb_profile_input *in, double *low, double *hig
   *high = in->settings->v0 + EBB_GAUSSIAN_REACH * in->settings->spread;
 }
 
-/* Theta <= 3 pi G v^2 (operator monotone): k <= v/2 but for exponentially small tails; the interval is trimmed later.
- */
+/* k = v sin(b)/2 over the box that the Gaussian fills in v and b; sd(b) = sqrt(1 + chirp^2)/spread from [b, v] = 2i. */
 static void reach_k(const struct ebb_profile_input *in, double *low, double *high)
 {
+  const struct ebb_state_settings *s = in->settings;
+  const double width = EBB_GAUSSIAN_REACH * hypot(1.0, s->chirp) / s->spread;
+  const double b[2] = {s->b0 - width, s->b0 + width}, half = 0.5 * EBB_PI;
+  /* |sin b| on [b0 - width, b0 + width]: 1 where a maximum lies inside, 0 where a zero does */
+  const bool peak = floor(b[1] / EBB_PI - 0.5) > floor(b[0] / EBB_PI - 0.5) || width >= half;
+  const bool zero = floor(b[1] / EBB_PI) > floor(b[0] / EBB_PI) || width >= half;
   double v_low, v_high;
 
   reach_v(in, &v_low, &v_high);
-  *low = 0.0;
-  *high = 0.5 * v_high + EBB_GAUSSIAN_REACH;
+  *low = zero ? 0.0 : 0.5 * v_low * fmin(fabs(sin(b[0])), fabs(sin(b[1])));
+  *high = 0.5 * v_high * (peak ? 1.0 : fmax(fabs(sin(b[0])), fabs(sin(b[1])))) + EBB_GAUSSIAN_REACH;
 }
 
 /* ln v of any site and, through c(k), the phase's slope: |b| <= pi keeps the packet within ln(v/k). */

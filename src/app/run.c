@@ -1,0 +1,231 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "run.h"
+
+#include "ebbturn/command.h"
+#include "ebbturn/propagator.h"
+#include "state_file.h"
+
+#include <math.h>
+#include <string.h>
+
+enum { EIGENPAIRS_MOST = 6000 }; /* sites up to which all eigenvectors are kept: 300 MB */
+static const double SITES_MOST = 5e8;
+static const double BATCH_BYTES = 5e8; /* per rank, for probabilities and states of one batch */
+enum { BATCH_MOST = 256 };
+static const double GIGAFLOPS = 10e9; /* per core, a cautious dense-product rate for the estimate of time */
+
+const char *ebb_method_name(enum ebb_method method)
+{
+  static const char *const names[] = {"modes", "eigenpairs", "modes", "chebyshev", "krylov"};
+  return names[method];
+}
+
+/* propagator: auto | modes | eigenpairs | chebyshev | krylov, and why. */
+static PetscErrorCode choose_method(struct ebb_run *run, const struct ebb_prescription *p)
+{
+  const char *wanted = run->settings->numerics.propagator;
+  const bool wall = run->settings->lattice.points > 0;
+  const char *why = "asked for in numerics.propagator";
+
+  PetscFunctionBegin;
+  if (p->grid) {
+    run->method = EBB_METHOD_WAVES;
+    why = "the continuum grid is diagonal in its Fourier waves";
+  } else if (!strcmp(wanted, "modes"))
+    run->method = EBB_METHOD_MODES;
+  else if (!strcmp(wanted, "eigenpairs"))
+    run->method = EBB_METHOD_EIGENPAIRS;
+  else if (!strcmp(wanted, "chebyshev"))
+    run->method = EBB_METHOD_CHEBYSHEV;
+  else if (!strcmp(wanted, "krylov"))
+    run->method = EBB_METHOD_KRYLOV;
+  else if (!wall) {
+    run->method = EBB_METHOD_MODES;
+    why = "the spectrum is continuous: no wall, no time step";
+  } else if (run->settings->lattice.points <= EIGENPAIRS_MOST) {
+    run->method = EBB_METHOD_EIGENPAIRS;
+    why = "lattice.points puts a wall: few sites, so all eigenvectors are kept";
+  } else {
+    run->method = EBB_METHOD_CHEBYSHEV;
+    why = "lattice.points puts a wall: too many sites to keep all eigenvectors";
+  }
+  PetscCall(PetscStrncpy(run->why, why, sizeof run->why));
+  PetscFunctionReturn(0);
+}
+
+static bool unbounded_start(const struct ebb_state_settings *s) { return isinf(s->v0); }
+
+/* What only the set-up can find wrong. */
+static PetscErrorCode refuse(struct ebb_run *run, const struct ebb_prescription *p)
+{
+  const struct ebb_settings *s = run->settings;
+  const bool wall = run->method == EBB_METHOD_EIGENPAIRS;
+  bool infinite = unbounded_start(&s->state);
+
+  PetscFunctionBegin;
+  for (size_t i = 0; i < s->state.components; i++) infinite = infinite || unbounded_start(&s->state.component[i]);
+  if (wall && infinite)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "state.v0 = infinity needs the phase at large volume: propagator 'modes', not a wall"));
+  else if (wall && s->lattice.points == 0 && s->lattice.volume_max == 0.0)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "propagator 'eigenpairs' needs a wall: give lattice.points or lattice.volume_max"));
+  else if (wall && s->lattice.points > EIGENPAIRS_MOST)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "lattice.points = %d is more than propagator 'eigenpairs' keeps (%d); try 'chebyshev'",
+                            s->lattice.points, EIGENPAIRS_MOST));
+  else if (p->grid && strcmp(s->state.profile, "gaussian_momentum") != 0)
+    PetscCall(
+        PetscSNPrintf(run->problem, sizeof run->problem,
+                      "prescription 'wdw' takes state.profile 'gaussian_momentum' (with lnv0, at, branch), not '%s'",
+                      s->state.profile));
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode make_clock(struct ebb_run *run)
+{
+  const struct ebb_clock_settings *c = &run->settings->clock;
+
+  PetscFunctionBegin;
+  run->m = c->samples;
+  PetscCall(PetscMalloc1(run->m, &run->phi));
+  for (PetscInt s = 0; s < run->m; s++) run->phi[s] = c->from + (c->to - c->from) * ((double)s / (double)(run->m - 1));
+  run->phi[run->m - 1] = c->to;
+  PetscFunctionReturn(0);
+}
+
+/* Sites up to the largest v: asked for, or from the plan. */
+static PetscErrorCode size_lattice(struct ebb_run *run, const struct ebb_prescription *p)
+{
+  const struct ebb_settings *s = run->settings;
+  const double v_max = s->lattice.volume_max > 0.0 ? s->lattice.volume_max : run->plan.v_max;
+  double sites;
+
+  PetscFunctionBegin;
+  sites = s->lattice.points > 0 ? s->lattice.points : floor((v_max - s->gravity.sector) / 4.0) + 1.0;
+  if (sites > SITES_MOST || sites < 8.0) {
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "the lattice would have %.3g sites, must be 8 to %.0e; set lattice.volume_max", sites,
+                            SITES_MOST));
+    PetscFunctionReturn(0);
+  }
+  PetscCall(ebb_lattice_make(p, s->gravity.sector, (PetscInt)sites, run->comm, &run->lattice));
+  PetscFunctionReturn(0);
+}
+
+/* States that a caller cannot resolve (no overlap with the lattice, cancelling components) are input problems. */
+static PetscErrorCode plan_lattice(struct ebb_run *run, const struct ebb_state_request *request,
+                                   const struct ebb_prescription *p)
+{
+  const struct ebb_settings *s = run->settings;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_lattice_make(p, s->gravity.sector, 2, run->comm, &run->lattice));
+  if (run->method != EBB_METHOD_EIGENPAIRS)
+    PetscCall(ebb_plan_make(request, &run->lattice, s->clock.from, s->clock.to, &run->plan));
+  PetscCall(size_lattice(run, p));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *folder, MPI_Comm comm,
+                              struct ebb_run *run, int *code)
+{
+  const struct ebb_gravity_settings *g = &settings->gravity;
+  const struct ebb_prescription *p = ebb_prescription_find(g->prescription);
+  struct ebb_state_request request;
+
+  PetscFunctionBegin;
+  *code = EBB_EXIT_OK;
+  *run = (struct ebb_run){.settings = settings, .comm = comm};
+  run->constants = ebb_constants_make(g->newton, g->immirzi, g->polymer_scale);
+  PetscCheck(p, comm, PETSC_ERR_ARG_UNKNOWN_TYPE, "no prescription '%s'", g->prescription);
+  PetscCall(choose_method(run, p));
+  PetscCall(refuse(run, p));
+  PetscCall(make_clock(run));
+  if (!run->problem[0]) PetscCall(ebb_state_files_read(settings, folder, comm, run, code));
+  if (run->problem[0] || *code) {
+    if (!*code) *code = EBB_EXIT_USAGE;
+    PetscFunctionReturn(0);
+  }
+  request = (struct ebb_state_request){settings, &run->constants, run->file, comm};
+  if (p->grid) {
+    const struct ebb_lattice_settings *l = &settings->lattice;
+    PetscCall(ebb_lattice_make_grid(p, l->lnv_min, l->lnv_max, l->points, comm, &run->lattice));
+    PetscCall(ebb_packet_create_waves(&request, &run->lattice, &run->packet));
+  } else {
+    PetscCall(plan_lattice(run, &request, p));
+    if (run->problem[0]) {
+      *code = EBB_EXIT_USAGE;
+      PetscFunctionReturn(0);
+    }
+    if (run->method == EBB_METHOD_EIGENPAIRS)
+      PetscCall(ebb_packet_create_eigenpairs(&request, &run->lattice, &run->packet));
+    else {
+      PetscCall(ebb_packet_create_modes(&request, &run->lattice, &run->plan, false, &run->packet));
+      PetscCall(ebb_packet_create_modes(&request, &run->lattice, &run->plan, true, &run->check));
+    }
+  }
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_run_start(struct ebb_run *run)
+{
+  const bool steps = run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV;
+
+  PetscFunctionBegin;
+  if (steps)
+    PetscCall(ebb_source_steps_create(&run->source, run->packet, run->phi[0],
+                                      ebb_propagator_find(ebb_method_name(run->method)),
+                                      run->settings->numerics.tolerance, &run->lattice, &run->constants, run->comm));
+  else
+    ebb_source_packet(&run->source, run->packet, &run->lattice, &run->constants, run->comm);
+  if (run->check) ebb_source_packet(&run->check_source, run->check, &run->lattice, &run->constants, run->comm);
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_run_destroy(struct ebb_run *run)
+{
+  PetscFunctionBegin;
+  if (run->source.data && (run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV))
+    PetscCall(ebb_source_steps_destroy(&run->source));
+  PetscCall(ebb_packet_destroy(&run->packet));
+  PetscCall(ebb_packet_destroy(&run->check));
+  PetscCall(ebb_plan_clear(&run->plan));
+  PetscCall(PetscFree(run->phi));
+  for (PetscInt i = 0; run->file && i < run->files; i++) {
+    PetscCall(PetscFree(run->file[i].v));
+    PetscCall(PetscFree(run->file[i].psi));
+  }
+  PetscCall(PetscFree(run->file));
+  PetscFunctionReturn(0);
+}
+
+struct ebb_estimate ebb_run_estimate(const struct ebb_run *run)
+{
+  const unsigned keep = run->settings->output.keep;
+  const double n = (double)ebb_lattice_size(&run->lattice), modes = (double)run->packet->n;
+  const bool quantiles = run->settings->output.quantiles > 0, state = keep & EBB_KEEP_STATE;
+  /* probabilities, their running sums for quantiles, states; per sample and site */
+  const double bytes =
+      (quantiles || (keep & EBB_KEEP_PROBABILITY) ? 8.0 : 0.0) + (quantiles ? 8.0 : 0.0) + (state ? 16.0 : 0.0);
+  struct ebb_estimate e = {0};
+  double local, kept_states;
+  PetscMPIInt ranks;
+
+  (void)MPI_Comm_size(run->comm, &ranks);
+  local = ceil(n / ranks);
+  e.batch = (PetscInt)fmin(fmin(BATCH_MOST, run->m), fmax(1.0, floor(BATCH_BYTES / fmax(local * bytes, 1.0))));
+  kept_states = ceil((double)run->m / run->settings->output.every);
+  e.file = (keep & EBB_KEEP_PROBABILITY ? 8.0 * n * run->m : 0.0) + (state ? 16.0 * n * kept_states : 0.0) + 24.0 * n +
+           16.0 * (EBB_MOMENTS + 4.0) * run->m;
+  e.memory = local * bytes * (double)e.batch + modes * 8.0 * (12.0 * (double)e.batch + 600.0);
+  e.seconds = n / ranks * modes * 12.0 * (double)run->m / GIGAFLOPS;
+  if (run->method == EBB_METHOD_EIGENPAIRS) e.memory += 8.0 * n * n;
+  if (run->method == EBB_METHOD_CHEBYSHEV ||
+      run->method == EBB_METHOD_KRYLOV) { /* 1.5 v_max products per unit of clock */
+    const double clock = run->phi[run->m - 1] - run->phi[0];
+    e.memory += local * 16.0 * 24.0;
+    e.seconds = 1.5 * 4.0 * n * clock * n / ranks * 60.0 / (GIGAFLOPS / 10.0);
+  }
+  return e;
+}

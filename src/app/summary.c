@@ -1,0 +1,60 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "record.h"
+
+#include <math.h>
+#include <stdio.h>
+
+/* Digits that the error leaves standing, two of the error's own. */
+static void line(const char *name, struct ebb_measured x, const char *units)
+{
+  int digits = 12;
+
+  if (isnan(x.value)) return;
+  if (x.error > 0.0 && isfinite(x.error)) digits = (int)fmin(fmax(2.0 - floor(log10(x.error)) - 1.0, 0.0), 18.0);
+  if (fabs(x.value) >= 1e-3 && fabs(x.value) < 1e9)
+    printf("  %-14s %.*f +- %.2g%s\n", name, digits, x.value, x.error, units);
+  else if (x.value == 0.0)
+    printf("  %-14s 0 +- %.2g%s\n", name, x.error, units);
+  else
+    printf("  %-14s %.*e +- %.2g%s\n", name,
+           (int)fmin(fmax(log10(fabs(x.value) / fmax(x.error, 1e-300)) + 1.0, 1.0), 16.0), x.value, x.error, units);
+}
+
+static void print_bounce(const struct ebb_run *run, const struct ebb_record *record)
+{
+  const struct ebb_bounce *b = &record->bounce;
+  char density[64];
+
+  printf("  bounce         %s: %s\n", ebb_verdict_names[b->verdict], b->reason);
+  line("clock", b->clock, b->outside ? "  (outside the clock range)" : "");
+  line("v", b->v, "");
+  line("volume", b->volume, " length^3");
+  (void)snprintf(density, sizeof density, " /G^2  (rho_c = %.6g)",
+                 run->constants.newton * run->constants.newton * run->constants.critical_density);
+  line("density", b->density, density);
+  line("ratio", b->ratio, "  (bounce volume over the effective one)");
+  line("median v", b->v_median, "");
+  line("mode v", b->v_mode, "");
+  line("effective", b->effective_volume, " length^3");
+}
+
+void ebb_record_print(const struct ebb_run *run, const struct ebb_record *record, const char *path)
+{
+  const struct ebb_settings *s = run->settings;
+  const PetscInt n = ebb_lattice_size(&run->lattice);
+  const enum ebb_contribution largest = ebb_budget_largest(&record->budget);
+
+  if (s->title[0]) printf("%s\n", s->title);
+  printf("  model          %s, sector %g, gamma %g, lambda %g\n", s->gravity.prescription, s->gravity.sector,
+         s->gravity.immirzi, s->gravity.polymer_scale);
+  printf("  method         %s: %s\n", ebb_method_name(run->method), run->why);
+  printf("  size           %" PetscInt_FMT " sites up to v = %.4g, %" PetscInt_FMT " modes, %" PetscInt_FMT
+         " clock samples\n",
+         n, fabs(ebb_lattice_v(&run->lattice, n - 1)), run->packet->n, run->m);
+  print_bounce(run, record);
+  printf("  error          mean volume to %.1e relative; largest contribution: %s (%s)\n",
+         record->budget.worst[largest], ebb_contribution_names[largest], ebb_contribution_texts[largest]);
+  printf("  edge           at most %.1e of the probability above 0.9 of the largest v\n",
+         record->budget.edge_probability);
+  if (path) printf("  result         '%s'\n", path);
+}
