@@ -43,12 +43,13 @@ int ebb_ranks(void)
 
 void ebb_rank_fail(const char *file, int line, const char *format, ...)
 {
+  char text[2 * EBB_TEST_TEXT_MAX];
   va_list list;
   va_start(list, format);
-  fprintf(stderr, "%s:%d: rank %d of %d: ", file, line, ebb_rank(), ebb_ranks());
-  vfprintf(stderr, format, list);
-  fputc('\n', stderr);
+  vsnprintf(text, sizeof text, format, list);
   va_end(list);
+  /* one write: lines of several ranks must not mix */
+  fprintf(stderr, "%s:%d: rank %d of %d: %s\n", file, line, ebb_rank(), ebb_ranks(), text);
   failures++;
 }
 
