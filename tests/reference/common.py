@@ -23,7 +23,7 @@ output: {{file: out.h5}}
 """
 
 
-PACKET = "{profile: gaussian_momentum, momentum: 60, relative_spread: 0.1, bounce_at: 0.05}"
+PACKET = "{profile: gaussian_momentum, momentum: 100, relative_spread: 0.08, bounce_at: 0.05}"
 # a vector on the sites is the same state for every basis; a packet in k is resolved by each basis in its own nodes
 VECTOR = "{profile: gaussian_volume, v0: 150, spread: 12, b0: 1.3, chirp: 0.2, at: 0.05}"
 

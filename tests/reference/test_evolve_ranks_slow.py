@@ -12,7 +12,7 @@ def compare(folder, prescription, sector, propagator):
     # stepping propagators keep to a small lattice: their cost grows with its square
     small = propagator in ("chebyshev", "krylov")
     path = model(folder, prescription=prescription, sector=sector, propagator=propagator,
-                 lattice="{volume_max: 1500}" if small else "{volume_max: auto}", tolerance="1.0e-9" if small else "1.0e-10")
+                 lattice="{volume_max: 6000}" if small else "{volume_max: auto}", tolerance="1.0e-9" if small else "1.0e-10")
     results = []
     for ranks in (1, 2, 3):
         out = os.path.join(folder, f"r{ranks}.h5")

@@ -65,12 +65,12 @@ output: {{file: again.h5}}
 
 def propagators(folder, state, others):
     results = {}
-    for name, lattice in (("modes", "{volume_max: 4000}"), *others):
+    for name, lattice in (("modes", "{volume_max: 8000}"), *others):
         path = model(folder, propagator=name, lattice=lattice, tolerance="1.0e-9", state=state)
         out = os.path.join(folder, "p.h5")
         run("evolve", path, "-o", out, "--force")
         results[name, lattice] = datasets(out)
-    one = results["modes", "{volume_max: 4000}"]
+    one = results["modes", "{volume_max: 8000}"]
     for key, other in results.items():
         for name in ("v_mean", "v_spread", "lnv_mean", "density_mean", "hubble_mean", "momentum_mean", "dressed_a4", "theta_mean",
                      "norm"):
@@ -109,7 +109,7 @@ with tempfile.TemporaryDirectory() as scratch:
     layout(scratch)
     quantiles(scratch)
     from_file(scratch)
-    propagators(scratch, PACKET, (("chebyshev", "{volume_max: 4000}"), ("krylov", "{volume_max: 4000}"), ("chebyshev", "{points: 1000}")))
-    propagators(scratch, VECTOR, (("eigenpairs", "{points: 1000}"), ("chebyshev", "{points: 1000}")))
+    propagators(scratch, PACKET, (("chebyshev", "{volume_max: 8000}"), ("krylov", "{volume_max: 8000}"), ("chebyshev", "{points: 2000}")))
+    propagators(scratch, VECTOR, (("eigenpairs", "{points: 2000}"), ("chebyshev", "{points: 2000}")))
     verdicts(scratch)
 finish()
