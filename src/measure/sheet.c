@@ -34,6 +34,49 @@ PetscErrorCode ebb_sheet_clear(struct ebb_sheet *sheet)
   PetscFunctionReturn(0);
 }
 
+/* what is lost when part is added to *total */
+static double add(double *total, double part)
+{
+  const double sum = *total + part;
+  const double lost = fabs(*total) >= fabs(part) ? (*total - sum) + part : (part - sum) + *total;
+
+  *total = sum;
+  return lost;
+}
+
+PetscErrorCode ebb_fold_begin(const struct ebb_sheet *sheet, struct ebb_fold *fold)
+{
+  const size_t size = (size_t)EBB_SUMS * (size_t)sheet->m;
+
+  PetscFunctionBegin;
+  PetscCall(PetscCalloc2(size, &fold->total, size, &fold->carry));
+  PetscFunctionReturn(0);
+}
+
+void ebb_fold_add(struct ebb_fold *fold, PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
+{
+  for (int i = 0; i < EBB_SUMS; i++)
+    for (PetscInt s = s0; s < s0 + m; s++) {
+      const size_t at = (size_t)i * (size_t)sheet->m + (size_t)s;
+
+      fold->carry[at] += add(&fold->total[at], sheet->sum[i][s]);
+      sheet->sum[i][s] = 0.0;
+    }
+}
+
+PetscErrorCode ebb_fold_end(struct ebb_fold *fold, struct ebb_sheet *sheet)
+{
+  PetscFunctionBegin;
+  ebb_fold_add(fold, 0, sheet->m, sheet);
+  for (int i = 0; i < EBB_SUMS; i++)
+    for (PetscInt s = 0; s < sheet->m; s++) {
+      const size_t at = (size_t)i * (size_t)sheet->m + (size_t)s;
+      sheet->sum[i][s] = fold->total[at] + fold->carry[at];
+    }
+  PetscCall(PetscFree2(fold->total, fold->carry));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_sheet_finish(struct ebb_source *source, const struct ebb_sheet_request *request,
                                 struct ebb_sheet *sheet)
 {
@@ -76,6 +119,7 @@ void ebb_sheet_add_fields(struct ebb_source *source, const double complex *const
 {
   const struct ebb_lattice *lattice = source->lattice;
   const PetscInt left = lattice->sites[1];
+  double total[EBB_SUMS] = {0.0}, carry[EBB_SUMS] = {0.0};
 
   for (int arm = 0; arm < 2; arm++) {
     const PetscInt out = arm == 0 ? 1 : -1; /* direction of the outward neighbour in global order */
@@ -93,8 +137,14 @@ void ebb_sheet_add_fields(struct ebb_source *source, const double complex *const
       buffer[8] = creal(field[0][index + 2 * out]);
       buffer[9] = cimag(field[0][index + 2 * out]);
       ebb_kernel_lattice(lattice, arm, n, &rows, s, 1, sheet);
+      if ((n + 1) % EBB_FOLD && n + 1 < end) continue;
+      for (int i = 0; i < EBB_SUMS; i++) {
+        carry[i] += add(&total[i], sheet->sum[i][s]);
+        sheet->sum[i][s] = 0.0;
+      }
     }
   }
+  for (int i = 0; i < EBB_SUMS; i++) sheet->sum[i][s] += total[i] + carry[i];
   if (left >= lattice->begin && left < lattice->end) { /* first site of the right arm is here, the left one beside it */
     const double complex r = field[0][left - lattice->begin + 2], l = field[0][left - lattice->begin + 1];
     const double right[2] = {creal(r), cimag(r)}, other[2] = {creal(l), cimag(l)};

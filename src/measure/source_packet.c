@@ -7,7 +7,7 @@
 #include <math.h>
 #include <string.h>
 
-enum { ROWS = 192, HALO = 2, COLUMN_TILE = 16 };
+enum { ROWS = EBB_FOLD, HALO = 2, COLUMN_TILE = 16 };
 
 static const enum ebb_field fields[EBB_SHEET_FIELDS] = {EBB_FIELD_PSI, EBB_FIELD_ROOT, EBB_FIELD_INVERSE_QUARTER};
 
@@ -100,6 +100,7 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
   const bool grid = lattice->prescription->grid;
   const PetscInt columns = phases->columns, m = phases->m, halo = grid ? 0 : HALO;
   struct ebb_cursor *cursor;
+  struct ebb_fold fold;
   PetscInt begin, end;
   double *e, *block;
 
@@ -108,6 +109,7 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
   if (v_limit > 0.0 && !grid) end = PetscMin(end, (PetscInt)fmax((v_limit - lattice->first[arm]) / 4.0, 0.0) + 1);
   if (begin >= end) PetscFunctionReturn(0);
   PetscCall(PetscMalloc2((size_t)ROWS * (size_t)packet->n, &e, (size_t)(ROWS + HALO) * (size_t)columns, &block));
+  PetscCall(ebb_fold_begin(sheet, &fold));
   PetscCall(ebb_cursor_open(packet->basis, arm, begin, &cursor));
   if (halo) { /* the two rows that the previous block would have left */
     ebb_cursor_next(cursor, halo, e);
@@ -127,10 +129,12 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
       else
         ebb_kernel_lattice(lattice, arm, n + r, &rows, 0, m, sheet);
     }
+    ebb_fold_add(&fold, 0, m, sheet);
     if (sheet->probability || sheet->psi) keep_block(lattice, arm, n, count, block, columns, sheet);
     memmove(block, block + count * columns, (size_t)(halo * columns) * sizeof *block);
   }
   ebb_cursor_close(&cursor);
+  PetscCall(ebb_fold_end(&fold, sheet));
   PetscCall(PetscFree2(e, block));
   PetscFunctionReturn(0);
 }
