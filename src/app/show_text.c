@@ -172,29 +172,66 @@ static PetscErrorCode print_bounce(struct ebb_show_contents *c)
   return print_numbers(c, "/bounce");
 }
 
-static PetscErrorCode print_budget(struct ebb_show_contents *c)
+static PetscErrorCode print_contribution(struct ebb_show_contents *c, const struct ebb_show_entry *e, const char *name)
 {
-  bool any = false;
+  double value;
 
-  for (size_t i = 0; i < c->count; i++) {
-    const struct ebb_show_entry *e = &c->entry[i];
-    const char *name = ebb_show_name_in("/budget", e);
-    double value;
+  EBB_SHOW_TRY(ebb_show_worst(c, e, &value));
+  (void)printf("  %-18s %.2e   ", name, value);
+  if (e->long_name) print_clean(e->long_name);
+  (void)putchar('\n');
+  return 0;
+}
 
-    if (!name || ebb_show_is_error(c, e)) continue;
-    if (!any) {
-      (void)printf("\nerror budget\n");
-      EBB_SHOW_TRY(print_attribute(c, "/budget", "meaning", "meaning"));
-      EBB_SHOW_TRY(print_attribute(c, "/budget", "largest", "largest"));
+/* True where `order`, names with blanks between them, holds the name. */
+static bool listed(const char *order, const char *name)
+{
+  size_t length = strlen(name);
+
+  for (const char *at = order; at && (at = strstr(at, name)); at += length) {
+    if ((at == order || at[-1] == ' ') && (at[length] == '\0' || at[length] == ' ')) return true;
+  }
+  return false;
+}
+
+/* In the order the file gives (largest first), then what that order does not name. */
+static PetscErrorCode print_contributions(struct ebb_show_contents *c, const char *order)
+{
+  for (const char *at = order; at && *at; at += strspn(at, " ")) {
+    size_t length = strcspn(at, " ");
+
+    for (size_t i = 0; i < c->count; i++) {
+      const char *name = ebb_show_name_in("/budget", &c->entry[i]);
+
+      if (!name || strlen(name) != length || strncmp(name, at, length) != 0) continue;
+      EBB_SHOW_TRY(print_contribution(c, &c->entry[i], name));
     }
-    any = true;
-    EBB_SHOW_TRY(ebb_show_worst(c, e, &value));
-    (void)printf("  %-18s %.2e", name, value);
-    if (e->long_name) (void)printf("   ");
-    if (e->long_name) print_clean(e->long_name);
-    (void)putchar('\n');
+    at += length;
+  }
+  for (size_t i = 0; i < c->count; i++) {
+    const char *name = ebb_show_name_in("/budget", &c->entry[i]);
+
+    if (!name || listed(order, name) || ebb_show_is_error(c, &c->entry[i])) continue;
+    EBB_SHOW_TRY(print_contribution(c, &c->entry[i], name));
   }
   return 0;
+}
+
+static PetscErrorCode print_budget(struct ebb_show_contents *c)
+{
+  PetscErrorCode code;
+  bool any = false, found;
+  char *order;
+
+  for (size_t i = 0; i < c->count; i++) any = any || ebb_show_name_in("/budget", &c->entry[i]);
+  if (!any) return 0;
+  (void)printf("\nerror budget\n");
+  EBB_SHOW_TRY(print_attribute(c, "/budget", "meaning", "meaning"));
+  EBB_SHOW_TRY(print_attribute(c, "/budget", "largest", "largest"));
+  EBB_SHOW_TRY(ebb_store_get_text(c->store, "/budget", "order", &order, &found));
+  code = print_contributions(c, order);
+  (void)PetscFree(order);
+  return code;
 }
 
 static void shape_text(const struct ebb_show_entry *e, char *text, size_t size)
