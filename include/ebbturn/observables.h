@@ -28,7 +28,7 @@ enum ebb_sum {
   EBB_SUM_SHIFT2,     /* Re sum conj(psi_{n+2}) psi_n (grid: unused) */
   EBB_SUM_FIRST,      /* |psi|^2 of the arms' first sites */
   EBB_SUM_EDGE,       /* probability at v > 0.9 v_max (both ends of a grid: outermost 2 percent) */
-  EBB_SUM_EDGE_V,     /* |v|-weighted probability at v > v_max/EBB_EDGE_RATIO */
+  EBB_SUM_EDGE_V,     /* |v|-weighted probability at v > v_max/edge_ratio */
   EBB_SUM_EDGE_V2,    /* v^2-weighted */
   EBB_SUM_EDGE_0,     /* unweighted, same sites */
   EBB_SUM_INNER_V,    /* the same three sums over the window of the same ratio below it */
@@ -38,7 +38,10 @@ enum ebb_sum {
   EBB_SUM_INNER_DRESSED,
   EBB_SUMS
 };
+/* Ratio of the windows before the edge; wider where the packet's standing waves oscillate more slowly, so that a window
+ * never stands on a node. */
 #define EBB_EDGE_RATIO 1.15
+double ebb_edge_ratio(double k); /* k: mean of the packet */
 
 /* What a call computes besides the sums. */
 struct ebb_sheet_request {
@@ -52,6 +55,7 @@ struct ebb_sheet_request {
 /* Results for m clock samples; sums and quantiles are the same on all ranks. */
 struct ebb_sheet {
   PetscInt m, local;
+  double edge_ratio;
   double *sum[EBB_SUMS + 1]; /* each [m]; the last row serves the search for the mode */
   double *quantile;          /* [m][levels]: |v| below which the level lies, mass of a site uniform over its cell */
   double *mode;              /* [m]: |v| of the most probable site */
@@ -68,7 +72,8 @@ struct ebb_source {
   PetscErrorCode (*evaluate)(struct ebb_source *source, PetscInt m, const double phi[],
                              const struct ebb_sheet_request *request, struct ebb_sheet *sheet);
   void *data;
-  PetscInt batch; /* samples that are best asked for at once; 0 = any */
+  PetscInt batch;    /* samples that are best asked for at once; 0 = any */
+  double edge_ratio; /* of the windows before the lattice edge; 0 = EBB_EDGE_RATIO */
 };
 
 /* Source over a packet (not owned). Collective. Cost of evaluate: sites x modes x 12 m flops in dgemm, plus a few

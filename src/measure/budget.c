@@ -33,14 +33,36 @@ static double scale_of(const struct ebb_constants *c, int which, double value)
   }
 }
 
+/* Share of a normal distribution above z over its share in [z - width, z]. */
+static double normal_ratio(double z, double width)
+{
+  const double above = 0.5 * erfc(z / sqrt(2.0)), inside = 0.5 * erfc((z - width) / sqrt(2.0)) - above;
+  return inside > 0.0 ? above / inside : 0.0;
+}
+
 /* Weight beyond the edge from the last two windows of equal ratio: a tail falling by r per window holds r/(1-r) of the
  * last one; a Gaussian tail holds less. Where the tail hardly falls, SLOW windows of it are charged. */
+static const double SLOW = 20.0;
 static double beyond(double last, double inner)
 {
-  static const double SLOW = 20.0;
   const double r = inner > 0.0 ? last / inner : 1.0;
 
   return r < SLOW / (1.0 + SLOW) ? last * r / (1.0 - r) : last * SLOW;
+}
+
+/* The same for the probability weighted with v^power. A weight that still rises at the edge says nothing about its
+ * tail: then at least what a log-normal packet with the mean and spread of ln v on the lattice holds is charged. */
+static double weight_beyond(const struct ebb_lattice *lattice, const struct ebb_sheet *sheet, PetscInt s, double power,
+                            enum ebb_sum last, enum ebb_sum inner)
+{
+  const double norm = sheet->sum[EBB_SUM_NORM][s], charged = beyond(sheet->sum[last][s], sheet->sum[inner][s]);
+
+  if (sheet->sum[last][s] * (1.0 + SLOW) < sheet->sum[inner][s] * SLOW) return charged;
+  const double mean = sheet->sum[EBB_SUM_LNV][s] / norm, square = sheet->sum[EBB_SUM_LNV2][s] / norm;
+  const double spread = sqrt(fmax(square - mean * mean, PETSC_MACHINE_EPSILON));
+  const double top = log(fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)));
+  const double z = (top - mean) / spread - power * spread;
+  return fmax(charged, sheet->sum[last][s] * normal_ratio(z, log(sheet->edge_ratio) / spread));
 }
 
 /* Drift of the recursion where the packet of a sample lies: up to REACH spreads above its mean. */
@@ -141,9 +163,9 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
 {
-  const double edge0 = beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
-  const double edge1 = beyond(sheet->sum[EBB_SUM_EDGE_V][s], sheet->sum[EBB_SUM_INNER_V][s]);
-  const double edge2 = beyond(sheet->sum[EBB_SUM_EDGE_V2][s], sheet->sum[EBB_SUM_INNER_V2][s]);
+  const double edge0 = weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0);
+  const double edge1 = weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V);
+  const double edge2 = weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2);
   const double v = moment[EBB_MOMENT_V_MEAN], dv = moment[EBB_MOMENT_V_SPREAD];
   const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)), lnv_max = log(v_max);
   const double state =

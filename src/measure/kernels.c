@@ -6,11 +6,11 @@
 
 #include <math.h>
 
-/* Probability near the edge, in the last window of ratio EBB_EDGE_RATIO and in the one below it. */
+/* Probability near the edge, in the last window of ratio edge_ratio and in the one below it. */
 static void edges(double w, double v, double v_max, bool outer, const struct ebb_site_rows *r, PetscInt s0, PetscInt m,
                   struct ebb_sheet *sheet)
 {
-  const bool last = v > v_max / EBB_EDGE_RATIO;
+  const bool last = v > v_max / sheet->edge_ratio;
   double *plain = sheet->sum[last ? EBB_SUM_EDGE_0 : EBB_SUM_INNER_0] + s0;
   double *first = sheet->sum[last ? EBB_SUM_EDGE_V : EBB_SUM_INNER_V] + s0;
   double *second = sheet->sum[last ? EBB_SUM_EDGE_V2 : EBB_SUM_INNER_V2] + s0;
@@ -63,7 +63,7 @@ static void diagonal(double w, double v, double v_max, bool outer, const struct 
     inverse[s] += q2;
     dressed[s] += v43 * q2;
   }
-  if (v > v_max / (EBB_EDGE_RATIO * EBB_EDGE_RATIO) || outer) edges(w, v, v_max, outer, r, s0, m, sheet);
+  if (v > v_max / (sheet->edge_ratio * sheet->edge_ratio) || outer) edges(w, v, v_max, outer, r, s0, m, sheet);
 }
 
 static void most_probable(double v, const struct ebb_site_rows *r, PetscInt s0, PetscInt m, struct ebb_sheet *sheet,

@@ -4,6 +4,13 @@
 #include <math.h>
 #include <string.h>
 
+/* cos^2(k ln v + ..) repeats after a factor exp(pi/k) in v */
+double ebb_edge_ratio(double k)
+{
+  static const double WIDEST = 4.0; /* two windows of it still lie in a lattice of ordinary size */
+  return fmin(fmax(exp(EBB_PI / k), EBB_EDGE_RATIO), WIDEST);
+}
+
 /* sum[] holds EBB_SUMS rows and, behind them, the largest |psi|^2 seen (for the mode) */
 PetscErrorCode ebb_sheet_allocate(struct ebb_source *source, PetscInt m, const struct ebb_sheet_request *request,
                                   struct ebb_sheet *sheet)
@@ -12,7 +19,8 @@ PetscErrorCode ebb_sheet_allocate(struct ebb_source *source, PetscInt m, const s
   double *block;
 
   PetscFunctionBegin;
-  *sheet = (struct ebb_sheet){.m = m, .local = local};
+  *sheet = (struct ebb_sheet){
+      .m = m, .local = local, .edge_ratio = source->edge_ratio > 0.0 ? source->edge_ratio : EBB_EDGE_RATIO};
   PetscCall(PetscCalloc1((size_t)(EBB_SUMS + 1) * (size_t)m, &block));
   for (int i = 0; i <= EBB_SUMS; i++) sheet->sum[i] = block + (size_t)i * (size_t)m;
   PetscCall(PetscCalloc1(m, &sheet->mode));

@@ -182,6 +182,10 @@ static PetscErrorCode evaluate(struct ebb_source *source, PetscInt m, const doub
 void ebb_source_packet(struct ebb_source *source, const struct ebb_packet *packet, const struct ebb_lattice *lattice,
                        const struct ebb_constants *constants, MPI_Comm comm)
 {
-  *source = (struct ebb_source){
-      .lattice = lattice, .constants = constants, .comm = comm, .evaluate = evaluate, .data = (void *)packet};
+  *source = (struct ebb_source){.lattice = lattice,
+                                .constants = constants,
+                                .comm = comm,
+                                .evaluate = evaluate,
+                                .data = (void *)packet,
+                                .edge_ratio = ebb_edge_ratio(packet->momentum_mean / constants->kappa)};
 }

@@ -198,8 +198,12 @@ PetscErrorCode ebb_source_steps_create(struct ebb_source *source, const struct e
   PetscCallMPI(MPI_Comm_rank(comm, &rank));
   PetscCallMPI(MPI_Comm_size(comm, &size));
   PetscCall(PetscNew(&steps));
-  *source = (struct ebb_source){
-      .lattice = lattice, .constants = constants, .comm = comm, .evaluate = evaluate, .data = steps};
+  *source = (struct ebb_source){.lattice = lattice,
+                                .constants = constants,
+                                .comm = comm,
+                                .evaluate = evaluate,
+                                .data = steps,
+                                .edge_ratio = ebb_edge_ratio(start->momentum_mean / constants->kappa)};
   steps->local = lattice->end - lattice->begin;
   steps->fields = FIELDS;
   steps->below = rank > 0 ? rank - 1 : MPI_PROC_NULL;
