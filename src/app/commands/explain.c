@@ -50,7 +50,16 @@ static const char *type_name(enum ebb_type type)
   return "";
 }
 
-static void row(const char *name, const char *value) { printf("  %-14s %s\n", name, value); }
+/* A value of several lines goes on under its first one. */
+static void row(const char *name, const char *value)
+{
+  printf("  %-14s ", name);
+  for (; *value; value++) {
+    putchar(*value);
+    if (*value == '\n') printf("  %-14s ", "");
+  }
+  putchar('\n');
+}
 
 /* Rows of the explanation that a setting has only sometimes. */
 static void explain_values(const struct ebb_setting *setting)
