@@ -8,8 +8,12 @@ static double measure(double v)
   return 27.0 / 8.0 * fabs(v) * step * step * step;
 }
 
-/* C^+(v)/(3 pi G K) = |v+2| ||v+1| - |v+3||/8 */
-static double hop(double v) { return fabs(v + 2.0) * fabs(fabs(v + 1.0) - fabs(v + 3.0)) / 8.0; }
+/* C^+(v)/(3 pi G K) = |v+2| ||v+1| - |v+3||/8, the difference in closed form: nothing cancels at large v */
+static double hop(double v)
+{
+  const double distance = fabs(v + 2.0);
+  return distance * (distance < 1.0 ? 2.0 * distance : 2.0) / 8.0;
+}
 
 /* Sector 2: C(-2) = 0. Sector 4: B(0) = 0 makes the row of v = 0 a constraint, Psi(0) = (Psi(4) + Psi(-4))/2; on the
  * even sector the flux between 0 and 4 then vanishes and C(0) drops out of theta(4,4). */
