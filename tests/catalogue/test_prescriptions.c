@@ -1,0 +1,245 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Walks the catalogue of prescriptions: what every flat operator must be, whatever its ordering, and its rows against
+ * the papers' own form, written here a second time. Flat, massless scalar clock; Theta in units of 3 pi G. */
+#include "ebbturn/operators.h"
+
+#include "support/start.h"
+
+#include <float.h>
+#include <math.h>
+#include <string.h>
+
+static const double sectors[] = {0.3, 1.0, 1.5, 2.0, 2.7, 3.9, 4.0};
+enum { SECTORS = sizeof sectors / sizeof *sectors };
+
+#define each_prescription(p)                                                                                           \
+  for (size_t i_ = 0; i_ < ebb_prescriptions(); i_++)                                                                  \
+    for (const struct ebb_prescription *p = ebb_prescription_at(i_); p; p = NULL)
+
+static double sgn(double x) { return (x > 0.0) - (x < 0.0); }
+static double s_plus(double v) { return sgn(v + 2.0) + sgn(v); }
+static double s_minus(double v) { return sgn(v - 2.0) + sgn(v); }
+
+/* inverse-volume step, in long double because it cancels: |(v+1)^{1/3} - (v-1)^{1/3}| */
+static double inverse_step(double v)
+{
+  return (double)fabsl(cbrtl(fabsl(v + 1.0L)) - cbrtl(fabsl(v - 1.0L)));
+}
+
+/* The papers' own forms of theta(v,v) and theta(v,v+4). */
+struct rows {
+  const char *name;
+  double (*diagonal)(double v), (*offdiagonal)(double v);
+};
+
+/* Ashtekar, Pawlowski, Singh, Phys. Rev. D 74, 084003 (2006), gr-qc/0607039 (from memory): C+, B with K dropped. */
+static double aps_c(double v) { return fabs(v + 2.0) * fabs(fabs(v + 1.0) - fabs(v + 3.0)) / 8.0; }
+static double aps_b(double v) { return 27.0 / 8.0 * fabs(v) * pow(inverse_step(v), 3.0); }
+static double aps_diagonal(double v)
+{
+  /* v = 4: the row of v = 0 is a constraint and is eliminated on the even sector; C(0) drops out */
+  return (aps_c(v) + (v == 4.0 ? 0.0 : aps_c(v - 4.0))) / aps_b(v);
+}
+static double aps_offdiagonal(double v) { return -aps_c(v) / sqrt(aps_b(v) * aps_b(v + 4.0)); }
+
+/* Ashtekar, Corichi, Singh, Phys. Rev. D 77, 024046 (2008), arXiv:0710.3565 (from memory) */
+static double slqc_diagonal(double v) { return fabs(v) * (fabs(v + 2.0) + fabs(v - 2.0)) / 4.0; }
+static double slqc_offdiagonal(double v) { return -sqrt(fabs(v * (v + 4.0))) * fabs(v + 2.0) / 4.0; }
+
+/* Martin-Benito, Mena Marugan, Olmedo, Phys. Rev. D 80, 104015 (2009) (from memory) */
+static double g(double v) { return v == 0.0 ? 0.0 : sqrt(cbrt(fabs(v)) / inverse_step(v)); }
+static double mmo_diagonal(double v)
+{
+  return pow(g(v), 2.0) * (pow(g(v + 2.0) * s_plus(v), 2.0) + pow(g(v - 2.0) * s_minus(v), 2.0)) / 36.0;
+}
+static double mmo_offdiagonal(double v)
+{
+  return -g(v) * pow(g(v + 2.0), 2.0) * g(v + 4.0) * s_plus(v) * s_plus(v + 2.0) / 36.0;
+}
+
+/* Mena Marugan, Olmedo, Pawlowski, Phys. Rev. D 84, 064012 (2011), arXiv:1108.0829 (from memory) */
+static double smmo_diagonal(double v)
+{
+  return fabs(v) * (fabs(v + 2.0) * pow(s_plus(v), 2.0) + fabs(v - 2.0) * pow(s_minus(v), 2.0)) / 16.0;
+}
+static double smmo_offdiagonal(double v)
+{
+  return -sqrt(fabs(v * (v + 4.0))) * fabs(v + 2.0) * s_plus(v) * s_plus(v + 2.0) / 16.0;
+}
+
+static const struct rows papers[] = {{"aps", aps_diagonal, aps_offdiagonal},
+                                     {"slqc", slqc_diagonal, slqc_offdiagonal},
+                                     {"mmo", mmo_diagonal, mmo_offdiagonal},
+                                     {"smmo", smmo_diagonal, smmo_offdiagonal},
+                                     /* central differences of the continuum operator: the same matrix */
+                                     {"wdw_lattice", smmo_diagonal, smmo_offdiagonal}};
+
+static const struct rows *paper(const struct ebb_prescription *p)
+{
+  for (size_t i = 0; i < sizeof papers / sizeof *papers; i++)
+    if (!strcmp(papers[i].name, p->name)) return &papers[i];
+  return NULL;
+}
+
+Test(prescriptions, entries_are_complete)
+{
+  each_prescription(p)
+  {
+    cr_expect(p->name && p->title && p->formula && p->source && p->bibtex, "%s", p->name);
+    cr_expect_eq(ebb_prescription_find(p->name), p);
+    cr_expect_eq(p->grid, p->measure == NULL && p->hop == NULL, "%s", p->name);
+    cr_expect(p->grid || (p->edge && p->measure_series && p->hop_series), "%s", p->name);
+    cr_expect(p->grid || paper(p), "'%s' has no second form here: write one", p->name);
+  }
+  cr_expect_null(ebb_prescription_find("aqs"));
+}
+
+/* 32 eps: two cube roots, their difference taken without cancellation, and powers up to three. Near v = 1 the papers'
+ * form differs by a cube root of a small number whose argument v - 1 is exact. */
+Test(prescriptions, rows_are_those_of_the_papers)
+{
+  each_prescription(p)
+  {
+    const struct rows *own = paper(p);
+
+    for (int i = 0; own && i < SECTORS; i++)
+      for (int n = 0; n < 30; n++) {
+        const double sector = sectors[i], v = sector + 4.0 * n;
+        const bool half = ebb_prescription_half(p, sector);
+        const double d = ebb_prescription_diagonal(p, half, sector, v), o = ebb_prescription_offdiagonal(p, v);
+
+        ebb_test_close(d, own->diagonal(v), ebb_test_rounding(32, own->diagonal(v)));
+        ebb_test_close(o, own->offdiagonal(v), ebb_test_rounding(32, own->offdiagonal(v)));
+        if (!half) { /* the other orientation, and the link across v = 0 */
+          ebb_test_close(ebb_prescription_diagonal(p, half, sector, v - 4.0 * 31), own->diagonal(v - 4.0 * 31),
+                         ebb_test_rounding(32, own->diagonal(v - 4.0 * 31)));
+          ebb_test_close(ebb_prescription_offdiagonal(p, v - 4.0 * 31), own->offdiagonal(v - 4.0 * 31),
+                         ebb_test_rounding(32, own->offdiagonal(v - 4.0 * 31)));
+        }
+      }
+  }
+}
+
+/* 8 eps: the same products and cube roots in another order */
+Test(prescriptions, reflection_of_the_volume_changes_nothing)
+{
+  each_prescription(p)
+  {
+    for (int i = 0; !p->grid && i < SECTORS; i++)
+      for (double v = sectors[i]; v < 100.0; v += 4.0) {
+        ebb_test_close(p->measure(-v), p->measure(v), ebb_test_rounding(8, p->measure(v)));
+        if (!ebb_prescription_half(p, sectors[i]))
+          ebb_test_close(p->hop(-v - 4.0), p->hop(v), ebb_test_rounding(8, p->hop(v)));
+      }
+  }
+}
+
+Test(prescriptions, one_orientation_never_sees_the_other)
+{
+  each_prescription(p)
+  {
+    for (int i = 0; !p->grid && i < SECTORS; i++) {
+      const double eps = sectors[i], edge = p->edge(eps);
+
+      if (p->one_orientation) {
+        cr_expect(ebb_prescription_half(p, eps));
+        cr_expect_eq(paper(p)->offdiagonal(eps - 4.0), 0.0, "%s, sector %g", p->name, eps);
+        cr_expect_eq(edge, eps > 2.0 ? p->hop(eps - 4.0) : 0.0, "%s, sector %g", p->name, eps);
+      } else {
+        cr_expect_eq(ebb_prescription_half(p, eps), eps == 2.0 || eps == 4.0);
+        cr_expect(ebb_prescription_half(p, eps) || p->hop(eps - 4.0) > 0.0, "%s, sector %g", p->name, eps);
+      }
+    }
+  }
+}
+
+/* <x|Theta|x> by rows is sum C |x(v+4) - x(v)|^2 + (edge) |x_0|^2 + C(last) |x_last|^2 >= 0 */
+Test(prescriptions, are_positive_forms)
+{
+  enum { SITES = 40 };
+  unsigned state = 12345; /* a fixed linear congruential sequence (Numerical Recipes' constants) */
+
+  each_prescription(p)
+  {
+    for (int i = 0; !p->grid && i < SECTORS; i++) {
+      const double eps = sectors[i];
+      const bool half = ebb_prescription_half(p, eps);
+      double psi[SITES], x[SITES], rows = 0.0, form = 0.0, size = 0.0;
+
+      for (int n = 0; n < SITES; n++) {
+        const double v = eps + 4.0 * n;
+
+        state = 1664525u * state + 1013904223u;
+        psi[n] = state / 4294967296.0 - 0.5;
+        x[n] = psi[n] / sqrt(p->measure(v));
+        cr_expect(p->measure(v) > 0.0 && p->hop(v) > 0.0, "%s at %g", p->name, v);
+      }
+      for (int n = 0; n < SITES; n++) {
+        const double v = eps + 4.0 * n, d = ebb_prescription_diagonal(p, half, eps, v);
+
+        rows += d * psi[n] * psi[n];
+        size += d * psi[n] * psi[n];
+        if (n + 1 < SITES) {
+          rows += 2.0 * ebb_prescription_offdiagonal(p, v) * psi[n] * psi[n + 1];
+          form += p->hop(v) * pow(x[n + 1] - x[n], 2.0);
+        } else {
+          form += p->hop(v) * x[n] * x[n];
+        }
+      }
+      form += (half ? p->edge(eps) : p->hop(eps - 4.0)) * x[0] * x[0];
+      /* a few roundings per row, of the size of the diagonal terms: the form cancels among them */
+      ebb_test_close(rows, form, ebb_test_rounding(8, size));
+      cr_expect(form > 0.0);
+    }
+  }
+}
+
+/* 16 eps: the functions themselves are good to some 10 roundings, the series to 2 */
+Test(prescriptions, series_are_the_functions_at_large_volume)
+{
+  enum { TERMS = 27 };
+  double b[TERMS], c[TERMS];
+
+  each_prescription(p)
+  {
+    if (p->grid) continue;
+    p->measure_series(TERMS, b);
+    p->hop_series(TERMS, c);
+    for (double v = 1e3; v <= 1e4; v *= 1.37) {
+      double measure = 0.0, hop = 0.0;
+
+      for (int j = TERMS - 1; j >= 0; j--) {
+        measure = measure / v + b[j];
+        hop = hop / v + c[j];
+      }
+      ebb_test_close(measure / v, p->measure(v), ebb_test_rounding(16, p->measure(v)));
+      ebb_test_close(hop * v, p->hop(v), ebb_test_rounding(16, p->hop(v)));
+    }
+  }
+}
+
+/* Theta -> v^2 sin^2 b, that is theta(v,v) -> v^2/2 and theta(v,v+4) -> -(v+2)^2/4, with corrections O(1/v^2) only */
+Test(prescriptions, large_volume_limit_is_reached_at_second_order)
+{
+  each_prescription(p)
+  {
+    for (int i = 0; !p->grid && i < SECTORS; i++) {
+      double off[2][2];
+
+      for (int fine = 0; fine < 2; fine++) {
+        const double v = sectors[i] + (fine ? 800.0 : 400.0);
+
+        off[fine][0] = ebb_prescription_diagonal(p, ebb_prescription_half(p, sectors[i]), sectors[i], v) * 2.0 / (v * v);
+        off[fine][1] = ebb_prescription_offdiagonal(p, v) * -4.0 / ((v + 2.0) * (v + 2.0));
+      }
+      for (int e = 0; e < 2; e++) {
+        const double ratio = (sectors[i] + 800.0) / (sectors[i] + 400.0);
+        const double coarse = fabs(off[0][e] - 1.0), fine = fabs(off[1][e] - 1.0);
+
+        cr_expect_lt(coarse, 1.0 / 400.0 / 10.0, "%s: %g", p->name, coarse); /* no term in 1/v with coefficient 0.1 */
+        if (coarse > 16.0 * DBL_EPSILON) ebb_test_order(coarse, fine, ratio, 2);
+      }
+    }
+  }
+}

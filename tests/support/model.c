@@ -1,0 +1,176 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "support/model.h"
+
+#include "ebbturn/input.h"
+#include "support/start.h"
+
+#include <math.h>
+#include <stdarg.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+
+enum { VERIFIED = 5 };                  /* samples on which the independent rule is evaluated, as in `evolve` */
+static const double LOW_WEIGHT = 1e-20; /* of |c(0)|^2, above which the mean is not used, as in `evolve` */
+
+void ebb_test_model_create(struct ebb_test_model *model, const char *format, ...)
+{
+  struct ebb_problems *problems = ebb_problems_create();
+  char text[4096];
+  int code = 0;
+  va_list arguments;
+
+  memset(model, 0, sizeof *model);
+  va_start(arguments, format);
+  const int length = vsnprintf(text, sizeof text, format, arguments);
+  va_end(arguments);
+  cr_assert(length > 0 && (size_t)length < sizeof text, "a model of %d bytes", length);
+  const bool good = ebb_input_parse(text, (size_t)length, NULL, 0, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE,
+                                    &model->settings, problems);
+  cr_assert(good, "%s\n%s", ebb_problems_text(problems, 0), text);
+  ebb_problems_destroy(&problems);
+  ebb_test_call(ebb_run_create(&model->settings, ".", PETSC_COMM_SELF, &model->run, &code));
+  cr_assert_eq(code, 0, "%s\n%s", model->run.problem, text);
+  ebb_test_call(ebb_run_start(&model->run));
+}
+
+void ebb_test_model_destroy(struct ebb_test_model *model)
+{
+  ebb_test_call(ebb_run_destroy(&model->run));
+  ebb_test_call(ebb_record_destroy(&model->record));
+  ebb_settings_clear(&model->settings);
+  memset(model, 0, sizeof *model);
+}
+
+static void verify(struct ebb_test_model *model)
+{
+  struct ebb_run *run = &model->run;
+  const struct ebb_output_settings *o = &model->settings.output;
+  const struct ebb_sheet_request request = {.levels = o->quantiles, .level = o->quantile};
+  struct ebb_sheet rule, check;
+  double phi[VERIFIED];
+
+  if (!run->check) return;
+  for (int i = 0; i < VERIFIED; i++) phi[i] = run->phi[(PetscInt)((double)i / (VERIFIED - 1) * (double)(run->m - 1))];
+  ebb_test_call(run->source.evaluate(&run->source, VERIFIED, phi, &request, &rule));
+  ebb_test_call(run->check_source.evaluate(&run->check_source, VERIFIED, phi, &request, &check));
+  ebb_budget_compare(&model->record.budget, &run->constants, &run->lattice, &rule, &check, o->quantiles);
+  ebb_test_call(ebb_sheet_clear(&rule));
+  ebb_test_call(ebb_sheet_clear(&check));
+}
+
+void ebb_test_model_measure(struct ebb_test_model *model)
+{
+  struct ebb_run *run = &model->run;
+  struct ebb_record *r = &model->record;
+  const struct ebb_output_settings *o = &model->settings.output;
+  const struct ebb_sheet_request request = {.levels = o->quantiles, .level = o->quantile};
+  struct ebb_sheet sheet;
+
+  ebb_test_call(ebb_record_create(run->m, o->quantiles, r));
+  ebb_test_call(ebb_budget_measure_drift(&r->budget, run->packet, &run->lattice, run->comm));
+  verify(model);
+  ebb_test_call(run->source.evaluate(&run->source, run->m, run->phi, &request, &sheet));
+  for (PetscInt s = 0; s < run->m; s++) {
+    double moment[EBB_MOMENTS], error[EBB_MOMENTS];
+
+    ebb_moments_from_sums(&run->constants, &run->lattice, &sheet, s, moment);
+    ebb_budget_errors(&r->budget, &run->constants, &run->lattice, &sheet, s, moment, error);
+    for (int i = 0; i < EBB_MOMENTS; i++) {
+      r->moment[i][s] = moment[i];
+      r->error[i][s] = error[i];
+    }
+    r->slope[s] = sheet.sum[EBB_SUM_SLOPE][s] / sheet.sum[EBB_SUM_NORM][s];
+    for (size_t q = 0; q < r->levels; q++) {
+      const size_t at = (size_t)s * r->levels + q;
+
+      r->quantile[at] = sheet.quantile[at];
+      r->quantile_error[at] = ebb_budget_quantile_error(&r->budget, &sheet, s, r->quantile[at]);
+    }
+  }
+  ebb_test_call(ebb_sheet_clear(&sheet));
+}
+
+void ebb_test_model_conclude(struct ebb_test_model *model)
+{
+  struct ebb_run *run = &model->run;
+  struct ebb_record *r = &model->record;
+
+  if (!r->m) ebb_test_model_measure(model);
+  const struct ebb_samples samples = {run->m,   run->phi,  r->moment[EBB_MOMENT_V_MEAN],
+                                      r->slope, r->levels, r->levels ? r->quantile : NULL};
+  const bool mean_exists = run->packet->low_weight < LOW_WEIGHT || run->method == EBB_METHOD_EIGENPAIRS;
+
+  ebb_test_call(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget, mean_exists,
+                                &r->bounce));
+  r->has_law = !run->lattice.prescription->continuum && !isnan(r->bounce.clock.value);
+  if (r->has_law)
+    ebb_test_call(
+        ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
+}
+
+struct ebb_sheet ebb_test_model_look(struct ebb_test_model *model, double clock,
+                                     const struct ebb_sheet_request *request)
+{
+  static const struct ebb_sheet_request nothing = {0};
+  struct ebb_sheet sheet;
+
+  ebb_test_call(model->run.source.evaluate(&model->run.source, 1, &clock, request ? request : &nothing, &sheet));
+  return sheet;
+}
+
+void ebb_test_model_moments(struct ebb_test_model *model, double clock, double moment[EBB_MOMENTS])
+{
+  struct ebb_sheet sheet = ebb_test_model_look(model, clock, NULL);
+
+  ebb_moments_from_sums(&model->run.constants, &model->run.lattice, &sheet, 0, moment);
+  ebb_test_call(ebb_sheet_clear(&sheet));
+}
+
+/* kappa for G = 1, as precise as a long double: X = kappa phi is exponentiated */
+static long double kappa(void) { return sqrtl(12.0L * acosl(-1.0L)); }
+
+/* <sqrt(k^2 + 1/4)> over a normal distribution: trapezoid rule, spectrally exact because nothing happens within 1/2 of
+ * the real axis. */
+static long double mean_root(long double k0, long double sigma)
+{
+  enum { NODES = 2000 };
+  const long double reach = 14.0L, step = 2.0L * reach / NODES;
+  long double sum = 0.0L, weight = 0.0L;
+
+  for (int i = 0; i <= NODES; i++) {
+    const long double u = -reach + step * i, w = expl(-0.5L * u * u), k = k0 + sigma * u;
+
+    sum += w * sqrtl(k * k + 0.25L);
+    weight += w;
+  }
+  return sum / weight;
+}
+
+struct ebb_test_law ebb_test_law_gaussian_momentum(double k0, double sigma_k, double squeeze, double at)
+{
+  const long double q = squeeze, s = sigma_k, common = expl((1.0L + q * q) / (8.0L * s * s));
+
+  return (struct ebb_test_law){common * mean_root(k0 - 0.5L * q, s) * expl(-kappa() * at),
+                               common * mean_root(k0 + 0.5L * q, s) * expl(kappa() * at)};
+}
+
+struct ebb_test_law ebb_test_law_gaussian_lnv(double k0, double sigma_k, bool contracting, double at)
+{
+  const long double k = k0, s = sigma_k, common = expl(1.0L / (8.0L * s * s)), large = k * k + s * s + 0.25L;
+
+  return (struct ebb_test_law){common * (contracting ? large : 1.0L) * expl(-kappa() * at),
+                               common * (contracting ? 1.0L : large) * expl(kappa() * at)};
+}
+
+long double ebb_test_law_v(const struct ebb_test_law *law, double clock)
+{
+  return law->plus * expl(kappa() * clock) + law->minus * expl(-kappa() * clock);
+}
+
+long double ebb_test_law_bounce_v(const struct ebb_test_law *law) { return 2.0L * sqrtl(law->plus * law->minus); }
+
+long double ebb_test_law_bounce_clock(const struct ebb_test_law *law)
+{
+  return 0.5L * logl(law->minus / law->plus) / kappa();
+}
