@@ -11,7 +11,7 @@
 #include <string.h>
 
 enum { VERIFIED = 5 };                  /* samples on which the independent rule is evaluated, as in `evolve` */
-static const double LOW_WEIGHT = 1e-20; /* of |c(0)|^2, above which the mean is not used, as in `evolve` */
+static const double LOW_WEIGHT = 2e-14; /* of |c(0)|^2, above which the mean is not used, as in `evolve` */
 
 void ebb_test_model_create(struct ebb_test_model *model, const char *format, ...)
 {
