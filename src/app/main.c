@@ -4,6 +4,7 @@
 #include "ebbturn/store.h"
 
 #include <omp.h>
+#include <signal.h>
 #include <slepcsys.h>
 #include <stdlib.h>
 #include <string.h>
@@ -61,6 +62,8 @@ int main(int argc, char *argv[])
   struct ebb_invocation invocation;
   int code;
 
+  /* A file larger than the shell's limit is then a failed write with a reason, not the end of the process. */
+  (void)signal(SIGXFSZ, SIG_IGN);
   /* Before anything else: threads of libraries that spin between parallel ranks cost factors of ten. */
   if (!getenv("OMP_NUM_THREADS")) omp_set_num_threads(1);
   if (ebb_command_line(argc, argv, speaks ? stdout : NULL, speaks ? stderr : NULL, &command, &invocation, &code) ==
