@@ -101,7 +101,7 @@ Test(command_line, an_explanation_says_what_the_row_says)
   cr_expect_not_null(strstr(run.out, "in (0, 10]"));
   cr_expect_not_null(strstr(run.out, "0.2375"));
   ebb_test_run_clear(&run);
-  EXPECT(0, ebb_prescription_find("aps")->formula, NULL, "explain", "aps", NULL);
+  EXPECT(0, ebb_prescription_find("aps")->source, NULL, "explain", "aps", NULL);
   EXPECT(0, ebb_prescription_find("aps")->bibtex, NULL, "explain", "aps", "--bibtex", NULL);
   EXPECT(0, "state.v0", NULL, "explain", "gaussian_lnv", NULL);
   EXPECT(0, ebb_propagator_find("chebyshev")->title, NULL, "explain", "chebyshev", NULL);
