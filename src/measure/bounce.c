@@ -209,7 +209,7 @@ static int quantiles_turn(const struct ebb_samples *samples)
 
 /* Volume, density and mode at the bounce clock, with errors from the budget and the independent rule. */
 static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *check, const struct ebb_budget *budget,
-                                double clock, double v_limit, struct ebb_bounce *bounce, double *check_slope)
+                                double clock, double v_limit, struct ebb_bounce *bounce, double *slope_error)
 {
   const struct ebb_sheet_request request = {.v_limit = v_limit};
   struct ebb_budget local = *budget;
@@ -218,13 +218,16 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
 
   PetscFunctionBegin;
   PetscCall(source->evaluate(source, 1, &clock, &request, &sheet));
-  *check_slope = 0.0;
+  *slope_error = 0.0;
   if (check) {
     PetscCall(check->evaluate(check, 1, &clock, &request, &other));
     ebb_budget_compare(&local, source->constants, source->lattice, &sheet, &other, 0);
-    *check_slope = other.sum[EBB_SUM_SLOPE][0] - sheet.sum[EBB_SUM_SLOPE][0];
+    *slope_error = fabs(other.sum[EBB_SUM_SLOPE][0] - sheet.sum[EBB_SUM_SLOPE][0]);
     PetscCall(ebb_sheet_clear(&other));
   }
+  /* what crosses the last site at the speed kappa in ln v: the slope of a steep tail exceeds kappa times the tail */
+  if (!source->lattice->prescription->grid)
+    *slope_error += source->constants->kappa * sheet.sum[EBB_SUM_EDGE_V][0] / log(sheet.edge_ratio);
   ebb_moments_from_sums(source->constants, source->lattice, &sheet, 0, moment);
   ebb_budget_errors(&local, source->constants, source->lattice, &sheet, 0, moment, error);
   bounce->v = (struct ebb_measured){moment[EBB_MOMENT_V_MEAN], error[EBB_MOMENT_V_MEAN]};
@@ -373,7 +376,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   }
   /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
   bounce->clock =
-      (struct ebb_measured){root, (fabs(slope_error) + bounce->v.error * source->constants->kappa) / curvature +
+      (struct ebb_measured){root, (slope_error + bounce->v.error * source->constants->kappa) / curvature +
                                       4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
   PetscCall(refine_median(source, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   bounce->v_median.error += bounce->v.error / bounce->v.value * bounce->v_median.value + 1e-14 * bounce->v_median.value;
