@@ -7,7 +7,7 @@
  * eigenvalue by as small a relative amount. Stored diagonals and off-diagonals do not have that property: their
  * roundings act as a perturbation of size eps Theta_max, the same in every step, which turns phases by
  * eps Theta_max t/(2 omega) (seen: 3e-11 in a clock step of 0.04 at v = 16000, omega = 50, where this form keeps
- * 1e-13).
+ * 7e-13).
  *
  * Complex arrays are walked as pairs of doubles: complex multiplication in C also covers infinities, and a real factor
  * needs none of it. The pair is a vector type of gcc and clang, which fills a 16-byte register without -O3. */
