@@ -50,14 +50,18 @@ static double beyond(double last, double inner)
   return r < SLOW / (1.0 + SLOW) ? last * r / (1.0 - r) : last * SLOW;
 }
 
-/* The same for the probability weighted with v^power. A weight that still rises at the edge says nothing about its
- * tail: then at least what a log-normal packet with the mean and spread of ln v on the lattice holds is charged. */
+/* The same for the probability weighted with v^power. A weight that hardly falls at the edge says little about its
+ * tail: then at least what a log-normal packet with the mean and spread of ln v on the lattice holds is charged; and
+ * where the last window alone holds a good part of all of it, the lattice has missed the bulk and nothing bounds the
+ * rest. */
 static double weight_beyond(const struct ebb_lattice *lattice, const struct ebb_sheet *sheet, PetscInt s, double power,
-                            enum ebb_sum last, enum ebb_sum inner)
+                            enum ebb_sum last, enum ebb_sum inner, double all)
 {
+  static const double GOOD_PART = 0.1;
   const double norm = sheet->sum[EBB_SUM_NORM][s], charged = beyond(sheet->sum[last][s], sheet->sum[inner][s]);
 
   if (sheet->sum[last][s] * (1.0 + SLOW) < sheet->sum[inner][s] * SLOW) return charged;
+  if (sheet->sum[last][s] > GOOD_PART * all) return INFINITY;
   const double mean = sheet->sum[EBB_SUM_LNV][s] / norm, square = sheet->sum[EBB_SUM_LNV2][s] / norm;
   const double spread = sqrt(fmax(square - mean * mean, PETSC_MACHINE_EPSILON));
   const double top = log(fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)));
@@ -159,13 +163,21 @@ PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct 
   PetscFunctionReturn(0);
 }
 
+/* Error of a standard deviation from the error of its square: to first order, or the root where it exceeds that. */
+static double root_error(double variance, double spread)
+{
+  return isfinite(variance) ? variance / fmax(2.0 * spread, sqrt(variance)) : variance;
+}
+
 void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
 {
-  const double edge0 = weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0);
-  const double edge1 = weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V);
-  const double edge2 = weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2);
+  const double edge0 =
+      weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]);
+  const double edge1 = weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V, sheet->sum[EBB_SUM_V][s]);
+  const double edge2 =
+      weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2, sheet->sum[EBB_SUM_V2][s]);
   const double v = moment[EBB_MOMENT_V_MEAN], dv = moment[EBB_MOMENT_V_SPREAD];
   const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)), lnv_max = log(v_max);
   const double state =
@@ -192,8 +204,7 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
     /* variance = <v^2> - <v>^2: the errors of both, cancellation included */
     const double square = v * v + dv * dv, noise = square * common + edge2 + 2.0 * state * v_max * sqrt(square);
     const double variance = noise + 2.0 * v * (v * common + edge1 + far);
-    error[EBB_MOMENT_V_SPREAD] =
-        dv * budget->quadrature[EBB_MOMENT_V_SPREAD] + variance / fmax(2.0 * dv, sqrt(variance));
+    error[EBB_MOMENT_V_SPREAD] = dv * budget->quadrature[EBB_MOMENT_V_SPREAD] + root_error(variance, dv);
   }
   {
     const double l = moment[EBB_MOMENT_LNV_MEAN], dl = moment[EBB_MOMENT_LNV_SPREAD];
@@ -201,14 +212,12 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
     const double variance =
         (l * l + dl * dl) * common + (edge0 + 2.0 * state) * lnv_max * lnv_max + 2.0 * fabs(l) * first;
     error[EBB_MOMENT_LNV_MEAN] = first;
-    error[EBB_MOMENT_LNV_SPREAD] =
-        dl * budget->quadrature[EBB_MOMENT_LNV_SPREAD] + variance / fmax(2.0 * dl, sqrt(variance));
+    error[EBB_MOMENT_LNV_SPREAD] = dl * budget->quadrature[EBB_MOMENT_LNV_SPREAD] + root_error(variance, dl);
   }
   {
     const double p = moment[EBB_MOMENT_MOMENTUM_MEAN], dp = moment[EBB_MOMENT_MOMENTUM_SPREAD];
     const double variance = 4.0 * (p * p + dp * dp) * (common + edge0 + 2.0 * state);
-    error[EBB_MOMENT_MOMENTUM_SPREAD] =
-        dp * budget->quadrature[EBB_MOMENT_MOMENTUM_SPREAD] + variance / fmax(2.0 * dp, sqrt(variance));
+    error[EBB_MOMENT_MOMENTUM_SPREAD] = dp * budget->quadrature[EBB_MOMENT_MOMENTUM_SPREAD] + root_error(variance, dp);
   }
   error[EBB_MOMENT_VOLUME_MEAN] = c->volume_unit * error[EBB_MOMENT_V_MEAN];
   error[EBB_MOMENT_VOLUME_SPREAD] = c->volume_unit * error[EBB_MOMENT_V_SPREAD];

@@ -27,7 +27,7 @@ PetscErrorCode ebb_law_find(struct ebb_source *source, const struct ebb_packet *
   const struct ebb_sheet_request request = {0};
   struct ebb_budget local = *budget;
   struct ebb_sheet sheet;
-  double moment[EBB_MOMENTS], error[EBB_MOMENTS], v[3], v2[3], relative = 0.0;
+  double moment[EBB_MOMENTS], error[EBB_MOMENTS], v[3], v2[3], v2_error[3], relative = 0.0;
 
   PetscFunctionBegin;
   PetscCall(source->evaluate(source, 3, phi, &request, &sheet));
@@ -37,6 +37,7 @@ PetscErrorCode ebb_law_find(struct ebb_source *source, const struct ebb_packet *
     v[s] = sheet.sum[EBB_SUM_V][s] / sheet.sum[EBB_SUM_NORM][s];
     v2[s] = sheet.sum[EBB_SUM_V2][s] / sheet.sum[EBB_SUM_NORM][s];
     relative = fmax(relative, error[EBB_MOMENT_V_MEAN] / v[s]);
+    v2_error[s] = 2.0 * (v[s] * error[EBB_MOMENT_V_MEAN] + moment[EBB_MOMENT_V_SPREAD] * error[EBB_MOMENT_V_SPREAD]);
   }
   PetscCall(ebb_sheet_clear(&sheet));
   {
@@ -65,8 +66,14 @@ PetscErrorCode ebb_law_find(struct ebb_source *source, const struct ebb_packet *
         relative * amplify + (source->lattice->prescription->exact_law && source->lattice->half ? 0.0 : law->residual);
     law->v_plus.error = law->v_plus.value * off;
     law->v_minus.error = law->v_minus.value * off;
-    law->d_plus.error = 8.0 * off * (1.0 + law->d_plus.value);
-    law->d_minus.error = 8.0 * off * (1.0 + law->d_minus.value);
+    {
+      const double up_error = v2_error[2] + v2_error[1], down_error = v2_error[0] + v2_error[1];
+      const double w_plus_error = (up_error * m - down_error * n) / (m * m - n * n); /* m > 0 > n */
+      const double w_minus_error = (down_error * m - up_error * n) / (m * m - n * n);
+
+      law->d_plus.error = w_plus_error / (a * a) + 2.0 * off * (1.0 + law->d_plus.value);
+      law->d_minus.error = w_minus_error / (b * b) + 2.0 * off * (1.0 + law->d_minus.value);
+    }
     law->clock.error = off / kappa;
     law->v_min.error = off * law->v_min.value;
   }
