@@ -22,10 +22,7 @@ static double s_plus(double v) { return sgn(v + 2.0) + sgn(v); }
 static double s_minus(double v) { return sgn(v - 2.0) + sgn(v); }
 
 /* inverse-volume step, in long double because it cancels: |(v+1)^{1/3} - (v-1)^{1/3}| */
-static double inverse_step(double v)
-{
-  return (double)fabsl(cbrtl(fabsl(v + 1.0L)) - cbrtl(fabsl(v - 1.0L)));
-}
+static double inverse_step(double v) { return (double)fabsl(cbrtl(fabsl(v + 1.0L)) - cbrtl(fabsl(v - 1.0L))); }
 
 /* The papers' own forms of theta(v,v) and theta(v,v+4). */
 struct rows {
@@ -230,7 +227,8 @@ Test(prescriptions, large_volume_limit_is_reached_at_second_order)
       for (int fine = 0; fine < 2; fine++) {
         const double v = sectors[i] + (fine ? 800.0 : 400.0);
 
-        off[fine][0] = ebb_prescription_diagonal(p, ebb_prescription_half(p, sectors[i]), sectors[i], v) * 2.0 / (v * v);
+        off[fine][0] =
+            ebb_prescription_diagonal(p, ebb_prescription_half(p, sectors[i]), sectors[i], v) * 2.0 / (v * v);
         off[fine][1] = ebb_prescription_offdiagonal(p, v) * -4.0 / ((v + 2.0) * (v + 2.0));
       }
       for (int e = 0; e < 2; e++) {

@@ -32,7 +32,7 @@ static struct ebb_bounce symmetric_bounce(const char *prescription, double p, do
 /* Bounce of a packet that was an unchirped Gaussian in ln v on one branch. */
 static struct ebb_bounce branch_bounce(const char *prescription, double p, double relative_spread, const char *branch)
 {
-  const double kappa = ebb_constants_make(1.0, 0.2375, 2.0).kappa, k = p/kappa;
+  const double kappa = ebb_constants_make(1.0, 0.2375, 2.0).kappa, k = p / kappa;
   /* v0 = infinity turns at kappa phi = -+ ln(k^2 + 1/4)/2 */
   const double turn = 0.5 * log(k * k + 0.25) / kappa, at = strcmp(branch, "expanding") ? turn : -turn;
   struct ebb_test_model model;
@@ -79,8 +79,8 @@ static double branch_ratio(double k0, double sigma)
 }
 
 /* Effective dynamics underestimates the bounce volume (sign: abstract of Diener, Gupt, Singh, Class.
- * Quantum Grav. 31, 105015 (2014), arXiv:1402.6613, the journal from memory); the closed forms are exact: 1e-8 is asked for, and the stated
- * error must hold. */
+ * Quantum Grav. 31, 105015 (2014), arXiv:1402.6613, the journal from memory); the closed forms are exact: 1e-8 is asked
+ * for, and the stated error must hold. */
 Test(bounce, ratio_to_the_effective_volume_is_exact)
 {
   static const char *const prescriptions[] = {"slqc", "smmo"};
@@ -159,8 +159,8 @@ Test(bounce, worked_runs)
                           "profile: gaussian_lnv, momentum: %g, relative_spread: %g, v0: %.17g, branch: contracting}}",
                           runs[i].prescription, runs[i].p, runs[i].spread, 25.0 * 2.0 * runs[i].p / kappa);
     ebb_test_model_conclude(&model);
-    cr_expect_lt(fabs(model.record.bounce.v.value - runs[i].v), 2e-4, "%s, p = %g: %.7g", runs[i].prescription, runs[i].p,
-                 model.record.bounce.v.value);
+    cr_expect_lt(fabs(model.record.bounce.v.value - runs[i].v), 2e-4, "%s, p = %g: %.7g", runs[i].prescription,
+                 runs[i].p, model.record.bounce.v.value);
     cr_expect_lt(fabs(model.record.law.v_min.value - runs[i].v), 2e-4);
     ebb_test_model_destroy(&model);
   }
@@ -195,8 +195,8 @@ Test(bounce, volume_is_linear_in_the_polymer_scale)
 }
 
 /* Semiclassical packets follow the classical trajectory up to about a percent of the Planck density, and the effective
- * one throughout (Taveras, Phys. Rev. D 78, 064072 (2008), arXiv:0807.3325, abstract): the density at which the mean is a
- * percent off the classical solution of the same early universe is within a factor three of 0.01. */
+ * one throughout (Taveras, Phys. Rev. D 78, 064072 (2008), arXiv:0807.3325, abstract): the density at which the mean is
+ * a percent off the classical solution of the same early universe is within a factor three of 0.01. */
 Test(bounce, packets_leave_the_classical_path_at_a_percent_of_the_planck_density)
 {
   static const double p[] = {500.0, 1000.0};
@@ -227,20 +227,21 @@ Test(bounce, packets_leave_the_classical_path_at_a_percent_of_the_planck_density
   }
 }
 
-/* A bounce can be an artefact of the grid (Laguna, Phys. Rev. D 75, 024033 (2007), gr-qc/0608117, abstract): the continuum
- * operator on its own grid does not turn before v = 1, and where the same operator on the volume lattice does turn the
- * program must say that it is the grid. */
+/* A bounce can be an artefact of the grid (Laguna, Phys. Rev. D 75, 024033 (2007), gr-qc/0608117, abstract): the
+ * continuum operator on its own grid does not turn before v = 1, and where the same operator on the volume lattice does
+ * turn the program must say that it is the grid. */
 Test(bounce, continuum_operator_does_not_bounce)
 {
   static const char *const branches[] = {"contracting", "expanding", "both"};
   struct ebb_test_model model;
 
   for (int i = 0; i < 3; i++) {
-    ebb_test_model_create(&model,
-                          "{gravity: {prescription: wdw}, clock: {from: -0.5, to: 0.5, samples: 21}, lattice: {\n"
-                          "lnv_min: -6, lnv_max: 18, points: 4096}, state: {profile: gaussian_momentum, momentum: 500,\n"
-                          "relative_spread: 0.05, lnv0: 6, branch: %s}}",
-                          branches[i]);
+    ebb_test_model_create(
+        &model,
+        "{gravity: {prescription: wdw}, clock: {from: -0.5, to: 0.5, samples: 21}, lattice: {\n"
+        "lnv_min: -6, lnv_max: 18, points: 4096}, state: {profile: gaussian_momentum, momentum: 500,\n"
+        "relative_spread: 0.05, lnv0: 6, branch: %s}}",
+        branches[i]);
     ebb_test_model_conclude(&model);
     cr_expect_eq(model.record.bounce.verdict, EBB_VERDICT_NO, "%s: %s", branches[i], model.record.bounce.reason);
     for (PetscInt s = 1; i < 2 && s < model.run.m; s++) /* one branch: ln v moves at the speed kappa, straight on */

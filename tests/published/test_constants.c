@@ -30,7 +30,8 @@ Test(constants, critical_density)
   ebb_test_close_printed(c.critical_density, "0.41"); /* Kaminski, Lewandowski, Pawlowski, arXiv:0809.2590, abstract */
   ebb_test_close_printed(c.area_gap, "5.16933");
   /* the older gap, half as large, doubles the density: 0.82 */
-  ebb_test_close_printed(ebb_constants_make(1.0, GAMMA, sqrt(2.0 * sqrt(3.0) * EBB_PI * GAMMA)).critical_density, "0.82");
+  ebb_test_close_printed(ebb_constants_make(1.0, GAMMA, sqrt(2.0 * sqrt(3.0) * EBB_PI * GAMMA)).critical_density,
+                         "0.82");
   ebb_test_close_printed(c.critical_density * c.area_gap, "2.116188");
 }
 
@@ -41,8 +42,8 @@ Test(constants, critical_cosmological_constant)
   ebb_test_close_printed(standard().critical_lambda, "10.2887");
 }
 
-/* Volume eigenvalues 2 pi gamma lambda |v| in steps of four (Ashtekar, Pawlowski, Singh (2006), gr-qc/0607039; Ashtekar,
- * Corichi, Singh (2008); from memory, recomputed independently) */
+/* Volume eigenvalues 2 pi gamma lambda |v| in steps of four (Ashtekar, Pawlowski, Singh (2006), gr-qc/0607039;
+ * Ashtekar, Corichi, Singh (2008); from memory, recomputed independently) */
 Test(constants, volume_spectrum, .init = ebb_test_slepc_begin, .fini = ebb_test_slepc_end)
 {
   const struct ebb_constants c = standard();
@@ -58,7 +59,8 @@ Test(constants, volume_spectrum, .init = ebb_test_slepc_begin, .fini = ebb_test_
   ebb_test_call(ebb_lattice_make(ebb_prescription_find("slqc"), 4.0, 100, PETSC_COMM_SELF, &lattice));
   for (PetscInt i = 0; i < 100; i++) {
     cr_expect_eq(ebb_lattice_v(&lattice, i), 4.0 * (double)(i + 1));
-    if (i) ebb_test_close_printed(c.volume_unit * (ebb_lattice_v(&lattice, i) - ebb_lattice_v(&lattice, i - 1)), "13.5713");
+    if (i)
+      ebb_test_close_printed(c.volume_unit * (ebb_lattice_v(&lattice, i) - ebb_lattice_v(&lattice, i - 1)), "13.5713");
   }
 }
 
@@ -66,7 +68,8 @@ Test(constants, volume_spectrum, .init = ebb_test_slepc_begin, .fini = ebb_test_
 Test(constants, scale_with_their_dimensions)
 {
   const double lambda = 1.7;
-  const struct ebb_constants a = ebb_constants_make(1.0, GAMMA, lambda), b = ebb_constants_make(1.0, GAMMA, 2.0 * lambda);
+  const struct ebb_constants a = ebb_constants_make(1.0, GAMMA, lambda),
+                             b = ebb_constants_make(1.0, GAMMA, 2.0 * lambda);
   const struct ebb_constants unit = ebb_constants_make(4.0, GAMMA, 2.0 * lambda); /* half the unit of length */
 
   ebb_test_close(b.critical_density, a.critical_density / 4.0, ebb_test_rounding(4, a.critical_density));
@@ -79,7 +82,8 @@ Test(constants, scale_with_their_dimensions)
 
 /* Largest Hubble rate 1/(2 gamma lambda), where the density is half the critical one; 0.93 quoted in Ashtekar, Sloan,
  * Phys. Lett. B 694, 108 (2010), arXiv:0912.4093 (second-hand) */
-Test(constants, largest_hubble_rate_of_the_effective_trajectory, .init = ebb_test_slepc_begin, .fini = ebb_test_slepc_end)
+Test(constants, largest_hubble_rate_of_the_effective_trajectory, .init = ebb_test_slepc_begin,
+     .fini = ebb_test_slepc_end)
 {
   enum { SAMPLES = 401, HALF = 200 };
   const struct ebb_constants c = standard();
@@ -95,7 +99,8 @@ Test(constants, largest_hubble_rate_of_the_effective_trajectory, .init = ebb_tes
     const double hubble = sqrt(fmax(square, 0.0));
 
     /* and (dV/dt)/3V = sin 2b/(2 gamma lambda): 1e-10, the integrator's tolerance times the trajectory's length */
-    ebb_test_close(fabs(sin(2.0 * e.b[s])) * c.hubble_max, hubble, ebb_test_solver(1e3, 1e-13, c.hubble_max / sqrt(1e-6)));
+    ebb_test_close(fabs(sin(2.0 * e.b[s])) * c.hubble_max, hubble,
+                   ebb_test_solver(1e3, 1e-13, c.hubble_max / sqrt(1e-6)));
     if (hubble > largest) {
       largest = hubble;
       at = e.density[s];

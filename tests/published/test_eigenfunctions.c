@@ -64,8 +64,9 @@ static double gamma_modulus(double k)
   return modulus;
 }
 
-/* e_k(2m) = (-1)^j sqrt(4/(pi m)) |Gamma(1+ik)| P_{m-1}^{(1)}(k; pi/2), positive at the first site; m even on v = 4n, odd
- * on v = 2 + 4n. (j + 1) P_{j+1} = 2k P_j - (j + 1) P_{j-1} (DLMF 18.22.1 with 18.22.2 at lambda = 1, phi = pi/2). */
+/* e_k(2m) = (-1)^j sqrt(4/(pi m)) |Gamma(1+ik)| P_{m-1}^{(1)}(k; pi/2), positive at the first site; m even on v = 4n,
+ * odd on v = 2 + 4n. (j + 1) P_{j+1} = 2k P_j - (j + 1) P_{j-1} (DLMF 18.22.1 with 18.22.2 at lambda = 1, phi = pi/2).
+ */
 static void polynomials(double k, PetscInt most, double e[])
 {
   const double modulus = gamma_modulus(k);
@@ -235,8 +236,8 @@ Test(eigenfunctions, of_every_sector_have_the_exact_phase)
 }
 
 /* Each eigenfunction tends to incoming and outgoing Wheeler-DeWitt waves v^{+-ik} of equal strength: the reflection off
- * the bounce is complete (Craig, Class. Quantum Grav. 30, 035010 (2013), arXiv:1207.5601; Kaminski, Pawlowski, Phys. Rev.
- * D 81, 084027 (2010), arXiv:1001.2663; the modulus from memory). Two waves are fitted to sites v >= 1e4 by least
+ * the bounce is complete (Craig, Class. Quantum Grav. 30, 035010 (2013), arXiv:1207.5601; Kaminski, Pawlowski, Phys.
+ * Rev. D 81, 084027 (2010), arXiv:1001.2663; the modulus from memory). Two waves are fitted to sites v >= 1e4 by least
  * squares; the next term of the waves is k^3/(3 v^2), below 1e-6 there. */
 Test(eigenfunctions, reflect_completely)
 {
@@ -281,8 +282,8 @@ Test(eigenfunctions, reflect_completely)
 }
 
 /* On a full lattice e_k is the eigenchannel C_+- sqrt(8/(pi |v|)) cos(k ln|v| + alpha), one alpha for both sides,
- * C_+^2 + C_-^2 = 1, and the two channels of one k are orthogonal (derived; Kaminski, Lewandowski, Class. Quantum Grav. 25,
- * 035001 (2008), for the doubled spectrum). A few roundings. */
+ * C_+^2 + C_-^2 = 1, and the two channels of one k are orthogonal (derived; Kaminski, Lewandowski, Class. Quantum Grav.
+ * 25, 035001 (2008), for the doubled spectrum). A few roundings. */
 Test(eigenfunctions, of_both_orientations_form_two_channels)
 {
   const char *names[] = {"aps", "slqc"};

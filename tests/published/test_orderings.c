@@ -45,9 +45,9 @@ Test(orderings, means_and_spreads_agree_at_large_momentum)
   }
 }
 
-/* Largest difference of |psi|^2 at the bounce between the 2006 and the solvable ordering: recomputed independently, 7.8e-3
- * at p = 20, 2e-3 at 50 and 2.4e-5 at 500, relative spread 0.1 where the lattice is short (the wave function at the bounce
- * does not know where it ends). */
+/* Largest difference of |psi|^2 at the bounce between the 2006 and the solvable ordering: recomputed
+ * independently, 7.8e-3 at p = 20, 2e-3 at 50 and 2.4e-5 at 500, relative spread 0.1 where the lattice is short (the
+ * wave function at the bounce does not know where it ends). */
 Test(orderings, wave_functions_at_the_bounce_differ)
 {
   static const double p[] = {20.0, 50.0, 500.0};

@@ -99,8 +99,8 @@ static double draw(void)
   return (double)(x >> 11) * 0x1p-53;
 }
 
-/* No state is denser than rho_c (abstract of arXiv:0710.3565): <v^-1 Theta v^-1> <= 3 pi G, and the other ordering has the
- * same spectrum. Random states, most of them far from semiclassical. */
+/* No state is denser than rho_c (abstract of arXiv:0710.3565): <v^-1 Theta v^-1> <= 3 pi G, and the other ordering has
+ * the same spectrum. Random states, most of them far from semiclassical. */
 Test(law, no_state_is_denser_than_the_critical_density)
 {
   enum { STATES = 36, TIMES = 5 };
@@ -112,15 +112,14 @@ Test(law, no_state_is_denser_than_the_critical_density)
     struct ebb_test_model model;
 
     if (i % 3 < 2) {
-      ebb_test_model_create(
-          &model,
-          "{gravity: {prescription: %s, sector: %g}, clock: {from: -0.3, to: 0.3, samples: %d},\n"
-          "lattice: {volume_max: 1200}, state: {profile: superposition, components: [\n"
-          "{profile: gaussian_volume, weight: [%g, %g], v0: %g, spread: %g, b0: %g, chirp: %g},\n"
-          "{profile: gaussian_volume, weight: [%g, %g], v0: %g, spread: %g, b0: %g, chirp: %g}]}}",
-          prescriptions[i % 3], sectors[i % 3], TIMES, draw() - 0.5, draw() - 0.5, 8.0 + 60.0 * draw(),
-          2.0 + 8.0 * draw(), EBB_PI * draw(), 2.0 * draw() - 1.0, draw() - 0.5, draw() - 0.5, 8.0 + 60.0 * draw(),
-          2.0 + 8.0 * draw(), EBB_PI * draw(), 2.0 * draw() - 1.0);
+      ebb_test_model_create(&model,
+                            "{gravity: {prescription: %s, sector: %g}, clock: {from: -0.3, to: 0.3, samples: %d},\n"
+                            "lattice: {volume_max: 1200}, state: {profile: superposition, components: [\n"
+                            "{profile: gaussian_volume, weight: [%g, %g], v0: %g, spread: %g, b0: %g, chirp: %g},\n"
+                            "{profile: gaussian_volume, weight: [%g, %g], v0: %g, spread: %g, b0: %g, chirp: %g}]}}",
+                            prescriptions[i % 3], sectors[i % 3], TIMES, draw() - 0.5, draw() - 0.5,
+                            8.0 + 60.0 * draw(), 2.0 + 8.0 * draw(), EBB_PI * draw(), 2.0 * draw() - 1.0, draw() - 0.5,
+                            draw() - 0.5, 8.0 + 60.0 * draw(), 2.0 + 8.0 * draw(), EBB_PI * draw(), 2.0 * draw() - 1.0);
     } else {
       ebb_test_model_create(&model,
                             "{gravity: {prescription: %s, sector: %g}, clock: {from: -0.3, to: 0.3, samples: %d},\n"
@@ -142,8 +141,9 @@ Test(law, no_state_is_denser_than_the_critical_density)
   cr_expect_gt(highest, 0.95, "the ensemble never came near the bound: %g", highest);
 }
 
-/* Asymmetry of the relative fluctuations before and after vanishes without squeezing and grows with it (Corichi, Montoya,
- * Phys. Rev. D 84, 044021 (2011), arXiv:1105.5081, abstract: coherent states behave better than squeezed ones). */
+/* Asymmetry of the relative fluctuations before and after vanishes without squeezing and grows with it (Corichi,
+ * Montoya, Phys. Rev. D 84, 044021 (2011), arXiv:1105.5081, abstract: coherent states behave better than squeezed
+ * ones). */
 Test(law, squeezing_makes_fluctuations_asymmetric)
 {
   static const double squeeze[] = {-1.0, -0.5, 0.0, 0.5, 1.0};
@@ -167,9 +167,9 @@ Test(law, squeezing_makes_fluctuations_asymmetric)
   cr_expect(asymmetry[4] > asymmetry[3] && asymmetry[3] > asymmetry[2]);
 }
 
-/* Cosmic recall of a chirped packet (Corichi, Singh, arXiv:0710.4543; Kaminski, Pawlowski, arXiv:1001.2663): an asymmetry of
- * a factor five, inside the bound 2 sd(Re psi(1 + ik)). Numbers recomputed independently by diagonalising 512 and 1536
- * sites, to 1e-9; the continuous minimum of the median to 1e-7. */
+/* Cosmic recall of a chirped packet (Corichi, Singh, arXiv:0710.4543; Kaminski, Pawlowski, arXiv:1001.2663): an
+ * asymmetry of a factor five, inside the bound 2 sd(Re psi(1 + ik)). Numbers recomputed independently by diagonalising
+ * 512 and 1536 sites, to 1e-9; the continuous minimum of the median to 1e-7. */
 Test(law, recalls_a_chirped_packet)
 {
   const double digits = 1e-9;
@@ -181,19 +181,18 @@ Test(law, recalls_a_chirped_packet)
   const struct ebb_sheet_request request = {.levels = 1, .level = &half};
   double spread[2];
 
-  ebb_test_model_create(&model, "{clock: {from: -0.5, to: 0.5, samples: 11}, state: {profile: gaussian_volume, v0: 96,\n"
-                                "spread: 12, b0: 1.45, chirp: 0.8, at: 0}}");
+  ebb_test_model_create(&model,
+                        "{clock: {from: -0.5, to: 0.5, samples: 11}, state: {profile: gaussian_volume, v0: 96,\n"
+                        "spread: 12, b0: 1.45, chirp: 0.8, at: 0}}");
   ebb_test_model_conclude(&model);
   law = &model.record.law;
   bounce = &model.record.bounce;
   const struct {
     struct ebb_measured actual;
     double expected;
-  } known[] = {{law->v_plus, 53.356119015},        {law->v_minus, 42.643880985},
-               {law->v_min, 95.4004609862},        {law->d_plus, 0.0102297238996},
-               {law->d_minus, 0.0482527804488},    {law->recall_bound, 0.272447531646},
-               {law->lnv_sum, 7.7001776878},       {bounce->v, 95.4004609862},
-               {law->v_bound, 94.8499413265}};
+  } known[] = {{law->v_plus, 53.356119015},    {law->v_minus, 42.643880985},    {law->v_min, 95.4004609862},
+               {law->d_plus, 0.0102297238996}, {law->d_minus, 0.0482527804488}, {law->recall_bound, 0.272447531646},
+               {law->lnv_sum, 7.7001776878},   {bounce->v, 95.4004609862},      {law->v_bound, 94.8499413265}};
   for (size_t i = 0; i < sizeof known / sizeof *known; i++) {
     const double off = fabs(known[i].actual.value - known[i].expected);
 
@@ -216,10 +215,10 @@ Test(law, recalls_a_chirped_packet)
   ebb_test_model_destroy(&model);
 }
 
-/* Kinematical Gaussians: <sin 2b> and <sin^2 b> in closed form. With psi_n = exp(-2 i n b0 - (1 + i chirp)(n - n0)^2/4s^2),
- * s = spread/4, sum conj(psi_{n+j}) psi_n = exp(2 i j b0 - j^2 (1 + chirp^2)/8s^2) (derived; the fluctuations are the
- * subject of Fraser, arXiv:2103.14090). The sum over n is its integral up to exp(-2 pi^2 s^2), 1e-17 from s = 1.4 on; the
- * cut at v = 0 is 8 spreads away. */
+/* Kinematical Gaussians: <sin 2b> and <sin^2 b> in closed form. With psi_n = exp(-2 i n b0 - (1 + i chirp)(n -
+ * n0)^2/4s^2), s = spread/4, sum conj(psi_{n+j}) psi_n = exp(2 i j b0 - j^2 (1 + chirp^2)/8s^2) (derived; the
+ * fluctuations are the subject of Fraser, arXiv:2103.14090). The sum over n is its integral up to exp(-2 pi^2 s^2),
+ * 1e-17 from s = 1.4 on; the cut at v = 0 is 8 spreads away. */
 Test(law, gaussian_states_have_closed_moments)
 {
   static const struct {

@@ -25,8 +25,8 @@ void ebb_test_model_create(struct ebb_test_model *model, const char *format, ...
   const int length = vsnprintf(text, sizeof text, format, arguments);
   va_end(arguments);
   cr_assert(length > 0 && (size_t)length < sizeof text, "a model of %d bytes", length);
-  const bool good = ebb_input_parse(text, (size_t)length, NULL, 0, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE,
-                                    &model->settings, problems);
+  const bool good =
+      ebb_input_parse(text, (size_t)length, NULL, 0, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &model->settings, problems);
   cr_assert(good, "%s\n%s", ebb_problems_text(problems, 0), text);
   ebb_problems_destroy(&problems);
   ebb_test_call(ebb_run_create(&model->settings, ".", PETSC_COMM_SELF, &model->run, &code));
@@ -105,8 +105,7 @@ void ebb_test_model_conclude(struct ebb_test_model *model)
                                 &r->bounce));
   r->has_law = !run->lattice.prescription->continuum && !isnan(r->bounce.clock.value);
   if (r->has_law)
-    ebb_test_call(
-        ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
+    ebb_test_call(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
 }
 
 struct ebb_sheet ebb_test_model_look(struct ebb_test_model *model, double clock,
@@ -130,18 +129,21 @@ void ebb_test_model_moments(struct ebb_test_model *model, double clock, double m
 /* kappa for G = 1, as precise as a long double: X = kappa phi is exponentiated */
 static long double kappa(void) { return sqrtl(12.0L * acosl(-1.0L)); }
 
-/* <sqrt(k^2 + 1/4)> over a normal distribution: trapezoid rule, spectrally exact because nothing happens within 1/2 of
+static long double root(long double k) { return sqrtl(k * k + 0.25L); }
+static long double square(long double k) { return k * sqrtl(k * k + 1.0L); }
+
+/* Mean over a normal distribution: trapezoid rule, spectrally exact because the functions are analytic within 1/2 of
  * the real axis. */
-static long double mean_root(long double k0, long double sigma)
+static long double mean(long double (*of)(long double k), long double k0, long double sigma)
 {
   enum { NODES = 2000 };
   const long double reach = 14.0L, step = 2.0L * reach / NODES;
   long double sum = 0.0L, weight = 0.0L;
 
   for (int i = 0; i <= NODES; i++) {
-    const long double u = -reach + step * i, w = expl(-0.5L * u * u), k = k0 + sigma * u;
+    const long double u = -reach + step * i, w = expl(-0.5L * u * u);
 
-    sum += w * sqrtl(k * k + 0.25L);
+    sum += w * of(k0 + sigma * u);
     weight += w;
   }
   return sum / weight;
@@ -149,10 +151,12 @@ static long double mean_root(long double k0, long double sigma)
 
 struct ebb_test_law ebb_test_law_gaussian_momentum(double k0, double sigma_k, double squeeze, double at)
 {
-  const long double q = squeeze, s = sigma_k, common = expl((1.0L + q * q) / (8.0L * s * s));
+  const long double q = squeeze, s = sigma_k, k = k0, power = (1.0L + q * q) / (8.0L * s * s), shift = kappa() * at;
 
-  return (struct ebb_test_law){common * mean_root(k0 - 0.5L * q, s) * expl(-kappa() * at),
-                               common * mean_root(k0 + 0.5L * q, s) * expl(kappa() * at)};
+  return (struct ebb_test_law){expl(power - shift) * mean(root, k - 0.5L * q, s),
+                               expl(power + shift) * mean(root, k + 0.5L * q, s),
+                               {2.0L * (k * k + s * s), expl(4.0L * power - 2.0L * shift) * mean(square, k - q, s),
+                                expl(4.0L * power + 2.0L * shift) * mean(square, k + q, s)}};
 }
 
 struct ebb_test_law ebb_test_law_gaussian_lnv(double k0, double sigma_k, bool contracting, double at)
@@ -160,12 +164,20 @@ struct ebb_test_law ebb_test_law_gaussian_lnv(double k0, double sigma_k, bool co
   const long double k = k0, s = sigma_k, common = expl(1.0L / (8.0L * s * s)), large = k * k + s * s + 0.25L;
 
   return (struct ebb_test_law){common * (contracting ? large : 1.0L) * expl(-kappa() * at),
-                               common * (contracting ? 1.0L : large) * expl(kappa() * at)};
+                               common * (contracting ? 1.0L : large) * expl(kappa() * at),
+                               {NAN, NAN, NAN}};
 }
 
 long double ebb_test_law_v(const struct ebb_test_law *law, double clock)
 {
   return law->plus * expl(kappa() * clock) + law->minus * expl(-kappa() * clock);
+}
+
+long double ebb_test_law_v_spread(const struct ebb_test_law *law, double clock)
+{
+  const long double growth = expl(2.0L * kappa() * clock), v = ebb_test_law_v(law, clock);
+
+  return sqrtl(law->square[0] + law->square[1] * growth + law->square[2] / growth - v * v);
 }
 
 long double ebb_test_law_bounce_v(const struct ebb_test_law *law) { return 2.0L * sqrtl(law->plus * law->minus); }

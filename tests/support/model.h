@@ -33,15 +33,18 @@ void ebb_test_model_moments(struct ebb_test_model *model, double clock, double m
  * to exp(-k0^2/(2 sigma_k^2)). k0, sigma_k: mean and standard deviation of |c|^2. */
 struct ebb_test_law {
   long double plus, minus;
+  long double square[3]; /* <v^2> = square[0] + square[1] e^2X + square[2] e^-2X; gaussian_momentum only */
 };
 /* c = exp(-(1 + i squeeze)(k - k0)^2/(4 sigma_k^2) - i k kappa at): on imaginary shifts of k,
- * plus, minus = exp((1 + squeeze^2)/(8 sigma_k^2)) <sqrt(k^2 + 1/4)> e^{-+kappa at}, k about k0 -+ squeeze/2. */
+ * plus, minus = exp((1 + squeeze^2)/(8 sigma_k^2)) <sqrt(k^2 + 1/4)> e^{-+kappa at}, k about k0 -+ squeeze/2; square =
+ * 2 <k^2>, and exp((1 + squeeze^2)/(2 sigma_k^2)) <k sqrt(k^2 + 1)> e^{-+2 kappa at}, k about k0 -+ squeeze. */
 struct ebb_test_law ebb_test_law_gaussian_momentum(double k0, double sigma_k, double squeeze, double at);
 /* The same Gaussian times exp(-+i alpha(k)), upper sign contracting: exp(1/(8 sigma_k^2)) times k0^2 + sigma_k^2 + 1/4
  * for the term that grows and 1 for the one that falls (expanding: exchanged). */
 struct ebb_test_law ebb_test_law_gaussian_lnv(double k0, double sigma_k, bool contracting, double at);
-/* Mean volume at a clock value, and at the bounce. */
+/* Mean volume and its standard deviation at a clock value, and at the bounce. */
 long double ebb_test_law_v(const struct ebb_test_law *law, double clock);
+long double ebb_test_law_v_spread(const struct ebb_test_law *law, double clock);
 long double ebb_test_law_bounce_v(const struct ebb_test_law *law);
 long double ebb_test_law_bounce_clock(const struct ebb_test_law *law);
 
