@@ -375,9 +375,8 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     PetscFunctionReturn(0);
   }
   /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
-  bounce->clock =
-      (struct ebb_measured){root, (slope_error + bounce->v.error * source->constants->kappa) / curvature +
-                                      4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
+  bounce->clock = (struct ebb_measured){root, (slope_error + bounce->v.error * source->constants->kappa) / curvature +
+                                                  4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
   PetscCall(refine_median(source, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   bounce->v_median.error += bounce->v.error / bounce->v.value * bounce->v_median.value + 1e-14 * bounce->v_median.value;
   if (!mean_exists) {
