@@ -29,6 +29,29 @@ static double mass_below(const struct ebb_lattice *lattice, int arm, PetscInt be
   return before[n - begin] + part * mass;
 }
 
+/* Running sums of this rank's part of an arm, outward: before [m][sites], total [m]. */
+static PetscErrorCode running_sums(const struct ebb_lattice *lattice, int arm, PetscInt begin, PetscInt sites,
+                                   const struct ebb_sheet *sheet, double **before, double **total)
+{
+  const PetscInt m = sheet->m;
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc2((size_t)m * (size_t)PetscMax(sites, 1), before, m, total));
+  for (PetscInt s = 0; s < m; s++) {
+    double sum = 0.0;
+
+    for (PetscInt i = 0; i < sites; i++) {
+      const PetscInt global = ebb_lattice_global(lattice, arm, begin + i);
+
+      (*before)[(size_t)s * (size_t)sites + (size_t)i] = sum;
+      sum += ebb_lattice_weight(lattice, global) *
+             sheet->probability[(size_t)s * (size_t)sheet->local + (size_t)(global - lattice->begin)];
+    }
+    (*total)[s] = sum;
+  }
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_sheet_quantiles(const struct ebb_source *source, size_t levels, const double level[],
                                    struct ebb_sheet *sheet)
 {
@@ -40,18 +63,7 @@ PetscErrorCode ebb_sheet_quantiles(const struct ebb_source *source, size_t level
   PetscFunctionBegin;
   for (int arm = 0; arm < 2; arm++) {
     ebb_lattice_local(lattice, arm, &begin[arm], &end[arm]);
-    const PetscInt sites = end[arm] - begin[arm];
-    PetscCall(PetscMalloc2((size_t)m * (size_t)PetscMax(sites, 1), &before[arm], m, &total[arm]));
-    for (PetscInt s = 0; s < m; s++) {
-      double sum = 0.0;
-      for (PetscInt i = 0; i < sites; i++) {
-        const PetscInt global = ebb_lattice_global(lattice, arm, begin[arm] + i);
-        before[arm][(size_t)s * (size_t)sites + (size_t)i] = sum;
-        sum += ebb_lattice_weight(lattice, global) *
-               sheet->probability[(size_t)s * (size_t)sheet->local + (size_t)(global - lattice->begin)];
-      }
-      total[arm][s] = sum;
-    }
+    PetscCall(running_sums(lattice, arm, begin[arm], end[arm] - begin[arm], sheet, &before[arm], &total[arm]));
   }
   for (int arm = 0; arm < (lattice->sites[1] ? 2 : 1); arm++) {
     double a, b;

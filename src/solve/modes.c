@@ -6,6 +6,7 @@
  * and y carry a common power of two. One pass to the matching volume gives the amplitude; every later pass starts from
  * the normalised first value, so a cursor needs no memory of the sites before it. */
 #include "basis_impl.h"
+#include "channels.h"
 #include "series.h"
 
 #include <float.h>
@@ -249,62 +250,8 @@ static PetscErrorCode normalise_half(struct ebb_basis *basis, PetscInt match)
   PetscFunctionReturn(0);
 }
 
-/* Two-channel problem of one k. w[arm][u]: amplitude of fundamental solution u on an arm (common scale per arm).
- * Wanted: real (a, b) and t = tan alpha with Im(e^{-i alpha} (w a)) = 0 on both arms. Both roots are returned in
- * c[root]. */
-struct channel {
-  double alpha, a[2], c[2]; /* phase; combination of the solutions; real amplitudes on the arms */
-};
-
-static void solve_channels(double complex w[2][2], struct channel out[2])
-{
-  const double dr = creal(w[0][0]) * creal(w[1][1]) - creal(w[0][1]) * creal(w[1][0]);
-  const double di = cimag(w[0][0]) * cimag(w[1][1]) - cimag(w[0][1]) * cimag(w[1][0]);
-  const double mixed = cimag(w[0][0]) * creal(w[1][1]) + creal(w[0][0]) * cimag(w[1][1]) -
-                       cimag(w[0][1]) * creal(w[1][0]) - creal(w[0][1]) * cimag(w[1][0]);
-  /* det(Im w - t Re w) = dr t^2 - mixed t + di; roots as tan = (numerator, denominator) so that t = infinity is allowed
-   */
-  const double root = sqrt(fmax(mixed * mixed - 4.0 * dr * di, 0.0));
-  const double q = 0.5 * (mixed + copysign(root, mixed));
-  const double numerator[2] = {q, di}, denominator[2] = {dr, q};
-
-  for (int r = 0; r < 2; r++) {
-    const double alpha = atan2(numerator[r], denominator[r]);
-    double complex turned[2][2];
-    int best = 0;
-    double norm;
-
-    for (int arm = 0; arm < 2; arm++)
-      for (int u = 0; u < 2; u++) turned[arm][u] = w[arm][u] * cexp(-I * alpha);
-    /* null vector of the imaginary part, from its larger row relative to that row's size */
-    const double size0 = hypot(cimag(turned[0][0]), cimag(turned[0][1])) / (cabs(w[0][0]) + cabs(w[0][1]));
-    const double size1 = hypot(cimag(turned[1][0]), cimag(turned[1][1])) / (cabs(w[1][0]) + cabs(w[1][1]));
-    if (size1 > size0) best = 1;
-    out[r].a[0] = cimag(turned[best][1]);
-    out[r].a[1] = -cimag(turned[best][0]);
-    norm = hypot(out[r].a[0], out[r].a[1]);
-    out[r].alpha = alpha;
-    for (int u = 0; u < 2; u++) out[r].a[u] /= norm;
-    for (int arm = 0; arm < 2; arm++)
-      out[r].c[arm] = creal(turned[arm][0]) * out[r].a[0] + creal(turned[arm][1]) * out[r].a[1];
-  }
-}
-
-/* Signs: positive at the first site of the channel's own arm, and positive amplitude there (alpha absorbs pi). */
-static void orient(struct channel *ch, int arm)
-{
-  if (ch->a[arm] < 0.0)
-    for (int u = 0; u < 2; u++) {
-      ch->a[u] = -ch->a[u];
-      ch->c[u] = -ch->c[u];
-    }
-  if (ch->c[arm] < 0.0) {
-    ch->alpha += ch->alpha > 0.0 ? -EBB_PI : EBB_PI;
-    for (int u = 0; u < 2; u++) ch->c[u] = -ch->c[u];
-  }
-}
-
-static void store_channel(struct ebb_basis *basis, PetscInt j, const struct channel *ch, const int shift[2])
+static void store_channel(struct ebb_basis *basis, PetscInt j, const struct ebb_channel_solution *ch,
+                          const int shift[2])
 {
   struct modes *m = basis->data;
   const double cross = basis->lattice.cross, flux = cross * (ch->a[0] - ch->a[1]);
@@ -345,7 +292,7 @@ static PetscErrorCode normalise_full(struct ebb_basis *basis, const enum ebb_cha
   for (PetscInt j = 0; j < n; j++) {
     double complex w[2][2];
     int shift[2];
-    struct channel ch[2];
+    struct ebb_channel_solution ch[2];
     int pick;
     const int arm = channel && channel[j] == EBB_CHANNEL_LEFT ? 1 : 0;
 
@@ -353,7 +300,7 @@ static PetscErrorCode normalise_full(struct ebb_basis *basis, const enum ebb_cha
       shift[a] = exponent[a][0][j] > exponent[a][1][j] ? exponent[a][0][j] : exponent[a][1][j];
       for (int u = 0; u < 2; u++) w[a][u] = amplitude[a][u][j] * ldexp(1.0, (exponent[a][u][j] - shift[a]) * STEP_BITS);
     }
-    solve_channels(w, ch);
+    ebb_channels_solve(w, ch);
     /* right: |C_+| > |C_-|, compared at a common scale */
     {
       const int top = shift[0] > shift[1] ? shift[0] : shift[1];
@@ -363,7 +310,7 @@ static PetscErrorCode normalise_full(struct ebb_basis *basis, const enum ebb_cha
       const int right = share0 >= share1 ? 0 : 1;
       pick = arm == 0 ? right : 1 - right;
     }
-    orient(&ch[pick], arm);
+    ebb_channels_orient(&ch[pick], arm);
     store_channel(basis, j, &ch[pick], shift);
   }
   for (int arm = 0; arm < 2; arm++)

@@ -27,13 +27,13 @@ const struct ebb_command ebb_command_evolve = {
     .run = run,
 };
 
-static const double NORM_LIMIT = 1e-6;  /* |norm - 1| above which the run is called broken */
+static const double NORM_LIMIT = 1e-6; /* |norm - 1| above which the run is called broken */
 /* |c(0)|^2/|c|^2_max above which the mean volume drifts with the lattice: exp(-k0^2/(2 sigma_k^2)) at k0 = 8 sigma_k.
  * There the tail that v^{-1/2}/ln v of the modes at k = 0 leaves adds less than 1e-12 of the mean on any lattice. */
 static const double LOW_WEIGHT = 2e-14;
-static const double LOST = 1e-12;       /* weight of an l2 vector outside the modes above which it counts as an error */
-static const double PURE = 0.99;        /* channel purity below which a warning is given */
-enum { VERIFIED = 5 };                  /* samples on which the independent rule is evaluated */
+static const double LOST = 1e-12; /* weight of an l2 vector outside the modes above which it counts as an error */
+static const double PURE = 0.99;  /* channel purity below which a warning is given */
+enum { VERIFIED = 5 };            /* samples on which the independent rule is evaluated */
 
 /* Everything of one run. */
 struct work {
