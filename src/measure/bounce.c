@@ -161,31 +161,34 @@ static PetscErrorCode refine_mean(struct ebb_source *source, double low, double 
 }
 
 /* Minimum of the median between low and high by sections of SECTION points: the median is piecewise smooth (kinks where
- * it passes a cell edge), so nothing of higher order is used. */
-static PetscErrorCode refine_median(struct ebb_source *source, double low, double high, double v_limit, double *clock,
-                                    struct ebb_measured *median)
+ * it passes a cell edge), so nothing of higher order is used. The quartiles give the density that its error needs. */
+static PetscErrorCode refine_median(struct ebb_source *source, const struct ebb_budget *budget, double low, double high,
+                                    double v_limit, double *clock, struct ebb_measured *median)
 {
-  const double level = 0.5, width = high - low;
-  const struct ebb_sheet_request request = {.levels = 1, .level = &level, .v_limit = v_limit};
+  enum { LEVELS = 3, MEDIAN = 1 };
+  static const double level[LEVELS] = {0.25, 0.5, 0.75};
+  const double width = high - low;
+  const struct ebb_sheet_request request = {.levels = LEVELS, .level = level, .v_limit = v_limit};
 
   PetscFunctionBegin;
   for (int round = 0; round < SECTIONS; round++) {
-    double phi[SECTION];
+    double phi[SECTION], at[SECTION];
     struct ebb_sheet sheet;
     PetscInt best = 0;
 
     for (int i = 0; i < SECTION; i++) phi[i] = low + (high - low) * i / (SECTION - 1);
     PetscCall(source->evaluate(source, SECTION, phi, &request, &sheet));
+    for (PetscInt i = 0; i < SECTION; i++) at[i] = sheet.quantile[i * LEVELS + MEDIAN];
     for (PetscInt i = 1; i < SECTION; i++)
-      if (sheet.quantile[i] < sheet.quantile[best]) best = i;
+      if (at[i] < at[best]) best = i;
+    const PetscInt before = PetscMax(best - 1, 0), after = PetscMin(best + 1, SECTION - 1);
+
     *clock = phi[best];
-    median->value = sheet.quantile[best];
-    {
-      const PetscInt a = PetscMax(best - 1, 0), b = PetscMin(best + 1, SECTION - 1);
-      median->error = fmax(sheet.quantile[a], sheet.quantile[b]) - sheet.quantile[best];
-      low = phi[a];
-      high = phi[b];
-    }
+    median->value = at[best];
+    median->error =
+        fmax(at[before], at[after]) - at[best] + ebb_budget_quantile_error(budget, &sheet, best, LEVELS, level, MEDIAN);
+    low = phi[before];
+    high = phi[after];
     PetscCall(ebb_sheet_clear(&sheet));
     if (high - low < SECTIONED * width) break;
   }
@@ -377,8 +380,8 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
   bounce->clock = (struct ebb_measured){root, (slope_error + bounce->v.error * source->constants->kappa) / curvature +
                                                   4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
-  PetscCall(refine_median(source, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
-  bounce->v_median.error += bounce->v.error / bounce->v.value * bounce->v_median.value + 1e-14 * bounce->v_median.value;
+  PetscCall(
+      refine_median(source, budget, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   if (!mean_exists) {
     bounce->estimator = "median";
     PetscCall(values_at(source, check, budget, median_clock, limit, bounce, &slope_error));

@@ -232,17 +232,24 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   error[EBB_MOMENT_HUBBLE_SPREAD] = fmax(error[EBB_MOMENT_HUBBLE_SPREAD], 0.0);
 }
 
-double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_sheet *sheet, PetscInt s, double q)
+double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_sheet *sheet, PetscInt s,
+                                 size_t levels, const double level[], size_t which)
 {
   const double edge0 = beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
+  const double *q = sheet->quantile + (size_t)s * levels;
   const double v = sheet->sum[EBB_SUM_V][s], spread = sqrt(fmax(sheet->sum[EBB_SUM_V2][s] - v * v, 1.0));
   const double missing =
       edge0 + fabs(sheet->sum[EBB_SUM_NORM][s] - 1.0) + 2.0 * drift_of(budget, v, spread) + rounding_of(spread);
-  /* a shift of probability moves the quantile by shift/density; away from the outer tails the density exceeds a few
-   * percent of 1/spread */
-  static const double THIN = 20.0;
+  /* a shift of probability moves the quantile by shift/density. The mean density between the neighbouring levels
+   * exceeds that at a level inside by less than INSIDE, that between the outer ones the density in a tail by less than
+   * THIN. */
+  static const double INSIDE = 4.0, THIN = 20.0;
+  const bool inside = which > 0 && which + 1 < levels;
+  const size_t low = inside ? which - 1 : 0, high = inside ? which + 1 : levels - 1;
+  const double width = levels > 1 ? (q[high] - q[low]) / (level[high] - level[low]) : spread;
 
-  return fabs(q) * budget->quadrature_quantile + THIN * spread * (missing + 2.0 * budget->propagation);
+  return fabs(q[which]) * (budget->quadrature_quantile + 4.0 * PETSC_MACHINE_EPSILON) +
+         (inside ? INSIDE : THIN) * fmax(width, 1.0) * (missing + 2.0 * budget->propagation);
 }
 
 void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
