@@ -232,6 +232,13 @@ PetscErrorCode ebb_plan_make(const struct ebb_state_request *request, const stru
   if (reach.vector) PetscCall(trim(request, lattice, &reach, plan));
   plan->uniform = plan->k_low > 0.0;
   period = 2.0 * reach.lnv_clock + IMAGE_MARGIN;
+  {
+    /* a lattice asked for may end beyond the packet's reach: no image may stand on it either */
+    const struct ebb_lattice_settings *l = &request->settings->lattice;
+    const double v_end = fmax(l->volume_max > 0.0 ? l->volume_max : 0.0, 4.0 * (double)(l->points + 1));
+
+    period = fmax(period, log(v_end / fmax(plan->k_low, 1.0)) + reach.lnv_clock + IMAGE_MARGIN);
+  }
   PetscCall(choose_nodes(plan, period));
   PetscCall(ebb_packet_create_modes(request, lattice, plan, false, &packet));
   x_high = fmin(log(plan->k_high) + reach.lnv_clock + 1.0, log(MOST_V));
