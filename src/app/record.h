@@ -26,6 +26,17 @@ struct ebb_record {
 PetscErrorCode ebb_record_create(PetscInt m, size_t levels, struct ebb_record *record);
 PetscErrorCode ebb_record_destroy(struct ebb_record *record);
 
+/* <|v|> exists where the packet has no weight at k = 0; behind a wall it always does. */
+bool ebb_run_mean_exists(const struct ebb_run *run);
+/* Drift of the recursion, and the quadrature error by the independent rule on a few samples, the range's ends among
+ * them, where phases are largest. Before the first take. Collective. */
+PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run);
+/* Moments, quantiles and their errors of samples [first, first + sheet->m). */
+void ebb_record_take(struct ebb_record *record, const struct ebb_run *run, PetscInt first,
+                     const struct ebb_sheet *sheet);
+/* Bounce, law and effective trajectory, once every sample is taken. Collective. */
+PetscErrorCode ebb_record_conclude(struct ebb_record *record, struct ebb_run *run);
+
 /* Root attributes, lattice, clock, and the large datasets that batches fill. */
 PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *run,
                                 const struct ebb_invocation *invocation, const char *model_text);

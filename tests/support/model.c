@@ -10,9 +10,6 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { VERIFIED = 5 };                  /* samples on which the independent rule is evaluated, as in `evolve` */
-static const double LOW_WEIGHT = 2e-14; /* of |c(0)|^2, above which the mean is not used, as in `evolve` */
-
 void ebb_test_model_create(struct ebb_test_model *model, const char *format, ...)
 {
   struct ebb_problems *problems = ebb_problems_create();
@@ -42,23 +39,6 @@ void ebb_test_model_destroy(struct ebb_test_model *model)
   memset(model, 0, sizeof *model);
 }
 
-static void verify(struct ebb_test_model *model)
-{
-  struct ebb_run *run = &model->run;
-  const struct ebb_output_settings *o = &model->settings.output;
-  const struct ebb_sheet_request request = {.levels = o->quantiles, .level = o->quantile};
-  struct ebb_sheet rule, check;
-  double phi[VERIFIED];
-
-  if (!run->check) return;
-  for (int i = 0; i < VERIFIED; i++) phi[i] = run->phi[(PetscInt)((double)i / (VERIFIED - 1) * (double)(run->m - 1))];
-  ebb_test_call(run->source.evaluate(&run->source, VERIFIED, phi, &request, &rule));
-  ebb_test_call(run->check_source.evaluate(&run->check_source, VERIFIED, phi, &request, &check));
-  ebb_budget_compare(&model->record.budget, &run->constants, &run->lattice, &rule, &check, o->quantiles);
-  ebb_test_call(ebb_sheet_clear(&rule));
-  ebb_test_call(ebb_sheet_clear(&check));
-}
-
 void ebb_test_model_measure(struct ebb_test_model *model)
 {
   struct ebb_run *run = &model->run;
@@ -68,44 +48,16 @@ void ebb_test_model_measure(struct ebb_test_model *model)
   struct ebb_sheet sheet;
 
   ebb_test_call(ebb_record_create(run->m, o->quantiles, r));
-  ebb_test_call(ebb_budget_measure_drift(&r->budget, run->packet, &run->lattice, run->comm));
-  verify(model);
+  ebb_test_call(ebb_record_verify(r, run));
   ebb_test_call(run->source.evaluate(&run->source, run->m, run->phi, &request, &sheet));
-  for (PetscInt s = 0; s < run->m; s++) {
-    double moment[EBB_MOMENTS], error[EBB_MOMENTS];
-
-    ebb_moments_from_sums(&run->constants, &run->lattice, &sheet, s, moment);
-    ebb_budget_errors(&r->budget, &run->constants, &run->lattice, &sheet, s, moment, error);
-    for (int i = 0; i < EBB_MOMENTS; i++) {
-      r->moment[i][s] = moment[i];
-      r->error[i][s] = error[i];
-    }
-    r->slope[s] = sheet.sum[EBB_SUM_SLOPE][s] / sheet.sum[EBB_SUM_NORM][s];
-    for (size_t q = 0; q < r->levels; q++) {
-      const size_t at = (size_t)s * r->levels + q;
-
-      r->quantile[at] = sheet.quantile[at];
-      r->quantile_error[at] = ebb_budget_quantile_error(&r->budget, &sheet, s, r->quantile[at]);
-    }
-  }
+  ebb_record_take(r, run, 0, &sheet);
   ebb_test_call(ebb_sheet_clear(&sheet));
 }
 
 void ebb_test_model_conclude(struct ebb_test_model *model)
 {
-  struct ebb_run *run = &model->run;
-  struct ebb_record *r = &model->record;
-
-  if (!r->m) ebb_test_model_measure(model);
-  const struct ebb_samples samples = {run->m,   run->phi,  r->moment[EBB_MOMENT_V_MEAN],
-                                      r->slope, r->levels, r->levels ? r->quantile : NULL};
-  const bool mean_exists = run->packet->low_weight < LOW_WEIGHT || run->method == EBB_METHOD_EIGENPAIRS;
-
-  ebb_test_call(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget, mean_exists,
-                                &r->bounce));
-  r->has_law = !run->lattice.prescription->continuum && !isnan(r->bounce.clock.value);
-  if (r->has_law)
-    ebb_test_call(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
+  if (!model->record.m) ebb_test_model_measure(model);
+  ebb_test_call(ebb_record_conclude(&model->record, &model->run));
 }
 
 struct ebb_sheet ebb_test_model_look(struct ebb_test_model *model, double clock,

@@ -28,12 +28,7 @@ const struct ebb_command ebb_command_evolve = {
 };
 
 static const double NORM_LIMIT = 1e-6; /* |norm - 1| above which the run is called broken */
-/* |c(0)|^2/|c|^2_max above which the mean volume drifts with the lattice: exp(-k0^2/(2 sigma_k^2)) at k0 = 8 sigma_k.
- * There the tail that v^{-1/2}/ln v of the modes at k = 0 leaves adds less than 1e-12 of the mean on any lattice. */
-static const double LOW_WEIGHT = 2e-14;
-static const double LOST = 1e-12; /* weight of an l2 vector outside the modes above which it counts as an error */
-static const double PURE = 0.99;  /* channel purity below which a warning is given */
-enum { VERIFIED = 5 };            /* samples on which the independent rule is evaluated */
+static const double PURE = 0.99;       /* channel purity below which a warning is given */
 
 /* Everything of one run. */
 struct work {
@@ -64,56 +59,6 @@ static void name_result(const struct ebb_invocation *invocation, const struct eb
   if (!strncmp(w->path, "./", 2)) memmove(w->path, w->path + 2, strlen(w->path + 2) + 1);
 }
 
-/* Quadrature error: the independent rule on a few samples, the range's ends among them, where phases are largest. */
-static PetscErrorCode verify(struct work *w)
-{
-  const struct ebb_output_settings *o = &w->run.settings->output;
-  const struct ebb_sheet_request request = {.levels = o->quantiles, .level = o->quantile};
-  double phi[VERIFIED];
-  struct ebb_sheet rule, check;
-
-  PetscFunctionBegin;
-  /* an l2 vector's weight outside the k interval is an error of the state; below LOST it is the rounding of two sums */
-  if (w->run.packet->lost > LOST) w->record.budget.propagation = sqrt(w->run.packet->lost);
-  if (!w->run.check) PetscFunctionReturn(0);
-  for (int i = 0; i < VERIFIED; i++)
-    phi[i] = w->run.phi[(PetscInt)((double)i / (VERIFIED - 1) * (double)(w->run.m - 1))];
-  {
-    struct ebb_source main_rule; /* the packet itself also where a propagator steps */
-
-    ebb_source_packet(&main_rule, w->run.packet, &w->run.lattice, &w->run.constants, w->run.comm);
-    PetscCall(main_rule.evaluate(&main_rule, VERIFIED, phi, &request, &rule));
-  }
-  PetscCall(w->run.check_source.evaluate(&w->run.check_source, VERIFIED, phi, &request, &check));
-  ebb_budget_compare(&w->record.budget, &w->run.constants, &w->run.lattice, &rule, &check, o->quantiles);
-  PetscCall(ebb_sheet_clear(&rule));
-  PetscCall(ebb_sheet_clear(&check));
-  PetscFunctionReturn(0);
-}
-
-static void take_batch(struct work *w, PetscInt first, const struct ebb_sheet *sheet)
-{
-  struct ebb_record *r = &w->record;
-
-  for (PetscInt s = 0; s < sheet->m; s++) {
-    double moment[EBB_MOMENTS], error[EBB_MOMENTS];
-
-    ebb_moments_from_sums(&w->run.constants, &w->run.lattice, sheet, s, moment);
-    ebb_budget_errors(&r->budget, &w->run.constants, &w->run.lattice, sheet, s, moment, error);
-    for (int i = 0; i < EBB_MOMENTS; i++) {
-      r->moment[i][first + s] = moment[i];
-      r->error[i][first + s] = error[i];
-    }
-    r->slope[first + s] = sheet->sum[EBB_SUM_SLOPE][s] / sheet->sum[EBB_SUM_NORM][s];
-    for (size_t q = 0; q < r->levels; q++) {
-      const size_t at = (size_t)(first + s) * r->levels + q;
-      r->quantile[at] = sheet->quantile[(size_t)s * r->levels + q];
-      r->quantile_error[at] =
-          ebb_budget_quantile_error(&r->budget, sheet, s, r->levels, w->run.settings->output.quantile, q);
-    }
-  }
-}
-
 /* All samples, batch by batch; every batch is written before the next is computed. */
 static PetscErrorCode evaluate_all(struct work *w, const struct ebb_invocation *invocation)
 {
@@ -135,40 +80,12 @@ static PetscErrorCode evaluate_all(struct work *w, const struct ebb_invocation *
     PetscCall(w->run.source.evaluate(&w->run.source, count, w->run.phi + first, &request, &sheet));
     if (steps)
       w->record.budget.propagation = fmax(w->record.budget.propagation, ebb_source_steps_error(&w->run.source));
-    take_batch(w, first, &sheet);
+    ebb_record_take(&w->record, &w->run, first, &sheet);
     PetscCall(ebb_record_batch(w->store, &w->run, first, &sheet));
     PetscCall(ebb_sheet_clear(&sheet));
     ebb_progress_tell(&progress, first + count);
   }
   ebb_progress_end(&progress);
-  PetscFunctionReturn(0);
-}
-
-/* <|v|> exists where the packet has no weight at k = 0; behind a wall it always does. */
-static bool mean_exists(const struct work *w)
-{
-  return w->run.packet->low_weight < LOW_WEIGHT || w->run.method == EBB_METHOD_EIGENPAIRS;
-}
-
-static PetscErrorCode conclude(struct work *w)
-{
-  struct ebb_record *r = &w->record;
-  const struct ebb_lattice *lattice = &w->run.lattice;
-  const struct ebb_samples samples = {w->run.m, w->run.phi, r->moment[EBB_MOMENT_V_MEAN],
-                                      r->slope, r->levels,  r->levels ? r->quantile : NULL};
-  double phi0, v0, sign;
-
-  PetscFunctionBegin;
-  PetscCall(ebb_bounce_find(&w->run.source, w->run.check ? &w->run.check_source : NULL, &samples, &r->budget,
-                            mean_exists(w), &r->bounce));
-  r->has_law = !lattice->prescription->grid && !lattice->prescription->continuum && !isnan(r->bounce.clock.value);
-  if (r->has_law)
-    PetscCall(ebb_law_find(&w->run.source, w->run.packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
-  phi0 = isnan(r->bounce.clock.value) ? w->run.phi[0] : r->bounce.clock.value;
-  v0 = r->moment[EBB_MOMENT_V_MEAN][0];
-  sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
-  PetscCall(ebb_effective_make(&w->run.constants, lattice->prescription, w->run.packet->momentum_mean, phi0, v0, sign,
-                               w->run.m, w->run.phi, &r->effective));
   PetscFunctionReturn(0);
 }
 
@@ -179,7 +96,7 @@ static void warn(const struct work *w)
   if (w->run.packet->channel_purity < PURE)
     fprintf(stderr, "ebbturn: warning: the two orientations mix: least |C|^2 of the channel is %.4f, below %.2f\n",
             w->run.packet->channel_purity, PURE);
-  if (!mean_exists(w))
+  if (!ebb_run_mean_exists(&w->run))
     fprintf(stderr,
             "ebbturn: warning: c(k) does not vanish at k = 0 (|c(0)|^2 is %.1e of its maximum): the mean volume grows\n"
             "  logarithmically with the lattice; the bounce is taken from the median\n",
@@ -195,7 +112,7 @@ static int limits(const struct work *w)
   for (PetscInt s = 1; s < r->m; s++)
     if (fabs(r->moment[EBB_MOMENT_NORM][s] - 1.0) > fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0)) worst = s;
   /* a packet that reaches k = 0 has slow tails on every lattice; the warning has said so, the errors include it */
-  if (fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0) <= NORM_LIMIT || !mean_exists(w)) return EBB_EXIT_OK;
+  if (fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0) <= NORM_LIMIT || !ebb_run_mean_exists(&w->run)) return EBB_EXIT_OK;
   if (w->speaks) {
     const double v_max = fabs(ebb_lattice_v(&w->run.lattice, ebb_lattice_size(&w->run.lattice) - 1));
 
@@ -218,11 +135,9 @@ static PetscErrorCode compute(const struct ebb_invocation *invocation, const cha
   PetscCall(ebb_record_create(w->run.m, w->run.settings->output.quantiles, &w->record));
   PetscCall(ebb_record_begin(w->store, &w->run, invocation, text));
   PetscCall(ebb_run_start(&w->run));
-  if (w->run.method != EBB_METHOD_WAVES)
-    PetscCall(ebb_budget_measure_drift(&w->record.budget, w->run.packet, &w->run.lattice, w->run.comm));
-  PetscCall(verify(w));
+  PetscCall(ebb_record_verify(&w->record, &w->run));
   PetscCall(evaluate_all(w, invocation));
-  PetscCall(conclude(w));
+  PetscCall(ebb_record_conclude(&w->record, &w->run));
   PetscCall(ebb_record_end(w->store, &w->run, &w->record));
   PetscCall(ebb_store_commit(&w->store, true));
   warn(w);

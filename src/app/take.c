@@ -1,0 +1,84 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * From sheets to a record: moments with errors, the independent rule, bounce, law and effective trajectory. */
+#include "record.h"
+
+#include <math.h>
+
+/* |c(0)|^2/|c|^2_max above which the mean volume drifts with the lattice: exp(-k0^2/(2 sigma_k^2)) at k0 = 8 sigma_k.
+ * There the tail that v^{-1/2}/ln v of the modes at k = 0 leaves adds less than 1e-12 of the mean on any lattice. */
+static const double LOW_WEIGHT = 2e-14;
+static const double LOST = 1e-12; /* weight of an l2 vector outside the modes above which it counts as an error */
+enum { VERIFIED = 5 };            /* samples on which the independent rule is evaluated */
+
+bool ebb_run_mean_exists(const struct ebb_run *run)
+{
+  return run->packet->low_weight < LOW_WEIGHT || run->method == EBB_METHOD_EIGENPAIRS;
+}
+
+PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
+{
+  const struct ebb_output_settings *o = &run->settings->output;
+  const struct ebb_sheet_request request = {.levels = o->quantiles, .level = o->quantile};
+  struct ebb_source main_rule; /* the packet itself also where a propagator steps */
+  double phi[VERIFIED];
+  struct ebb_sheet rule, check;
+
+  PetscFunctionBegin;
+  if (run->method != EBB_METHOD_WAVES)
+    PetscCall(ebb_budget_measure_drift(&record->budget, run->packet, &run->lattice, run->comm));
+  /* an l2 vector's weight outside the k interval is an error of the state; below LOST it is the rounding of two sums */
+  if (run->packet->lost > LOST) record->budget.propagation = sqrt(run->packet->lost);
+  if (!run->check) PetscFunctionReturn(0);
+  for (int i = 0; i < VERIFIED; i++) phi[i] = run->phi[(PetscInt)((double)i / (VERIFIED - 1) * (double)(run->m - 1))];
+  ebb_source_packet(&main_rule, run->packet, &run->lattice, &run->constants, run->comm);
+  PetscCall(main_rule.evaluate(&main_rule, VERIFIED, phi, &request, &rule));
+  PetscCall(run->check_source.evaluate(&run->check_source, VERIFIED, phi, &request, &check));
+  ebb_budget_compare(&record->budget, &run->constants, &run->lattice, &rule, &check, o->quantiles);
+  PetscCall(ebb_sheet_clear(&rule));
+  PetscCall(ebb_sheet_clear(&check));
+  PetscFunctionReturn(0);
+}
+
+void ebb_record_take(struct ebb_record *r, const struct ebb_run *run, PetscInt first, const struct ebb_sheet *sheet)
+{
+  for (PetscInt s = 0; s < sheet->m; s++) {
+    double moment[EBB_MOMENTS], error[EBB_MOMENTS];
+
+    ebb_moments_from_sums(&run->constants, &run->lattice, sheet, s, moment);
+    ebb_budget_errors(&r->budget, &run->constants, &run->lattice, sheet, s, moment, error);
+    for (int i = 0; i < EBB_MOMENTS; i++) {
+      r->moment[i][first + s] = moment[i];
+      r->error[i][first + s] = error[i];
+    }
+    r->slope[first + s] = sheet->sum[EBB_SUM_SLOPE][s] / sheet->sum[EBB_SUM_NORM][s];
+    for (size_t q = 0; q < r->levels; q++) {
+      const size_t at = (size_t)(first + s) * r->levels + q;
+
+      r->quantile[at] = sheet->quantile[(size_t)s * r->levels + q];
+      r->quantile_error[at] =
+          ebb_budget_quantile_error(&r->budget, sheet, s, r->levels, run->settings->output.quantile, q);
+    }
+  }
+}
+
+PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
+{
+  const struct ebb_prescription *p = run->lattice.prescription;
+  const struct ebb_samples samples = {run->m,   run->phi,  r->moment[EBB_MOMENT_V_MEAN],
+                                      r->slope, r->levels, r->levels ? r->quantile : NULL};
+  double phi0, v0, sign;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget,
+                            ebb_run_mean_exists(run), &r->bounce));
+  r->has_law = !p->grid && !p->continuum && !isnan(r->bounce.clock.value);
+  if (r->has_law)
+    PetscCall(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
+  phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;
+  v0 = r->moment[EBB_MOMENT_V_MEAN][0];
+  sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
+  PetscCall(ebb_effective_make(&run->constants, p, run->packet->momentum_mean, phi0, v0, sign, run->m, run->phi,
+                               &r->effective));
+  PetscFunctionReturn(0);
+}
