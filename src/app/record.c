@@ -1,12 +1,9 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "record.h"
 
-#include <gsl/gsl_version.h>
-#include <slepcsys.h>
-#include <stdio.h>
-#include <stdlib.h>
+#include "result.h"
+
 #include <string.h>
-#include <time.h>
 
 PetscErrorCode ebb_record_create(PetscInt m, size_t levels, struct ebb_record *r)
 {
@@ -26,79 +23,6 @@ PetscErrorCode ebb_record_destroy(struct ebb_record *r)
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode library_versions(char *text, size_t size)
-{
-  unsigned a, b, c;
-  int major, minor;
-
-  PetscFunctionBegin;
-  (void)H5get_libversion(&a, &b, &c);
-  PetscCallMPI(MPI_Get_version(&major, &minor));
-  (void)snprintf(text, size, "PETSc %d.%d.%d, SLEPc %d.%d.%d, HDF5 %u.%u.%u, MPI %d.%d, GSL %s", PETSC_VERSION_MAJOR,
-                 PETSC_VERSION_MINOR, PETSC_VERSION_SUBMINOR, SLEPC_VERSION_MAJOR, SLEPC_VERSION_MINOR,
-                 SLEPC_VERSION_SUBMINOR, a, b, c, major, minor, gsl_version);
-  PetscFunctionReturn(0);
-}
-
-static PetscErrorCode stamp(struct ebb_store *store, const char *name)
-{
-  char text[32];
-  const time_t now = time(NULL);
-  struct tm utc;
-
-  PetscFunctionBegin;
-  (void)strftime(text, sizeof text, "%Y-%m-%dT%H:%M:%SZ", gmtime_r(&now, &utc));
-  PetscCall(ebb_store_set_text(store, "/provenance", name, text));
-  PetscFunctionReturn(0);
-}
-
-static PetscErrorCode root_attributes(struct ebb_store *store, const struct ebb_run *run,
-                                      const struct ebb_invocation *invocation, const char *model_text)
-{
-  char text[256], *json = ebb_settings_json(run->settings);
-  PetscMPIInt ranks;
-
-  PetscFunctionBegin;
-  PetscCheck(json, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for the settings' text");
-  PetscCallMPI(MPI_Comm_size(run->comm, &ranks));
-  PetscCall(ebb_store_set_text(store, "/", "program", "ebbturn"));
-  PetscCall(ebb_store_set_text(store, "/", "version", EBB_VERSION));
-  PetscCall(ebb_store_set_integer(store, "/", "layout", EBB_LAYOUT));
-  PetscCall(ebb_store_set_text(store, "/", "title", run->settings->title));
-  PetscCall(ebb_store_set_text(store, "/", "command", invocation->text));
-  PetscCall(ebb_store_set_text(store, "/", "model_text", model_text));
-  PetscCall(ebb_store_set_text(store, "/", "settings_json", json));
-  PetscCall(library_versions(text, sizeof text));
-  PetscCall(ebb_store_set_text(store, "/", "libraries", text));
-  PetscCall(ebb_store_set_integer(store, "/", "ranks", ranks));
-  PetscCall(ebb_store_set_text(store, "/", "propagator", ebb_method_name(run->method)));
-  PetscCall(stamp(store, "started"));
-  free(json);
-  PetscFunctionReturn(0);
-}
-
-/* A whole 1-D dataset that every rank holds. */
-static PetscErrorCode put_line(struct ebb_store *store, const char *path, PetscInt n, const double *values,
-                               const char *units, const char *long_name, const char *scale)
-{
-  const struct ebb_dataset d = {
-      .path = path, .rank = 1, .extent = {(hsize_t)n}, .units = units, .long_name = long_name, .scale = {scale}};
-
-  PetscFunctionBegin;
-  PetscCall(ebb_store_put(store, &d, values));
-  PetscFunctionReturn(0);
-}
-
-static PetscErrorCode put_number(struct ebb_store *store, const char *path, double value, const char *units,
-                                 const char *long_name)
-{
-  const struct ebb_dataset d = {.path = path, .units = units, .long_name = long_name};
-
-  PetscFunctionBegin;
-  PetscCall(ebb_store_put(store, &d, &value));
-  PetscFunctionReturn(0);
-}
-
 static PetscErrorCode put_value(struct ebb_store *store, const char *group, const char *name, struct ebb_measured value,
                                 const char *units, const char *long_name)
 {
@@ -106,46 +30,10 @@ static PetscErrorCode put_value(struct ebb_store *store, const char *group, cons
 
   PetscFunctionBegin;
   PetscCall(PetscSNPrintf(path, sizeof path, "%s/%s", group, name));
-  PetscCall(put_number(store, path, value.value, units, long_name));
+  PetscCall(ebb_result_number(store, path, value.value, units, long_name));
   PetscCall(PetscSNPrintf(path, sizeof path, "%s/%s_error", group, name));
   PetscCall(PetscSNPrintf(text, sizeof text, "absolute error of: %s", long_name));
-  PetscCall(put_number(store, path, value.error, units, text));
-  PetscFunctionReturn(0);
-}
-
-static PetscErrorCode lattice_datasets(struct ebb_store *store, const struct ebb_run *run)
-{
-  const struct ebb_lattice *l = &run->lattice;
-  const hsize_t n = (hsize_t)ebb_lattice_size(l), start = (hsize_t)l->begin, count = (hsize_t)(l->end - l->begin);
-  const bool grid = l->prescription->grid;
-  static const char *const path[] = {"/lattice/v", "/lattice/volume", "/lattice/weight"};
-  const char *const units[] = {"1", "length^3", "1"};
-  const char *const names[] = {"volume label v of a site", "physical volume 2 pi gamma lambda G |v|",
-                               grid ? "cell weight dx, x = ln v: probability/v times weight sums to 1"
-                                    : "cell weight: probability/v times weight sums to 1"};
-  double *values;
-
-  PetscFunctionBegin;
-  PetscCall(PetscMalloc1(count, &values));
-  for (int d = 0; d < 3; d++) {
-    const struct ebb_dataset set = {.path = path[d],
-                                    .rank = 1,
-                                    .extent = {n},
-                                    .units = units[d],
-                                    .long_name = names[d],
-                                    .scale = {d > 0 ? "/lattice/v" : NULL}};
-
-    for (hsize_t i = 0; i < count; i++) {
-      const double v = ebb_lattice_v(l, l->begin + (PetscInt)i);
-      values[i] = d == 0   ? v
-                  : d == 1 ? run->constants.volume_unit * (v < 0.0 ? -v : v)
-                           : ebb_lattice_weight(l, l->begin);
-    }
-    PetscCall(ebb_store_define(store, &set));
-    PetscCall(ebb_store_write(store, path[d], &start, &count, values));
-    if (d == 0) PetscCall(ebb_store_make_scale(store, path[d]));
-  }
-  PetscCall(PetscFree(values));
+  PetscCall(ebb_result_number(store, path, value.error, units, text));
   PetscFunctionReturn(0);
 }
 
@@ -157,9 +45,10 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
   const hsize_t states = (m + (hsize_t)o->every - 1) / (hsize_t)o->every;
 
   PetscFunctionBegin;
-  PetscCall(root_attributes(store, run, invocation, model_text));
-  PetscCall(lattice_datasets(store, run));
-  PetscCall(put_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
+  PetscCall(ebb_result_root(store, run->settings, run->comm, invocation, model_text));
+  PetscCall(ebb_store_set_text(store, "/", "propagator", ebb_method_name(run->method)));
+  PetscCall(ebb_result_lattice(store, &run->lattice, &run->constants));
+  PetscCall(ebb_result_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
   PetscCall(ebb_store_make_scale(store, "/clock/value"));
   PetscCall(ebb_store_set_text(store, "/clock", "kind", run->settings->clock.kind));
   if (o->keep & EBB_KEEP_PROBABILITY)
@@ -175,7 +64,7 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
 
     PetscCall(PetscMalloc1(states, &clock));
     for (hsize_t s = 0; s < states; s++) clock[s] = run->phi[s * (hsize_t)o->every];
-    PetscCall(put_line(store, "/state/clock", (PetscInt)states, clock, "1/sqrt(G)", "clock values of the stored states",
+    PetscCall(ebb_result_line(store, "/state/clock", (PetscInt)states, clock, "1/sqrt(G)", "clock values of the stored states",
                        NULL));
     PetscCall(ebb_store_make_scale(store, "/state/clock"));
     PetscCall(PetscFree(clock));
@@ -217,10 +106,10 @@ static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_recor
     const struct ebb_moment_info *info = &ebb_moment_table[i];
 
     PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s", info->name));
-    PetscCall(put_line(store, path, record->m, record->moment[i], info->units, info->long_name, "/clock/value"));
+    PetscCall(ebb_result_line(store, path, record->m, record->moment[i], info->units, info->long_name, "/clock/value"));
     PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s_error", info->name));
     PetscCall(PetscSNPrintf(text, sizeof text, "absolute error of: %s", info->long_name));
-    PetscCall(put_line(store, path, record->m, record->error[i], info->units, text, "/clock/value"));
+    PetscCall(ebb_result_line(store, path, record->m, record->error[i], info->units, text, "/clock/value"));
   }
   PetscFunctionReturn(0);
 }
@@ -236,7 +125,7 @@ static PetscErrorCode put_quantiles(struct ebb_store *store, const struct ebb_ru
                           .scale = {"/clock/value", "/quantiles/level"}};
 
   PetscFunctionBegin;
-  PetscCall(put_line(store, "/quantiles/level", (PetscInt)record->levels, o->quantile, "1", "probability level", NULL));
+  PetscCall(ebb_result_line(store, "/quantiles/level", (PetscInt)record->levels, o->quantile, "1", "probability level", NULL));
   PetscCall(ebb_store_make_scale(store, "/quantiles/level"));
   PetscCall(ebb_store_put(store, &d, record->quantile));
   d.path = "/quantiles/v_error";
@@ -259,7 +148,7 @@ static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_bounc
   PetscCall(put_value(store, g, "v_mode", b->v_mode, "1", "most probable |v| at the bounce clock"));
   PetscCall(put_value(store, g, "effective_volume", b->effective_volume, "length^3", "<p>/sqrt(2 rho_c)"));
   PetscCall(put_value(store, g, "effective_density", b->effective_density, "1/G^2", "density at the effective bounce"));
-  PetscCall(put_number(store, "/bounce/turning_v", b->turning_v, "1",
+  PetscCall(ebb_result_number(store, "/bounce/turning_v", b->turning_v, "1",
                        "where the grid turns a continuum operator's packet (no property of the continuum)"));
   PetscCall(ebb_store_set_text(store, g, "verdict", ebb_verdict_names[b->verdict]));
   PetscCall(ebb_store_set_text(store, g, "reason", b->reason));
@@ -273,12 +162,12 @@ static PetscErrorCode put_effective(struct ebb_store *store, const struct ebb_ef
   static const char clock[] = "/clock/value";
 
   PetscFunctionBegin;
-  PetscCall(put_line(store, "/effective/v", e->m, e->v, "1", "effective trajectory, |v|", clock));
-  PetscCall(put_line(store, "/effective/v_error", e->m, e->v_error, "1", "absolute error of the effective |v|", clock));
-  PetscCall(put_line(store, "/effective/b", e->m, e->b, "1", "effective trajectory, b in (0, pi)", clock));
-  PetscCall(put_line(store, "/effective/b_error", e->m, e->b_error, "1", "absolute error of the effective b", clock));
-  PetscCall(put_line(store, "/effective/density", e->m, e->density, "1/G^2", "effective trajectory, density", clock));
-  PetscCall(put_line(store, "/effective/density_error", e->m, e->density_error, "1/G^2",
+  PetscCall(ebb_result_line(store, "/effective/v", e->m, e->v, "1", "effective trajectory, |v|", clock));
+  PetscCall(ebb_result_line(store, "/effective/v_error", e->m, e->v_error, "1", "absolute error of the effective |v|", clock));
+  PetscCall(ebb_result_line(store, "/effective/b", e->m, e->b, "1", "effective trajectory, b in (0, pi)", clock));
+  PetscCall(ebb_result_line(store, "/effective/b_error", e->m, e->b_error, "1", "absolute error of the effective b", clock));
+  PetscCall(ebb_result_line(store, "/effective/density", e->m, e->density, "1/G^2", "effective trajectory, density", clock));
+  PetscCall(ebb_result_line(store, "/effective/density_error", e->m, e->density_error, "1/G^2",
                      "absolute error of the effective density", clock));
   PetscFunctionReturn(0);
 }
@@ -301,7 +190,7 @@ static PetscErrorCode put_law(struct ebb_store *store, const struct ebb_run *run
   PetscCall(put_value(store, g, "lnv_sum", law->lnv_sum, "1",
                       "2 <Re digamma(1 + ik)>, limit of ln v(phi) + ln v(-phi) - 2 kappa phi about the bounce"));
   PetscCall(
-      put_number(store, "/law/residual", law->residual, "1", "largest relative deviation of the samples from the law"));
+      ebb_result_number(store, "/law/residual", law->residual, "1", "largest relative deviation of the samples from the law"));
   PetscCall(ebb_store_set_integer(store, g, "exact", exact));
   PetscFunctionReturn(0);
 }
@@ -319,11 +208,11 @@ static PetscErrorCode put_budget(struct ebb_store *store, const struct ebb_budge
       if (!listed[i] && (next < 0 || budget->worst[i] > budget->worst[next])) next = i;
     listed[next] = true;
     PetscCall(PetscSNPrintf(path, sizeof path, "/budget/%s", ebb_contribution_names[next]));
-    PetscCall(put_number(store, path, budget->worst[next], "1", ebb_contribution_texts[next]));
+    PetscCall(ebb_result_number(store, path, budget->worst[next], "1", ebb_contribution_texts[next]));
     PetscCall(PetscStrlcat(order, rank ? " " : "", sizeof order));
     PetscCall(PetscStrlcat(order, ebb_contribution_names[next], sizeof order));
   }
-  PetscCall(put_number(store, "/budget/edge_probability", budget->edge_probability, "1",
+  PetscCall(ebb_result_number(store, "/budget/edge_probability", budget->edge_probability, "1",
                        "largest probability at v > 0.9 v_max over the clock range"));
   PetscCall(ebb_store_set_text(store, "/budget", "largest", ebb_contribution_names[ebb_budget_largest(budget)]));
   PetscCall(ebb_store_set_text(store, "/budget", "order", order));
@@ -346,6 +235,6 @@ PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run
   PetscCall(ebb_store_set_real(store, "/state", "channel_purity", run->packet->channel_purity));
   PetscCall(ebb_store_set_real(store, "/state", "low_weight", run->packet->low_weight));
   PetscCall(ebb_store_set_real(store, "/state", "lost", run->packet->lost));
-  PetscCall(stamp(store, "finished"));
+  PetscCall(ebb_result_stamp(store, "finished"));
   PetscFunctionReturn(0);
 }

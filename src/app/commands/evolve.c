@@ -1,13 +1,13 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "../progress.h"
 #include "../record.h"
+#include "../result.h"
 #include "ebbturn/input.h"
 #include "ebbturn/propagator.h"
 
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
-#include <string.h>
 
 static int run(const struct ebb_invocation *invocation);
 
@@ -38,26 +38,6 @@ struct work {
   char path[2 * EBB_PATH_MAX], folder[EBB_PATH_MAX];
   bool speaks;
 };
-
-/* Result path: -o as given; output.file relative to the model's folder; else the model's name with .h5. */
-static void name_result(const struct ebb_invocation *invocation, const struct ebb_settings *settings, struct work *w)
-{
-  const char *model = invocation->operand[0], *slash = strrchr(model, '/'), *base = slash ? slash + 1 : model;
-  const char *dot = strrchr(base, '.');
-  const int stem = dot && dot != base ? (int)(dot - base) : (int)strlen(base);
-
-  (void)snprintf(w->folder, sizeof w->folder, "%.*s", slash ? (int)(slash - model) : 1, slash ? model : ".");
-  if (slash == model) (void)snprintf(w->folder, sizeof w->folder, "/");
-  if (invocation->output)
-    (void)snprintf(w->path, sizeof w->path, "%s", invocation->output);
-  else if (settings->output.file[0] == '/')
-    (void)snprintf(w->path, sizeof w->path, "%s", settings->output.file);
-  else if (settings->output.file[0])
-    (void)snprintf(w->path, sizeof w->path, "%s/%s", w->folder, settings->output.file);
-  else
-    (void)snprintf(w->path, sizeof w->path, "%s/%.*s.h5", w->folder, stem, base);
-  if (!strncmp(w->path, "./", 2)) memmove(w->path, w->path + 2, strlen(w->path + 2) + 1);
-}
 
 /* All samples, batch by batch; every batch is written before the next is computed. */
 static PetscErrorCode evaluate_all(struct work *w, const struct ebb_invocation *invocation)
@@ -158,7 +138,7 @@ static PetscErrorCode evolve(const struct ebb_invocation *invocation, const stru
   PetscFunctionBegin;
   PetscCallMPI(MPI_Comm_rank(PETSC_COMM_WORLD, &rank));
   w.speaks = rank == 0;
-  name_result(invocation, settings, &w);
+  ebb_result_path(invocation, settings, sizeof w.path, w.path, w.folder);
   PetscCall(ebb_run_create(settings, w.folder, PETSC_COMM_WORLD, &w.run, code));
   if (*code && w.speaks)
     fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", invocation->operand[0],
