@@ -14,8 +14,8 @@
  * parsed by the same rules; their problems carry line 0 and quote the override. settings (overwritten, need not be
  * initialised) receives defaults for whatever is absent, resolved constants, and "not given" for keys that do not
  * belong to the chosen profile or prescription; ebb_settings_clear it in either case. `need`: bits, which parts the
- * command needs (evolve: all; check: all). */
-enum ebb_need { EBB_NEED_MODEL = 0, EBB_NEED_STATE = 1, EBB_NEED_CLOCK_RANGE = 2 };
+ * command needs (evolve, check: state and clock range; spectrum: which eigenvalues, of an operator that has them). */
+enum ebb_need { EBB_NEED_MODEL = 0, EBB_NEED_STATE = 1, EBB_NEED_CLOCK_RANGE = 2, EBB_NEED_SPECTRUM = 4 };
 
 bool ebb_input_parse(const char *text, size_t length, const char *const overrides[], size_t override_count,
                      unsigned need, struct ebb_settings *settings, struct ebb_problems *problems);

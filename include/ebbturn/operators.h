@@ -29,6 +29,9 @@ struct ebb_prescription {
   /* Link weight below the first site of a half lattice that stays in the first diagonal element although the hop leaves
    * the lattice; 0 where the hop vanishes or, for aps at sector 4, where v = 0 is eliminated (even sector). */
   double (*edge)(double sector);
+  /* q(v) = V/([1/V] V1^2), the weight of terms that go like V^2 beside Theta: cosmological constant, curvature. */
+  double (*square)(double v);
+  double (*curvature_weight)(double v); /* factor of the curvature term at small v; NULL: 1 */
   /* Large-v expansions in 1/v: B(v) = (1/v) sum_j b[j] v^-j,  C(v) = v sum_j c[j] v^-j, j = 0..terms-1. */
   void (*measure_series)(size_t terms, double b[]);
   void (*hop_series)(size_t terms, double c[]);

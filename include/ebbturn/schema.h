@@ -75,8 +75,8 @@ size_t ebb_setting_count(void);
 const struct ebb_setting *ebb_setting_at(size_t index);
 const struct ebb_setting *ebb_setting_find(const char *key); /* NULL when there is none */
 
-/* Last part of the key, and length of the section before it (0: a key of the top). A key that only components take
- * counts as one of `state`. */
+/* Last part of the key, and length of the section before it (0: a key of the top; sections nest, "gravity.extension").
+ * A key that only components take counts as one of `state`. */
 const char *ebb_setting_leaf(const struct ebb_setting *setting);
 size_t ebb_setting_section(const struct ebb_setting *setting);
 bool ebb_setting_in(const struct ebb_setting *setting, const char *section);

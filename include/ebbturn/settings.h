@@ -24,11 +24,14 @@ struct ebb_gravity_settings {
   double newton;
   double sector; /* epsilon in (0, 4] */
   char curvature[EBB_NAME_MAX];
-  double cosmological_constant;
+  double cosmological_constant;                /* after ebb_settings_resolve also where given over critical */
+  double cosmological_constant_over_critical;  /* NAN when not given; at most one of the two may be given */
+  double extension_delta, extension_tau;       /* NAN when not given; at most one */
 };
 
 struct ebb_clock_settings {
   char kind[EBB_NAME_MAX];
+  char ordering[EBB_NAME_MAX]; /* "" unless the clock has several */
   double from, to; /* NAN when not given */
   int samples;
 };
@@ -63,6 +66,12 @@ struct ebb_numerics_settings {
   double tolerance;
 };
 
+struct ebb_spectrum_settings {
+  int count;                       /* 0 = not given */
+  double interval[EBB_LEVELS_MAX]; /* two of them */
+  size_t ends;                     /* 0 = not given */
+};
+
 struct ebb_output_settings {
   char file[EBB_PATH_MAX]; /* as given, relative to the model's folder; empty = <model name>.h5 beside the model */
   unsigned keep;           /* bits of enum ebb_keep */
@@ -78,6 +87,7 @@ struct ebb_settings {
   struct ebb_state_settings state;
   struct ebb_lattice_settings lattice;
   struct ebb_numerics_settings numerics;
+  struct ebb_spectrum_settings spectrum;
   struct ebb_output_settings output;
 };
 
@@ -85,7 +95,8 @@ struct ebb_settings {
 void ebb_settings_unset(struct ebb_settings *settings);
 /* The default of every setting that has one, except those of `state`, which belong to a profile. */
 void ebb_settings_defaults(struct ebb_settings *settings);
-/* Sets polymer_scale from area_gap, or from the default area gap where neither is given. */
+/* Sets polymer_scale from area_gap, or from the default area gap where neither is given; cosmological_constant from its
+ * ratio to the critical one; the ordering of a clock that has several. */
 void ebb_settings_resolve(struct ebb_settings *settings);
 /* Frees what the settings own (components); accepts zeroed settings. */
 void ebb_settings_clear(struct ebb_settings *settings);

@@ -52,17 +52,36 @@ static const struct ebb_setting rows[] = {
      .fallback = "4", .hint = "the lattice through v = 0 is sector 4",
      .sentence = "superselection sector: lattice values of v are epsilon + 4n",
      .source = "Ashtekar, Pawlowski, Singh, Phys. Rev. D 74, 084003 (2006), gr-qc/0607039 (from memory)"},
-    {.key = "gravity.curvature", NAME(gravity.curvature), .fallback = "none", .choices = CHOICES("none"),
-     .sentence = "spatial curvature; this version has the flat model only"},
+    {.key = "gravity.curvature", NAME(gravity.curvature), .fallback = "none",
+     .choices = CHOICES("none", "closed", "open"),
+     .sentence = "spatial curvature: none, closed (three-sphere) or open (hyperbolic space), holonomies of the extrinsic "
+                 "curvature",
+     .source = "closed: Ashtekar, Pawlowski, Singh, Vandersloot, Phys. Rev. D 75, 024035 (2007), gr-qc/0612104; open: "
+               "Vandersloot, Phys. Rev. D 75, 023523 (2007), gr-qc/0612070 (from memory)"},
     {.key = "gravity.cosmological_constant", .letter = "Lambda", .unit = "1/length^2",
-     REAL(gravity.cosmological_constant), .range = {0, 0, false, false}, .fallback = "0",
-     .hint = "a cosmological constant is not available in this version",
-     .sentence = "cosmological constant; this version has 0 only"},
+     REAL(gravity.cosmological_constant), .range = ANY, .fallback = "0", .sentence = "cosmological constant",
+     .source = "Bentivegna, Pawlowski, Phys. Rev. D 77, 124025 (2008), arXiv:0803.4446 (from memory)"},
+    {.key = "gravity.cosmological_constant_over_critical", .letter = "Lambda/Lambda_c", .unit = "1",
+     REAL(gravity.cosmological_constant_over_critical), .range = ANY, .input_only = true,
+     .sentence = "cosmological constant over 3/(gamma^2 lambda^2), in place of cosmological_constant"},
+    {.key = "gravity.extension.delta", .letter = "delta", .unit = "1", REAL(gravity.extension_delta), .range = ANY,
+     .sentence = "which self-adjoint extension, by the phase at infinite volume: psi -> (A/v) cos(beta0 v/2 + delta), "
+                 "sin^2(beta0) = Lambda/Lambda_c; modulo pi",
+     .source = "extensions: Kaminski, Pawlowski, Phys. Rev. D 81, 024014 (2010), arXiv:0912.0162 (abstract read); the "
+               "label is this program's"},
+    {.key = "gravity.extension.tau", .letter = "tau", .unit = "1", REAL(gravity.extension_tau), .range = ANY,
+     .sentence = "which self-adjoint extension, by the solution of zero energy it contains: cos(tau) p + sin(tau) q, the "
+                 "polynomials of first and second kind (p_0 = 1, q_0 = 0); modulo pi",
+     .source = "Akhiezer, The Classical Moment Problem (1965), chapter 4 (from memory)"},
 
     /* clock */
-    {.key = "clock.kind", NAME(clock.kind), .fallback = "scalar", .choices = CHOICES("scalar"),
-     .sentence = "the field whose value serves as clock: a massless scalar phi",
-     .source = "Ashtekar, Pawlowski, Singh, Phys. Rev. D 74, 084003 (2006), gr-qc/0607039 (from memory)"},
+    {.key = "clock.kind", NAME(clock.kind), .fallback = "scalar",
+     .choices = CHOICES("scalar", "dust", "unimodular", "radiation"),
+     .sentence = "what serves as clock: a massless scalar phi, dust proper time, unimodular four-volume, a Maxwell field",
+     .source = "each entry names its own: 'ebbturn list clocks', 'ebbturn explain CLOCK'"},
+    {.key = "clock.ordering", NAME(clock.ordering), .choices = CHOICES("symmetric_sqrt", "densitised"),
+     .sentence = "operator of the dust clock: between square roots of the volume (where not given), or the partner of "
+                 "the scalar clock's"},
     {.key = "clock.from", .letter = "phi", .unit = unit_clock, REAL(clock.from), .range = ANY,
      .places_required = EBB_FOR_RANGE, .sentence = "first clock value"},
     {.key = "clock.to", .letter = "phi", .unit = unit_clock, REAL(clock.to), .range = ANY,
@@ -151,6 +170,13 @@ static const struct ebb_setting rows[] = {
     {.key = "numerics.tolerance", .unit = "1", REAL(numerics.tolerance), .range = {1e-14, 1e-2, false, false},
      .fallback = "1e-10", .sentence = "target relative error of the moments"},
 
+    /* spectrum */
+    {.key = "spectrum.count", INTEGER(spectrum.count), .range = {1, 100000, false, false},
+     .sentence = "so many of the lowest eigenvalues, for command 'spectrum'; or give interval"},
+    {.key = "spectrum.interval", .unit = "1", .type = EBB_TYPE_REALS,
+     .offset = offsetof(struct ebb_settings, spectrum.interval), .size = offsetof(struct ebb_settings, spectrum.ends),
+     .range = ANY, .sentence = "every eigenvalue in [a, b], for command 'spectrum'; or give count"},
+
     /* output */
     {.key = "output.file", .type = EBB_TYPE_PATH, .offset = offsetof(struct ebb_settings, output.file),
      .size = EBB_PATH_MAX,
@@ -186,7 +212,8 @@ const char *ebb_setting_leaf(const struct ebb_setting *setting)
 
 size_t ebb_setting_section(const struct ebb_setting *setting)
 {
-  const char *dot = strchr(setting->key, '.'); /* the first: components belong to `state` */
+  /* components belong to `state` */
+  const char *dot = setting->places & EBB_COMPONENT_ONLY ? strchr(setting->key, '.') : strrchr(setting->key, '.');
 
   return dot ? (size_t)(dot - setting->key) : 0;
 }

@@ -25,9 +25,15 @@ void ebb_settings_resolve(struct ebb_settings *settings)
 {
   struct ebb_gravity_settings *gravity = &settings->gravity;
 
-  if (!isnan(gravity->polymer_scale)) return;
-  gravity->polymer_scale =
-      sqrt(isnan(gravity->area_gap) ? ebb_default_area_gap(gravity->immirzi, gravity->newton) : gravity->area_gap);
+  if (isnan(gravity->polymer_scale))
+    gravity->polymer_scale =
+        sqrt(isnan(gravity->area_gap) ? ebb_default_area_gap(gravity->immirzi, gravity->newton) : gravity->area_gap);
+  if (!isnan(gravity->cosmological_constant_over_critical))
+    gravity->cosmological_constant =
+        gravity->cosmological_constant_over_critical *
+        ebb_constants_make(gravity->newton, gravity->immirzi, gravity->polymer_scale).critical_lambda;
+  if (!strcmp(settings->clock.kind, "dust") && !settings->clock.ordering[0])
+    ebb_text_copy(settings->clock.ordering, EBB_NAME_MAX, "symmetric_sqrt");
 }
 
 void ebb_settings_clear(struct ebb_settings *settings)
@@ -200,6 +206,27 @@ static void append_json_state(struct ebb_text *text, const struct ebb_settings *
   }
 }
 
+static size_t depth(const char *section, size_t length)
+{
+  size_t dots = 0;
+
+  for (size_t i = 0; i < length; i++) dots += section[i] == '.';
+  return length > 0 ? dots + 1 : 0;
+}
+
+/* Closes the section of the row before (NULL at the start) and opens that of this one, or opens it inside the other. */
+static void append_section(struct ebb_text *text, const struct ebb_setting *before, const struct ebb_setting *setting)
+{
+  const size_t section = ebb_setting_section(setting), last = before ? ebb_setting_section(before) : 0;
+  const bool inside =
+      last > 0 && section > last && setting->key[last] == '.' && !strncmp(setting->key, before->key, last);
+  const size_t start = inside ? last + 1 : 0;
+
+  for (size_t i = 0; before && !inside && i < depth(before->key, last); i++) ebb_text_append(text, "}");
+  if (before) ebb_text_append(text, ", ");
+  if (section > 0) ebb_text_append(text, "\"%.*s\": {", (int)(section - start), setting->key + start);
+}
+
 char *ebb_settings_json(const struct ebb_settings *settings)
 {
   struct ebb_text text = {0};
@@ -212,9 +239,10 @@ char *ebb_settings_json(const struct ebb_settings *settings)
     const bool same = before && section == last && !strncmp(setting->key, before->key, section);
 
     if (!written(setting, settings, &settings->state) || (same && ebb_setting_of_state(setting))) continue;
-    if (last > 0 && !same) ebb_text_append(&text, "}");
-    if (before) ebb_text_append(&text, ", ");
-    if (section > 0 && !same) ebb_text_append(&text, "\"%.*s\": {", (int)section, setting->key);
+    if (same)
+      ebb_text_append(&text, ", ");
+    else
+      append_section(&text, before, setting);
     before = setting;
     if (ebb_setting_of_state(setting)) {
       append_json_state(&text, settings, &settings->state);
@@ -223,7 +251,8 @@ char *ebb_settings_json(const struct ebb_settings *settings)
     ebb_text_append(&text, "\"%s\": ", ebb_setting_leaf(setting));
     append_value(&text, setting, settings, &settings->state, STYLE_JSON);
   }
-  ebb_text_append(&text, before && ebb_setting_section(before) > 0 ? "}}" : "}");
+  for (size_t i = 0; before && i < depth(before->key, ebb_setting_section(before)); i++) ebb_text_append(&text, "}");
+  ebb_text_append(&text, "}");
   if (text.failed) ebb_text_clear(&text);
   return text.data;
 }

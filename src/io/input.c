@@ -70,6 +70,16 @@ static const char *section_begins(size_t row, char name[EBB_NAME_MAX])
   return before && ebb_setting_in(before, name) ? NULL : name;
 }
 
+/* Last part of a section's name where it stands directly inside `section` ("": at the top), NULL elsewhere. */
+static const char *inside(const char *name, const char *section)
+{
+  const size_t length = strlen(section);
+  const char *leaf = length == 0 ? name : name + length + 1;
+
+  if (length > 0 && (strncmp(name, section, length) != 0 || name[length] != '.')) return NULL;
+  return strchr(leaf, '.') ? NULL : leaf;
+}
+
 static void complain_of_unknown(const struct ebb_reader *reader, const struct ebb_yaml_node *key, const char *section,
                                 const char *path, bool component, struct ebb_origin origin)
 {
@@ -90,10 +100,10 @@ static void complain_of_unknown(const struct ebb_reader *reader, const struct eb
       ebb_nearest_try(&nearest, ebb_setting_leaf(setting));
     else if (!strcmp(ebb_setting_leaf(setting), word))
       elsewhere = setting;
-    if (section[0] || !section_begins(i, name)) continue;
-    ebb_nearest_try(&nearest, name);
-    if (nearest.best == name) { /* kept, as the next round writes into name */
-      ebb_text_copy(best, sizeof best, name);
+    if (component || !section_begins(i, name) || !inside(name, section)) continue;
+    ebb_nearest_try(&nearest, inside(name, section));
+    if (nearest.best == inside(name, section)) { /* kept, as the next round writes into name */
+      ebb_text_copy(best, sizeof best, nearest.best);
       nearest.best = best;
     }
   }
@@ -118,25 +128,24 @@ static void enter(const struct ebb_reader *reader, size_t row, const char *path,
                       ebb_setting_leaf(ebb_setting_at(row)), path[0] ? " in " : "", path, given->origin.line);
 }
 
-/* A section of the top: its map is collected; true where the key is one. */
-static bool collect_section(const struct ebb_reader *reader, const struct ebb_yaml_node *key, bool seen[],
-                            struct ebb_given given[])
+/* A section inside `section`: its map is collected; true where the key is one. seen: lines, 0 where not yet. */
+static bool collect_section(const struct ebb_reader *reader, const struct ebb_yaml_node *key, const char *section,
+                            size_t seen[], struct ebb_given given[])
 {
   const struct ebb_yaml_node *map = key->next;
   const struct ebb_origin origin = {.line = key->line};
   char name[EBB_NAME_MAX];
 
   for (size_t i = 0; i < reader->rows; i++) {
-    if (!section_begins(i, name) || !named(key, name)) continue;
+    if (!section_begins(i, name) || !inside(name, section) || !named(key, inside(name, section))) continue;
     if (seen[i])
-      ebb_reader_complain(reader, origin, "duplicate key '%s'; it stands in line %zu already", name,
-                          ebb_reader_section(reader, name).line);
+      ebb_reader_complain(reader, origin, "duplicate key '%s'; it stands in line %zu already", name, seen[i]);
     else if (map->kind == EBB_YAML_MAP)
       ebb_reader_collect(reader, map, name, name, false, NULL, given);
     else if (!map->spoilt)
       ebb_reader_complain(reader, origin, "'%s' must be a section of keys such as '%s'; leave it out for the defaults",
                           name, ebb_setting_at(i)->key);
-    seen[i] = true;
+    if (!seen[i]) seen[i] = key->line;
     return true;
   }
   return false;
@@ -145,7 +154,7 @@ static bool collect_section(const struct ebb_reader *reader, const struct ebb_ya
 void ebb_reader_collect(const struct ebb_reader *reader, const struct ebb_yaml_node *map, const char *section,
                         const char *path, bool component, const char *override, struct ebb_given given[])
 {
-  bool *seen = calloc(reader->rows, sizeof *seen);
+  size_t *seen = calloc(reader->rows, sizeof *seen);
 
   for (const struct ebb_yaml_node *key = map->first; seen && key && key->next; key = key->next->next) {
     const struct ebb_origin origin = {.line = key->line, .override = override};
@@ -161,7 +170,7 @@ void ebb_reader_collect(const struct ebb_reader *reader, const struct ebb_yaml_n
       row++;
     if (row < reader->rows)
       enter(reader, row, path, &given[row], key->next, origin);
-    else if (section[0] || !collect_section(reader, key, seen, given))
+    else if (component || !collect_section(reader, key, section, seen, given))
       complain_of_unknown(reader, key, section, path, component, origin);
   }
   free(seen);

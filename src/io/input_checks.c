@@ -11,7 +11,7 @@
 
 enum { SITES_MIN = 8, LATTICE_STEP = 4 /* in v */ };
 
-static bool good(const struct ebb_reader *reader, const char *key)
+bool ebb_reader_good(const struct ebb_reader *reader, const char *key)
 {
   const struct ebb_given *given = ebb_reader_given(reader, key);
 
@@ -19,7 +19,7 @@ static bool good(const struct ebb_reader *reader, const char *key)
 }
 
 /* Of two settings that exclude each other, the one to blame: the override, or the later line. */
-static struct ebb_origin later(const struct ebb_given *a, const struct ebb_given *b)
+struct ebb_origin ebb_reader_later(const struct ebb_given *a, const struct ebb_given *b)
 {
   if (a->origin.override) return a->origin;
   return b->origin.override || b->origin.line > a->origin.line ? b->origin : a->origin;
@@ -34,13 +34,13 @@ static void check_gravity(const struct ebb_reader *reader)
   struct ebb_constants constants;
 
   if (gap->node && scale->node) {
-    ebb_reader_complain(reader, later(gap, scale),
+    ebb_reader_complain(reader, ebb_reader_later(gap, scale),
                         "gravity.area_gap is the square of gravity.polymer_scale; give at most one of them");
     return;
   }
   ebb_settings_resolve(settings);
-  if (!good(reader, "gravity.immirzi") || !good(reader, "gravity.newton") || !good(reader, "gravity.area_gap") ||
-      !good(reader, "gravity.polymer_scale"))
+  if (!ebb_reader_good(reader, "gravity.immirzi") || !ebb_reader_good(reader, "gravity.newton") ||
+      !ebb_reader_good(reader, "gravity.area_gap") || !ebb_reader_good(reader, "gravity.polymer_scale"))
     return;
   constants = ebb_constants_make(gravity->newton, gravity->immirzi, gravity->polymer_scale);
   if (!isnormal(constants.area_gap) || !isnormal(constants.volume_unit) || !isnormal(constants.critical_density) ||
@@ -111,9 +111,9 @@ static void check_lattice(const struct ebb_reader *reader)
   }
   if (!edge->taken || !(lattice->volume_max > 0)) return; /* auto */
   if (points->node)
-    ebb_reader_complain(reader, later(edge, points),
+    ebb_reader_complain(reader, ebb_reader_later(edge, points),
                         "lattice.points and lattice.volume_max both say where the lattice ends; give at most one");
-  else if (good(reader, "gravity.sector") && lattice->volume_max < sector + LATTICE_STEP * (SITES_MIN - 1))
+  else if (ebb_reader_good(reader, "gravity.sector") && lattice->volume_max < sector + LATTICE_STEP * (SITES_MIN - 1))
     ebb_reader_complain(reader, edge->origin,
                         "lattice.volume_max = %.15g must be at least %.15g: %d sites of sector %.15g",
                         lattice->volume_max, sector + LATTICE_STEP * (SITES_MIN - 1), SITES_MIN, sector);
@@ -146,4 +146,5 @@ void ebb_reader_check(const struct ebb_reader *reader)
   check_places(reader);
   check_lattice(reader);
   check_numerics(reader);
+  ebb_reader_check_model(reader);
 }

@@ -2,7 +2,7 @@
  *
  * Layer L4 (io), private. What the files of the model-file reader share. The order of work: trees (input_tree.c), which
  * key stands where (input.c), values (input_values.c), the state and its components (input_state.c), what only
- * several settings together can violate (input_checks.c). */
+ * several settings together can violate (input_checks.c), which models there are (input_model.c). */
 #ifndef EBBTURN_IO_INPUT_PARTS_H
 #define EBBTURN_IO_INPUT_PARTS_H
 
@@ -63,5 +63,8 @@ bool ebb_reader_take(const struct ebb_reader *reader, size_t row, struct ebb_giv
 
 void ebb_reader_state(struct ebb_reader *reader);
 void ebb_reader_check(const struct ebb_reader *reader);
+void ebb_reader_check_model(const struct ebb_reader *reader);
+bool ebb_reader_good(const struct ebb_reader *reader, const char *key); /* not given, or given and taken */
+struct ebb_origin ebb_reader_later(const struct ebb_given *a, const struct ebb_given *b);
 
 #endif

@@ -23,6 +23,10 @@ static double edge(double sector)
   return 0.0;
 }
 
+/* ||v+1| - |v-1||/2 beside the curvature term: Ashtekar, Pawlowski, Singh, Vandersloot, Phys. Rev. D 75, 024035 (2007),
+ * gr-qc/0612104 (from memory, the ordering at |v| < 1 is not verified) */
+static double curvature_weight(double v) { return fmin(fabs(v), 1.0); }
+
 static void measure_series(size_t terms, double b[])
 {
   double s[terms], s2[terms];
@@ -50,6 +54,8 @@ const struct ebb_prescription ebb_prescription_aps = {
     .measure = measure,
     .hop = hop,
     .edge = edge,
+    .square = ebb_inverse_volume_square,
+    .curvature_weight = curvature_weight,
     .measure_series = measure_series,
     .hop_series = ebb_solvable_hop_series,
 };

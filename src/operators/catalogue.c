@@ -52,6 +52,13 @@ double ebb_cube_root_step(double v)
   return cubes / (a * a + a * b + b * b);
 }
 
+double ebb_inverse_volume_square(double v)
+{
+  const double step = ebb_cube_root_step(v);
+
+  return 8.0 / (27.0 * step * step * step);
+}
+
 void ebb_cube_root_series(size_t terms, double s[])
 {
   double binomial = 1.0 / 3.0; /* binom(1/3, 1) */

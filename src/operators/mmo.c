@@ -46,6 +46,7 @@ const struct ebb_prescription ebb_prescription_mmo = {
     .measure = measure,
     .hop = hop,
     .edge = edge,
+    .square = ebb_inverse_volume_square,
     .measure_series = measure_series,
     .hop_series = hop_series,
 };

@@ -13,6 +13,8 @@
 static inline double ebb_solvable_measure(double v) { return 1.0 / fabs(v); }
 static inline double ebb_solvable_hop(double v) { return fabs(v + 2.0) / 4.0; }
 
+static inline double ebb_solvable_square(double v) { return v * v; }
+
 static inline void ebb_solvable_measure_series(size_t terms, double b[])
 {
   for (size_t j = 0; j < terms; j++) b[j] = j == 0 ? 1.0 : 0.0;
@@ -31,6 +33,10 @@ static inline double ebb_sign_rule_edge(double sector, double (*hop)(double))
 {
   return sector > 2.0 ? hop(sector - 4.0) : 0.0;
 }
+
+/* q = |v| K/B_aps = (8/27)/J^3, J = ||v+1|^{1/3} - |v-1|^{1/3}|, where 1/V is regularised as in Ashtekar, Pawlowski, Singh,
+ * Phys. Rev. D 74, 084003 (2006) (from memory); v^2 - 5/9 at large v. */
+double ebb_inverse_volume_square(double v);
 
 /* Coefficients of 1/v^j in  S(v) = (3/2) v^{2/3} [(v+1)^{1/3} - (v-1)^{1/3}] = 1 + (5/27)... : binomial theorem,
  * s[j] = 3 binom(1/3, j+1) for even j, 0 for odd j. */

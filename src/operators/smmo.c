@@ -18,6 +18,7 @@ const struct ebb_prescription ebb_prescription_smmo = {
     .measure = ebb_solvable_measure,
     .hop = ebb_solvable_hop,
     .edge = edge,
+    .square = ebb_solvable_square,
     .measure_series = ebb_solvable_measure_series,
     .hop_series = ebb_solvable_hop_series,
 };

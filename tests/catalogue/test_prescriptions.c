@@ -241,3 +241,18 @@ Test(prescriptions, large_volume_limit_is_reached_at_second_order)
     }
   }
 }
+
+/* q = v^2 - 5/9 at most: terms like V^2 have their classical limit */
+Test(prescriptions, squares_of_the_volume_have_their_limit)
+{
+  for (size_t i = 0; i < ebb_prescriptions(); i++) {
+    const struct ebb_prescription *p = ebb_prescription_at(i);
+
+    if (p->grid) continue;
+    cr_assert_not_null(p->square, "%s", p->name);
+    for (double v = 10.0; v < 1e6; v *= 3.0) {
+      cr_expect_lt(fabs(p->square(v) / (v * v) - 1.0), 1.0 / (v * v) + 1e-14, "%s, v = %g", p->name, v);
+      ebb_test_close(p->square(-v), p->square(v), ebb_test_rounding(16, v * v)); /* parts summed in another order */
+    }
+  }
+}

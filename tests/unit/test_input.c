@@ -445,3 +445,34 @@ Test(input, the_print_names_every_setting_with_its_unit)
   free(text);
   ebb_settings_clear(&s);
 }
+
+/* Sections nest: the JSON of an extension opens its section inside gravity's and is a model again. */
+Test(input, nested_sections_come_back_from_json)
+{
+  static const char model[] = "gravity: {extension: {delta: 0.5}, cosmological_constant_over_critical: 0.25}\n"
+                              "spectrum: {interval: [-1, 2]}\n";
+  struct ebb_problems *problems = ebb_problems_create();
+  struct ebb_settings s, again;
+  char *json, *json_again;
+
+  cr_assert(ebb_input_parse(model, strlen(model), NULL, 0, EBB_NEED_SPECTRUM, &s, problems), "%s",
+            ebb_problems_text(problems, 0));
+  cr_expect_eq(s.gravity.extension_delta, 0.5);
+  cr_expect(isnan(s.gravity.extension_tau));
+  json = ebb_settings_json(&s);
+  cr_expect_not_null(strstr(json, "\"extension\": {\"delta\": 0.5}}, \"clock\""), "%s", json);
+  cr_assert(ebb_input_parse(json, strlen(json), NULL, 0, EBB_NEED_SPECTRUM, &again, problems), "%s",
+            ebb_problems_text(problems, 0));
+  json_again = ebb_settings_json(&again);
+  cr_expect_str_eq(json, json_again);
+  cr_expect_eq(again.gravity.cosmological_constant, s.gravity.cosmological_constant);
+  free(json);
+  free(json_again);
+  ebb_settings_clear(&again);
+  cr_assert(ebb_input_parse(model, strlen(model), (const char *const[]){"gravity.extension.delta=0.75"}, 1,
+                            EBB_NEED_SPECTRUM, &again, problems));
+  cr_expect_eq(again.gravity.extension_delta, 0.75);
+  ebb_settings_clear(&again);
+  ebb_settings_clear(&s);
+  ebb_problems_destroy(&problems);
+}

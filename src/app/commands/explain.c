@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/command.h"
 #include "ebbturn/input.h"
+#include "ebbturn/matter.h"
 #include "ebbturn/operators.h"
 #include "ebbturn/propagator.h"
 #include "ebbturn/state.h"
@@ -14,8 +15,8 @@ const struct ebb_command ebb_command_explain = {
     .synopsis = "NAME",
     .summary = "say everything about one entry of a catalogue or one setting",
     .help =
-        "NAME is a prescription (slqc), a profile (gaussian_momentum), a propagator (modes) or the key of a setting\n"
-        "(gravity.immirzi). For an entry of a catalogue: formula, source and the settings that matter; for a setting:\n"
+        "NAME is a prescription (slqc), a profile (gaussian_momentum), a clock (scalar), a propagator (modes) or the key\n"
+        "of a setting (gravity.immirzi). For an entry of a catalogue: formula, source and the settings that matter; for a setting:\n"
         "letter, unit, type, range, default and source.",
     .operands_min = 1,
     .operands_max = 1,
@@ -155,12 +156,21 @@ static void explain_profile(const struct ebb_profile *profile)
   }
 }
 
+static void explain_clock(const struct ebb_clock *clock)
+{
+  explain_entry(clock->name, clock->title, clock->formula, clock->source);
+  row("unit", clock->unit);
+  row("settings", "clock.kind");
+  if (clock->ordering) row("", "clock.ordering");
+}
+
 /* True where the name is one of a catalogue or a setting, and was explained. */
 static bool explain(const char *name)
 {
   const struct ebb_prescription *prescription = ebb_prescription_find(name);
   const struct ebb_profile *profile = ebb_profile_find(name);
   const struct ebb_propagator *propagator = ebb_propagator_find(name);
+  const struct ebb_clock *clock = ebb_clock_find(name) ? ebb_clock_find(name) : ebb_clock_select(name, "");
   const struct ebb_setting *setting = ebb_setting_find(name);
 
   if (prescription)
@@ -169,9 +179,11 @@ static bool explain(const char *name)
     explain_profile(profile);
   else if (propagator)
     explain_entry(name, propagator->title, propagator->formula, propagator->source);
+  else if (clock)
+    explain_clock(clock);
   else if (setting)
     explain_setting(setting);
-  return prescription || profile || propagator || setting;
+  return prescription || profile || propagator || clock || setting;
 }
 
 static int complain(const char *before, const char *word, const char *after, const char *nearest)
@@ -194,6 +206,7 @@ static int complain_of_unknown(const char *name)
   for (size_t i = 0; i < ebb_prescriptions(); i++) ebb_nearest_try(&nearest, ebb_prescription_at(i)->name);
   for (size_t i = 0; i < ebb_profiles(); i++) ebb_nearest_try(&nearest, ebb_profile_at(i)->name);
   for (size_t i = 0; i < ebb_propagators(); i++) ebb_nearest_try(&nearest, ebb_propagator_at(i)->name);
+  for (size_t i = 0; i < ebb_clocks(); i++) ebb_nearest_try(&nearest, ebb_clock_at(i)->name);
   for (size_t i = 0; i < ebb_setting_count(); i++) {
     /* a bare last part, `immirzi`, points at its key */
     if (!strcmp(ebb_setting_leaf(ebb_setting_at(i)), name))
@@ -213,7 +226,7 @@ static int run(const struct ebb_invocation *invocation)
     printf("%s\n", prescription->bibtex);
     return EBB_EXIT_OK;
   }
-  if (ebb_setting_find(name) || ebb_profile_find(name) || ebb_propagator_find(name))
+  if (ebb_setting_find(name) || ebb_profile_find(name) || ebb_propagator_find(name) || ebb_clock_find(name))
     return complain("", name, " has no BibTeX entry; prescriptions have one", NULL);
   return complain_of_unknown(name);
 }

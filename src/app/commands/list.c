@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/command.h"
 #include "ebbturn/input.h"
+#include "ebbturn/matter.h"
 #include "ebbturn/operators.h"
 #include "ebbturn/propagator.h"
 #include "ebbturn/state.h"
@@ -43,9 +44,7 @@ static void list_propagators(void)
 
 static void list_clocks(void)
 {
-  const struct ebb_setting *setting = ebb_setting_find("clock.kind");
-
-  for (size_t i = 0; ebb_setting_choice(setting, i); i++) printf("  %s\n", ebb_setting_choice(setting, i));
+  for (size_t i = 0; i < ebb_clocks(); i++) printf("  %-20s %s\n", ebb_clock_at(i)->name, ebb_clock_at(i)->title);
 }
 
 static void list_commands(void)

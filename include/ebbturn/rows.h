@@ -1,0 +1,65 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L1 (matter). The constraint of a whole model, prescription with clock, cosmological constant and curvature, as
+ * a real symmetric tridiagonal matrix. Pure functions of doubles: no PETSc, no allocation, cannot fail. Knows L0 and
+ * operators. */
+#ifndef EBBTURN_ROWS_H
+#define EBBTURN_ROWS_H
+
+#include "ebbturn/matter.h"
+#include "ebbturn/settings.h"
+
+#include <stdbool.h>
+
+enum ebb_curvature { EBB_CURVATURE_NONE, EBB_CURVATURE_CLOSED, EBB_CURVATURE_OPEN };
+
+struct ebb_rows {
+  const struct ebb_prescription *prescription;
+  const struct ebb_clock *clock;
+  struct ebb_constants constants;
+  double sector;
+  double s; /* Lambda/Lambda_c */
+  enum ebb_curvature curvature;
+  double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  /* filled by ebb_rows_make */
+  double scale; /* the operator is scale times measure, hop, edge and potential */
+  bool half;    /* v = sector + 4n, n >= 0; false: sector + 4Z */
+  double d1;    /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
+};
+
+/* Completes rows whose first seven members are set. Sizes of the cell: V = 2 pi^2 a^3 (closed, the whole three-sphere),
+ * V = a^3 (open, a cell of unit volume in the unit hyperbolic metric). */
+void ebb_rows_make(struct ebb_rows *rows);
+/* The rows of a model whose settings are resolved and good, on a volume lattice. */
+struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings);
+
+/* Flux form, in units of scale; v: a lattice value (signed on full lattices). */
+double ebb_rows_measure(const struct ebb_rows *rows, double v);
+double ebb_rows_hop(const struct ebb_rows *rows, double v);
+double ebb_rows_edge(const struct ebb_rows *rows); /* C below the first site of a half lattice */
+/* On the diagonal, in units of scale: weight(v) U(v). Cosmological constant: U = -s (Bentivegna, Pawlowski, Phys. Rev.
+ * D 77, 124025 (2008), arXiv:0803.4446); closed: U = (1 + gamma^2) D^2 - sin^2 D (Ashtekar, Pawlowski, Singh,
+ * Vandersloot, Phys. Rev. D 75, 024035 (2007), gr-qc/0612104); open: U = -gamma^2 D^2 (Vandersloot, Phys. Rev. D 75,
+ * 023523 (2007), gr-qc/0612070). Forms from memory; their effective limits were verified. */
+double ebb_rows_potential(const struct ebb_rows *rows, double v);
+
+/* Matrix elements <v|.|v> and <v|.|v+4>, scale included. */
+double ebb_rows_diagonal(const struct ebb_rows *rows, double v);
+double ebb_rows_offdiagonal(const struct ebb_rows *rows, double v);
+
+/* What the operator on the infinite lattice is, by the large-volume behaviour of its solutions: with U -> -s the symbol
+ * is v^growth (sin^2 b - s), and the time to infinite volume is finite, so that a boundary condition is missing there,
+ * where s in (0, 1) and growth > 1, or where s = 0, the curvature is open and growth > 4/3. */
+enum ebb_nature {
+  EBB_NATURE_DISCRETE,    /* essentially self-adjoint, bounded below, discrete */
+  EBB_NATURE_CONTINUOUS,  /* essentially self-adjoint, with continuous spectrum */
+  EBB_NATURE_FAMILY,      /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
+  EBB_NATURE_OVERCRITICAL /* Lambda >= Lambda_c: no positive spectrum */
+};
+enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows);
+
+/* |v| beyond which eigenfunctions of a low eigenvalue of a discrete operator have fallen by exp(-depth): psi ~
+ * exp(-(v/2) arcsinh sqrt|s|) for Lambda < 0, exp(-(3/4) gamma d1 v^{2/3}) where closed. */
+double ebb_rows_reach(const struct ebb_rows *rows, double depth);
+
+#endif

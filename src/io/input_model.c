@@ -1,0 +1,174 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Which models there are: prescription, curvature, cosmological constant, clock and extension together, and what a
+ * command can do with them. */
+#include "input_parts.h"
+
+#include "ebbturn/rows.h"
+
+#include <string.h>
+
+/* The first setting that goes beyond the flat model without cosmological constant and with a scalar clock; NULL: none.
+ */
+static const struct ebb_given *beyond(const struct ebb_reader *reader)
+{
+  static const char *const lambda = "gravity.cosmological_constant";
+  const struct ebb_settings *s = reader->settings;
+
+  if (strcmp(s->gravity.curvature, "none") != 0) return ebb_reader_given(reader, "gravity.curvature");
+  if (s->gravity.cosmological_constant != 0.0)
+    return ebb_reader_given(reader,
+                            ebb_reader_taken(reader, lambda) ? lambda : "gravity.cosmological_constant_over_critical");
+  if (strcmp(s->clock.kind, "scalar") != 0) return ebb_reader_given(reader, "clock.kind");
+  return NULL;
+}
+
+/* Settings that exclude each other or have no meaning here; false where one was found. */
+static bool consistent(const struct ebb_reader *reader)
+{
+  const struct ebb_settings *s = reader->settings;
+  const struct ebb_given *lambda = ebb_reader_given(reader, "gravity.cosmological_constant");
+  const struct ebb_given *ratio = ebb_reader_given(reader, "gravity.cosmological_constant_over_critical");
+  const struct ebb_given *delta = ebb_reader_given(reader, "gravity.extension.delta");
+  const struct ebb_given *tau = ebb_reader_given(reader, "gravity.extension.tau");
+  const struct ebb_given *ordering = ebb_reader_given(reader, "clock.ordering"), *far = beyond(reader);
+
+  if (lambda->node && ratio->node)
+    ebb_reader_complain(reader, ebb_reader_later(lambda, ratio),
+                        "gravity.cosmological_constant and gravity.cosmological_constant_over_critical say the same; "
+                        "give at most one of them");
+  else if (delta->node && tau->node)
+    ebb_reader_complain(reader, ebb_reader_later(delta, tau),
+                        "gravity.extension takes delta or tau, at most one of them");
+  else if (ordering->taken && strcmp(s->clock.kind, "dust") != 0)
+    ebb_reader_complain(reader, ordering->origin, "clock.ordering belongs to clock.kind 'dust', not to '%s'",
+                        s->clock.kind);
+  else if (reader->prescription->continuum && far)
+    ebb_reader_complain(reader, far->origin,
+                        "prescription '%s' is the flat model without cosmological constant and with a scalar clock",
+                        reader->prescription->name);
+  else if (!strcmp(s->clock.kind, "unimodular") && s->gravity.cosmological_constant != 0.0)
+    ebb_reader_complain(reader, (lambda->node ? lambda : ratio)->origin,
+                        "with the unimodular clock the cosmological constant is the clock's momentum; leave it out of "
+                        "gravity");
+  else
+    return true;
+  return false;
+}
+
+/* An extension that is given: does the operator need one, and has it this label? */
+static void check_extension(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const struct ebb_given *delta = ebb_reader_given(reader, "gravity.extension.delta");
+  const struct ebb_given *given = delta->node ? delta : ebb_reader_given(reader, "gravity.extension.tau");
+
+  if (!given->taken) return;
+  if (ebb_rows_nature(rows) != EBB_NATURE_FAMILY)
+    ebb_reader_complain(reader, given->origin,
+                        "gravity.extension does not belong here: the operator is essentially self-adjoint; leave it "
+                        "out");
+  else if (!rows->half)
+    ebb_reader_complain(reader, given->origin,
+                        "gravity.extension is for half lattices; in sector %g of prescription '%s' the deficiency "
+                        "indices are (2,2): take sector 2 or 4, or prescription smmo or mmo",
+                        rows->sector, rows->prescription->name);
+  else if (delta->node && (rows->curvature != EBB_CURVATURE_NONE || strcmp(rows->clock->kind, "scalar") != 0))
+    ebb_reader_complain(reader, given->origin,
+                        "gravity.extension.delta exists for the flat model with a scalar clock only: elsewhere the "
+                        "phase at infinity drifts; give gravity.extension.tau");
+}
+
+/* Why this operator has no list of eigenvalues; false where it has none. */
+static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const bool given = ebb_reader_given(reader, "gravity.extension.delta")->node ||
+                     ebb_reader_given(reader, "gravity.extension.tau")->node;
+  const struct ebb_origin origin = ebb_reader_section(reader, "gravity");
+
+  switch (ebb_rows_nature(rows)) {
+  case EBB_NATURE_DISCRETE:
+    return true;
+  case EBB_NATURE_FAMILY:
+    if (given) return true;
+    ebb_reader_complain(reader, origin,
+                        "gravity.extension is missing: the deficiency indices are %s, so there is a family of "
+                        "self-adjoint extensions, each with a spectrum of its own; %s",
+                        rows->half ? "(1,1)" : "(2,2)",
+                        !rows->half ? "take sector 2 or 4, and one extension"
+                        : rows->curvature == EBB_CURVATURE_NONE && rows->clock->growth == 2.0
+                            ? "give extension: {delta: ...} or {tau: ...}"
+                            : "give extension: {tau: ...}");
+    return false;
+  case EBB_NATURE_CONTINUOUS:
+    ebb_reader_complain(reader, origin,
+                        "this model has a continuous spectrum; 'spectrum' lists discrete ones in this version: a "
+                        "negative cosmological constant, a closed model, or an extension");
+    return false;
+  case EBB_NATURE_OVERCRITICAL:
+    ebb_reader_complain(reader, origin,
+                        "the cosmological constant is %.6g of the critical one, 3/(gamma^2 lambda^2): the operator has "
+                        "no positive part, no physical states; take less than 1",
+                        rows->s);
+    return false;
+  }
+  return false;
+}
+
+static void check_wanted(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const struct ebb_given *count = ebb_reader_given(reader, "spectrum.count");
+  const struct ebb_given *interval = ebb_reader_given(reader, "spectrum.interval");
+
+  if (count->node && interval->node)
+    ebb_reader_complain(reader, ebb_reader_later(count, interval),
+                        "spectrum.count and spectrum.interval both say which eigenvalues; give one of them");
+  else if (!count->node && !interval->node)
+    ebb_reader_complain(reader, ebb_reader_section(reader, "spectrum"),
+                        "spectrum.count is missing; say how many (count: 10) or where (interval: [a, b])");
+  else if (count->node && ebb_rows_nature(rows) == EBB_NATURE_FAMILY)
+    ebb_reader_complain(reader, count->origin,
+                        "spectrum.count: there is no lowest eigenvalue, the spectrum of every extension goes to minus "
+                        "infinity; give spectrum.interval");
+  else if (interval->taken && reader->settings->spectrum.ends != 2)
+    ebb_reader_complain(reader, interval->origin, "spectrum.interval has %zu entr%s, must be [a, b]",
+                        reader->settings->spectrum.ends, reader->settings->spectrum.ends == 1 ? "y" : "ies");
+}
+
+void ebb_reader_check_model(const struct ebb_reader *reader)
+{
+  static const char *const needed[] = {"gravity.immirzi",
+                                       "gravity.newton",
+                                       "gravity.area_gap",
+                                       "gravity.polymer_scale",
+                                       "gravity.sector",
+                                       "gravity.curvature",
+                                       "clock.kind",
+                                       "clock.ordering",
+                                       "gravity.cosmological_constant",
+                                       "gravity.extension.tau",
+                                       "gravity.extension.delta",
+                                       "gravity.cosmological_constant_over_critical"};
+  const struct ebb_given *far;
+  struct ebb_rows rows;
+
+  if (!reader->prescription) return;
+  for (size_t i = 0; i < sizeof needed / sizeof needed[0]; i++)
+    if (!ebb_reader_good(reader, needed[i])) return;
+  if (ebb_reader_given(reader, "gravity.area_gap")->node && ebb_reader_given(reader, "gravity.polymer_scale")->node)
+    return; /* complained of already */
+  if (!consistent(reader)) return;
+  far = beyond(reader);
+  if (far && (reader->need & EBB_NEED_CLOCK_RANGE)) {
+    ebb_reader_complain(reader, far->origin, "evolution of this model is not available in this version; 'spectrum' is");
+    return;
+  }
+  if (reader->prescription->grid) {
+    if (reader->need & EBB_NEED_SPECTRUM)
+      ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"), "prescription '%s' has a continuous spectrum",
+                          reader->prescription->name);
+    return;
+  }
+  rows = ebb_rows_of_settings(reader->settings);
+  check_extension(reader, &rows);
+  if ((reader->need & EBB_NEED_SPECTRUM) && has_eigenvalues(reader, &rows)) check_wanted(reader, &rows);
+}

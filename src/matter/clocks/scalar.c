@@ -1,0 +1,24 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "clock_parts.h"
+
+static double measure(const struct ebb_prescription *p, double v) { return p->measure(v); }
+static double hop(const struct ebb_prescription *p, double v) { return p->hop(v); }
+static double edge(const struct ebb_prescription *p, double sector) { return p->edge(sector); }
+static double weight(const struct ebb_prescription *p, double v) { return p->square(v); }
+static double scale(const struct ebb_constants *c) { return c->theta_scale; }
+
+const struct ebb_clock ebb_clock_scalar = {
+    .name = "scalar",
+    .kind = "scalar",
+    .title = "massless scalar field phi",
+    .formula = "p_phi^2 = Theta,  Psi(phi) = exp(i sqrt(Theta) phi) Psi(0)",
+    .source = "Ashtekar, Pawlowski, Singh, Phys. Rev. D 74, 084003 (2006), gr-qc/0607039 (recalled)",
+    .root = true,
+    .unit = "G",
+    .growth = 2.0,
+    .measure = measure,
+    .hop = hop,
+    .edge = edge,
+    .weight = weight,
+    .scale = scale,
+};

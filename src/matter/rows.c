@@ -1,0 +1,102 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "ebbturn/rows.h"
+
+#include <math.h>
+#include <string.h>
+
+void ebb_rows_make(struct ebb_rows *rows)
+{
+  const struct ebb_constants *c = &rows->constants;
+  const double cell = rows->curvature == EBB_CURVATURE_CLOSED ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
+
+  rows->scale = rows->clock->scale(c);
+  rows->half = ebb_prescription_half(rows->prescription, rows->sector);
+  rows->d1 = rows->curvature == EBB_CURVATURE_NONE ? 0.0 : c->polymer_scale * cbrt(cell / c->volume_unit);
+}
+
+static enum ebb_curvature curvature_find(const char *name)
+{
+  if (!strcmp(name, "closed")) return EBB_CURVATURE_CLOSED;
+  return strcmp(name, "open") ? EBB_CURVATURE_NONE : EBB_CURVATURE_OPEN;
+}
+
+struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings)
+{
+  const struct ebb_gravity_settings *g = &settings->gravity;
+  struct ebb_rows rows = {
+      .prescription = ebb_prescription_find(g->prescription),
+      .clock = ebb_clock_select(settings->clock.kind, settings->clock.ordering),
+      .constants = ebb_constants_make(g->newton, g->immirzi, g->polymer_scale),
+      .sector = g->sector,
+      .curvature = curvature_find(g->curvature),
+  };
+
+  rows.s = g->cosmological_constant / rows.constants.critical_lambda;
+  ebb_rows_make(&rows);
+  return rows;
+}
+
+double ebb_rows_measure(const struct ebb_rows *rows, double v) { return rows->clock->measure(rows->prescription, v); }
+
+double ebb_rows_hop(const struct ebb_rows *rows, double v) { return rows->clock->hop(rows->prescription, v); }
+
+double ebb_rows_edge(const struct ebb_rows *rows) { return rows->clock->edge(rows->prescription, rows->sector); }
+
+static double curvature(const struct ebb_rows *rows, double v)
+{
+  const double d = rows->d1 / cbrt(fabs(v)), g = rows->constants.immirzi, sine = sin(d);
+  const struct ebb_prescription *p = rows->prescription;
+  double value = 0.0;
+
+  if (rows->curvature == EBB_CURVATURE_CLOSED) value = (1.0 + g * g) * d * d - sine * sine;
+  if (rows->curvature == EBB_CURVATURE_OPEN) value = -g * g * d * d;
+  return p->curvature_weight ? value * p->curvature_weight(v) : value;
+}
+
+double ebb_rows_potential(const struct ebb_rows *rows, double v)
+{
+  const struct ebb_clock *clock = rows->clock;
+  double value = 0.0;
+
+  if (rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE)
+    value = clock->weight(rows->prescription, v) * (curvature(rows, v) - rows->s);
+  if (rows->p_phi != 0.0 && clock->kinetic)
+    value -= rows->p_phi * rows->p_phi * clock->kinetic(&rows->constants, v) / rows->scale;
+  return value;
+}
+
+double ebb_rows_diagonal(const struct ebb_rows *rows, double v)
+{
+  const double below = rows->half && v == rows->sector ? ebb_rows_edge(rows) : ebb_rows_hop(rows, v - 4.0);
+
+  return rows->scale * ((ebb_rows_hop(rows, v) + below) / ebb_rows_measure(rows, v) + ebb_rows_potential(rows, v));
+}
+
+double ebb_rows_offdiagonal(const struct ebb_rows *rows, double v)
+{
+  return -rows->scale * ebb_rows_hop(rows, v) / sqrt(ebb_rows_measure(rows, v) * ebb_rows_measure(rows, v + 4.0));
+}
+
+enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows)
+{
+  const double growth = rows->clock->growth;
+
+  if (!(growth > 0.0)) return EBB_NATURE_CONTINUOUS; /* bounded */
+  if (rows->s >= 1.0) return EBB_NATURE_OVERCRITICAL;
+  if (rows->s < 0.0) return EBB_NATURE_DISCRETE;
+  if (rows->s > 0.0) return growth > 1.0 ? EBB_NATURE_FAMILY : EBB_NATURE_CONTINUOUS;
+  /* weight times D^2 goes like v^{growth - 2/3} */
+  if (rows->curvature == EBB_CURVATURE_CLOSED) return growth > 2.0 / 3.0 ? EBB_NATURE_DISCRETE : EBB_NATURE_CONTINUOUS;
+  if (rows->curvature == EBB_CURVATURE_OPEN) return growth > 4.0 / 3.0 ? EBB_NATURE_FAMILY : EBB_NATURE_CONTINUOUS;
+  return EBB_NATURE_CONTINUOUS;
+}
+
+double ebb_rows_reach(const struct ebb_rows *rows, double depth)
+{
+  double reach = INFINITY;
+
+  if (rows->s < 0.0) reach = 2.0 * depth / asinh(sqrt(-rows->s));
+  if (rows->curvature == EBB_CURVATURE_CLOSED)
+    reach = fmin(reach, pow(depth / (0.75 * rows->constants.immirzi * rows->d1), 1.5));
+  return reach;
+}
