@@ -1,0 +1,121 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * In flux form with x = psi/sqrt(B),  C(v) (x(v+4) - x(v)) - C(v-4) (x(v) - x(v-4)) = (U - zeta) B x.
+ * Far out C changes little over a step, so x ~ exp(+-i theta v/4) with cos theta = 1 + U B/(2 C), and the Wronskian
+ * C sin(theta) |x|^2 is constant: |psi|^2 = B |x|^2 ~ B/(C sin theta). Where U is absent zeta takes its place.
+ * Everything is formed from B, C and U themselves, never from a difference of matrix elements, so nothing cancels at
+ * any v. */
+#include "ebbturn/selfadjoint.h"
+
+#include <complex.h>
+#include <math.h>
+
+static const double FAR = 1e8, FARTHER = 1e10; /* volumes between which exponents are taken */
+static const double LEVEL = 1e-6;              /* |cos theta + 1| below which the roots count as meeting at -1 */
+static const double EXACT = 1e-3;              /* exponent -1 to this precision: the sum diverges like a logarithm */
+static const double SUMMABLE = 0.05;           /* farther below -1 than this: the sum converges */
+static const double CONVERGES = -0.15, DIVERGES = -0.03; /* slopes of the Weyl sums */
+static const double OVERGROWN = 1e200;
+enum { TAIL_OCTAVES = 4 };
+
+/* (U - zeta) B/(2 C) = cos theta - 1; bare: U absent, and a positive zeta inside the band of every operator instead */
+static double drive(const struct ebb_rows *rows, double v, bool bare)
+{
+  static const double ZETA = 0.5;
+  const double u = bare ? -ZETA : ebb_rows_potential(rows, v);
+
+  return u * ebb_rows_measure(rows, v) / (2.0 * ebb_rows_hop(rows, v));
+}
+
+/* |psi|^2 ~ B/(C sin theta) from 1 - cos theta = -drive, sin^2 theta = (1 - cos)(1 + cos) */
+static double density(const struct ebb_rows *rows, double v, bool bare)
+{
+  const double w = -drive(rows, v, bare);
+  return ebb_rows_measure(rows, v) / (ebb_rows_hop(rows, v) * sqrt(w * (2.0 - w)));
+}
+
+static double outer_modulus(double cosine)
+{
+  return fabs(cosine) > 1.0 ? fabs(cosine) + sqrt(cosine * cosine - 1.0) : 1.0;
+}
+
+static void asymptotics(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
+{
+  bool bare = ebb_rows_potential(rows, FAR) == 0.0;
+  const double w = bare ? 0.0 : -drive(rows, FARTHER, false), nearer = bare ? 0.0 : -drive(rows, FAR, false);
+
+  r->cosine = 1.0 - w;
+  r->modulus[1] = outer_modulus(r->cosine);
+  r->modulus[0] = 1.0 / r->modulus[1];
+  /* roots that tend to the unit circle as v grows are stable; those that stay off it are not */
+  r->stable = r->modulus[1] == 1.0 || r->modulus[1] - 1.0 < 0.5 * (outer_modulus(1.0 - nearer) - 1.0);
+  r->exponent = NAN;
+  /* Roots that meet at -1 (Lambda = Lambda_c): the gauge (-1)^n turns them to +1, and what is left of U beside C falls
+   * off like the terms that Lambda = 0 has there. */
+  if (fabs(w - 2.0) <= LEVEL) bare = true;
+  if (!bare && (w < 0.0 || w > 2.0)) {
+    r->asymptotic = EBB_LIMIT_POINT; /* one exponential grows, and it is the regular solution for almost every z */
+    return;
+  }
+  r->exponent = log(density(rows, FARTHER, bare) / density(rows, FAR, bare)) / log(FARTHER / FAR);
+  r->asymptotic = r->exponent > -1.0 - EXACT ? EBB_LIMIT_POINT
+                                             : (r->exponent < -1.0 - SUMMABLE ? EBB_LIMIT_CIRCLE : EBB_LIMIT_UNDECIDED);
+}
+
+/* Sums of |p_n(z)|^2 over octaves of n, z = i scale (zeta = i), p = 1 at the first site. */
+static void weyl(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
+{
+  const double complex zeta = I;
+  double v = rows->sector, sum = 0.0, octave[EBB_WEYL_OCTAVES];
+  double complex x = 1.0 / sqrt(ebb_rows_measure(rows, v));
+  double complex y = (rows->half ? ebb_rows_edge(rows) : 0.0) * x;
+  PetscInt64 n = 0;
+
+  r->octaves = 0;
+  for (int j = 0; j < EBB_WEYL_OCTAVES && sum < OVERGROWN; j++) {
+    const PetscInt64 end = (PetscInt64)2 << j;
+    const double before = sum;
+
+    for (; n < end && sum < OVERGROWN; n++, v += 4.0) {
+      const double b = ebb_rows_measure(rows, v);
+
+      sum += b * creal(x * conj(x));
+      y -= (zeta - ebb_rows_potential(rows, v)) * b * x;
+      x += y / ebb_rows_hop(rows, v);
+    }
+    octave[j] = sum - before;
+    r->sites[j] = (double)n;
+    r->radius[j] = 1.0 / (2.0 * rows->scale * sum);
+    r->octaves = j + 1;
+  }
+  if (sum >= OVERGROWN) {
+    r->slope = INFINITY;
+    r->weyl = EBB_LIMIT_POINT;
+    return;
+  }
+  r->slope = log2(octave[r->octaves - 1] / octave[r->octaves - 1 - TAIL_OCTAVES]) / TAIL_OCTAVES;
+  r->weyl = r->slope < CONVERGES ? EBB_LIMIT_CIRCLE : r->slope > DIVERGES ? EBB_LIMIT_POINT : EBB_LIMIT_UNDECIDED;
+}
+
+static const char *const limit_words[] = {"limit point", "limit circle", "undecided"};
+
+PetscErrorCode ebb_selfadjoint_find(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
+{
+  char solutions[128];
+
+  PetscFunctionBegin;
+  *r = (struct ebb_selfadjoint){.n_plus = -1, .n_minus = -1};
+  asymptotics(rows, r);
+  weyl(rows, r);
+  if (r->asymptotic == r->weyl && r->weyl != EBB_LIMIT_UNDECIDED)
+    r->n_plus = r->n_minus = r->weyl == EBB_LIMIT_CIRCLE ? 1 : 0;
+  if (isnan(r->exponent))
+    PetscCall(PetscSNPrintf(solutions, sizeof solutions, "solutions at large v are exponentials"));
+  else
+    PetscCall(PetscSNPrintf(solutions, sizeof solutions, "|psi|^2 ~ v^%.3f at large v", r->exponent));
+  PetscCall(PetscSNPrintf(r->reason, sizeof r->reason,
+                          "%s (%s); Weyl's disc at z = i scale has radius %.3g after %.0f sites (%s)", solutions,
+                          limit_words[r->asymptotic], r->radius[r->octaves - 1], r->sites[r->octaves - 1],
+                          limit_words[r->weyl]));
+  PetscFunctionReturn(0);
+}
