@@ -304,6 +304,19 @@ static PetscErrorCode judge_continuum(const struct ebb_lattice *lattice, const s
   PetscFunctionReturn(0);
 }
 
+static PetscErrorCode say_edge(struct ebb_bounce *bounce, const struct ebb_budget *budget)
+{
+  char text[256];
+
+  PetscFunctionBegin;
+  PetscCall(PetscSNPrintf(text, sizeof text,
+                          "%.2g of the probability lies at the lattice edge, more than %.0e: enlarge "
+                          "lattice.volume_max",
+                          budget->edge_probability, EDGE_ALLOWED));
+  PetscCall(say(bounce, EBB_VERDICT_UNDECIDED, text));
+  PetscFunctionReturn(0);
+}
+
 static PetscErrorCode judge(const struct ebb_samples *samples, const struct ebb_budget *budget, bool mean_exists,
                             struct ebb_bounce *b)
 {
@@ -312,11 +325,7 @@ static PetscErrorCode judge(const struct ebb_samples *samples, const struct ebb_
 
   PetscFunctionBegin;
   if (budget->edge_probability > EDGE_ALLOWED) {
-    PetscCall(PetscSNPrintf(text, sizeof text,
-                            "%.2g of the probability lies at the lattice edge, more than %.0e: enlarge "
-                            "lattice.volume_max",
-                            budget->edge_probability, EDGE_ALLOWED));
-    PetscCall(say(b, EBB_VERDICT_UNDECIDED, text));
+    PetscCall(say_edge(b, budget));
   } else if (!(b->v.error <= ERROR_ALLOWED * b->v.value)) {
     PetscCall(PetscSNPrintf(text, sizeof text, "the bounce volume is known to %.2g only, more than %.0e of it",
                             b->v.error / b->v.value, ERROR_ALLOWED));
@@ -357,6 +366,10 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   } else {
     PetscCall(bracket_outside(source, samples, &low, &high, &found));
     bounce->outside = found;
+  }
+  if (!found && budget->edge_probability > EDGE_ALLOWED) { /* what is cut off might turn */
+    PetscCall(say_edge(bounce, budget));
+    PetscFunctionReturn(0);
   }
   if (!found) {
     PetscCall(
