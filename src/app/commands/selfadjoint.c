@@ -166,6 +166,16 @@ static PetscErrorCode selfadjoint(const struct ebb_invocation *invocation, const
   PetscCallMPI(MPI_Comm_rank(PETSC_COMM_WORLD, &rank));
   ebb_result_path(invocation, settings, sizeof w.path, w.path, w.folder);
   w.rows = ebb_rows_of_settings(settings);
+  if (w.rows.prescription->grid) {
+    *code = EBB_EXIT_USAGE;
+    if (rank == 0)
+      fprintf(
+          stderr,
+          "ebbturn: error: 1 problem in '%s'; nothing was computed\n  gravity.prescription = '%s' is no operator on a "
+          "lattice of volumes; try slqc, aps, mmo, smmo\n",
+          invocation->operand[0], settings->gravity.prescription);
+    PetscFunctionReturn(0);
+  }
   error = ebb_store_create(PETSC_COMM_WORLD, w.path, invocation->force, &store);
   if (!error) {
     PetscCall(ebb_selfadjoint_find(&w.rows, &w.found));
