@@ -13,8 +13,8 @@ try:
     matplotlib.use("Agg")
     import matplotlib.pyplot as plt
 except ImportError as missing:
-    sys.exit(f"plot_selfadjoint: error: '{sys.executable}' lacks the module '{missing.name}'\n"
-             "  try   /usr/bin/python3 with: apt-get install python3-numpy python3-h5py python3-matplotlib")
+    from ebbturn_python import switch
+    switch("plot_selfadjoint", missing)
 
 from ebbturn_result import Result
 
