@@ -40,8 +40,15 @@ struct ebb_invocation {
 };
 
 /* Which of the options above a command takes. */
-enum ebb_option { EBB_OPTION_SET = 1, EBB_OPTION_OUTPUT = 2, EBB_OPTION_FORCE = 4, EBB_OPTION_JSON = 8, EBB_OPTION_BIBTEX = 16,
-                  EBB_OPTION_PROGRESS = 32, EBB_OPTION_LIBRARY = 64 };
+enum ebb_option {
+  EBB_OPTION_SET = 1,
+  EBB_OPTION_OUTPUT = 2,
+  EBB_OPTION_FORCE = 4,
+  EBB_OPTION_JSON = 8,
+  EBB_OPTION_BIBTEX = 16,
+  EBB_OPTION_PROGRESS = 32,
+  EBB_OPTION_LIBRARY = 64
+};
 
 struct ebb_command {
   const char *name;     /* "evolve" */
@@ -49,8 +56,8 @@ struct ebb_command {
   const char *summary;  /* one sentence for the list of commands */
   const char *help;     /* further paragraphs for --help */
   int operands_min, operands_max;
-  unsigned options;     /* bits of enum ebb_option */
-  bool parallel;        /* starts MPI and PETSc/SLEPc before run; otherwise runs on one process without them */
+  unsigned options; /* bits of enum ebb_option */
+  bool parallel;    /* starts MPI and PETSc/SLEPc before run; otherwise runs on one process without them */
   int (*run)(const struct ebb_invocation *invocation); /* returns an exit code; collective when parallel */
 };
 
@@ -58,12 +65,14 @@ size_t ebb_commands(void);
 const struct ebb_command *ebb_command_at(size_t index);
 const struct ebb_command *ebb_command_find(const char *name);
 
-/* Shared by commands that take a MODEL: rank 0 reads, parses and checks; problems are printed by rank 0 and the exit code
- * (0, 2 or 4) is the same on all ranks; settings and text are broadcast. Caller clears settings and frees *text. */
-int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, struct ebb_settings *settings, char **text);
+/* Shared by commands that take a MODEL: rank 0 reads, parses and checks; problems are printed by rank 0 and the exit
+ * code (0, 2 or 4) is the same on all ranks; settings and text are broadcast. Caller clears settings and frees *text.
+ */
+int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, struct ebb_settings *settings,
+                     char **text);
 
-/* The exit code for an error that a library call returned: a file failure (4; rank 0 prints the reason that the store gives)
- * or a bug (70; the trace was printed when it was raised). 0 for no error. */
+/* The exit code for an error that a library call returned: a file failure (4; rank 0 prints the reason that the store
+ * gives) or a bug (70; the trace was printed when it was raised). 0 for no error. */
 int ebb_exit_from_error(PetscErrorCode error);
 
 #endif

@@ -21,7 +21,8 @@ struct ebb_constants {
   double hubble_max;       /* 1/(2 gamma lambda), reached at rho_c/2 */
 };
 
-/* lambda^2 of the area-gap default, Delta = 4 sqrt(3) pi gamma G (Ashtekar, Wilson-Ewing 2009, arXiv:0903.3397; from memory). */
+/* lambda^2 of the area-gap default, Delta = 4 sqrt(3) pi gamma G (Ashtekar, Wilson-Ewing 2009, arXiv:0903.3397; from
+ * memory). */
 double ebb_default_area_gap(double immirzi, double newton);
 
 /* All constants from the three that a model states; newton, immirzi, polymer_scale > 0 (not checked here).

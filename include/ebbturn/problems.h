@@ -14,7 +14,8 @@ struct ebb_problems; /* opaque */
 struct ebb_problems *ebb_problems_create(void);
 void ebb_problems_destroy(struct ebb_problems **problems);
 
-/* Adds one problem. line: 1-based line of the input file, 0 where there is none (then printed without the word line). */
+/* Adds one problem. line: 1-based line of the input file, 0 where there is none (then printed without the word line).
+ */
 void ebb_problems_add(struct ebb_problems *problems, size_t line, const char *format, ...)
     __attribute__((format(printf, 3, 4)));
 

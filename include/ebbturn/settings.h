@@ -24,40 +24,40 @@ struct ebb_gravity_settings {
   double newton;
   double sector; /* epsilon in (0, 4] */
   char curvature[EBB_NAME_MAX];
-  double cosmological_constant;                /* after ebb_settings_resolve also where given over critical */
-  double cosmological_constant_over_critical;  /* NAN when not given; at most one of the two may be given */
-  double extension_delta, extension_tau;       /* NAN when not given; at most one */
+  double cosmological_constant;               /* after ebb_settings_resolve also where given over critical */
+  double cosmological_constant_over_critical; /* NAN when not given; at most one of the two may be given */
+  double extension_delta, extension_tau;      /* NAN when not given; at most one */
 };
 
 struct ebb_clock_settings {
   char kind[EBB_NAME_MAX];
   char ordering[EBB_NAME_MAX]; /* "" unless the clock has several */
-  double from, to; /* NAN when not given */
+  double from, to;             /* NAN when not given */
   int samples;
 };
 
 struct ebb_state_settings {
   char profile[EBB_NAME_MAX];
-  double momentum;        /* centre of the Gaussian in p_phi */
-  double relative_spread; /* sigma_p/momentum */
-  double bounce_at;       /* gaussian_momentum */
-  double squeeze;         /* gaussian_momentum */
-  char channel[EBB_NAME_MAX]; /* right | left: full lattices */
-  double v0;              /* gaussian_lnv (INFINITY allowed), gaussian_volume */
-  double at;              /* clock value at which the profile is given */
-  char branch[EBB_NAME_MAX]; /* contracting | expanding | both (both: wdw only) */
-  double spread, b0, chirp;  /* gaussian_volume */
-  double v, density;         /* from_effective; density in units of 1/G^2 */
-  double lnv0;               /* wdw */
-  char file[EBB_PATH_MAX];   /* profile `file`, relative to the model's folder; stored as given */
-  double weight[2];          /* complex weight (re, im) of a component of a superposition */
+  double momentum;                      /* centre of the Gaussian in p_phi */
+  double relative_spread;               /* sigma_p/momentum */
+  double bounce_at;                     /* gaussian_momentum */
+  double squeeze;                       /* gaussian_momentum */
+  char channel[EBB_NAME_MAX];           /* right | left: full lattices */
+  double v0;                            /* gaussian_lnv (INFINITY allowed), gaussian_volume */
+  double at;                            /* clock value at which the profile is given */
+  char branch[EBB_NAME_MAX];            /* contracting | expanding | both (both: wdw only) */
+  double spread, b0, chirp;             /* gaussian_volume */
+  double v, density;                    /* from_effective; density in units of 1/G^2 */
+  double lnv0;                          /* wdw */
+  char file[EBB_PATH_MAX];              /* profile `file`, relative to the model's folder; stored as given */
+  double weight[2];                     /* complex weight (re, im) of a component of a superposition */
   struct ebb_state_settings *component; /* [components], owned; NULL unless profile is superposition */
   size_t components;
 };
 
 struct ebb_lattice_settings {
-  double volume_max;     /* largest v (not physical volume) of the lattice; 0 = auto */
-  int points;            /* 0 = not given; N: a wall after N sites (wdw: number of grid points) */
+  double volume_max;       /* largest v (not physical volume) of the lattice; 0 = auto */
+  int points;              /* 0 = not given; N: a wall after N sites (wdw: number of grid points) */
   double lnv_min, lnv_max; /* wdw; NAN when not given */
 };
 

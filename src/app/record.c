@@ -48,7 +48,8 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
   PetscCall(ebb_result_root(store, run->settings, run->comm, invocation, model_text));
   PetscCall(ebb_store_set_text(store, "/", "propagator", ebb_method_name(run->method)));
   PetscCall(ebb_result_lattice(store, &run->lattice, &run->constants));
-  PetscCall(ebb_result_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
+  PetscCall(
+      ebb_result_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
   PetscCall(ebb_store_make_scale(store, "/clock/value"));
   PetscCall(ebb_store_set_text(store, "/clock", "kind", run->settings->clock.kind));
   if (o->keep & EBB_KEEP_PROBABILITY)
@@ -64,8 +65,8 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
 
     PetscCall(PetscMalloc1(states, &clock));
     for (hsize_t s = 0; s < states; s++) clock[s] = run->phi[s * (hsize_t)o->every];
-    PetscCall(ebb_result_line(store, "/state/clock", (PetscInt)states, clock, "1/sqrt(G)", "clock values of the stored states",
-                       NULL));
+    PetscCall(ebb_result_line(store, "/state/clock", (PetscInt)states, clock, "1/sqrt(G)",
+                              "clock values of the stored states", NULL));
     PetscCall(ebb_store_make_scale(store, "/state/clock"));
     PetscCall(PetscFree(clock));
     PetscCall(ebb_store_define(store, &(struct ebb_dataset){.path = "/state/psi",
@@ -125,7 +126,8 @@ static PetscErrorCode put_quantiles(struct ebb_store *store, const struct ebb_ru
                           .scale = {"/clock/value", "/quantiles/level"}};
 
   PetscFunctionBegin;
-  PetscCall(ebb_result_line(store, "/quantiles/level", (PetscInt)record->levels, o->quantile, "1", "probability level", NULL));
+  PetscCall(ebb_result_line(store, "/quantiles/level", (PetscInt)record->levels, o->quantile, "1", "probability level",
+                            NULL));
   PetscCall(ebb_store_make_scale(store, "/quantiles/level"));
   PetscCall(ebb_store_put(store, &d, record->quantile));
   d.path = "/quantiles/v_error";
@@ -149,7 +151,7 @@ static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_bounc
   PetscCall(put_value(store, g, "effective_volume", b->effective_volume, "length^3", "<p>/sqrt(2 rho_c)"));
   PetscCall(put_value(store, g, "effective_density", b->effective_density, "1/G^2", "density at the effective bounce"));
   PetscCall(ebb_result_number(store, "/bounce/turning_v", b->turning_v, "1",
-                       "where the grid turns a continuum operator's packet (no property of the continuum)"));
+                              "where the grid turns a continuum operator's packet (no property of the continuum)"));
   PetscCall(ebb_store_set_text(store, g, "verdict", ebb_verdict_names[b->verdict]));
   PetscCall(ebb_store_set_text(store, g, "reason", b->reason));
   PetscCall(ebb_store_set_text(store, g, "estimator", b->estimator));
@@ -163,12 +165,15 @@ static PetscErrorCode put_effective(struct ebb_store *store, const struct ebb_ef
 
   PetscFunctionBegin;
   PetscCall(ebb_result_line(store, "/effective/v", e->m, e->v, "1", "effective trajectory, |v|", clock));
-  PetscCall(ebb_result_line(store, "/effective/v_error", e->m, e->v_error, "1", "absolute error of the effective |v|", clock));
+  PetscCall(ebb_result_line(store, "/effective/v_error", e->m, e->v_error, "1", "absolute error of the effective |v|",
+                            clock));
   PetscCall(ebb_result_line(store, "/effective/b", e->m, e->b, "1", "effective trajectory, b in (0, pi)", clock));
-  PetscCall(ebb_result_line(store, "/effective/b_error", e->m, e->b_error, "1", "absolute error of the effective b", clock));
-  PetscCall(ebb_result_line(store, "/effective/density", e->m, e->density, "1/G^2", "effective trajectory, density", clock));
+  PetscCall(
+      ebb_result_line(store, "/effective/b_error", e->m, e->b_error, "1", "absolute error of the effective b", clock));
+  PetscCall(
+      ebb_result_line(store, "/effective/density", e->m, e->density, "1/G^2", "effective trajectory, density", clock));
   PetscCall(ebb_result_line(store, "/effective/density_error", e->m, e->density_error, "1/G^2",
-                     "absolute error of the effective density", clock));
+                            "absolute error of the effective density", clock));
   PetscFunctionReturn(0);
 }
 
@@ -189,8 +194,8 @@ static PetscErrorCode put_law(struct ebb_store *store, const struct ebb_run *run
                       "2 sd(Re digamma(1 + ik)), bound on |sd(ln v)_+ - sd(ln v)_-|"));
   PetscCall(put_value(store, g, "lnv_sum", law->lnv_sum, "1",
                       "2 <Re digamma(1 + ik)>, limit of ln v(phi) + ln v(-phi) - 2 kappa phi about the bounce"));
-  PetscCall(
-      ebb_result_number(store, "/law/residual", law->residual, "1", "largest relative deviation of the samples from the law"));
+  PetscCall(ebb_result_number(store, "/law/residual", law->residual, "1",
+                              "largest relative deviation of the samples from the law"));
   PetscCall(ebb_store_set_integer(store, g, "exact", exact));
   PetscFunctionReturn(0);
 }
@@ -213,7 +218,7 @@ static PetscErrorCode put_budget(struct ebb_store *store, const struct ebb_budge
     PetscCall(PetscStrlcat(order, ebb_contribution_names[next], sizeof order));
   }
   PetscCall(ebb_result_number(store, "/budget/edge_probability", budget->edge_probability, "1",
-                       "largest probability at v > 0.9 v_max over the clock range"));
+                              "largest probability at v > 0.9 v_max over the clock range"));
   PetscCall(ebb_store_set_text(store, "/budget", "largest", ebb_contribution_names[ebb_budget_largest(budget)]));
   PetscCall(ebb_store_set_text(store, "/budget", "order", order));
   PetscCall(ebb_store_set_text(store, "/budget", "meaning",

@@ -5,6 +5,8 @@
 #include <stddef.h>
 #include <string.h>
 
+/* Tables read by rows. */
+/* clang-format off */
 #define CHOICES(...) ((const char *const[]){__VA_ARGS__, NULL})
 #define ANY           {-INFINITY, INFINITY, true, true}
 #define ABOVE(low)    {low, INFINITY, true, true}
@@ -191,6 +193,7 @@ static const struct ebb_setting rows[] = {
      .range = {0, 1, true, true}, .fallback = "[0.05, 0.5, 0.95]",
      .sentence = "levels of the quantiles of v, strictly ascending"},
 };
+/* clang-format on */
 
 size_t ebb_setting_count(void) { return sizeof rows / sizeof rows[0]; }
 

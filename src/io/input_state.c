@@ -172,7 +172,9 @@ static void read_components(const struct ebb_reader *reader, const struct ebb_gi
   if (list->kind != EBB_YAML_LIST || list->count < 1 || list->count > EBB_COMPONENTS_MAX) {
     ebb_reader_complain(reader, given->origin, "state.components must be a list of 1 to %d profiles, not %s",
                         EBB_COMPONENTS_MAX,
-                        list->kind != EBB_YAML_LIST ? "one value" : list->count < 1 ? "an empty one" : "more");
+                        list->kind != EBB_YAML_LIST ? "one value"
+                        : list->count < 1           ? "an empty one"
+                                                    : "more");
     return;
   }
   state->component = calloc(list->count, sizeof *state->component);

@@ -34,8 +34,8 @@ static inline double ebb_sign_rule_edge(double sector, double (*hop)(double))
   return sector > 2.0 ? hop(sector - 4.0) : 0.0;
 }
 
-/* q = |v| K/B_aps = (8/27)/J^3, J = ||v+1|^{1/3} - |v-1|^{1/3}|, where 1/V is regularised as in Ashtekar, Pawlowski, Singh,
- * Phys. Rev. D 74, 084003 (2006) (from memory); v^2 - 5/9 at large v. */
+/* q = |v| K/B_aps = (8/27)/J^3, J = ||v+1|^{1/3} - |v-1|^{1/3}|, where 1/V is regularised as in Ashtekar, Pawlowski,
+ * Singh, Phys. Rev. D 74, 084003 (2006) (from memory); v^2 - 5/9 at large v. */
 double ebb_inverse_volume_square(double v);
 
 /* Coefficients of 1/v^j in  S(v) = (3/2) v^{2/3} [(v+1)^{1/3} - (v-1)^{1/3}] = 1 + (5/27)... : binomial theorem,

@@ -10,6 +10,8 @@
 #define CLOCK "clock: {from: -1, to: 1}\n"
 #define STATE "state: {profile: gaussian_momentum, momentum: 500, relative_spread: 0.05}\n"
 
+/* A table reads by rows. */
+/* clang-format off */
 static const struct bad_model {
   const char *name, *text;
   size_t line; /* 0: printed without the word line */

@@ -15,8 +15,10 @@ const struct ebb_command ebb_command_check = {
     .name = "check",
     .synopsis = "MODEL",
     .summary = "validate a model and say what a run would do; evolves nothing",
-    .help = "Prints the resolved settings with units, the derived constants, the lattice and why it has that size, the\n"
-            "propagator and why, estimates of memory, file size and time, and the symmetry defect of the assembled operator.",
+    .help =
+        "Prints the resolved settings with units, the derived constants, the lattice and why it has that size, the\n"
+        "propagator and why, estimates of memory, file size and time, and the symmetry defect of the assembled "
+        "operator.",
     .operands_min = 1,
     .operands_max = 1,
     .options = EBB_OPTION_SET | EBB_OPTION_LIBRARY,
@@ -49,13 +51,16 @@ static void print_lattice(const struct ebb_run *run)
   }
   printf("  sites            %" PetscInt_FMT ", v = %g + 4n%s, up to |v| = %.6g\n", n, l->sector,
          l->half ? ", n >= 0" : ", both orientations", fabs(ebb_lattice_v(l, n - 1)));
-  if (run->settings->lattice.points > 0) printf("  because          lattice.points puts a wall there\n");
-  else if (run->settings->lattice.volume_max > 0.0) printf("  because          lattice.volume_max says so\n");
+  if (run->settings->lattice.points > 0)
+    printf("  because          lattice.points puts a wall there\n");
+  else if (run->settings->lattice.volume_max > 0.0)
+    printf("  because          lattice.volume_max says so\n");
   else
-    printf("  because          beyond it lies %.1e of the v^2-weighted probability at the ends of the clock range\n", run->plan.tail);
+    printf("  because          beyond it lies %.1e of the v^2-weighted probability at the ends of the clock range\n",
+           run->plan.tail);
   if (run->plan.n > 0) {
-    printf("  modes            %" PetscInt_FMT " nodes in k from %.4g to %.4g, %s\n", run->plan.n, run->plan.k_low, run->plan.k_high,
-           run->plan.uniform ? "midpoint rule" : "Gauss-Legendre (the packet reaches k = 0)");
+    printf("  modes            %" PetscInt_FMT " nodes in k from %.4g to %.4g, %s\n", run->plan.n, run->plan.k_low,
+           run->plan.k_high, run->plan.uniform ? "midpoint rule" : "Gauss-Legendre (the packet reaches k = 0)");
     printf("  matched at       v = %.6g, where the large-volume series has no term above 1e-17\n",
            ebb_basis_match_volume(run->packet->basis));
   }
@@ -72,13 +77,14 @@ static PetscErrorCode print_defect(const struct ebb_run *run, bool speaks)
     if (speaks) printf("\noperator\n  symmetry defect  0 (diagonal in the waves of the grid)\n");
     PetscFunctionReturn(0);
   }
-  PetscCall(ebb_lattice_make(run->lattice.prescription, run->lattice.sector, PetscMin(run->lattice.sites[0], SAMPLE_SITES),
-                             run->comm, &part));
+  PetscCall(ebb_lattice_make(run->lattice.prescription, run->lattice.sector,
+                             PetscMin(run->lattice.sites[0], SAMPLE_SITES), run->comm, &part));
   PetscCall(ebb_constraint_create(&part, &run->constants, run->comm, &constraint));
   PetscCall(ebb_constraint_symmetry(constraint, &symmetry));
   PetscCall(ebb_constraint_destroy(&constraint));
   if (speaks)
-    printf("\noperator\n  symmetry defect  %.1e of the assembled matrix (largest element %.3g), %.1e of the stencil on random states\n",
+    printf("\noperator\n  symmetry defect  %.1e of the assembled matrix (largest element %.3g), %.1e of the stencil on "
+           "random states\n",
            symmetry.defect, symmetry.largest, symmetry.adjoint);
   PetscFunctionReturn(0);
 }
@@ -98,7 +104,8 @@ static PetscErrorCode report(const struct ebb_invocation *invocation, const stru
   }
   PetscCall(ebb_run_create(settings, folder, PETSC_COMM_WORLD, &run, code));
   if (*code) {
-    if (rank == 0) fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", model, run.problem);
+    if (rank == 0)
+      fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", model, run.problem);
   } else {
     const struct ebb_estimate e = ebb_run_estimate(&run);
 

@@ -14,10 +14,11 @@ const struct ebb_command ebb_command_explain = {
     .name = "explain",
     .synopsis = "NAME",
     .summary = "say everything about one entry of a catalogue or one setting",
-    .help =
-        "NAME is a prescription (slqc), a profile (gaussian_momentum), a clock (scalar), a propagator (modes) or the key\n"
-        "of a setting (gravity.immirzi). For an entry of a catalogue: formula, source and the settings that matter; for a setting:\n"
-        "letter, unit, type, range, default and source.",
+    .help = "NAME is a prescription (slqc), a profile (gaussian_momentum), a clock (scalar), a propagator (modes) or "
+            "the key\n"
+            "of a setting (gravity.immirzi). For an entry of a catalogue: formula, source and the settings that "
+            "matter; for a setting:\n"
+            "letter, unit, type, range, default and source.",
     .operands_min = 1,
     .operands_max = 1,
     .options = EBB_OPTION_BIBTEX,
