@@ -51,7 +51,6 @@ PetscErrorCode ebb_basis_destroy(struct ebb_basis **basis);
 PetscInt ebb_basis_size(const struct ebb_basis *basis);
 const double *ebb_basis_k(const struct ebb_basis *basis);                  /* [size] */
 const struct ebb_mode_info *ebb_basis_info(const struct ebb_basis *basis); /* [size], NULL unless modes */
-double ebb_basis_match_error(const struct ebb_basis *basis); /* size of the first omitted series term, modes */
 double ebb_basis_match_volume(const struct ebb_basis *basis);
 
 /* A cursor standing before site n of an arm. next writes rows n..n+count-1, [count][size], and moves on. */

@@ -12,13 +12,12 @@
 
 /* Exit codes. */
 enum ebb_exit {
-  EBB_EXIT_OK = 0,         /* done, all checks met */
-  EBB_EXIT_VERDICT = 1,    /* done, some verdict not met */
-  EBB_EXIT_USAGE = 2,      /* usage or input problem, nothing computed */
-  EBB_EXIT_LIMIT = 3,      /* a numerical limit was broken; what was computed is saved */
-  EBB_EXIT_FILE = 4,       /* file or HDF5 failure */
-  EBB_EXIT_BUG = 70,       /* a bug in ebbturn */
-  EBB_EXIT_CHECKPOINT = 75 /* stopped at SIGUSR1 or before a time limit, checkpoint written */
+  EBB_EXIT_OK = 0,      /* done, all checks met */
+  EBB_EXIT_VERDICT = 1, /* done, some verdict not met */
+  EBB_EXIT_USAGE = 2,   /* usage or input problem, nothing computed */
+  EBB_EXIT_LIMIT = 3,   /* a numerical limit was broken; what was computed is saved */
+  EBB_EXIT_FILE = 4,    /* file or HDF5 failure */
+  EBB_EXIT_BUG = 70,    /* a bug in ebbturn */
 };
 
 enum { EBB_OVERRIDES_MAX = 64, EBB_OPERANDS_MAX = 4 };

@@ -11,7 +11,7 @@
 static void list_commands(FILE *out)
 {
   for (size_t i = 0; i < ebb_commands(); i++)
-    fprintf(out, "  %-10s %s\n", ebb_command_at(i)->name, ebb_command_at(i)->summary);
+    fprintf(out, "  %-11s %s\n", ebb_command_at(i)->name, ebb_command_at(i)->summary);
 }
 
 void ebb_help_short(FILE *out)
@@ -35,7 +35,6 @@ void ebb_help_program(FILE *out)
                "  3   a numerical limit was broken; what was computed is saved\n"
                "  4   file or HDF5 failure\n"
                "  70  a bug in ebbturn\n"
-               "  75  stopped before the end, checkpoint written\n"
                "\noptions for PETSc and SLEPc follow a bare --; settings: 'ebbturn list settings'\n");
 }
 

@@ -36,8 +36,6 @@ const double *ebb_basis_k(const struct ebb_basis *basis) { return basis->k; }
 
 const struct ebb_mode_info *ebb_basis_info(const struct ebb_basis *basis) { return basis->info; }
 
-double ebb_basis_match_error(const struct ebb_basis *basis) { return basis->match_error; }
-
 double ebb_basis_match_volume(const struct ebb_basis *basis) { return basis->match_volume; }
 
 PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor)

@@ -19,7 +19,7 @@ struct ebb_basis {
   PetscInt n;
   double *k;                  /* [n] */
   struct ebb_mode_info *info; /* [n] or NULL */
-  double match_error, match_volume;
+  double match_volume;
   void *data;
 };
 

@@ -342,7 +342,6 @@ static PetscErrorCode prepare(struct ebb_basis *basis, PetscInt *match)
   *match = (PetscInt)ceil((MATCH_MARGIN * reach - basis->lattice.first[0]) / 4.0);
   if (*match < m->growing) *match = m->growing;
   basis->match_volume = first + 4.0 * (double)*match;
-  basis->match_error = TINY_TERM;
   PetscFunctionReturn(0);
 }
 
