@@ -22,14 +22,18 @@ struct ebb_rows {
   enum ebb_curvature curvature;
   double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
   /* filled by ebb_rows_make */
-  double scale; /* the operator is scale times measure, hop, edge and potential */
-  bool half;    /* v = sector + 4n, n >= 0; false: sector + 4Z */
-  double d1;    /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
+  double scale;                     /* the operator is scale times measure, hop, edge and potential */
+  double volume_unit, volume_power; /* physical volume V = volume_unit |v|^volume_power */
+  double kappa, gap;                /* flat, Lambda = 0, scalar clock: omega^2 = kappa^2 (k^2 + gap) */
+  bool half;                        /* v = sector + 4n, n >= 0; false: sector + 4Z */
+  double d1;                        /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
 };
 
 /* Completes rows whose first seven members are set. Sizes of the cell: V = 2 pi^2 a^3 (closed, the whole three-sphere),
  * V = a^3 (open, a cell of unit volume in the unit hyperbolic metric). */
 void ebb_rows_make(struct ebb_rows *rows);
+/* The flat model with a scalar clock of any prescription, grids included, in units of gamma = lambda = G = 1. */
+struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, double sector);
 /* The rows of a model whose settings are resolved and good, on a volume lattice. */
 struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings);
 
