@@ -67,6 +67,7 @@ PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
   const struct ebb_prescription *p = run->lattice.prescription;
   const struct ebb_samples samples = {run->m,   run->phi,  r->moment[EBB_MOMENT_V_MEAN],
                                       r->slope, r->levels, r->levels ? r->quantile : NULL};
+  const struct ebb_rows rows = ebb_rows_of_settings(run->settings);
   double phi0, v0, sign;
 
   PetscFunctionBegin;
@@ -78,7 +79,6 @@ PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
   phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;
   v0 = r->moment[EBB_MOMENT_V_MEAN][0];
   sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
-  PetscCall(ebb_effective_make(&run->constants, p, run->packet->momentum_mean, phi0, v0, sign, run->m, run->phi,
-                               &r->effective));
+  PetscCall(ebb_effective_make(&rows, run->packet->momentum_mean, phi0, v0, sign, run->m, run->phi, &r->effective));
   PetscFunctionReturn(0);
 }
