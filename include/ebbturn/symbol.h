@@ -13,10 +13,11 @@
 /* How the connection enters, f(b); every one goes like b^2 at small b.
  *   sine       sin^2 b                                   Ashtekar, Pawlowski, Singh, gr-qc/0607039 (from memory)
  *   classical  b^2                                       continuum operators
- *   lorentz    sin^2 b - l sin^4 b, l = 1 + gamma^2       Yang, Ding, Ma, Phys. Lett. B 682, 1 (2009), arXiv:0904.4379
- *   half       4 q (1 + gamma^2 q), q = sin^2(b/2)         Yang, Ding, Ma (2009); Li, Singh, Wang, arXiv:1801.07313
+ *   lorentz    x - (1 + w) x^2, x = sin^2 b                Yang, Ding, Ma, Phys. Lett. B 682, 1 (2009), arXiv:0904.4379
+ *   half       4 x (1 + w x), x = sin^2(b/2)               Yang, Ding, Ma (2009); Li, Singh, Wang, arXiv:1801.07313
  *   connection (sin b - D)^2, D = lambda/a                 Corichi, Karami, Phys. Rev. D 84, 044003 (2011)
- * The last four papers were not read; classical limits and bounds were verified. */
+ * w = gamma^2 times the weight of the Lorentzian term. The last four papers were not read; classical limits and bounds
+ * were verified. */
 enum ebb_symbol_kind {
   EBB_SYMBOL_SINE,
   EBB_SYMBOL_CLASSICAL,
@@ -33,7 +34,7 @@ struct ebb_symbol {
   enum ebb_curvature curvature;
   bool root;
   double scale, growth;
-  double lorentz; /* l */
+  double part;    /* w */
   double square;  /* gamma^2 */
   double d1;      /* D = d1 v^{-1/3} */
   double s;       /* Lambda over Lambda_c of the constants */
@@ -70,8 +71,8 @@ void ebb_symbol_flow(const struct ebb_symbol *symbol, double momentum, double ln
 double ebb_symbol_violation(const struct ebb_symbol *symbol, double momentum, double lnv, double b);
 
 /* Largest density of total energy (matter, Lambda and curvature's share) that a model reaches at volume v; INFINITY for
- * the continuum. rho_c; rho_c/(4(1 + gamma^2)) (lorentz); 4(1 + gamma^2) rho_c (half); rho_c[(1 -+ D)^2 + gamma^2 D^2]
- * (connection; second: the other one). v matters for the connection and where steps are not of equal volume. */
+ * the continuum. rho_c; rho_c/(4(1 + w)) (lorentz); 4(1 + w) rho_c (half); rho_c[(1 -+ D)^2 + gamma^2 D^2] (connection;
+ * second: the other one). v matters for the connection and where steps are not of equal volume. */
 double ebb_symbol_critical_density(const struct ebb_symbol *symbol, double v, bool second);
 /* Lambda above which a large universe is impossible, 8 pi G times that density; INFINITY for the continuum, NAN where
  * steps are not of equal volume (every positive Lambda bounds the volume there). */

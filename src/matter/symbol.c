@@ -9,6 +9,7 @@ static enum ebb_symbol_kind kind_of(const struct ebb_rows *rows)
   const char *name = rows->prescription->name;
 
   if (rows->prescription->continuum) return EBB_SYMBOL_CLASSICAL;
+  if (rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION) return EBB_SYMBOL_CONNECTION;
   if (!strcmp(name, "mlqc1")) return EBB_SYMBOL_LORENTZ;
   if (!strcmp(name, "mlqc2")) return EBB_SYMBOL_HALF;
   return EBB_SYMBOL_SINE;
@@ -29,7 +30,7 @@ struct ebb_symbol ebb_symbol_make(const struct ebb_rows *rows)
                               .root = rows->clock->root,
                               .scale = rows->scale,
                               .growth = growth,
-                              .lorentz = 1.0 + square,
+                              .part = square,
                               .square = square,
                               .d1 = rows->d1,
                               .s = rows->s,
@@ -61,11 +62,18 @@ static double excess(double d, double *slope)
   return q * q * (1.0 / 3.0 - q * (2.0 / 45.0 - q * (1.0 / 315.0 - q * 2.0 / 14175.0)));
 }
 
-/* f(b) and its derivatives. */
+/* f(b) = a x - c x^2 and its derivatives for x = sin^2(m b/2). */
+static struct ebb_symbol_value quadratic(double a, double c, double m, double b)
+{
+  const double sine = sin(0.5 * m * b), x = sine * sine, slope = 0.5 * m * sin(m * b);
+
+  return (struct ebb_symbol_value){x * (a - c * x), 0.0, (a - 2.0 * c * x) * slope,
+                                   (a - 2.0 * c * x) * 0.5 * m * m * cos(m * b) - 2.0 * c * slope * slope};
+}
+
 static struct ebb_symbol_value connection(const struct ebb_symbol *y, double d, double b)
 {
-  const double sine = sin(b), double_sine = sin(2.0 * b), double_cosine = cos(2.0 * b);
-  const double q = sin(0.5 * b) * sin(0.5 * b), l = y->lorentz, off = sine - d;
+  const double off = sin(b) - d;
 
   switch (y->kind) {
   case EBB_SYMBOL_SINE:
@@ -73,17 +81,14 @@ static struct ebb_symbol_value connection(const struct ebb_symbol *y, double d, 
   case EBB_SYMBOL_CLASSICAL:
     return (struct ebb_symbol_value){b * b, 0.0, 2.0 * b, 2.0};
   case EBB_SYMBOL_LORENTZ:
-    return (struct ebb_symbol_value){
-        sine * sine * (1.0 - l * sine * sine), 0.0, (1.0 - 2.0 * l * sine * sine) * double_sine,
-        2.0 * (1.0 - 2.0 * l * sine * sine) * double_cosine - 2.0 * l * double_sine * double_sine};
+    return quadratic(1.0, 1.0 + y->part, 2.0, b);
   case EBB_SYMBOL_HALF:
-    return (struct ebb_symbol_value){4.0 * q * (1.0 + y->square * q), 0.0, 2.0 * (1.0 + 2.0 * y->square * q) * sine,
-                                     2.0 * (1.0 + 2.0 * y->square * q) * cos(b) + 2.0 * y->square * sine * sine};
+    return quadratic(4.0, -4.0 * y->part, 1.0, b);
   case EBB_SYMBOL_CONNECTION:
     return (struct ebb_symbol_value){off * off, 2.0 / 3.0 * d * off, 2.0 * off * cos(b),
-                                     2.0 * cos(b) * cos(b) - 2.0 * off * sine};
+                                     2.0 * cos(b) * cos(b) - 2.0 * off * sin(b)};
   }
-  return (struct ebb_symbol_value){sine * sine, 0.0, double_sine, 2.0 * double_cosine};
+  return quadratic(1.0, 0.0, 2.0, b);
 }
 
 struct ebb_symbol_value ebb_symbol_at(const struct ebb_symbol *y, double v, double b)
@@ -176,10 +181,10 @@ double ebb_symbol_critical_density(const struct ebb_symbol *y, double v, bool se
   switch (y->kind) {
   case EBB_SYMBOL_CLASSICAL:
     return INFINITY;
-  case EBB_SYMBOL_LORENTZ: /* at sin^2 b = 1/(2l), or at sin^2 b = 1 where that is above it */
-    return y->lorentz > 0.5 ? local / (4.0 * y->lorentz) : local * (1.0 - y->lorentz);
-  case EBB_SYMBOL_HALF:
-    return local * 4.0 * (1.0 + y->square);
+  case EBB_SYMBOL_LORENTZ: /* at x = 1/(2(1 + w)), or at x = 1 where that is above it */
+    return y->part > -0.5 ? local / (4.0 * (1.0 + y->part)) : -local * y->part;
+  case EBB_SYMBOL_HALF: /* the same for q = -1/(2w) */
+    return y->part < -0.5 ? -local / y->part : 4.0 * (1.0 + y->part) * local;
   case EBB_SYMBOL_CONNECTION:
     return local * (off * off + y->square * d * d);
   case EBB_SYMBOL_SINE:

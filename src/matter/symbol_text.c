@@ -16,11 +16,11 @@ static const struct { const char *name, *text; } table[] = {
     {"smmo", EBB_FRIEDMANN},
     {"wdw", "H^2 = (8 pi G/3) rho: Friedmann's own equation, no critical density, no bounce"},
     {"wdw_lattice", "H^2 = (8 pi G/3) rho: Friedmann's own equation, no critical density, no bounce"},
-    {"mlqc1", "H^2 = (8 pi G rho_c/3) s (1 - s) (1 - rho/rho_I),  s = sin^2 b,  rho = rho_c s [1 - (1 + gamma^2) s],\n"
-              "s = [1 -+ sqrt(1 - rho/rho_I)]/(2(1 + gamma^2)): - classical, + de Sitter branch,\n"
-              "critical density rho_I = rho_c/(4(1 + gamma^2)), Lambda_eff = 3/(lambda^2 (1 + gamma^2)^2) beyond it"},
-    {"mlqc2", "H^2 = (32 pi G rho_c/3) q (1 - q) (1 + gamma^2 rho/rho_c),  q = sin^2(b/2),  rho = 4 rho_c q (1 + gamma^2 q),\n"
-              "critical density 4(1 + gamma^2) rho_c"},
+    {"mlqc1", "H^2 = (8 pi G rho_c/3) x (1 - x) (1 - rho/rho_I),  x = sin^2 b,  rho = rho_c x [1 - (1 + w) x],\n"
+              "x = [1 -+ sqrt(1 - rho/rho_I)]/(2(1 + w)): - classical, + de Sitter branch;  w = omega gamma^2,\n"
+              "critical density rho_I = rho_c/(4(1 + w)), Lambda_eff = 3 w/(gamma^2 lambda^2 (1 + w)^2) beyond it"},
+    {"mlqc2", "H^2 = (32 pi G rho_c/3) q (1 - q) (1 + w rho/rho_c),  q = sin^2(b/2),  rho = 4 rho_c q (1 + w q),\n"
+              "w = omega gamma^2,  critical density 4(1 + w) rho_c"},
     {"mu0", "H^2 = (8 pi G/3) rho (1 - rho/rho_c(V)),  rho_c(V) = 3/(8 pi G gamma^2 mu0^2 V^{2/3}): the critical density\n"
             "depends on the state, sqrt(2) [3/(8 pi G gamma^2 mu0^2)]^{3/2}/p_phi at the bounce"},
     {"refined", "H^2 = (8 pi G/3) rho (1 - rho/rho_c(V)),  rho_c(V) = 3/(8 pi G gamma^2 lambda(V)^2),  lambda(V) ~ V^{(1-2x)/3}:\n"

@@ -14,8 +14,9 @@ enum { BISECTIONS = 80, NEWTONS = 3 };
  * this v. */
 static double stationary(const struct ebb_symbol *y, int which, double v)
 {
-  const double d = y->d1 != 0.0 ? y->d1 / cbrt(v) : 0.0;
-  const double inner = y->lorentz > 0.5 ? asin(sqrt(0.5 / y->lorentz)) : NAN;
+  const double d = y->d1 != 0.0 ? y->d1 / cbrt(v) : 0.0, w = y->part;
+  const double inner = w > -0.5 ? asin(sqrt(0.5 / (1.0 + w))) : NAN; /* lorentz, x = 1/(2(1 + w)) */
+  const double half = w < -0.5 ? 2.0 * asin(sqrt(-0.5 / w)) : NAN;   /* half, x = -1/(2w) */
 
   switch (y->kind) {
   case EBB_SYMBOL_SINE:
@@ -25,7 +26,7 @@ static double stationary(const struct ebb_symbol *y, int which, double v)
   case EBB_SYMBOL_LORENTZ:
     return which == 0 ? -inner : which == 1 ? inner : which == 2 ? 0.5 * EBB_PI : 0.0;
   case EBB_SYMBOL_HALF:
-    return which == 0 ? EBB_PI : which == 1 ? 0.0 : NAN;
+    return which == 0 ? -half : which == 1 ? half : which == 2 ? EBB_PI : 0.0;
   case EBB_SYMBOL_CONNECTION:
     if (which < 2) return which == 0 ? 0.5 * EBB_PI : -0.5 * EBB_PI;
     return !(d <= 1.0) ? NAN : which == 2 ? asin(d) : EBB_PI - asin(d);
@@ -124,11 +125,11 @@ double ebb_symbol_branch(const struct ebb_symbol *y, double momentum, double v, 
   case EBB_SYMBOL_CLASSICAL:
     b = sqrt(f);
     break;
-  case EBB_SYMBOL_LORENTZ: /* the lesser root of s - l s^2 = f */
-    b = asin(sqrt(2.0 * f / (1.0 + sqrt(1.0 - 4.0 * y->lorentz * f))));
+  case EBB_SYMBOL_LORENTZ: /* the lesser root of x - (1 + w) x^2 = f */
+    b = asin(sqrt(2.0 * f / (1.0 + sqrt(1.0 - 4.0 * (1.0 + y->part) * f))));
     break;
   case EBB_SYMBOL_HALF:
-    b = 2.0 * asin(sqrt(0.5 * f / (1.0 + sqrt(1.0 + y->square * f))));
+    b = 2.0 * asin(sqrt(0.5 * f / (1.0 + sqrt(1.0 + y->part * f))));
     break;
   case EBB_SYMBOL_CONNECTION:
     b = asin(d + sqrt(f));
