@@ -5,7 +5,7 @@
 #ifndef EBBTURN_LATTICE_H
 #define EBBTURN_LATTICE_H
 
-#include "ebbturn/operators.h"
+#include "ebbturn/rows.h"
 
 #include <petscsys.h>
 
@@ -13,6 +13,7 @@
  * Arm 1 (left; empty on half lattices): v = -(4 - sector) - 4n, global index sites[1] - 1 - n.
  * On both arms |v| = first + 4n and the operator reads alike in |v|; the crossing link joins the two first sites. */
 struct ebb_lattice {
+  struct ebb_rows rows; /* the model; on a grid in ln v only prescription and constants count */
   const struct ebb_prescription *prescription;
   double sector;
   bool half;           /* one arm */
@@ -24,6 +25,10 @@ struct ebb_lattice {
   PetscInt begin, end; /* this rank's global indices [begin, end) */
 };
 
+/* The sites of a model, `sites` per arm. Errors: a grid prescription, a sector out of range, fewer than two sites. */
+PetscErrorCode ebb_lattice_make_model(const struct ebb_rows *rows, PetscInt sites, MPI_Comm comm,
+                                      struct ebb_lattice *lattice);
+/* The same for the flat model with a scalar clock and G = 1. */
 PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, double sector, PetscInt sites,
                                 MPI_Comm comm, struct ebb_lattice *lattice);
 PetscErrorCode ebb_lattice_make_grid(const struct ebb_prescription *prescription, double lnv_min, double lnv_max,

@@ -27,14 +27,18 @@ struct ebb_rows {
   enum ebb_curvature curvature;
   double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
   /* filled by ebb_rows_make */
-  double scale; /* the operator is scale times measure, hop, edge and potential */
-  bool half;    /* v = sector + 4n, n >= 0; false: sector + 4Z */
-  double d1;    /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
+  double scale;                     /* the operator is scale times measure, hop, edge and potential */
+  double volume_unit, volume_power; /* physical volume V = volume_unit |v|^volume_power */
+  double kappa, gap;                /* flat, Lambda = 0, scalar clock: omega^2 = kappa^2 (k^2 + gap) */
+  bool half;                        /* v = sector + 4n, n >= 0; false: sector + 4Z */
+  double d1;                        /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
 };
 
 /* Completes rows whose first seven members are set. Sizes of the cell: V = 2 pi^2 a^3 (closed, the whole three-sphere),
  * V = a^3 (open, a cell of unit volume in the unit hyperbolic metric). */
 void ebb_rows_make(struct ebb_rows *rows);
+/* The flat model with a scalar clock of any prescription, grids included, in units of gamma = lambda = G = 1. */
+struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, double sector);
 /* The rows of a model whose settings are resolved and good, on a volume lattice. */
 struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings);
 
@@ -47,6 +51,9 @@ double ebb_rows_edge(const struct ebb_rows *rows); /* C below the first site of 
  * Vandersloot, Phys. Rev. D 75, 024035 (2007), gr-qc/0612104); open: U = -gamma^2 D^2 (Vandersloot, Phys. Rev. D 75,
  * 023523 (2007), gr-qc/0612070). Forms from memory; their effective limits were verified. */
 double ebb_rows_potential(const struct ebb_rows *rows, double v);
+
+/* V/volume_unit at a site, |v|^volume_power. */
+double ebb_rows_volume(const struct ebb_rows *rows, double v);
 
 /* Matrix elements <v|.|v> and <v|.|v+4>, scale included. */
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v);
@@ -61,6 +68,10 @@ enum ebb_nature {
   EBB_NATURE_FAMILY,      /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
   EBB_NATURE_OVERCRITICAL /* Lambda >= Lambda_c: no positive spectrum */
 };
+/* The flat model with a scalar clock and no cosmological constant: a continuum of generalised eigenfunctions. */
+bool ebb_rows_is_flat(const struct ebb_rows *rows);
+/* True where there is anything on the diagonal beside the flux form. */
+bool ebb_rows_has_potential(const struct ebb_rows *rows);
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows);
 
 /* |v| beyond which eigenfunctions of a low eigenvalue of a discrete operator have fallen by exp(-depth): psi ~

@@ -11,8 +11,23 @@ void ebb_rows_make(struct ebb_rows *rows)
   const double cell = closed ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
 
   rows->scale = rows->clock->scale(c);
-  rows->half = ebb_prescription_half(rows->prescription, rows->sector);
+  rows->volume_unit = c->volume_unit;
+  rows->volume_power = 1.0;
+  rows->kappa = c->kappa;
+  rows->gap = 0.0;
+  rows->half = rows->prescription->grid || ebb_prescription_half(rows->prescription, rows->sector);
   rows->d1 = rows->curvature == EBB_CURVATURE_NONE ? 0.0 : c->polymer_scale * cbrt(cell / c->volume_unit);
+}
+
+struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, double sector)
+{
+  struct ebb_rows rows = {.prescription = prescription,
+                          .clock = ebb_clock_select("scalar", ""),
+                          .constants = ebb_constants_make(1.0, 1.0, 1.0),
+                          .sector = sector};
+
+  ebb_rows_make(&rows);
+  return rows;
 }
 
 static enum ebb_curvature curvature_find(const char *name)
@@ -64,6 +79,21 @@ double ebb_rows_potential(const struct ebb_rows *rows, double v)
   if (rows->p_phi != 0.0 && clock->kinetic)
     value -= rows->p_phi * rows->p_phi * clock->kinetic(&rows->constants, v) / rows->scale;
   return value;
+}
+
+bool ebb_rows_has_potential(const struct ebb_rows *rows)
+{
+  return rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE || (rows->p_phi != 0.0 && rows->clock->kinetic);
+}
+
+bool ebb_rows_is_flat(const struct ebb_rows *rows)
+{
+  return !strcmp(rows->clock->name, "scalar") && !ebb_rows_has_potential(rows);
+}
+
+double ebb_rows_volume(const struct ebb_rows *rows, double v)
+{
+  return rows->volume_power == 1.0 ? fabs(v) : pow(fabs(v), rows->volume_power);
 }
 
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v)

@@ -35,8 +35,8 @@ struct ebb_symbol ebb_symbol_make(const struct ebb_rows *rows)
                               .d1 = rows->d1,
                               .s = rows->s,
                               .p_phi = rows->p_phi,
-                              .volume_unit = c->volume_unit,
-                              .volume_power = 1.0,
+                              .volume_unit = rows->volume_unit,
+                              .volume_power = rows->volume_power,
                               .critical = c->critical_density,
                               .newton = c->newton};
 

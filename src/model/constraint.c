@@ -10,18 +10,15 @@ enum { FEWEST_SITES = 2, RANDOM_PAIRS = 3 };
 
 struct ebb_constraint {
   struct ebb_lattice lattice;
-  double theta_scale;
-  struct ebb_rows rows; /* what the stencil reads; the matrix is assembled from the prescription's elements instead */
+  struct ebb_rows rows;
+  struct ebb_stencil stencil; /* the matrix is assembled from the elements of rows instead */
   struct ebb_operator op;
 };
 
 /* theta(v, v) and theta(v, v + 4) of a global row; the wall keeps the last diagonal and drops the hop beyond. */
 static double diagonal(const struct ebb_constraint *c, PetscInt row)
 {
-  const struct ebb_lattice *lattice = &c->lattice;
-
-  return c->theta_scale *
-         ebb_prescription_diagonal(lattice->prescription, lattice->half, lattice->sector, ebb_lattice_v(lattice, row));
+  return ebb_rows_diagonal(&c->rows, ebb_lattice_v(&c->lattice, row));
 }
 
 static double above(const struct ebb_constraint *c, PetscInt row)
@@ -29,28 +26,32 @@ static double above(const struct ebb_constraint *c, PetscInt row)
   const struct ebb_lattice *lattice = &c->lattice;
 
   if (row < 0 || row + 1 >= ebb_lattice_size(lattice)) return 0.0;
-  return c->theta_scale * ebb_prescription_offdiagonal(lattice->prescription, ebb_lattice_v(lattice, row));
+  return ebb_rows_offdiagonal(&c->rows, ebb_lattice_v(lattice, row));
 }
 
 /* Scales and links of the flux form. Below the first site of a half lattice stands the edge weight, with u = 0. */
 static void fill_rows(struct ebb_constraint *c)
 {
   const struct ebb_lattice *lattice = &c->lattice;
-  const struct ebb_prescription *p = lattice->prescription;
+  struct ebb_stencil *s = &c->stencil;
 
   for (PetscInt i = lattice->begin - 1; i <= lattice->end; i++) {
     const PetscInt at = i - lattice->begin + 1;
     const double v = ebb_lattice_v(lattice, i);
 
-    c->rows.scale[at] = i >= 0 ? sqrt(c->theta_scale / p->measure(v)) : 0.0; /* unused there; B(0) may vanish */
-    if (i >= lattice->begin) c->rows.link[at - 1] = i == 0 && lattice->half ? lattice->edge : p->hop(v - 4.0);
+    s->scale[at] =
+        i >= 0 ? sqrt(c->rows.scale / ebb_rows_measure(&c->rows, v)) : 0.0; /* unused there; B(0) may vanish */
+    if (i >= lattice->begin)
+      s->link[at - 1] = i == 0 && lattice->half ? lattice->edge : ebb_rows_hop(&c->rows, v - 4.0);
+    if (s->potential && i >= lattice->begin && i < lattice->end)
+      s->potential[at - 1] = c->rows.scale * ebb_rows_potential(&c->rows, v);
   }
 }
 
 /* Gershgorin's discs of all rows. */
 static PetscErrorCode bound(struct ebb_constraint *c)
 {
-  double ends[2] = {-INFINITY, -INFINITY}; /* -low, high */
+  double ends[3] = {-INFINITY, -INFINITY, -INFINITY}; /* -low, high, -least potential */
 
   PetscFunctionBegin;
   for (PetscInt row = c->lattice.begin; row < c->lattice.end; row++) {
@@ -58,14 +59,17 @@ static PetscErrorCode bound(struct ebb_constraint *c)
 
     ends[0] = fmax(ends[0], radius - centre);
     ends[1] = fmax(ends[1], radius + centre);
+    ends[2] = fmax(ends[2], -ebb_rows_potential(&c->rows, ebb_lattice_v(&c->lattice, row)));
   }
-  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, ends, 2, MPI_DOUBLE, MPI_MAX, c->op.comm));
-  c->op.low = fmax(-ends[0], 0.0); /* a wall only removes hops from the positive form sum C |x(v+4) - x(v)|^2 */
+  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, ends, 3, MPI_DOUBLE, MPI_MAX, c->op.comm));
+  c->op.low = -ends[0];
+  /* a wall only removes hops from the positive form sum C |x(v+4) - x(v)|^2 */
+  if (ends[2] <= 0.0) c->op.low = fmax(c->op.low, 0.0);
   c->op.high = ends[1];
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode neighbours(MPI_Comm comm, struct ebb_rows *rows)
+static PetscErrorCode neighbours(MPI_Comm comm, struct ebb_stencil *rows)
 {
   PetscMPIInt rank, size;
 
@@ -98,10 +102,14 @@ PetscErrorCode ebb_constraint_create(const struct ebb_lattice *lattice, const st
                                 .local = lattice->end - lattice->begin,
                                 .apply = ebb_stencil_apply,
                                 .recur = ebb_stencil_recur,
-                                .data = &c->rows};
-  c->theta_scale = constants->theta_scale;
-  PetscCall(PetscMalloc2(c->op.local + 2, &c->rows.scale, c->op.local + 1, &c->rows.link));
-  PetscCall(neighbours(comm, &c->rows));
+                                .data = &c->stencil};
+  c->rows = lattice->rows;
+  c->rows.constants = *constants;
+  ebb_rows_make(&c->rows);
+  c->op.linear = !c->rows.clock->root;
+  PetscCall(PetscMalloc2(c->op.local + 2, &c->stencil.scale, c->op.local + 1, &c->stencil.link));
+  if (ebb_rows_has_potential(&c->rows)) PetscCall(PetscMalloc1(c->op.local, &c->stencil.potential));
+  PetscCall(neighbours(comm, &c->stencil));
   fill_rows(c);
   PetscCall(bound(c));
   PetscFunctionReturn(0);
@@ -111,7 +119,8 @@ PetscErrorCode ebb_constraint_destroy(struct ebb_constraint **constraint)
 {
   PetscFunctionBegin;
   if (!*constraint) PetscFunctionReturn(0);
-  PetscCall(PetscFree2((*constraint)->rows.scale, (*constraint)->rows.link));
+  PetscCall(PetscFree2((*constraint)->stencil.scale, (*constraint)->stencil.link));
+  PetscCall(PetscFree((*constraint)->stencil.potential));
   PetscCall(PetscFree(*constraint));
   PetscFunctionReturn(0);
 }

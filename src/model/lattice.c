@@ -16,9 +16,12 @@ static PetscErrorCode split(struct ebb_lattice *lattice, MPI_Comm comm)
   PetscFunctionReturn(0);
 }
 
-PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, double sector, PetscInt sites,
-                                MPI_Comm comm, struct ebb_lattice *lattice)
+PetscErrorCode ebb_lattice_make_model(const struct ebb_rows *rows, PetscInt sites, MPI_Comm comm,
+                                      struct ebb_lattice *lattice)
 {
+  const struct ebb_prescription *prescription = rows->prescription;
+  const double sector = rows->sector;
+
   PetscFunctionBegin;
   PetscCheck(prescription && !prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG,
              "not a volume-lattice prescription");
@@ -26,18 +29,29 @@ PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, dou
              sector);
   PetscCheck(sites > 1, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
              "a lattice needs two sites or more, got %" PetscInt_FMT, sites);
-  *lattice = (struct ebb_lattice){.prescription = prescription, .sector = sector};
-  lattice->half = ebb_prescription_half(prescription, sector);
+  *lattice = (struct ebb_lattice){.rows = *rows, .prescription = prescription, .sector = sector, .half = rows->half};
   lattice->first[0] = sector;
   lattice->sites[0] = sites;
   if (lattice->half)
-    lattice->edge = prescription->edge(sector);
+    lattice->edge = ebb_rows_edge(rows);
   else {
     lattice->first[1] = 4.0 - sector;
     lattice->sites[1] = sites;
-    lattice->cross = prescription->hop(sector - 4.0);
+    lattice->cross = ebb_rows_hop(rows, sector - 4.0);
   }
   PetscCall(split(lattice, comm));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, double sector, PetscInt sites,
+                                MPI_Comm comm, struct ebb_lattice *lattice)
+{
+  PetscFunctionBegin;
+  PetscCheck(prescription && !prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG,
+             "not a volume-lattice prescription");
+  const struct ebb_rows rows = ebb_rows_flat(prescription, sector);
+
+  PetscCall(ebb_lattice_make_model(&rows, sites, comm, lattice));
   PetscFunctionReturn(0);
 }
 
@@ -48,7 +62,8 @@ PetscErrorCode ebb_lattice_make_grid(const struct ebb_prescription *prescription
   PetscCheck(prescription && prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "not a grid prescription");
   PetscCheck(points > 1 && lnv_max > lnv_min, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
              "a grid needs lnv_max above lnv_min and two points or more");
-  *lattice = (struct ebb_lattice){.prescription = prescription, .half = true, .lnv_min = lnv_min};
+  *lattice = (struct ebb_lattice){
+      .rows = ebb_rows_flat(prescription, 4.0), .prescription = prescription, .half = true, .lnv_min = lnv_min};
   lattice->sites[0] = points;
   lattice->dx = (lnv_max - lnv_min) / (double)points; /* periodic: lnv_max is lnv_min again */
   PetscCall(split(lattice, comm));

@@ -25,7 +25,7 @@ struct halo {
 
 static PetscErrorCode halo_begin(const struct ebb_operator *op, const double complex x[], struct halo *halo)
 {
-  const struct ebb_rows *rows = op->data;
+  const struct ebb_stencil *rows = op->data;
   const PetscInt last = op->local - 1;
 
   PetscFunctionBegin;
@@ -66,6 +66,13 @@ static void apply_range(PetscInt n, const double *restrict s, const double *rest
   for (PetscInt i = 0; i < n; i++) y[i] = flow_next(&flow, s + i, c + i, x + i);
 }
 
+/* y += a U x; a pass of its own, which flat models do not pay for. */
+static void add_potential(PetscInt n, double a, const double *restrict potential, const pair *restrict x,
+                          pair *restrict y)
+{
+  for (PetscInt i = 0; i < n; i++) y[i] += a * potential[i] * x[i];
+}
+
 /* z <- a Theta x + b x - z */
 static void recur_range(PetscInt n, double a, double b, const double *restrict s, const double *restrict c,
                         const pair *restrict x, pair *restrict z)
@@ -92,9 +99,21 @@ static void tally_range(PetscInt n, double a, double b, const double *restrict s
   }
 }
 
+/* What a U x adds to the sums of a tally that were taken without it. */
+static void add_tally(PetscInt n, double a, const double potential[], const double complex x[],
+                      const struct ebb_tally *tally)
+{
+  for (PetscInt i = 0; i < n; i++) {
+    const double complex extra = a * potential[i] * x[i];
+
+    tally->p[i] += tally->p_weight[1] * extra;
+    tally->q[i] += I * tally->q_weight[1] * extra;
+  }
+}
+
 PetscErrorCode ebb_stencil_apply(const struct ebb_operator *op, const double complex x[], double complex y[])
 {
-  const struct ebb_rows *rows = op->data;
+  const struct ebb_stencil *rows = op->data;
   const PetscInt last = op->local - 1;
   struct halo halo;
 
@@ -106,11 +125,12 @@ PetscErrorCode ebb_stencil_apply(const struct ebb_operator *op, const double com
 
   apply_range(1, rows->scale + 1, rows->link, (const pair *)(first + 1), (pair *)y);
   apply_range(1, rows->scale + 1 + last, rows->link + last, (const pair *)(end + 1), (pair *)(y + last));
+  if (rows->potential) add_potential(op->local, 1.0, rows->potential, (const pair *)x, (pair *)y);
   PetscFunctionReturn(0);
 }
 
 /* n sites from `from` on; x stands at the first of them. */
-static void recur_sites(const struct ebb_rows *rows, PetscInt from, PetscInt n, double a, double b,
+static void recur_sites(const struct ebb_stencil *rows, PetscInt from, PetscInt n, double a, double b,
                         const double complex *x, double complex *z, const struct ebb_tally *tally)
 {
   const double *s = rows->scale + 1 + from, *c = rows->link + from;
@@ -125,7 +145,7 @@ static void recur_sites(const struct ebb_rows *rows, PetscInt from, PetscInt n, 
 PetscErrorCode ebb_stencil_recur(const struct ebb_operator *op, double scale, double shift, const double complex x[],
                                  double complex z[], const struct ebb_tally *tally)
 {
-  const struct ebb_rows *rows = op->data;
+  const struct ebb_stencil *rows = op->data;
   const PetscInt last = op->local - 1;
   const double a = 2.0 * scale, b = 2.0 * shift;
   struct halo halo;
@@ -138,5 +158,9 @@ PetscErrorCode ebb_stencil_recur(const struct ebb_operator *op, double scale, do
 
   recur_sites(rows, 0, 1, a, b, first + 1, z, tally);
   recur_sites(rows, last, 1, a, b, end + 1, z, tally);
+  if (rows->potential) {
+    add_potential(op->local, a, rows->potential, (const pair *)x, (pair *)z);
+    if (tally) add_tally(op->local, a, rows->potential, x, tally);
+  }
   PetscFunctionReturn(0);
 }
