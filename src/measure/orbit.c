@@ -119,6 +119,21 @@ static void find_end(struct ebb_orbit *o, double lnv_before, double rate_before)
     o->ended = true;
 }
 
+/* Back to the level set, along its gradient in (ln v, ln b): where a large volume balances two terms, an error of the
+ * integrator would grow like v^growth on the way back. */
+static void mend(struct ebb_orbit *o)
+{
+  const double v = exp(o->y[0]), b = o->y[1];
+  const struct ebb_symbol_value value = ebb_symbol_at(&o->symbol, v, b);
+  const double along_v = o->symbol.growth * value.f + value.f_x, along_b = b * value.f_b;
+  const double off = (value.f - ebb_symbol_level(&o->symbol, o->p, v)) / (along_v * along_v + along_b * along_b);
+
+  if (!isfinite(off)) return;
+  o->y[0] -= off * along_v;
+  o->y[1] -= off * along_b * b;
+  (void)gsl_odeiv2_evolve_reset(o->evolve); /* forget the rates of the old point */
+}
+
 int ebb_orbit_step(struct ebb_orbit *o, double until)
 {
   const double half = 0.5 * o->symbol.period, lnv = o->y[0], rate = o->rate[0];
@@ -131,6 +146,7 @@ int ebb_orbit_step(struct ebb_orbit *o, double until)
   if (status != GSL_SUCCESS) return status;
   if (o->y[1] > half) o->y[1] -= o->symbol.period;
   if (o->y[1] < -half) o->y[1] += o->symbol.period;
+  mend(o);
   ebb_symbol_flow(&o->symbol, o->p, o->y[0], o->y[1], o->rate);
   find_end(o, lnv, rate);
   return GSL_SUCCESS;

@@ -42,8 +42,8 @@ EFFECTIVE_TEST(dust_volume_is_a_parabola)
 }
 
 /* A scalar beside dust: V_b = [E + sqrt(E^2 + 2 rho_c p^2)]/(2 rho_c), the root of E/V + p^2/(2 V^2) = rho_c. Between
- * polymer scales 0.5, 1, 2, 4, 8 its slope goes from that of the scalar, 1, to that of dust, 2: 1.070, 1.139, 1.269, 1.484
- * for p = 5 E (recomputed independently; the slope depends on p/E alone). */
+ * polymer scales 0.5, 1, 2, 4, 8 its slope goes from that of the scalar, 1, to that of dust,
+ * 2: 1.070, 1.139, 1.269, 1.484 for p = 5 E (recomputed independently; the slope depends on p/E alone). */
 EFFECTIVE_TEST(dust_with_a_scalar_interpolates_between_their_slopes)
 {
   static const char *const printed[] = {"1.070", "1.139", "1.269", "1.484"};
@@ -67,8 +67,8 @@ EFFECTIVE_TEST(dust_with_a_scalar_interpolates_between_their_slopes)
   }
 }
 
-/* dphi/dT = p_phi/V along a dust orbit, from the symbol: -dh/dp_phi at fixed v, b. The sign of p^2/(2V) in the symbol and
- * its size are checked by differencing. */
+/* dphi/dT = p_phi/V along a dust orbit, from the symbol: -dh/dp_phi at fixed v, b. The sign of p^2/(2V) in the symbol
+ * and its size are checked by differencing. */
 EFFECTIVE_TEST(scalar_beside_dust_has_its_kinetic_energy)
 {
   struct ebb_rows rows = ebb_test_effective_rows("slqc", "dust_symmetric_sqrt", NEW_GAP);
@@ -81,8 +81,8 @@ EFFECTIVE_TEST(scalar_beside_dust_has_its_kinetic_energy)
                  p * p / (2.0 * volume), exact(ebb_symbol_h(&without, v, b, NULL, NULL)));
 }
 
-/* A second massless scalar: sqrt(Theta - p2^2) moves in phi1 as Theta alone does in the phase p1 phi1 + p2 phi2, so v = v_b
- * cosh(kappa phi1 omega/p1), omega^2 = p1^2 + p2^2 (flat two-field model, own solution). */
+/* A second massless scalar: sqrt(Theta - p2^2) moves in phi1 as Theta alone does in the phase p1 phi1 + p2 phi2, so v =
+ * v_b cosh(kappa phi1 omega/p1), omega^2 = p1^2 + p2^2 (flat two-field model, own solution). */
 EFFECTIVE_TEST(second_scalar_slows_the_clock)
 {
   struct ebb_rows rows = ebb_test_effective_rows("slqc", "scalar", NEW_GAP);
@@ -101,8 +101,9 @@ EFFECTIVE_TEST(second_scalar_slows_the_clock)
   ebb_test_call(ebb_effective_clear(&e));
 }
 
-/* The same classical orbit in the unimodular clock, p_phi and Lambda/(8 pi G): the same bounce as with the scalar clock and
- * that Lambda. Chiou, Geiller, Phys. Rev. D 82, 064012 (2010), arXiv:1007.0735 (abstract: bounce under the same condition) */
+/* The same classical orbit in the unimodular clock, p_phi and Lambda/(8 pi G): the same bounce as with the scalar clock
+ * and that Lambda. Chiou, Geiller, Phys. Rev. D 82, 064012 (2010), arXiv:1007.0735 (abstract: bounce under the same
+ * condition) */
 EFFECTIVE_TEST(unimodular_bounce_is_that_of_the_scalar_clock)
 {
   static const double s[] = {-0.05, 0.0, 0.02};
@@ -154,8 +155,8 @@ EFFECTIVE_TEST(radiation_bounces_at_the_critical_density)
   ebb_test_close(bounce.density, rho_c, exact(rho_c));
 }
 
-/* Proper-time Friedmann equation with the loop correction on every clock's level set, H^2 = (8 pi G/3) rho (1 - rho/rho_c)
- * with rho all energy: matter, Lambda, curvature. */
+/* Proper-time Friedmann equation with the loop correction on every clock's level set, H^2 = (8 pi G/3) rho (1 -
+ * rho/rho_c) with rho all energy: matter, Lambda, curvature. */
 EFFECTIVE_TEST(friedmann_equation_holds_whatever_the_clock)
 {
   static const char *const clock[] = {"scalar", "dust_symmetric_sqrt", "dust_densitised", "radiation", "unimodular"};
