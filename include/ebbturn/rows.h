@@ -11,7 +11,12 @@
 
 #include <stdbool.h>
 
-enum ebb_curvature { EBB_CURVATURE_NONE, EBB_CURVATURE_CLOSED, EBB_CURVATURE_OPEN };
+enum ebb_curvature {
+  EBB_CURVATURE_NONE,
+  EBB_CURVATURE_CLOSED,
+  EBB_CURVATURE_OPEN,
+  EBB_CURVATURE_CLOSED_CONNECTION /* holonomies of the connection: hops of 2 and 4, a five-point operator */
+};
 
 struct ebb_rows {
   const struct ebb_prescription *prescription;

@@ -80,6 +80,7 @@ void ebb_run_source(const struct ebb_run *run, bool check, struct ebb_source *so
     ebb_source_bundle(source, bundle, lattice, &run->constants, run->comm);
   else
     ebb_source_packet(source, check ? run->check : run->packet, lattice, &run->constants, run->comm);
+  if (run->rows.field) source->field_momentum = run->settings->matter.momentum;
   if (!run->lattice.prescription->grid && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY)
     source->bounded_scale = pow(ebb_run_momentum(run) / sqrt(run->rows.scale), 2.0 / run->rows.clock->growth);
 }

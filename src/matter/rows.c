@@ -7,7 +7,8 @@
 void ebb_rows_make(struct ebb_rows *rows)
 {
   const struct ebb_constants *c = &rows->constants;
-  const double cell = rows->curvature == EBB_CURVATURE_CLOSED ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
+  const bool closed = rows->curvature == EBB_CURVATURE_CLOSED || rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION;
+  const double cell = closed ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
 
   rows->scale = rows->clock->scale(c);
   rows->volume_unit = c->volume_unit;
