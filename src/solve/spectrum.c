@@ -67,7 +67,7 @@ static PetscErrorCode matrix_make(const struct ebb_spectrum_request *r, PetscInt
   PetscFunctionBegin;
   *t = (struct matrix){0};
   if (family) PetscCall(ebb_edge_find(rows, r->extension, r->angle, sites, &edge));
-  PetscCall(ebb_lattice_make(rows->prescription, rows->sector, edge.sites, comm, lattice));
+  PetscCall(ebb_lattice_make_model(rows, edge.sites, comm, lattice));
   t->n = ebb_lattice_size(lattice);
   PetscCall(PetscMalloc2(t->n, &t->d, t->n, &t->e));
   for (PetscInt i = 0; i < t->n; i++) {
