@@ -35,7 +35,9 @@ static PetscErrorCode make(void *context, double p, struct ebb_packet **packet)
       maker->check && run->check_lattice.rows.clock ? &run->check_lattice : &run->lattice;
 
   PetscFunctionBegin;
-  maker->request.shift = run->rows.clock->density_power == 2.0 ? p * p : 0.0; /* a second scalar beside the scalar */
+  maker->request.shift = run->rows.clock->density_power == 2.0
+                             ? p * p - run->rows.kappa * run->rows.kappa * run->rows.gap
+                             : 0.0; /* a second scalar beside the scalar */
   maker->problem[0] = '\0';
   if (run->method == EBB_METHOD_EIGENPAIRS)
     PetscCall(ebb_packet_create_eigenpairs(&maker->request, lattice, packet));

@@ -78,8 +78,8 @@ PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
   PetscFunctionBegin;
   PetscCall(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget,
                             ebb_run_mean_exists(run), &r->bounce));
-  r->has_law =
-      !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) && !run->bundle;
+  r->has_law = !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) &&
+               run->rows.volume_power == 1.0 && !run->bundle;
   if (r->has_law)
     PetscCall(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
   phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;

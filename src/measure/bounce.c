@@ -85,7 +85,7 @@ static PetscInt bracket_of(const struct ebb_samples *samples)
 static PetscErrorCode bracket_outside(struct ebb_source *source, const struct ebb_samples *samples, double *low,
                                       double *high, bool *found)
 {
-  const double kappa = source->constants->kappa;
+  const double kappa = source->lattice->rows.kappa;
   const double stride = (samples->phi[samples->m - 1] - samples->phi[0]) / OUTSIDE_STRIDES;
   const bool before = samples->slope[0] > 0.0;
   double phi = before ? samples->phi[0] : samples->phi[samples->m - 1];
@@ -278,6 +278,7 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
 
     bounce->v = (struct ebb_measured){moment[turns], error[turns]};
   }
+  bounce->volume = (struct ebb_measured){moment[EBB_MOMENT_VOLUME_MEAN], error[EBB_MOMENT_VOLUME_MEAN]};
   bounce->density = (struct ebb_measured){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
   bounce->v_mode = (struct ebb_measured){
       sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};
@@ -291,7 +292,9 @@ static void derive(const struct ebb_rows *rows, struct ebb_bounce *b)
 {
   const double power = rows->volume_power, volume = rows->volume_unit * ebb_rows_volume(rows, b->v.value);
 
-  b->volume = (struct ebb_measured){volume, power * volume * b->v.error / b->v.value};
+  /* where V is no multiple of v its own mean stands in b->volume already; a median is one of either */
+  if (power == 1.0 || !strcmp(b->estimator, "median"))
+    b->volume = (struct ebb_measured){volume, power * volume * b->v.error / b->v.value};
   b->ratio.value = b->volume.value / b->effective_volume.value;
   b->ratio.error =
       b->ratio.value * (b->volume.error / b->volume.value + b->effective_volume.error / b->effective_volume.value);
@@ -433,8 +436,9 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     PetscFunctionReturn(0);
   }
   /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
-  bounce->clock = (struct ebb_measured){root, (slope_error + bounce->v.error * source->constants->kappa) / curvature +
-                                                  4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
+  bounce->clock =
+      (struct ebb_measured){root, (slope_error + bounce->v.error * source->lattice->rows.kappa) / curvature +
+                                      4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
   PetscCall(
       refine_median(source, budget, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   if (!mean_exists) {
