@@ -171,6 +171,46 @@ Test(evolution, dust_volume_is_a_parabola)
   }
 }
 
+/* The same parabola for a coherent state of su(1,1), psi_n ~ sqrt(n) xi^(n - 1) on v = 4n, xi = 0.55 + 0.25 i: <v>(T =
+ * 1.5) as an independent program has it (exact formula, 50 digits). */
+Test(evolution, a_coherent_dust_state_moves_as_the_exact_law_says)
+{
+  enum { SITES = 160 }; /* |xi|^160 = 6e-36 */
+  static const double truth = 9.9659199117731744849, clock = 1.5;
+  struct ebb_test_model model;
+  double v[SITES];
+  double complex psi[SITES], power = 1.0;
+  struct ebb_file_state file = {v, psi, SITES};
+  struct ebb_packet *packet;
+  struct ebb_lattice lattice;
+  struct ebb_source source;
+  struct ebb_sheet sheet;
+  const struct ebb_sheet_request nothing = {0};
+  char problem[256];
+
+  ebb_test_model_create(&model,
+                        "{clock: {kind: dust, from: 0, to: 1.5, samples: 2}, state: {profile: gaussian_volume,\n"
+                        "v0: 40, spread: 6, b0: 1.5}}");
+  for (int n = 1; n <= SITES; n++, power *= 0.55 + 0.25 * I) {
+    v[n - 1] = 4.0 * n;
+    psi[n - 1] = sqrt((double)n) * power;
+  }
+  strcpy(model.settings.state.profile, "file");
+  const struct ebb_state_request request = {
+      .settings = &model.settings, .constants = &model.run.constants, .file = &file, .comm = PETSC_COMM_SELF};
+  const struct ebb_spectrum_request levels = {.rows = &model.run.rows, .wall = true, .sites = 320};
+
+  ebb_test_call(ebb_packet_create_levels(&request, &levels, problem, sizeof problem, &lattice, &packet));
+  cr_assert_not_null(packet, "%s", problem);
+  ebb_source_packet(&source, packet, &lattice, &model.run.constants, PETSC_COMM_SELF);
+  ebb_test_call(source.evaluate(&source, 1, &clock, &nothing, &sheet));
+  /* 320 levels, each with a phase of a few hundred */
+  ebb_test_close(sheet.sum[EBB_SUM_V][0] / sheet.sum[EBB_SUM_NORM][0], truth, ebb_test_rounding(4096.0, truth));
+  ebb_test_call(ebb_sheet_clear(&sheet));
+  ebb_test_call(ebb_packet_destroy(&packet));
+  ebb_test_model_destroy(&model);
+}
+
 /* Dust for every cosmological constant: the norm stays (same source, abstract: unitarity). With Lambda >= 0 the
  * universe runs off to infinite volume at infinite T only. */
 Test(evolution, dust_keeps_the_norm_for_any_lambda)
