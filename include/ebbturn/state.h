@@ -7,6 +7,7 @@
 
 #include "ebbturn/basis.h"
 #include "ebbturn/settings.h"
+#include "ebbturn/spectrum.h"
 
 #include <complex.h>
 #include <stdbool.h>
@@ -30,6 +31,7 @@ struct ebb_profile {
   /* Fills k0, sigma_k, v0, at, branch. */
   void (*resolve)(struct ebb_profile_input *input);
   bool (*spectral)(const struct ebb_profile_input *input);
+  bool everywhere; /* an l2 vector at any b: which momenta it holds depends on the model; reach_k is the flat one's */
   /* c(k), not normalised; alpha: phase of the mode at large volume. */
   double complex (*coefficient)(const struct ebb_profile_input *input, double k, double alpha);
   /* psi at |v| of an arm (left = true: v < 0), not normalised; zero outside [*low, *high] of reach_v. */
@@ -56,6 +58,7 @@ struct ebb_packet {
   double low_weight;     /* |c|^2 at the lower end of the k interval relative to its maximum: 0 unless cut at k = 0 */
   double channel_purity; /* least |C|^2 of the packet's channel on its own arm, where the share matters; 1 on half
                             lattices */
+  double omega_error;    /* levels: largest error of an omega */
   double lost;           /* 1 - norm of the l2 vector resolved in the basis: weight outside the k interval */
 };
 
@@ -100,6 +103,13 @@ PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, 
 /* Packet in the eigenvectors of the walled lattice; c_j = c(k_j) sqrt((k_{j+1} - k_{j-1})/2) for spectral profiles. */
 PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
                                             struct ebb_packet **packet);
+/* Packet in the levels of a discrete spectrum, or of a walled lattice: in the eigenfunctions of request->settings'
+ * model whose clock momentum lies where the profile's does. extension, sites, wall: as in ebbturn/spectrum.h. Only the
+ * positive part of an operator that has both signs is used where states move by its square root. *lattice: where it
+ * lives. problem [size]: "" or what is wrong; *packet is then NULL. Collective. */
+PetscErrorCode ebb_packet_create_levels(const struct ebb_state_request *request,
+                                        const struct ebb_spectrum_request *levels, char *problem, size_t size,
+                                        struct ebb_lattice *lattice, struct ebb_packet **packet);
 /* Continuum packet on the grid in ln v: c(k) exp(+-i k (x - lnv0)), + contracting, both: the normalised sum. */
 PetscErrorCode ebb_packet_create_waves(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
                                        struct ebb_packet **packet);

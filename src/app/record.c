@@ -47,6 +47,7 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
   PetscFunctionBegin;
   PetscCall(ebb_result_root(store, run->settings, run->comm, invocation, model_text));
   PetscCall(ebb_store_set_text(store, "/", "propagator", ebb_method_name(run->method)));
+  PetscCall(ebb_store_set_text(store, "/", "propagator_reason", run->why));
   PetscCall(ebb_result_lattice(store, &run->lattice, &run->constants));
   PetscCall(
       ebb_result_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
@@ -98,7 +99,7 @@ PetscErrorCode ebb_record_batch(struct ebb_store *store, const struct ebb_run *r
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_record *record)
+static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_run *run, const struct ebb_record *record)
 {
   char path[128], text[256];
 
@@ -106,6 +107,7 @@ static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_recor
   for (int i = 0; i < EBB_MOMENTS; i++) {
     const struct ebb_moment_info *info = &ebb_moment_table[i];
 
+    if (!ebb_moment_exists(&run->lattice, i)) continue;
     PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s", info->name));
     PetscCall(ebb_result_line(store, path, record->m, record->moment[i], info->units, info->long_name, "/clock/value"));
     PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s_error", info->name));
@@ -231,7 +233,7 @@ PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run
   const unsigned keep = run->settings->output.keep;
 
   PetscFunctionBegin;
-  if (keep & EBB_KEEP_MOMENTS) PetscCall(put_series(store, record));
+  if (keep & EBB_KEEP_MOMENTS) PetscCall(put_series(store, run, record));
   if ((keep & EBB_KEEP_QUANTILES) && record->levels) PetscCall(put_quantiles(store, run, record));
   PetscCall(put_bounce(store, &record->bounce));
   PetscCall(put_effective(store, &record->effective));

@@ -8,14 +8,17 @@
 #include "ebbturn/observables.h"
 #include "ebbturn/settings.h"
 
-enum ebb_method { EBB_METHOD_MODES, EBB_METHOD_EIGENPAIRS, EBB_METHOD_WAVES, EBB_METHOD_CHEBYSHEV, EBB_METHOD_KRYLOV };
+/* EBB_METHOD_LEVELS: the levels of a discrete spectrum, or of a wall beyond the packet's reach; also called
+ * eigenpairs. */
+enum ebb_method { EBB_METHOD_MODES, EBB_METHOD_EIGENPAIRS, EBB_METHOD_WAVES, EBB_METHOD_CHEBYSHEV, EBB_METHOD_KRYLOV, EBB_METHOD_LEVELS };
 
 struct ebb_run {
   const struct ebb_settings *settings;
   struct ebb_constants constants;
   MPI_Comm comm;
-  struct ebb_lattice lattice;
-  struct ebb_plan plan; /* empty for walls and grids */
+  struct ebb_rows rows;
+  struct ebb_lattice lattice, check_lattice; /* check: of the independent rule */
+  struct ebb_plan plan;                      /* empty for walls and grids */
   enum ebb_method method;
   char why[256];                     /* why this propagator */
   struct ebb_packet *packet, *check; /* check: the independent rule, NULL where there is none */
@@ -31,6 +34,13 @@ struct ebb_run {
  * Collective. */
 PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *folder, MPI_Comm comm,
                               struct ebb_run *run, int *code);
+/* Has |v| a mean? Where the packet has no weight at k = 0, and behind a wall; never in the limit-circle case. */
+bool ebb_run_mean_exists(const struct ebb_run *run);
+/* Are there levels rather than modes behind the state? */
+bool ebb_run_has_levels(const struct ebb_run *run);
+/* The part of the set-up for states in levels: packet, lattice and the independent rule; run->problem says what is
+ * wrong. */
+PetscErrorCode ebb_run_create_levels(struct ebb_run *run, const struct ebb_state_request *request);
 /* Starts the propagator: after it the sources can be evaluated. */
 PetscErrorCode ebb_run_start(struct ebb_run *run);
 PetscErrorCode ebb_run_destroy(struct ebb_run *run);

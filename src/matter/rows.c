@@ -111,6 +111,21 @@ double ebb_rows_potential(const struct ebb_rows *rows, double v)
   return value;
 }
 
+bool ebb_rows_has_potential(const struct ebb_rows *rows)
+{
+  return rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE || (rows->p_phi != 0.0 && rows->clock->kinetic);
+}
+
+bool ebb_rows_is_flat(const struct ebb_rows *rows)
+{
+  return !strcmp(rows->clock->name, "scalar") && !ebb_rows_has_potential(rows);
+}
+
+double ebb_rows_volume(const struct ebb_rows *rows, double v)
+{
+  return rows->volume_power == 1.0 ? fabs(v) : pow(fabs(v), rows->volume_power);
+}
+
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v)
 {
   const double below = rows->half && v == rows->sector ? ebb_rows_edge(rows) : ebb_rows_hop(rows, v - 4.0);

@@ -7,6 +7,8 @@
 #include "ebbturn/spectrum.h"
 
 #include "edge.h"
+#include "extension.h"
+#include "limit_circle.h"
 #include "sturm.h"
 
 #include <float.h>
@@ -60,7 +62,7 @@ static PetscErrorCode matrix_make(const struct ebb_spectrum_request *r, PetscInt
                                   struct ebb_lattice *lattice)
 {
   const struct ebb_rows *rows = r->rows;
-  const bool family = ebb_rows_nature(rows) == EBB_NATURE_FAMILY;
+  const bool family = !r->wall && ebb_rows_nature(rows) == EBB_NATURE_FAMILY;
   struct ebb_edge edge = {.sites = sites};
   double v;
 
@@ -82,6 +84,8 @@ static PetscErrorCode matrix_make(const struct ebb_spectrum_request *r, PetscInt
     t->d[t->n - 1] = (t->d[t->n - 1] + t->e[t->n - 1] * edge.ratio) / (1.0 + edge.tail);
     t->e[t->n - 2] /= sqrt(1.0 + edge.tail);
     t->floor = fabs(rows->scale * ebb_rows_potential(rows, v)) * (1.0 - rows->s) / ROOM;
+  } else if (r->wall) {
+    t->floor = INFINITY;
   } else {
     t->out[0] = t->e[t->n - 1];
     t->out[1] = rows->half ? 0.0 : ebb_rows_offdiagonal(rows, ebb_lattice_v(lattice, 0) - 4.0);
@@ -133,7 +137,6 @@ static double compare(const struct ebb_spectrum_request *r, PetscInt h_n, const 
 /* Vector j, its residual and its error but for what the doubling says. */
 static PetscErrorCode pair_find(const struct matrix *t, PetscInt j, double x[], double pivots[], struct ebb_spectrum *s)
 {
-  const PetscInt local = s->lattice.end - s->lattice.begin;
   const size_t n = (size_t)t->n;
   double quadratic, cut;
   int sign;
@@ -141,12 +144,12 @@ static PetscErrorCode pair_find(const struct matrix *t, PetscInt j, double x[], 
   PetscFunctionBegin;
   (void)ebb_sturm_vector(n, t->d, t->e, s->eigenvalue[j], (size_t)s->lattice.sites[1], x, pivots, &sign);
   s->residual[j] = ebb_sturm_residual(n, t->d, t->e, s->eigenvalue[j], x, &quadratic);
+  s->tail[j] = t->tail;
   cut = hypot(t->out[0] * x[n - 1], t->out[1] * x[0]);
   s->error[j] = ELEMENT_ROUNDINGS * DBL_EPSILON * quadratic;
   if (t->tail == 0.0) s->error[j] += hypot(s->residual[j], cut);
   x[n - 1] /= sqrt(1.0 + t->tail); /* the last component stood for the whole tail */
-  for (PetscInt i = 0; i < local; i++)
-    s->function[(size_t)j * (size_t)local + (size_t)i] = sign * x[s->lattice.begin + i];
+  for (size_t i = 0; i < n; i++) s->function[(size_t)j * n + i] = sign * x[i];
   PetscFunctionReturn(0);
 }
 
@@ -166,12 +169,11 @@ static void prove(const struct ebb_spectrum_request *r, const struct matrix *t, 
 static PetscErrorCode pairs_find(const struct ebb_spectrum_request *r, const struct matrix *t, const double half[],
                                  struct ebb_spectrum *s)
 {
-  const PetscInt local = s->lattice.end - s->lattice.begin;
   double *x, *pivots;
 
   PetscFunctionBegin;
-  PetscCall(PetscMalloc1((size_t)s->n * (size_t)local, &s->function));
-  PetscCall(PetscMalloc2(s->n, &s->residual, s->n, &s->error));
+  PetscCall(PetscMalloc1((size_t)s->n * (size_t)t->n, &s->function));
+  PetscCall(PetscMalloc3(s->n, &s->residual, s->n, &s->error, s->n, &s->tail));
   PetscCall(PetscMalloc2(t->n, &x, 2 * t->n, &pivots));
   for (PetscInt j = 0; j < s->n; j++) {
     PetscCall(pair_find(t, j, x, pivots, s));
@@ -268,7 +270,7 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
                                  struct ebb_spectrum **spectrum)
 {
   const enum ebb_nature nature = ebb_rows_nature(r->rows);
-  const bool family = nature == EBB_NATURE_FAMILY;
+  const bool family = nature == EBB_NATURE_FAMILY && !r->wall;
   double *half = NULL;
   struct matrix t = {0};
   struct ebb_spectrum *s;
@@ -276,13 +278,19 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
   PetscFunctionBegin;
   *spectrum = NULL;
   problem[0] = '\0';
-  PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) && (family || nature == EBB_NATURE_DISCRETE),
+  PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) && (family || r->wall || nature == EBB_NATURE_DISCRETE),
              PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "no discrete spectrum without the extension the operator needs");
   if (family && r->sites && r->sites < SITES_LEAST) {
     PetscCall(PetscSNPrintf(problem, size, "an extension needs a lattice of %d sites or more", SITES_LEAST));
     PetscFunctionReturn(0);
   }
   PetscCall(PetscNew(&s));
+  *spectrum = s;
+  if (family && r->exact && ebb_limit_circle_known(r->rows)) {
+    PetscCall(ebb_extension_solve(r, comm, problem, size, s));
+    if (problem[0]) PetscCall(ebb_spectrum_destroy(spectrum));
+    PetscFunctionReturn(0);
+  }
   PetscCall(grow(r, family, comm, problem, size, &half, &t, s));
   if (!problem[0]) PetscCall(pairs_find(r, &t, half, s));
   PetscCall(PetscFree(half));
@@ -297,7 +305,7 @@ PetscErrorCode ebb_spectrum_destroy(struct ebb_spectrum **spectrum)
   PetscFunctionBegin;
   if (!*spectrum) PetscFunctionReturn(0);
   PetscCall(PetscFree((*spectrum)->eigenvalue));
-  PetscCall(PetscFree2((*spectrum)->residual, (*spectrum)->error));
+  PetscCall(PetscFree3((*spectrum)->residual, (*spectrum)->error, (*spectrum)->tail));
   PetscCall(PetscFree((*spectrum)->function));
   PetscCall(PetscFree(*spectrum));
   PetscFunctionReturn(0);

@@ -59,7 +59,8 @@ static PetscErrorCode first_positive(const struct work *w, double angle, double 
                                                  .angle = angle,
                                                  .low = 0.0,
                                                  .high = high,
-                                                 .tolerance = TOLERANCE};
+                                                 .tolerance = TOLERANCE,
+                                                 .exact = true};
     struct ebb_spectrum *spectrum;
     char problem[256];
 
