@@ -20,6 +20,9 @@ struct ebb_spectrum_request {
   double low, high; /* in the operator's own units */
   double tolerance; /* relative; the lattice grows until no wanted eigenvalue moves by more */
   PetscInt sites;   /* per arm; 0: chosen here */
+  /* FAMILY, where the waves at infinity are known to all orders: the boundary condition of each eigenvalue itself, in
+   * place of one linear in the eigenvalue for all of them. Functions then carry a tail each. */
+  bool exact;
 };
 
 struct ebb_spectrum {
@@ -29,11 +32,14 @@ struct ebb_spectrum {
   double *residual;   /* [n]: |T f - z f|, T the matrix that was diagonalised */
   /* [n]: DISCRETE: distance to the nearest point of the infinite operator's spectrum is at most |Theta f - z f|, in
    * which the link beyond the last site counts, plus the rounding of the elements. FAMILY: the larger of the change
-   * from half as many sites and an estimate of what the edge leaves out, plus rounding. */
+   * from half as many sites and an estimate of what the edge leaves out, plus rounding; exact: the change to twice as
+   * many sites, the smallest term of the series, and rounding. */
   double *error;
   double *function;  /* [n][size of the lattice], on every rank; unit l2 norm, the tail of an extension included;
                       * positive at the first site (full lattices: at v = sector) */
-  double tail_mass;  /* FAMILY: sum_{n > N} f_n^2 / f_N^2 beyond the last site, the last component stands for it */
+  double *tail;      /* [n]: FAMILY: tail_mass of each function; 0 elsewhere */
+  double tail_mass;  /* FAMILY, not exact: sum_{n > N} f_n^2 / f_N^2 beyond the last site, the last component stands for
+                        it */
   double counted[2]; /* where the Sturm counts were taken */
   PetscInt below[2]; /* eigenvalues below them */
   bool complete;     /* below[1] - below[0] == n */

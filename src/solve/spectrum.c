@@ -7,6 +7,8 @@
 #include "ebbturn/spectrum.h"
 
 #include "edge.h"
+#include "extension.h"
+#include "limit_circle.h"
 #include "sturm.h"
 
 #include <float.h>
@@ -142,6 +144,7 @@ static PetscErrorCode pair_find(const struct matrix *t, PetscInt j, double x[], 
   PetscFunctionBegin;
   (void)ebb_sturm_vector(n, t->d, t->e, s->eigenvalue[j], (size_t)s->lattice.sites[1], x, pivots, &sign);
   s->residual[j] = ebb_sturm_residual(n, t->d, t->e, s->eigenvalue[j], x, &quadratic);
+  s->tail[j] = t->tail;
   cut = hypot(t->out[0] * x[n - 1], t->out[1] * x[0]);
   s->error[j] = ELEMENT_ROUNDINGS * DBL_EPSILON * quadratic;
   if (t->tail == 0.0) s->error[j] += hypot(s->residual[j], cut);
@@ -170,7 +173,7 @@ static PetscErrorCode pairs_find(const struct ebb_spectrum_request *r, const str
 
   PetscFunctionBegin;
   PetscCall(PetscMalloc1((size_t)s->n * (size_t)t->n, &s->function));
-  PetscCall(PetscMalloc2(s->n, &s->residual, s->n, &s->error));
+  PetscCall(PetscMalloc3(s->n, &s->residual, s->n, &s->error, s->n, &s->tail));
   PetscCall(PetscMalloc2(t->n, &x, 2 * t->n, &pivots));
   for (PetscInt j = 0; j < s->n; j++) {
     PetscCall(pair_find(t, j, x, pivots, s));
@@ -282,6 +285,12 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
     PetscFunctionReturn(0);
   }
   PetscCall(PetscNew(&s));
+  *spectrum = s;
+  if (family && r->exact && ebb_limit_circle_known(r->rows)) {
+    PetscCall(ebb_extension_solve(r, comm, problem, size, s));
+    if (problem[0]) PetscCall(ebb_spectrum_destroy(spectrum));
+    PetscFunctionReturn(0);
+  }
   PetscCall(grow(r, family, comm, problem, size, &half, &t, s));
   if (!problem[0]) PetscCall(pairs_find(r, &t, half, s));
   PetscCall(PetscFree(half));
@@ -296,7 +305,7 @@ PetscErrorCode ebb_spectrum_destroy(struct ebb_spectrum **spectrum)
   PetscFunctionBegin;
   if (!*spectrum) PetscFunctionReturn(0);
   PetscCall(PetscFree((*spectrum)->eigenvalue));
-  PetscCall(PetscFree2((*spectrum)->residual, (*spectrum)->error));
+  PetscCall(PetscFree3((*spectrum)->residual, (*spectrum)->error, (*spectrum)->tail));
   PetscCall(PetscFree((*spectrum)->function));
   PetscCall(PetscFree(*spectrum));
   PetscFunctionReturn(0);

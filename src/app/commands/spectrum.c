@@ -51,6 +51,7 @@ static void request_make(struct work *w)
                                              .high = s->spectrum.interval[1],
                                              .tolerance = s->numerics.tolerance,
                                              .sites = s->lattice.points};
+  w->request.exact = true;
   if (s->lattice.volume_max > 0.0) w->request.sites = (PetscInt)floor((s->lattice.volume_max - g->sector) / 4.0) + 1;
   if (!isnan(g->extension_delta)) {
     w->request.extension = EBB_EXTENSION_DELTA;
@@ -77,7 +78,9 @@ static PetscErrorCode put_attributes(struct ebb_store *store, const struct work 
   if (w->request.extension != EBB_EXTENSION_NONE) {
     PetscCall(ebb_store_set_text(store, g, "extension", w->request.extension == EBB_EXTENSION_DELTA ? "delta" : "tau"));
     PetscCall(ebb_store_set_real(store, g, "angle", w->request.angle));
-    PetscCall(ebb_store_set_real(store, g, "tail_mass", s->tail_mass));
+    PetscCall(ebb_result_line(store, "/spectrum/tail_mass", s->n, s->tail, "1",
+                              "sum of squares beyond the last site over that of its component, which stands for them",
+                              "/spectrum/eigenvalue"));
   }
   PetscFunctionReturn(0);
 }
