@@ -2,6 +2,7 @@
 #include "extension.h"
 
 #include "limit_circle.h"
+#include "slicing.h"
 #include "sturm.h"
 
 #include <float.h>
@@ -179,6 +180,27 @@ static void prove(const struct ebb_spectrum_request *r, struct matrix *check, st
       s->complete = false;
 }
 
+/* Inertias of the matrix whose boundary condition is linear in z about the middle of the interval (see edge.h). */
+static PetscErrorCode slice(struct matrix *t, MPI_Comm comm, struct ebb_spectrum *s)
+{
+  const double middle = 0.5 * (s->counted[0] + s->counted[1]), link = t->e[t->n - 1];
+  const struct ebb_limit_ratio r = matrix_at(t, middle);
+  const double slope = -link * r.slope / t->circle->rows.scale, whole = 1.0 + slope, inner = t->e[t->n - 2];
+  double *values;
+  PetscInt found;
+
+  PetscFunctionBegin;
+  t->d[t->n - 1] = (t->last + link * r.ratio + slope * middle) / whole;
+  t->e[t->n - 2] /= sqrt(whole);
+  PetscCall(
+      ebb_slicing_find((PetscInt)t->n, t->d, t->e, s->counted[0], s->counted[1], comm, &found, &values, s->inertia));
+  t->e[t->n - 2] = inner;
+  s->sliced = true;
+  if (found != s->n || s->inertia[1] - s->inertia[0] != s->n) s->complete = false;
+  PetscCall(PetscFree(values));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_extension_solve(const struct ebb_spectrum_request *r, MPI_Comm comm, char *problem, size_t size,
                                    struct ebb_spectrum *s)
 {
@@ -221,6 +243,7 @@ PetscErrorCode ebb_extension_solve(const struct ebb_spectrum_request *r, MPI_Com
     PetscCall(allocate(s->below[1] - s->below[0], sites, s));
     PetscCall(pairs_find(&t, &check, s));
     prove(r, &check, s);
+    if (r->slicing) PetscCall(slice(&t, comm, s));
   }
   PetscCall(PetscFree2(t.d, t.e));
   PetscCall(PetscFree2(check.d, check.e));
