@@ -94,8 +94,8 @@ size_t ebb_symbol_turnings(const struct ebb_symbol *symbol, double momentum,
 /* The bounce that ends the classical contracting branch; false where there is none. */
 bool ebb_symbol_bounce(const struct ebb_symbol *symbol, double momentum, struct ebb_symbol_turning *turning);
 
-/* The modified Friedmann equation and the critical density of a prescription, clock or curvature, as text; NULL for a
- * name that has none. */
+/* The modified Friedmann equation and the critical density that go with a prescription, a clock or the key of a setting,
+ * as text; NULL for a name that has none. */
 const char *ebb_symbol_text(const char *name);
 
 #endif

@@ -177,6 +177,7 @@ static PetscErrorCode put_effective(struct ebb_store *store, const struct ebb_ef
                             "effective trajectory, energy density of the clock and of a scalar beside it", clock));
   PetscCall(ebb_result_line(store, "/effective/density_error", e->m, e->density_error, "1/G^2",
                             "absolute error of the effective density", clock));
+  PetscCall(ebb_store_set_text(store, "/effective", "reason", e->reason));
   PetscFunctionReturn(0);
 }
 

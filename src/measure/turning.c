@@ -197,3 +197,26 @@ PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double 
   t->end_error = apart(t->end, rough.end, side[0].end_error);
   PetscFunctionReturn(0);
 }
+
+void ebb_effective_bounce(const struct ebb_rows *rows, double p, double p_error, double volume[2], double density[2])
+{
+  const struct ebb_symbol symbol = ebb_symbol_make(rows);
+  const double near[] = {p, p - p_error, p + p_error};
+
+  volume[0] = volume[1] = density[0] = density[1] = NAN;
+  for (int i = 0; i < 3; i++) {
+    struct ebb_symbol_turning bounce;
+    struct ebb_turning_point point;
+
+    if (isnan(near[i]) || !ebb_symbol_bounce(&symbol, near[i], &bounce)) continue;
+    point = point_of(&symbol, near[i], true, 0.0, bounce.v, bounce.b);
+    if (i == 0) {
+      volume[0] = point.volume;
+      density[0] = point.density;
+      volume[1] = 4.0 * DBL_EPSILON * point.volume;
+      density[1] = 4.0 * DBL_EPSILON * point.density;
+    }
+    volume[1] = fmax(volume[1], fabs(point.volume - volume[0]));
+    density[1] = fmax(density[1], fabs(point.density - density[0]));
+  }
+}
