@@ -5,7 +5,7 @@
 #ifndef EBBTURN_OBSERVABLES_H
 #define EBBTURN_OBSERVABLES_H
 
-#include "ebbturn/state.h"
+#include "ebbturn/bundle.h"
 
 /* Raw sums over sites, one value per clock sample. Links are pairs of neighbouring sites of one arm, outward. */
 enum ebb_sum {
@@ -40,7 +40,9 @@ enum ebb_sum {
   EBB_SUM_VOLUME, /* V/volume_unit and its square, where V does not go like |v| */
   EBB_SUM_VOLUME2,
   EBB_SUM_ARCTAN, /* arctan(|v|/bounded_scale), where the source has such a scale */
-  EBB_SUM_LAST,   /* |psi|^2 of the arms' last sites */
+  EBB_SUM_FIELD,  /* a further field phi on its circle, and its square */
+  EBB_SUM_FIELD2,
+  EBB_SUM_LAST, /* |psi|^2 of the arms' last sites */
   EBB_SUMS
 };
 /* Ratio of the windows before the edge; wider where the packet's standing waves oscillate more slowly, so that a window
@@ -87,6 +89,11 @@ struct ebb_source {
 void ebb_source_packet(struct ebb_source *source, const struct ebb_packet *packet, const struct ebb_lattice *lattice,
                        const struct ebb_constants *constants, MPI_Comm comm);
 
+/* Source over a bundle (not owned): slice after slice, their sums weighted and added. Keeps no states of its own:
+ * request->state is an error. */
+void ebb_source_bundle(struct ebb_source *source, const struct ebb_bundle *bundle, const struct ebb_lattice *lattice,
+                       const struct ebb_constants *constants, MPI_Comm comm);
+
 /* For stepping propagators: sums over this rank's sites from fields given in ascending local order, with two more
  * values beyond each end (0 where there is no site). field[f]: [local + 4], index 2 is the first local site. Fields:
  * psi, sqrt(Theta) psi, Theta^{-1/4} psi. sheet must hold room for sample s. */
@@ -119,6 +126,8 @@ enum ebb_moment {
   EBB_MOMENT_DRESSED_A4,
   EBB_MOMENT_THETA_MEAN,
   EBB_MOMENT_ARCTAN_V_MEAN,
+  EBB_MOMENT_FIELD_MEAN, /* of a further field; called by the field's name in results */
+  EBB_MOMENT_FIELD_SPREAD,
   EBB_MOMENTS
 };
 struct ebb_moment_info {

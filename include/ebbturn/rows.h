@@ -26,6 +26,7 @@ struct ebb_rows {
   double s; /* Lambda/Lambda_c */
   enum ebb_curvature curvature;
   double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  bool field;   /* a further field stands beside the volume */
   /* filled by ebb_rows_make */
   double scale;                     /* the operator is scale times measure, hop, edge and potential */
   double volume_unit, volume_power; /* physical volume V = volume_unit |v|^volume_power */

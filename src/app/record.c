@@ -61,7 +61,7 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
                                                       .units = "1",
                                                       .long_name = "probability of a site (density in /lattice/weight)",
                                                       .scale = {"/clock/value", "/lattice/v"}}));
-  if (o->keep & EBB_KEEP_STATE) {
+  if (ebb_run_keeps_states(run)) {
     double *clock;
 
     PetscCall(PetscMalloc1(states, &clock));
@@ -91,7 +91,7 @@ PetscErrorCode ebb_record_batch(struct ebb_store *store, const struct ebb_run *r
   if (run->settings->output.keep & EBB_KEEP_PROBABILITY)
     PetscCall(ebb_store_write(store, "/probability/v", (const hsize_t[]){(hsize_t)first, begin},
                               (const hsize_t[]){(hsize_t)sheet->m, local}, sheet->probability));
-  for (PetscInt s = 0; (run->settings->output.keep & EBB_KEEP_STATE) && s < sheet->m; s++) {
+  for (PetscInt s = 0; ebb_run_keeps_states(run) && s < sheet->m; s++) {
     if ((first + s) % every != 0) continue;
     PetscCall(ebb_store_write(store, "/state/psi", (const hsize_t[]){(hsize_t)((first + s) / every), begin},
                               (const hsize_t[]){1, local}, sheet->psi + (size_t)s * (size_t)sheet->local));
@@ -108,9 +108,17 @@ static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_run *
     const struct ebb_moment_info *info = &ebb_moment_table[i];
 
     if (!ebb_moment_exists(&run->lattice, i)) continue;
-    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s", info->name));
+    const char *name = info->name;
+    char field[2 * EBB_NAME_MAX];
+
+    if (i == EBB_MOMENT_FIELD_MEAN || i == EBB_MOMENT_FIELD_SPREAD) {
+      PetscCall(PetscSNPrintf(field, sizeof field, "%s_%s", run->settings->matter.name,
+                              i == EBB_MOMENT_FIELD_MEAN ? "mean" : "spread"));
+      name = field;
+    }
+    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s", name));
     PetscCall(ebb_result_line(store, path, record->m, record->moment[i], info->units, info->long_name, "/clock/value"));
-    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s_error", info->name));
+    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s_error", name));
     PetscCall(PetscSNPrintf(text, sizeof text, "absolute error of: %s", info->long_name));
     PetscCall(ebb_result_line(store, path, record->m, record->error[i], info->units, text, "/clock/value"));
   }
@@ -150,7 +158,9 @@ static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_bounc
   PetscCall(put_value(store, g, "ratio", b->ratio, "1", "bounce volume over the effective one"));
   PetscCall(put_value(store, g, "v_median", b->v_median, "1", "smallest median of |v| over the clock"));
   PetscCall(put_value(store, g, "v_mode", b->v_mode, "1", "most probable |v| at the bounce clock"));
-  PetscCall(put_value(store, g, "effective_volume", b->effective_volume, "length^3", "<p>/sqrt(2 rho_c)"));
+  PetscCall(put_value(
+      store, g, "effective_volume", b->effective_volume, "length^3",
+      "volume of the effective bounce at the mean momentum, <p>/sqrt(2 rho_c) of a flat model with scalar clock"));
   PetscCall(put_value(store, g, "effective_density", b->effective_density, "1/G^2", "density at the effective bounce"));
   PetscCall(ebb_result_number(store, "/bounce/turning_v", b->turning_v, "1",
                               "where the grid turns a continuum operator's packet (no property of the continuum)"));
@@ -230,6 +240,27 @@ static PetscErrorCode put_budget(struct ebb_store *store, const struct ebb_budge
   PetscFunctionReturn(0);
 }
 
+/* What the further field is and how much of the product state has no positive frequency. */
+static PetscErrorCode put_field(struct ebb_store *store, const struct ebb_run *run)
+{
+  const struct ebb_bundle *b = run->bundle;
+  char group[2 * EBB_NAME_MAX], path[3 * EBB_NAME_MAX];
+
+  PetscFunctionBegin;
+  PetscCall(PetscSNPrintf(group, sizeof group, "/matter/%s", run->settings->matter.name));
+  PetscCall(PetscSNPrintf(path, sizeof path, "%s/momentum", group));
+  PetscCall(ebb_result_line(store, path, b->n, b->p, "sqrt(G)", "momentum of a slice", NULL));
+  PetscCall(ebb_store_make_scale(store, path));
+  char weight[3 * EBB_NAME_MAX];
+
+  PetscCall(PetscSNPrintf(weight, sizeof weight, "%s/weight", group));
+  PetscCall(ebb_result_line(store, weight, b->n, b->weight, "1", "probability of a slice", path));
+  PetscCall(ebb_store_set_real(store, group, "removed_weight", b->removed));
+  PetscCall(ebb_store_set_real(store, group, "length", b->length));
+  PetscCall(ebb_store_set_integer(store, group, "points", b->points));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run, const struct ebb_record *record)
 {
   const unsigned keep = run->settings->output.keep;
@@ -241,6 +272,7 @@ PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run
   PetscCall(put_effective(store, &record->effective));
   if (record->has_law) PetscCall(put_law(store, run, &record->law));
   PetscCall(put_budget(store, &record->budget));
+  if (run->bundle) PetscCall(put_field(store, run));
   PetscCall(ebb_store_set_real(store, "/state", "channel_purity", run->packet->channel_purity));
   PetscCall(ebb_store_set_real(store, "/state", "low_weight", run->packet->low_weight));
   PetscCall(ebb_store_set_real(store, "/state", "lost", run->packet->lost));

@@ -25,20 +25,18 @@ static PetscInt sites_wanted(const struct ebb_run *run)
   return 0;
 }
 
-static struct ebb_spectrum_request levels_of(const struct ebb_run *run)
+void ebb_run_extension(const struct ebb_run *run, struct ebb_spectrum_request *levels)
 {
   const struct ebb_gravity_settings *g = &run->settings->gravity;
-  struct ebb_spectrum_request r = {.rows = &run->rows, .tolerance = LEVEL_TOLERANCE, .sites = sites_wanted(run)};
 
   if (!isnan(g->extension_delta)) {
-    r.extension = EBB_EXTENSION_DELTA;
-    r.angle = g->extension_delta;
+    levels->extension = EBB_EXTENSION_DELTA;
+    levels->angle = g->extension_delta;
   } else if (!isnan(g->extension_tau)) {
-    r.extension = EBB_EXTENSION_TAU;
-    r.angle = g->extension_tau;
+    levels->extension = EBB_EXTENSION_TAU;
+    levels->angle = g->extension_tau;
   }
-  r.wall = ebb_rows_nature(&run->rows) == EBB_NATURE_CONTINUOUS;
-  return r;
+  levels->wall = ebb_rows_nature(&run->rows) == EBB_NATURE_CONTINUOUS;
 }
 
 /* The share of <v^2> near the wall, the larger one of both ends of the clock range. */
@@ -87,9 +85,13 @@ static PetscErrorCode place_wall(struct ebb_run *run, const struct ebb_state_req
 PetscErrorCode ebb_run_create_levels(struct ebb_run *run, const struct ebb_state_request *request)
 {
   const bool family = ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY;
-  struct ebb_spectrum_request levels = levels_of(run);
+  struct ebb_rows rows = run->rows;
+  struct ebb_spectrum_request levels = {.rows = &rows, .tolerance = LEVEL_TOLERANCE, .sites = sites_wanted(run)};
 
   PetscFunctionBegin;
+  /* beside a further field its mean momentum chooses the lattice */
+  if (rows.field && rows.clock->density_power != 2.0) rows.p_phi = run->settings->matter.momentum;
+  ebb_run_extension(run, &levels);
   if (levels.wall && levels.sites == 0)
     PetscCall(place_wall(run, request, &levels));
   else if (family && levels.sites > 0 && levels.sites < FAMILY_LEAST)

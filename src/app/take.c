@@ -34,8 +34,7 @@ PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
       run->packet->omega_error * fmax(fabs(run->phi[0]), fabs(run->phi[run->m - 1])); /* phases of the levels */
   if (!run->check) PetscFunctionReturn(0);
   for (int i = 0; i < VERIFIED; i++) phi[i] = run->phi[(PetscInt)((double)i / (VERIFIED - 1) * (double)(run->m - 1))];
-  ebb_source_packet(&main_rule, run->packet, &run->lattice, &run->constants, run->comm);
-  main_rule.bounded_scale = run->source.bounded_scale;
+  ebb_run_source(run, false, &main_rule);
   PetscCall(main_rule.evaluate(&main_rule, VERIFIED, phi, &request, &rule));
   PetscCall(run->check_source.evaluate(&run->check_source, VERIFIED, phi, &request, &check));
   ebb_budget_compare(&record->budget, &run->constants, &run->lattice, &rule, &check, o->quantiles);
@@ -66,6 +65,18 @@ void ebb_record_take(struct ebb_record *r, const struct ebb_run *run, PetscInt f
   }
 }
 
+/* The lattice's rows know nothing of a further field: its mean momentum counts in the effective bounce as well. */
+static void effective_beside_field(const struct ebb_rows *rows, double p, struct ebb_bounce *b)
+{
+  double volume[2], density[2];
+
+  ebb_effective_bounce(rows, p, p * b->effective_volume.error / b->effective_volume.value, volume, density);
+  b->ratio.value *= b->effective_volume.value / volume[0];
+  b->ratio.error *= b->effective_volume.value / volume[0];
+  b->effective_volume = (struct ebb_measured){volume[0], volume[1]};
+  b->effective_density = (struct ebb_measured){density[0], density[1]};
+}
+
 PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
 {
   const struct ebb_prescription *p = run->lattice.prescription;
@@ -73,18 +84,23 @@ PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
   const struct ebb_samples samples = {
       run->m,   run->phi,  r->moment[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN],
       r->slope, r->levels, r->levels ? r->quantile : NULL};
+  struct ebb_rows rows = run->rows;
   double phi0, v0, sign;
 
   PetscFunctionBegin;
   PetscCall(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget,
                             ebb_run_mean_exists(run), &r->bounce));
-  r->has_law = !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows);
+  if (run->bundle) {
+    rows.p_phi = run->settings->matter.momentum;
+    effective_beside_field(&rows, ebb_run_momentum(run), &r->bounce);
+  }
+  r->has_law =
+      !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) && !run->bundle;
   if (r->has_law)
     PetscCall(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
   phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;
   v0 = r->moment[EBB_MOMENT_V_MEAN][0];
   sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
-  PetscCall(
-      ebb_effective_make(&run->rows, run->packet->momentum_mean, phi0, v0, sign, run->m, run->phi, &r->effective));
+  PetscCall(ebb_effective_make(&rows, ebb_run_momentum(run), phi0, v0, sign, run->m, run->phi, &r->effective));
   PetscFunctionReturn(0);
 }

@@ -199,13 +199,14 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
   if (ebb_reader_given(reader, "gravity.area_gap")->node && ebb_reader_given(reader, "gravity.polymer_scale")->node)
     return; /* complained of already */
   if (!consistent(reader)) return;
+  rows = ebb_rows_of_settings(reader->settings);
+  ebb_reader_check_matter(reader, &rows);
   if (reader->prescription->grid) {
     if (reader->need & EBB_NEED_SPECTRUM)
       ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"), "prescription '%s' has a continuous spectrum",
                           reader->prescription->name);
     return;
   }
-  rows = ebb_rows_of_settings(reader->settings);
   check_extension(reader, &rows);
   if (reader->need & EBB_NEED_CLOCK_RANGE) check_evolution(reader, &rows);
   if ((reader->need & EBB_NEED_SPECTRUM) && has_eigenvalues(reader, &rows)) check_wanted(reader, &rows);

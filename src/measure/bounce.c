@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/bounce.h"
+#include "ebbturn/effective.h"
 
 #include <math.h>
 #include <string.h>
@@ -224,6 +225,19 @@ static double edge_speed(const struct ebb_lattice *lattice)
   return 2.0 * rows->scale * pow(v, growth - 1.0);
 }
 
+/* The model's effective bounce at the mean momentum; of a continuum's grid, that of the loop model with its constants.
+ */
+static void effective_at(const struct ebb_source *source, double p, double p_error, struct ebb_bounce *bounce)
+{
+  const struct ebb_constants *c = source->constants;
+  const double unit = c->volume_unit / sqrt(c->theta_scale), density = c->newton * c->newton * c->critical_density;
+  double volume[2] = {p * unit, p_error * unit}, rho[2] = {density, 4.0 * PETSC_MACHINE_EPSILON * density};
+
+  if (!source->lattice->prescription->continuum) ebb_effective_bounce(&source->lattice->rows, p, p_error, volume, rho);
+  bounce->effective_volume = (struct ebb_measured){volume[0], volume[1]};
+  bounce->effective_density = (struct ebb_measured){rho[0], rho[1]};
+}
+
 /* Volume, density and mode at the bounce clock, with errors from the budget and the independent rule. */
 static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *check, const struct ebb_budget *budget,
                                 double clock, double v_limit, struct ebb_bounce *bounce, double *slope_error)
@@ -256,9 +270,7 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
   bounce->v_mode = (struct ebb_measured){
       sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};
   p = moment[EBB_MOMENT_MOMENTUM_MEAN];
-  bounce->effective_volume = (struct ebb_measured){
-      p * source->constants->volume_unit / sqrt(source->constants->theta_scale),
-      error[EBB_MOMENT_MOMENTUM_MEAN] * source->constants->volume_unit / sqrt(source->constants->theta_scale)};
+  effective_at(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce);
   PetscCall(ebb_sheet_clear(&sheet));
   PetscFunctionReturn(0);
 }
@@ -269,8 +281,6 @@ static void derive(const struct ebb_constants *c, struct ebb_bounce *b)
   b->ratio.value = b->volume.value / b->effective_volume.value;
   b->ratio.error =
       b->ratio.value * (b->volume.error / b->volume.value + b->effective_volume.error / b->effective_volume.value);
-  b->effective_density.value = c->newton * c->newton * c->critical_density;
-  b->effective_density.error = 4.0 * PETSC_MACHINE_EPSILON * b->effective_density.value;
 }
 
 static void blank(struct ebb_bounce *bounce)

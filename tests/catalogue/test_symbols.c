@@ -33,8 +33,8 @@ Test(symbols, every_prescription_has_the_classical_limit)
     }
 }
 
-/* The rows of the operator and the symbol are one function: in psi(v) = exp(-i v b/2) the row of a tridiagonal operator is
- * diagonal + 2 offdiagonal cos 2b up to 1/v^2 (the links of either side differ from their mean by 1/v). */
+/* The rows of the operator and the symbol are one function: in psi(v) = exp(-i v b/2) the row of a tridiagonal operator
+ * is diagonal + 2 offdiagonal cos 2b up to 1/v^2 (the links of either side differ from their mean by 1/v). */
 Test(symbols, rows_tend_to_the_symbol)
 {
   static const enum ebb_curvature curvature[] = {EBB_CURVATURE_NONE, EBB_CURVATURE_CLOSED, EBB_CURVATURE_OPEN};
