@@ -65,18 +65,6 @@ void ebb_record_take(struct ebb_record *r, const struct ebb_run *run, PetscInt f
   }
 }
 
-/* The lattice's rows know nothing of a further field: its mean momentum counts in the effective bounce as well. */
-static void effective_beside_field(const struct ebb_rows *rows, double p, struct ebb_bounce *b)
-{
-  double volume[2], density[2];
-
-  ebb_effective_bounce(rows, p, p * b->effective_volume.error / b->effective_volume.value, volume, density);
-  b->ratio.value *= b->effective_volume.value / volume[0];
-  b->ratio.error *= b->effective_volume.value / volume[0];
-  b->effective_volume = (struct ebb_measured){volume[0], volume[1]};
-  b->effective_density = (struct ebb_measured){density[0], density[1]};
-}
-
 PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
 {
   const struct ebb_prescription *p = run->lattice.prescription;
@@ -90,17 +78,14 @@ PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
   PetscFunctionBegin;
   PetscCall(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget,
                             ebb_run_mean_exists(run), &r->bounce));
-  if (run->bundle) {
-    rows.p_phi = run->settings->matter.momentum;
-    effective_beside_field(&rows, ebb_run_momentum(run), &r->bounce);
-  }
-  r->has_law =
-      !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) && !run->bundle;
+  r->has_law = !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) &&
+               run->rows.volume_power == 1.0 && !run->bundle;
   if (r->has_law)
     PetscCall(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
   phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;
-  v0 = r->moment[EBB_MOMENT_V_MEAN][0];
+  v0 = family && r->levels ? r->quantile[r->levels / 2] : r->moment[EBB_MOMENT_V_MEAN][0];
   sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
+  if (rows.field) rows.p_phi = run->settings->matter.momentum;
   PetscCall(ebb_effective_make(&rows, ebb_run_momentum(run), phi0, v0, sign, run->m, run->phi, &r->effective));
   PetscFunctionReturn(0);
 }

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/bounce.h"
+
 #include "ebbturn/effective.h"
 
 #include <math.h>
@@ -84,7 +85,7 @@ static PetscInt bracket_of(const struct ebb_samples *samples)
 static PetscErrorCode bracket_outside(struct ebb_source *source, const struct ebb_samples *samples, double *low,
                                       double *high, bool *found)
 {
-  const double kappa = source->constants->kappa;
+  const double kappa = source->lattice->rows.kappa;
   const double stride = (samples->phi[samples->m - 1] - samples->phi[0]) / OUTSIDE_STRIDES;
   const bool before = samples->slope[0] > 0.0;
   double phi = before ? samples->phi[0] : samples->phi[samples->m - 1];
@@ -225,17 +226,18 @@ static double edge_speed(const struct ebb_lattice *lattice)
   return 2.0 * rows->scale * pow(v, growth - 1.0);
 }
 
-/* The model's effective bounce at the mean momentum; of a continuum's grid, that of the loop model with its constants.
- */
-static void effective_at(const struct ebb_source *source, double p, double p_error, struct ebb_bounce *bounce)
+/* The effective bounce of the mean momentum; its error is what the momentum's moves it by. */
+static void effective(const struct ebb_source *source, double p, double p_error, struct ebb_bounce *bounce)
 {
-  const struct ebb_constants *c = source->constants;
-  const double unit = c->volume_unit / sqrt(c->theta_scale), density = c->newton * c->newton * c->critical_density;
-  double volume[2] = {p * unit, p_error * unit}, rho[2] = {density, 4.0 * PETSC_MACHINE_EPSILON * density};
+  struct ebb_rows rows = source->lattice->rows;
+  double volume[2], density[2];
 
-  if (!source->lattice->prescription->continuum) ebb_effective_bounce(&source->lattice->rows, p, p_error, volume, rho);
+  rows.constants = *source->constants;
+  rows.p_phi = source->field_momentum != 0.0 ? source->field_momentum : rows.p_phi;
+  ebb_rows_make(&rows);
+  ebb_effective_bounce(&rows, p, p_error, volume, density);
   bounce->effective_volume = (struct ebb_measured){volume[0], volume[1]};
-  bounce->effective_density = (struct ebb_measured){rho[0], rho[1]};
+  bounce->effective_density = (struct ebb_measured){density[0], density[1]};
 }
 
 /* Volume, density and mode at the bounce clock, with errors from the budget and the independent rule. */
@@ -266,18 +268,23 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
 
     bounce->v = (struct ebb_measured){moment[turns], error[turns]};
   }
+  bounce->volume = (struct ebb_measured){moment[EBB_MOMENT_VOLUME_MEAN], error[EBB_MOMENT_VOLUME_MEAN]};
   bounce->density = (struct ebb_measured){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
   bounce->v_mode = (struct ebb_measured){
       sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};
   p = moment[EBB_MOMENT_MOMENTUM_MEAN];
-  effective_at(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce);
+  effective(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce);
   PetscCall(ebb_sheet_clear(&sheet));
   PetscFunctionReturn(0);
 }
 
-static void derive(const struct ebb_constants *c, struct ebb_bounce *b)
+static void derive(const struct ebb_rows *rows, struct ebb_bounce *b)
 {
-  b->volume = (struct ebb_measured){c->volume_unit * b->v.value, c->volume_unit * b->v.error};
+  const double power = rows->volume_power, volume = rows->volume_unit * ebb_rows_volume(rows, b->v.value);
+
+  /* where V is no multiple of v its own mean stands in b->volume already; a median is one of either */
+  if (power == 1.0 || !strcmp(b->estimator, "median"))
+    b->volume = (struct ebb_measured){volume, power * volume * b->v.error / b->v.value};
   b->ratio.value = b->volume.value / b->effective_volume.value;
   b->ratio.error =
       b->ratio.value * (b->volume.error / b->volume.value + b->effective_volume.error / b->effective_volume.value);
@@ -419,8 +426,9 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     PetscFunctionReturn(0);
   }
   /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
-  bounce->clock = (struct ebb_measured){root, (slope_error + bounce->v.error * source->constants->kappa) / curvature +
-                                                  4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
+  bounce->clock =
+      (struct ebb_measured){root, (slope_error + bounce->v.error * source->lattice->rows.kappa) / curvature +
+                                      4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
   PetscCall(
       refine_median(source, budget, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   if (!mean_exists) {
@@ -429,7 +437,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     bounce->clock = (struct ebb_measured){median_clock, SECTIONED * 3.0 * (high - low) + bounce->clock.error};
     bounce->v = bounce->v_median;
   }
-  derive(source->constants, bounce);
+  derive(&lattice->rows, bounce);
   PetscCall(judge(samples, budget, mean_exists, bounce));
   PetscFunctionReturn(0);
 }

@@ -46,7 +46,7 @@ static struct ebb_rows fixed_length(struct ebb_rows rows, double mu0)
 EFFECTIVE_TEST(fixed_length_bounces_at_a_density_that_depends_on_the_state)
 {
   const double mu0 = 1.5 * sqrt(3.0);
-  const struct ebb_rows rows = fixed_length(ebb_test_effective_rows("slqc", "scalar", NEW_GAP), mu0);
+  const struct ebb_rows rows = ebb_test_effective_rows("mu0", "scalar", NEW_GAP);
   const struct ebb_symbol symbol = ebb_symbol_make(&rows);
   const double factor = sqrt(2.0) * pow(3.0 / (8.0 * EBB_PI * pow(0.2375 * mu0, 2)), 1.5);
   double before = NAN;
@@ -69,7 +69,7 @@ EFFECTIVE_TEST(fixed_length_bounces_at_a_density_that_depends_on_the_state)
 EFFECTIVE_TEST(fixed_length_has_the_classical_limit)
 {
   const double mu0 = 1.5 * sqrt(3.0), w = 4e4, b = 0.3;
-  const struct ebb_rows rows = fixed_length(ebb_test_effective_rows("slqc", "scalar", NEW_GAP), mu0);
+  const struct ebb_rows rows = ebb_test_effective_rows("mu0", "scalar", NEW_GAP);
   const struct ebb_symbol symbol = ebb_symbol_make(&rows);
   const double hubble = sin(2.0 * b) / (2.0 * 0.2375 * mu0 * cbrt(ebb_symbol_volume(&symbol, w)));
   double rate[2];
@@ -79,11 +79,30 @@ EFFECTIVE_TEST(fixed_length_has_the_classical_limit)
   ebb_test_close(symbol.volume_power * rate[0], rows.constants.kappa, exact(rows.constants.kappa));
 }
 
+/* Refinement: lambda(V) = mu0^{1-2x} lambda^{2x} V^{(1-2x)/3}, and at the bounce rho_c(V) = 3/(8 pi G gamma^2
+ * lambda(V)^2) is p^2/(2 V^2), solved for V (own derivation; x = 0 is the formula above). */
+EFFECTIVE_TEST(refined_bounce_has_the_local_critical_density)
+{
+  for (double x = 0.0; x <= 0.5; x += 0.125) {
+    struct ebb_rows rows = ebb_test_effective_rows("refined", "scalar", NEW_GAP);
+    const double p = 500.0, c = pow(rows.fixed_scale, 1.0 - 2.0 * x) * pow(rows.constants.polymer_scale, 2.0 * x);
+    struct ebb_turning_point bounce;
+    double volume;
+
+    rows.refinement = x;
+    ebb_rows_make(&rows);
+    bounce = ebb_test_effective_point(&rows, p, true);
+    volume = pow(p * p * 4.0 * EBB_PI / 3.0 * pow(0.2375 * c, 2), 0.75 / (1.0 + x));
+    ebb_test_close(bounce.volume, volume, exact(volume));
+    ebb_test_close(bounce.density, 0.5 * p * p / (volume * volume), exact(bounce.density));
+  }
+}
+
 /* Holonomies of fixed length with Lambda > 0: the volume is bounded, sin^2 b = 1 in a classical region (the known
  * failure of the scheme: Liegener, Singh, Phys. Rev. D 100, 124049 (2019), arXiv:1908.07543, abstract) */
 EFFECTIVE_TEST(fixed_length_recollapses_for_every_positive_lambda)
 {
-  struct ebb_rows rows = fixed_length(ebb_test_effective_rows("slqc", "scalar", NEW_GAP), 1.5 * sqrt(3.0));
+  struct ebb_rows rows = ebb_test_effective_rows("mu0", "scalar", NEW_GAP);
   struct ebb_turning_points t;
 
   rows.s = 1e-6;
@@ -160,7 +179,7 @@ EFFECTIVE_TEST(mlqc1_far_branch_is_de_sitter)
     ebb_test_close_printed(3.0 * hubble * hubble, printed[i]);
     ebb_test_close(hubble, 1.0 / (rows.constants.polymer_scale * (1.0 + 0.2375 * 0.2375)),
                    ebb_test_solver(10.0, e.density[3], 1.0)); /* what matter is left */
-    cr_expect_gt(e.v[2], 3.0 * e.v[1]);                       /* asymmetric: 0.35 after the bounce against 0.35 before */
+    cr_expect_gt(e.v[2], 3.0 * e.v[1]); /* asymmetric: 0.35 after the bounce against 0.35 before */
     cr_expect_lt(ebb_symbol_hubble(&symbol, e.v[0], e.b[0]), 0.0);
     ebb_test_call(ebb_effective_clear(&e));
   }
