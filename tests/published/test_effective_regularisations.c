@@ -295,3 +295,25 @@ EFFECTIVE_TEST(derivatives_of_every_symbol)
         ebb_test_close(ebb_symbol_at(&y, v, b).f_bb, difference_bb, ebb_test_solver(100.0, h * h, 10.0));
       }
 }
+
+/* The curvature of the closed model at small D, where D^2 - sin^2 D is summed as a series: its share of dF/dv is some
+ * D^2 of the whole, so that the difference is taken where nothing else is left. */
+EFFECTIVE_TEST(curvature_of_large_closed_universes)
+{
+  struct ebb_rows rows = ebb_test_effective_rows("slqc", "scalar", NEW_GAP);
+  const double h = 1e-5;
+  struct ebb_symbol y;
+
+  rows.curvature = EBB_CURVATURE_CLOSED;
+  ebb_rows_make(&rows);
+  y = ebb_symbol_make(&rows);
+  for (double d = 0.03; d < 0.12; d += 0.0175) { /* the series ends at 0.1 */
+    const double v = pow(y.d1 / d, 3.0), u = (1.0 + y.square) * d * d - sin(d) * sin(d);
+    const struct ebb_symbol_value value = ebb_symbol_at(&y, v, 0.0);
+    const double slope = (ebb_symbol_at(&y, v * exp(h), 0.0).f - ebb_symbol_at(&y, v * exp(-h), 0.0).f) / (2.0 * h);
+
+    /* the closed form loses 1/gamma^2 of its digits */
+    ebb_test_close(value.f, u, ebb_test_rounding(64, d * d));
+    ebb_test_close(value.f_x, slope, ebb_test_solver(100.0, h * h, u));
+  }
+}
