@@ -5,7 +5,7 @@
 #ifndef EBBTURN_OBSERVABLES_H
 #define EBBTURN_OBSERVABLES_H
 
-#include "ebbturn/state.h"
+#include "ebbturn/bundle.h"
 
 /* Raw sums over sites, one value per clock sample. Links are pairs of neighbouring sites of one arm, outward. */
 enum ebb_sum {
@@ -40,7 +40,9 @@ enum ebb_sum {
   EBB_SUM_VOLUME, /* V/volume_unit and its square, where V does not go like |v| */
   EBB_SUM_VOLUME2,
   EBB_SUM_ARCTAN, /* arctan(|v|/bounded_scale), where the source has such a scale */
-  EBB_SUM_LAST,   /* |psi|^2 of the arms' last sites */
+  EBB_SUM_FIELD,  /* a further field phi on its circle, and its square */
+  EBB_SUM_FIELD2,
+  EBB_SUM_LAST, /* |psi|^2 of the arms' last sites */
   EBB_SUMS
 };
 /* Ratio of the windows before the edge; wider where the packet's standing waves oscillate more slowly, so that a window
@@ -79,12 +81,18 @@ struct ebb_source {
   void *data;
   PetscInt batch;       /* samples that are best asked for at once; 0 = any */
   double edge_ratio;    /* of the windows before the lattice edge; 0 = EBB_EDGE_RATIO */
+  double field_momentum; /* mean momentum of a further field, for the effective bounce */
   double bounded_scale; /* > 0: arctan(|v|/bounded_scale) is wanted, and EBB_SUM_SLOPE is the slope of its mean */
 };
 
 /* Source over a packet (not owned). Collective. Cost of evaluate: sites x modes x 12 m flops in dgemm, plus a few
  * percent; memory per rank: 16 (24, 32 with state, probability kept) bytes x sites/ranks x m. */
 void ebb_source_packet(struct ebb_source *source, const struct ebb_packet *packet, const struct ebb_lattice *lattice,
+                       const struct ebb_constants *constants, MPI_Comm comm);
+
+/* Source over a bundle (not owned): slice after slice, their sums weighted and added. Keeps no states of its own:
+ * request->state is an error. */
+void ebb_source_bundle(struct ebb_source *source, const struct ebb_bundle *bundle, const struct ebb_lattice *lattice,
                        const struct ebb_constants *constants, MPI_Comm comm);
 
 /* For stepping propagators: sums over this rank's sites from fields given in ascending local order, with two more
@@ -119,6 +127,8 @@ enum ebb_moment {
   EBB_MOMENT_DRESSED_A4,
   EBB_MOMENT_THETA_MEAN,
   EBB_MOMENT_ARCTAN_V_MEAN,
+  EBB_MOMENT_FIELD_MEAN, /* of a further field; called by the field's name in results */
+  EBB_MOMENT_FIELD_SPREAD,
   EBB_MOMENTS
 };
 struct ebb_moment_info {

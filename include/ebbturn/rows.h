@@ -11,7 +11,12 @@
 
 #include <stdbool.h>
 
-enum ebb_curvature { EBB_CURVATURE_NONE, EBB_CURVATURE_CLOSED, EBB_CURVATURE_OPEN };
+enum ebb_curvature {
+  EBB_CURVATURE_NONE,
+  EBB_CURVATURE_CLOSED,
+  EBB_CURVATURE_OPEN,
+  EBB_CURVATURE_CLOSED_CONNECTION /* holonomies of the connection: hops of 2 and 4, a five-point operator */
+};
 
 struct ebb_rows {
   const struct ebb_prescription *prescription;
@@ -21,6 +26,7 @@ struct ebb_rows {
   double s; /* Lambda/Lambda_c */
   enum ebb_curvature curvature;
   double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  bool field;   /* a further field stands beside the volume */
   /* Schemes FIXED and REFINED of the prescription: mu_bar = mu0^{1-2x} lambda^{2x} |p|^{-x}, x = 0 where FIXED. */
   double fixed_scale; /* mu0 */
   double refinement;  /* x in [0, 1/2] */

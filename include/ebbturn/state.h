@@ -17,6 +17,8 @@ struct ebb_profile_input {
   const struct ebb_state_settings *settings;
   const struct ebb_constants *constants;
   double k0, sigma_k; /* centre and standard deviation of |c|^2 in k */
+  double kappa;       /* of the model: momentum = kappa k */
+  double shift;       /* omega^2 = kappa^2 k^2 - shift: the square of a further field's momentum */
   double v0, at;      /* from_effective slides its point to large volume */
   const char *branch;
   const double *file_v; /* profile `file`: sites ascending, and their amplitudes */
@@ -43,6 +45,9 @@ struct ebb_profile {
   double (*reach_lnv)(const struct ebb_profile_input *input);
 };
 
+/* What a clock value turns the phase of mode k by: omega. */
+double ebb_profile_omega(const struct ebb_profile_input *input, double k);
+
 size_t ebb_profiles(void);
 const struct ebb_profile *ebb_profile_at(size_t index);
 const struct ebb_profile *ebb_profile_find(const char *name);
@@ -58,8 +63,10 @@ struct ebb_packet {
   double low_weight;     /* |c|^2 at the lower end of the k interval relative to its maximum: 0 unless cut at k = 0 */
   double channel_purity; /* least |C|^2 of the packet's channel on its own arm, where the share matters; 1 on half
                             lattices */
-  double omega_error;    /* levels: largest error of an omega */
-  double lost;           /* 1 - norm of the l2 vector resolved in the basis: weight outside the k interval */
+  bool clipped;
+  double kept;        /* weight of the modes above request->shift before the rest was renormalised */
+  double omega_error; /* levels: largest error of an omega */
+  double lost;        /* 1 - norm of the l2 vector resolved in the basis: weight outside the k interval */
 };
 
 /* A stored l2 vector, for profile `file` (read by the layer that knows files). */
@@ -75,7 +82,11 @@ struct ebb_state_request {
   const struct ebb_constants *constants;
   const struct ebb_file_state *file; /* [components], or [1] for a plain profile; NULL where no profile is `file` */
   MPI_Comm comm;
+  double kappa; /* of the model; 0: constants->kappa */
+  double shift; /* omega^2 = kappa^2 k^2 - shift; modes below drop out */
 };
+
+double ebb_state_kappa(const struct ebb_state_request *request);
 
 /* How a state is resolved: the nodes in k and the lattice that the clock range needs. */
 struct ebb_plan {

@@ -182,7 +182,12 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
     if (!*code) *code = EBB_EXIT_USAGE;
     PetscFunctionReturn(0);
   }
-  request = (struct ebb_state_request){settings, &run->constants, run->file, comm};
+  request = (struct ebb_state_request){.settings = settings,
+                                       .constants = &run->constants,
+                                       .file = run->file,
+                                       .comm = comm,
+                                       .kappa = run->rows.kappa,
+                                       .shift = -run->rows.kappa * run->rows.kappa * run->rows.gap};
   if (p->grid) {
     const struct ebb_lattice_settings *l = &settings->lattice;
     PetscCall(ebb_lattice_make_grid(p, l->lnv_min, l->lnv_max, l->points, comm, &run->lattice));
@@ -203,6 +208,10 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
       PetscCall(ebb_packet_create_modes(&request, &run->lattice, &run->plan, true, &run->check));
     }
   }
+  if (!run->problem[0] && run->rows.field) {
+    PetscCall(ebb_run_create_bundles(run, &request));
+    if (run->problem[0]) *code = EBB_EXIT_USAGE;
+  }
   PetscFunctionReturn(0);
 }
 
@@ -216,13 +225,8 @@ PetscErrorCode ebb_run_start(struct ebb_run *run)
                                       ebb_propagator_find(ebb_method_name(run->method)),
                                       run->settings->numerics.tolerance, &run->lattice, &run->constants, run->comm));
   else
-    ebb_source_packet(&run->source, run->packet, &run->lattice, &run->constants, run->comm);
-  if (run->check)
-    ebb_source_packet(&run->check_source, run->check,
-                      run->check_lattice.rows.clock ? &run->check_lattice : &run->lattice, &run->constants, run->comm);
-  if (ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY)
-    run->source.bounded_scale = run->check_source.bounded_scale =
-        pow(run->packet->momentum_mean / sqrt(run->rows.scale), 2.0 / run->rows.clock->growth);
+    ebb_run_source(run, false, &run->source);
+  if (run->check) ebb_run_source(run, true, &run->check_source);
   PetscFunctionReturn(0);
 }
 
@@ -231,6 +235,9 @@ PetscErrorCode ebb_run_destroy(struct ebb_run *run)
   PetscFunctionBegin;
   if (run->source.data && (run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV))
     PetscCall(ebb_source_steps_destroy(&run->source));
+  if (run->bundle) run->packet = run->check = NULL; /* theirs */
+  PetscCall(ebb_bundle_destroy(&run->bundle));
+  PetscCall(ebb_bundle_destroy(&run->check_bundle));
   PetscCall(ebb_packet_destroy(&run->packet));
   PetscCall(ebb_packet_destroy(&run->check));
   PetscCall(ebb_plan_clear(&run->plan));
@@ -247,7 +254,7 @@ struct ebb_estimate ebb_run_estimate(const struct ebb_run *run)
 {
   const unsigned keep = run->settings->output.keep;
   const double n = (double)ebb_lattice_size(&run->lattice), modes = (double)run->packet->n;
-  const bool quantiles = run->settings->output.quantiles > 0, state = keep & EBB_KEEP_STATE;
+  const bool quantiles = run->settings->output.quantiles > 0, state = ebb_run_keeps_states(run);
   /* probabilities, their running sums for quantiles, states; per sample and site */
   const double bytes =
       (quantiles || (keep & EBB_KEEP_PROBABILITY) ? 8.0 : 0.0) + (quantiles ? 8.0 : 0.0) + (state ? 16.0 : 0.0);

@@ -25,20 +25,19 @@ static PetscInt sites_wanted(const struct ebb_run *run)
   return 0;
 }
 
-static struct ebb_spectrum_request levels_of(const struct ebb_run *run)
+void ebb_run_extension(const struct ebb_run *run, struct ebb_spectrum_request *levels)
 {
   const struct ebb_gravity_settings *g = &run->settings->gravity;
-  struct ebb_spectrum_request r = {.rows = &run->rows, .tolerance = LEVEL_TOLERANCE, .sites = sites_wanted(run)};
 
   if (!isnan(g->extension_delta)) {
-    r.extension = EBB_EXTENSION_DELTA;
-    r.angle = g->extension_delta;
+    levels->extension = EBB_EXTENSION_DELTA;
+    levels->angle = g->extension_delta;
   } else if (!isnan(g->extension_tau)) {
-    r.extension = EBB_EXTENSION_TAU;
-    r.angle = g->extension_tau;
+    levels->extension = EBB_EXTENSION_TAU;
+    levels->angle = g->extension_tau;
   }
-  r.wall = ebb_rows_nature(&run->rows) == EBB_NATURE_CONTINUOUS;
-  return r;
+  levels->wall =
+      ebb_rows_nature(&run->rows) == EBB_NATURE_CONTINUOUS || ebb_rows_nature(&run->rows) == EBB_NATURE_OVERCRITICAL;
 }
 
 /* The share of <v^2> near the wall, the larger one of both ends of the clock range. */
@@ -69,7 +68,11 @@ static PetscErrorCode place_wall(struct ebb_run *run, const struct ebb_state_req
     PetscCall(ebb_packet_destroy(&run->packet));
     PetscCall(
         ebb_packet_create_levels(request, levels, run->problem, sizeof run->problem, &run->lattice, &run->packet));
-    if (run->problem[0]) break;
+    if (run->problem[0]) { /* a small lattice does not hold high momenta */
+      if (2 * levels->sites > WALL_MOST) break;
+      run->problem[0] = '\0';
+      continue;
+    }
     PetscCall(wall_share(run, &share));
     if (share < TAIL_SHARE * run->settings->numerics.tolerance) break;
     if (2 * levels->sites > WALL_MOST) {
@@ -87,9 +90,13 @@ static PetscErrorCode place_wall(struct ebb_run *run, const struct ebb_state_req
 PetscErrorCode ebb_run_create_levels(struct ebb_run *run, const struct ebb_state_request *request)
 {
   const bool family = ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY;
-  struct ebb_spectrum_request levels = levels_of(run);
+  struct ebb_rows rows = run->rows;
+  struct ebb_spectrum_request levels = {.rows = &rows, .tolerance = LEVEL_TOLERANCE, .sites = sites_wanted(run)};
 
   PetscFunctionBegin;
+  /* beside a further field its mean momentum chooses the lattice */
+  if (rows.field && rows.clock->density_power != 2.0) rows.p_phi = run->settings->matter.momentum;
+  ebb_run_extension(run, &levels);
   if (levels.wall && levels.sites == 0)
     PetscCall(place_wall(run, request, &levels));
   else if (family && levels.sites > 0 && levels.sites < FAMILY_LEAST)

@@ -152,7 +152,7 @@ static void complain_overcritical(const struct ebb_reader *reader, const struct 
 static void check_profile(const struct ebb_reader *reader, const struct ebb_rows *rows)
 {
   const struct ebb_state_settings *state = &reader->settings->state;
-  const bool flat = ebb_rows_is_flat(rows), scalar = !strcmp(rows->clock->kind, "scalar");
+  const bool flat = ebb_rows_is_flat(rows) && rows->volume_power == 1.0, scalar = !strcmp(rows->clock->kind, "scalar");
 
   for (size_t i = 0; i <= state->components; i++) {
     const char *profile = i < state->components ? state->component[i].profile : state->profile;
@@ -173,12 +173,7 @@ static void check_evolution(const struct ebb_reader *reader, const struct ebb_ro
 {
   const enum ebb_nature nature = ebb_rows_nature(rows);
 
-  if (reader->prescription->scheme != EBB_SCHEME_VOLUME)
-    ebb_reader_complain(reader, ebb_reader_given(reader, "gravity.prescription")->origin,
-                        "evolution with prescription '%s' is not available in this version; 'spectrum' and "
-                        "'selfadjoint' are",
-                        reader->prescription->name);
-  else if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
+  if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
     complain_overcritical(reader, rows);
   else if (nature == EBB_NATURE_FAMILY)
     (void)has_extension(reader, rows);
@@ -263,13 +258,14 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
   if (ebb_reader_given(reader, "gravity.area_gap")->node && ebb_reader_given(reader, "gravity.polymer_scale")->node)
     return; /* complained of already */
   if (!consistent(reader)) return;
+  rows = ebb_rows_of_settings(reader->settings);
+  ebb_reader_check_matter(reader, &rows);
   if (reader->prescription->grid) {
     if (reader->need & EBB_NEED_SPECTRUM)
       ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"), "prescription '%s' has a continuous spectrum",
                           reader->prescription->name);
     return;
   }
-  rows = ebb_rows_of_settings(reader->settings);
   check_extension(reader, &rows);
   if (reader->need & EBB_NEED_CLOCK_RANGE) check_evolution(reader, &rows);
   if ((reader->need & EBB_NEED_SPECTRUM) && has_eigenvalues(reader, &rows)) check_wanted(reader, &rows);

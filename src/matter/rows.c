@@ -25,7 +25,8 @@ static void make_refined(struct ebb_rows *rows)
 void ebb_rows_make(struct ebb_rows *rows)
 {
   const struct ebb_constants *c = &rows->constants;
-  const double cell = rows->curvature == EBB_CURVATURE_CLOSED ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
+  const bool closed = rows->curvature == EBB_CURVATURE_CLOSED || rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION;
+  const double cell = closed ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
 
   rows->scale = rows->clock->scale(c);
   rows->volume_unit = c->volume_unit;
@@ -70,6 +71,7 @@ struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings)
       .refinement = g->refinement_exponent,
   };
 
+  rows.field = settings->matter.kind[0] != '\0';
   rows.s = g->cosmological_constant / rows.constants.critical_lambda;
   ebb_rows_make(&rows);
   return rows;

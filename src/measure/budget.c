@@ -20,9 +20,13 @@ const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS] = {
 };
 
 /* Moments that may vanish are compared with their own bound instead of their value. */
-static double scale_of(const struct ebb_constants *c, int which, double value)
+static double scale_of(const struct ebb_constants *c, int which, const double moment[])
 {
+  const double value = moment[which];
+
   switch (which) {
+  case EBB_MOMENT_FIELD_MEAN:
+    return fmax(fabs(value), moment[EBB_MOMENT_FIELD_SPREAD]);
   case EBB_MOMENT_HUBBLE_MEAN:
   case EBB_MOMENT_HUBBLE_SPREAD:
     return fmax(fabs(value), c->hubble_max);
@@ -196,7 +200,7 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   double contribution[EBB_CONTRIBUTIONS];
 
   for (int i = 0; i < EBB_MOMENTS; i++)
-    error[i] = scale_of(c, i, moment[i]) * (budget->quadrature[i] + common + edge0 + 2.0 * state);
+    error[i] = scale_of(c, i, moment) * (budget->quadrature[i] + common + edge0 + 2.0 * state);
   contribution[EBB_ERROR_EDGE] = family ? edge0 : edge1 / v;
   contribution[EBB_ERROR_QUADRATURE] = budget->quadrature[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN];
   contribution[EBB_ERROR_NORMALISATION] = normalisation;
@@ -227,7 +231,16 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
     const double variance = 4.0 * (p * p + dp * dp) * (common + edge0 + 2.0 * state);
     error[EBB_MOMENT_MOMENTUM_SPREAD] = dp * budget->quadrature[EBB_MOMENT_MOMENTUM_SPREAD] + root_error(variance, dp);
   }
-  if (lattice->rows.volume_power == 1.0) {
+  if (lattice->rows.volume_power != 1.0) { /* V = v^power: to first order of its spread, edges by the steeper weight */
+    const double power = lattice->rows.volume_power, mean = moment[EBB_MOMENT_VOLUME_MEAN];
+    const double tail = power * fmax(edge1 / v, edge2 / (v * v));
+
+    error[EBB_MOMENT_VOLUME_MEAN] =
+        mean * (budget->quadrature[EBB_MOMENT_VOLUME_MEAN] + power * (common + far / v) + tail);
+    error[EBB_MOMENT_VOLUME_SPREAD] = moment[EBB_MOMENT_VOLUME_SPREAD] * budget->quadrature[EBB_MOMENT_VOLUME_SPREAD] +
+                                      root_error(4.0 * mean * mean * power * (common + tail + 2.0 * state * v_max / v),
+                                                 moment[EBB_MOMENT_VOLUME_SPREAD]);
+  } else {
     error[EBB_MOMENT_VOLUME_MEAN] = c->volume_unit * error[EBB_MOMENT_V_MEAN];
     error[EBB_MOMENT_VOLUME_SPREAD] = c->volume_unit * error[EBB_MOMENT_V_SPREAD];
   }
@@ -281,7 +294,7 @@ void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c
     ebb_moments_from_sums(c, lattice, rule, s, a);
     ebb_moments_from_sums(c, lattice, check, s, b);
     for (int i = 0; i < EBB_MOMENTS; i++) {
-      const double scale = scale_of(c, i, a[i]);
+      const double scale = scale_of(c, i, a);
       if (scale > 0.0) budget->quadrature[i] = fmax(budget->quadrature[i], fabs(a[i] - b[i]) / scale);
     }
     for (size_t q = 0; q < levels; q++) {

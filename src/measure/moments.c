@@ -33,6 +33,8 @@ const struct ebb_moment_info ebb_moment_table[EBB_MOMENTS] = {
     [EBB_MOMENT_ARCTAN_V_MEAN] = {"arctan_v_mean", "1",
                                   "mean of arctan(|v|/v_effective), bounded where |v| has no mean; v_effective: "
                                   "effective bounce"},
+    [EBB_MOMENT_FIELD_MEAN] = {"field_mean", "1/sqrt(G)", "mean of the further field"},
+    [EBB_MOMENT_FIELD_SPREAD] = {"field_spread", "1/sqrt(G)", "standard deviation of the further field"},
 };
 
 static double spread(double square, double mean) { return sqrt(fmax(square - mean * mean, 0.0)); }
@@ -78,6 +80,9 @@ bool ebb_moment_exists(const struct ebb_lattice *lattice, enum ebb_moment moment
     return rows->volume_power == 1.0;
   case EBB_MOMENT_ARCTAN_V_MEAN:
     return family;
+  case EBB_MOMENT_FIELD_MEAN:
+  case EBB_MOMENT_FIELD_SPREAD:
+    return rows->field;
   default:
     return true;
   }
@@ -132,6 +137,8 @@ void ebb_moments_from_sums(const struct ebb_constants *c, const struct ebb_latti
   moment[EBB_MOMENT_DRESSED_A4] =
       cbrt(pow(rows.volume_unit, 4.0)) * sheet->sum[EBB_SUM_DRESSED][s] / sheet->sum[EBB_SUM_INVERSE][s];
   moment[EBB_MOMENT_ARCTAN_V_MEAN] = sheet->sum[EBB_SUM_ARCTAN][s] / norm;
+  moment[EBB_MOMENT_FIELD_MEAN] = sheet->sum[EBB_SUM_FIELD][s] / norm;
+  moment[EBB_MOMENT_FIELD_SPREAD] = spread(sheet->sum[EBB_SUM_FIELD2][s] / norm, moment[EBB_MOMENT_FIELD_MEAN]);
   for (int i = 0; i < EBB_MOMENTS; i++)
     if (!ebb_moment_exists(lattice, i)) moment[i] = NAN;
 }

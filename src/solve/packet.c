@@ -9,7 +9,7 @@ enum { ROWS = 256, FEWEST_LEVELS = 2 };
 static const double NEGLIGIBLE = 1e-27; /* of a level's share: below the rounding of an overlap */
 static const double MARGIN = 1.1;       /* the symbol is the operator's at large v; near v = 0 there is a little more */
 
-static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_constants *constants,
+static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_state_request *request,
                                struct ebb_packet **packet)
 {
   const PetscInt n = ebb_basis_size(basis);
@@ -21,10 +21,14 @@ static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_constan
   p->basis = basis;
   p->n = n;
   p->channel_purity = 1.0;
+  p->clipped = request->shift > 0.0;
   PetscCall(PetscMalloc1(n, &p->amplitude));
   PetscCall(PetscMalloc1(n, &p->omega));
   PetscCall(PetscMalloc1(n, &p->share));
-  for (PetscInt j = 0; j < n; j++) p->omega[j] = constants->kappa * ebb_basis_k(basis)[j];
+  for (PetscInt j = 0; j < n; j++) {
+    p->omega[j] = ebb_state_kappa(request) * ebb_basis_k(basis)[j];
+    if (request->shift != 0.0) p->omega[j] = sqrt(fmax(p->omega[j] * p->omega[j] - request->shift, 0.0));
+  }
   PetscFunctionReturn(0);
 }
 
@@ -32,13 +36,21 @@ static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_constan
  * a function with w |c|^2 = 1 (1, or 1/2 for a cosine beside its sine). */
 static void finish(struct ebb_packet *p, const double w[], double norm, const double complex c[])
 {
-  double peak = 0.0, p2 = 0.0;
+  double peak = 0.0, p2 = 0.0, kept = 0.0;
   const struct ebb_mode_info *info = ebb_basis_info(p->basis);
 
   for (PetscInt j = 0; j < p->n; j++) {
     p->amplitude[j] = w[j] * c[j];
     p->share[j] = norm * w[j] * creal(c[j] * conj(c[j]));
+    if (p->clipped && p->omega[j] <= 0.0) p->amplitude[j] = p->share[j] = 0.0;
+    kept += p->share[j];
     peak = fmax(peak, creal(c[j] * conj(c[j])));
+  }
+  p->kept = p->clipped ? kept : 1.0;
+  for (PetscInt j = 0; j < p->n; j++) {
+    if (p->share[j] == 0.0) continue;
+    p->amplitude[j] /= sqrt(p->kept);
+    p->share[j] /= p->kept;
     p->momentum_mean += p->share[j] * p->omega[j];
     p->inverse_momentum_mean += p->share[j] / p->omega[j];
   }
@@ -94,7 +106,7 @@ PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, 
     }
   }
   PetscCall(ebb_basis_create_modes(lattice, n, k, channel, &basis));
-  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(allocate(basis, request, packet));
   PetscCall(
       ebb_components_coefficients(&components, basis, lattice, channel, w, one, request->comm, c, &(*packet)->lost));
   finish(*packet, w, 1.0, c);
@@ -126,7 +138,7 @@ PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *requ
   *packet = NULL;
   PetscCall(ebb_components_resolve(request, &components));
   PetscCall(ebb_basis_create_eigenpairs(lattice, &basis));
-  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(allocate(basis, request, packet));
   n = ebb_basis_size(basis);
   k = ebb_basis_k(basis);
   PetscCall(PetscMalloc3(n, &w, n, &cell, n, &c));
@@ -172,8 +184,8 @@ static void interval_of(const struct ebb_components *components, const struct eb
       continue;
     }
     components->profile[i]->reach_k(in, &a, &b);
-    a *= in->constants->kappa;
-    b *= in->constants->kappa;
+    a *= in->kappa;
+    b *= in->kappa;
     *low = fmin(*low, root ? a * a : a);
     *high = fmax(*high, root ? b * b : b);
   }
@@ -199,8 +211,8 @@ static PetscErrorCode levels_packet(const struct ebb_state_request *request, con
   double complex *c;
 
   PetscFunctionBegin;
-  PetscCall(ebb_basis_create_levels(spectrum, request->constants->kappa, root, &basis));
-  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(ebb_basis_create_levels(spectrum, ebb_state_kappa(request), root, &basis));
+  PetscCall(allocate(basis, request, packet));
   for (PetscInt j = 0; j < spectrum->n; j++)
     (*packet)->omega_error =
         fmax((*packet)->omega_error, root ? 0.5 * spectrum->error[j] / (*packet)->omega[j] : spectrum->error[j]);
@@ -300,11 +312,11 @@ PetscErrorCode ebb_packet_create_waves(const struct ebb_state_request *request, 
   j0 = PetscMax((PetscInt)ceil(low / step), 1);
   n = PetscMax((PetscInt)floor(high / step) - j0 + 1, 1);
   PetscCall(ebb_basis_create_waves(lattice, j0, n, &basis));
-  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(allocate(basis, request, packet));
   PetscCall(PetscMalloc2(2 * n, &w, 2 * n, &c));
   for (PetscInt j = 0; j < n; j++) {
     const double k = ebb_basis_k(basis)[2 * j], x = (k - components.input[0].k0) / (2.0 * components.input[0].sigma_k);
-    const double complex spectral = cexp(-(1.0 + I * s->squeeze) * x * x - I * k * request->constants->kappa * s->at);
+    const double complex spectral = cexp(-(1.0 + I * s->squeeze) * x * x - I * k * ebb_state_kappa(request) * s->at);
     const double complex plus = in ? spectral * cexp(-I * k * s->lnv0) : 0.0;  /* exp(+ikx), contracting */
     const double complex minus = out ? spectral * cexp(I * k * s->lnv0) : 0.0; /* exp(-ikx), expanding */
 
@@ -354,6 +366,10 @@ PetscErrorCode ebb_phases_make(const struct ebb_packet *packet, PetscInt m, cons
   PetscCall(PetscMalloc1((size_t)packet->n * (size_t)phases->columns, &phases->table));
   for (PetscInt j = 0; j < packet->n; j++) {
     double *row = phases->table + (size_t)j * (size_t)phases->columns;
+    if (packet->amplitude[j] == 0.0) {
+      PetscCall(PetscArrayzero(row, phases->columns));
+      continue;
+    }
     for (PetscInt s = 0; s < m; s++) {
       const double complex a = packet->amplitude[j] * cexp(I * packet->omega[j] * phi[s]);
       for (PetscInt f = 0; f < fields; f++) {

@@ -46,7 +46,7 @@ static PetscErrorCode evaluate_all(struct work *w, const struct ebb_invocation *
   const struct ebb_sheet_request request = {.levels = o->quantiles,
                                             .level = o->quantile,
                                             .probability = (o->keep & EBB_KEEP_PROBABILITY) != 0,
-                                            .state = (o->keep & EBB_KEEP_STATE) != 0};
+                                            .state = ebb_run_keeps_states(&w->run)};
   const PetscInt batch = w->run.source.batch ? w->run.source.batch : ebb_run_estimate(&w->run).batch;
   const bool steps = w->run.method == EBB_METHOD_CHEBYSHEV || w->run.method == EBB_METHOD_KRYLOV;
   struct ebb_progress progress;

@@ -7,6 +7,9 @@ static double edge(const struct ebb_prescription *p, double sector) { return p->
 static double weight(const struct ebb_prescription *p, double v) { return p->square(v) / fabs(v); }
 static double scale(const struct ebb_constants *c) { return c->theta_scale / (2.0 * c->volume_unit); }
 
+/* p_phi^2/(2 V) */
+static double kinetic(const struct ebb_constants *c, double v) { return 0.5 / (c->volume_unit * fabs(v)); }
+
 const struct ebb_clock ebb_clock_dust_densitised = {
     .name = "dust_densitised",
     .kind = "dust",
@@ -23,4 +26,5 @@ const struct ebb_clock ebb_clock_dust_densitised = {
     .edge = edge,
     .weight = weight,
     .scale = scale,
+    .kinetic = kinetic,
 };

@@ -7,6 +7,14 @@ static double edge(const struct ebb_prescription *p, double sector) { return p->
 static double weight(const struct ebb_prescription *p, double v) { return p->square(v); }
 static double scale(const struct ebb_constants *c) { return c->theta_scale; }
 
+/* another massless scalar: p_phi^2 + p_2^2 = Theta */
+static double kinetic(const struct ebb_constants *c, double v)
+{
+  (void)c;
+  (void)v;
+  return 1.0;
+}
+
 const struct ebb_clock ebb_clock_scalar = {
     .name = "scalar",
     .kind = "scalar",
@@ -23,4 +31,5 @@ const struct ebb_clock ebb_clock_scalar = {
     .edge = edge,
     .weight = weight,
     .scale = scale,
+    .kinetic = kinetic,
 };
