@@ -173,12 +173,7 @@ static void check_evolution(const struct ebb_reader *reader, const struct ebb_ro
 {
   const enum ebb_nature nature = ebb_rows_nature(rows);
 
-  if (reader->prescription->scheme != EBB_SCHEME_VOLUME)
-    ebb_reader_complain(reader, ebb_reader_given(reader, "gravity.prescription")->origin,
-                        "evolution with prescription '%s' is not available in this version; 'spectrum' and "
-                        "'selfadjoint' are",
-                        reader->prescription->name);
-  else if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
+  if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
     complain_overcritical(reader, rows);
   else if (nature == EBB_NATURE_FAMILY)
     (void)has_extension(reader, rows);

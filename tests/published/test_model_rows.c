@@ -157,3 +157,22 @@ Test(model_rows, natures)
                  (int)known[i].curvature);
   }
 }
+
+/* Dust on v = 4n without Lambda: the recursion in the energy x cD from the first site gives Laguerre functions, e_x(n)
+ * = sqrt(x e^{-x}/n) L^{(1)}_{n-1}(x) (su(1,1), derived; recomputed independently at x = 2.5, n = 6); 64 eps: six steps
+ */
+Test(model_rows, dust_functions_are_laguerre_functions)
+{
+  const struct ebb_rows rows = make("smmo", "dust_symmetric_sqrt", 4.0, 0.0, EBB_CURVATURE_NONE);
+  const double x = 2.5, energy = x * rows.scale;
+  double before = 0.0, here = sqrt(x * exp(-x)); /* L_0 = 1 */
+
+  for (int n = 1; n < 6; n++) {
+    const double v = 4.0 * n, below = n > 1 ? ebb_rows_offdiagonal(&rows, v - 4.0) * before : 0.0;
+    const double next = ((energy - ebb_rows_diagonal(&rows, v)) * here - below) / ebb_rows_offdiagonal(&rows, v);
+
+    before = here;
+    here = next;
+  }
+  ebb_test_close(here, 0.16446964704366791607, ebb_test_rounding(64, 1.0));
+}
