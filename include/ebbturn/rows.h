@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: BSD-2-Clause
  *
  * Layer L1 (matter). The constraint of a whole model, prescription with clock, cosmological constant and curvature, as
- * a real symmetric tridiagonal matrix. Pure functions of doubles: no PETSc, no allocation, cannot fail. Knows L0 and
- * operators. */
+ * a real symmetric matrix with one or two bands beside the diagonal. Pure functions of doubles: no PETSc, no
+ * allocation, cannot fail. Knows L0 and operators. */
 #ifndef EBBTURN_ROWS_H
 #define EBBTURN_ROWS_H
 
@@ -11,7 +11,12 @@
 
 #include <stdbool.h>
 
-enum ebb_curvature { EBB_CURVATURE_NONE, EBB_CURVATURE_CLOSED, EBB_CURVATURE_OPEN };
+enum ebb_curvature {
+  EBB_CURVATURE_NONE,
+  EBB_CURVATURE_CLOSED,
+  EBB_CURVATURE_OPEN,
+  EBB_CURVATURE_CLOSED_CONNECTION /* holonomies of the connection: hops of 2 and 4, a five-point operator */
+};
 
 struct ebb_rows {
   const struct ebb_prescription *prescription;
@@ -20,16 +25,20 @@ struct ebb_rows {
   double sector;
   double s; /* Lambda/Lambda_c */
   enum ebb_curvature curvature;
-  double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  double p_phi;             /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  double lorentzian_weight; /* five-point prescriptions */
   /* filled by ebb_rows_make */
   double scale;                     /* the operator is scale times measure, hop, edge and potential */
   double volume_unit, volume_power; /* physical volume V = volume_unit |v|^volume_power */
   double kappa, gap;                /* flat, Lambda = 0, scalar clock: omega^2 = kappa^2 (k^2 + gap) */
-  bool half;                        /* v = sector + 4n, n >= 0; false: sector + 4Z */
+  bool half;                        /* v = sector + step n, n >= 0; false: sector + step Z */
+  double step;                      /* of the lattice: 4, or 2 (then the sector is reduced into (0, 2]) */
+  int band;                         /* bands beside the diagonal: 1, or 2 for five-point operators */
+  double w[2];                      /* band 2: weights of S_step and S_2step, see ebbturn/operators.h */
   double d1;                        /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
 };
 
-/* Completes rows whose first seven members are set. Sizes of the cell: V = 2 pi^2 a^3 (closed, the whole three-sphere),
+/* Completes rows whose first eight members are set. Sizes of the cell: V = 2 pi^2 a^3 (closed, the whole three-sphere),
  * V = a^3 (open, a cell of unit volume in the unit hyperbolic metric). */
 void ebb_rows_make(struct ebb_rows *rows);
 /* The flat model with a scalar clock of any prescription, grids included, in units of gamma = lambda = G = 1. */
@@ -37,7 +46,7 @@ struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, doubl
 /* The rows of a model whose settings are resolved and good, on a volume lattice. */
 struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings);
 
-/* Flux form, in units of scale; v: a lattice value (signed on full lattices). */
+/* Flux form, in units of scale (band 1); v: a lattice value (signed on full lattices). */
 double ebb_rows_measure(const struct ebb_rows *rows, double v);
 double ebb_rows_hop(const struct ebb_rows *rows, double v);
 double ebb_rows_edge(const struct ebb_rows *rows); /* C below the first site of a half lattice */
@@ -47,23 +56,34 @@ double ebb_rows_edge(const struct ebb_rows *rows); /* C below the first site of 
  * 023523 (2007), gr-qc/0612070). Forms from memory; their effective limits were verified. */
 double ebb_rows_potential(const struct ebb_rows *rows, double v);
 
-/* Matrix elements <v|.|v> and <v|.|v+4>, scale included. */
+/* Matrix elements <v|.|v>, <v|.|v+step> and <v|.|v+2 step>, scale included. Real: with holonomies of the connection the
+ * gauge |sector + 2m> -> i^m |sector + 2m> has been taken out. */
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v);
 double ebb_rows_offdiagonal(const struct ebb_rows *rows, double v);
+double ebb_rows_second(const struct ebb_rows *rows, double v); /* 0 where band is 1 */
+
+/* Five-point operators without curvature: the large-volume symbol is v^2 f(x), x = sin^2(step beta/4),
+ * f = w[0] x + 4 w[1] x (1 - x); its zero beside x = 0, where oscillations that never die out live if it lies in (0,
+ * 1). INFINITY: none. */
+double ebb_rows_far_zero(const struct ebb_rows *rows);
 
 /* What the operator on the infinite lattice is, by the large-volume behaviour of its solutions: with U -> -s the symbol
  * is v^growth (sin^2 b - s), and the time to infinite volume is finite, so that a boundary condition is missing there,
  * where s in (0, 1) and growth > 1, or where s = 0, the curvature is open and growth > 4/3. */
 enum ebb_nature {
-  EBB_NATURE_DISCRETE,    /* essentially self-adjoint, bounded below, discrete */
-  EBB_NATURE_CONTINUOUS,  /* essentially self-adjoint, with continuous spectrum */
-  EBB_NATURE_FAMILY,      /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
-  EBB_NATURE_OVERCRITICAL /* Lambda >= Lambda_c: no positive spectrum */
+  EBB_NATURE_DISCRETE,     /* essentially self-adjoint, bounded below, discrete */
+  EBB_NATURE_CONTINUOUS,   /* essentially self-adjoint, with continuous spectrum */
+  EBB_NATURE_FAMILY,       /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
+  EBB_NATURE_OVERCRITICAL, /* Lambda >= Lambda_c: no positive spectrum */
+  /* five-point operators */
+  EBB_NATURE_FAMILY_CONTINUOUS, /* a family of extensions, each with positive continuous spectrum and negative
+                                 * eigenvalues without end */
+  EBB_NATURE_UNLABELLED /* with Lambda or curvature: no label of extensions is known, only a verdict can be given */
 };
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows);
 
 /* |v| beyond which eigenfunctions of a low eigenvalue of a discrete operator have fallen by exp(-depth): psi ~
- * exp(-(v/2) arcsinh sqrt|s|) for Lambda < 0, exp(-(3/4) gamma d1 v^{2/3}) where closed. */
+ * exp(-(v/2) arcsinh sqrt|s|) for Lambda < 0, exp(-(3/4) gamma d1 v^{2/3}) where closed, either way. */
 double ebb_rows_reach(const struct ebb_rows *rows, double depth);
 
 #endif

@@ -20,6 +20,7 @@ static const struct ebb_given *beyond(const struct ebb_reader *reader)
     return ebb_reader_given(reader,
                             ebb_reader_taken(reader, lambda) ? lambda : "gravity.cosmological_constant_over_critical");
   if (strcmp(s->clock.kind, "scalar") != 0) return ebb_reader_given(reader, "clock.kind");
+  if (reader->prescription->split) return ebb_reader_given(reader, "gravity.prescription");
   return NULL;
 }
 
@@ -32,6 +33,8 @@ static bool consistent(const struct ebb_reader *reader)
   const struct ebb_given *delta = ebb_reader_given(reader, "gravity.extension.delta");
   const struct ebb_given *tau = ebb_reader_given(reader, "gravity.extension.tau");
   const struct ebb_given *ordering = ebb_reader_given(reader, "clock.ordering"), *far = beyond(reader);
+  const struct ebb_given *weight = ebb_reader_given(reader, "gravity.lorentzian_weight");
+  const bool connection = !strcmp(s->gravity.curvature, "closed_connection"), five = reader->prescription->split;
 
   if (lambda->node && ratio->node)
     ebb_reader_complain(reader, ebb_reader_later(lambda, ratio),
@@ -40,6 +43,20 @@ static bool consistent(const struct ebb_reader *reader)
   else if (delta->node && tau->node)
     ebb_reader_complain(reader, ebb_reader_later(delta, tau),
                         "gravity.extension takes delta or tau, at most one of them");
+  else if (weight->node && !five)
+    ebb_reader_complain(reader, weight->origin,
+                        "gravity.lorentzian_weight belongs to prescriptions mlqc1 and mlqc2, not to '%s'",
+                        reader->prescription->name);
+  else if (connection && strcmp(reader->prescription->name, "slqc") != 0 &&
+           strcmp(reader->prescription->name, "smmo") != 0)
+    ebb_reader_complain(reader, ebb_reader_given(reader, "gravity.curvature")->origin,
+                        "gravity.curvature = 'closed_connection' is ordered for prescriptions slqc and smmo, not for "
+                        "'%s'",
+                        reader->prescription->name);
+  else if ((connection || five) && strcmp(s->clock.kind, "scalar") != 0)
+    ebb_reader_complain(reader, ebb_reader_given(reader, "clock.kind")->origin,
+                        "clock.kind = '%s' is not available with hops of two sizes (%s); take clock.kind: scalar",
+                        s->clock.kind, five ? reader->prescription->name : "closed_connection");
   else if (ordering->taken && strcmp(s->clock.kind, "dust") != 0)
     ebb_reader_complain(reader, ordering->origin, "clock.ordering belongs to clock.kind 'dust', not to '%s'",
                         s->clock.kind);
@@ -56,6 +73,54 @@ static bool consistent(const struct ebb_reader *reader)
   return false;
 }
 
+static void complain_of_label(const struct ebb_reader *reader, struct ebb_origin origin)
+{
+  ebb_reader_complain(reader, origin,
+                      "with hops of two sizes and a cosmological constant or curvature 'selfadjoint' gives a verdict, "
+                      "but no label of extensions is known: no evolution, no spectrum");
+}
+
+/* Five-point operators whose theory a run would have to choose; false with a problem. */
+static bool chosen(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const bool given = ebb_reader_given(reader, "gravity.extension.delta")->node ||
+                     ebb_reader_given(reader, "gravity.extension.tau")->node;
+  const struct ebb_origin origin = ebb_reader_section(reader, "gravity");
+  const enum ebb_nature nature = ebb_rows_nature(rows);
+
+  if (given || (nature != EBB_NATURE_UNLABELLED && nature != EBB_NATURE_FAMILY_CONTINUOUS)) return true;
+  if (nature == EBB_NATURE_UNLABELLED)
+    complain_of_label(reader, origin);
+  else
+    ebb_reader_complain(reader, origin,
+                        "gravity.extension is missing: the deficiency indices are (1,1), so there is a family of "
+                        "self-adjoint extensions, each with a theory of its own; give extension: {delta: ...}");
+  return false;
+}
+
+/* A five-point operator with an extension that is given: does this label belong there? False with a problem. */
+static bool label_fits(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const struct ebb_given *delta = ebb_reader_given(reader, "gravity.extension.delta");
+  const struct ebb_given *tau = ebb_reader_given(reader, "gravity.extension.tau");
+
+  if (!delta->taken && !tau->taken) return true;
+  switch (ebb_rows_nature(rows)) {
+  case EBB_NATURE_UNLABELLED:
+    complain_of_label(reader, (delta->taken ? delta : tau)->origin);
+    return false;
+  case EBB_NATURE_FAMILY_CONTINUOUS:
+    if (delta->taken) return true;
+    ebb_reader_complain(reader, tau->origin,
+                        "gravity.extension.tau labels operators with hops of one size; prescription '%s' takes "
+                        "gravity.extension.delta",
+                        rows->prescription->name);
+    return false;
+  default:
+    return true; /* an extension of what needs none is complained of as elsewhere */
+  }
+}
+
 /* An extension that is given: does the operator need one, and has it this label? */
 static void check_extension(const struct ebb_reader *reader, const struct ebb_rows *rows)
 {
@@ -63,6 +128,7 @@ static void check_extension(const struct ebb_reader *reader, const struct ebb_ro
   const struct ebb_given *given = delta->node ? delta : ebb_reader_given(reader, "gravity.extension.tau");
 
   if (!given->taken) return;
+  if (rows->band == 2 && ebb_rows_nature(rows) == EBB_NATURE_FAMILY_CONTINUOUS) return; /* its label was looked at */
   if (ebb_rows_nature(rows) != EBB_NATURE_FAMILY)
     ebb_reader_complain(reader, given->origin,
                         "gravity.extension does not belong here: the operator is essentially self-adjoint; leave it "
@@ -85,6 +151,11 @@ static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_ro
                      ebb_reader_given(reader, "gravity.extension.tau")->node;
   const struct ebb_origin origin = ebb_reader_section(reader, "gravity");
 
+  if (rows->band == 2) {
+    ebb_reader_complain(reader, origin,
+                        "spectra of operators with hops of two sizes are not available in this version");
+    return false;
+  }
   switch (ebb_rows_nature(rows)) {
   case EBB_NATURE_DISCRETE:
     return true;
@@ -103,6 +174,10 @@ static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_ro
     ebb_reader_complain(reader, origin,
                         "this model has a continuous spectrum; 'spectrum' lists discrete ones in this version: a "
                         "negative cosmological constant, a closed model, or an extension");
+    return false;
+  case EBB_NATURE_FAMILY_CONTINUOUS:
+    return given; /* without: complained of already */
+  case EBB_NATURE_UNLABELLED:
     return false;
   case EBB_NATURE_OVERCRITICAL:
     ebb_reader_complain(reader, origin,
@@ -125,7 +200,8 @@ static void check_wanted(const struct ebb_reader *reader, const struct ebb_rows 
   else if (!count->node && !interval->node)
     ebb_reader_complain(reader, ebb_reader_section(reader, "spectrum"),
                         "spectrum.count is missing; say how many (count: 10) or where (interval: [a, b])");
-  else if (count->node && ebb_rows_nature(rows) == EBB_NATURE_FAMILY)
+  else if (count->node &&
+           (ebb_rows_nature(rows) == EBB_NATURE_FAMILY || ebb_rows_nature(rows) == EBB_NATURE_FAMILY_CONTINUOUS))
     ebb_reader_complain(reader, count->origin,
                         "spectrum.count: there is no lowest eigenvalue, the spectrum of every extension goes to minus "
                         "infinity; give spectrum.interval");
@@ -142,6 +218,7 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
                                        "gravity.polymer_scale",
                                        "gravity.sector",
                                        "gravity.curvature",
+                                       "gravity.lorentzian_weight",
                                        "clock.kind",
                                        "clock.ordering",
                                        "gravity.cosmological_constant",
@@ -157,6 +234,18 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
   if (ebb_reader_given(reader, "gravity.area_gap")->node && ebb_reader_given(reader, "gravity.polymer_scale")->node)
     return; /* complained of already */
   if (!consistent(reader)) return;
+  if (!reader->prescription->grid) {
+    rows = ebb_rows_of_settings(reader->settings);
+    if (rows.band == 2 && rows.w[1] == 0.0) {
+      ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"),
+                          "gravity.lorentzian_weight = %.15g leaves prescription '%s' hops of one size only; take "
+                          "prescription slqc",
+                          rows.lorentzian_weight, rows.prescription->name);
+      return;
+    }
+    if (rows.band == 2 && !label_fits(reader, &rows)) return;
+    if (rows.band == 2 && (reader->need & (EBB_NEED_CLOCK_RANGE | EBB_NEED_SPECTRUM)) && !chosen(reader, &rows)) return;
+  }
   far = beyond(reader);
   if (far && (reader->need & EBB_NEED_CLOCK_RANGE)) {
     ebb_reader_complain(reader, far->origin, "evolution of this model is not available in this version; 'spectrum' is");
@@ -168,7 +257,6 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
                           reader->prescription->name);
     return;
   }
-  rows = ebb_rows_of_settings(reader->settings);
   check_extension(reader, &rows);
   if ((reader->need & EBB_NEED_SPECTRUM) && has_eigenvalues(reader, &rows)) check_wanted(reader, &rows);
 }

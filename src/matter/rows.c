@@ -1,20 +1,26 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/rows.h"
 
+#include "rows_five.h"
+
 #include <math.h>
 #include <string.h>
 
 void ebb_rows_make(struct ebb_rows *rows)
 {
   const struct ebb_constants *c = &rows->constants;
-  const double cell = rows->curvature == EBB_CURVATURE_CLOSED ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
+  const bool closed = rows->curvature == EBB_CURVATURE_CLOSED || rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION;
+  const double cell = closed ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
 
   rows->scale = rows->clock->scale(c);
   rows->volume_unit = c->volume_unit;
   rows->volume_power = 1.0;
   rows->kappa = c->kappa;
   rows->gap = 0.0;
-  rows->half = rows->prescription->grid || ebb_prescription_half(rows->prescription, rows->sector);
+  rows->step = 4.0;
+  rows->band = 1;
+  ebb_rows_five_make(rows);
+  rows->half = rows->band == 2 || rows->prescription->grid || ebb_prescription_half(rows->prescription, rows->sector);
   rows->d1 = rows->curvature == EBB_CURVATURE_NONE ? 0.0 : c->polymer_scale * cbrt(cell / c->volume_unit);
 }
 
@@ -32,6 +38,7 @@ struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, doubl
 static enum ebb_curvature curvature_find(const char *name)
 {
   if (!strcmp(name, "closed")) return EBB_CURVATURE_CLOSED;
+  if (!strcmp(name, "closed_connection")) return EBB_CURVATURE_CLOSED_CONNECTION;
   return strcmp(name, "open") ? EBB_CURVATURE_NONE : EBB_CURVATURE_OPEN;
 }
 
@@ -44,6 +51,7 @@ struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings)
       .constants = ebb_constants_make(g->newton, g->immirzi, g->polymer_scale),
       .sector = g->sector,
       .curvature = curvature_find(g->curvature),
+      .lorentzian_weight = isnan(g->lorentzian_weight) ? 1.0 : g->lorentzian_weight,
   };
 
   rows.s = g->cosmological_constant / rows.constants.critical_lambda;
@@ -55,7 +63,10 @@ double ebb_rows_measure(const struct ebb_rows *rows, double v) { return rows->cl
 
 double ebb_rows_hop(const struct ebb_rows *rows, double v) { return rows->clock->hop(rows->prescription, v); }
 
-double ebb_rows_edge(const struct ebb_rows *rows) { return rows->clock->edge(rows->prescription, rows->sector); }
+double ebb_rows_edge(const struct ebb_rows *rows)
+{
+  return rows->band == 2 ? 0.0 : rows->clock->edge(rows->prescription, rows->sector);
+}
 
 static double curvature(const struct ebb_rows *rows, double v)
 {
@@ -82,6 +93,8 @@ double ebb_rows_potential(const struct ebb_rows *rows, double v)
 
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v)
 {
+  if (rows->band == 2) return ebb_rows_five_diagonal(rows, v);
+
   const double below = rows->half && v == rows->sector ? ebb_rows_edge(rows) : ebb_rows_hop(rows, v - 4.0);
 
   return rows->scale * ((ebb_rows_hop(rows, v) + below) / ebb_rows_measure(rows, v) + ebb_rows_potential(rows, v));
@@ -89,13 +102,20 @@ double ebb_rows_diagonal(const struct ebb_rows *rows, double v)
 
 double ebb_rows_offdiagonal(const struct ebb_rows *rows, double v)
 {
+  if (rows->band == 2) return ebb_rows_five_first(rows, v);
   return -rows->scale * ebb_rows_hop(rows, v) / sqrt(ebb_rows_measure(rows, v) * ebb_rows_measure(rows, v + 4.0));
+}
+
+double ebb_rows_second(const struct ebb_rows *rows, double v)
+{
+  return rows->band == 2 ? ebb_rows_five_second(rows, v) : 0.0;
 }
 
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows)
 {
   const double growth = rows->clock->growth;
 
+  if (rows->band == 2) return ebb_rows_five_nature(rows);
   if (!(growth > 0.0)) return EBB_NATURE_CONTINUOUS; /* bounded */
   if (rows->s >= 1.0) return EBB_NATURE_OVERCRITICAL;
   if (rows->s < 0.0) return EBB_NATURE_DISCRETE;
@@ -111,7 +131,7 @@ double ebb_rows_reach(const struct ebb_rows *rows, double depth)
   double reach = INFINITY;
 
   if (rows->s < 0.0) reach = 2.0 * depth / asinh(sqrt(-rows->s));
-  if (rows->curvature == EBB_CURVATURE_CLOSED)
+  if (rows->curvature == EBB_CURVATURE_CLOSED || rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION)
     reach = fmin(reach, pow(depth / (0.75 * rows->constants.immirzi * rows->d1), 1.5));
   return reach;
 }

@@ -108,8 +108,8 @@ static void links(const struct ebb_lattice *lattice, double v, const struct ebb_
 void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, const struct ebb_site_rows *rows,
                         PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
-  const double v = lattice->first[arm] + 4.0 * (double)n;
-  const double v_max = lattice->first[arm] + 4.0 * (double)(lattice->sites[arm] - 1);
+  const double v = lattice->first[arm] + lattice->step * (double)n;
+  const double v_max = lattice->first[arm] + lattice->step * (double)(lattice->sites[arm] - 1);
 
   diagonal(1.0, v, v_max, false, rows, s0, m, sheet);
   most_probable(v, rows, s0, m, sheet, sheet->sum[EBB_SUMS]);

@@ -7,6 +7,8 @@
  * any v. */
 #include "ebbturn/selfadjoint.h"
 
+#include "selfadjoint_five.h"
+
 #include <complex.h>
 #include <math.h>
 
@@ -45,6 +47,7 @@ static void asymptotics(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
   const double w = bare ? 0.0 : -drive(rows, FARTHER, false), nearer = bare ? 0.0 : -drive(rows, FAR, false);
 
   r->cosine = 1.0 - w;
+  r->roots = 2;
   r->modulus[1] = outer_modulus(r->cosine);
   r->modulus[0] = 1.0 / r->modulus[1];
   /* roots that tend to the unit circle as v grows are stable; those that stay off it are not */
@@ -105,6 +108,10 @@ PetscErrorCode ebb_selfadjoint_find(const struct ebb_rows *rows, struct ebb_self
 
   PetscFunctionBegin;
   *r = (struct ebb_selfadjoint){.n_plus = -1, .n_minus = -1};
+  if (rows->band == 2) {
+    PetscCall(ebb_selfadjoint_five(rows, r));
+    PetscFunctionReturn(0);
+  }
   asymptotics(rows, r);
   weyl(rows, r);
   if (r->asymptotic == r->weyl && r->weyl != EBB_LIMIT_UNDECIDED)

@@ -119,8 +119,11 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
                               "exponent of |psi|^2 at large v; NaN: exponentials"));
   PetscCall(ebb_result_number(store, "/selfadjoint/slope", s->slope, "1",
                               "d log(sum over an octave)/d log(sites) at the end"));
-  PetscCall(
-      ebb_result_line(store, "/selfadjoint/modulus", 2, s->modulus, "1", "moduli of the large-volume roots", NULL));
+  PetscCall(ebb_result_line(store, "/selfadjoint/modulus", s->roots, s->modulus, "1",
+                            "moduli of the large-volume roots", NULL));
+  if (s->roots == 4)
+    PetscCall(ebb_result_line(store, "/selfadjoint/second_radius", s->octaves, s->second, "1",
+                              "smaller semi-axis of Weyl's disc of matrices; radius: the larger one", sites));
   if (w->angles) {
     PetscCall(ebb_result_line(store, angle, w->angles, w->angle, "rad", w->delta ? "label delta" : "label tau", NULL));
     PetscCall(ebb_store_make_scale(store, angle));
@@ -145,8 +148,9 @@ static void print(const struct work *w)
   else
     printf("  self-adjoint   %s: deficiency indices (%d,%d)\n", verdict_of(s), s->n_plus, s->n_minus);
   printf("  evidence       %s\n", s->reason);
-  printf("  roots          moduli %.6g and %.6g at large v: von Neumann %s\n", s->modulus[0], s->modulus[1],
-         s->stable ? "stable" : "unstable (one solution grows exponentially)");
+  printf("  roots          moduli ");
+  for (int i = 0; i < s->roots; i++) printf("%s%.6g", !i ? "" : i + 1 < s->roots ? ", " : " and ", s->modulus[i]);
+  printf(" at large v: von Neumann %s\n", s->stable ? "stable" : "unstable (one solution grows exponentially)");
   if (w->angles)
     printf("  family         least positive eigenvalue by gravity.extension.%s\n", w->delta ? "delta" : "tau");
   for (PetscInt i = 0; i < w->angles; i++)
