@@ -36,6 +36,16 @@ struct ebb_mode_info {
 PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscInt n, const double k[],
                                       const enum ebb_channel channel[], struct ebb_basis **basis);
 
+/* Generalised eigenfunctions of a flat five-point operator (mlqc1, mlqc2) on its infinite half lattice, normalised to
+ * delta(k - k'): e -> sqrt(2 step/(pi v)) cos(k ln v + alpha), and where the operator has a family of extensions
+ * (mlqc1)
+ * + (A/v) cos(beta0 v/2 + delta), sin^2(step beta0/4) the far zero of the symbol. delta: the member, NAN where there is
+ * no family. k: [n] > 0, ascending. Sign: positive on the first site; with a family A > 0. Errors: another operator, an
+ * extension missing or superfluous. Cost: mlqc1 as the modes above, twice; mlqc2 8 bytes x n x (matching volume)/step.
+ * Not collective. Derived here; exact phases on the decoupled lattices are in the tests. */
+PetscErrorCode ebb_basis_create_five(const struct ebb_lattice *lattice, double delta, PetscInt n, const double k[],
+                                     struct ebb_basis **basis);
+
 /* All eigenvectors of the lattice cut by a wall after its last site (LAPACK dstevr), unit l2 norm, k_j = sqrt(zeta_j)/2
  * ascending. Sign: sign(last component) (-1)^j, that is positive at the
  * first site of a half lattice, where the component itself may underflow. Storage sites^2. */

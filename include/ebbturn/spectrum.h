@@ -35,6 +35,7 @@ struct ebb_spectrum {
   double tail_mass;  /* FAMILY: sum_{n > N} f_n^2 / f_N^2 beyond the last site, the last component stands for it */
   double counted[2]; /* where the Sturm counts were taken */
   PetscInt below[2]; /* eigenvalues below them */
+  bool by_phase;     /* the counts follow the phase of the solution instead, from counted[0] on (FAMILY_CONTINUOUS) */
   bool complete;     /* below[1] - below[0] == n */
   PetscReal moved;   /* largest change of a wanted eigenvalue at the last doubling; NAN where the size was given */
 };

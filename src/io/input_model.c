@@ -151,11 +151,6 @@ static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_ro
                      ebb_reader_given(reader, "gravity.extension.tau")->node;
   const struct ebb_origin origin = ebb_reader_section(reader, "gravity");
 
-  if (rows->band == 2) {
-    ebb_reader_complain(reader, origin,
-                        "spectra of operators with hops of two sizes are not available in this version");
-    return false;
-  }
   switch (ebb_rows_nature(rows)) {
   case EBB_NATURE_DISCRETE:
     return true;

@@ -7,6 +7,7 @@
 #include "ebbturn/spectrum.h"
 
 #include "edge.h"
+#include "spectrum_five.h"
 #include "sturm.h"
 
 #include <float.h>
@@ -276,6 +277,17 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
   PetscFunctionBegin;
   *spectrum = NULL;
   problem[0] = '\0';
+  if (r->rows->band == 2) {
+    const bool continuous = nature == EBB_NATURE_FAMILY_CONTINUOUS && r->extension == EBB_EXTENSION_DELTA;
+
+    PetscCheck(continuous || nature == EBB_NATURE_DISCRETE, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG,
+               "no eigenvalues of this five-point operator");
+    PetscCall(PetscNew(spectrum));
+    PetscCall(continuous ? ebb_spectrum_below(r, comm, problem, size, *spectrum)
+                         : ebb_spectrum_five(r, comm, problem, size, *spectrum));
+    if (problem[0]) PetscCall(ebb_spectrum_destroy(spectrum));
+    PetscFunctionReturn(0);
+  }
   PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) && (family || nature == EBB_NATURE_DISCRETE),
              PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "no discrete spectrum without the extension the operator needs");
   if (family && r->sites && r->sites < SITES_LEAST) {
