@@ -9,6 +9,7 @@
 
 #include "ebbturn/constants.h"
 #include "ebbturn/lattice.h"
+#include "ebbturn/spectrum.h"
 
 #include <petscsys.h>
 
@@ -36,20 +37,25 @@ struct ebb_mode_info {
 PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscInt n, const double k[],
                                       const enum ebb_channel channel[], struct ebb_basis **basis);
 
-/* Generalised eigenfunctions of a flat five-point operator (mlqc1, mlqc2) on its infinite half lattice, normalised to
- * delta(k - k'): e -> sqrt(2 step/(pi v)) cos(k ln v + alpha), and where the operator has a family of extensions
- * (mlqc1)
- * + (A/v) cos(beta0 v/2 + delta), sin^2(step beta0/4) the far zero of the symbol. delta: the member, NAN where there is
- * no family. k: [n] > 0, ascending. Sign: positive on the first site; with a family A > 0. Errors: another operator, an
- * extension missing or superfluous. Cost: mlqc1 as the modes above, twice; mlqc2 8 bytes x n x (matching volume)/step.
- * Not collective. Derived here; exact phases on the decoupled lattices are in the tests. */
-PetscErrorCode ebb_basis_create_five(const struct ebb_lattice *lattice, double delta, PetscInt n, const double k[],
+/* The same of a flat five-point operator (mlqc1, mlqc2) on its infinite half lattice; ebb_basis_create_modes calls it
+ * there. e -> sqrt(2 step/(pi v)) cos(k ln v + alpha), and where there is a family of extensions (mlqc1), rows.delta
+ * being the member, + (A/v) cos(beta0 v/2 + delta), sin^2(step beta0/4) the far zero of the symbol. k: [n] > 0,
+ * ascending. Sign: positive on the first site; with a family A > 0, which goes on smoothly with k where the first site
+ * does not. Errors: another operator, no extension chosen. Cost: mlqc1 as above, twice; mlqc2 8 bytes x n x (matching
+ * volume)/step. Not collective. Derived here; exact phases on the decoupled lattices are in the tests. */
+PetscErrorCode ebb_basis_create_five(const struct ebb_lattice *lattice, PetscInt n, const double k[],
                                      struct ebb_basis **basis);
 
 /* All eigenvectors of the lattice cut by a wall after its last site (LAPACK dstevr), unit l2 norm, k_j = sqrt(zeta_j)/2
  * ascending. Sign: sign(last component) (-1)^j, that is positive at the
  * first site of a half lattice, where the component itself may underflow. Storage sites^2. */
 PetscErrorCode ebb_basis_create_eigenpairs(const struct ebb_lattice *lattice, struct ebb_basis **basis);
+
+/* The eigenfunctions of a spectrum (copied), k_j = sqrt(z_j)/kappa, or z_j/kappa where states move by exp(i H t). In
+ * the limit-circle case the last component stands for the whole tail: it is the tail's amplitude, so that sums over
+ * sites are those of the infinite lattice. Storage n sites on every rank. */
+PetscErrorCode ebb_basis_create_levels(const struct ebb_spectrum *spectrum, double kappa, bool root,
+                                       struct ebb_basis **basis);
 
 /* cos(k x), sin(k x) on the grid in x = ln v, for k_j = 2 pi (j0 + j)/L, j < n; functions 2j (cos) and 2j + 1 (sin),
  * both with frequency kappa k_j and scaled by 1/sqrt(2 pi). */

@@ -26,7 +26,12 @@ struct ebb_rows {
   double s; /* Lambda/Lambda_c */
   enum ebb_curvature curvature;
   double p_phi;             /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  bool field;               /* a further field stands beside the volume */
   double lorentzian_weight; /* five-point prescriptions */
+  double delta;             /* extension, only where the nature is FAMILY_CONTINUOUS; NAN: none chosen */
+  /* Schemes FIXED and REFINED of the prescription: mu_bar = mu0^{1-2x} lambda^{2x} |p|^{-x}, x = 0 where FIXED. */
+  double fixed_scale; /* mu0 */
+  double refinement;  /* x in [0, 1/2] */
   /* filled by ebb_rows_make */
   double scale;                     /* the operator is scale times measure, hop, edge and potential */
   double volume_unit, volume_power; /* physical volume V = volume_unit |v|^volume_power */
@@ -36,10 +41,12 @@ struct ebb_rows {
   int band;                         /* bands beside the diagonal: 1, or 2 for five-point operators */
   double w[2];                      /* band 2: weights of S_step and S_2step, see ebbturn/operators.h */
   double d1;                        /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
+  double weight_unit; /* weight = weight_unit times the clock's; 1 but for FIXED and REFINED, q = V^2 in other units */
 };
 
-/* Completes rows whose first eight members are set. Sizes of the cell: V = 2 pi^2 a^3 (closed, the whole three-sphere),
- * V = a^3 (open, a cell of unit volume in the unit hyperbolic metric). */
+/* Completes rows whose members before are set (fixed_scale and refinement only where they count). Sizes of the cell: V
+ * = 2 pi^2 a^3 (closed, the whole three-sphere), V = a^3 (open, a cell of unit volume in the unit hyperbolic metric).
+ */
 void ebb_rows_make(struct ebb_rows *rows);
 /* The flat model with a scalar clock of any prescription, grids included, in units of gamma = lambda = G = 1. */
 struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, double sector);
@@ -55,6 +62,9 @@ double ebb_rows_edge(const struct ebb_rows *rows); /* C below the first site of 
  * Vandersloot, Phys. Rev. D 75, 024035 (2007), gr-qc/0612104); open: U = -gamma^2 D^2 (Vandersloot, Phys. Rev. D 75,
  * 023523 (2007), gr-qc/0612070). Forms from memory; their effective limits were verified. */
 double ebb_rows_potential(const struct ebb_rows *rows, double v);
+
+/* V/volume_unit at a site, |v|^volume_power. */
+double ebb_rows_volume(const struct ebb_rows *rows, double v);
 
 /* Matrix elements <v|.|v>, <v|.|v+step> and <v|.|v+2 step>, scale included. Real: with holonomies of the connection the
  * gauge |sector + 2m> -> i^m |sector + 2m> has been taken out. */
@@ -75,11 +85,17 @@ enum ebb_nature {
   EBB_NATURE_CONTINUOUS,   /* essentially self-adjoint, with continuous spectrum */
   EBB_NATURE_FAMILY,       /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
   EBB_NATURE_OVERCRITICAL, /* Lambda >= Lambda_c: no positive spectrum */
+  EBB_NATURE_INVERTED,     /* Lambda > 0 whose term outgrows the operator (FIXED, REFINED with x < 1/2): essentially
+                                  self-adjoint, discrete, bounded above; a large universe is not classical */
   /* five-point operators */
   EBB_NATURE_FAMILY_CONTINUOUS, /* a family of extensions, each with positive continuous spectrum and negative
                                  * eigenvalues without end */
   EBB_NATURE_UNLABELLED /* with Lambda or curvature: no label of extensions is known, only a verdict can be given */
 };
+/* The flat model with a scalar clock and no cosmological constant: a continuum of generalised eigenfunctions. */
+bool ebb_rows_is_flat(const struct ebb_rows *rows);
+/* True where there is anything on the diagonal beside the flux form. */
+bool ebb_rows_has_potential(const struct ebb_rows *rows);
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows);
 
 /* |v| beyond which eigenfunctions of a low eigenvalue of a discrete operator have fallen by exp(-depth): psi ~

@@ -18,7 +18,7 @@ enum ebb_type {
   EBB_TYPE_FLAGS,   /* unsigned: bit i for choice i of a list */
   EBB_TYPE_COMPLEX, /* double [2]: a number, or a list of real and imaginary part; unset: NAN */
   EBB_TYPE_PARTS,   /* the components of a superposition; read by the input */
-  EBB_TYPE_EMPTY    /* a list that must be empty in this version; stored nowhere */
+  EBB_TYPE_FIELDS   /* a list of at most one section of keys, the rows of section `matter`; read by the input */
 };
 
 /* Which keys of `state` a profile takes: bit i is choice i of state.profile, the last one gaussian_momentum on a grid.
@@ -41,6 +41,9 @@ enum ebb_place {
   EBB_FOR_RANGE = 4,       /* commands that evolve over a clock range */
   EBB_TOP_ONLY = 8,        /* of `state`: not inside a component */
   EBB_COMPONENT_ONLY = 16, /* of `state`: only inside a component */
+  EBB_ON_FIXED = 32,       /* prescriptions with a holonomy length mu0 */
+  EBB_ON_REFINED = 64,     /* prescriptions with a refinement exponent */
+  EBB_ON_ANY = EBB_ON_VOLUME | EBB_ON_GRID | EBB_ON_FIXED | EBB_ON_REFINED
 };
 
 enum ebb_catalogue { EBB_CATALOGUE_NONE, EBB_CATALOGUE_PRESCRIPTIONS };

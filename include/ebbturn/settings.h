@@ -11,7 +11,7 @@
 #include <stddef.h>
 #include <stdio.h>
 
-enum { EBB_NAME_MAX = 64, EBB_PATH_MAX = 1024, EBB_TITLE_MAX = 256, EBB_LEVELS_MAX = 32, EBB_COMPONENTS_MAX = 16 };
+enum { EBB_NAME_MAX = 64, EBB_PATH_MAX = 1024, EBB_TITLE_MAX = 256, EBB_LEVELS_MAX = 256, EBB_COMPONENTS_MAX = 16 };
 
 /* Bits of output.keep. */
 enum ebb_keep { EBB_KEEP_MOMENTS = 1, EBB_KEEP_QUANTILES = 2, EBB_KEEP_PROBABILITY = 4, EBB_KEEP_STATE = 8 };
@@ -22,7 +22,10 @@ struct ebb_gravity_settings {
   double polymer_scale; /* always set after ebb_settings_resolve; NAN before it when not given */
   double area_gap;      /* NAN when not given; at most one of polymer_scale and area_gap may be given */
   double newton;
-  double sector; /* epsilon in (0, 4] */
+  double fixed_scale;         /* mu0: prescriptions mu0 and refined; NAN elsewhere */
+  double refinement_exponent; /* x in [0, 1/2]: prescription refined; NAN elsewhere */
+  double reference_p;         /* p0, another way to say polymer_scale = mu0 sqrt(p0); NAN when not given */
+  double sector;              /* epsilon in (0, 4] */
   char curvature[EBB_NAME_MAX];
   double cosmological_constant;               /* after ebb_settings_resolve also where given over critical */
   double cosmological_constant_over_critical; /* NAN when not given; at most one of the two may be given */
@@ -35,6 +38,16 @@ struct ebb_clock_settings {
   char ordering[EBB_NAME_MAX]; /* "" unless the clock has several */
   double from, to;             /* NAN when not given */
   int samples;
+};
+
+/* A further field beside the clock; kind "" where there is none. */
+struct ebb_matter_settings {
+  char kind[EBB_NAME_MAX], name[EBB_NAME_MAX];
+  double momentum, spread;      /* of the packet exp(-(p - momentum)^2/(4 spread^2)); NAN when not given */
+  int points;                   /* of its circle ... */
+  double length;                /* ... of this length */
+  char potential[EBB_NAME_MAX]; /* "" : none */
+  double mass;
 };
 
 struct ebb_state_settings {
@@ -65,12 +78,15 @@ struct ebb_lattice_settings {
 struct ebb_numerics_settings {
   char propagator[EBB_NAME_MAX]; /* auto | modes | eigenpairs | chebyshev | krylov */
   double tolerance;
+  char eigensolver[EBB_NAME_MAX]; /* auto | bisection | slicing */
 };
 
 struct ebb_spectrum_settings {
   int count;                       /* 0 = not given */
   double interval[EBB_LEVELS_MAX]; /* two of them */
   size_t ends;                     /* 0 = not given */
+  double k[EBB_LEVELS_MAX];        /* continuous spectra: omega^2 = kappa^2 (k^2 + gap) */
+  size_t ks;                       /* 0 = not given */
 };
 
 struct ebb_output_settings {
@@ -85,6 +101,7 @@ struct ebb_settings {
   char title[EBB_TITLE_MAX];
   struct ebb_gravity_settings gravity;
   struct ebb_clock_settings clock;
+  struct ebb_matter_settings matter;
   struct ebb_state_settings state;
   struct ebb_lattice_settings lattice;
   struct ebb_numerics_settings numerics;

@@ -33,13 +33,15 @@ static struct ebb_rows rows_of(const char *name, double sector, double weight)
   return rows;
 }
 
-static struct ebb_basis *basis_of(const struct ebb_rows *rows, double delta, PetscInt n, const double k[])
+static struct ebb_basis *basis_of(const struct ebb_rows *operator, double delta, PetscInt n, const double k[])
 {
+  struct ebb_rows rows = *operator;
   struct ebb_lattice lattice;
   struct ebb_basis *basis;
 
-  ebb_test_call(ebb_lattice_make_model(rows, 8, PETSC_COMM_SELF, &lattice));
-  ebb_test_call(ebb_basis_create_five(&lattice, delta, n, k, &basis));
+  rows.delta = delta;
+  ebb_test_call(ebb_lattice_make_model(&rows, 8, PETSC_COMM_SELF, &lattice));
+  ebb_test_call(ebb_basis_create_modes(&lattice, n, k, NULL, &basis));
   return basis;
 }
 
