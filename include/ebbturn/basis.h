@@ -46,9 +46,10 @@ PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscIn
 PetscErrorCode ebb_basis_create_five(const struct ebb_lattice *lattice, PetscInt n, const double k[],
                                      struct ebb_basis **basis);
 
-/* All eigenvectors of the lattice cut by a wall after its last site (LAPACK dstevr), unit l2 norm, k_j = sqrt(zeta_j)/2
- * ascending. Sign: sign(last component) (-1)^j, that is positive at the
- * first site of a half lattice, where the component itself may underflow. Storage sites^2. */
+/* All eigenvectors of the lattice cut by a wall after its last site (LAPACK dstevr; with two bands dsbevd, and not
+ * where there is a family of extensions, among which a wall would choose by its place), unit l2 norm, k_j =
+ * sqrt(zeta_j)/2 ascending. Sign: sign(last component) (-1)^j, that is positive at the first site of a half lattice,
+ * where the component itself may underflow. Storage sites^2. */
 PetscErrorCode ebb_basis_create_eigenpairs(const struct ebb_lattice *lattice, struct ebb_basis **basis);
 
 /* The eigenfunctions of a spectrum (copied), k_j = sqrt(z_j)/kappa, or z_j/kappa where states move by exp(i H t). In

@@ -90,7 +90,7 @@ static const struct ebb_setting rows[] = {
      .source = "Akhiezer, The Classical Moment Problem (1965), chapter 4 (from memory)"},
 
     {.key = "gravity.lorentzian_weight", .letter = "omega", .unit = "1", REAL(gravity.lorentzian_weight), .range = ANY,
-     .hint = "1 where not given; prescriptions mlqc1 and mlqc2 only",
+     .fallback = "1", .places = EBB_ON_WEIGHTED,
      .sentence = "weight of the Lorentzian term quantised for itself beside the Euclidean one; every weight has the same "
                  "classical limit",
      .source = "Gallegos, Matos, Morales-Tecotl, arXiv:2412.07916 (abstract read; the form of the family is recomputed)"},

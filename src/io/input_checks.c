@@ -79,6 +79,7 @@ static void check_clock(const struct ebb_reader *reader)
 unsigned ebb_input_places(const struct ebb_prescription *p)
 {
   if (p->grid) return EBB_ON_GRID;
+  if (p->split) return EBB_ON_VOLUME | EBB_ON_WEIGHTED;
   if (p->scheme == EBB_SCHEME_FIXED) return EBB_ON_VOLUME | EBB_ON_FIXED;
   return p->scheme == EBB_SCHEME_REFINED ? EBB_ON_VOLUME | EBB_ON_FIXED | EBB_ON_REFINED : EBB_ON_VOLUME;
 }
@@ -104,7 +105,9 @@ static void check_places(const struct ebb_reader *reader)
       else if (given->node)
         ebb_reader_complain(reader, given->origin, "%s does not belong to prescription '%s'; it is for %s",
                             setting->key, reader->prescription->name,
-                            places & EBB_ON_FIXED ? "'mu0' and 'refined'" : "'refined'");
+                            places & EBB_ON_WEIGHTED ? "'mlqc1' and 'mlqc2'"
+                            : places & EBB_ON_FIXED  ? "'mu0' and 'refined'"
+                                                     : "'refined'");
       ebb_setting_unset(setting, reader->settings, &reader->settings->state);
     }
     if (!given->node && (setting->places_required & needed)) {

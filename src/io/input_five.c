@@ -10,14 +10,10 @@
 bool ebb_reader_consistent_five(const struct ebb_reader *reader)
 {
   const struct ebb_settings *s = reader->settings;
-  const struct ebb_given *weight = ebb_reader_given(reader, "gravity.lorentzian_weight");
   const char *name = reader->prescription->name;
   const bool connection = !strcmp(s->gravity.curvature, "closed_connection"), five = reader->prescription->split;
 
-  if (weight->node && !five)
-    ebb_reader_complain(reader, weight->origin,
-                        "gravity.lorentzian_weight belongs to prescriptions mlqc1 and mlqc2, not to '%s'", name);
-  else if (connection && strcmp(name, "slqc") != 0 && strcmp(name, "smmo") != 0)
+  if (connection && strcmp(name, "slqc") != 0 && strcmp(name, "smmo") != 0)
     ebb_reader_complain(reader, ebb_reader_given(reader, "gravity.curvature")->origin,
                         "gravity.curvature = 'closed_connection' is ordered for prescriptions slqc and smmo, not for "
                         "'%s'",
@@ -67,6 +63,25 @@ static bool chosen(const struct ebb_reader *reader, const struct ebb_rows *rows)
   default:
     return true; /* an extension of what needs none is complained of as with hops of one size */
   }
+}
+
+bool ebb_reader_wanted_five(const struct ebb_reader *reader)
+{
+  const struct ebb_given *interval = ebb_reader_given(reader, "spectrum.interval");
+  const struct ebb_given *k = ebb_reader_given(reader, "spectrum.k");
+
+  if (k->node && interval->node)
+    ebb_reader_complain(reader, ebb_reader_later(k, interval),
+                        "spectrum.interval asks for eigenvalues below the continuum, spectrum.k for waves in it; give "
+                        "one of them");
+  else if (!k->node && !interval->node && !ebb_reader_given(reader, "spectrum.count")->node)
+    ebb_reader_complain(
+        reader, ebb_reader_section(reader, "spectrum"),
+        "spectrum.interval is missing; say where below zero (interval: [-1000, 0]), or give wave numbers "
+        "above it (k: [0.5, 1, 2])");
+  else
+    return true;
+  return false;
 }
 
 bool ebb_reader_check_five(const struct ebb_reader *reader, const struct ebb_rows *rows)

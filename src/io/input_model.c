@@ -195,6 +195,7 @@ static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_ro
   case EBB_NATURE_CONTINUOUS:
     return check_waves(reader, rows);
   case EBB_NATURE_FAMILY_CONTINUOUS:
+    if (!ebb_reader_wanted_five(reader)) return false;
     return !ebb_reader_given(reader, "spectrum.k")->node || check_waves(reader, rows);
   case EBB_NATURE_UNLABELLED: /* complained of already */
     return false;

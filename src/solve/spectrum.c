@@ -279,7 +279,7 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
   if (r->rows->band == 2) {
     const bool continuous = nature == EBB_NATURE_FAMILY_CONTINUOUS && r->extension == EBB_EXTENSION_DELTA;
 
-    PetscCheck(continuous || nature == EBB_NATURE_DISCRETE, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG,
+    PetscCheck(continuous || r->wall || nature == EBB_NATURE_DISCRETE, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG,
                "no eigenvalues of this five-point operator");
     PetscCall(PetscNew(spectrum));
     PetscCall(continuous ? ebb_spectrum_below(r, comm, problem, size, *spectrum)

@@ -9,6 +9,7 @@
 
 #include <float.h>
 #include <math.h>
+#include <stdio.h>
 
 enum {
   WAVES = 3,
@@ -269,15 +270,14 @@ PetscErrorCode ebb_spectrum_below(const struct ebb_spectrum_request *r, MPI_Comm
 
   PetscFunctionBegin;
   if (!(low < high)) {
-    PetscCall(PetscSNPrintf(problem, size,
-                            "spectrum.interval begins at %g %s, in the continuum; eigenvalues lie below 0", r->low,
-                            r->rows->clock->unit));
+    (void)snprintf(problem, size, "spectrum.interval begins at %g %s, in the continuum; eigenvalues lie below 0",
+                   r->low, r->rows->clock->unit);
     PetscFunctionReturn(0);
   }
   p.n = match_for(&p, low);
   if ((double)p.n * 0.5 * sqrt(-low) / STEP_MOST > WORK_MOST) {
-    PetscCall(PetscSNPrintf(problem, size, "spectrum.interval reaches down to %g %s, too far to follow; ask for less",
-                            r->low, r->rows->clock->unit));
+    (void)snprintf(problem, size, "spectrum.interval reaches down to %g %s, too far to follow; ask for less", r->low,
+                   r->rows->clock->unit);
     PetscFunctionReturn(0);
   }
   PetscCall(ebb_five_bvp_create((PetscInt)(FARTHER * (double)p.n) + 1, &p.bvp));

@@ -28,7 +28,7 @@ struct matrix {
   double floor;
 };
 
-static PetscErrorCode matrix_make(const struct ebb_rows *rows, PetscInt n, struct matrix *t)
+static PetscErrorCode matrix_make(const struct ebb_rows *rows, bool wall, PetscInt n, struct matrix *t)
 {
   const double g = rows->constants.immirzi;
   double *d, *e, *f, depth, v;
@@ -45,9 +45,9 @@ static PetscErrorCode matrix_make(const struct ebb_rows *rows, PetscInt n, struc
     f[i] = ebb_rows_second(rows, v);
   }
   t->band = (struct ebb_band){.n = (size_t)n, .d = d, .e = e, .f = f};
-  t->out[0] = e[n - 1];
-  t->out[1] = f[n - 2];
-  t->out[2] = f[n - 1];
+  t->out[0] = wall ? 0.0 : e[n - 1]; /* nothing is dropped where the wall is part of the model */
+  t->out[1] = wall ? 0.0 : f[n - 2];
+  t->out[2] = wall ? 0.0 : f[n - 1];
   v = rows->sector + rows->step * (double)(n - 1);
   depth = g * rows->d1 / cbrt(v);
   t->floor = rows->scale * v * v * (depth * depth - rows->s);
@@ -217,7 +217,7 @@ PetscErrorCode ebb_spectrum_five(const struct ebb_spectrum_request *r, MPI_Comm 
     bool tight, reaches;
     double high;
 
-    PetscCall(matrix_make(r->rows, n, &t));
+    PetscCall(matrix_make(r->rows, r->wall, n, &t));
     PetscCall(values_find(r, &t, &s->n, &s->eigenvalue));
     s->moved = compare(half_n, half, s->n, s->eigenvalue, r->tolerance + ELEMENT_ROUNDINGS * DBL_EPSILON, &tight);
     high = r->count ? (s->n ? s->eigenvalue[s->n - 1] : 0.0) : r->high;

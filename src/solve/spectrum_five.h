@@ -6,8 +6,9 @@
 
 #include "ebbturn/spectrum.h"
 
-/* Nature DISCRETE: the infinite matrix cut after N sites, N doubled until the wanted eigenvalues stay. Bisection by the
- * inertia of L D L^T, vectors by inverse iteration, errors by residuals in which the dropped links count. */
+/* Nature DISCRETE, or any with a wall: the infinite matrix cut after N sites, N doubled until the wanted eigenvalues
+ * stay. Bisection by the inertia of L D L^T, vectors by inverse iteration, errors by residuals in which the dropped
+ * links count. */
 PetscErrorCode ebb_spectrum_five(const struct ebb_spectrum_request *request, MPI_Comm comm, char *problem, size_t size,
                                  struct ebb_spectrum *spectrum);
 

@@ -112,7 +112,7 @@ static const struct bad_model {
      "clock.kind = 'dust' is not available with hops of two sizes (mlqc2); take clock.kind: scalar"},
     {"weight of nothing", "gravity: {lorentzian_weight: 0.5}\n" CLOCK STATE,
      1,
-     "gravity.lorentzian_weight belongs to prescriptions mlqc1 and mlqc2, not to 'slqc'"},
+     "gravity.lorentzian_weight does not belong to prescription 'slqc'; it is for 'mlqc1' and 'mlqc2'"},
     {"weight that leaves hops of one size", "gravity: {prescription: mlqc2, lorentzian_weight: 0}\n" CLOCK STATE,
      1,
      "gravity.lorentzian_weight = 0 leaves prescription 'mlqc2' hops of one size only; take prescription slqc"},

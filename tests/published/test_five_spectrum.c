@@ -5,6 +5,7 @@
  * connection-based closed model in the ordering of this program, v = 2n: an independent program. Discreteness of the
  * closed model: Szulc, Kaminski, Lewandowski, Class. Quantum Grav. 24, 2621 (2007), gr-qc/0612101 (abstract; for the
  * curvature-based one). */
+#include "ebbturn/basis.h"
 #include "ebbturn/spectrum.h"
 
 #include "solve/band.h"
@@ -193,4 +194,41 @@ Test(five_spectrum, counts_as_lapack_does)
     if (trust < 0.4 * (w[i + 1] - w[i])) cr_expect_eq(count, (size_t)i + 1, "%d: %zu, trust %g", i, count, trust);
     cr_expect_lt(trust, 1e-6); /* no pivot is that small here */
   }
+}
+
+/* Behind a wall: every pair by LAPACK, against the rows and against bisection; orthonormal, positive on the first site.
+ */
+Test(five_spectrum, of_a_wall_is_a_basis, .init = ebb_test_slepc_begin, .fini = ebb_test_slepc_end)
+{
+  enum { N = 90 };
+  const struct ebb_rows rows = rows_of("mlqc2", 4.0, 1.0, 0.0, EBB_CURVATURE_NONE);
+  const struct ebb_spectrum_request request = {.rows = &rows, .wall = true, .count = N, .tolerance = 1e-10, .sites = N};
+  struct ebb_spectrum *levels = find(&request);
+  struct ebb_lattice lattice;
+  struct ebb_basis *basis;
+  struct ebb_cursor *cursor;
+  static double row[N][N];
+
+  ebb_test_call(ebb_lattice_make_model(&rows, N, PETSC_COMM_SELF, &lattice));
+  ebb_test_call(ebb_basis_create_eigenpairs(&lattice, &basis));
+  cr_assert_eq(ebb_basis_size(basis), N);
+  ebb_test_call(ebb_cursor_open(basis, 0, 0, &cursor));
+  ebb_cursor_next(cursor, N, &row[0][0]);
+  ebb_cursor_close(&cursor);
+  for (int a = 0; a < N; a++) {
+    const double z = 4.0 * rows.scale * pow(ebb_basis_k(basis)[a], 2.0), largest = levels->eigenvalue[N - 1];
+
+    ebb_test_close(z, levels->eigenvalue[a], ebb_test_rounding(64, largest)); /* LAPACK: backward stable */
+    cr_expect_geq(levels->function[a * N], 0.0);
+    for (int i = 0; i < N; i++) /* eigenvectors to rounding over the gap, which is a thousandth of the norm or more */
+      ebb_test_close(row[i][a], levels->function[a * N + i], ebb_test_rounding(1e5, 1.0));
+    for (int b = 0; b <= a; b++) {
+      double sum = 0.0;
+
+      for (int i = 0; i < N; i++) sum += row[i][a] * row[i][b];
+      ebb_test_close(sum, a == b, ebb_test_rounding(64, 1.0));
+    }
+  }
+  ebb_test_call(ebb_basis_destroy(&basis));
+  ebb_test_call(ebb_spectrum_destroy(&levels));
 }
