@@ -10,10 +10,21 @@
 
 #include <petscsys.h>
 
-enum { EBB_WEYL_OCTAVES = 20 };
+enum { EBB_WEYL_OCTAVES = 20, EBB_ROOT_VOLUMES = 7 };
 
 /* What one kind of evidence says of the solutions at infinity. */
 enum ebb_limit { EBB_LIMIT_POINT, EBB_LIMIT_CIRCLE, EBB_LIMIT_UNDECIDED };
+
+/* Von Neumann's question to a difference equation at large volume: can a solution grow without a classical reason? */
+enum ebb_stability {
+  EBB_STABLE,            /* the roots lie on the unit circle or tend to it: waves */
+  EBB_UNSTABLE_BOUNDED,  /* the largest tends to a number above 1: a region that classical universes do not reach */
+  EBB_UNSTABLE_UNBOUNDED /* the largest grows without bound: a large universe never becomes classical */
+};
+/* largest [n], n >= 2: modulus of the largest root at volumes of a geometric sequence, ascending. For any order of
+ * difference equation: moduli are all that counts. Saini, Singh, Class. Quantum Grav. 36, 105010 (2019),
+ * arXiv:1901.01279 (abstract read). */
+enum ebb_stability ebb_stability_decide(size_t n, const double largest[]);
 
 struct ebb_selfadjoint {
   /* Verdict of both: n_plus = n_minus = 0, 1 or (two bands) 2, of the half lattice (even sector where the lattice is
@@ -24,11 +35,12 @@ struct ebb_selfadjoint {
    * or like exponentials of which one grows. Summable, that is limit circle, where they oscillate and exponent < -1. */
   enum ebb_limit asymptotic;
   double exponent;   /* of |psi|^2, NAN where the solutions are exponentials */
-  double cosine;     /* cos(theta) of the large-volume roots exp(+-i theta) (one band) */
+  double cosine;     /* cos(theta) of the large-volume roots exp(+-i theta) */
   int roots;         /* 2, or 4 with two bands */
-  double modulus[4]; /* |root| of each, ascending: von Neumann stable where all are 1 */
+  double modulus[4]; /* |root| of each, ascending, at the largest volume looked at */
   int summable;      /* two bands: dimension of the square-summable solutions at infinity; -1 undecided */
-  bool stable;       /* the roots lie on the unit circle or tend to it */
+  double root_v[EBB_ROOT_VOLUMES], root_modulus[EBB_ROOT_VOLUMES]; /* volumes, and the largest modulus there */
+  enum ebb_stability stability;
   /* Second evidence: Weyl's disc at z = i scale has radius 1/(2 Im z sum_{n<N} |p_n(z)|^2), p_n the solution of the
    * first kind: it shrinks to a point exactly where the operator is essentially self-adjoint. Two bands: the disc is
    * one of 2 x 2 matrices with semi-axes 1/(2 Im z g), g the eigenvalues of the Gram matrix of the two solutions that

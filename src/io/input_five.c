@@ -94,6 +94,13 @@ bool ebb_reader_check_five(const struct ebb_reader *reader, const struct ebb_row
     return false;
   }
   if (!chosen(reader, rows)) return false;
+  if (!strcmp(reader->settings->numerics.eigensolver, "slicing")) {
+    ebb_reader_complain(
+        reader, ebb_reader_given(reader, "numerics.eigensolver")->origin,
+        "numerics.eigensolver = 'slicing' knows operators with hops of one size; leave it out here, the "
+        "list is proved complete by inertias all the same");
+    return false;
+  }
   if (!(reader->need & EBB_NEED_CLOCK_RANGE)) return true;
   ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"),
                       "evolution with hops of two sizes is not available in this version; 'spectrum' and 'selfadjoint' "

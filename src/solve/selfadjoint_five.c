@@ -135,13 +135,14 @@ static int connection_summable(const struct ebb_rows *rows, double *exponent)
 static void asymptotics(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
 {
   struct zero near[2], far[2];
-  double nearer[4];
-  const double outer = largest_modulus(rows, FARTHER, r->modulus), before = largest_modulus(rows, FAR, nearer);
-
   r->roots = 4;
   r->cosine = NAN;
   r->exponent = NAN;
-  r->stable = outer == 1.0 || outer - 1.0 < 0.5 * (before - 1.0); /* on the unit circle, or tending to it */
+  for (int i = 0; i < EBB_ROOT_VOLUMES; i++) {
+    r->root_v[i] = FARTHER * pow(FAR / FARTHER, 1.0 - i / (EBB_ROOT_VOLUMES - 1.0));
+    r->root_modulus[i] = largest_modulus(rows, r->root_v[i], r->modulus);
+  }
+  r->stability = ebb_stability_decide(EBB_ROOT_VOLUMES, r->root_modulus);
   r->summable = 0;
   if (rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION) {
     r->summable = connection_summable(rows, &r->exponent);

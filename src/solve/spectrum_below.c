@@ -191,8 +191,8 @@ static double square_of(const struct problem *p, double zeta, const struct ebb_w
   return square;
 }
 
-/* The eigenfunction on sites begin .. end - 1: unit l2 norm on all sites, positive on the first one. */
-static void function_fill(struct problem *p, double zeta, PetscInt begin, PetscInt end, double f[])
+/* The eigenfunction on the first sites: unit l2 norm on all sites, positive on the first one. */
+static void function_fill(struct problem *p, double zeta, PetscInt sites, double f[])
 {
   struct ebb_wave slow, fast;
   double scale;
@@ -200,7 +200,7 @@ static void function_fill(struct problem *p, double zeta, PetscInt begin, PetscI
   (void)theta(p, zeta, p->n);
   waves_make(p, zeta, &slow, &fast);
   scale = copysign(1.0 / sqrt(square_of(p, zeta, &slow, &fast)), (double)p->bvp.x[0]);
-  for (PetscInt i = begin; i < end; i++) f[i - begin] = scale * component(p, &slow, &fast, i);
+  for (PetscInt i = 0; i < sites; i++) f[i] = scale * component(p, &slow, &fast, i);
 }
 
 /* |T f - z f| over the sites of the plain unknowns: what is left of the rows. */
@@ -226,33 +226,29 @@ static PetscErrorCode finish(const struct ebb_spectrum_request *r, struct proble
 {
   const double a0 = r->rows->scale;
   const PetscInt least = (PetscInt)ceil(SHOWN / r->rows->step);
-  double *whole;
-  PetscInt local, sites;
+  PetscInt sites;
 
   PetscFunctionBegin;
   sites = r->sites ? r->sites : PetscMax(least, p->n);
   PetscCall(ebb_lattice_make_model(r->rows, sites, comm, &s->lattice));
-  local = s->lattice.end - s->lattice.begin;
   s->n = roots->n;
   PetscCall(PetscMalloc1(s->n, &s->eigenvalue));
-  PetscCall(PetscMalloc2(s->n, &s->residual, s->n, &s->error));
-  PetscCall(PetscMalloc1((size_t)s->n * (size_t)local, &s->function));
-  PetscCall(PetscMalloc1(sites, &whole));
+  PetscCall(PetscCalloc3(s->n, &s->residual, s->n, &s->error, s->n, &s->tail));
+  PetscCall(PetscMalloc1((size_t)s->n * (size_t)sites, &s->function));
   s->complete = true;
   s->moved = 0.0;
   for (PetscInt j = 0; j < s->n; j++) {
+    double *whole = s->function + (size_t)j * (size_t)sites;
     const double zeta = roots->zeta[j], spread = WIDEN * fmax(fabs(zeta), 1.0);
     const double again = bisect(p, (PetscInt)(FARTHER * (double)p->n), zeta - spread, fmin(zeta + spread, -NEAREST));
 
     s->eigenvalue[j] = a0 * zeta;
     s->moved = fmax(s->moved, a0 * fabs(zeta - again));
     s->error[j] = a0 * (fabs(zeta - again) + ELEMENT_ROUNDINGS * DBL_EPSILON * fmax(fabs(zeta), 1.0));
-    function_fill(p, zeta, 0, sites, whole);
+    function_fill(p, zeta, sites, whole);
     s->residual[j] = residual_of(p, zeta, sites, whole);
-    PetscCall(PetscArraycpy(s->function + (size_t)j * (size_t)local, whole + s->lattice.begin, local));
     if (s->eigenvalue[j] - s->error[j] < a0 * low || s->eigenvalue[j] + s->error[j] > a0 * high) s->complete = false;
   }
-  PetscCall(PetscFree(whole));
   s->counted[0] = a0 * low;
   s->counted[1] = a0 * high;
   s->below[0] = 0;

@@ -112,13 +112,12 @@ static PetscErrorCode values_find(const struct ebb_spectrum_request *r, const st
 /* Pairs from bisection's values: vector, Rayleigh quotient, residual and error. */
 static PetscErrorCode pairs_find(const struct matrix *t, struct ebb_spectrum *s)
 {
-  const PetscInt local = s->lattice.end - s->lattice.begin;
   const size_t n = t->band.n;
   long double *x, *work;
 
   PetscFunctionBegin;
-  PetscCall(PetscMalloc1((size_t)s->n * (size_t)local, &s->function));
-  PetscCall(PetscMalloc2(s->n, &s->residual, s->n, &s->error));
+  PetscCall(PetscMalloc1((size_t)s->n * n, &s->function));
+  PetscCall(PetscCalloc3(s->n, &s->residual, s->n, &s->error, s->n, &s->tail));
   PetscCall(PetscMalloc2(n, &x, 7 * n, &work));
   for (PetscInt j = 0; j < s->n; j++) {
     double quadratic, cut;
@@ -129,8 +128,7 @@ static PetscErrorCode pairs_find(const struct matrix *t, struct ebb_spectrum *s)
     cut = hypot(t->out[0] * (double)x[n - 1] + t->out[1] * (double)x[n - 2], t->out[2] * (double)x[n - 1]);
     s->error[j] = hypot(s->residual[j], cut) + ELEMENT_ROUNDINGS * DBL_EPSILON * quadratic;
     sign = x[0] < 0.0L ? -1.0L : 1.0L;
-    for (PetscInt i = 0; i < local; i++)
-      s->function[(size_t)j * (size_t)local + (size_t)i] = (double)(sign * x[s->lattice.begin + i]);
+    for (size_t i = 0; i < n; i++) s->function[(size_t)j * n + i] = (double)(sign * x[i]);
   }
   PetscCall(PetscFree2(x, work));
   PetscFunctionReturn(0);

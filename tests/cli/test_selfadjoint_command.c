@@ -72,7 +72,7 @@ Test(selfadjoint_command, says_yes_no_and_what_it_cannot_take)
       {"gravity: {prescription: mlqc1, lorentzian_weight: -0.5}\n", "deficiency indices (0,0)", "yes", 0, 0},
       {"gravity: {prescription: mlqc1, cosmological_constant_over_critical: 0.01}\n", "deficiency indices (2,2)", "no",
        1, 2},
-      {"gravity: {prescription: mlqc2}\n", "1 and 72.9004 at large v", "yes", 0, 0},
+      {"gravity: {prescription: mlqc2}\n", "1 and 72.9004 at v", "yes", 0, 0},
       {"gravity: {prescription: smmo, curvature: closed_connection}\n", "deficiency indices (0,0)", "yes", 0, 0},
       {"gravity: {prescription: wdw}\nlattice: {lnv_min: 0, lnv_max: 1, points: 64}\n", "no operator on a lattice",
        NULL, 2, 0},

@@ -81,7 +81,7 @@ Test(five_selfadjoint, gives_all_four_roots)
 
   cr_assert_eq(ebb_selfadjoint_find(&one, &found), 0);
   for (int i = 0; i < 4; i++) cr_expect_float_eq(found.modulus[i], 1.0, 1e-12);
-  cr_expect(found.stable);
+  cr_expect_eq(found.stability, EBB_STABLE);
   cr_expect(found.slope < -0.5 && found.second_slope > 0.5, "%g %g", found.slope, found.second_slope);
   cr_expect_float_eq(found.exponent, -1.0, 1e-3, "%g", found.exponent);
   cr_assert_eq(ebb_selfadjoint_find(&two, &found), 0);
@@ -89,7 +89,7 @@ Test(five_selfadjoint, gives_all_four_roots)
   cr_expect_float_eq(found.modulus[1], 1.0, 1e-12);
   cr_expect_float_eq(found.modulus[2], 1.0, 1e-12);
   cr_expect_float_eq(found.modulus[3] / r, 1.0, 1e-5, "%g", found.modulus[3]);
-  cr_expect(!found.stable);
+  cr_expect_eq(found.stability, EBB_UNSTABLE_BOUNDED);
 }
 
 /* The Gram matrix by forward recursion, over so few sites that nothing is lost yet. 1e-8: the slower solution of mlqc2

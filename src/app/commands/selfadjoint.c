@@ -43,6 +43,19 @@ struct work {
   char path[2 * EBB_PATH_MAX], folder[EBB_PATH_MAX];
 };
 
+static const char *const stability_words[] = {
+    "stable: the large-volume roots lie on the unit circle or tend to it",
+    "unstable: the largest root stays above 1, beyond a recollapse or the critical cosmological constant",
+    "unstable: the largest root grows without bound, a large universe never becomes classical"};
+
+/* With hops of two sizes a root may stay off the circle at every volume; no state contains its solution. */
+static const char *stability_of(const struct ebb_selfadjoint *s)
+{
+  if (s->roots == 4 && s->stability == EBB_UNSTABLE_BOUNDED)
+    return "unstable: the largest root stays above 1, a solution that is not square summable: no state contains it";
+  return stability_words[s->stability];
+}
+
 static const char *verdict_of(const struct ebb_selfadjoint *s)
 {
   return s->n_plus < 0 ? "undecided" : s->n_plus == 0 ? "yes" : "no";
@@ -62,7 +75,8 @@ static PetscErrorCode first_positive(const struct work *w, double angle, double 
                                                  .angle = angle,
                                                  .low = w->below ? -high : 0.0,
                                                  .high = w->below ? 0.0 : high,
-                                                 .tolerance = TOLERANCE};
+                                                 .tolerance = TOLERANCE,
+                                                 .exact = true};
     struct ebb_spectrum *spectrum;
     char problem[256];
 
@@ -104,14 +118,16 @@ static PetscErrorCode put_attributes(struct ebb_store *store, const struct work 
   PetscCall(ebb_store_set_integer(store, g, "n_minus", s->n_minus));
   PetscCall(ebb_store_set_text(store, g, "reason", s->reason));
   PetscCall(ebb_store_set_text(store, g, "operator", w->rows.clock->formula));
-  PetscCall(ebb_store_set_text(store, g, "stable", s->stable ? "yes" : "no"));
+  PetscCall(ebb_store_set_text(store, g, "stable", s->stability == EBB_STABLE ? "yes" : "no"));
+  PetscCall(ebb_store_set_text(store, g, "stability", stability_of(s)));
   PetscFunctionReturn(0);
 }
 
 static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *invocation, const char *text,
                           const struct work *w)
 {
-  static const char sites[] = "/selfadjoint/sites", angle[] = "/selfadjoint/extension/angle";
+  static const char roots[] = "/selfadjoint/root_v", sites[] = "/selfadjoint/sites",
+                    angle[] = "/selfadjoint/extension/angle";
   const struct ebb_selfadjoint *s = &w->found;
 
   PetscFunctionBegin;
@@ -124,6 +140,10 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
                               "exponent of |psi|^2 at large v; NaN: exponentials"));
   PetscCall(ebb_result_number(store, "/selfadjoint/slope", s->slope, "1",
                               "d log(sum over an octave)/d log(sites) at the end"));
+  PetscCall(ebb_result_line(store, roots, EBB_ROOT_VOLUMES, s->root_v, "1", "volume label of the roots", NULL));
+  PetscCall(ebb_store_make_scale(store, roots));
+  PetscCall(ebb_result_line(store, "/selfadjoint/root_modulus", EBB_ROOT_VOLUMES, s->root_modulus, "1",
+                            "modulus of the larger root of the difference equation", roots));
   PetscCall(ebb_result_line(store, "/selfadjoint/modulus", s->roots, s->modulus, "1",
                             "moduli of the large-volume roots", NULL));
   if (s->roots == 4)
@@ -159,7 +179,8 @@ static void print(const struct work *w)
   printf("  evidence       %s\n", s->reason);
   printf("  roots          moduli ");
   for (int i = 0; i < s->roots; i++) printf("%s%.6g", !i ? "" : i + 1 < s->roots ? ", " : " and ", s->modulus[i]);
-  printf(" at large v: von Neumann %s\n", s->stable ? "stable" : "unstable (one solution grows exponentially)");
+  printf(" at v = %.3g\n", s->root_v[EBB_ROOT_VOLUMES - 1]);
+  printf("  von Neumann    %s\n", stability_of(s));
   if (w->angles)
     printf("  family         %s eigenvalue by gravity.extension.%s\n", w->below ? "largest negative" : "least positive",
            w->delta ? "delta" : "tau");
