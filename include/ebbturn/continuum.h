@@ -28,6 +28,9 @@ struct ebb_continuum {
   /* Where the sum of B converges (tilt > 0) and no flux leaves the first site, sqrt(B) is a normalisable state of
    * eigenvalue 0 below the continuum. */
   bool bound;
+  /* Two bands, no family: one negative eigenvalue lies below the continuum, as the solution of zero energy, a + b ln v
+   * at large volume, has a node (b/a < 0). The sign rule of mlqc2 does this in sectors up to about 1. */
+  bool below;
 };
 
 /* rows: flat, no cosmological constant, scalar clock. k [n] > 0. sites: per arm, of `function`. Collective: every rank

@@ -8,7 +8,8 @@
 #include "ebbturn/lattice.h"
 #include "ebbturn/rows.h"
 
-/* Which self-adjoint extension of a limit-circle operator (operators of nature EBB_NATURE_FAMILY). */
+/* Which self-adjoint extension (operators of nature EBB_NATURE_FAMILY; delta alone for EBB_NATURE_FAMILY_CONTINUOUS,
+ * whose eigenvalues below the continuum, in [low, min(high, 0)), are then found). */
 enum ebb_extension { EBB_EXTENSION_NONE, EBB_EXTENSION_DELTA, EBB_EXTENSION_TAU };
 
 struct ebb_spectrum_request {

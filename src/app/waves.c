@@ -80,7 +80,10 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
   PetscCall(ebb_store_set_real(store, "/spectrum", "kappa", rows->kappa));
   PetscCall(ebb_store_set_real(store, "/spectrum", "threshold", rows->kappa * rows->kappa * rows->gap));
   PetscCall(ebb_store_set_integer(store, "/spectrum", "multiplicity", c->channels));
-  PetscCall(ebb_store_set_text(store, "/spectrum", "bound_state", c->bound ? "eigenvalue 0" : "none"));
+  PetscCall(ebb_store_set_text(store, "/spectrum", "bound_state",
+                               c->bound   ? "eigenvalue 0"
+                               : c->below ? "one negative eigenvalue"
+                                          : "none"));
   PetscCall(ebb_result_stamp(store, "finished"));
   PetscFunctionReturn(0);
 }
@@ -97,6 +100,10 @@ static void print(const struct ebb_continuum *c, const char *path)
   if (c->bound)
     printf("  bound state    eigenvalue 0: the sum of B converges, psi = sqrt(B) is normalisable and below the "
            "continuum\n");
+  if (c->below)
+    printf("  bound state    one negative eigenvalue: the solution of zero energy has a node; the waves do not resolve "
+           "the "
+           "identity without it\n");
   printf("  functions      on %" PetscInt_FMT " sites up to |v| = %.6g\n", size,
          fabs(ebb_lattice_v(&c->lattice, size - 1)));
   printf("    %-12s %-22s alpha\n", "k", "eigenvalue");

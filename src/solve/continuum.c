@@ -97,6 +97,20 @@ static PetscErrorCode mode_find(struct ebb_continuum *c, int channel, PetscInt j
   PetscFunctionReturn(0);
 }
 
+/* cos(k ln v + alpha) = cos(alpha) - k sin(alpha) ln v + ... is the solution of zero energy as k falls: b/a = -k
+ * tan(alpha). */
+static PetscErrorCode look_below(struct ebb_continuum *c)
+{
+  static const double SMALL = 1e-4;
+  struct ebb_basis *basis;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_basis_create_modes(&c->lattice, 1, &SMALL, NULL, &basis));
+  c->below = tan(ebb_basis_info(basis)[0].alpha) > 0.0;
+  PetscCall(ebb_basis_destroy(&basis));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_continuum_find(const struct ebb_rows *rows, PetscInt n, const double k[], PetscInt sites,
                                   MPI_Comm comm, struct ebb_continuum **continuum)
 {
@@ -116,6 +130,7 @@ PetscErrorCode ebb_continuum_find(const struct ebb_rows *rows, PetscInt n, const
     c->eigenvalue[j] = rows->kappa * rows->kappa * (k[j] * k[j] + rows->gap);
     for (int i = 0; i < c->channels; i++) PetscCall(mode_find(c, i, j, comm));
   }
+  if (rows->band == 2 && nature == EBB_NATURE_CONTINUOUS) PetscCall(look_below(c));
   *continuum = c;
   PetscFunctionReturn(0);
 }
