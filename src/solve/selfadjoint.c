@@ -7,6 +7,8 @@
  * any v. */
 #include "ebbturn/selfadjoint.h"
 
+#include "selfadjoint_five.h"
+
 #include <complex.h>
 #include <math.h>
 
@@ -83,6 +85,7 @@ static void asymptotics(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
   bool bare = ebb_rows_potential(rows, FAR) == 0.0;
   const double w = bare ? 0.0 : -drive(rows, far, false);
 
+  r->roots = 2;
   roots(rows, far, r);
   r->exponent = NAN;
   /* Roots that meet at -1 (Lambda = Lambda_c): the gauge (-1)^n turns them to +1, and what is left of U beside C falls
@@ -168,6 +171,10 @@ PetscErrorCode ebb_selfadjoint_find(const struct ebb_rows *rows, struct ebb_self
 
   PetscFunctionBegin;
   *r = (struct ebb_selfadjoint){.n_plus = -1, .n_minus = -1};
+  if (rows->band == 2) {
+    PetscCall(ebb_selfadjoint_five(rows, r));
+    PetscFunctionReturn(0);
+  }
   asymptotics(rows, r);
   weyl(rows, r);
   if (r->asymptotic == r->weyl && r->weyl != EBB_LIMIT_UNDECIDED)
