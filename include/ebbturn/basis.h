@@ -9,6 +9,7 @@
 
 #include "ebbturn/constants.h"
 #include "ebbturn/lattice.h"
+#include "ebbturn/spectrum.h"
 
 #include <petscsys.h>
 
@@ -40,6 +41,12 @@ PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscIn
  * ascending. Sign: sign(last component) (-1)^j, that is positive at the
  * first site of a half lattice, where the component itself may underflow. Storage sites^2. */
 PetscErrorCode ebb_basis_create_eigenpairs(const struct ebb_lattice *lattice, struct ebb_basis **basis);
+
+/* The eigenfunctions of a spectrum (copied), k_j = sqrt(z_j)/kappa, or z_j/kappa where states move by exp(i H t). In
+ * the limit-circle case the last component stands for the whole tail: it is the tail's amplitude, so that sums over
+ * sites are those of the infinite lattice. Storage n sites on every rank. */
+PetscErrorCode ebb_basis_create_levels(const struct ebb_spectrum *spectrum, double kappa, bool root,
+                                       struct ebb_basis **basis);
 
 /* cos(k x), sin(k x) on the grid in x = ln v, for k_j = 2 pi (j0 + j)/L, j < n; functions 2j (cos) and 2j + 1 (sin),
  * both with frequency kappa k_j and scaled by 1/sqrt(2 pi). */

@@ -34,8 +34,9 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *co
                        const struct ebb_lattice *lattice, const struct ebb_sheet *sheet, PetscInt s,
                        const double moment[EBB_MOMENTS], double error[EBB_MOMENTS]);
 /* Absolute error of quantile `which` of sample s; level [levels], ascending, as asked for with the sheet. */
-double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_sheet *sheet, PetscInt s,
-                                 size_t levels, const double level[], size_t which);
+double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_lattice *lattice,
+                                 const struct ebb_sheet *sheet, PetscInt s, size_t levels, const double level[],
+                                 size_t which);
 /* Measures the drift of a packet's recursion at volumes from the matching one to the last site. Collective. */
 PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct ebb_packet *packet,
                                         const struct ebb_lattice *lattice, MPI_Comm comm);

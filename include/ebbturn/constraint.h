@@ -24,6 +24,7 @@ struct ebb_operator {
   MPI_Comm comm;
   PetscInt local;   /* sites of this rank */
   double low, high; /* the spectrum lies in [low, high] */
+  bool linear;      /* states move by exp(i Theta t); false: by exp(i sqrt(Theta) t) */
   PetscErrorCode (*apply)(const struct ebb_operator *op, const double complex x[],
                           double complex y[]); /* y = Theta x */
   /* One step of a three-term recurrence, z <- 2 (scale Theta + shift) x - z, in one pass; tally may be NULL. */

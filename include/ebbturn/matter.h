@@ -18,6 +18,8 @@ struct ebb_clock {
   const char *unit; /* of the operator */
   bool root;        /* states move by exp(i sqrt(operator) clock); false: by exp(i operator clock) */
   double growth;    /* the operator grows like v^growth sin^2 b */
+  /* density of the clock's matter: density_factor p^2 (root) or p, over V^density_power; p: its momentum */
+  double density_factor, density_power;
   double (*measure)(const struct ebb_prescription *p, double v); /* B(v) */
   double (*hop)(const struct ebb_prescription *p, double v);     /* C(v) of the link v -> v + 4, any real v */
   double (*edge)(const struct ebb_prescription *p, double sector);

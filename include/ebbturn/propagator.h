@@ -14,7 +14,8 @@ struct ebb_stepper; /* opaque */
 /* A positive-frequency state is carried as the pair (psi, root), root = sqrt(Theta) psi, for which
  *     psi(phi + t)  = cos(sqrt(Theta) t) psi  + i sin(sqrt(Theta) t)/sqrt(Theta) root
  *     root(phi + t) = cos(sqrt(Theta) t) root + i sin(sqrt(Theta) t) sqrt(Theta) psi
- * with entire functions of Theta: no square root is ever taken. Any pair (f, sqrt(Theta) f) goes the same way, so
+ * with entire functions of Theta: no square root is ever taken. A linear operator H (dust and the like) moves psi by
+ * exp(i H t), and root is H psi. Any pair (f, sqrt(Theta) f) goes the same way, so
  * (Theta^{-1/4} psi, Theta^{1/4} psi) does. */
 struct ebb_propagator {
   const char *name, *title, *formula, *source;
@@ -31,8 +32,8 @@ size_t ebb_propagators(void);
 const struct ebb_propagator *ebb_propagator_at(size_t index);
 const struct ebb_propagator *ebb_propagator_find(const char *name); /* NULL when there is none */
 
-/* kind must step, op must have a spectrum in [0, high]; op is not owned. tolerance: of the whole evolution, relative
- * to the norm; a step uses a thousandth of it. Collective. */
+/* kind must step, op must have a spectrum in [0, high] unless it is linear; op is not owned. tolerance: of the whole
+ * evolution, relative to the norm; a step uses a thousandth of it. Collective. */
 PetscErrorCode ebb_stepper_create(const struct ebb_propagator *kind, const struct ebb_operator *op, double tolerance,
                                   struct ebb_stepper **stepper);
 /* psi, root: [local]. Collective. Cost: |t| sqrt(high) applications of Theta in all for chebyshev, however large t. */

@@ -21,6 +21,7 @@ struct ebb_rows {
   double s; /* Lambda/Lambda_c */
   enum ebb_curvature curvature;
   double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  bool field;   /* a further field stands beside the volume */
   /* filled by ebb_rows_make */
   double scale;                     /* the operator is scale times measure, hop, edge and potential */
   double volume_unit, volume_power; /* physical volume V = volume_unit |v|^volume_power */
@@ -47,6 +48,9 @@ double ebb_rows_edge(const struct ebb_rows *rows); /* C below the first site of 
  * 023523 (2007), gr-qc/0612070). Forms from memory; their effective limits were verified. */
 double ebb_rows_potential(const struct ebb_rows *rows, double v);
 
+/* V/volume_unit at a site, |v|^volume_power. */
+double ebb_rows_volume(const struct ebb_rows *rows, double v);
+
 /* Matrix elements <v|.|v> and <v|.|v+4>, scale included. */
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v);
 double ebb_rows_offdiagonal(const struct ebb_rows *rows, double v);
@@ -60,6 +64,10 @@ enum ebb_nature {
   EBB_NATURE_FAMILY,      /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
   EBB_NATURE_OVERCRITICAL /* Lambda >= Lambda_c: no positive spectrum */
 };
+/* The flat model with a scalar clock and no cosmological constant: a continuum of generalised eigenfunctions. */
+bool ebb_rows_is_flat(const struct ebb_rows *rows);
+/* True where there is anything on the diagonal beside the flux form. */
+bool ebb_rows_has_potential(const struct ebb_rows *rows);
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows);
 
 /* |v| beyond which eigenfunctions of a low eigenvalue of a discrete operator have fallen by exp(-depth): psi ~

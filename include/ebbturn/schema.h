@@ -18,7 +18,7 @@ enum ebb_type {
   EBB_TYPE_FLAGS,   /* unsigned: bit i for choice i of a list */
   EBB_TYPE_COMPLEX, /* double [2]: a number, or a list of real and imaginary part; unset: NAN */
   EBB_TYPE_PARTS,   /* the components of a superposition; read by the input */
-  EBB_TYPE_EMPTY    /* a list that must be empty in this version; stored nowhere */
+  EBB_TYPE_FIELDS   /* a list of at most one section of keys, the rows of section `matter`; read by the input */
 };
 
 /* Which keys of `state` a profile takes: bit i is choice i of state.profile, the last one gaussian_momentum on a grid.

@@ -36,6 +36,16 @@ struct ebb_clock_settings {
   int samples;
 };
 
+/* A further field beside the clock; kind "" where there is none. */
+struct ebb_matter_settings {
+  char kind[EBB_NAME_MAX], name[EBB_NAME_MAX];
+  double momentum, spread;      /* of the packet exp(-(p - momentum)^2/(4 spread^2)); NAN when not given */
+  int points;                   /* of its circle ... */
+  double length;                /* ... of this length */
+  char potential[EBB_NAME_MAX]; /* "" : none */
+  double mass;
+};
+
 struct ebb_state_settings {
   char profile[EBB_NAME_MAX];
   double momentum;                      /* centre of the Gaussian in p_phi */
@@ -84,6 +94,7 @@ struct ebb_settings {
   char title[EBB_TITLE_MAX];
   struct ebb_gravity_settings gravity;
   struct ebb_clock_settings clock;
+  struct ebb_matter_settings matter;
   struct ebb_state_settings state;
   struct ebb_lattice_settings lattice;
   struct ebb_numerics_settings numerics;

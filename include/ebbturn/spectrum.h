@@ -12,7 +12,8 @@
 enum ebb_extension { EBB_EXTENSION_NONE, EBB_EXTENSION_DELTA, EBB_EXTENSION_TAU };
 
 struct ebb_spectrum_request {
-  const struct ebb_rows *rows; /* nature DISCRETE or FAMILY; FAMILY: a half lattice */
+  const struct ebb_rows *rows; /* nature DISCRETE or FAMILY (then a half lattice), or any but FAMILY with a wall */
+  bool wall;                   /* the lattice ends after `sites` sites: eigenvalues of that matrix, no limit taken */
   enum ebb_extension extension;
   double angle;     /* delta or tau */
   PetscInt count;   /* so many of the lowest; 0: every eigenvalue in [low, high] */
@@ -30,8 +31,8 @@ struct ebb_spectrum {
    * which the link beyond the last site counts, plus the rounding of the elements. FAMILY: the larger of the change
    * from half as many sites and an estimate of what the edge leaves out, plus rounding. */
   double *error;
-  double *function;  /* [n][lattice.end - lattice.begin]; unit l2 norm, the tail of an extension included; positive at
-                      * the first site (full lattices: at v = sector) */
+  double *function;  /* [n][size of the lattice], on every rank; unit l2 norm, the tail of an extension included;
+                      * positive at the first site (full lattices: at v = sector) */
   double tail_mass;  /* FAMILY: sum_{n > N} f_n^2 / f_N^2 beyond the last site, the last component stands for it */
   double counted[2]; /* where the Sturm counts were taken */
   PetscInt below[2]; /* eigenvalues below them */

@@ -7,6 +7,7 @@
 
 #include "ebbturn/basis.h"
 #include "ebbturn/settings.h"
+#include "ebbturn/spectrum.h"
 
 #include <complex.h>
 #include <stdbool.h>
@@ -16,6 +17,7 @@ struct ebb_profile_input {
   const struct ebb_state_settings *settings;
   const struct ebb_constants *constants;
   double k0, sigma_k; /* centre and standard deviation of |c|^2 in k */
+  double shift;       /* omega^2 = kappa^2 k^2 - shift: the square of a further field's momentum */
   double v0, at;      /* from_effective slides its point to large volume */
   const char *branch;
   const double *file_v; /* profile `file`: sites ascending, and their amplitudes */
@@ -30,6 +32,7 @@ struct ebb_profile {
   /* Fills k0, sigma_k, v0, at, branch. */
   void (*resolve)(struct ebb_profile_input *input);
   bool (*spectral)(const struct ebb_profile_input *input);
+  bool everywhere; /* an l2 vector at any b: which momenta it holds depends on the model; reach_k is the flat one's */
   /* c(k), not normalised; alpha: phase of the mode at large volume. */
   double complex (*coefficient)(const struct ebb_profile_input *input, double k, double alpha);
   /* psi at |v| of an arm (left = true: v < 0), not normalised; zero outside [*low, *high] of reach_v. */
@@ -40,6 +43,9 @@ struct ebb_profile {
   /* Largest distance in ln v between the packet at `at` and k0 (bounce volume), with its tails. */
   double (*reach_lnv)(const struct ebb_profile_input *input);
 };
+
+/* What a clock value turns the phase of mode k by: omega. */
+double ebb_profile_omega(const struct ebb_profile_input *input, double k);
 
 size_t ebb_profiles(void);
 const struct ebb_profile *ebb_profile_at(size_t index);
@@ -56,7 +62,10 @@ struct ebb_packet {
   double low_weight;     /* |c|^2 at the lower end of the k interval relative to its maximum: 0 unless cut at k = 0 */
   double channel_purity; /* least |C|^2 of the packet's channel on its own arm, where the share matters; 1 on half
                             lattices */
-  double lost;           /* 1 - norm of the l2 vector resolved in the basis: weight outside the k interval */
+  bool clipped;
+  double kept;        /* weight of the modes above request->shift before the rest was renormalised */
+  double omega_error; /* levels: largest error of an omega */
+  double lost;        /* 1 - norm of the l2 vector resolved in the basis: weight outside the k interval */
 };
 
 /* A stored l2 vector, for profile `file` (read by the layer that knows files). */
@@ -72,6 +81,7 @@ struct ebb_state_request {
   const struct ebb_constants *constants;
   const struct ebb_file_state *file; /* [components], or [1] for a plain profile; NULL where no profile is `file` */
   MPI_Comm comm;
+  double shift; /* omega^2 = kappa^2 k^2 - shift; modes below drop out */
 };
 
 /* How a state is resolved: the nodes in k and the lattice that the clock range needs. */
@@ -100,6 +110,13 @@ PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, 
 /* Packet in the eigenvectors of the walled lattice; c_j = c(k_j) sqrt((k_{j+1} - k_{j-1})/2) for spectral profiles. */
 PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
                                             struct ebb_packet **packet);
+/* Packet in the levels of a discrete spectrum, or of a walled lattice: in the eigenfunctions of request->settings'
+ * model whose clock momentum lies where the profile's does. extension, sites, wall: as in ebbturn/spectrum.h. Only the
+ * positive part of an operator that has both signs is used where states move by its square root. *lattice: where it
+ * lives. problem [size]: "" or what is wrong; *packet is then NULL. Collective. */
+PetscErrorCode ebb_packet_create_levels(const struct ebb_state_request *request,
+                                        const struct ebb_spectrum_request *levels, char *problem, size_t size,
+                                        struct ebb_lattice *lattice, struct ebb_packet **packet);
 /* Continuum packet on the grid in ln v: c(k) exp(+-i k (x - lnv0)), + contracting, both: the normalised sum. */
 PetscErrorCode ebb_packet_create_waves(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
                                        struct ebb_packet **packet);

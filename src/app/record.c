@@ -47,6 +47,7 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
   PetscFunctionBegin;
   PetscCall(ebb_result_root(store, run->settings, run->comm, invocation, model_text));
   PetscCall(ebb_store_set_text(store, "/", "propagator", ebb_method_name(run->method)));
+  PetscCall(ebb_store_set_text(store, "/", "propagator_reason", run->why));
   PetscCall(ebb_result_lattice(store, &run->lattice, &run->constants));
   PetscCall(
       ebb_result_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
@@ -60,7 +61,7 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
                                                       .units = "1",
                                                       .long_name = "probability of a site (density in /lattice/weight)",
                                                       .scale = {"/clock/value", "/lattice/v"}}));
-  if (o->keep & EBB_KEEP_STATE) {
+  if (ebb_run_keeps_states(run)) {
     double *clock;
 
     PetscCall(PetscMalloc1(states, &clock));
@@ -90,7 +91,7 @@ PetscErrorCode ebb_record_batch(struct ebb_store *store, const struct ebb_run *r
   if (run->settings->output.keep & EBB_KEEP_PROBABILITY)
     PetscCall(ebb_store_write(store, "/probability/v", (const hsize_t[]){(hsize_t)first, begin},
                               (const hsize_t[]){(hsize_t)sheet->m, local}, sheet->probability));
-  for (PetscInt s = 0; (run->settings->output.keep & EBB_KEEP_STATE) && s < sheet->m; s++) {
+  for (PetscInt s = 0; ebb_run_keeps_states(run) && s < sheet->m; s++) {
     if ((first + s) % every != 0) continue;
     PetscCall(ebb_store_write(store, "/state/psi", (const hsize_t[]){(hsize_t)((first + s) / every), begin},
                               (const hsize_t[]){1, local}, sheet->psi + (size_t)s * (size_t)sheet->local));
@@ -98,7 +99,7 @@ PetscErrorCode ebb_record_batch(struct ebb_store *store, const struct ebb_run *r
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_record *record)
+static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_run *run, const struct ebb_record *record)
 {
   char path[128], text[256];
 
@@ -106,9 +107,18 @@ static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_recor
   for (int i = 0; i < EBB_MOMENTS; i++) {
     const struct ebb_moment_info *info = &ebb_moment_table[i];
 
-    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s", info->name));
+    if (!ebb_moment_exists(&run->lattice, i)) continue;
+    const char *name = info->name;
+    char field[2 * EBB_NAME_MAX];
+
+    if (i == EBB_MOMENT_FIELD_MEAN || i == EBB_MOMENT_FIELD_SPREAD) {
+      PetscCall(PetscSNPrintf(field, sizeof field, "%s_%s", run->settings->matter.name,
+                              i == EBB_MOMENT_FIELD_MEAN ? "mean" : "spread"));
+      name = field;
+    }
+    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s", name));
     PetscCall(ebb_result_line(store, path, record->m, record->moment[i], info->units, info->long_name, "/clock/value"));
-    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s_error", info->name));
+    PetscCall(PetscSNPrintf(path, sizeof path, "/moments/%s_error", name));
     PetscCall(PetscSNPrintf(text, sizeof text, "absolute error of: %s", info->long_name));
     PetscCall(ebb_result_line(store, path, record->m, record->error[i], info->units, text, "/clock/value"));
   }
@@ -226,17 +236,39 @@ static PetscErrorCode put_budget(struct ebb_store *store, const struct ebb_budge
   PetscFunctionReturn(0);
 }
 
+/* What the further field is and how much of the product state has no positive frequency. */
+static PetscErrorCode put_field(struct ebb_store *store, const struct ebb_run *run)
+{
+  const struct ebb_bundle *b = run->bundle;
+  char group[2 * EBB_NAME_MAX], path[3 * EBB_NAME_MAX];
+
+  PetscFunctionBegin;
+  PetscCall(PetscSNPrintf(group, sizeof group, "/matter/%s", run->settings->matter.name));
+  PetscCall(PetscSNPrintf(path, sizeof path, "%s/momentum", group));
+  PetscCall(ebb_result_line(store, path, b->n, b->p, "sqrt(G)", "momentum of a slice", NULL));
+  PetscCall(ebb_store_make_scale(store, path));
+  char weight[3 * EBB_NAME_MAX];
+
+  PetscCall(PetscSNPrintf(weight, sizeof weight, "%s/weight", group));
+  PetscCall(ebb_result_line(store, weight, b->n, b->weight, "1", "probability of a slice", path));
+  PetscCall(ebb_store_set_real(store, group, "removed_weight", b->removed));
+  PetscCall(ebb_store_set_real(store, group, "length", b->length));
+  PetscCall(ebb_store_set_integer(store, group, "points", b->points));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run, const struct ebb_record *record)
 {
   const unsigned keep = run->settings->output.keep;
 
   PetscFunctionBegin;
-  if (keep & EBB_KEEP_MOMENTS) PetscCall(put_series(store, record));
+  if (keep & EBB_KEEP_MOMENTS) PetscCall(put_series(store, run, record));
   if ((keep & EBB_KEEP_QUANTILES) && record->levels) PetscCall(put_quantiles(store, run, record));
   PetscCall(put_bounce(store, &record->bounce));
   PetscCall(put_effective(store, &record->effective));
   if (record->has_law) PetscCall(put_law(store, run, &record->law));
   PetscCall(put_budget(store, &record->budget));
+  if (run->bundle) PetscCall(put_field(store, run));
   PetscCall(ebb_store_set_real(store, "/state", "channel_purity", run->packet->channel_purity));
   PetscCall(ebb_store_set_real(store, "/state", "low_weight", run->packet->low_weight));
   PetscCall(ebb_store_set_real(store, "/state", "lost", run->packet->lost));

@@ -26,8 +26,6 @@ struct ebb_record {
 PetscErrorCode ebb_record_create(PetscInt m, size_t levels, struct ebb_record *record);
 PetscErrorCode ebb_record_destroy(struct ebb_record *record);
 
-/* <|v|> exists where the packet has no weight at k = 0; behind a wall it always does. */
-bool ebb_run_mean_exists(const struct ebb_run *run);
 /* Drift of the recursion, and the quadrature error by the independent rule on a few samples, the range's ends among
  * them, where phases are largest. Before the first take. Collective. */
 PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run);

@@ -16,19 +16,34 @@ static const double GIGAFLOPS = 10e9; /* per core, a cautious dense-product rate
 
 const char *ebb_method_name(enum ebb_method method)
 {
-  static const char *const names[] = {"modes", "eigenpairs", "modes", "chebyshev", "krylov"};
+  static const char *const names[] = {"modes", "eigenpairs", "modes", "chebyshev", "krylov", "eigenpairs"};
   return names[method];
+}
+
+static const char *why_levels(enum ebb_nature nature)
+{
+  switch (nature) {
+  case EBB_NATURE_DISCRETE:
+    return "the spectrum is discrete: every level in the packet's range, no wall, no time step";
+  case EBB_NATURE_FAMILY:
+    return "the extension's spectrum is discrete: every positive level in the packet's range, no time step";
+  default:
+    return "the spectrum is continuous and this clock has no modes: levels of a wall beyond the packet's reach";
+  }
 }
 
 /* propagator: auto | modes | eigenpairs | chebyshev | krylov, and why. */
 static PetscErrorCode choose_method(struct ebb_run *run, const struct ebb_prescription *p)
 {
   const char *wanted = run->settings->numerics.propagator;
-  const bool wall = run->settings->lattice.points > 0;
+  const bool wall = run->settings->lattice.points > 0, flat = ebb_rows_is_flat(&run->rows);
   const char *why = "asked for in numerics.propagator";
 
   PetscFunctionBegin;
-  if (p->grid) {
+  if (!p->grid && !flat && (!strcmp(wanted, "auto") || !strcmp(wanted, "eigenpairs"))) {
+    run->method = EBB_METHOD_LEVELS;
+    why = why_levels(ebb_rows_nature(&run->rows));
+  } else if (p->grid) {
     run->method = EBB_METHOD_WAVES;
     why = "the continuum grid is diagonal in its Fourier waves";
   } else if (!strcmp(wanted, "modes"))
@@ -53,18 +68,36 @@ static PetscErrorCode choose_method(struct ebb_run *run, const struct ebb_prescr
   PetscFunctionReturn(0);
 }
 
+bool ebb_run_has_levels(const struct ebb_run *run)
+{
+  return run->method == EBB_METHOD_EIGENPAIRS || (!run->lattice.prescription->grid && !ebb_rows_is_flat(&run->rows));
+}
+
 static bool unbounded_start(const struct ebb_state_settings *s) { return isinf(s->v0); }
 
 /* What only the set-up can find wrong. */
 static PetscErrorCode refuse(struct ebb_run *run, const struct ebb_prescription *p)
 {
   const struct ebb_settings *s = run->settings;
-  const bool wall = run->method == EBB_METHOD_EIGENPAIRS;
+  const bool wall = run->method == EBB_METHOD_EIGENPAIRS, levels = !p->grid && !ebb_rows_is_flat(&run->rows);
   bool infinite = unbounded_start(&s->state);
 
   PetscFunctionBegin;
   for (size_t i = 0; i < s->state.components; i++) infinite = infinite || unbounded_start(&s->state.component[i]);
-  if (wall && infinite)
+  if (levels && run->method == EBB_METHOD_MODES)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "numerics.propagator 'modes' is for flat models with a scalar clock and no cosmological "
+                            "constant; take auto"));
+  else if (levels && run->method != EBB_METHOD_LEVELS && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "numerics.propagator '%s' steps with the whole operator, whose negative part has no square "
+                            "root; take auto",
+                            s->numerics.propagator));
+  else if (levels && infinite)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "state.v0 = infinity needs a universe that expands for ever and a scalar clock; give a "
+                            "finite v0"));
+  else if (wall && infinite)
     PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
                             "state.v0 = infinity needs the phase at large volume: propagator 'modes', not a wall"));
   else if (wall && s->lattice.points == 0 && s->lattice.volume_max == 0.0)
@@ -109,7 +142,8 @@ static PetscErrorCode size_lattice(struct ebb_run *run, const struct ebb_prescri
                             SITES_MOST));
     PetscFunctionReturn(0);
   }
-  PetscCall(ebb_lattice_make(p, s->gravity.sector, (PetscInt)sites, run->comm, &run->lattice));
+  (void)p;
+  PetscCall(ebb_lattice_make_model(&run->rows, (PetscInt)sites, run->comm, &run->lattice));
   PetscFunctionReturn(0);
 }
 
@@ -120,7 +154,7 @@ static PetscErrorCode plan_lattice(struct ebb_run *run, const struct ebb_state_r
   const struct ebb_settings *s = run->settings;
 
   PetscFunctionBegin;
-  PetscCall(ebb_lattice_make(p, s->gravity.sector, 2, run->comm, &run->lattice));
+  PetscCall(ebb_lattice_make_model(&run->rows, 2, run->comm, &run->lattice));
   if (run->method != EBB_METHOD_EIGENPAIRS)
     PetscCall(ebb_plan_make(request, &run->lattice, s->clock.from, s->clock.to, &run->plan));
   PetscCall(size_lattice(run, p));
@@ -139,6 +173,7 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
   *run = (struct ebb_run){.settings = settings, .comm = comm};
   run->constants = ebb_constants_make(g->newton, g->immirzi, g->polymer_scale);
   PetscCheck(p, comm, PETSC_ERR_ARG_UNKNOWN_TYPE, "no prescription '%s'", g->prescription);
+  run->rows = ebb_rows_of_settings(settings);
   PetscCall(choose_method(run, p));
   PetscCall(refuse(run, p));
   PetscCall(make_clock(run));
@@ -147,11 +182,15 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
     if (!*code) *code = EBB_EXIT_USAGE;
     PetscFunctionReturn(0);
   }
-  request = (struct ebb_state_request){settings, &run->constants, run->file, comm};
+  request =
+      (struct ebb_state_request){.settings = settings, .constants = &run->constants, .file = run->file, .comm = comm};
   if (p->grid) {
     const struct ebb_lattice_settings *l = &settings->lattice;
     PetscCall(ebb_lattice_make_grid(p, l->lnv_min, l->lnv_max, l->points, comm, &run->lattice));
     PetscCall(ebb_packet_create_waves(&request, &run->lattice, &run->packet));
+  } else if (!ebb_rows_is_flat(&run->rows)) {
+    PetscCall(ebb_run_create_levels(run, &request));
+    if (run->problem[0]) *code = EBB_EXIT_USAGE;
   } else {
     PetscCall(plan_lattice(run, &request, p));
     if (run->problem[0]) {
@@ -164,6 +203,10 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
       PetscCall(ebb_packet_create_modes(&request, &run->lattice, &run->plan, false, &run->packet));
       PetscCall(ebb_packet_create_modes(&request, &run->lattice, &run->plan, true, &run->check));
     }
+  }
+  if (!run->problem[0] && run->rows.field) {
+    PetscCall(ebb_run_create_bundles(run, &request));
+    if (run->problem[0]) *code = EBB_EXIT_USAGE;
   }
   PetscFunctionReturn(0);
 }
@@ -178,8 +221,8 @@ PetscErrorCode ebb_run_start(struct ebb_run *run)
                                       ebb_propagator_find(ebb_method_name(run->method)),
                                       run->settings->numerics.tolerance, &run->lattice, &run->constants, run->comm));
   else
-    ebb_source_packet(&run->source, run->packet, &run->lattice, &run->constants, run->comm);
-  if (run->check) ebb_source_packet(&run->check_source, run->check, &run->lattice, &run->constants, run->comm);
+    ebb_run_source(run, false, &run->source);
+  if (run->check) ebb_run_source(run, true, &run->check_source);
   PetscFunctionReturn(0);
 }
 
@@ -188,6 +231,9 @@ PetscErrorCode ebb_run_destroy(struct ebb_run *run)
   PetscFunctionBegin;
   if (run->source.data && (run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV))
     PetscCall(ebb_source_steps_destroy(&run->source));
+  if (run->bundle) run->packet = run->check = NULL; /* theirs */
+  PetscCall(ebb_bundle_destroy(&run->bundle));
+  PetscCall(ebb_bundle_destroy(&run->check_bundle));
   PetscCall(ebb_packet_destroy(&run->packet));
   PetscCall(ebb_packet_destroy(&run->check));
   PetscCall(ebb_plan_clear(&run->plan));
@@ -204,7 +250,7 @@ struct ebb_estimate ebb_run_estimate(const struct ebb_run *run)
 {
   const unsigned keep = run->settings->output.keep;
   const double n = (double)ebb_lattice_size(&run->lattice), modes = (double)run->packet->n;
-  const bool quantiles = run->settings->output.quantiles > 0, state = keep & EBB_KEEP_STATE;
+  const bool quantiles = run->settings->output.quantiles > 0, state = ebb_run_keeps_states(run);
   /* probabilities, their running sums for quantiles, states; per sample and site */
   const double bytes =
       (quantiles || (keep & EBB_KEEP_PROBABILITY) ? 8.0 : 0.0) + (quantiles ? 8.0 : 0.0) + (state ? 16.0 : 0.0);
@@ -220,6 +266,7 @@ struct ebb_estimate ebb_run_estimate(const struct ebb_run *run)
            16.0 * (EBB_MOMENTS + 4.0) * run->m;
   e.memory = local * bytes * (double)e.batch + modes * 8.0 * (12.0 * (double)e.batch + 600.0);
   e.seconds = n / ranks * modes * 12.0 * (double)run->m / GIGAFLOPS;
+  if (run->method != EBB_METHOD_EIGENPAIRS && ebb_run_has_levels(run)) e.memory += 16.0 * n * modes;
   if (run->method == EBB_METHOD_EIGENPAIRS) e.memory += 8.0 * n * n;
   if (run->method == EBB_METHOD_CHEBYSHEV ||
       run->method == EBB_METHOD_KRYLOV) { /* 1.5 v_max products per unit of clock */

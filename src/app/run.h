@@ -8,17 +8,29 @@
 #include "ebbturn/observables.h"
 #include "ebbturn/settings.h"
 
-enum ebb_method { EBB_METHOD_MODES, EBB_METHOD_EIGENPAIRS, EBB_METHOD_WAVES, EBB_METHOD_CHEBYSHEV, EBB_METHOD_KRYLOV };
+/* EBB_METHOD_LEVELS: the levels of a discrete spectrum, or of a wall beyond the packet's reach; also called
+ * eigenpairs. */
+enum ebb_method {
+  EBB_METHOD_MODES,
+  EBB_METHOD_EIGENPAIRS,
+  EBB_METHOD_WAVES,
+  EBB_METHOD_CHEBYSHEV,
+  EBB_METHOD_KRYLOV,
+  EBB_METHOD_LEVELS
+};
 
 struct ebb_run {
   const struct ebb_settings *settings;
   struct ebb_constants constants;
   MPI_Comm comm;
-  struct ebb_lattice lattice;
-  struct ebb_plan plan; /* empty for walls and grids */
+  struct ebb_rows rows;
+  struct ebb_lattice lattice, check_lattice; /* check: of the independent rule */
+  struct ebb_plan plan;                      /* empty for walls and grids */
   enum ebb_method method;
   char why[256];                     /* why this propagator */
   struct ebb_packet *packet, *check; /* check: the independent rule, NULL where there is none */
+  /* Beside a further field: all slices, by both rules; packet and check are then those of the heaviest slice. */
+  struct ebb_bundle *bundle, *check_bundle;
   struct ebb_source source, check_source;
   PetscInt m;
   double *phi;                 /* [m] clock values */
@@ -31,6 +43,25 @@ struct ebb_run {
  * Collective. */
 PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *folder, MPI_Comm comm,
                               struct ebb_run *run, int *code);
+/* Has |v| a mean? Where the packet has no weight at k = 0, and behind a wall; never in the limit-circle case. */
+bool ebb_run_mean_exists(const struct ebb_run *run);
+/* Are there levels rather than modes behind the state? */
+bool ebb_run_has_levels(const struct ebb_run *run);
+/* The part of the set-up for states in levels: packet, lattice and the independent rule; run->problem says what is
+ * wrong. */
+PetscErrorCode ebb_run_create_levels(struct ebb_run *run, const struct ebb_state_request *request);
+/* Sets extension, angle and wall of a request for the run's model. */
+void ebb_run_extension(const struct ebb_run *run, struct ebb_spectrum_request *levels);
+/* The part of the set-up for a further field, after packet and check of its mean momentum have chosen lattice and
+ * nodes: they make way for bundles. */
+PetscErrorCode ebb_run_create_bundles(struct ebb_run *run, const struct ebb_state_request *request);
+/* A source over the state by either rule, valid at any clock value; not over a stepping propagator. */
+void ebb_run_source(const struct ebb_run *run, bool check, struct ebb_source *source);
+/* Are states stored? They are asked for, and there is one field: a file holds no table over sites and a further field.
+ */
+bool ebb_run_keeps_states(const struct ebb_run *run);
+/* Mean of the clock's momentum. */
+double ebb_run_momentum(const struct ebb_run *run);
 /* Starts the propagator: after it the sources can be evaluated. */
 PetscErrorCode ebb_run_start(struct ebb_run *run);
 PetscErrorCode ebb_run_destroy(struct ebb_run *run);

@@ -38,6 +38,20 @@ static void print_bounce(const struct ebb_run *run, const struct ebb_record *rec
   line("effective", b->effective_volume, " length^3");
 }
 
+/* What goes beyond the flat model with a scalar clock. */
+static void print_beyond(const struct ebb_run *run)
+{
+  const struct ebb_gravity_settings *g = &run->settings->gravity;
+  const struct ebb_rows *rows = &run->rows;
+
+  if (run->lattice.prescription->grid || ebb_rows_is_flat(rows)) return;
+  printf("                 clock %s, curvature %s, Lambda %.6g (%.4g of the critical one)", rows->clock->name,
+         g->curvature, g->cosmological_constant, rows->s);
+  if (!isnan(g->extension_delta)) printf(", extension delta = %g", g->extension_delta);
+  if (!isnan(g->extension_tau)) printf(", extension tau = %g", g->extension_tau);
+  printf("\n");
+}
+
 void ebb_record_print(const struct ebb_run *run, const struct ebb_record *record, const char *path)
 {
   const struct ebb_settings *s = run->settings;
@@ -47,12 +61,16 @@ void ebb_record_print(const struct ebb_run *run, const struct ebb_record *record
   if (s->title[0]) printf("%s\n", s->title);
   printf("  model          %s, sector %g, gamma %g, lambda %g\n", s->gravity.prescription, s->gravity.sector,
          s->gravity.immirzi, s->gravity.polymer_scale);
+  print_beyond(run);
   printf("  method         %s: %s\n", ebb_method_name(run->method), run->why);
-  printf("  size           %" PetscInt_FMT " sites up to v = %.4g, %" PetscInt_FMT " modes, %" PetscInt_FMT
+  printf("  size           %" PetscInt_FMT " sites up to v = %.4g, %" PetscInt_FMT " %s, %" PetscInt_FMT
          " clock samples\n",
-         n, fabs(ebb_lattice_v(&run->lattice, n - 1)), run->packet->n, run->m);
+         n, fabs(ebb_lattice_v(&run->lattice, n - 1)), run->packet->n, ebb_run_has_levels(run) ? "levels" : "modes",
+         run->m);
   print_bounce(run, record);
-  printf("  error          mean volume to %.1e relative; largest contribution: %s (%s)\n",
+  printf("  error          %s to %.1e relative; largest contribution: %s (%s)\n",
+         ebb_run_has_levels(run) && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY ? "bounded observables"
+                                                                                     : "mean volume",
          record->budget.worst[largest], ebb_contribution_names[largest], ebb_contribution_texts[largest]);
   printf("  edge           at most %.1e of the probability above 0.9 of the largest v\n",
          record->budget.edge_probability);

@@ -13,7 +13,8 @@ enum { VERIFIED = 5 };            /* samples on which the independent rule is ev
 
 bool ebb_run_mean_exists(const struct ebb_run *run)
 {
-  return run->packet->low_weight < LOW_WEIGHT || run->method == EBB_METHOD_EIGENPAIRS;
+  if (!run->lattice.prescription->grid && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY) return false;
+  return run->packet->low_weight < LOW_WEIGHT || ebb_run_has_levels(run);
 }
 
 PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
@@ -29,9 +30,11 @@ PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
     PetscCall(ebb_budget_measure_drift(&record->budget, run->packet, &run->lattice, run->comm));
   /* an l2 vector's weight outside the k interval is an error of the state; below LOST it is the rounding of two sums */
   if (run->packet->lost > LOST) record->budget.propagation = sqrt(run->packet->lost);
+  record->budget.propagation +=
+      run->packet->omega_error * fmax(fabs(run->phi[0]), fabs(run->phi[run->m - 1])); /* phases of the levels */
   if (!run->check) PetscFunctionReturn(0);
   for (int i = 0; i < VERIFIED; i++) phi[i] = run->phi[(PetscInt)((double)i / (VERIFIED - 1) * (double)(run->m - 1))];
-  ebb_source_packet(&main_rule, run->packet, &run->lattice, &run->constants, run->comm);
+  ebb_run_source(run, false, &main_rule);
   PetscCall(main_rule.evaluate(&main_rule, VERIFIED, phi, &request, &rule));
   PetscCall(run->check_source.evaluate(&run->check_source, VERIFIED, phi, &request, &check));
   ebb_budget_compare(&record->budget, &run->constants, &run->lattice, &rule, &check, o->quantiles);
@@ -57,7 +60,7 @@ void ebb_record_take(struct ebb_record *r, const struct ebb_run *run, PetscInt f
 
       r->quantile[at] = sheet->quantile[(size_t)s * r->levels + q];
       r->quantile_error[at] =
-          ebb_budget_quantile_error(&r->budget, sheet, s, r->levels, run->settings->output.quantile, q);
+          ebb_budget_quantile_error(&r->budget, &run->lattice, sheet, s, r->levels, run->settings->output.quantile, q);
     }
   }
 }
@@ -65,20 +68,23 @@ void ebb_record_take(struct ebb_record *r, const struct ebb_run *run, PetscInt f
 PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
 {
   const struct ebb_prescription *p = run->lattice.prescription;
-  const struct ebb_samples samples = {run->m,   run->phi,  r->moment[EBB_MOMENT_V_MEAN],
-                                      r->slope, r->levels, r->levels ? r->quantile : NULL};
+  const bool family = !p->grid && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY;
+  const struct ebb_samples samples = {
+      run->m,   run->phi,  r->moment[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN],
+      r->slope, r->levels, r->levels ? r->quantile : NULL};
   double phi0, v0, sign;
 
   PetscFunctionBegin;
   PetscCall(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget,
                             ebb_run_mean_exists(run), &r->bounce));
-  r->has_law = !p->grid && !p->continuum && !isnan(r->bounce.clock.value);
+  r->has_law =
+      !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) && !run->bundle;
   if (r->has_law)
     PetscCall(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
   phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;
   v0 = r->moment[EBB_MOMENT_V_MEAN][0];
   sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
-  PetscCall(ebb_effective_make(&run->constants, p, run->packet->momentum_mean, phi0, v0, sign, run->m, run->phi,
-                               &r->effective));
+  PetscCall(
+      ebb_effective_make(&run->constants, p, ebb_run_momentum(run), phi0, v0, sign, run->m, run->phi, &r->effective));
   PetscFunctionReturn(0);
 }

@@ -258,7 +258,7 @@ static bool assign_complex(const struct task *task, const struct ebb_value *valu
 static bool shape_fits(const struct task *task, const struct ebb_value *value)
 {
   const enum ebb_type type = task->setting->type;
-  const bool wants_list = type == EBB_TYPE_REALS || type == EBB_TYPE_FLAGS || type == EBB_TYPE_EMPTY;
+  const bool wants_list = type == EBB_TYPE_REALS || type == EBB_TYPE_FLAGS || type == EBB_TYPE_FIELDS;
 
   if (value->list == wants_list || type == EBB_TYPE_COMPLEX) return true;
   ebb_text_append(task->why, wants_list ? " must be a list such as [a, b]" : " must be one value, not a list");
@@ -295,9 +295,9 @@ bool ebb_setting_assign(const struct ebb_setting *setting, const struct ebb_valu
     return assign_flags(&task, value, out);
   case EBB_TYPE_COMPLEX:
     return assign_complex(&task, value, out);
-  case EBB_TYPE_EMPTY:
-    if (value->count == 0) return true;
-    ebb_text_append(why, " has %zu entr%s", value->count, value->count == 1 ? "y" : "ies");
+  case EBB_TYPE_FIELDS:
+    if (value->count <= 1) return true;
+    ebb_text_append(why, " has %zu entries", value->count);
     append_advice(&task);
     return false;
   case EBB_TYPE_PARTS:
@@ -370,7 +370,7 @@ void ebb_setting_unset(const struct ebb_setting *setting, struct ebb_settings *s
     *(unsigned *)out = 0;
     break;
   case EBB_TYPE_PARTS: /* owned: ebb_settings_clear */
-  case EBB_TYPE_EMPTY:
+  case EBB_TYPE_FIELDS:
     break;
   }
 }

@@ -33,7 +33,7 @@ void ebb_settings_resolve(struct ebb_settings *settings)
         gravity->cosmological_constant_over_critical *
         ebb_constants_make(gravity->newton, gravity->immirzi, gravity->polymer_scale).critical_lambda;
   if (!strcmp(settings->clock.kind, "dust") && !settings->clock.ordering[0])
-    ebb_text_copy(settings->clock.ordering, EBB_NAME_MAX, "symmetric_sqrt");
+    ebb_text_copy(settings->clock.ordering, EBB_NAME_MAX, settings->matter.kind[0] ? "densitised" : "symmetric_sqrt");
 }
 
 void ebb_settings_clear(struct ebb_settings *settings)
@@ -45,6 +45,9 @@ void ebb_settings_clear(struct ebb_settings *settings)
 
 /* How values are written: JSON, or for people. */
 enum style { STYLE_JSON, STYLE_PEOPLE };
+
+/* A key of the further field: written inside the list `matter`. */
+static bool of_field(const struct ebb_setting *setting) { return !strncmp(setting->key, "matter.", strlen("matter.")); }
 
 static const void *place(const struct ebb_setting *setting, const struct ebb_settings *settings,
                          const struct ebb_state_settings *state)
@@ -77,7 +80,7 @@ static bool is_set(const struct ebb_setting *setting, const struct ebb_settings 
     return state->components > 0;
   case EBB_TYPE_TEXT:
   case EBB_TYPE_FLAGS:
-  case EBB_TYPE_EMPTY:
+  case EBB_TYPE_FIELDS:
     return true;
   }
   return false;
@@ -138,6 +141,36 @@ static void append_reals(struct ebb_text *text, const double *value, size_t coun
 }
 
 static void append_value(struct ebb_text *text, const struct ebb_setting *setting, const struct ebb_settings *settings,
+                         const struct ebb_state_settings *state, enum style style);
+
+/* The list `matter`: empty, or one field's keys; those of its grid come last and stand in a section of their own. */
+static void append_field(struct ebb_text *text, const struct ebb_settings *settings, enum style style)
+{
+  const char *separator = "";
+  bool grid = false;
+
+  if (!settings->matter.kind[0] || style == STYLE_PEOPLE) {
+    ebb_text_append(text, settings->matter.kind[0] ? "[one field]" : "[]");
+    return;
+  }
+  ebb_text_append(text, "[{");
+  for (size_t i = 0; i < ebb_setting_count(); i++) {
+    const struct ebb_setting *setting = ebb_setting_at(i);
+
+    if (!of_field(setting) || !is_set(setting, settings, &settings->state)) continue;
+    ebb_text_append(text, "%s", separator);
+    if (!grid && ebb_setting_in(setting, "matter.grid")) {
+      ebb_text_append(text, "\"grid\": {");
+      grid = true;
+    }
+    ebb_text_append(text, "\"%s\": ", ebb_setting_leaf(setting));
+    append_value(text, setting, settings, &settings->state, style);
+    separator = ", ";
+  }
+  ebb_text_append(text, grid ? "}}]" : "}]");
+}
+
+static void append_value(struct ebb_text *text, const struct ebb_setting *setting, const struct ebb_settings *settings,
                          const struct ebb_state_settings *state, enum style style)
 {
   const void *at = place(setting, settings, state);
@@ -166,8 +199,8 @@ static void append_value(struct ebb_text *text, const struct ebb_setting *settin
   case EBB_TYPE_FLAGS:
     append_flags(text, setting, *(const unsigned *)at, style);
     break;
-  case EBB_TYPE_EMPTY:
-    ebb_text_append(text, "[]");
+  case EBB_TYPE_FIELDS:
+    append_field(text, settings, style);
     break;
   case EBB_TYPE_PARTS:
     break; /* written by the callers, which know how to nest */
@@ -238,7 +271,8 @@ char *ebb_settings_json(const struct ebb_settings *settings)
     const size_t section = ebb_setting_section(setting), last = before ? ebb_setting_section(before) : 0;
     const bool same = before && section == last && !strncmp(setting->key, before->key, section);
 
-    if (!written(setting, settings, &settings->state) || (same && ebb_setting_of_state(setting))) continue;
+    if (!written(setting, settings, &settings->state) || (same && ebb_setting_of_state(setting)) || of_field(setting))
+      continue;
     if (same)
       ebb_text_append(&text, ", ");
     else

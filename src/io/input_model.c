@@ -78,37 +78,80 @@ static void check_extension(const struct ebb_reader *reader, const struct ebb_ro
                         "phase at infinity drifts; give gravity.extension.tau");
 }
 
+/* Complains where the operator needs an extension and none is given; false then. */
+static bool has_extension(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  if (ebb_reader_given(reader, "gravity.extension.delta")->node ||
+      ebb_reader_given(reader, "gravity.extension.tau")->node)
+    return true;
+  ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"),
+                      "gravity.extension is missing: the deficiency indices are %s, so there is a family of "
+                      "self-adjoint extensions, each with a spectrum of its own; %s",
+                      rows->half ? "(1,1)" : "(2,2)",
+                      !rows->half ? "take sector 2 or 4, and one extension"
+                      : rows->curvature == EBB_CURVATURE_NONE && rows->clock->growth == 2.0
+                          ? "give extension: {delta: ...} or {tau: ...}"
+                          : "give extension: {tau: ...}");
+  return false;
+}
+
+static void complain_overcritical(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"),
+                      "the cosmological constant is %.6g of the critical one, 3/(gamma^2 lambda^2): the operator has "
+                      "no positive part, no physical states; take less than 1",
+                      rows->s);
+}
+
+/* Profiles that speak of a free scalar: a wave in ln v, a point of the flat trajectory. */
+static void check_profile(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const struct ebb_state_settings *state = &reader->settings->state;
+  const bool flat = ebb_rows_is_flat(rows), scalar = !strcmp(rows->clock->kind, "scalar");
+
+  for (size_t i = 0; i <= state->components; i++) {
+    const char *profile = i < state->components ? state->component[i].profile : state->profile;
+
+    if (!flat && !strcmp(profile, "from_effective"))
+      ebb_reader_complain(reader, ebb_reader_section(reader, "state"),
+                          "state.profile 'from_effective' follows the flat model's trajectory to large volume; take "
+                          "gaussian_volume here");
+    else if (!scalar && !strcmp(profile, "gaussian_lnv"))
+      ebb_reader_complain(reader, ebb_reader_section(reader, "state"),
+                          "state.profile 'gaussian_lnv' is a wave in ln v, which belongs to a scalar clock; take "
+                          "gaussian_volume or gaussian_momentum with clock '%s'",
+                          rows->clock->kind);
+  }
+}
+
+static void check_evolution(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const enum ebb_nature nature = ebb_rows_nature(rows);
+
+  if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
+    complain_overcritical(reader, rows);
+  else if (nature == EBB_NATURE_FAMILY)
+    (void)has_extension(reader, rows);
+  check_profile(reader, rows);
+}
+
 /* Why this operator has no list of eigenvalues; false where it has none. */
 static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_rows *rows)
 {
-  const bool given = ebb_reader_given(reader, "gravity.extension.delta")->node ||
-                     ebb_reader_given(reader, "gravity.extension.tau")->node;
   const struct ebb_origin origin = ebb_reader_section(reader, "gravity");
 
   switch (ebb_rows_nature(rows)) {
   case EBB_NATURE_DISCRETE:
     return true;
   case EBB_NATURE_FAMILY:
-    if (given) return true;
-    ebb_reader_complain(reader, origin,
-                        "gravity.extension is missing: the deficiency indices are %s, so there is a family of "
-                        "self-adjoint extensions, each with a spectrum of its own; %s",
-                        rows->half ? "(1,1)" : "(2,2)",
-                        !rows->half ? "take sector 2 or 4, and one extension"
-                        : rows->curvature == EBB_CURVATURE_NONE && rows->clock->growth == 2.0
-                            ? "give extension: {delta: ...} or {tau: ...}"
-                            : "give extension: {tau: ...}");
-    return false;
+    return has_extension(reader, rows);
   case EBB_NATURE_CONTINUOUS:
     ebb_reader_complain(reader, origin,
                         "this model has a continuous spectrum; 'spectrum' lists discrete ones in this version: a "
                         "negative cosmological constant, a closed model, or an extension");
     return false;
   case EBB_NATURE_OVERCRITICAL:
-    ebb_reader_complain(reader, origin,
-                        "the cosmological constant is %.6g of the critical one, 3/(gamma^2 lambda^2): the operator has "
-                        "no positive part, no physical states; take less than 1",
-                        rows->s);
+    complain_overcritical(reader, rows);
     return false;
   }
   return false;
@@ -148,7 +191,6 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
                                        "gravity.extension.tau",
                                        "gravity.extension.delta",
                                        "gravity.cosmological_constant_over_critical"};
-  const struct ebb_given *far;
   struct ebb_rows rows;
 
   if (!reader->prescription) return;
@@ -157,18 +199,15 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
   if (ebb_reader_given(reader, "gravity.area_gap")->node && ebb_reader_given(reader, "gravity.polymer_scale")->node)
     return; /* complained of already */
   if (!consistent(reader)) return;
-  far = beyond(reader);
-  if (far && (reader->need & EBB_NEED_CLOCK_RANGE)) {
-    ebb_reader_complain(reader, far->origin, "evolution of this model is not available in this version; 'spectrum' is");
-    return;
-  }
+  rows = ebb_rows_of_settings(reader->settings);
+  ebb_reader_check_matter(reader, &rows);
   if (reader->prescription->grid) {
     if (reader->need & EBB_NEED_SPECTRUM)
       ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"), "prescription '%s' has a continuous spectrum",
                           reader->prescription->name);
     return;
   }
-  rows = ebb_rows_of_settings(reader->settings);
   check_extension(reader, &rows);
+  if (reader->need & EBB_NEED_CLOCK_RANGE) check_evolution(reader, &rows);
   if ((reader->need & EBB_NEED_SPECTRUM) && has_eigenvalues(reader, &rows)) check_wanted(reader, &rows);
 }

@@ -64,6 +64,9 @@ bool ebb_reader_take(const struct ebb_reader *reader, size_t row, struct ebb_giv
 void ebb_reader_state(struct ebb_reader *reader);
 void ebb_reader_check(const struct ebb_reader *reader);
 void ebb_reader_check_model(const struct ebb_reader *reader);
+struct ebb_rows;
+/* rows: of the model, all of whose settings are good. */
+void ebb_reader_check_matter(const struct ebb_reader *reader, const struct ebb_rows *rows);
 bool ebb_reader_good(const struct ebb_reader *reader, const char *key); /* not given, or given and taken */
 struct ebb_origin ebb_reader_later(const struct ebb_given *a, const struct ebb_given *b);
 

@@ -49,7 +49,7 @@ bool ebb_reader_take(const struct ebb_reader *reader, size_t row, struct ebb_giv
     wrong = "must be a value, not a section of keys";
   else if (value.list) {
     value.count = node->count;
-    if (setting->type != EBB_TYPE_EMPTY) wrong = flatten(node, item); /* there only the count matters */
+    if (setting->type != EBB_TYPE_FIELDS) wrong = flatten(node, item); /* there the count matters, and the keys below */
   } else {
     item[0] = scalar_of(node);
   }
@@ -60,5 +60,11 @@ bool ebb_reader_take(const struct ebb_reader *reader, size_t row, struct ebb_giv
   given->taken = ebb_setting_assign(setting, &value, ebb_input_choice, reader->settings, state, &why);
   if (!given->taken) ebb_reader_complain(reader, given->origin, "%s%s%s%s", path, dot, leaf, ebb_text_get(&why));
   ebb_text_clear(&why);
+  if (given->taken && setting->type == EBB_TYPE_FIELDS && node->first) {
+    if (node->first->kind == EBB_YAML_MAP)
+      ebb_reader_collect(reader, node->first, leaf, leaf, false, NULL, reader->given);
+    else if (!node->first->spoilt)
+      ebb_reader_complain(reader, given->origin, "%s must hold a section of keys such as {kind: scalar, ...}", leaf);
+  }
   return given->taken;
 }

@@ -46,6 +46,7 @@ struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings)
       .curvature = curvature_find(g->curvature),
   };
 
+  rows.field = settings->matter.kind[0] != '\0';
   rows.s = g->cosmological_constant / rows.constants.critical_lambda;
   ebb_rows_make(&rows);
   return rows;
@@ -78,6 +79,21 @@ double ebb_rows_potential(const struct ebb_rows *rows, double v)
   if (rows->p_phi != 0.0 && clock->kinetic)
     value -= rows->p_phi * rows->p_phi * clock->kinetic(&rows->constants, v) / rows->scale;
   return value;
+}
+
+bool ebb_rows_has_potential(const struct ebb_rows *rows)
+{
+  return rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE || (rows->p_phi != 0.0 && rows->clock->kinetic);
+}
+
+bool ebb_rows_is_flat(const struct ebb_rows *rows)
+{
+  return !strcmp(rows->clock->name, "scalar") && !ebb_rows_has_potential(rows);
+}
+
+double ebb_rows_volume(const struct ebb_rows *rows, double v)
+{
+  return rows->volume_power == 1.0 ? fabs(v) : pow(fabs(v), rows->volume_power);
 }
 
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v)

@@ -4,7 +4,7 @@
 #include <math.h>
 #include <string.h>
 
-enum { NODES = 9, SECTION = 17, SECTIONS = 12, OUTSIDE_TRIES = 6, LIMIT_DOUBLINGS = 48 };
+enum { NODES = 9, SECTION = 17, SECTIONS = 12, OUTSIDE_TRIES = 6, OUTSIDE_STRIDES = 4, LIMIT_DOUBLINGS = 48 };
 static const double NEGLIGIBLE_TAIL = 1e-18; /* v^2-weighted share beyond the sites that the search looks at */
 static const double CLOSE = 1e-4;            /* of the bracket: half width of the parabola's support */
 static const double SECTIONED = 1e-9;        /* of the bracket: where sectioning for the median stops */
@@ -84,6 +84,7 @@ static PetscErrorCode bracket_outside(struct ebb_source *source, const struct eb
                                       double *high, bool *found)
 {
   const double kappa = source->constants->kappa;
+  const double stride = (samples->phi[samples->m - 1] - samples->phi[0]) / OUTSIDE_STRIDES;
   const bool before = samples->slope[0] > 0.0;
   double phi = before ? samples->phi[0] : samples->phi[samples->m - 1];
   double v = before ? samples->v[0] : samples->v[samples->m - 1];
@@ -94,7 +95,9 @@ static PetscErrorCode bracket_outside(struct ebb_source *source, const struct eb
   for (int i = 0; i < OUTSIDE_TRIES; i++) {
     const double plus = fmax(v + slope / kappa, 1e-12 * v), minus = fmax(v - slope / kappa, 1e-12 * v);
     const double away = before ? -0.5 * log(plus / minus) / kappa : 0.5 * log(minus / plus) / kappa;
-    const double next = phi + away + (before ? -0.02 : 0.02) / kappa; /* a little beyond, to bracket it */
+    /* a little beyond, to bracket it; models without that law are followed in strides */
+    const double next = ebb_rows_is_flat(&source->lattice->rows) ? phi + away + (before ? -0.02 : 0.02) / kappa
+                                                                 : phi + (before ? -stride : stride);
     double next_v = NAN, next_slope = NAN;
 
     PetscCall(look(source, 1, &next, 0.0, &next_v, &next_slope));
@@ -185,8 +188,8 @@ static PetscErrorCode refine_median(struct ebb_source *source, const struct ebb_
 
     *clock = phi[best];
     median->value = at[best];
-    median->error =
-        fmax(at[before], at[after]) - at[best] + ebb_budget_quantile_error(budget, &sheet, best, LEVELS, level, MEDIAN);
+    median->error = fmax(at[before], at[after]) - at[best] +
+                    ebb_budget_quantile_error(budget, source->lattice, &sheet, best, LEVELS, level, MEDIAN);
     low = phi[before];
     high = phi[after];
     PetscCall(ebb_sheet_clear(&sheet));
@@ -210,6 +213,17 @@ static int quantiles_turn(const struct ebb_samples *samples)
   return 1;
 }
 
+/* Largest |d ln v/d clock| at the last site: v' = 2 dH/db of the symbol v^growth sin^2 b or its root; kappa for the
+ * scalar. */
+static double edge_speed(const struct ebb_lattice *lattice)
+{
+  const struct ebb_rows *rows = &lattice->rows;
+  const double v = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)), growth = rows->clock->growth;
+
+  if (rows->clock->root) return 2.0 * sqrt(rows->scale) * pow(v, 0.5 * growth - 1.0);
+  return 2.0 * rows->scale * pow(v, growth - 1.0);
+}
+
 /* Volume, density and mode at the bounce clock, with errors from the budget and the independent rule. */
 static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *check, const struct ebb_budget *budget,
                                 double clock, double v_limit, struct ebb_bounce *bounce, double *slope_error)
@@ -228,12 +242,16 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
     *slope_error = fabs(other.sum[EBB_SUM_SLOPE][0] - sheet.sum[EBB_SUM_SLOPE][0]);
     PetscCall(ebb_sheet_clear(&other));
   }
-  /* what crosses the last site at the speed kappa in ln v: the slope of a steep tail exceeds kappa times the tail */
+  /* what crosses the last site at its speed in ln v: the slope of a steep tail exceeds the speed times the tail */
   if (!source->lattice->prescription->grid)
-    *slope_error += source->constants->kappa * sheet.sum[EBB_SUM_EDGE_V][0] / log(sheet.edge_ratio);
+    *slope_error += edge_speed(source->lattice) * sheet.sum[EBB_SUM_EDGE_V][0] / log(sheet.edge_ratio);
   ebb_moments_from_sums(source->constants, source->lattice, &sheet, 0, moment);
   ebb_budget_errors(&local, source->constants, source->lattice, &sheet, 0, moment, error);
-  bounce->v = (struct ebb_measured){moment[EBB_MOMENT_V_MEAN], error[EBB_MOMENT_V_MEAN]};
+  { /* what turns where the volume has no mean is that of its arctan; the median replaces it in the end */
+    const enum ebb_moment turns = source->bounded_scale > 0.0 ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN;
+
+    bounce->v = (struct ebb_measured){moment[turns], error[turns]};
+  }
   bounce->density = (struct ebb_measured){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
   bounce->v_mode = (struct ebb_measured){
       sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};

@@ -20,9 +20,13 @@ const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS] = {
 };
 
 /* Moments that may vanish are compared with their own bound instead of their value. */
-static double scale_of(const struct ebb_constants *c, int which, double value)
+static double scale_of(const struct ebb_constants *c, int which, const double moment[])
 {
+  const double value = moment[which];
+
   switch (which) {
+  case EBB_MOMENT_FIELD_MEAN:
+    return fmax(fabs(value), moment[EBB_MOMENT_FIELD_SPREAD]);
   case EBB_MOMENT_HUBBLE_MEAN:
   case EBB_MOMENT_HUBBLE_SPREAD:
     return fmax(fabs(value), c->hubble_max);
@@ -39,6 +43,10 @@ static double normal_ratio(double z, double width)
   const double above = 0.5 * erfc(z / sqrt(2.0)), inside = 0.5 * erfc((z - width) / sqrt(2.0)) - above;
   return inside > 0.0 ? above / inside : 0.0;
 }
+
+/* Limit circle: the last component stands for everything beyond it, at unknown volumes; a bounded observable, links
+ * included, is uncertain by this many times its probability. */
+static const double TAIL_AND_LINK = 3.0;
 
 /* Weight beyond the edge from the last two windows of equal ratio: a tail falling by r per window holds r/(1-r) of the
  * last one; a Gaussian tail holds less. Where the tail hardly falls, SLOW windows of it are charged. */
@@ -173,12 +181,16 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
 {
+  const bool family = !lattice->prescription->grid && ebb_rows_nature(&lattice->rows) == EBB_NATURE_FAMILY;
   const double edge0 =
-      weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]);
+      family ? TAIL_AND_LINK * sheet->sum[EBB_SUM_LAST][s]
+             : weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]);
   const double edge1 = weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V, sheet->sum[EBB_SUM_V][s]);
   const double edge2 =
       weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2, sheet->sum[EBB_SUM_V2][s]);
-  const double v = moment[EBB_MOMENT_V_MEAN], dv = moment[EBB_MOMENT_V_SPREAD];
+  /* without a mean, the geometric one and the whole lattice for its spread: both only size up roundings */
+  const double v = family ? exp(moment[EBB_MOMENT_LNV_MEAN]) : moment[EBB_MOMENT_V_MEAN];
+  const double dv = family ? fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)) : moment[EBB_MOMENT_V_SPREAD];
   const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)), lnv_max = log(v_max);
   const double state =
       budget->propagation; /* error of the state vector: a mean moves by 2 |state| times its own spread */
@@ -188,14 +200,14 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   double contribution[EBB_CONTRIBUTIONS];
 
   for (int i = 0; i < EBB_MOMENTS; i++)
-    error[i] = scale_of(c, i, moment[i]) * (budget->quadrature[i] + common + edge0 + 2.0 * state);
-  contribution[EBB_ERROR_EDGE] = edge1 / v;
-  contribution[EBB_ERROR_QUADRATURE] = budget->quadrature[EBB_MOMENT_V_MEAN];
+    error[i] = scale_of(c, i, moment) * (budget->quadrature[i] + common + edge0 + 2.0 * state);
+  contribution[EBB_ERROR_EDGE] = family ? edge0 : edge1 / v;
+  contribution[EBB_ERROR_QUADRATURE] = budget->quadrature[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN];
   contribution[EBB_ERROR_NORMALISATION] = normalisation;
-  contribution[EBB_ERROR_PROPAGATION] = far / v;
+  contribution[EBB_ERROR_PROPAGATION] = family ? 2.0 * state : far / v;
   contribution[EBB_ERROR_ROUNDING] = rounding;
   for (int i = 0; i < EBB_CONTRIBUTIONS; i++) budget->worst[i] = fmax(budget->worst[i], contribution[i]);
-  budget->edge_probability = fmax(budget->edge_probability, sheet->sum[EBB_SUM_EDGE][s]);
+  if (!family) budget->edge_probability = fmax(budget->edge_probability, sheet->sum[EBB_SUM_EDGE][s]);
 
   error[EBB_MOMENT_NORM] =
       edge0 + 2.0 * state + 2.0 * drift_of(budget, v, dv) + rounding + budget->quadrature[EBB_MOMENT_NORM];
@@ -219,8 +231,10 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
     const double variance = 4.0 * (p * p + dp * dp) * (common + edge0 + 2.0 * state);
     error[EBB_MOMENT_MOMENTUM_SPREAD] = dp * budget->quadrature[EBB_MOMENT_MOMENTUM_SPREAD] + root_error(variance, dp);
   }
-  error[EBB_MOMENT_VOLUME_MEAN] = c->volume_unit * error[EBB_MOMENT_V_MEAN];
-  error[EBB_MOMENT_VOLUME_SPREAD] = c->volume_unit * error[EBB_MOMENT_V_SPREAD];
+  if (lattice->rows.volume_power == 1.0) {
+    error[EBB_MOMENT_VOLUME_MEAN] = c->volume_unit * error[EBB_MOMENT_V_MEAN];
+    error[EBB_MOMENT_VOLUME_SPREAD] = c->volume_unit * error[EBB_MOMENT_V_SPREAD];
+  }
   error[EBB_MOMENT_DENSITY_OF_MEANS] =
       2.0 * moment[EBB_MOMENT_DENSITY_OF_MEANS] *
       (error[EBB_MOMENT_V_MEAN] / v + error[EBB_MOMENT_MOMENTUM_MEAN] / moment[EBB_MOMENT_MOMENTUM_MEAN]);
@@ -230,12 +244,16 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
                                    beyond(sheet->sum[EBB_SUM_EDGE_DRESSED][s], sheet->sum[EBB_SUM_INNER_DRESSED][s]) /
                                        fmax(sheet->sum[EBB_SUM_DRESSED][s], 1e-300));
   error[EBB_MOMENT_HUBBLE_SPREAD] = fmax(error[EBB_MOMENT_HUBBLE_SPREAD], 0.0);
+  for (int i = 0; i < EBB_MOMENTS; i++)
+    if (!ebb_moment_exists(lattice, i)) error[i] = NAN;
 }
 
-double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_sheet *sheet, PetscInt s,
-                                 size_t levels, const double level[], size_t which)
+double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct ebb_lattice *lattice,
+                                 const struct ebb_sheet *sheet, PetscInt s, size_t levels, const double level[],
+                                 size_t which)
 {
-  const double edge0 = beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
+  const bool family = !lattice->prescription->grid && ebb_rows_nature(&lattice->rows) == EBB_NATURE_FAMILY;
+  const double edge0 = family ? 0.0 : beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
   const double *q = sheet->quantile + (size_t)s * levels;
   const double v = sheet->sum[EBB_SUM_V][s], spread = sqrt(fmax(sheet->sum[EBB_SUM_V2][s] - v * v, 1.0));
   const double missing =
@@ -248,6 +266,8 @@ double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct e
   const size_t low = inside ? which - 1 : 0, high = inside ? which + 1 : levels - 1;
   const double width = levels > 1 ? (q[high] - q[low]) / (level[high] - level[low]) : spread;
 
+  /* limit circle: beyond the last site only the probability is known, not where it lies */
+  if (family && q[which] > fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)) - 2.0) return INFINITY;
   return fabs(q[which]) * (budget->quadrature_quantile + 4.0 * PETSC_MACHINE_EPSILON) +
          (inside ? INSIDE : THIN) * fmax(width, 1.0) * (missing + 2.0 * budget->propagation);
 }
@@ -255,17 +275,23 @@ double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct e
 void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
                         const struct ebb_sheet *rule, const struct ebb_sheet *check, size_t levels)
 {
+  static const double FAMILY_TOP = 0.45; /* the check's lattice is half as large */
+  const bool family = !lattice->prescription->grid && ebb_rows_nature(&lattice->rows) == EBB_NATURE_FAMILY;
+  const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+
   for (PetscInt s = 0; s < rule->m; s++) {
     double a[EBB_MOMENTS], b[EBB_MOMENTS];
 
     ebb_moments_from_sums(c, lattice, rule, s, a);
     ebb_moments_from_sums(c, lattice, check, s, b);
     for (int i = 0; i < EBB_MOMENTS; i++) {
-      const double scale = scale_of(c, i, a[i]);
+      const double scale = scale_of(c, i, a);
       if (scale > 0.0) budget->quadrature[i] = fmax(budget->quadrature[i], fabs(a[i] - b[i]) / scale);
     }
     for (size_t q = 0; q < levels; q++) {
       const double x = rule->quantile[(size_t)s * levels + q], y = check->quantile[(size_t)s * levels + q];
+
+      if (family && fmax(x, y) > FAMILY_TOP * v_max) continue; /* beyond one of the lattices: said with the quantile */
       if (x != 0.0) budget->quadrature_quantile = fmax(budget->quadrature_quantile, fabs((x - y) / x));
     }
   }

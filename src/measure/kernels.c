@@ -6,16 +6,24 @@
 
 #include <math.h>
 
+/* What the sums of one site are weighted with. */
+struct site_weights {
+  double cell;    /* measure of the site */
+  double a4;      /* a^4 = V^{4/3}, V in units of the model's */
+  double density; /* V^-power of the clock's density */
+  bool linear;    /* the clock moves states by exp(i H t) */
+};
+
 /* Probability near the edge, in the last window of ratio edge_ratio and in the one below it. */
-static void edges(double w, double v, double v_max, bool outer, const struct ebb_site_rows *r, PetscInt s0, PetscInt m,
-                  struct ebb_sheet *sheet)
+static void edges(const struct site_weights *at, double v, double v_max, bool outer, const struct ebb_site_rows *r,
+                  PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
   const bool last = v > v_max / sheet->edge_ratio;
   double *plain = sheet->sum[last ? EBB_SUM_EDGE_0 : EBB_SUM_INNER_0] + s0;
   double *first = sheet->sum[last ? EBB_SUM_EDGE_V : EBB_SUM_INNER_V] + s0;
   double *second = sheet->sum[last ? EBB_SUM_EDGE_V2 : EBB_SUM_INNER_V2] + s0;
   double *dressed = sheet->sum[last ? EBB_SUM_EDGE_DRESSED : EBB_SUM_INNER_DRESSED] + s0;
-  const double v43 = cbrt(v * v * v * v);
+  const double w = at->cell;
 
   for (PetscInt s = 0; s < m; s++) {
     const double p = w * (r->psi[0][s] * r->psi[0][s] + r->psi[1][s] * r->psi[1][s]);
@@ -23,18 +31,19 @@ static void edges(double w, double v, double v_max, bool outer, const struct ebb
     plain[s] += p;
     first[s] += v * p;
     second[s] += v * v * p;
-    dressed[s] += v43 * w * (r->quarter[0][s] * r->quarter[0][s] + r->quarter[1][s] * r->quarter[1][s]);
+    dressed[s] += at->a4 * w * (r->quarter[0][s] * r->quarter[0][s] + r->quarter[1][s] * r->quarter[1][s]);
     if (v > 0.9 * v_max || outer) sheet->sum[EBB_SUM_EDGE][s0 + s] += p;
   }
 }
 
-/* Sums of one site alone. w: cell weight. */
-static void diagonal(double w, double v, double v_max, bool outer, const struct ebb_site_rows *r, PetscInt s0,
-                     PetscInt m, struct ebb_sheet *sheet)
+/* Sums of one site alone. */
+static void diagonal(const struct site_weights *at, double v, double v_max, bool outer, const struct ebb_site_rows *r,
+                     PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
   const double *restrict pr = r->psi[0], *restrict pi = r->psi[1], *restrict rr = r->root[0], *restrict ri = r->root[1];
   const double *restrict qr = r->quarter[0], *restrict qi = r->quarter[1];
-  const double lnv = log(v), v2 = v * v, v43 = cbrt(v2 * v2), over = 1.0 / v2;
+  const double w = at->cell, lnv = log(v), v2 = v * v;
+  const double f = sheet->bounded_scale > 0.0 ? atan(v / sheet->bounded_scale) : v;
   double *restrict norm = sheet->sum[EBB_SUM_NORM] + s0, *restrict s_v = sheet->sum[EBB_SUM_V] + s0;
   double *restrict s_v2 = sheet->sum[EBB_SUM_V2] + s0, *restrict s_l = sheet->sum[EBB_SUM_LNV] + s0;
   double *restrict s_l2 = sheet->sum[EBB_SUM_LNV2] + s0, *restrict root = sheet->sum[EBB_SUM_ROOT] + s0;
@@ -51,7 +60,7 @@ static void diagonal(double w, double v, double v_max, bool outer, const struct 
     s_v2[s] += v2 * p;
     s_l[s] += lnv * p;
     s_l2[s] += lnv * lnv * p;
-    slope[s] += v * flow;
+    slope[s] += f * flow;
     slope2[s] += v2 * flow;
   }
   for (PetscInt s = 0; s < m; s++) {
@@ -59,11 +68,32 @@ static void diagonal(double w, double v, double v_max, bool outer, const struct 
 
     root[s] += w * (pr[s] * rr[s] + pi[s] * ri[s]);
     theta[s] += r2;
-    sandwich[s] += over * r2;
+    sandwich[s] += at->density * (at->linear ? w * (pr[s] * rr[s] + pi[s] * ri[s]) : r2);
     inverse[s] += q2;
-    dressed[s] += v43 * q2;
+    dressed[s] += at->a4 * q2;
   }
-  if (v > v_max / (sheet->edge_ratio * sheet->edge_ratio) || outer) edges(w, v, v_max, outer, r, s0, m, sheet);
+  if (v > v_max / (sheet->edge_ratio * sheet->edge_ratio) || outer) edges(at, v, v_max, outer, r, s0, m, sheet);
+}
+
+/* Sums that few models have. */
+static void diagonal_more(const struct ebb_lattice *lattice, double v, bool last, const struct ebb_site_rows *r,
+                          PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
+{
+  const struct ebb_rows *rows = &lattice->rows;
+  const bool powers = rows->volume_power != 1.0, potential = ebb_rows_has_potential(rows);
+  const double volume = powers ? ebb_rows_volume(rows, v) : 0.0, u = potential ? ebb_rows_potential(rows, v) : 0.0;
+  const double bounded = sheet->bounded_scale > 0.0 ? atan(v / sheet->bounded_scale) : 0.0;
+
+  if (!powers && !potential && bounded == 0.0 && !last) return;
+  for (PetscInt s = 0; s < m; s++) {
+    const double p = r->psi[0][s] * r->psi[0][s] + r->psi[1][s] * r->psi[1][s];
+
+    sheet->sum[EBB_SUM_THETA][s0 + s] += u * p;
+    sheet->sum[EBB_SUM_VOLUME][s0 + s] += volume * p;
+    sheet->sum[EBB_SUM_VOLUME2][s0 + s] += volume * volume * p;
+    sheet->sum[EBB_SUM_ARCTAN][s0 + s] += bounded * p;
+    if (last) sheet->sum[EBB_SUM_LAST][s0 + s] += p;
+  }
 }
 
 static void most_probable(double v, const struct ebb_site_rows *r, PetscInt s0, PetscInt m, struct ebb_sheet *sheet,
@@ -84,9 +114,12 @@ static void most_probable(double v, const struct ebb_site_rows *r, PetscInt s0, 
 static void links(const struct ebb_lattice *lattice, double v, const struct ebb_site_rows *r, PetscInt s0, PetscInt m,
                   struct ebb_sheet *sheet)
 {
-  const struct ebb_prescription *p = lattice->prescription;
-  const double c = p->hop(v), a = 1.0 / sqrt(p->measure(v)), b = 1.0 / sqrt(p->measure(v + 4.0));
-  const double av = a / v, bv = b / (v + 4.0);
+  const struct ebb_rows *rows = &lattice->rows;
+  const struct ebb_prescription *flat = lattice->prescription;
+  const double c = ebb_rows_hop(rows, v), d = flat->hop(v);
+  const double a = 1.0 / sqrt(ebb_rows_measure(rows, v)), b = 1.0 / sqrt(ebb_rows_measure(rows, v + 4.0));
+  const double av = 1.0 / sqrt(flat->measure(v)) / ebb_rows_volume(rows, v);
+  const double bv = 1.0 / sqrt(flat->measure(v + 4.0)) / ebb_rows_volume(rows, v + 4.0);
   const double *restrict pr = r->psi[0], *restrict pi = r->psi[1], *restrict nr = r->next[0], *restrict ni = r->next[1];
   const double *restrict fr = r->after[0], *restrict fi = r->after[1];
   double *restrict theta = sheet->sum[EBB_SUM_THETA] + s0, *restrict density = sheet->sum[EBB_SUM_DENSITY] + s0;
@@ -98,7 +131,7 @@ static void links(const struct ebb_lattice *lattice, double v, const struct ebb_
     const double yr = bv * nr[s] - av * pr[s], yi = bv * ni[s] - av * pi[s];
 
     theta[s] += c * (xr * xr + xi * xi);
-    density[s] += c * (yr * yr + yi * yi);
+    density[s] += d * (yr * yr + yi * yi);
     re[s] += nr[s] * pr[s] + ni[s] * pi[s];
     im[s] += nr[s] * pi[s] - ni[s] * pr[s];
     two[s] += fr[s] * pr[s] + fi[s] * pi[s];
@@ -110,8 +143,17 @@ void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, 
 {
   const double v = lattice->first[arm] + 4.0 * (double)n;
   const double v_max = lattice->first[arm] + 4.0 * (double)(lattice->sites[arm] - 1);
+  const struct ebb_clock *clock = lattice->rows.clock;
+  const double volume = ebb_rows_volume(&lattice->rows, v);
+  const struct site_weights at = {.cell = 1.0,
+                                  .a4 = cbrt(volume * volume * volume * volume),
+                                  .density = clock->root && clock->density_power == 2.0
+                                                 ? 1.0 / (volume * volume)
+                                                 : pow(volume, -clock->density_power),
+                                  .linear = !clock->root};
 
-  diagonal(1.0, v, v_max, false, rows, s0, m, sheet);
+  diagonal(&at, v, v_max, false, rows, s0, m, sheet);
+  diagonal_more(lattice, v, n + 1 == lattice->sites[arm], rows, s0, m, sheet);
   most_probable(v, rows, s0, m, sheet, sheet->sum[EBB_SUMS]);
   links(lattice, v, rows, s0, m, sheet);
 }
@@ -119,19 +161,22 @@ void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, 
 void ebb_kernel_first(const struct ebb_lattice *lattice, const double *const right[2], const double *const left[2],
                       PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
-  const struct ebb_prescription *p = lattice->prescription;
+  const struct ebb_rows *rows = &lattice->rows;
+  const struct ebb_prescription *flat = lattice->prescription;
   const double c = lattice->half ? lattice->edge : lattice->cross, v = lattice->first[0], w = lattice->first[1];
-  const double a = 1.0 / sqrt(p->measure(v)), b = left ? 1.0 / sqrt(p->measure(w)) : 0.0;
+  const double d = lattice->half ? flat->edge(lattice->sector) : flat->hop(lattice->sector - 4.0);
+  const double a = 1.0 / sqrt(ebb_rows_measure(rows, v)), b = left ? 1.0 / sqrt(ebb_rows_measure(rows, w)) : 0.0;
+  const double av = 1.0 / sqrt(flat->measure(v)) / ebb_rows_volume(rows, v);
+  const double bv = left ? 1.0 / sqrt(flat->measure(w)) / ebb_rows_volume(rows, w) : 0.0;
 
   for (PetscInt s = 0; s < m; s++) {
     const double lr = left ? left[0][s] : 0.0, li = left ? left[1][s] : 0.0;
     const double xr = a * right[0][s] - b * lr, xi = a * right[1][s] - b * li;
     /* v^-1 is odd: on the left arm it is -1/|v| */
-    const double yr = a / v * right[0][s] + (left ? b / w : 0.0) * lr,
-                 yi = a / v * right[1][s] + (left ? b / w : 0.0) * li;
+    const double yr = av * right[0][s] + bv * lr, yi = av * right[1][s] + bv * li;
 
     sheet->sum[EBB_SUM_THETA][s0 + s] += c * (xr * xr + xi * xi);
-    sheet->sum[EBB_SUM_DENSITY][s0 + s] += c * (yr * yr + yi * yi);
+    sheet->sum[EBB_SUM_DENSITY][s0 + s] += d * (yr * yr + yi * yi);
     sheet->sum[EBB_SUM_FIRST][s0 + s] += right[0][s] * right[0][s] + right[1][s] * right[1][s] + lr * lr + li * li;
     if (left) sheet->sum[EBB_SUM_SHIFT_RE][s0 + s] += right[0][s] * lr + right[1][s] * li;
   }
@@ -147,7 +192,9 @@ void ebb_kernel_grid(const struct ebb_lattice *lattice, double kappa, PetscInt n
   const double *restrict pr = rows->psi[0], *restrict pi = rows->psi[1];
   const double *restrict dr = rows->slope[0], *restrict di = rows->slope[1];
 
-  diagonal(w, v, v_max, n < margin || n >= lattice->sites[0] - margin, rows, s0, m, sheet);
+  const struct site_weights at = {.cell = w, .a4 = cbrt(v * v * v * v), .density = 1.0 / (v * v)};
+
+  diagonal(&at, v, v_max, n < margin || n >= lattice->sites[0] - margin, rows, s0, m, sheet);
   most_probable(v, rows, s0, m, sheet, sheet->sum[EBB_SUMS]);
   for (PetscInt s = 0; s < m; s++) {
     const double er = dr[s] - pr[s], ei = di[s] - pi[s]; /* v (psi/v)' */

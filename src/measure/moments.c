@@ -11,19 +11,30 @@ const struct ebb_moment_info ebb_moment_table[EBB_MOMENTS] = {
     [EBB_MOMENT_LNV_SPREAD] = {"lnv_spread", "1", "standard deviation of ln|v|"},
     [EBB_MOMENT_VOLUME_MEAN] = {"volume_mean", "length^3", "mean physical volume"},
     [EBB_MOMENT_VOLUME_SPREAD] = {"volume_spread", "length^3", "standard deviation of the physical volume"},
-    [EBB_MOMENT_DENSITY_MEAN] = {"density_mean", "1/G^2", "matter density, rho_c <v^-1 Theta v^-1>/(3 pi G)"},
+    [EBB_MOMENT_DENSITY_MEAN] = {"density_mean", "1/G^2",
+                                 "rho_c sin^2 b as <V^-1 Theta_0 V^-1>/2, Theta_0 the flat operator of a "
+                                 "scalar clock: all of the density"},
     [EBB_MOMENT_DENSITY_SANDWICH] = {"density_sandwich", "1/G^2",
-                                     "matter density, rho_c <Theta^(1/2) v^-2 Theta^(1/2)>/(3 pi G)"},
-    [EBB_MOMENT_DENSITY_OF_MEANS] = {"density_of_means", "1/G^2", "<p>^2/(2 <V>^2)"},
-    [EBB_MOMENT_MOMENTUM_MEAN] = {"momentum_mean", "1", "mean scalar momentum, <sqrt(Theta)>"},
-    [EBB_MOMENT_MOMENTUM_SPREAD] = {"momentum_spread", "1", "standard deviation of the scalar momentum"},
+                                     "density of the clock's matter: <Theta^(1/2) V^-2 Theta^(1/2)>/2 of a "
+                                     "scalar, Re <V^-1 H> of dust"},
+    [EBB_MOMENT_DENSITY_OF_MEANS] = {"density_of_means", "1/G^2",
+                                     "density of the clock's matter from <p> and <V>: <p>^2/(2 <V>^2) "
+                                     "of a scalar, <p>/<V> of dust"},
+    [EBB_MOMENT_MOMENTUM_MEAN] = {"momentum_mean", "1",
+                                  "mean momentum of the clock: <sqrt(Theta)>, or <H> of a linear clock"},
+    [EBB_MOMENT_MOMENTUM_SPREAD] = {"momentum_spread", "1", "standard deviation of the clock's momentum"},
     [EBB_MOMENT_SIN2_B_MEAN] = {"sin2_b_mean", "1", "mean of sin^2 b (continuum grid: of b^2)"},
     [EBB_MOMENT_HUBBLE_MEAN] = {"hubble_mean", "1/length", "mean Hubble rate, sin 2b/(2 gamma lambda)"},
     [EBB_MOMENT_HUBBLE_SPREAD] = {"hubble_spread", "1/length", "standard deviation of the Hubble rate"},
     [EBB_MOMENT_INVERSE_MOMENTUM_MEAN] = {"inverse_momentum_mean", "1", "<Theta^(-1/2)>"},
     [EBB_MOMENT_DRESSED_A4] = {"dressed_a4", "length^4",
                                "dressed scale factor, <Theta^(-1/4) a^4 Theta^(-1/4)>/<Theta^(-1/2)>, a = V^(1/3)"},
-    [EBB_MOMENT_THETA_MEAN] = {"theta_mean", "1", "<Theta> by the operator's quadratic form on the sites, conserved"},
+    [EBB_MOMENT_THETA_MEAN] = {"theta_mean", "1", "the operator's mean by its quadratic form on the sites, conserved"},
+    [EBB_MOMENT_ARCTAN_V_MEAN] = {"arctan_v_mean", "1",
+                                  "mean of arctan(|v|/v_effective), bounded where |v| has no mean; v_effective: "
+                                  "effective bounce"},
+    [EBB_MOMENT_FIELD_MEAN] = {"field_mean", "1/sqrt(G)", "mean of the further field"},
+    [EBB_MOMENT_FIELD_SPREAD] = {"field_spread", "1/sqrt(G)", "standard deviation of the further field"},
 };
 
 static double spread(double square, double mean) { return sqrt(fmax(square - mean * mean, 0.0)); }
@@ -48,32 +59,86 @@ static void shift_moments(const struct ebb_constants *c, const struct ebb_lattic
   }
 }
 
+bool ebb_moment_exists(const struct ebb_lattice *lattice, enum ebb_moment moment)
+{
+  const struct ebb_rows *rows = &lattice->rows;
+  const bool grid = lattice->prescription->grid, family = !grid && ebb_rows_nature(rows) == EBB_NATURE_FAMILY;
+
+  switch (moment) {
+  case EBB_MOMENT_V_MEAN:
+  case EBB_MOMENT_V_SPREAD:
+  case EBB_MOMENT_VOLUME_MEAN:
+  case EBB_MOMENT_VOLUME_SPREAD:
+  case EBB_MOMENT_DENSITY_OF_MEANS:
+    return !family;
+  case EBB_MOMENT_INVERSE_MOMENTUM_MEAN:
+    return rows->clock->root;
+  case EBB_MOMENT_DRESSED_A4:
+    return rows->clock->root && !family;
+  case EBB_MOMENT_HUBBLE_MEAN:
+  case EBB_MOMENT_HUBBLE_SPREAD:
+    return rows->volume_power == 1.0;
+  case EBB_MOMENT_ARCTAN_V_MEAN:
+    return family;
+  case EBB_MOMENT_FIELD_MEAN:
+  case EBB_MOMENT_FIELD_SPREAD:
+    return rows->field;
+  default:
+    return true;
+  }
+}
+
+/* Densities of the clock's matter, times G^2. */
+static void densities(const struct ebb_rows *rows, const struct ebb_sheet *sheet, PetscInt s, double moment[])
+{
+  const struct ebb_clock *clock = rows->clock;
+  const double g2 = rows->constants.newton * rows->constants.newton, norm = sheet->sum[EBB_SUM_NORM][s];
+  const double unit = pow(rows->volume_unit, -clock->density_power), p = moment[EBB_MOMENT_MOMENTUM_MEAN];
+  /* A0 of the flat operator with a scalar clock, whatever the clock is */
+  const double theta_scale = clock->density_power == 2.0 ? rows->scale : rows->constants.theta_scale;
+
+  moment[EBB_MOMENT_DENSITY_MEAN] = g2 * 0.5 * theta_scale / (rows->volume_unit * rows->volume_unit) *
+                                    (rows->prescription->grid ? 1.0 / rows->scale : 1.0) *
+                                    sheet->sum[EBB_SUM_DENSITY][s] / norm;
+  moment[EBB_MOMENT_DENSITY_SANDWICH] = g2 * clock->density_factor * unit * sheet->sum[EBB_SUM_SANDWICH][s] / norm;
+  moment[EBB_MOMENT_DENSITY_OF_MEANS] = g2 * clock->density_factor * (clock->root ? p * p : p) *
+                                        pow(moment[EBB_MOMENT_VOLUME_MEAN], -clock->density_power);
+}
+
 void ebb_moments_from_sums(const struct ebb_constants *c, const struct ebb_lattice *lattice,
                            const struct ebb_sheet *sheet, PetscInt s, double moment[EBB_MOMENTS])
 {
   const double norm = sheet->sum[EBB_SUM_NORM][s];
   const double v = sheet->sum[EBB_SUM_V][s] / norm, lnv = sheet->sum[EBB_SUM_LNV][s] / norm;
   const double p = sheet->sum[EBB_SUM_ROOT][s] / norm;
-  const double g2 = c->newton * c->newton; /* densities are reported in 1/G^2 */
-  const double density_unit = g2 * c->critical_density / c->theta_scale;
-  /* the lattice form comes in units of A0 = 3 pi G, the grid form with its prefactor */
-  const double scale = lattice->prescription->grid ? 1.0 : c->theta_scale;
+  struct ebb_rows rows = lattice->rows;
+  bool powers;
 
+  rows.constants = *c;
+  ebb_rows_make(&rows);
+  powers = rows.volume_power != 1.0;
   moment[EBB_MOMENT_NORM] = norm;
   moment[EBB_MOMENT_V_MEAN] = v;
   moment[EBB_MOMENT_V_SPREAD] = spread(sheet->sum[EBB_SUM_V2][s] / norm, v);
   moment[EBB_MOMENT_LNV_MEAN] = lnv;
   moment[EBB_MOMENT_LNV_SPREAD] = spread(sheet->sum[EBB_SUM_LNV2][s] / norm, lnv);
-  moment[EBB_MOMENT_VOLUME_MEAN] = c->volume_unit * v;
-  moment[EBB_MOMENT_VOLUME_SPREAD] = c->volume_unit * moment[EBB_MOMENT_V_SPREAD];
-  moment[EBB_MOMENT_DENSITY_MEAN] = density_unit * scale * sheet->sum[EBB_SUM_DENSITY][s] / norm;
-  moment[EBB_MOMENT_DENSITY_SANDWICH] = density_unit * sheet->sum[EBB_SUM_SANDWICH][s] / norm;
-  moment[EBB_MOMENT_DENSITY_OF_MEANS] = g2 * 0.5 * p * p / (c->volume_unit * c->volume_unit * v * v);
+  moment[EBB_MOMENT_VOLUME_MEAN] = rows.volume_unit * (powers ? sheet->sum[EBB_SUM_VOLUME][s] / norm : v);
+  moment[EBB_MOMENT_VOLUME_SPREAD] =
+      rows.volume_unit * (powers ? spread(sheet->sum[EBB_SUM_VOLUME2][s] / norm, sheet->sum[EBB_SUM_VOLUME][s] / norm)
+                                 : moment[EBB_MOMENT_V_SPREAD]);
   moment[EBB_MOMENT_MOMENTUM_MEAN] = p;
   moment[EBB_MOMENT_MOMENTUM_SPREAD] = spread(sheet->sum[EBB_SUM_THETA_ROOT][s] / norm, p);
+  densities(&rows, sheet, s, moment);
   shift_moments(c, lattice, sheet, s, moment);
   moment[EBB_MOMENT_INVERSE_MOMENTUM_MEAN] = sheet->sum[EBB_SUM_INVERSE][s] / norm;
-  moment[EBB_MOMENT_THETA_MEAN] = scale * sheet->sum[EBB_SUM_THETA][s] / norm;
+  /* the lattice form comes in units of the operator's scale, the grid form with its prefactor */
+  moment[EBB_MOMENT_THETA_MEAN] =
+      (lattice->prescription->grid ? 1.0 : rows.scale) * sheet->sum[EBB_SUM_THETA][s] / norm;
   moment[EBB_MOMENT_DRESSED_A4] =
-      cbrt(pow(c->volume_unit, 4.0)) * sheet->sum[EBB_SUM_DRESSED][s] / sheet->sum[EBB_SUM_INVERSE][s];
+      cbrt(pow(rows.volume_unit, 4.0)) * sheet->sum[EBB_SUM_DRESSED][s] / sheet->sum[EBB_SUM_INVERSE][s];
+  moment[EBB_MOMENT_ARCTAN_V_MEAN] = sheet->sum[EBB_SUM_ARCTAN][s] / norm;
+  moment[EBB_MOMENT_FIELD_MEAN] = sheet->sum[EBB_SUM_FIELD][s] / norm;
+  moment[EBB_MOMENT_FIELD_SPREAD] = spread(sheet->sum[EBB_SUM_FIELD2][s] / norm, moment[EBB_MOMENT_FIELD_MEAN]);
+  for (int i = 0; i < EBB_MOMENTS; i++)
+    if (!ebb_moment_exists(lattice, i)) moment[i] = NAN;
 }

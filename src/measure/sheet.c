@@ -19,8 +19,10 @@ PetscErrorCode ebb_sheet_allocate(struct ebb_source *source, PetscInt m, const s
   double *block;
 
   PetscFunctionBegin;
-  *sheet = (struct ebb_sheet){
-      .m = m, .local = local, .edge_ratio = source->edge_ratio > 0.0 ? source->edge_ratio : EBB_EDGE_RATIO};
+  *sheet = (struct ebb_sheet){.m = m,
+                              .local = local,
+                              .bounded_scale = source->bounded_scale,
+                              .edge_ratio = source->edge_ratio > 0.0 ? source->edge_ratio : EBB_EDGE_RATIO};
   PetscCall(PetscCalloc1((size_t)(EBB_SUMS + 1) * (size_t)m, &block));
   for (int i = 0; i <= EBB_SUMS; i++) sheet->sum[i] = block + (size_t)i * (size_t)m;
   PetscCall(PetscCalloc1(m, &sheet->mode));

@@ -126,7 +126,9 @@ static PetscErrorCode go_to(struct ebb_source *source, double phi)
   PetscCall(measure(source, now, sum));
   now->v_mean = sum[SUM_V] / sum[KEPT_NORM];
   worst = now->error;
-  for (int i = 0; i < KEPT; i++) worst += fabs(sum[i] / steps->kept[i] - 1.0);
+  for (int i = 0; i < KEPT; i++) /* <H> may vanish where H has both signs: |H psi| is its scale */
+    worst += fabs(sum[i] - steps->kept[i]) /
+             (i == KEPT_ROOT ? sqrt(steps->kept[KEPT_NORM] * steps->kept[KEPT_THETA]) : steps->kept[i]);
   steps->error = fmax(steps->error, worst);
   PetscFunctionReturn(0);
 }
@@ -205,7 +207,7 @@ PetscErrorCode ebb_source_steps_create(struct ebb_source *source, const struct e
                                 .data = steps,
                                 .edge_ratio = ebb_edge_ratio(start->momentum_mean / constants->kappa)};
   steps->local = lattice->end - lattice->begin;
-  steps->fields = FIELDS;
+  steps->fields = lattice->rows.clock->root ? FIELDS : PLAIN_FIELDS;
   steps->below = rank > 0 ? rank - 1 : MPI_PROC_NULL;
   steps->above = rank + 1 < size ? rank + 1 : MPI_PROC_NULL;
   PetscCall(ebb_constraint_create(lattice, constants, comm, &steps->constraint));

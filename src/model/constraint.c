@@ -29,11 +29,6 @@ static double above(const struct ebb_constraint *c, PetscInt row)
   return ebb_rows_offdiagonal(&c->rows, ebb_lattice_v(lattice, row));
 }
 
-static bool has_potential(const struct ebb_rows *rows)
-{
-  return rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE || rows->p_phi != 0.0;
-}
-
 /* Scales and links of the flux form. Below the first site of a half lattice stands the edge weight, with u = 0. */
 static void fill_rows(struct ebb_constraint *c)
 {
@@ -111,8 +106,9 @@ PetscErrorCode ebb_constraint_create(const struct ebb_lattice *lattice, const st
   c->rows = lattice->rows;
   c->rows.constants = *constants;
   ebb_rows_make(&c->rows);
+  c->op.linear = !c->rows.clock->root;
   PetscCall(PetscMalloc2(c->op.local + 2, &c->stencil.scale, c->op.local + 1, &c->stencil.link));
-  if (has_potential(&c->rows)) PetscCall(PetscMalloc1(c->op.local, &c->stencil.potential));
+  if (ebb_rows_has_potential(&c->rows)) PetscCall(PetscMalloc1(c->op.local, &c->stencil.potential));
   PetscCall(neighbours(comm, &c->stencil));
   fill_rows(c);
   PetscCall(bound(c));

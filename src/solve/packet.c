@@ -5,9 +5,11 @@
 #include <math.h>
 #include <string.h>
 
-enum { ROWS = 256 };
+enum { ROWS = 256, FEWEST_LEVELS = 2 };
+static const double NEGLIGIBLE = 1e-27; /* of a level's share: below the rounding of an overlap */
+static const double MARGIN = 1.1;       /* the symbol is the operator's at large v; near v = 0 there is a little more */
 
-static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_constants *constants,
+static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_state_request *request,
                                struct ebb_packet **packet)
 {
   const PetscInt n = ebb_basis_size(basis);
@@ -19,10 +21,14 @@ static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_constan
   p->basis = basis;
   p->n = n;
   p->channel_purity = 1.0;
+  p->clipped = request->shift > 0.0;
   PetscCall(PetscMalloc1(n, &p->amplitude));
   PetscCall(PetscMalloc1(n, &p->omega));
   PetscCall(PetscMalloc1(n, &p->share));
-  for (PetscInt j = 0; j < n; j++) p->omega[j] = constants->kappa * ebb_basis_k(basis)[j];
+  for (PetscInt j = 0; j < n; j++) {
+    p->omega[j] = request->constants->kappa * ebb_basis_k(basis)[j];
+    if (request->shift != 0.0) p->omega[j] = sqrt(fmax(p->omega[j] * p->omega[j] - request->shift, 0.0));
+  }
   PetscFunctionReturn(0);
 }
 
@@ -30,13 +36,21 @@ static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_constan
  * a function with w |c|^2 = 1 (1, or 1/2 for a cosine beside its sine). */
 static void finish(struct ebb_packet *p, const double w[], double norm, const double complex c[])
 {
-  double peak = 0.0, p2 = 0.0;
+  double peak = 0.0, p2 = 0.0, kept = 0.0;
   const struct ebb_mode_info *info = ebb_basis_info(p->basis);
 
   for (PetscInt j = 0; j < p->n; j++) {
     p->amplitude[j] = w[j] * c[j];
     p->share[j] = norm * w[j] * creal(c[j] * conj(c[j]));
+    if (p->clipped && p->omega[j] <= 0.0) p->amplitude[j] = p->share[j] = 0.0;
+    kept += p->share[j];
     peak = fmax(peak, creal(c[j] * conj(c[j])));
+  }
+  p->kept = p->clipped ? kept : 1.0;
+  for (PetscInt j = 0; j < p->n; j++) {
+    if (p->share[j] == 0.0) continue;
+    p->amplitude[j] /= sqrt(p->kept);
+    p->share[j] /= p->kept;
     p->momentum_mean += p->share[j] * p->omega[j];
     p->inverse_momentum_mean += p->share[j] / p->omega[j];
   }
@@ -92,12 +106,22 @@ PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, 
     }
   }
   PetscCall(ebb_basis_create_modes(lattice, n, k, channel, &basis));
-  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(allocate(basis, request, packet));
   PetscCall(
       ebb_components_coefficients(&components, basis, lattice, channel, w, one, request->comm, c, &(*packet)->lost));
   finish(*packet, w, 1.0, c);
   PetscCall(PetscFree5(k, w, one, channel, c));
   PetscFunctionReturn(0);
+}
+
+/* Widths of the levels in k, for spectral coefficients. */
+static void cells_of(PetscInt n, const double k[], double cell[])
+{
+  for (PetscInt j = 0; j < n; j++) {
+    const double below = j > 0 ? k[j - 1] : k[0], above = j + 1 < n ? k[j + 1] : k[j];
+
+    cell[j] = sqrt(0.5 * (above - below));
+  }
 }
 
 PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *request, const struct ebb_lattice *lattice,
@@ -114,20 +138,158 @@ PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *requ
   *packet = NULL;
   PetscCall(ebb_components_resolve(request, &components));
   PetscCall(ebb_basis_create_eigenpairs(lattice, &basis));
-  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(allocate(basis, request, packet));
   n = ebb_basis_size(basis);
   k = ebb_basis_k(basis);
   PetscCall(PetscMalloc3(n, &w, n, &cell, n, &c));
-  for (PetscInt j = 0; j < n; j++) {
-    const double below = j > 0 ? k[j - 1] : k[0], above = j + 1 < n ? k[j + 1] : k[j];
-
-    w[j] = 1.0;
-    cell[j] = sqrt(0.5 * (above - below));
-  }
+  for (PetscInt j = 0; j < n; j++) w[j] = 1.0;
+  cells_of(n, k, cell);
   PetscCall(
       ebb_components_coefficients(&components, basis, lattice, NULL, w, cell, request->comm, c, &(*packet)->lost));
   finish(*packet, w, 1.0, c);
   PetscCall(PetscFree3(w, cell, c));
+  PetscFunctionReturn(0);
+}
+
+/* What the operator's symbol, scale (4 C/B sin^2 b + U), can be for v in [low, high] and any b; its positive part where
+ * states move by the square root. */
+static void symbol_range(const struct ebb_rows *rows, double v_low, double v_high, double *low, double *high)
+{
+  enum { LOOKS = 64 };
+  const double from = fmax(v_low, rows->sector), ratio = fmax(v_high, from + 4.0) / from;
+
+  for (int i = 0; i <= LOOKS; i++) {
+    const double v = from * pow(ratio, (double)i / LOOKS), u = rows->scale * ebb_rows_potential(rows, v);
+    const double top = 4.0 * rows->scale * ebb_rows_hop(rows, v) / ebb_rows_measure(rows, v);
+
+    *low = fmin(*low, rows->clock->root ? fmax(u, 0.0) : u);
+    *high = fmax(*high, u + MARGIN * top);
+  }
+}
+
+/* The interval of the operator's eigenvalues that the profiles need. */
+static void interval_of(const struct ebb_components *components, const struct ebb_rows *rows, double *low, double *high)
+{
+  const bool root = rows->clock->root;
+
+  *low = INFINITY;
+  *high = -INFINITY;
+  for (PetscInt i = 0; i < components->n; i++) {
+    const struct ebb_profile_input *in = &components->input[i];
+    double a, b;
+
+    if (components->profile[i]->everywhere) {
+      components->profile[i]->reach_v(in, &a, &b);
+      symbol_range(rows, a, b, low, high);
+      continue;
+    }
+    components->profile[i]->reach_k(in, &a, &b);
+    a *= in->constants->kappa;
+    b *= in->constants->kappa;
+    *low = fmin(*low, root ? a * a : a);
+    *high = fmax(*high, root ? b * b : b);
+  }
+}
+
+/* Levels first..last alone. */
+static void levels_cut(struct ebb_spectrum *s, PetscInt first, PetscInt last)
+{
+  const size_t sites = (size_t)ebb_lattice_size(&s->lattice);
+
+  s->n = last - first + 1;
+  memmove(s->eigenvalue, s->eigenvalue + first, (size_t)s->n * sizeof *s->eigenvalue);
+  memmove(s->residual, s->residual + first, (size_t)s->n * sizeof *s->residual);
+  memmove(s->error, s->error + first, (size_t)s->n * sizeof *s->error);
+  memmove(s->function, s->function + (size_t)first * sites, (size_t)s->n * sites * sizeof *s->function);
+}
+
+static PetscErrorCode levels_packet(const struct ebb_state_request *request, const struct ebb_components *components,
+                                    const struct ebb_spectrum *spectrum, bool root, struct ebb_packet **packet)
+{
+  struct ebb_basis *basis;
+  double *w, *cell;
+  double complex *c;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_basis_create_levels(spectrum, request->constants->kappa, root, &basis));
+  PetscCall(allocate(basis, request, packet));
+  for (PetscInt j = 0; j < spectrum->n; j++)
+    (*packet)->omega_error =
+        fmax((*packet)->omega_error, root ? 0.5 * spectrum->error[j] / (*packet)->omega[j] : spectrum->error[j]);
+  PetscCall(PetscMalloc3(spectrum->n, &w, spectrum->n, &cell, spectrum->n, &c));
+  for (PetscInt j = 0; j < spectrum->n; j++) w[j] = 1.0;
+  cells_of(spectrum->n, ebb_basis_k(basis), cell);
+  PetscCall(ebb_components_coefficients(components, basis, &spectrum->lattice, NULL, w, cell, request->comm, c,
+                                        &(*packet)->lost));
+  finish(*packet, w, 1.0, c);
+  PetscCall(PetscFree3(w, cell, c));
+  PetscFunctionReturn(0);
+}
+
+/* First and last level whose share is no rounding. */
+static void shares_matter(const struct ebb_packet *packet, PetscInt *first, PetscInt *last)
+{
+  double peak = 0.0;
+
+  for (PetscInt j = 0; j < packet->n; j++) peak = fmax(peak, packet->share[j]);
+  *first = 0;
+  *last = packet->n - 1;
+  while (packet->share[*first] < NEGLIGIBLE * peak) (*first)++;
+  while (packet->share[*last] < NEGLIGIBLE * peak) (*last)--;
+}
+
+/* Every level in the interval; an end that falls on a level moves outwards a little. */
+static PetscErrorCode levels_find(const struct ebb_spectrum_request *levels, double low, double high, MPI_Comm comm,
+                                  char *problem, size_t size, struct ebb_spectrum **spectrum)
+{
+  enum { TRIES = 4 };
+  static const double MOVE = 1e-3;
+  struct ebb_spectrum_request r = *levels;
+
+  PetscFunctionBegin;
+  for (int i = 0; i < TRIES; i++) {
+    r.count = 0;
+    r.low = low * (low > 0.0 ? 1.0 - MOVE * i : 1.0 + MOVE * i);
+    r.high = high * (1.0 + MOVE * i);
+    PetscCall(ebb_spectrum_find(&r, comm, problem, size, spectrum));
+    if (!problem[0]) break;
+  }
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_packet_create_levels(const struct ebb_state_request *request,
+                                        const struct ebb_spectrum_request *levels, char *problem, size_t size,
+                                        struct ebb_lattice *lattice, struct ebb_packet **packet)
+{
+  const bool root = levels->rows->clock->root;
+  struct ebb_components components;
+  struct ebb_spectrum *spectrum;
+  PetscInt first, last;
+  double low, high;
+
+  PetscFunctionBegin;
+  *packet = NULL;
+  PetscCall(ebb_components_resolve(request, &components));
+  interval_of(&components, levels->rows, &low, &high);
+  PetscCall(levels_find(levels, low, high, request->comm, problem, size, &spectrum));
+  if (problem[0]) PetscFunctionReturn(0);
+  if (spectrum->n < FEWEST_LEVELS) {
+    PetscCall(PetscSNPrintf(problem, size,
+                            "only %" PetscInt_FMT " eigenvalues lie in the packet's range of momenta, %.4g to %.4g: "
+                            "widen state.relative_spread or raise state.momentum",
+                            spectrum->n, root ? sqrt(low) : low, root ? sqrt(high) : high));
+    PetscCall(ebb_spectrum_destroy(&spectrum));
+    PetscFunctionReturn(0);
+  }
+  *lattice = spectrum->lattice;
+  PetscCall(levels_packet(request, &components, spectrum, root, packet));
+  shares_matter(*packet, &first, &last);
+  if (last - first + 1 < spectrum->n && last - first + 1 >= FEWEST_LEVELS) {
+    PetscCall(ebb_packet_destroy(packet));
+    levels_cut(spectrum, first, last);
+    PetscCall(levels_packet(request, &components, spectrum, root, packet));
+  }
+  PetscCall(ebb_spectrum_destroy(&spectrum));
   PetscFunctionReturn(0);
 }
 
@@ -150,7 +312,7 @@ PetscErrorCode ebb_packet_create_waves(const struct ebb_state_request *request, 
   j0 = PetscMax((PetscInt)ceil(low / step), 1);
   n = PetscMax((PetscInt)floor(high / step) - j0 + 1, 1);
   PetscCall(ebb_basis_create_waves(lattice, j0, n, &basis));
-  PetscCall(allocate(basis, request->constants, packet));
+  PetscCall(allocate(basis, request, packet));
   PetscCall(PetscMalloc2(2 * n, &w, 2 * n, &c));
   for (PetscInt j = 0; j < n; j++) {
     const double k = ebb_basis_k(basis)[2 * j], x = (k - components.input[0].k0) / (2.0 * components.input[0].sigma_k);
@@ -204,6 +366,10 @@ PetscErrorCode ebb_phases_make(const struct ebb_packet *packet, PetscInt m, cons
   PetscCall(PetscMalloc1((size_t)packet->n * (size_t)phases->columns, &phases->table));
   for (PetscInt j = 0; j < packet->n; j++) {
     double *row = phases->table + (size_t)j * (size_t)phases->columns;
+    if (packet->amplitude[j] == 0.0) {
+      PetscCall(PetscArrayzero(row, phases->columns));
+      continue;
+    }
     for (PetscInt s = 0; s < m; s++) {
       const double complex a = packet->amplitude[j] * cexp(I * packet->omega[j] * phi[s]);
       for (PetscInt f = 0; f < fields; f++) {

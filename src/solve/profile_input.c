@@ -6,6 +6,13 @@
 
 enum { ROWS = 256 }; /* rows of the basis held at once: 256 x 300 doubles fit a second-level cache */
 
+double ebb_profile_omega(const struct ebb_profile_input *input, double k)
+{
+  const double omega = input->constants->kappa * k;
+
+  return input->shift == 0.0 ? omega : sqrt(fmax(omega * omega - input->shift, 0.0));
+}
+
 PetscErrorCode ebb_components_resolve(const struct ebb_state_request *request, struct ebb_components *components)
 {
   const struct ebb_state_settings *state = &request->settings->state;
@@ -21,7 +28,7 @@ PetscErrorCode ebb_components_resolve(const struct ebb_state_request *request, s
     PetscCheck(components->profile[i] && components->profile[i]->resolve, PETSC_COMM_SELF, PETSC_ERR_ARG_UNKNOWN_TYPE,
                "profile '%s' cannot stand here", s->profile);
     components->weight[i] = several ? s->weight[0] + I * s->weight[1] : 1.0;
-    *in = (struct ebb_profile_input){.settings = s, .constants = request->constants};
+    *in = (struct ebb_profile_input){.settings = s, .constants = request->constants, .shift = request->shift};
     if (request->file) {
       in->file_v = request->file[i].v;
       in->file_psi = request->file[i].psi;
@@ -84,7 +91,7 @@ static PetscErrorCode project(const struct ebb_profile *profile, const struct eb
     PetscCall(project_arm(profile, input, basis, lattice, arm, comm, c, norm));
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, c, (PetscMPIInt)(2 * n), MPI_DOUBLE, MPI_SUM, comm));
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, norm, 1, MPI_DOUBLE, MPI_SUM, comm));
-  for (PetscInt j = 0; j < n; j++) c[j] *= cexp(-I * k[j] * input->constants->kappa * input->at);
+  for (PetscInt j = 0; j < n; j++) c[j] *= cexp(-I * ebb_profile_omega(input, k[j]) * input->at);
   PetscFunctionReturn(0);
 }
 

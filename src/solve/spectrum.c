@@ -60,14 +60,14 @@ static PetscErrorCode matrix_make(const struct ebb_spectrum_request *r, PetscInt
                                   struct ebb_lattice *lattice)
 {
   const struct ebb_rows *rows = r->rows;
-  const bool family = ebb_rows_nature(rows) == EBB_NATURE_FAMILY;
+  const bool family = !r->wall && ebb_rows_nature(rows) == EBB_NATURE_FAMILY;
   struct ebb_edge edge = {.sites = sites};
   double v;
 
   PetscFunctionBegin;
   *t = (struct matrix){0};
   if (family) PetscCall(ebb_edge_find(rows, r->extension, r->angle, sites, &edge));
-  PetscCall(ebb_lattice_make(rows->prescription, rows->sector, edge.sites, comm, lattice));
+  PetscCall(ebb_lattice_make_model(rows, edge.sites, comm, lattice));
   t->n = ebb_lattice_size(lattice);
   PetscCall(PetscMalloc2(t->n, &t->d, t->n, &t->e));
   for (PetscInt i = 0; i < t->n; i++) {
@@ -82,6 +82,8 @@ static PetscErrorCode matrix_make(const struct ebb_spectrum_request *r, PetscInt
     t->d[t->n - 1] = (t->d[t->n - 1] + t->e[t->n - 1] * edge.ratio) / (1.0 + edge.tail);
     t->e[t->n - 2] /= sqrt(1.0 + edge.tail);
     t->floor = fabs(rows->scale * ebb_rows_potential(rows, v)) * (1.0 - rows->s) / ROOM;
+  } else if (r->wall) {
+    t->floor = INFINITY;
   } else {
     t->out[0] = t->e[t->n - 1];
     t->out[1] = rows->half ? 0.0 : ebb_rows_offdiagonal(rows, ebb_lattice_v(lattice, 0) - 4.0);
@@ -133,7 +135,6 @@ static double compare(const struct ebb_spectrum_request *r, PetscInt h_n, const 
 /* Vector j, its residual and its error but for what the doubling says. */
 static PetscErrorCode pair_find(const struct matrix *t, PetscInt j, double x[], double pivots[], struct ebb_spectrum *s)
 {
-  const PetscInt local = s->lattice.end - s->lattice.begin;
   const size_t n = (size_t)t->n;
   double quadratic, cut;
   int sign;
@@ -145,8 +146,7 @@ static PetscErrorCode pair_find(const struct matrix *t, PetscInt j, double x[], 
   s->error[j] = ELEMENT_ROUNDINGS * DBL_EPSILON * quadratic;
   if (t->tail == 0.0) s->error[j] += hypot(s->residual[j], cut);
   x[n - 1] /= sqrt(1.0 + t->tail); /* the last component stood for the whole tail */
-  for (PetscInt i = 0; i < local; i++)
-    s->function[(size_t)j * (size_t)local + (size_t)i] = sign * x[s->lattice.begin + i];
+  for (size_t i = 0; i < n; i++) s->function[(size_t)j * n + i] = sign * x[i];
   PetscFunctionReturn(0);
 }
 
@@ -166,11 +166,10 @@ static void prove(const struct ebb_spectrum_request *r, const struct matrix *t, 
 static PetscErrorCode pairs_find(const struct ebb_spectrum_request *r, const struct matrix *t, const double half[],
                                  struct ebb_spectrum *s)
 {
-  const PetscInt local = s->lattice.end - s->lattice.begin;
   double *x, *pivots;
 
   PetscFunctionBegin;
-  PetscCall(PetscMalloc1((size_t)s->n * (size_t)local, &s->function));
+  PetscCall(PetscMalloc1((size_t)s->n * (size_t)t->n, &s->function));
   PetscCall(PetscMalloc2(s->n, &s->residual, s->n, &s->error));
   PetscCall(PetscMalloc2(t->n, &x, 2 * t->n, &pivots));
   for (PetscInt j = 0; j < s->n; j++) {
@@ -268,7 +267,7 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
                                  struct ebb_spectrum **spectrum)
 {
   const enum ebb_nature nature = ebb_rows_nature(r->rows);
-  const bool family = nature == EBB_NATURE_FAMILY;
+  const bool family = nature == EBB_NATURE_FAMILY && !r->wall;
   double *half = NULL;
   struct matrix t = {0};
   struct ebb_spectrum *s;
@@ -276,7 +275,7 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
   PetscFunctionBegin;
   *spectrum = NULL;
   problem[0] = '\0';
-  PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) && (family || nature == EBB_NATURE_DISCRETE),
+  PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) && (family || r->wall || nature == EBB_NATURE_DISCRETE),
              PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "no discrete spectrum without the extension the operator needs");
   if (family && r->sites && r->sites < SITES_LEAST) {
     PetscCall(PetscSNPrintf(problem, size, "an extension needs a lattice of %d sites or more", SITES_LEAST));

@@ -10,7 +10,7 @@ PetscErrorCode ebb_stepper_create(const struct ebb_propagator *kind, const struc
   *stepper = NULL;
   PetscCheck(kind && kind->steps, op->comm, PETSC_ERR_ARG_WRONG, "propagator '%s' does not step",
              kind ? kind->name : "(none)");
-  PetscCheck(op->low >= 0.0 && op->high > 0.0, op->comm, PETSC_ERR_ARG_OUTOFRANGE,
+  PetscCheck(op->linear ? op->high > op->low : op->low >= 0.0 && op->high > 0.0, op->comm, PETSC_ERR_ARG_OUTOFRANGE,
              "the operator may have a negative part (lower bound %g): sqrt(Theta) is not defined", op->low);
   PetscCheck(tolerance > 0.0, op->comm, PETSC_ERR_ARG_OUTOFRANGE, "tolerance %g must be above 0", tolerance);
   PetscCall(PetscNew(&s));

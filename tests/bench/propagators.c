@@ -50,7 +50,7 @@ static PetscErrorCode problem_make(struct problem *p, double momentum, double sp
                                    double to)
 {
   const struct ebb_prescription *slqc = ebb_prescription_find("slqc");
-  struct ebb_state_request request = {&p->settings, &p->constants, NULL, PETSC_COMM_SELF};
+  struct ebb_state_request request = {.settings = &p->settings, .constants = &p->constants, .comm = PETSC_COMM_SELF};
   double start, end;
 
   PetscFunctionBegin;

@@ -135,7 +135,7 @@ static PetscErrorCode evolve(const char *kind, double sector, PetscInt sites, MP
                                             .branch = "contracting",
                                             .momentum = 50.0,
                                             .relative_spread = 0.1}};
-  const struct ebb_state_request request = {&settings, &c, NULL, comm};
+  const struct ebb_state_request request = {.settings = &settings, .constants = &c, .comm = comm};
   struct ebb_packet *packet;
   struct ebb_source source;
   struct ebb_plan plan;

@@ -29,7 +29,7 @@ struct scene {
 static void scene_make(struct scene *s, const char *prescription, double sector, PetscInt sites, double momentum,
                        double relative_spread, double reach)
 {
-  struct ebb_state_request request = {&s->settings, &s->constants, NULL, PETSC_COMM_SELF};
+  struct ebb_state_request request = {.settings = &s->settings, .constants = &s->constants, .comm = PETSC_COMM_SELF};
 
   *s = (struct scene){.constants = ebb_constants_make(1.0, 0.2375, sqrt(ebb_default_area_gap(0.2375, 1.0))),
                       .settings = {.numerics.tolerance = 1e-10,

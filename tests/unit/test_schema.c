@@ -14,15 +14,18 @@
   "clock: {from: -1, to: 1}\n"                                                                                         \
   "state: {profile: gaussian_momentum, momentum: 500, relative_spread: 0.05}\n"
 
+#define FIELD "matter: [{kind: scalar, name: chi, momentum: 1, spread: 1, grid: {points: 8, length: 1}}]\n"
+
 /* True where the model is good with `set` on top; message [256]: the first problem. */
 static bool accepts(const char *set, char message[256])
 {
   struct ebb_problems *problems = ebb_problems_create();
   struct ebb_settings settings;
+  const char *model = strncmp(set, "matter.", strlen("matter.")) ? MODEL : MODEL FIELD; /* its keys need a field */
   bool good;
 
   cr_assert_not_null(problems);
-  good = ebb_input_parse(MODEL, strlen(MODEL), &set, 1, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, problems);
+  good = ebb_input_parse(model, strlen(model), &set, 1, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, problems);
   snprintf(message, 256, "%s", good ? "" : ebb_problems_text(problems, 0));
   ebb_settings_clear(&settings);
   ebb_problems_destroy(&problems);

@@ -46,7 +46,7 @@ static PetscErrorCode evaluate_all(struct work *w, const struct ebb_invocation *
   const struct ebb_sheet_request request = {.levels = o->quantiles,
                                             .level = o->quantile,
                                             .probability = (o->keep & EBB_KEEP_PROBABILITY) != 0,
-                                            .state = (o->keep & EBB_KEEP_STATE) != 0};
+                                            .state = ebb_run_keeps_states(&w->run)};
   const PetscInt batch = w->run.source.batch ? w->run.source.batch : ebb_run_estimate(&w->run).batch;
   const bool steps = w->run.method == EBB_METHOD_CHEBYSHEV || w->run.method == EBB_METHOD_KRYLOV;
   struct ebb_progress progress;
@@ -76,7 +76,11 @@ static void warn(const struct work *w)
   if (w->run.packet->channel_purity < PURE)
     fprintf(stderr, "ebbturn: warning: the two orientations mix: least |C|^2 of the channel is %.4f, below %.2f\n",
             w->run.packet->channel_purity, PURE);
-  if (!ebb_run_mean_exists(&w->run))
+  if (ebb_rows_nature(&w->run.rows) == EBB_NATURE_FAMILY)
+    fprintf(stderr,
+            "ebbturn: warning: every state of this extension falls like 1/v at large volume, so powers of v have no "
+            "means:\n  the result holds quantiles and bounded observables, the bounce is taken from the median\n");
+  else if (!ebb_run_mean_exists(&w->run))
     fprintf(stderr,
             "ebbturn: warning: c(k) does not vanish at k = 0 (|c(0)|^2 is %.1e of its maximum): the mean volume grows\n"
             "  logarithmically with the lattice; the bounce is taken from the median\n",

@@ -46,8 +46,8 @@ static const char *type_name(enum ebb_type type)
     return "number or [real, imaginary]";
   case EBB_TYPE_PARTS:
     return "list of sections";
-  case EBB_TYPE_EMPTY:
-    return "empty list";
+  case EBB_TYPE_FIELDS:
+    return "list of one section of keys, or empty";
   }
   return "";
 }

@@ -90,9 +90,7 @@ static PetscErrorCode put_functions(struct ebb_store *store, const struct ebb_sp
                                 .scale = {"/spectrum/eigenvalue", "/lattice/v"}};
 
   PetscFunctionBegin;
-  PetscCall(ebb_store_define(store, &d));
-  PetscCall(ebb_store_write(store, d.path, (const hsize_t[]){0, (hsize_t)s->lattice.begin},
-                            (const hsize_t[]){n, (hsize_t)(s->lattice.end - s->lattice.begin)}, s->function));
+  PetscCall(ebb_store_put(store, &d, s->function));
   PetscFunctionReturn(0);
 }
 

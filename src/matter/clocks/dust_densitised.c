@@ -7,6 +7,9 @@ static double edge(const struct ebb_prescription *p, double sector) { return p->
 static double weight(const struct ebb_prescription *p, double v) { return p->square(v) / fabs(v); }
 static double scale(const struct ebb_constants *c) { return c->theta_scale / (2.0 * c->volume_unit); }
 
+/* p_phi^2/(2 V) */
+static double kinetic(const struct ebb_constants *c, double v) { return 0.5 / (c->volume_unit * fabs(v)); }
+
 const struct ebb_clock ebb_clock_dust_densitised = {
     .name = "dust_densitised",
     .kind = "dust",
@@ -16,9 +19,12 @@ const struct ebb_clock ebb_clock_dust_densitised = {
     .source = "Husain, Pawlowski, Phys. Rev. Lett. 108, 141301 (2012), arXiv:1108.1145 (ordering: common practice)",
     .unit = "1/length",
     .growth = 1.0,
+    .density_factor = 1.0,
+    .density_power = 1.0,
     .measure = measure,
     .hop = hop,
     .edge = edge,
     .weight = weight,
     .scale = scale,
+    .kinetic = kinetic,
 };

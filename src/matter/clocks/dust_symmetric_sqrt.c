@@ -17,6 +17,9 @@ static double weight(const struct ebb_prescription *p, double v)
 /* cD = 3/(4 gamma lambda) */
 static double scale(const struct ebb_constants *c) { return 3.0 / (4.0 * c->immirzi * c->polymer_scale); }
 
+/* p_phi^2/(2 V) */
+static double kinetic(const struct ebb_constants *c, double v) { return 0.5 / (c->volume_unit * fabs(v)); }
+
 const struct ebb_clock ebb_clock_dust_symmetric_sqrt = {
     .name = "dust_symmetric_sqrt",
     .kind = "dust",
@@ -26,9 +29,12 @@ const struct ebb_clock ebb_clock_dust_symmetric_sqrt = {
     .source = "Husain, Pawlowski, Class. Quantum Grav. 28, 225014 (2011), arXiv:1108.1147 (ordering recalled)",
     .unit = "1/length",
     .growth = 1.0,
+    .density_factor = 1.0,
+    .density_power = 1.0,
     .measure = measure,
     .hop = ebb_clock_quarter,
     .edge = ebb_clock_quarter_edge,
     .weight = weight,
     .scale = scale,
+    .kinetic = kinetic,
 };

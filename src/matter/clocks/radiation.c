@@ -34,6 +34,13 @@ static double scale(const struct ebb_constants *c)
   return 3.0 * cbrt(pow(c->volume_unit, 4.0)) / (4.0 * EBB_PI * c->newton * product * product);
 }
 
+/* p_A^2/(2 V^{1/3}) + p_phi^2/(2 V): p_phi^2 V^{-2/3} */
+static double kinetic(const struct ebb_constants *c, double v)
+{
+  const double root = cbrt(c->volume_unit * fabs(v));
+  return 1.0 / (root * root);
+}
+
 const struct ebb_clock ebb_clock_radiation = {
     .name = "radiation",
     .kind = "radiation",
@@ -43,9 +50,12 @@ const struct ebb_clock ebb_clock_radiation = {
     .root = true,
     .unit = "1",
     .growth = 4.0 / 3.0,
+    .density_factor = 0.5,
+    .density_power = 4.0 / 3.0,
     .measure = measure,
     .hop = hop,
     .edge = edge,
     .weight = weight,
     .scale = scale,
+    .kinetic = kinetic,
 };

@@ -7,6 +7,14 @@ static double edge(const struct ebb_prescription *p, double sector) { return p->
 static double weight(const struct ebb_prescription *p, double v) { return p->square(v); }
 static double scale(const struct ebb_constants *c) { return c->theta_scale; }
 
+/* another massless scalar: p_phi^2 + p_2^2 = Theta */
+static double kinetic(const struct ebb_constants *c, double v)
+{
+  (void)c;
+  (void)v;
+  return 1.0;
+}
+
 const struct ebb_clock ebb_clock_scalar = {
     .name = "scalar",
     .kind = "scalar",
@@ -16,9 +24,12 @@ const struct ebb_clock ebb_clock_scalar = {
     .root = true,
     .unit = "G",
     .growth = 2.0,
+    .density_factor = 0.5,
+    .density_power = 2.0,
     .measure = measure,
     .hop = hop,
     .edge = edge,
     .weight = weight,
     .scale = scale,
+    .kinetic = kinetic,
 };

@@ -97,6 +97,7 @@ const struct ebb_profile ebb_profile_file = {
     .source = "a result of this program, or anything written in its layout",
     .resolve = resolve,
     .spectral = spectral,
+    .everywhere = true,
     .value = value,
     .reach_v = reach_v,
     .reach_k = reach_k,

@@ -23,7 +23,7 @@ static double complex coefficient(const struct ebb_profile_input *in, double k, 
 {
   const double x = (k - in->k0) / (2.0 * in->sigma_k);
 
-  return cexp(-x * x - I * branch_sign(in) * alpha - I * k * in->constants->kappa * in->at);
+  return cexp(-x * x - I * branch_sign(in) * alpha - I * ebb_profile_omega(in, k) * in->at);
 }
 
 /* exp(+i k0 ln v) moves to smaller v as phi grows (contracting) under exp(+i sqrt(Theta) phi). */

@@ -23,7 +23,7 @@ static double complex coefficient(const struct ebb_profile_input *in, double k, 
   const double x = (k - in->k0) / (2.0 * in->sigma_k);
 
   (void)alpha;
-  return cexp(-(1.0 + I * in->settings->squeeze) * x * x - I * k * in->constants->kappa * in->at);
+  return cexp(-(1.0 + I * in->settings->squeeze) * x * x - I * ebb_profile_omega(in, k) * in->at);
 }
 
 static void reach_k(const struct ebb_profile_input *in, double *low, double *high)

@@ -68,6 +68,7 @@ const struct ebb_profile ebb_profile_gaussian_volume = {
     .source = "common practice, no source",
     .resolve = resolve,
     .spectral = spectral,
+    .everywhere = true,
     .value = value,
     .reach_v = reach_v,
     .reach_k = reach_k,

@@ -10,6 +10,8 @@
  * f_{n-1}. Every vector met is bounded by the norm of psi; the form by second-kind polynomials U_n is not: near
  * Theta = 0, where a wide universe lives, they grow to 1/(2x).
  *
+ * A linear operator H of spectrum in [c - r, c + r] moves psi by exp(i c t) sum_m c_m i^m J_m(r t) T_m((H - c)/r).
+ *
  * Cost: |z| + O(|z|^{1/3}) applications of Theta for the pair, three vectors of work, whatever t.
  * Source of the idea for propagation: Tal-Ezer, Kosloff, J. Chem. Phys. 81, 3967 (1984), from memory. */
 #include "../stepper.h"
@@ -102,6 +104,45 @@ static PetscErrorCode add_terms(struct ebb_stepper *stepper, int odd, PetscInt l
   PetscFunctionReturn(0);
 }
 
+/* psi by exp(i H t), then root = H psi. */
+static PetscErrorCode advance_linear(struct ebb_stepper *stepper, double t, double complex psi[], double complex root[],
+                                     double *error)
+{
+  const struct ebb_operator *op = stepper->op;
+  const double centre = 0.5 * (op->high + op->low), radius = 0.5 * (op->high - op->low), z = radius * t;
+  const size_t bytes = (size_t)op->local * sizeof *psi;
+  const double complex phase = cexp(I * centre * t);
+  struct chebyshev *c = stepper->data;
+  double complex *x = psi, *w = c->work, *swap;
+  struct ebb_tally tally = {.p = c->sum[0], .q = c->sum[1]};
+  double remainder, *j;
+  PetscInt last;
+
+  PetscFunctionBegin;
+  last = ebb_bessel_degree(z, fmax(TAIL_SHARE * stepper->tolerance, DBL_MIN)) + 1; /* odd */
+  PetscCall(PetscMalloc1(last + 1, &j));
+  ebb_bessel_row(z, last, j, &remainder);
+  memset(c->sum[0], 0, bytes);
+  memset(c->sum[1], 0, bytes);
+  memset(w, 0, bytes); /* T_1 = y T_0 is half a step from nothing */
+  for (PetscInt n = 1; n <= last; n++) {
+    const double half = n == 1 ? 0.5 : 1.0, sign = (n / 2) % 2 == 0 ? 1.0 : -1.0;
+
+    tally.p_weight[0] = (n == 1 ? 1.0 : 2.0) * sign * j[n - 1];
+    tally.q_weight[1] = 2.0 * sign * j[n];
+    PetscCall(op->recur(op, half / radius, -half * centre / radius, x, w, n % 2 == 1 ? &tally : NULL));
+    swap = x;
+    x = w;
+    w = swap;
+  }
+  stepper->applications += last + 1;
+  for (PetscInt i = 0; i < op->local; i++) psi[i] = phase * (c->sum[0][i] + c->sum[1][i]);
+  PetscCall(op->apply(op, psi, root));
+  *error = remainder + ROUNDING * DBL_EPSILON * (fabs(z) + fabs(centre * t));
+  PetscCall(PetscFree(j));
+  PetscFunctionReturn(0);
+}
+
 static PetscErrorCode advance(struct ebb_stepper *stepper, double t, double complex psi[], double complex root[],
                               double *error)
 {
@@ -113,6 +154,10 @@ static PetscErrorCode advance(struct ebb_stepper *stepper, double t, double comp
   PetscInt last;
 
   PetscFunctionBegin;
+  if (op->linear) {
+    PetscCall(advance_linear(stepper, t, psi, root, error));
+    PetscFunctionReturn(0);
+  }
   PetscCall(level(op, psi, root, &x));
   x = fmax(x, DBL_EPSILON);
   /* w is x times smaller than psi, so what is left out counts 1/x */

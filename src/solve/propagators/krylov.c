@@ -6,6 +6,8 @@
  * of applications hardly depends on it. Real and imaginary parts stand interleaved in one real Vec of
  * 4 local entries: the stencil takes them as they are, and one Krylov space serves both.
  *
+ * A linear operator H: d/dt psi = i H psi, [[0, -H], [H, 0]] on real and imaginary parts, which stand interleaved.
+ *
  * Source: Sidje, ACM Trans. Math. Softw. 24, 130 (1998), the algorithm in SLEPc, from memory. */
 #include "../stepper.h"
 #include "ebbturn/compat.h"
@@ -37,10 +39,17 @@ static PetscErrorCode generator_mult(Mat generator, Vec from, Vec to)
 
   PetscCall(VecGetArrayRead(from, &a));
   PetscCall(VecGetArrayWrite(to, &b));
-  PetscCall(stepper->op->apply(stepper->op, (const double complex *)a, (double complex *)(b + half)));
-  for (PetscInt i = 0; i < half; i++) {
-    b[i] = k->scale * a[half + i];
-    b[half + i] *= -1.0 / k->scale;
+  if (stepper->op->linear) {
+    double complex *out = (double complex *)b;
+
+    PetscCall(stepper->op->apply(stepper->op, (const double complex *)a, out));
+    for (PetscInt i = 0; i < stepper->op->local; i++) out[i] *= I;
+  } else {
+    PetscCall(stepper->op->apply(stepper->op, (const double complex *)a, (double complex *)(b + half)));
+    for (PetscInt i = 0; i < half; i++) {
+      b[i] = k->scale * a[half + i];
+      b[half + i] *= -1.0 / k->scale;
+    }
   }
   PetscCall(VecRestoreArrayWrite(to, &b));
   PetscCall(VecRestoreArrayRead(from, &a));
@@ -58,13 +67,14 @@ static PetscErrorCode generator_norm(Mat generator, NormType type, PetscReal *no
   PetscCall(MatShellGetContext(generator, &stepper));
   const struct krylov *k = stepper->data;
 
-  *norm = fmax(k->scale, stepper->op->high / k->scale);
+  *norm = stepper->op->linear ? fmax(fabs(stepper->op->low), fabs(stepper->op->high))
+                              : fmax(k->scale, stepper->op->high / k->scale);
   PetscFunctionReturn(0);
 }
 
 static PetscErrorCode create(struct ebb_stepper *stepper)
 {
-  const PetscInt local = 4 * stepper->op->local;
+  const PetscInt local = (stepper->op->linear ? 2 : 4) * stepper->op->local;
   const MPI_Comm comm = stepper->op->comm;
   struct krylov *k;
   FN function;
@@ -118,6 +128,7 @@ static PetscErrorCode norms(const struct ebb_operator *op, const double complex 
 static PetscErrorCode solve(struct ebb_stepper *stepper, double t, double complex psi[], double complex root[])
 {
   const PetscInt local = stepper->op->local;
+  const bool linear = stepper->op->linear;
   struct krylov *k = stepper->data;
   MFNConvergedReason reason;
   double complex *pair;
@@ -129,7 +140,7 @@ static PetscErrorCode solve(struct ebb_stepper *stepper, double t, double comple
   pair = (double complex *)array;
   for (PetscInt i = 0; i < local; i++) {
     pair[i] = psi[i];
-    pair[local + i] = I * root[i] / k->scale;
+    if (!linear) pair[local + i] = I * root[i] / k->scale;
   }
   PetscCall(VecRestoreArrayWrite(k->from, &array));
   PetscCall(MFNGetFN(k->mfn, &function));
@@ -142,9 +153,10 @@ static PetscErrorCode solve(struct ebb_stepper *stepper, double t, double comple
   pair = (double complex *)array;
   for (PetscInt i = 0; i < local; i++) {
     psi[i] = pair[i];
-    root[i] = -I * k->scale * pair[local + i];
+    if (!linear) root[i] = -I * k->scale * pair[local + i];
   }
   PetscCall(VecRestoreArray(k->to, &array));
+  if (linear) PetscCall(stepper->op->apply(stepper->op, psi, root));
   PetscFunctionReturn(0);
 }
 
