@@ -10,7 +10,9 @@
 #include <stdlib.h>
 #include <string.h>
 
-static const double SAME_CLOCK = 1e-12;         /* of the run's range: a stored sample that is one of the window */
+static const double SAME_CLOCK = 1e-12; /* of the run's range: a stored sample that is one of the window */
+enum { BATCH_MOST = 64 };
+static const double BATCH_BYTES = 2e8;          /* per rank, of states handed on at once */
 static const double ACCUMULATOR_BYTES = 2.56e8; /* a histogram larger than this is binned in ln v */
 
 static bool speaks(void)
@@ -165,27 +167,74 @@ static bool steps(const struct ebb_run *run)
   return run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV;
 }
 
+/* States of two fields, [count][points][local] by the field's momentum. */
+static PetscErrorCode bundle_samples(const struct ebb_bundle *b, const struct ebb_lattice *l, PetscInt count,
+                                     const double t[], double complex psi[])
+{
+  const size_t local = (size_t)(l->end - l->begin), one = local * (size_t)b->points;
+  double complex *slice;
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc1((size_t)count * local, &slice));
+  memset(psi, 0, (size_t)count * one * sizeof *psi);
+  for (PetscInt k = 0; k < b->n; k++) {
+    const size_t place = (size_t)(b->place[k] + b->points / 2);
+
+    PetscCall(ebb_packet_samples(b->packet[k], l, count, t, EBB_FIELD_PSI, slice));
+    for (PetscInt s = 0; s < count; s++)
+      for (size_t i = 0; i < local; i++)
+        psi[(size_t)s * one + place * local + i] = sqrt(b->weight[k]) * slice[(size_t)s * local + i];
+  }
+  PetscCall(PetscFree(slice));
+  PetscFunctionReturn(0);
+}
+
+/* Samples [first, first + count) by either rule, however this run gives them. */
+static PetscErrorCode evaluate(struct ebb_relation *r, bool check, PetscInt count, const double t[],
+                               double complex psi[])
+{
+  const struct ebb_sheet_request request = {.state = true};
+  const struct ebb_run *run = &r->run;
+  struct ebb_sheet sheet;
+
+  PetscFunctionBegin;
+  if (run->bundle) {
+    PetscCall(bundle_samples(check ? run->check_bundle : run->bundle, &run->lattice, count, t, psi));
+  } else if (steps(run)) {
+    PetscCall(r->run.source.evaluate(&r->run.source, count, t, &request, &sheet));
+    memcpy(psi, sheet.psi, (size_t)count * (size_t)sheet.local * sizeof *psi);
+    PetscCall(ebb_sheet_clear(&sheet));
+    r->state_error = fmax(r->state_error, ebb_source_steps_error(&r->run.source));
+  } else {
+    PetscCall(ebb_packet_samples(check ? run->check : run->packet, &run->lattice, count, t, EBB_FIELD_PSI, psi));
+  }
+  PetscFunctionReturn(0);
+}
+
 /* Distance of the state to that of the independent rule, at the ends of the window, where phases are largest. */
 static PetscErrorCode compare_rules(struct ebb_relation *r)
 {
-  const struct ebb_sheet_request request = {.state = true};
+  const struct ebb_lattice *l = &r->run.lattice;
+  const size_t one = (size_t)(l->end - l->begin) * (size_t)(r->run.bundle ? r->run.bundle->points : 1);
   const double ends[2] = {r->t[0], r->t[r->m - 1]};
-  struct ebb_sheet one, other;
+  double complex *psi;
   double distance[2] = {0.0, 0.0};
 
   PetscFunctionBegin;
-  if (!r->run.check) PetscFunctionReturn(0);
-  PetscCall(r->run.source.evaluate(&r->run.source, 2, ends, &request, &one));
-  PetscCall(r->run.check_source.evaluate(&r->run.check_source, 2, ends, &request, &other));
-  for (int s = 0; s < 2; s++)
-    for (PetscInt i = 0; i < one.local; i++) {
-      const double complex d = one.psi[s * one.local + i] - other.psi[s * one.local + i];
-      distance[s] += creal(d * conj(d));
-    }
+  /* a rule on another lattice is compared by what it says of observables, in the run itself */
+  if (!(r->run.bundle ? (void *)r->run.check_bundle : (void *)r->run.check) || r->run.check_lattice.rows.clock)
+    PetscFunctionReturn(0);
+  PetscCall(PetscMalloc1(4 * one, &psi));
+  PetscCall(evaluate(r, false, 2, ends, psi));
+  PetscCall(evaluate(r, true, 2, ends, psi + 2 * one));
+  for (size_t i = 0; i < 2 * one; i++) {
+    const double complex d = psi[i] - psi[2 * one + i];
+
+    distance[i / one] += creal(d * conj(d));
+  }
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, distance, 2, MPI_DOUBLE, MPI_SUM, r->run.comm));
   r->state_error = fmax(r->state_error, sqrt(fmax(distance[0], distance[1])));
-  PetscCall(ebb_sheet_clear(&one));
-  PetscCall(ebb_sheet_clear(&other));
+  PetscCall(PetscFree(psi));
   PetscFunctionReturn(0);
 }
 
@@ -205,47 +254,68 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode,
                                                           const double complex psi[]),
                                    void *context)
 {
-  const struct ebb_sheet_request request = {.state = true};
-  const PetscInt batch = r->run.source.batch ? r->run.source.batch : PetscMin(ebb_run_estimate(&r->run).batch, 64);
-  const size_t local = (size_t)(r->run.lattice.end - r->run.lattice.begin);
+  const size_t one =
+      (size_t)(r->run.lattice.end - r->run.lattice.begin) * (size_t)(r->run.bundle ? r->run.bundle->points : 1);
+  PetscInt batch = r->run.source.batch;
   struct ebb_progress progress;
-  double complex *rows = NULL;
+  double complex *psi;
 
   PetscFunctionBegin;
-  if (r->row) PetscCall(PetscMalloc1((size_t)batch * local, &rows));
+  if (!batch) batch = PetscMax(PetscMin(BATCH_MOST, (PetscInt)(BATCH_BYTES / (16.0 * (double)PetscMax(one, 1)))), 1);
+  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, &batch, 1, MPIU_INT, MPI_MIN, r->run.comm));
+  PetscCall(PetscMalloc1((size_t)batch * one, &psi));
   ebb_progress_start(&progress, r->run.comm, mode, "window sample", r->m);
   for (PetscInt first = 0; first < r->m; first += batch) {
     const PetscInt count = PetscMin(batch, r->m - first);
 
-    if (r->row) {
-      PetscCall(read_rows(r, first, count, rows));
-      PetscCall(take(context, first, count, rows));
-    } else {
-      struct ebb_sheet sheet;
-
-      PetscCall(r->run.source.evaluate(&r->run.source, count, r->t + first, &request, &sheet));
-      PetscCall(take(context, first, count, sheet.psi));
-      PetscCall(ebb_sheet_clear(&sheet));
-      if (steps(&r->run)) r->state_error = fmax(r->state_error, ebb_source_steps_error(&r->run.source));
-    }
+    if (r->row)
+      PetscCall(read_rows(r, first, count, psi));
+    else
+      PetscCall(evaluate(r, false, count, r->t + first, psi));
+    PetscCall(take(context, first, count, psi));
     ebb_progress_tell(&progress, first + count);
   }
   ebb_progress_end(&progress);
-  PetscCall(PetscFree(rows));
+  PetscCall(PetscFree(psi));
   PetscCall(compare_rules(r));
   PetscFunctionReturn(0);
 }
 
+/* Momentum, energy and their spreads of states of two fields, over all slices. */
+static void two_fields(const struct ebb_relation *r, struct ebb_relational_model *model)
+{
+  const struct ebb_bundle *b = r->run.bundle;
+  const bool dust = r->run.rows.clock->density_power != 2.0;
+  double omega = 0.0, energy = 0.0, energy2 = 0.0;
+
+  for (PetscInt k = 0; k < b->n; k++)
+    for (PetscInt j = 0; j < b->packet[k]->n; j++) {
+      const double w = b->weight[k] * b->packet[k]->share[j], h = b->packet[k]->omega[j];
+
+      if (!(w > 0.0)) continue;
+      omega += w * sqrt(h * h + b->p[k] * b->p[k]);
+      energy += w * h;
+      energy2 += w * h * h;
+    }
+  model->circle = (struct ebb_circle){b->points, b->length, r->settings.matter.momentum};
+  model->energy_spread = sqrt(fmax(energy2 - energy * energy, 0.0));
+  model->momentum_mean = dust ? r->settings.matter.momentum : omega;
+  if (dust) model->dust_energy = 2.0 * r->run.constants.volume_unit * energy;
+}
+
 void ebb_relation_model(const struct ebb_relation *r, struct ebb_relational_model *model)
 {
+  const bool dust = !strcmp(r->settings.clock.kind, "dust");
+
   *model = (struct ebb_relational_model){
       .lattice = &r->run.lattice,
       .constants = &r->run.constants,
       .comm = r->run.comm,
       .circle = {.points = 1},
-      .parameter = strcmp(r->settings.clock.kind, "dust") ? "phi" : "dust",
-      .momentum_mean = r->run.packet->momentum_mean,
-      .rate = r->run.constants.kappa,
+      .parameter = dust ? "dust" : "phi",
+      .momentum_mean = dust ? 0.0 : r->run.packet->momentum_mean,
+      .dust_energy = dust ? 2.0 * r->run.constants.volume_unit * r->run.packet->momentum_mean : 0.0,
+      .rate = dust ? r->run.constants.theta_scale / r->run.constants.volume_unit : r->run.constants.kappa,
       .energy_spread = r->run.packet->momentum_spread,
       .samples = r->m,
       .t = r->t,
@@ -253,4 +323,5 @@ void ebb_relation_model(const struct ebb_relation *r, struct ebb_relational_mode
       .propagation = PETSC_MACHINE_EPSILON,
       .bytes = ACCUMULATOR_BYTES,
   };
+  if (r->run.bundle) two_fields(r, model);
 }

@@ -6,6 +6,7 @@
 #define EBBTURN_APP_RELATION_H
 
 #include "ebbturn/command.h"
+#include "ebbturn/histories.h"
 #include "ebbturn/readings.h"
 #include "ebbturn/relational.h"
 #include "ebbturn/store.h"
@@ -37,7 +38,24 @@ void ebb_relation_model(const struct ebb_relation *relation, struct ebb_relation
 /* Groups /relational/<name>, /comparison. */
 PetscErrorCode ebb_relation_put(struct ebb_store *store, const struct ebb_relation *relation,
                                 const struct ebb_relational *relational);
+/* What a second scalar as clock has beside; nothing for other readings. */
+PetscErrorCode ebb_relation_put_field(struct ebb_store *store, const struct ebb_relation *relation, const char *group,
+                                      const struct ebb_reading_settings *settings,
+                                      const struct ebb_reading_result *result);
 /* The summary on stdout. */
 void ebb_relation_print(const struct ebb_relation *relation, const struct ebb_relational *relational);
+
+/* Histories and the propagator diagnostic, where the readings file asks for them. *code: 0, or 2 with the problem said.
+ * Collective. */
+struct ebb_relation_two_times {
+  struct ebb_history *history; /* [v_stars], NULL where not asked for */
+  struct ebb_two_time two_time;
+};
+PetscErrorCode ebb_relation_two_times(struct ebb_relation *relation, const struct ebb_invocation *invocation,
+                                      struct ebb_relation_two_times *two_times, int *code);
+PetscErrorCode ebb_relation_two_times_put(struct ebb_store *store, const struct ebb_relation *relation,
+                                          const struct ebb_relation_two_times *two_times);
+void ebb_relation_two_times_print(const struct ebb_relation *relation, const struct ebb_relation_two_times *two_times);
+PetscErrorCode ebb_relation_two_times_clear(struct ebb_relation_two_times *two_times);
 
 #endif

@@ -159,6 +159,7 @@ PetscErrorCode ebb_relation_put(struct ebb_store *store, const struct ebb_relati
     PetscCall(put_tables(store, group, x));
     PetscCall(put_definition(store, group, &r->readings.reading[i]));
     PetscCall(put_attributes(store, group, r, x));
+    PetscCall(ebb_relation_put_field(store, r, group, &r->readings.reading[i], x));
   }
   PetscFunctionReturn(0);
 }

@@ -7,6 +7,8 @@
 #include <math.h>
 #include <string.h>
 
+static const double NOTHING = 1e-15; /* of the norm: what counts as complete */
+
 static double square(double complex z) { return creal(z) * creal(z) + cimag(z) * cimag(z); }
 
 static PetscErrorCode forward(struct ebb_representation *rep, const double complex in[], double complex out[])
@@ -14,6 +16,18 @@ static PetscErrorCode forward(struct ebb_representation *rep, const double compl
   PetscFunctionBegin;
   PetscCall(rep->kind->forward(rep, in, out));
   PetscFunctionReturn(0);
+}
+
+/* v = 0 is no site of an operator's matrix: what of chi its coefficients do not hold. */
+static double missing(const struct ebb_relational *r, const struct ebb_engine *e)
+{
+  const size_t whole = (size_t)r->space->slices * (size_t)r->space->ring;
+  double sum = 0.0;
+
+  if (!e->system->extended || e->system->keeps_sites || e->system->phase) return 0.0;
+  for (size_t c = 0; c < whole; c++) sum += square(e->chi[c]);
+  for (size_t c = 0; c < e->system->size; c++) sum -= square(e->s[c]);
+  return sum;
 }
 
 /* Coefficients of the system into the outcome's bins. */
@@ -72,6 +86,7 @@ static PetscErrorCode add_outcome(struct ebb_relational *r, struct ebb_engine *e
     for (PetscInt at = s->sites; at < s->ring; at++) /* half lattice: n <= 0; full lattice: beyond either end */
       if (!r->model.lattice->half || at >= s->wrap) e->leaked[i] += w * square(e->chi[k * s->ring + at]);
   PetscCall(forward(e->system, e->chi, e->s));
+  e->lost[i] += w * missing(r, e);
   histogram(e, i, w);
   PetscFunctionReturn(0);
 }
@@ -105,12 +120,16 @@ static PetscErrorCode add_reversed(struct ebb_relational *r, struct ebb_engine *
 static PetscErrorCode add_system(struct ebb_relational *r, struct ebb_engine *e, PetscInt sample,
                                  const double complex full[])
 {
-  const size_t whole = (size_t)r->space->slices * (size_t)r->space->ring;
   const double w = r->weight[sample];
   double mean = 0.0;
 
   PetscFunctionBegin;
-  for (size_t c = 0; c < whole; c++) e->norm += w * square(full[c]);
+  for (size_t k = 0; k < (size_t)r->space->slices; k++) { /* line by line: one long sum would round its tail away */
+    double sum = 0.0;
+
+    for (size_t c = 0; c < (size_t)r->space->ring; c++) sum += square(full[k * (size_t)r->space->ring + c]);
+    e->norm += w * sum;
+  }
   PetscCall(forward(e->system, full, e->s));
   for (size_t c = 0; c < e->system->size; c++) {
     if (e->bins->map[c] < 0) {
@@ -122,6 +141,45 @@ static PetscErrorCode add_system(struct ebb_relational *r, struct ebb_engine *e,
   }
   if (sample == 0) e->end_mean[0] = mean;
   if (sample == r->model.samples - 1) e->end_mean[1] = mean;
+  PetscFunctionReturn(0);
+}
+
+/* What no outcome sees, as if it were one more: with it the readings are complete. On every rank alike. */
+static PetscErrorCode add_rest(struct ebb_relational *r, struct ebb_engine *e, double w)
+{
+  const size_t stride = (size_t)e->clock->stride;
+  double seen = 0.0;
+
+  PetscFunctionBegin;
+  for (size_t k = 0; k < e->clock->size; k += stride) {
+    double sum = 0.0;
+
+    for (size_t c = k; c < k + stride; c++) sum += e->windows->rest[c] * square(e->c[c]);
+    seen += sum;
+  }
+  e->rest += w * seen;
+  if (!(fabs(seen) > NOTHING)) PetscFunctionReturn(0);
+  if (e->direct) {
+    for (size_t c = 0; c < e->clock->size; c++) {
+      const PetscInt q = e->bins->map[c / stride * (size_t)e->system->stride + c % stride];
+
+      if (q >= 0)
+        e->rest_bin[q] += w * e->windows->rest[c] * square(e->c[c]);
+      else
+        e->rest_lost += w * e->windows->rest[c] * square(e->c[c]);
+    }
+    PetscFunctionReturn(0);
+  }
+  for (size_t c = 0; c < e->clock->size; c++) e->masked[c] = sqrt(fmax(e->windows->rest[c], 0.0)) * e->c[c];
+  PetscCall(e->clock->kind->backward(e->clock, e->masked, e->chi));
+  PetscCall(forward(e->system, e->chi, e->s));
+  for (size_t c = 0; c < e->system->size; c++) {
+    if (e->bins->map[c] >= 0)
+      e->rest_bin[e->bins->map[c]] += w * square(e->s[c]);
+    else
+      e->rest_lost += w * square(e->s[c]);
+  }
+  e->rest_lost += w * missing(r, e);
   PetscFunctionReturn(0);
 }
 
@@ -138,14 +196,7 @@ PetscErrorCode ebb_engine_add(struct ebb_relational *r, struct ebb_engine *e, Pe
   }
   PetscCall(forward(e->clock, full, e->c));
   if (e->kept) memcpy(e->kept + (size_t)sample * e->clock->size, e->c, e->clock->size * sizeof *e->c);
-  for (size_t c = 0; c < e->clock->size; c++) {
-    const double unseen = w * e->windows->rest[c] * square(e->c[c]);
-    const size_t at =
-        c / (size_t)e->clock->stride * (size_t)e->system->stride + c % (size_t)e->clock->stride; /* direct only */
-
-    e->rest += unseen;
-    if (e->direct && e->bins->map[at] >= 0) e->rest_bin[e->bins->map[at]] += unseen;
-  }
+  PetscCall(add_rest(r, e, w));
   for (PetscInt i = r->rank; i < e->n; i += r->ranks) {
     double sum = 0.0;
 

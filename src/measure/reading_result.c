@@ -211,13 +211,13 @@ static void identities(const struct ebb_relational *r, struct ebb_engine *e)
     double change = e->action[q];
 
     for (PetscInt i = 0; i < x->n; i++) change -= e->sum[(size_t)i * (size_t)x->bins + (size_t)q];
-    deficit += change;
+    deficit += change - e->rest_bin[q];
     distance += fabs(change - e->rest_bin[q]);
     if (e->direct) x->identity_commuting = fmax(x->identity_commuting, fabs(change - e->rest_bin[q]) / window);
   }
   for (PetscInt j = 0; j < x->n * groups; j++) violation += fabs(e->joint[j] - e->reversed[j]);
   x->identity_dwell = fabs(dwell + e->rest - e->norm) / window;
-  x->identity_action = fabs(deficit + e->action_lost - e->rest) / window;
+  x->identity_action = fabs(deficit + e->action_lost - e->rest_lost) / window;
   x->norm_drift = fabs(e->norm - window) / window;
   x->outside = e->rest;
   x->back_action = 0.5 * distance / window;
@@ -270,7 +270,6 @@ static PetscErrorCode purities(struct ebb_relational *r, struct ebb_engine *e)
 PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
 {
   struct ebb_reading_result *x = &e->result;
-  const double v_bounce = r->model.momentum_mean / sqrt(r->model.constants->theta_scale);
   const double window = r->t[r->model.samples - 1] - r->t[0];
   double *share; /* of an outcome's probability that may lie elsewhere */
 
@@ -291,7 +290,7 @@ PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
     x->intervals[i] = (double)v.stretches;
     x->purity_model[i] = 1.0 / sqrt(1.0 + 4.0 * v.sigma * v.sigma * r->model.energy_spread * r->model.energy_spread);
     x->curve[i] = e->kind->curve && e->settings.clock.function == EBB_FUNCTION_NONE
-                      ? e->kind->curve(&r->model, e->settings.clock.alpha, v_bounce, x->centre[i])
+                      ? e->kind->curve(&r->model, e->settings.clock.alpha, x->centre[i])
                       : NAN;
     share[i] = e->clock ? v.window_error + v.step_error + 2.0 * r->model.propagation * window / fmax(v.dwell, 1e-300)
                         : 2.0 * r->model.propagation;

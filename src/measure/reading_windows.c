@@ -237,7 +237,7 @@ static PetscErrorCode bins_of_sites(size_t size, const double value[], double ha
       else
         high = middle - 1;
     }
-    b->map[c] = isfinite(value[c]) ? low : -1;
+    b->map[c] = isfinite(value[c]) ? low : -1; /* -inf and nan are outside every bin */
   }
   PetscCall(PetscFree(sorted));
   PetscFunctionReturn(0);

@@ -53,6 +53,9 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
     high += half_cell > 0.0 ? half_cell : 1e-9 * fmax(fabs(high), 1.0);
     if (half_cell > 0.0) low = fmax(low - half_cell, 0.0);
   }
+  if (volume && e->clock && e->clock->kind->word.takes_alpha) /* a mixed clock is not folded: v <= 0 is a leak alone */
+    for (PetscInt k = 0; k < r->space->slices; k++)
+      for (PetscInt i = r->space->sites; i < s->stride; i++) e->system->value[k * s->stride + i] = NAN;
   PetscCall(ebb_bins_create(&e->settings, s->size, s->value, half_cell, low, high, &e->bins));
   PetscFunctionReturn(0);
 }
@@ -62,7 +65,7 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
 static void prepare_groups(struct ebb_relational *r, struct ebb_engine *e)
 {
   enum { GROUPS = 16 };
-  const double v_bounce = r->model.momentum_mean / sqrt(r->model.constants->theta_scale);
+  const double v_bounce = ebb_reading_volume_at(&r->model, 1.0);
   struct ebb_bins *b = e->bins;
 
   b->groups = GROUPS;

@@ -28,7 +28,7 @@ struct ebb_engine {
   double *action;                       /* [bins]: D_Q */
   double action_lost;                   /* the same outside the bins */
   double rest, norm;                    /* dwell outside the clock's bins; int ||psi||^2 */
-  double *rest_bin;                     /* [bins], direct: the part of D_Q that no outcome sees */
+  double *rest_bin, rest_lost;          /* [bins]: the part of D_Q that no outcome sees; the same outside the bins */
   double end_mean[2];                   /* mean system value at the window's ends */
   double *reversed;                     /* * [n][groups]: system first, then clock */
   double *joint;                        /* [n][groups] */

@@ -129,6 +129,7 @@ static PetscErrorCode relate(const struct ebb_invocation *invocation, int *code)
 {
   struct ebb_relation r;
   struct ebb_relational *relational = NULL;
+  struct ebb_relation_two_times two_times = {0};
   struct ebb_store *store = NULL;
   char path[2 * EBB_PATH_MAX];
   PetscErrorCode error;
@@ -140,20 +141,24 @@ static PetscErrorCode relate(const struct ebb_invocation *invocation, int *code)
   error = ebb_relation_create(invocation, &r, code);
   if (!error && !*code) error = ebb_store_create(PETSC_COMM_WORLD, path, invocation->force, &store);
   if (!error && !*code) error = relate_readings(&r, invocation, &relational, code);
+  if (!error && !*code) error = ebb_relation_two_times(&r, invocation, &two_times, code);
   if (!error && !*code) error = put_root(store, &r, invocation);
   if (!error && !*code && relational) error = ebb_relation_put(store, &r, relational);
+  if (!error && !*code) error = ebb_relation_two_times_put(store, &r, &two_times);
   if (!error && !*code) error = ebb_result_stamp(store, "finished");
   if (!error && !*code) {
     error = ebb_store_commit(&store, true);
     if (!error) {
       *code = relational ? judge(&r, relational, rank == 0) : EBB_EXIT_OK;
       if (rank == 0 && relational) ebb_relation_print(&r, relational);
+      if (rank == 0) ebb_relation_two_times_print(&r, &two_times);
       if (rank == 0) printf("result           '%s'\n", path);
     }
   }
   if (error) *code = ebb_exit_from_error(error);
   PetscCall(ebb_store_destroy(&store));
   PetscCall(ebb_relational_destroy(&relational));
+  PetscCall(ebb_relation_two_times_clear(&two_times));
   PetscCall(ebb_relation_destroy(&r));
   PetscFunctionReturn(0);
 }

@@ -17,11 +17,10 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
   PetscFunctionReturn(0);
 }
 
-static double curve(const struct ebb_relational_model *model, double alpha, double v_bounce, double value)
+static double curve(const struct ebb_relational_model *model, double alpha, double value)
 {
   (void)alpha;
-  (void)model;
-  return ebb_reading_curve_of_sin2(v_bounce, sin(value) * sin(value));
+  return ebb_reading_volume_at(model, sin(value) * sin(value));
 }
 
 /* On v > 0 the shift is an isometry and b has no projectors (Lahti, Pellonpaa, J. Math. Phys. 41, 7352 (2000),

@@ -18,11 +18,10 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
   PetscFunctionReturn(0);
 }
 
-static double curve(const struct ebb_relational_model *model, double alpha, double v_bounce, double value)
+static double curve(const struct ebb_relational_model *model, double alpha, double value)
 {
   (void)alpha;
   (void)model;
-  (void)v_bounce;
   return exp(value);
 }
 

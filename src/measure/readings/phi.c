@@ -21,11 +21,11 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
   PetscFunctionReturn(0);
 }
 
-static double curve(const struct ebb_relational_model *model, double alpha, double v_bounce, double value)
+static double curve(const struct ebb_relational_model *model, double alpha, double value)
 {
   (void)alpha;
   return strcmp(model->parameter, "phi") == 0 && model->circle.points < 2
-             ? v_bounce * cosh(model->constants->kappa * value)
+             ? ebb_reading_volume_at(model, 1.0) * cosh(model->constants->kappa * value)
              : NAN;
 }
 

@@ -22,12 +22,12 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
 
 /* Along a classical universe phi2 = phi_B2 + (p2/omega) X/kappa, v = v_B cosh X; only the slope p2/omega of the
  * packet's centre enters. */
-static double curve(const struct ebb_relational_model *model, double alpha, double v_bounce, double value)
+static double curve(const struct ebb_relational_model *model, double alpha, double value)
 {
   (void)alpha;
   const double slope = model->circle.momentum / model->momentum_mean;
 
-  return v_bounce * cosh(model->constants->kappa * value / slope);
+  return ebb_reading_volume_at(model, 1.0) * cosh(model->constants->kappa * value / slope);
 }
 
 const struct ebb_reading ebb_reading_phi2 = {

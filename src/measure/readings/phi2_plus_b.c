@@ -41,7 +41,7 @@ static PetscErrorCode backward(struct ebb_representation *rep, const double comp
 
 /* T = (p2/omega) s + alpha (pi/2 - b(s)), v = v_B cosh(kappa s), tan(b/2) = exp(-kappa s): s by bisection where T grows
  * with s, that is p2/omega + alpha kappa > 0. */
-static double curve(const struct ebb_relational_model *model, double alpha, double v_bounce, double value)
+static double curve(const struct ebb_relational_model *model, double alpha, double value)
 {
   const double slope = model->circle.momentum / model->momentum_mean, kappa = model->constants->kappa;
   double low = -20.0 / kappa, high = 20.0 / kappa; /* cosh 20 = 2e8: further than any lattice */
@@ -54,7 +54,7 @@ static double curve(const struct ebb_relational_model *model, double alpha, doub
     else
       high = s;
   }
-  return v_bounce * cosh(kappa * 0.5 * (low + high));
+  return ebb_reading_volume_at(model, 1.0) * cosh(kappa * 0.5 * (low + high));
 }
 
 const struct ebb_reading ebb_reading_phi2_plus_b = {

@@ -55,8 +55,8 @@ struct ebb_reading {
   PetscErrorCode (*create)(struct ebb_representation *rep, bool extended, char problem[], size_t size);
   PetscErrorCode (*forward)(struct ebb_representation *rep, const double complex in[], double complex out[]);
   PetscErrorCode (*backward)(struct ebb_representation *rep, const double complex in[], double complex out[]);
-  /* Volume on the effective trajectory of a universe with bounce volume v_bounce, NAN where there is none. */
-  double (*curve)(const struct ebb_relational_model *model, double alpha, double v_bounce, double value);
+  /* Volume on the effective trajectory at a value of the observable, NAN where there is none. */
+  double (*curve)(const struct ebb_relational_model *model, double alpha, double value);
 };
 
 PetscErrorCode ebb_representation_create(const struct ebb_space *space, const struct ebb_observable_settings *what,
@@ -127,7 +127,8 @@ PetscErrorCode ebb_reading_matrix_backward(struct ebb_representation *rep, const
                                            double complex out[]);
 PetscErrorCode ebb_reading_matrix_values(struct ebb_representation *rep, const double value[], double mirror);
 bool ebb_reading_volume_lattice(const struct ebb_representation *rep, char problem[], size_t size);
-/* v_B/sin b and its inverses. */
-double ebb_reading_curve_of_sin2(double v_bounce, double sin2);
+/* Volume at which the effective constraint 3 pi G v sin^2 b = p^2/v + E holds; E: dust, 0 on a scalar clock, where this
+ * is v_B/sin b. */
+double ebb_reading_volume_at(const struct ebb_relational_model *model, double sin2);
 
 #endif

@@ -27,11 +27,10 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
   PetscFunctionReturn(0);
 }
 
-static double curve(const struct ebb_relational_model *model, double alpha, double v_bounce, double value)
+static double curve(const struct ebb_relational_model *model, double alpha, double value)
 {
   (void)alpha;
-  (void)model;
-  return ebb_reading_curve_of_sin2(v_bounce, value);
+  return ebb_reading_volume_at(model, value);
 }
 
 const struct ebb_reading ebb_reading_sin2_b = {
