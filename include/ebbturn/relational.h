@@ -54,7 +54,7 @@ struct ebb_reading_result {
   double *purity, *purity_model, *leak, *window_error, *clock_error /* kappa sigma_t */, *curve;
   double *intervals; /* disjoint stretches of the parameter in which the clock may read this */
   double *probability, *quantile, *quantile_error;
-  double *system_centre, *level;
+  double *system_centre, *system_dwell, *level; /* system_dwell: int dt Tr P_Q rho_t, whatever the clock reads */
   char (*status)[160]; /* "ok" or "refused: reason" */
   bool *refused;
   double back_action, order_violation, order_width;

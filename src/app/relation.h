@@ -42,6 +42,11 @@ PetscErrorCode ebb_relation_put(struct ebb_store *store, const struct ebb_relati
 PetscErrorCode ebb_relation_put_field(struct ebb_store *store, const struct ebb_relation *relation, const char *group,
                                       const struct ebb_reading_settings *settings,
                                       const struct ebb_reading_result *result);
+/* Group /comparison, one row for the parameter and one for each reading of v; printed as well. */
+PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct ebb_relation *relation,
+                                           const struct ebb_relational *relational);
+/* Group /bounds, for the solvable ordering; *kept: no inequality is violated. */
+PetscErrorCode ebb_relation_put_bounds(struct ebb_store *store, const struct ebb_relation *relation, bool *kept);
 /* The summary on stdout. */
 void ebb_relation_print(const struct ebb_relation *relation, const struct ebb_relational *relational);
 

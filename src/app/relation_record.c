@@ -58,6 +58,9 @@ static PetscErrorCode put_tables(struct ebb_store *store, const char *group, con
   PetscCall(PetscSNPrintf(level, sizeof level, "%s/level", group));
   PetscCall(ebb_result_line(store, system, x->bins, x->system_centre, "1", "system value of a bin", NULL));
   PetscCall(ebb_store_make_scale(store, system));
+  PetscCall(PetscSNPrintf(path, sizeof path, "%s/system_dwell", group));
+  PetscCall(ebb_result_line(store, path, x->bins, x->system_dwell, "1",
+                            "parameter time that the system spends in a bin, whatever the clock reads", system));
   PetscCall(PetscSNPrintf(path, sizeof path, "%s/probability", group));
   PetscCall(ebb_store_put(store,
                           &(struct ebb_dataset){.path = path,

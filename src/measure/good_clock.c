@@ -52,8 +52,8 @@ void ebb_engine_judge(const struct ebb_relational *r, struct ebb_engine *e)
     (void)PetscSNPrintf(text, size, "up to %.2g of what it reads is sent to v <= 0", w.leak);
   } else if (w.stretches > 1.0) {
     x->verdict = POOR;
-    (void)PetscSNPrintf(text, size, "it reads the same value in %g stretches of the parameter: before and after",
-                        w.stretches);
+    (void)PetscSNPrintf(text, size, "it reads the same value in %d stretches of the parameter: before and after",
+                        (int)w.stretches);
   } else if (w.clock > STALLED) {
     x->verdict = UNUSABLE;
     (void)PetscSNPrintf(text, size, "it stalls: one reading lasts for %.2g e-folds of volume (one standard deviation)",

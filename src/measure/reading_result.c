@@ -31,6 +31,8 @@ static PetscErrorCode result_allocate(struct ebb_engine *e)
   PetscCall(PetscMalloc1(PetscMax(x->levels, 1), &x->level));
   PetscCall(PetscCalloc1(n, &x->status));
   PetscCall(PetscCalloc1(n, &x->refused));
+  PetscCall(PetscMalloc1(x->bins, &x->system_dwell));
+  memcpy(x->system_dwell, e->action, (size_t)x->bins * sizeof(double));
   memcpy(x->system_centre, e->bins->centre, (size_t)x->bins * sizeof(double));
   memcpy(x->level, e->settings.quantile, (size_t)x->levels * sizeof(double));
   memcpy(x->centre, e->windows->centre, (size_t)n * sizeof(double));
@@ -43,7 +45,7 @@ PetscErrorCode ebb_engine_result_clear(struct ebb_reading_result *x)
                            &x->mean,         &x->mean_error,  &x->spread,       &x->spread_error,   &x->purity,
                            &x->purity_model, &x->leak,        &x->window_error, &x->clock_error,    &x->curve,
                            &x->intervals,    &x->probability, &x->quantile,     &x->quantile_error, &x->system_centre,
-                           &x->level};
+                           &x->level,       &x->system_dwell};
 
   PetscFunctionBegin;
   for (size_t i = 0; i < sizeof line / sizeof line[0]; i++) PetscCall(PetscFree(*line[i]));

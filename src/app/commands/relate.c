@@ -132,6 +132,7 @@ static PetscErrorCode relate(const struct ebb_invocation *invocation, int *code)
   struct ebb_relation_two_times two_times = {0};
   struct ebb_store *store = NULL;
   char path[2 * EBB_PATH_MAX];
+  bool kept = true;
   PetscErrorCode error;
   PetscMPIInt rank;
 
@@ -144,12 +145,18 @@ static PetscErrorCode relate(const struct ebb_invocation *invocation, int *code)
   if (!error && !*code) error = ebb_relation_two_times(&r, invocation, &two_times, code);
   if (!error && !*code) error = put_root(store, &r, invocation);
   if (!error && !*code && relational) error = ebb_relation_put(store, &r, relational);
+  if (!error && !*code && relational) error = ebb_relation_put_comparison(store, &r, relational);
+  if (!error && !*code) error = ebb_relation_put_bounds(store, &r, &kept);
   if (!error && !*code) error = ebb_relation_two_times_put(store, &r, &two_times);
   if (!error && !*code) error = ebb_result_stamp(store, "finished");
   if (!error && !*code) {
     error = ebb_store_commit(&store, true);
     if (!error) {
       *code = relational ? judge(&r, relational, rank == 0) : EBB_EXIT_OK;
+      if (!kept) {
+        *code = EBB_EXIT_LIMIT;
+        if (rank == 0) fprintf(stderr, "ebbturn: error: an inequality that every state obeys is violated; see /bounds\n");
+      }
       if (rank == 0 && relational) ebb_relation_print(&r, relational);
       if (rank == 0) ebb_relation_two_times_print(&r, &two_times);
       if (rank == 0) printf("result           '%s'\n", path);
