@@ -4,6 +4,7 @@
 #ifndef EBBTURN_INPUT_H
 #define EBBTURN_INPUT_H
 
+#include "ebbturn/operators.h"
 #include "ebbturn/problems.h"
 #include "ebbturn/readings.h"
 #include "ebbturn/schema.h"
@@ -31,6 +32,9 @@ bool ebb_input_readings(const char *text, size_t length, const struct ebb_readin
 
 /* Choice index of a setting, catalogues of other layers included; NULL past the end. */
 const char *ebb_input_choice(const struct ebb_setting *setting, size_t index);
+
+/* Bits of enum ebb_place that hold for a prescription. */
+unsigned ebb_input_places(const struct ebb_prescription *prescription);
 
 /* Version of the YAML library. */
 const char *ebb_input_library(void);

@@ -81,6 +81,7 @@ struct ebb_source {
   void *data;
   PetscInt batch;       /* samples that are best asked for at once; 0 = any */
   double edge_ratio;    /* of the windows before the lattice edge; 0 = EBB_EDGE_RATIO */
+  double field_momentum; /* mean momentum of a further field, for the effective bounce */
   double bounded_scale; /* > 0: arctan(|v|/bounded_scale) is wanted, and EBB_SUM_SLOPE is the slope of its mean */
 };
 

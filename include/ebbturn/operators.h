@@ -8,11 +8,14 @@
 #include <stdbool.h>
 #include <stddef.h>
 
-/* Every flat operator with a scalar clock has the form (v on the lattice epsilon + 4Z, Theta in units of A0 = 3 pi G)
+/* Every flat operator with a scalar clock has the form (v on the lattice epsilon + 4Z, Theta in units of A0 = 3 pi G;
+ * of (4 pi G/3) (1 + x)^2 in the schemes FIXED and REFINED)
  *
  *     (Theta psi)(v) = B(v)^{-1/2} [ C(v) (x(v) - x(v+4)) + C(v-4) (x(v) - x(v-4)) ],   x = psi/sqrt(B)
  *
  * with a measure B and a hop weight C: a positive quadratic form sum_v C(v) |x(v+4) - x(v)|^2. */
+enum ebb_scheme { EBB_SCHEME_VOLUME, EBB_SCHEME_FIXED, EBB_SCHEME_REFINED };
+
 struct ebb_prescription {
   const char *name;
   const char *title;
@@ -29,12 +32,19 @@ struct ebb_prescription {
   /* Link weight below the first site of a half lattice that stays in the first diagonal element although the hop leaves
    * the lattice; 0 where the hop vanishes or, for aps at sector 4, where v = 0 is eliminated (even sector). */
   double (*edge)(double sector);
-  /* q(v) = V/([1/V] V1^2), the weight of terms that go like V^2 beside Theta: cosmological constant, curvature. */
+  /* q(v) = V/([1/V] V1^2), the weight of terms that go like V^2 beside Theta: cosmological constant, curvature. NULL:
+   * the square of the volume itself, in units of rows.volume_unit. */
   double (*square)(double v);
   double (*curvature_weight)(double v); /* factor of the curvature term at small v; NULL: 1 */
-  /* Large-v expansions in 1/v: B(v) = (1/v) sum_j b[j] v^-j,  C(v) = v sum_j c[j] v^-j, j = 0..terms-1. */
+  /* Holonomies of length mu_bar = mu0 (|p|/p0)^-x: the lattice label is w ~ |p|^{1+x}, stored where v is, and V =
+   * rows.volume_unit w^rows.volume_power. FIXED: x = 0; REFINED: x is a setting. */
+  enum ebb_scheme scheme;
+  /* Large-v expansions: B(v) = v^{-1-tilt} sum_j b[j] v^-j,  C(v) = v^{1-tilt} sum_j c[j] v^-j, j = 0..terms-1, b[0] =
+   * 1, c[0] = 1/4. Waves are psi ~ v^{-1/2 +- ik}, their eigenvalue 4 (k^2 + tilt^2/4). */
+  double tilt;
   void (*measure_series)(size_t terms, double b[]);
   void (*hop_series)(size_t terms, double c[]);
+  void (*square_series)(size_t terms, double q[]); /* q(v) = v^2 sum_j q[j] v^-j; NULL: q goes like another power */
 };
 
 size_t ebb_prescriptions(void);
@@ -44,7 +54,7 @@ const struct ebb_prescription *ebb_prescription_find(const char *name); /* NULL 
 /* True where the sector is a half lattice v = epsilon + 4n, n >= 0; false: epsilon + 4Z, both orientations coupled. */
 bool ebb_prescription_half(const struct ebb_prescription *p, double sector);
 
-/* Matrix elements in units of A0 on a half lattice of the given sector or (half = false) on epsilon + 4Z.
+/* Matrix elements in these units on a half lattice of the given sector or (half = false) on epsilon + 4Z.
  * v: a lattice value. diagonal = theta(v, v), offdiagonal = theta(v, v + 4). */
 double ebb_prescription_diagonal(const struct ebb_prescription *p, bool half, double sector, double v);
 double ebb_prescription_offdiagonal(const struct ebb_prescription *p, double v);

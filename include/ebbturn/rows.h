@@ -11,7 +11,12 @@
 
 #include <stdbool.h>
 
-enum ebb_curvature { EBB_CURVATURE_NONE, EBB_CURVATURE_CLOSED, EBB_CURVATURE_OPEN };
+enum ebb_curvature {
+  EBB_CURVATURE_NONE,
+  EBB_CURVATURE_CLOSED,
+  EBB_CURVATURE_OPEN,
+  EBB_CURVATURE_CLOSED_CONNECTION /* holonomies of the connection: hops of 2 and 4, a five-point operator */
+};
 
 struct ebb_rows {
   const struct ebb_prescription *prescription;
@@ -22,16 +27,21 @@ struct ebb_rows {
   enum ebb_curvature curvature;
   double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
   bool field;   /* a further field stands beside the volume */
+  /* Schemes FIXED and REFINED of the prescription: mu_bar = mu0^{1-2x} lambda^{2x} |p|^{-x}, x = 0 where FIXED. */
+  double fixed_scale; /* mu0 */
+  double refinement;  /* x in [0, 1/2] */
   /* filled by ebb_rows_make */
   double scale;                     /* the operator is scale times measure, hop, edge and potential */
   double volume_unit, volume_power; /* physical volume V = volume_unit |v|^volume_power */
   double kappa, gap;                /* flat, Lambda = 0, scalar clock: omega^2 = kappa^2 (k^2 + gap) */
   bool half;                        /* v = sector + 4n, n >= 0; false: sector + 4Z */
   double d1;                        /* D(v) = lambda/a = d1 |v|^{-1/3}; 0 where flat */
+  double weight_unit; /* weight = weight_unit times the clock's; 1 but for FIXED and REFINED, q = V^2 in other units */
 };
 
-/* Completes rows whose first seven members are set. Sizes of the cell: V = 2 pi^2 a^3 (closed, the whole three-sphere),
- * V = a^3 (open, a cell of unit volume in the unit hyperbolic metric). */
+/* Completes rows whose members before are set (fixed_scale and refinement only where they count). Sizes of the cell: V
+ * = 2 pi^2 a^3 (closed, the whole three-sphere), V = a^3 (open, a cell of unit volume in the unit hyperbolic metric).
+ */
 void ebb_rows_make(struct ebb_rows *rows);
 /* The flat model with a scalar clock of any prescription, grids included, in units of gamma = lambda = G = 1. */
 struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, double sector);
@@ -59,10 +69,12 @@ double ebb_rows_offdiagonal(const struct ebb_rows *rows, double v);
  * is v^growth (sin^2 b - s), and the time to infinite volume is finite, so that a boundary condition is missing there,
  * where s in (0, 1) and growth > 1, or where s = 0, the curvature is open and growth > 4/3. */
 enum ebb_nature {
-  EBB_NATURE_DISCRETE,    /* essentially self-adjoint, bounded below, discrete */
-  EBB_NATURE_CONTINUOUS,  /* essentially self-adjoint, with continuous spectrum */
-  EBB_NATURE_FAMILY,      /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
-  EBB_NATURE_OVERCRITICAL /* Lambda >= Lambda_c: no positive spectrum */
+  EBB_NATURE_DISCRETE,     /* essentially self-adjoint, bounded below, discrete */
+  EBB_NATURE_CONTINUOUS,   /* essentially self-adjoint, with continuous spectrum */
+  EBB_NATURE_FAMILY,       /* limit circle at infinity: a family of extensions, each discrete, unbounded both ways */
+  EBB_NATURE_OVERCRITICAL, /* Lambda >= Lambda_c: no positive spectrum */
+  EBB_NATURE_INVERTED      /* Lambda > 0 whose term outgrows the operator (FIXED, REFINED with x < 1/2): essentially
+                              self-adjoint, discrete, bounded above; a large universe is not classical */
 };
 /* The flat model with a scalar clock and no cosmological constant: a continuum of generalised eigenfunctions. */
 bool ebb_rows_is_flat(const struct ebb_rows *rows);

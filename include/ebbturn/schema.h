@@ -41,6 +41,9 @@ enum ebb_place {
   EBB_FOR_RANGE = 4,       /* commands that evolve over a clock range */
   EBB_TOP_ONLY = 8,        /* of `state`: not inside a component */
   EBB_COMPONENT_ONLY = 16, /* of `state`: only inside a component */
+  EBB_ON_FIXED = 32,       /* prescriptions with a holonomy length mu0 */
+  EBB_ON_REFINED = 64,     /* prescriptions with a refinement exponent */
+  EBB_ON_ANY = EBB_ON_VOLUME | EBB_ON_GRID | EBB_ON_FIXED | EBB_ON_REFINED
 };
 
 enum ebb_catalogue { EBB_CATALOGUE_NONE, EBB_CATALOGUE_PRESCRIPTIONS };

@@ -11,7 +11,7 @@
 #include <stddef.h>
 #include <stdio.h>
 
-enum { EBB_NAME_MAX = 64, EBB_PATH_MAX = 1024, EBB_TITLE_MAX = 256, EBB_LEVELS_MAX = 32, EBB_COMPONENTS_MAX = 16 };
+enum { EBB_NAME_MAX = 64, EBB_PATH_MAX = 1024, EBB_TITLE_MAX = 256, EBB_LEVELS_MAX = 256, EBB_COMPONENTS_MAX = 16 };
 
 /* Bits of output.keep. */
 enum ebb_keep { EBB_KEEP_MOMENTS = 1, EBB_KEEP_QUANTILES = 2, EBB_KEEP_PROBABILITY = 4, EBB_KEEP_STATE = 8 };
@@ -22,7 +22,10 @@ struct ebb_gravity_settings {
   double polymer_scale; /* always set after ebb_settings_resolve; NAN before it when not given */
   double area_gap;      /* NAN when not given; at most one of polymer_scale and area_gap may be given */
   double newton;
-  double sector; /* epsilon in (0, 4] */
+  double fixed_scale;         /* mu0: prescriptions mu0 and refined; NAN elsewhere */
+  double refinement_exponent; /* x in [0, 1/2]: prescription refined; NAN elsewhere */
+  double reference_p;         /* p0, another way to say polymer_scale = mu0 sqrt(p0); NAN when not given */
+  double sector;              /* epsilon in (0, 4] */
   char curvature[EBB_NAME_MAX];
   double cosmological_constant;               /* after ebb_settings_resolve also where given over critical */
   double cosmological_constant_over_critical; /* NAN when not given; at most one of the two may be given */
@@ -74,12 +77,15 @@ struct ebb_lattice_settings {
 struct ebb_numerics_settings {
   char propagator[EBB_NAME_MAX]; /* auto | modes | eigenpairs | chebyshev | krylov */
   double tolerance;
+  char eigensolver[EBB_NAME_MAX]; /* auto | bisection | slicing */
 };
 
 struct ebb_spectrum_settings {
   int count;                       /* 0 = not given */
   double interval[EBB_LEVELS_MAX]; /* two of them */
   size_t ends;                     /* 0 = not given */
+  double k[EBB_LEVELS_MAX];        /* continuous spectra: omega^2 = kappa^2 (k^2 + gap) */
+  size_t ks;                       /* 0 = not given */
 };
 
 struct ebb_output_settings {

@@ -17,6 +17,7 @@ struct ebb_profile_input {
   const struct ebb_state_settings *settings;
   const struct ebb_constants *constants;
   double k0, sigma_k; /* centre and standard deviation of |c|^2 in k */
+  double kappa;       /* of the model: momentum = kappa k */
   double shift;       /* omega^2 = kappa^2 k^2 - shift: the square of a further field's momentum */
   double v0, at;      /* from_effective slides its point to large volume */
   const char *branch;
@@ -81,8 +82,11 @@ struct ebb_state_request {
   const struct ebb_constants *constants;
   const struct ebb_file_state *file; /* [components], or [1] for a plain profile; NULL where no profile is `file` */
   MPI_Comm comm;
+  double kappa; /* of the model; 0: constants->kappa */
   double shift; /* omega^2 = kappa^2 k^2 - shift; modes below drop out */
 };
+
+double ebb_state_kappa(const struct ebb_state_request *request);
 
 /* How a state is resolved: the nodes in k and the lattice that the clock range needs. */
 struct ebb_plan {

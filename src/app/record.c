@@ -177,11 +177,12 @@ static PetscErrorCode put_effective(struct ebb_store *store, const struct ebb_ef
   PetscCall(ebb_result_line(store, "/effective/v", e->m, e->v, "1", "effective trajectory, |v|", clock));
   PetscCall(ebb_result_line(store, "/effective/v_error", e->m, e->v_error, "1", "absolute error of the effective |v|",
                             clock));
-  PetscCall(ebb_result_line(store, "/effective/b", e->m, e->b, "1", "effective trajectory, b in (0, pi)", clock));
+  PetscCall(ebb_result_line(store, "/effective/b", e->m, e->b, "1",
+                            "effective trajectory, b within its period from 0 (continuum: of either sign)", clock));
   PetscCall(
       ebb_result_line(store, "/effective/b_error", e->m, e->b_error, "1", "absolute error of the effective b", clock));
-  PetscCall(
-      ebb_result_line(store, "/effective/density", e->m, e->density, "1/G^2", "effective trajectory, density", clock));
+  PetscCall(ebb_result_line(store, "/effective/density", e->m, e->density, "1/G^2",
+                            "effective trajectory, energy density of the clock and of a scalar beside it", clock));
   PetscCall(ebb_result_line(store, "/effective/density_error", e->m, e->density_error, "1/G^2",
                             "absolute error of the effective density", clock));
   PetscFunctionReturn(0);

@@ -2,6 +2,7 @@
 #include "result.h"
 
 #include <gsl/gsl_version.h>
+#include <math.h>
 #include <slepcsys.h>
 #include <stdio.h>
 #include <stdlib.h>
@@ -99,6 +100,12 @@ PetscErrorCode ebb_result_number(struct ebb_store *store, const char *path, doub
   PetscFunctionReturn(0);
 }
 
+static double volume_of(const struct ebb_lattice *l, const struct ebb_constants *constants, double v)
+{
+  if (l->prescription->scheme == EBB_SCHEME_VOLUME) return constants->volume_unit * v;
+  return l->rows.volume_unit * pow(v, l->rows.volume_power);
+}
+
 PetscErrorCode ebb_result_lattice(struct ebb_store *store, const struct ebb_lattice *l,
                                   const struct ebb_constants *constants)
 {
@@ -106,7 +113,9 @@ PetscErrorCode ebb_result_lattice(struct ebb_store *store, const struct ebb_latt
   const bool grid = l->prescription->grid;
   static const char *const path[] = {"/lattice/v", "/lattice/volume", "/lattice/weight"};
   const char *const units[] = {"1", "length^3", "1"};
-  const char *const names[] = {"volume label v of a site", "physical volume 2 pi gamma lambda G |v|",
+  const char *const names[] = {"volume label v of a site",
+                               l->prescription->scheme == EBB_SCHEME_VOLUME ? "physical volume 2 pi gamma lambda G |v|"
+                                                                            : "physical volume, a power of the label",
                                grid ? "cell weight dx, x = ln v: probability/v times weight sums to 1"
                                     : "cell weight: probability/v times weight sums to 1"};
   double *values;
@@ -123,7 +132,7 @@ PetscErrorCode ebb_result_lattice(struct ebb_store *store, const struct ebb_latt
 
     for (hsize_t i = 0; i < count; i++) {
       const double v = ebb_lattice_v(l, l->begin + (PetscInt)i);
-      values[i] = d == 0 ? v : d == 1 ? constants->volume_unit * (v < 0.0 ? -v : v) : ebb_lattice_weight(l, l->begin);
+      values[i] = d == 0 ? v : d == 1 ? volume_of(l, constants, fabs(v)) : ebb_lattice_weight(l, l->begin);
     }
     PetscCall(ebb_store_define(store, &set));
     PetscCall(ebb_store_write(store, path[d], &start, &count, values));

@@ -182,8 +182,12 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
     if (!*code) *code = EBB_EXIT_USAGE;
     PetscFunctionReturn(0);
   }
-  request =
-      (struct ebb_state_request){.settings = settings, .constants = &run->constants, .file = run->file, .comm = comm};
+  request = (struct ebb_state_request){.settings = settings,
+                                       .constants = &run->constants,
+                                       .file = run->file,
+                                       .comm = comm,
+                                       .kappa = run->rows.kappa,
+                                       .shift = -run->rows.kappa * run->rows.kappa * run->rows.gap};
   if (p->grid) {
     const struct ebb_lattice_settings *l = &settings->lattice;
     PetscCall(ebb_lattice_make_grid(p, l->lnv_min, l->lnv_max, l->points, comm, &run->lattice));

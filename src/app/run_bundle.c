@@ -35,7 +35,9 @@ static PetscErrorCode make(void *context, double p, struct ebb_packet **packet)
       maker->check && run->check_lattice.rows.clock ? &run->check_lattice : &run->lattice;
 
   PetscFunctionBegin;
-  maker->request.shift = run->rows.clock->density_power == 2.0 ? p * p : 0.0; /* a second scalar beside the scalar */
+  maker->request.shift = run->rows.clock->density_power == 2.0
+                             ? p * p - run->rows.kappa * run->rows.kappa * run->rows.gap
+                             : 0.0; /* a second scalar beside the scalar */
   maker->problem[0] = '\0';
   if (run->method == EBB_METHOD_EIGENPAIRS)
     PetscCall(ebb_packet_create_eigenpairs(&maker->request, lattice, packet));
@@ -80,6 +82,7 @@ void ebb_run_source(const struct ebb_run *run, bool check, struct ebb_source *so
     ebb_source_bundle(source, bundle, lattice, &run->constants, run->comm);
   else
     ebb_source_packet(source, check ? run->check : run->packet, lattice, &run->constants, run->comm);
+  if (run->rows.field) source->field_momentum = run->settings->matter.momentum;
   if (!run->lattice.prescription->grid && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY)
     source->bounded_scale = pow(ebb_run_momentum(run) / sqrt(run->rows.scale), 2.0 / run->rows.clock->growth);
 }

@@ -36,7 +36,8 @@ void ebb_run_extension(const struct ebb_run *run, struct ebb_spectrum_request *l
     levels->extension = EBB_EXTENSION_TAU;
     levels->angle = g->extension_tau;
   }
-  levels->wall = ebb_rows_nature(&run->rows) == EBB_NATURE_CONTINUOUS;
+  levels->wall =
+      ebb_rows_nature(&run->rows) == EBB_NATURE_CONTINUOUS || ebb_rows_nature(&run->rows) == EBB_NATURE_OVERCRITICAL;
 }
 
 /* The share of <v^2> near the wall, the larger one of both ends of the clock range. */
@@ -67,7 +68,11 @@ static PetscErrorCode place_wall(struct ebb_run *run, const struct ebb_state_req
     PetscCall(ebb_packet_destroy(&run->packet));
     PetscCall(
         ebb_packet_create_levels(request, levels, run->problem, sizeof run->problem, &run->lattice, &run->packet));
-    if (run->problem[0]) break;
+    if (run->problem[0]) { /* a small lattice does not hold high momenta */
+      if (2 * levels->sites > WALL_MOST) break;
+      run->problem[0] = '\0';
+      continue;
+    }
     PetscCall(wall_share(run, &share));
     if (share < TAIL_SHARE * run->settings->numerics.tolerance) break;
     if (2 * levels->sites > WALL_MOST) {

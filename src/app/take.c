@@ -72,19 +72,20 @@ PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
   const struct ebb_samples samples = {
       run->m,   run->phi,  r->moment[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN],
       r->slope, r->levels, r->levels ? r->quantile : NULL};
+  struct ebb_rows rows = run->rows;
   double phi0, v0, sign;
 
   PetscFunctionBegin;
   PetscCall(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget,
                             ebb_run_mean_exists(run), &r->bounce));
-  r->has_law =
-      !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) && !run->bundle;
+  r->has_law = !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) &&
+               run->rows.volume_power == 1.0 && !run->bundle;
   if (r->has_law)
     PetscCall(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
   phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;
-  v0 = r->moment[EBB_MOMENT_V_MEAN][0];
+  v0 = family && r->levels ? r->quantile[r->levels / 2] : r->moment[EBB_MOMENT_V_MEAN][0];
   sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
-  PetscCall(
-      ebb_effective_make(&run->constants, p, ebb_run_momentum(run), phi0, v0, sign, run->m, run->phi, &r->effective));
+  if (rows.field) rows.p_phi = run->settings->matter.momentum;
+  PetscCall(ebb_effective_make(&rows, ebb_run_momentum(run), phi0, v0, sign, run->m, run->phi, &r->effective));
   PetscFunctionReturn(0);
 }

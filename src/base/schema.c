@@ -50,6 +50,17 @@ static const struct ebb_setting rows[] = {
     {.key = "gravity.newton", .letter = "G", .unit = "length^2", REAL(gravity.newton), .range = ABOVE(0),
      .fallback = "1",
      .sentence = "Newton's constant; hbar = c = 1, so sqrt(G) is the Planck length in the model's unit"},
+    {.key = "gravity.fixed_scale", .letter = "mu0", .unit = "1", REAL(gravity.fixed_scale), .range = ABOVE(0),
+     .fallback = "2.598076211353316", .places = EBB_ON_FIXED,
+     .sentence = "length parameter of holonomies that does not know the volume: of prescription mu0, and of refined at p0",
+     .source = "3 sqrt(3)/2; Ashtekar, Pawlowski, Singh, Phys. Rev. D 73, 124038 (2006), gr-qc/0604013 (from memory)"},
+    {.key = "gravity.refinement_exponent", .letter = "x", .unit = "1", REAL(gravity.refinement_exponent),
+     .range = {0, 0.5, false, false}, .fallback = "0.5", .places = EBB_ON_REFINED,
+     .sentence = "holonomy length mu_bar = mu0 (|p|/p0)^-x: 0 is a fixed lattice, 1/2 the improved dynamics",
+     .source = "Bojowald, Gen. Rel. Grav. 38, 1771 (2006), gr-qc/0609034 (from memory)"},
+    {.key = "gravity.reference_p", .letter = "p0", .unit = "length^2", REAL(gravity.reference_p), .range = ABOVE(0),
+     .places = EBB_ON_REFINED, .input_only = true,
+     .sentence = "|p| at which the holonomy length is mu0, in place of polymer_scale = mu0 sqrt(p0)"},
     {.key = "gravity.sector", .letter = "epsilon", .unit = "1", REAL(gravity.sector), .range = {0, 4, true, false},
      .fallback = "4", .hint = "the lattice through v = 0 is sector 4",
      .sentence = "superselection sector: lattice values of v are epsilon + 4n",
@@ -188,6 +199,9 @@ static const struct ebb_setting rows[] = {
      .sentence = "how states evolve; auto chooses and says why"},
     {.key = "numerics.tolerance", .unit = "1", REAL(numerics.tolerance), .range = {1e-14, 1e-2, false, false},
      .fallback = "1e-10", .sentence = "target relative error of the moments"},
+    {.key = "numerics.eigensolver", NAME(numerics.eigensolver), .fallback = "auto",
+     .choices = CHOICES("auto", "bisection"),
+     .sentence = "how a list of eigenvalues is found"},
 
     /* spectrum */
     {.key = "spectrum.count", INTEGER(spectrum.count), .range = {1, 100000, false, false},
@@ -195,6 +209,11 @@ static const struct ebb_setting rows[] = {
     {.key = "spectrum.interval", .unit = "1", .type = EBB_TYPE_REALS,
      .offset = offsetof(struct ebb_settings, spectrum.interval), .size = offsetof(struct ebb_settings, spectrum.ends),
      .range = ANY, .sentence = "every eigenvalue in [a, b], for command 'spectrum'; or give count"},
+    {.key = "spectrum.k", .letter = "k", .unit = "1", .type = EBB_TYPE_REALS,
+     .offset = offsetof(struct ebb_settings, spectrum.k), .size = offsetof(struct ebb_settings, spectrum.ks),
+     .range = {0, 1e4, true, false}, .places = EBB_ON_VOLUME,
+     .sentence = "wave numbers at which generalised eigenfunctions of a continuous spectrum are wanted, for command "
+                 "'spectrum': psi ~ v^(-1/2 +- ik), eigenvalue kappa^2 (k^2 + gap)"},
 
     /* output */
     {.key = "output.file", .type = EBB_TYPE_PATH, .offset = offsetof(struct ebb_settings, output.file),

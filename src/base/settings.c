@@ -25,6 +25,8 @@ void ebb_settings_resolve(struct ebb_settings *settings)
 {
   struct ebb_gravity_settings *gravity = &settings->gravity;
 
+  if (isnan(gravity->polymer_scale) && !isnan(gravity->reference_p))
+    gravity->polymer_scale = gravity->fixed_scale * sqrt(gravity->reference_p);
   if (isnan(gravity->polymer_scale))
     gravity->polymer_scale =
         sqrt(isnan(gravity->area_gap) ? ebb_default_area_gap(gravity->immirzi, gravity->newton) : gravity->area_gap);

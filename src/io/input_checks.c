@@ -31,11 +31,18 @@ static void check_gravity(const struct ebb_reader *reader)
   const struct ebb_gravity_settings *gravity = &settings->gravity;
   const struct ebb_given *gap = ebb_reader_given(reader, "gravity.area_gap");
   const struct ebb_given *scale = ebb_reader_given(reader, "gravity.polymer_scale");
+  const struct ebb_given *reference = ebb_reader_given(reader, "gravity.reference_p");
   struct ebb_constants constants;
 
   if (gap->node && scale->node) {
     ebb_reader_complain(reader, ebb_reader_later(gap, scale),
                         "gravity.area_gap is the square of gravity.polymer_scale; give at most one of them");
+    return;
+  }
+  if (reference->node && (gap->node || scale->node)) {
+    ebb_reader_complain(reader, ebb_reader_later(reference, gap->node ? gap : scale),
+                        "gravity.reference_p says the same as gravity.polymer_scale = fixed_scale sqrt(reference_p); "
+                        "give at most one of them");
     return;
   }
   ebb_settings_resolve(settings);
@@ -61,24 +68,35 @@ static void check_clock(const struct ebb_reader *reader)
                         ebb_setting_find("clock.to")->unit, clock->from, ebb_setting_find("clock.from")->unit);
 }
 
+unsigned ebb_input_places(const struct ebb_prescription *p)
+{
+  if (p->grid) return EBB_ON_GRID;
+  if (p->scheme == EBB_SCHEME_FIXED) return EBB_ON_VOLUME | EBB_ON_FIXED;
+  return p->scheme == EBB_SCHEME_REFINED ? EBB_ON_VOLUME | EBB_ON_FIXED | EBB_ON_REFINED : EBB_ON_VOLUME;
+}
+
 /* Rows that belong to the other kind of lattice, or are needed here. */
 static void check_places(const struct ebb_reader *reader)
 {
-  const unsigned here = reader->prescription ? (reader->prescription->grid ? EBB_ON_GRID : EBB_ON_VOLUME) : 0;
+  const unsigned here = reader->prescription ? ebb_input_places(reader->prescription) : 0;
   const unsigned needed = here | (reader->need & EBB_NEED_CLOCK_RANGE ? EBB_FOR_RANGE : 0);
 
   for (size_t i = 0; i < reader->rows; i++) {
     const struct ebb_setting *setting = ebb_setting_at(i);
     const struct ebb_given *given = &reader->given[i];
-    const unsigned places = setting->places & (EBB_ON_GRID | EBB_ON_VOLUME);
+    const unsigned places = setting->places & EBB_ON_ANY;
     char section[EBB_NAME_MAX] = "";
 
     if (places && here && !(places & here)) {
-      if (given->node)
+      if (given->node && places & (EBB_ON_GRID | EBB_ON_VOLUME))
         ebb_reader_complain(reader, given->origin, "%s does not belong to prescription '%s', whose lattice is %s",
                             setting->key, reader->prescription->name,
                             here == EBB_ON_GRID ? "a grid in ln v: lnv_min, lnv_max, points"
                                                 : "one of volumes: volume_max or points");
+      else if (given->node)
+        ebb_reader_complain(reader, given->origin, "%s does not belong to prescription '%s'; it is for %s",
+                            setting->key, reader->prescription->name,
+                            places & EBB_ON_FIXED ? "'mu0' and 'refined'" : "'refined'");
       ebb_setting_unset(setting, reader->settings, &reader->settings->state);
     }
     if (!given->node && (setting->places_required & needed)) {

@@ -8,8 +8,8 @@
 
 #include <string.h>
 
-/* The first setting that goes beyond the flat model without cosmological constant and with a scalar clock; NULL: none.
- */
+/* The first setting that goes beyond the flat model without cosmological constant, with a scalar clock and a lattice of
+ * volumes; NULL: none. */
 static const struct ebb_given *beyond(const struct ebb_reader *reader)
 {
   static const char *const lambda = "gravity.cosmological_constant";
@@ -20,6 +20,7 @@ static const struct ebb_given *beyond(const struct ebb_reader *reader)
     return ebb_reader_given(reader,
                             ebb_reader_taken(reader, lambda) ? lambda : "gravity.cosmological_constant_over_critical");
   if (strcmp(s->clock.kind, "scalar") != 0) return ebb_reader_given(reader, "clock.kind");
+  if (reader->prescription->scheme != EBB_SCHEME_VOLUME) return ebb_reader_given(reader, "gravity.prescription");
   return NULL;
 }
 
@@ -51,6 +52,22 @@ static bool consistent(const struct ebb_reader *reader)
     ebb_reader_complain(reader, (lambda->node ? lambda : ratio)->origin,
                         "with the unimodular clock the cosmological constant is the clock's momentum; leave it out of "
                         "gravity");
+  else if (reader->prescription->scheme != EBB_SCHEME_VOLUME && strcmp(s->clock.kind, "scalar") != 0)
+    ebb_reader_complain(
+        reader, ebb_reader_given(reader, "clock.kind")->origin,
+        "prescription '%s' has a scalar clock only: the other clocks are known on a lattice of volumes; "
+        "take one of slqc, aps, mmo, smmo",
+        reader->prescription->name);
+  else if (reader->prescription->scheme != EBB_SCHEME_VOLUME && strcmp(s->gravity.curvature, "none") != 0)
+    ebb_reader_complain(
+        reader, ebb_reader_given(reader, "gravity.curvature")->origin,
+        "prescription '%s' is spatially flat: the curvature term is known on a lattice of volumes; take "
+        "one of slqc, aps, mmo, smmo",
+        reader->prescription->name);
+  else if (reader->prescription->scheme != EBB_SCHEME_VOLUME && ratio->node)
+    ebb_reader_complain(reader, ratio->origin,
+                        "prescription '%s' has no critical cosmological constant; give gravity.cosmological_constant",
+                        reader->prescription->name);
   else
     return true;
   return false;
@@ -107,7 +124,7 @@ static void complain_overcritical(const struct ebb_reader *reader, const struct 
 static void check_profile(const struct ebb_reader *reader, const struct ebb_rows *rows)
 {
   const struct ebb_state_settings *state = &reader->settings->state;
-  const bool flat = ebb_rows_is_flat(rows), scalar = !strcmp(rows->clock->kind, "scalar");
+  const bool flat = ebb_rows_is_flat(rows) && rows->volume_power == 1.0, scalar = !strcmp(rows->clock->kind, "scalar");
 
   for (size_t i = 0; i <= state->components; i++) {
     const char *profile = i < state->components ? state->component[i].profile : state->profile;
@@ -135,21 +152,48 @@ static void check_evolution(const struct ebb_reader *reader, const struct ebb_ro
   check_profile(reader, rows);
 }
 
+/* A continuous spectrum: wave numbers, and waves whose normalisation is known; always false, there is no list. */
+static bool check_waves(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const struct ebb_given *k = ebb_reader_given(reader, "spectrum.k");
+  const struct ebb_given *points = ebb_reader_given(reader, "lattice.points");
+  const struct ebb_given *other = ebb_reader_given(reader, "spectrum.count")->node
+                                      ? ebb_reader_given(reader, "spectrum.count")
+                                      : ebb_reader_given(reader, "spectrum.interval");
+  const bool plain = rows->s == 0.0 && rows->curvature == EBB_CURVATURE_NONE && !strcmp(rows->clock->kind, "scalar");
+
+  if (!plain)
+    ebb_reader_complain(reader, k->node ? k->origin : ebb_reader_section(reader, "gravity"),
+                        "this model has a continuous spectrum, and its generalised eigenfunctions are not available: "
+                        "they are with a scalar clock, no curvature and no cosmological constant; 'selfadjoint' "
+                        "examines it");
+  else if (other->node)
+    ebb_reader_complain(reader, other->origin,
+                        "this model has a continuous spectrum: no list of eigenvalues, but a generalised eigenfunction "
+                        "for every wave number; give spectrum.k: [0.5, 1, 2]");
+  else if (!k->node)
+    ebb_reader_complain(reader, ebb_reader_section(reader, "spectrum"),
+                        "spectrum.k is missing: this model has a continuous spectrum; say at which wave numbers, k: "
+                        "[0.5, 1, 2]");
+  else if (points->node)
+    ebb_reader_complain(reader, points->origin,
+                        "lattice.points asks for a wall, and with one there is no continuous spectrum; say by "
+                        "lattice.volume_max how far the eigenfunctions are wanted");
+  return false;
+}
+
 /* Why this operator has no list of eigenvalues; false where it has none. */
 static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_rows *rows)
 {
-  const struct ebb_origin origin = ebb_reader_section(reader, "gravity");
-
   switch (ebb_rows_nature(rows)) {
   case EBB_NATURE_DISCRETE:
     return true;
   case EBB_NATURE_FAMILY:
     return has_extension(reader, rows);
+  case EBB_NATURE_INVERTED:
+    return true;
   case EBB_NATURE_CONTINUOUS:
-    ebb_reader_complain(reader, origin,
-                        "this model has a continuous spectrum; 'spectrum' lists discrete ones in this version: a "
-                        "negative cosmological constant, a closed model, or an extension");
-    return false;
+    return check_waves(reader, rows);
   case EBB_NATURE_OVERCRITICAL:
     complain_overcritical(reader, rows);
     return false;
@@ -161,17 +205,31 @@ static void check_wanted(const struct ebb_reader *reader, const struct ebb_rows 
 {
   const struct ebb_given *count = ebb_reader_given(reader, "spectrum.count");
   const struct ebb_given *interval = ebb_reader_given(reader, "spectrum.interval");
+  const struct ebb_given *k = ebb_reader_given(reader, "spectrum.k");
+  const enum ebb_nature nature = ebb_rows_nature(rows);
+  const bool unbounded = nature == EBB_NATURE_FAMILY || nature == EBB_NATURE_INVERTED;
 
-  if (count->node && interval->node)
+  if (k->node)
+    ebb_reader_complain(reader, k->origin,
+                        "spectrum.k is for continuous spectra, and this model has a discrete one; give spectrum.%s",
+                        unbounded ? "interval" : "count or spectrum.interval");
+  else if (count->node && interval->node)
     ebb_reader_complain(reader, ebb_reader_later(count, interval),
                         "spectrum.count and spectrum.interval both say which eigenvalues; give one of them");
   else if (!count->node && !interval->node)
     ebb_reader_complain(reader, ebb_reader_section(reader, "spectrum"),
                         "spectrum.count is missing; say how many (count: 10) or where (interval: [a, b])");
-  else if (count->node && ebb_rows_nature(rows) == EBB_NATURE_FAMILY)
-    ebb_reader_complain(reader, count->origin,
-                        "spectrum.count: there is no lowest eigenvalue, the spectrum of every extension goes to minus "
-                        "infinity; give spectrum.interval");
+  else if (count->node && unbounded)
+    ebb_reader_complain(
+        reader, count->origin,
+        "spectrum.count: there is no lowest eigenvalue, the spectrum of %s goes to minus infinity; give "
+        "spectrum.interval",
+        nature == EBB_NATURE_FAMILY ? "every extension" : "this operator");
+  else if (count->node && !strcmp(reader->settings->numerics.eigensolver, "slicing"))
+    ebb_reader_complain(
+        reader, ebb_reader_given(reader, "numerics.eigensolver")->origin,
+        "numerics.eigensolver = 'slicing' finds every eigenvalue in an interval; give spectrum.interval "
+        "in place of spectrum.count");
   else if (interval->taken && reader->settings->spectrum.ends != 2)
     ebb_reader_complain(reader, interval->origin, "spectrum.interval has %zu entr%s, must be [a, b]",
                         reader->settings->spectrum.ends, reader->settings->spectrum.ends == 1 ? "y" : "ies");
@@ -184,6 +242,9 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
                                        "gravity.area_gap",
                                        "gravity.polymer_scale",
                                        "gravity.sector",
+                                       "gravity.fixed_scale",
+                                       "gravity.refinement_exponent",
+                                       "gravity.reference_p",
                                        "gravity.curvature",
                                        "clock.kind",
                                        "clock.ordering",

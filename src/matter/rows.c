@@ -4,18 +4,39 @@
 #include <math.h>
 #include <string.h>
 
+/* w = 3 |p|^{1+x}/(4 pi gamma G mu0 p0^x (1 + x)), V = |p|^{3/2} and, for psi ~ w^{-1/2 +- ik}, omega^2 = (16 pi G/3)
+ * (1 + x)^2 (k^2 + tilt^2/4): Ashtekar, Pawlowski, Singh, Phys. Rev. D 73, 124038 (2006), gr-qc/0604013 at x = 0 (from
+ * memory); derived here for x > 0. p_phi^2 = ... - V^2 Lambda/(4 pi G) as everywhere. */
+static void make_refined(struct ebb_rows *rows)
+{
+  const struct ebb_constants *c = &rows->constants;
+  const double x = rows->prescription->scheme == EBB_SCHEME_FIXED ? 0.0 : rows->refinement;
+  const double length = pow(rows->fixed_scale, 1.0 - 2.0 * x) * pow(c->polymer_scale, 2.0 * x); /* mu0 p0^x */
+
+  rows->scale = 4.0 / 3.0 * EBB_PI * c->newton * (1.0 + x) * (1.0 + x);
+  rows->volume_power = 1.5 / (1.0 + x);
+  rows->volume_unit = pow(4.0 / 3.0 * EBB_PI * c->immirzi * c->newton * length * (1.0 + x), rows->volume_power);
+  rows->kappa = 2.0 * sqrt(rows->scale);
+  rows->gap = 0.25 * rows->prescription->tilt * rows->prescription->tilt;
+  rows->weight_unit =
+      c->critical_lambda * rows->volume_unit * rows->volume_unit / (4.0 * EBB_PI * c->newton * rows->scale);
+}
+
 void ebb_rows_make(struct ebb_rows *rows)
 {
   const struct ebb_constants *c = &rows->constants;
-  const double cell = rows->curvature == EBB_CURVATURE_CLOSED ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
+  const bool closed = rows->curvature == EBB_CURVATURE_CLOSED || rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION;
+  const double cell = closed ? 2.0 * EBB_PI * EBB_PI : 1.0; /* V/a^3 */
 
   rows->scale = rows->clock->scale(c);
   rows->volume_unit = c->volume_unit;
   rows->volume_power = 1.0;
   rows->kappa = c->kappa;
   rows->gap = 0.0;
+  rows->weight_unit = 1.0;
   rows->half = rows->prescription->grid || ebb_prescription_half(rows->prescription, rows->sector);
   rows->d1 = rows->curvature == EBB_CURVATURE_NONE ? 0.0 : c->polymer_scale * cbrt(cell / c->volume_unit);
+  if (rows->prescription->scheme != EBB_SCHEME_VOLUME) make_refined(rows);
 }
 
 struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, double sector)
@@ -23,7 +44,9 @@ struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, doubl
   struct ebb_rows rows = {.prescription = prescription,
                           .clock = ebb_clock_select("scalar", ""),
                           .constants = ebb_constants_make(1.0, 1.0, 1.0),
-                          .sector = sector};
+                          .sector = sector,
+                          .fixed_scale = 1.0,
+                          .refinement = 0.5};
 
   ebb_rows_make(&rows);
   return rows;
@@ -44,6 +67,8 @@ struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings)
       .constants = ebb_constants_make(g->newton, g->immirzi, g->polymer_scale),
       .sector = g->sector,
       .curvature = curvature_find(g->curvature),
+      .fixed_scale = g->fixed_scale,
+      .refinement = g->refinement_exponent,
   };
 
   rows.field = settings->matter.kind[0] != '\0';
@@ -69,13 +94,20 @@ static double curvature(const struct ebb_rows *rows, double v)
   return p->curvature_weight ? value * p->curvature_weight(v) : value;
 }
 
+static double weight(const struct ebb_rows *rows, double v)
+{
+  const struct ebb_prescription *p = rows->prescription;
+
+  if (p->scheme == EBB_SCHEME_VOLUME) return rows->clock->weight(p, v);
+  return rows->weight_unit * (p->square ? p->square(v) : pow(fabs(v), 2.0 * rows->volume_power));
+}
+
 double ebb_rows_potential(const struct ebb_rows *rows, double v)
 {
   const struct ebb_clock *clock = rows->clock;
   double value = 0.0;
 
-  if (rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE)
-    value = clock->weight(rows->prescription, v) * (curvature(rows, v) - rows->s);
+  if (rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE) value = weight(rows, v) * (curvature(rows, v) - rows->s);
   if (rows->p_phi != 0.0 && clock->kinetic)
     value -= rows->p_phi * rows->p_phi * clock->kinetic(&rows->constants, v) / rows->scale;
   return value;
@@ -113,6 +145,7 @@ enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows)
   const double growth = rows->clock->growth;
 
   if (!(growth > 0.0)) return EBB_NATURE_CONTINUOUS; /* bounded */
+  if (rows->volume_power > 1.0 && rows->s != 0.0) return rows->s < 0.0 ? EBB_NATURE_DISCRETE : EBB_NATURE_INVERTED;
   if (rows->s >= 1.0) return EBB_NATURE_OVERCRITICAL;
   if (rows->s < 0.0) return EBB_NATURE_DISCRETE;
   if (rows->s > 0.0) return growth > 1.0 ? EBB_NATURE_FAMILY : EBB_NATURE_CONTINUOUS;
@@ -122,9 +155,21 @@ enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows)
   return EBB_NATURE_CONTINUOUS;
 }
 
+/* |w| by which exp(-depth) is reached where the potential outgrows the hops: at w/2 the decay per label is (1/2)
+ * arcsinh sqrt(|U| weight/w^2), and from there to w it only grows. */
+static double reach_refined(const struct ebb_rows *rows, double depth)
+{
+  double w = 8.0; /* widened by tenths */
+
+  while (0.25 * w * asinh(sqrt(fabs(ebb_rows_potential(rows, 0.5 * w))) / (0.5 * w)) < depth) w *= 1.1;
+  return w;
+}
+
 double ebb_rows_reach(const struct ebb_rows *rows, double depth)
 {
   double reach = INFINITY;
+
+  if (rows->volume_power > 1.0 && rows->s != 0.0) return reach_refined(rows, depth);
 
   if (rows->s < 0.0) reach = 2.0 * depth / asinh(sqrt(-rows->s));
   if (rows->curvature == EBB_CURVATURE_CLOSED)

@@ -1,6 +1,8 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/bounce.h"
 
+#include "ebbturn/symbol.h"
+
 #include <math.h>
 #include <string.h>
 
@@ -83,7 +85,7 @@ static PetscInt bracket_of(const struct ebb_samples *samples)
 static PetscErrorCode bracket_outside(struct ebb_source *source, const struct ebb_samples *samples, double *low,
                                       double *high, bool *found)
 {
-  const double kappa = source->constants->kappa;
+  const double kappa = source->lattice->rows.kappa;
   const double stride = (samples->phi[samples->m - 1] - samples->phi[0]) / OUTSIDE_STRIDES;
   const bool before = samples->slope[0] > 0.0;
   double phi = before ? samples->phi[0] : samples->phi[samples->m - 1];
@@ -224,6 +226,30 @@ static double edge_speed(const struct ebb_lattice *lattice)
   return 2.0 * rows->scale * pow(v, growth - 1.0);
 }
 
+/* The effective bounce of the mean momentum; its error is what the momentum's moves it by. */
+static void effective(const struct ebb_source *source, double p, double p_error, struct ebb_bounce *bounce)
+{
+  struct ebb_rows rows = source->lattice->rows;
+  const double unit = source->constants->newton * source->constants->newton;
+  struct ebb_symbol symbol;
+  struct ebb_symbol_turning here, moved;
+  double volume[2], density[2];
+
+  rows.constants = *source->constants;
+  rows.p_phi = source->field_momentum != 0.0 ? source->field_momentum : rows.p_phi;
+  ebb_rows_make(&rows);
+  symbol = ebb_symbol_make(&rows);
+  if (!ebb_symbol_bounce(&symbol, p, &here) || !ebb_symbol_bounce(&symbol, p + p_error, &moved)) return;
+  volume[0] = ebb_symbol_volume(&symbol, here.v);
+  volume[1] = ebb_symbol_volume(&symbol, moved.v);
+  density[0] = unit * ebb_symbol_density(&symbol, here.v, p);
+  density[1] = unit * ebb_symbol_density(&symbol, moved.v, p + p_error);
+  bounce->effective_volume =
+      (struct ebb_measured){volume[0], fabs(volume[1] - volume[0]) + 4.0 * PETSC_MACHINE_EPSILON * volume[0]};
+  bounce->effective_density =
+      (struct ebb_measured){density[0], fabs(density[1] - density[0]) + 4.0 * PETSC_MACHINE_EPSILON * density[0]};
+}
+
 /* Volume, density and mode at the bounce clock, with errors from the budget and the independent rule. */
 static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *check, const struct ebb_budget *budget,
                                 double clock, double v_limit, struct ebb_bounce *bounce, double *slope_error)
@@ -252,25 +278,26 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
 
     bounce->v = (struct ebb_measured){moment[turns], error[turns]};
   }
+  bounce->volume = (struct ebb_measured){moment[EBB_MOMENT_VOLUME_MEAN], error[EBB_MOMENT_VOLUME_MEAN]};
   bounce->density = (struct ebb_measured){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
   bounce->v_mode = (struct ebb_measured){
       sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};
   p = moment[EBB_MOMENT_MOMENTUM_MEAN];
-  bounce->effective_volume = (struct ebb_measured){
-      p * source->constants->volume_unit / sqrt(source->constants->theta_scale),
-      error[EBB_MOMENT_MOMENTUM_MEAN] * source->constants->volume_unit / sqrt(source->constants->theta_scale)};
+  effective(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce);
   PetscCall(ebb_sheet_clear(&sheet));
   PetscFunctionReturn(0);
 }
 
-static void derive(const struct ebb_constants *c, struct ebb_bounce *b)
+static void derive(const struct ebb_rows *rows, struct ebb_bounce *b)
 {
-  b->volume = (struct ebb_measured){c->volume_unit * b->v.value, c->volume_unit * b->v.error};
+  const double power = rows->volume_power, volume = rows->volume_unit * ebb_rows_volume(rows, b->v.value);
+
+  /* where V is no multiple of v its own mean stands in b->volume already; a median is one of either */
+  if (power == 1.0 || !strcmp(b->estimator, "median"))
+    b->volume = (struct ebb_measured){volume, power * volume * b->v.error / b->v.value};
   b->ratio.value = b->volume.value / b->effective_volume.value;
   b->ratio.error =
       b->ratio.value * (b->volume.error / b->volume.value + b->effective_volume.error / b->effective_volume.value);
-  b->effective_density.value = c->newton * c->newton * c->critical_density;
-  b->effective_density.error = 4.0 * PETSC_MACHINE_EPSILON * b->effective_density.value;
 }
 
 static void blank(struct ebb_bounce *bounce)
@@ -409,8 +436,9 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     PetscFunctionReturn(0);
   }
   /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
-  bounce->clock = (struct ebb_measured){root, (slope_error + bounce->v.error * source->constants->kappa) / curvature +
-                                                  4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
+  bounce->clock =
+      (struct ebb_measured){root, (slope_error + bounce->v.error * source->lattice->rows.kappa) / curvature +
+                                      4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
   PetscCall(
       refine_median(source, budget, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   if (!mean_exists) {
@@ -419,7 +447,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     bounce->clock = (struct ebb_measured){median_clock, SECTIONED * 3.0 * (high - low) + bounce->clock.error};
     bounce->v = bounce->v_median;
   }
-  derive(source->constants, bounce);
+  derive(&lattice->rows, bounce);
   PetscCall(judge(samples, budget, mean_exists, bounce));
   PetscFunctionReturn(0);
 }

@@ -231,7 +231,16 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
     const double variance = 4.0 * (p * p + dp * dp) * (common + edge0 + 2.0 * state);
     error[EBB_MOMENT_MOMENTUM_SPREAD] = dp * budget->quadrature[EBB_MOMENT_MOMENTUM_SPREAD] + root_error(variance, dp);
   }
-  if (lattice->rows.volume_power == 1.0) {
+  if (lattice->rows.volume_power != 1.0) { /* V = v^power: to first order of its spread, edges by the steeper weight */
+    const double power = lattice->rows.volume_power, mean = moment[EBB_MOMENT_VOLUME_MEAN];
+    const double tail = power * fmax(edge1 / v, edge2 / (v * v));
+
+    error[EBB_MOMENT_VOLUME_MEAN] =
+        mean * (budget->quadrature[EBB_MOMENT_VOLUME_MEAN] + power * (common + far / v) + tail);
+    error[EBB_MOMENT_VOLUME_SPREAD] = moment[EBB_MOMENT_VOLUME_SPREAD] * budget->quadrature[EBB_MOMENT_VOLUME_SPREAD] +
+                                      root_error(4.0 * mean * mean * power * (common + tail + 2.0 * state * v_max / v),
+                                                 moment[EBB_MOMENT_VOLUME_SPREAD]);
+  } else {
     error[EBB_MOMENT_VOLUME_MEAN] = c->volume_unit * error[EBB_MOMENT_V_MEAN];
     error[EBB_MOMENT_VOLUME_SPREAD] = c->volume_unit * error[EBB_MOMENT_V_SPREAD];
   }

@@ -1,73 +1,42 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/effective.h"
+#include "orbit.h"
 
 #include <gsl/gsl_errno.h>
-#include <gsl/gsl_odeiv2.h>
 #include <math.h>
 #include <string.h>
 
-static const double FINE = 1e-13, COARSE = 1e-11; /* relative tolerances of the two runs */
-enum { STEPS_MOST = 1000000 };
-
-/* State: ln v and b. */
-struct flow {
-  double kappa;
-  bool continuum;
-  double sign; /* continuum: direction of motion */
-};
-
-static int rhs(double phi, const double y[], double dy[], void *data)
+/* Integrates from the start outwards through the samples of either side; NAN beyond the ends of the orbit. */
+static int integrate(const struct ebb_symbol *symbol, double p, double tolerance, double clock0, const double start[2],
+                     PetscInt m, const double clock[], const PetscInt order[], double lnv[], double b[])
 {
-  const struct flow *f = data;
-
-  (void)phi;
-  if (f->continuum) {
-    dy[0] = f->sign * f->kappa;
-    dy[1] = -f->sign * f->kappa * y[1]; /* b = v_B/v */
-  } else {
-    dy[0] = f->kappa * cos(y[1]);
-    dy[1] = -f->kappa * sin(y[1]);
-  }
-  return GSL_SUCCESS;
-}
-
-/* Integrates from phi0 outwards through the samples of either side. */
-static int integrate(const struct flow *flow, double tolerance, double phi0, const double start[2], PetscInt m,
-                     const double phi[], const PetscInt order[], double lnv[], double b[])
-{
-  struct flow local = *flow;
-  gsl_odeiv2_system system = {rhs, NULL, 2, &local};
   int status = GSL_SUCCESS;
 
   for (int side = 1; side >= -1 && status == GSL_SUCCESS; side -= 2) {
-    const double step = side * 1e-3 / flow->kappa;
-    gsl_odeiv2_driver *driver =
-        gsl_odeiv2_driver_alloc_standard_new(&system, gsl_odeiv2_step_rk8pd, step, 0.0, tolerance, 1.0, 0.0);
-    double t = phi0, y[2] = {start[0], start[1]};
+    struct ebb_orbit orbit;
 
-    if (!driver) return GSL_ENOMEM;
-    (void)gsl_odeiv2_driver_set_nmax(driver, STEPS_MOST);
+    status = ebb_orbit_open(&orbit, symbol, p, clock0, 0.0, start, side, tolerance);
     for (PetscInt i = 0; i < m && status == GSL_SUCCESS; i++) {
       const PetscInt s = order[side > 0 ? i : m - 1 - i];
 
-      if (side > 0 ? phi[s] < phi0 : phi[s] >= phi0) continue;
-      if (phi[s] != t) status = gsl_odeiv2_driver_apply(driver, &t, phi[s], y);
-      lnv[s] = y[0];
-      b[s] = y[1];
+      if (side > 0 ? clock[s] < clock0 : clock[s] >= clock0) continue;
+      status = ebb_orbit_to(&orbit, clock[s] - clock0);
+      lnv[s] = orbit.ended ? NAN : orbit.y[0];
+      b[s] = orbit.ended ? NAN : orbit.y[1];
     }
-    gsl_odeiv2_driver_free(driver);
+    ebb_orbit_close(&orbit);
   }
   return status;
 }
 
-static PetscErrorCode ascending(PetscInt m, const double phi[], PetscInt order[])
+static PetscErrorCode ascending(PetscInt m, const double clock[], PetscInt order[])
 {
   PetscReal *key;
 
   PetscFunctionBegin;
   PetscCall(PetscMalloc1(m, &key));
   for (PetscInt s = 0; s < m; s++) {
-    key[s] = phi[s];
+    key[s] = clock[s];
     order[s] = s;
   }
   PetscCall(PetscSortRealWithArrayInt(m, key, order));
@@ -78,55 +47,83 @@ static PetscErrorCode ascending(PetscInt m, const double phi[], PetscInt order[]
 static PetscErrorCode allocate(PetscInt m, struct ebb_effective *e)
 {
   PetscFunctionBegin;
-  *e = (struct ebb_effective){.m = m};
+  *e = (struct ebb_effective){.m = m, .bounce_v = NAN, .bounce_density = NAN};
   PetscCall(PetscMalloc3(m, &e->v, m, &e->b, m, &e->density));
   PetscCall(PetscMalloc3(m, &e->v_error, m, &e->b_error, m, &e->density_error));
+  for (PetscInt s = 0; s < m; s++)
+    e->v[s] = e->b[s] = e->density[s] = e->v_error[s] = e->b_error[s] = e->density_error[s] = NAN;
   PetscFunctionReturn(0);
 }
 
-PetscErrorCode ebb_effective_make(const struct ebb_constants *c, const struct ebb_prescription *prescription, double p,
-                                  double phi0, double v0, double sign, PetscInt m, const double phi[],
-                                  struct ebb_effective *e)
+/* One sample from ln v and b of both tolerances. */
+static void fill(const struct ebb_symbol *symbol, double p, double clock, double lnv, double b, double rough_lnv,
+                 double rough_b, PetscInt s, struct ebb_effective *e)
 {
-  const double v_turn = p / sqrt(c->theta_scale), unit = c->newton * c->newton;
-  const struct flow flow = {.kappa = c->kappa, .continuum = prescription->continuum, .sign = sign < 0.0 ? -1.0 : 1.0};
-  double start[2], *lnv, *rough_lnv, *rough_b;
+  const double unit = symbol->newton * symbol->newton, off = ebb_symbol_violation(symbol, p, lnv, b);
+  double rate[2], v_off, log_slope;
+
+  if (isnan(lnv)) return;
+  ebb_symbol_flow(symbol, p, lnv, b, rate);
+  /* the clock value itself is rounded, which counts where the volume runs away */
+  v_off = off + fabs(lnv - rough_lnv) + PETSC_MACHINE_EPSILON * (4.0 + fabs(rate[0] * clock));
+  e->v[s] = exp(lnv);
+  e->v_error[s] = e->v[s] * (isnan(v_off) ? 1.0 : v_off); /* the rougher orbit ended before: nothing is known */
+  e->b[s] = ebb_orbit_b(symbol, b);
+  e->b_error[s] = fabs(b) * off + fabs(remainder(b - rough_b, symbol->period)) +
+                  PETSC_MACHINE_EPSILON * (4.0 + fabs(rate[1] * clock));
+  if (isnan(e->b_error[s])) e->b_error[s] = fabs(b);
+  e->density[s] = unit * ebb_symbol_density(symbol, e->v[s], p);
+  /* |d ln rho/d ln v| at fixed momentum is at most twice the power of the volume */
+  log_slope = 2.0 * symbol->volume_power;
+  e->density_error[s] = e->density[s] * (log_slope * e->v_error[s] / e->v[s] + 4.0 * PETSC_MACHINE_EPSILON);
+}
+
+static PetscErrorCode explain_end(struct ebb_effective *e, const struct ebb_turning_points *t)
+{
+  PetscInt lost = 0;
+  const char *first = t->begin_infinite ? "infinite" : "zero", *last = t->end_infinite ? "infinite" : "zero";
+
+  PetscFunctionBegin;
+  for (PetscInt s = 0; s < e->m; s++) lost += isnan(e->v[s]);
+  if (lost > 0)
+    PetscCall(PetscSNPrintf(e->reason, sizeof e->reason,
+                            "%d samples lie outside the orbit: the volume is %s at clock %g and %s at clock %g",
+                            (int)lost, first, t->begin, last, t->end));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_effective_make(const struct ebb_rows *rows, double p, double clock0, double v0, double sign,
+                                  PetscInt m, const double clock[], struct ebb_effective *e)
+{
+  const struct ebb_symbol symbol = ebb_symbol_make(rows);
+  double start[2], *lnv, *rough_lnv, *b, *rough_b;
+  const char *reason;
   PetscInt *order;
   int status[2];
 
   PetscFunctionBegin;
   PetscCall(allocate(m, e));
-  e->bounce_v = flow.continuum ? NAN : v_turn;
-  e->bounce_density = flow.continuum ? NAN : unit * c->critical_density;
-  if (flow.continuum) {
-    start[0] = log(v0);
-    start[1] = v_turn / v0;
-  } else {
-    const double ratio = sign == 0.0 ? 1.0 : fmin(v_turn / v0, 1.0);
-    start[0] = log(v_turn / ratio);
-    start[1] = sign < 0.0 ? EBB_PI - asin(ratio) : asin(ratio);
+  PetscCall(ebb_effective_turning_points(rows, p, clock0, v0, sign, &e->turning));
+  if (!ebb_orbit_begin(&symbol, p, v0, sign, start, &reason)) {
+    PetscCall(PetscStrncpy(e->reason, reason, sizeof e->reason));
+    PetscFunctionReturn(0);
   }
-  PetscCall(PetscMalloc4(m, &order, m, &lnv, m, &rough_lnv, m, &rough_b));
-  PetscCall(ascending(m, phi, order));
-  status[0] = integrate(&flow, FINE, phi0, start, m, phi, order, lnv, e->b);
-  status[1] = integrate(&flow, COARSE, phi0, start, m, phi, order, rough_lnv, rough_b);
+  PetscCall(PetscMalloc5(m, &order, m, &lnv, m, &rough_lnv, m, &b, m, &rough_b));
+  PetscCall(ascending(m, clock, order));
+  status[0] = integrate(&symbol, p, EBB_ORBIT_FINE, clock0, start, m, clock, order, lnv, b);
+  status[1] = integrate(&symbol, p, EBB_ORBIT_COARSE, clock0, start, m, clock, order, rough_lnv, rough_b);
   PetscCheck(status[0] == GSL_SUCCESS && status[1] == GSL_SUCCESS, PETSC_COMM_SELF, PETSC_ERR_CONV_FAILED,
              "effective trajectory: %s", gsl_strerror(status[0] ? status[0] : status[1]));
-  for (PetscInt s = 0; s < m; s++) {
-    const double volume = c->volume_unit * exp(lnv[s]);
-    const double held = flow.continuum ? exp(lnv[s]) * e->b[s] : exp(lnv[s]) * sin(e->b[s]); /* = v_turn */
-    /* sin b near pi is known to a rounding of pi only; that much violation is not the integrator's */
-    const double blind = flow.continuum ? 0.0 : 2.0 * PETSC_MACHINE_EPSILON * EBB_PI * exp(lnv[s]) / v_turn;
-    const double off =
-        fmax(fabs(held / v_turn - 1.0) - blind, 0.0) + fabs(lnv[s] - rough_lnv[s]) + 4.0 * PETSC_MACHINE_EPSILON;
+  for (PetscInt s = 0; s < m; s++) fill(&symbol, p, clock[s], lnv[s], b[s], rough_lnv[s], rough_b[s], s, e);
+  for (size_t i = 0; i < e->turning.n; i++) {
+    const struct ebb_turning_point *point = &e->turning.point[i];
 
-    e->v[s] = exp(lnv[s]);
-    e->v_error[s] = e->v[s] * off;
-    e->b_error[s] = fabs(e->b[s] - rough_b[s]) + 4.0 * PETSC_MACHINE_EPSILON;
-    e->density[s] = unit * 0.5 * p * p / (volume * volume);
-    e->density_error[s] = 2.0 * e->density[s] * off;
+    if (!point->bounce || e->bounce_v <= point->v) continue;
+    e->bounce_v = point->v;
+    e->bounce_density = point->density;
   }
-  PetscCall(PetscFree4(order, lnv, rough_lnv, rough_b));
+  PetscCall(explain_end(e, &e->turning));
+  PetscCall(PetscFree5(order, lnv, rough_lnv, b, rough_b));
   PetscFunctionReturn(0);
 }
 

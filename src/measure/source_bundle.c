@@ -125,5 +125,5 @@ void ebb_source_bundle(struct ebb_source *source, const struct ebb_bundle *bundl
                                 .comm = comm,
                                 .evaluate = evaluate,
                                 .data = (void *)bundle,
-                                .edge_ratio = ebb_edge_ratio(centre->momentum_mean / constants->kappa)};
+                                .edge_ratio = ebb_edge_ratio(centre->momentum_mean / lattice->rows.kappa)};
 }

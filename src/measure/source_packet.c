@@ -187,5 +187,5 @@ void ebb_source_packet(struct ebb_source *source, const struct ebb_packet *packe
                                 .comm = comm,
                                 .evaluate = evaluate,
                                 .data = (void *)packet,
-                                .edge_ratio = ebb_edge_ratio(packet->momentum_mean / constants->kappa)};
+                                .edge_ratio = ebb_edge_ratio(packet->momentum_mean / lattice->rows.kappa)};
 }

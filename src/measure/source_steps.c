@@ -205,7 +205,7 @@ PetscErrorCode ebb_source_steps_create(struct ebb_source *source, const struct e
                                 .comm = comm,
                                 .evaluate = evaluate,
                                 .data = steps,
-                                .edge_ratio = ebb_edge_ratio(start->momentum_mean / constants->kappa)};
+                                .edge_ratio = ebb_edge_ratio(start->momentum_mean / lattice->rows.kappa)};
   steps->local = lattice->end - lattice->begin;
   steps->fields = lattice->rows.clock->root ? FIELDS : PLAIN_FIELDS;
   steps->below = rank > 0 ? rank - 1 : MPI_PROC_NULL;

@@ -32,14 +32,8 @@ static void measure_series(size_t terms, double b[])
   double s[terms], s2[terms];
 
   ebb_cube_root_series(terms, s);
-  for (size_t j = 0; j < terms; j++) {
-    s2[j] = 0.0;
-    for (size_t i = 0; i <= j; i++) s2[j] += s[i] * s[j - i];
-  }
-  for (size_t j = 0; j < terms; j++) {
-    b[j] = 0.0;
-    for (size_t i = 0; i <= j; i++) b[j] += s[i] * s2[j - i];
-  }
+  ebb_series_product(terms, s, s, s2);
+  ebb_series_product(terms, s, s2, b);
 }
 
 const struct ebb_prescription ebb_prescription_aps = {
@@ -58,4 +52,5 @@ const struct ebb_prescription ebb_prescription_aps = {
     .curvature_weight = curvature_weight,
     .measure_series = measure_series,
     .hop_series = ebb_solvable_hop_series,
+    .square_series = ebb_inverse_volume_square_series,
 };

@@ -68,3 +68,26 @@ void ebb_cube_root_series(size_t terms, double s[])
     binomial *= (1.0 / 3.0 - (double)(j + 1)) / (double)(j + 2);
   }
 }
+
+void ebb_series_product(size_t terms, const double a[], const double b[], double out[])
+{
+  for (size_t j = 0; j < terms; j++) {
+    out[j] = 0.0;
+    for (size_t i = 0; i <= j; i++) out[j] += a[i] * b[j - i];
+  }
+}
+
+/* 1/S^3: (8/27)/J^3 = v^2/S^3 */
+void ebb_inverse_volume_square_series(size_t terms, double q[])
+{
+  double s[terms], s2[terms], s3[terms];
+
+  if (terms == 0) return;
+  ebb_cube_root_series(terms, s);
+  ebb_series_product(terms, s, s, s2);
+  ebb_series_product(terms, s, s2, s3);
+  for (size_t j = 0; j < terms; j++) {
+    q[j] = j == 0 ? 1.0 : 0.0;
+    for (size_t i = 1; i <= j; i++) q[j] -= s3[i] * q[j - i];
+  }
+}

@@ -49,4 +49,5 @@ const struct ebb_prescription ebb_prescription_mmo = {
     .square = ebb_inverse_volume_square,
     .measure_series = measure_series,
     .hop_series = hop_series,
+    .square_series = ebb_inverse_volume_square_series,
 };

@@ -19,4 +19,5 @@ const struct ebb_prescription ebb_prescription_slqc = {
     .square = ebb_solvable_square,
     .measure_series = ebb_solvable_measure_series,
     .hop_series = ebb_solvable_hop_series,
+    .square_series = ebb_solvable_square_series,
 };

@@ -332,8 +332,8 @@ static PetscErrorCode prepare(struct ebb_basis *basis, PetscInt *match)
   for (PetscInt j = 0; j < basis->n; j++) {
     PetscCheck(basis->k[j] > 0.0, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
                "mode %" PetscInt_FMT ": k = %g, must be above 0", j, basis->k[j]);
-    m->zeta[j] = 4.0 * basis->k[j] * basis->k[j];
-    ebb_series_make(basis->k[j], b, c, &m->series[j]);
+    m->zeta[j] = 4.0 * basis->k[j] * basis->k[j] + p->tilt * p->tilt;
+    ebb_series_make(basis->k[j], p->tilt, b, c, &m->series[j]);
     reach = fmax(reach, ebb_series_reach(&m->series[j], TINY_TERM));
     k_max = fmax(k_max, basis->k[j]);
   }

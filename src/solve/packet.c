@@ -26,7 +26,7 @@ static PetscErrorCode allocate(struct ebb_basis *basis, const struct ebb_state_r
   PetscCall(PetscMalloc1(n, &p->omega));
   PetscCall(PetscMalloc1(n, &p->share));
   for (PetscInt j = 0; j < n; j++) {
-    p->omega[j] = request->constants->kappa * ebb_basis_k(basis)[j];
+    p->omega[j] = ebb_state_kappa(request) * ebb_basis_k(basis)[j];
     if (request->shift != 0.0) p->omega[j] = sqrt(fmax(p->omega[j] * p->omega[j] - request->shift, 0.0));
   }
   PetscFunctionReturn(0);
@@ -184,8 +184,8 @@ static void interval_of(const struct ebb_components *components, const struct eb
       continue;
     }
     components->profile[i]->reach_k(in, &a, &b);
-    a *= in->constants->kappa;
-    b *= in->constants->kappa;
+    a *= in->kappa;
+    b *= in->kappa;
     *low = fmin(*low, root ? a * a : a);
     *high = fmax(*high, root ? b * b : b);
   }
@@ -211,7 +211,7 @@ static PetscErrorCode levels_packet(const struct ebb_state_request *request, con
   double complex *c;
 
   PetscFunctionBegin;
-  PetscCall(ebb_basis_create_levels(spectrum, request->constants->kappa, root, &basis));
+  PetscCall(ebb_basis_create_levels(spectrum, ebb_state_kappa(request), root, &basis));
   PetscCall(allocate(basis, request, packet));
   for (PetscInt j = 0; j < spectrum->n; j++)
     (*packet)->omega_error =
@@ -316,7 +316,7 @@ PetscErrorCode ebb_packet_create_waves(const struct ebb_state_request *request, 
   PetscCall(PetscMalloc2(2 * n, &w, 2 * n, &c));
   for (PetscInt j = 0; j < n; j++) {
     const double k = ebb_basis_k(basis)[2 * j], x = (k - components.input[0].k0) / (2.0 * components.input[0].sigma_k);
-    const double complex spectral = cexp(-(1.0 + I * s->squeeze) * x * x - I * k * request->constants->kappa * s->at);
+    const double complex spectral = cexp(-(1.0 + I * s->squeeze) * x * x - I * k * ebb_state_kappa(request) * s->at);
     const double complex plus = in ? spectral * cexp(-I * k * s->lnv0) : 0.0;  /* exp(+ikx), contracting */
     const double complex minus = out ? spectral * cexp(I * k * s->lnv0) : 0.0; /* exp(-ikx), expanding */
 

@@ -35,7 +35,7 @@ static struct reach reach_of(const struct ebb_components *components, double fro
     const struct ebb_profile_input *in = &components->input[i];
     double low, high;
     const double lnv = components->profile[i]->reach_lnv(in);
-    const double clock = in->constants->kappa * fmax(fabs(from - in->at), fabs(to - in->at));
+    const double clock = in->kappa * fmax(fabs(from - in->at), fabs(to - in->at));
 
     components->profile[i]->reach_k(in, &low, &high);
     r.k_low = fmin(r.k_low, low);

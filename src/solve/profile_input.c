@@ -8,9 +8,14 @@ enum { ROWS = 256 }; /* rows of the basis held at once: 256 x 300 doubles fit a 
 
 double ebb_profile_omega(const struct ebb_profile_input *input, double k)
 {
-  const double omega = input->constants->kappa * k;
+  const double omega = input->kappa * k;
 
   return input->shift == 0.0 ? omega : sqrt(fmax(omega * omega - input->shift, 0.0));
+}
+
+double ebb_state_kappa(const struct ebb_state_request *request)
+{
+  return request->kappa > 0.0 ? request->kappa : request->constants->kappa;
 }
 
 PetscErrorCode ebb_components_resolve(const struct ebb_state_request *request, struct ebb_components *components)
@@ -28,7 +33,8 @@ PetscErrorCode ebb_components_resolve(const struct ebb_state_request *request, s
     PetscCheck(components->profile[i] && components->profile[i]->resolve, PETSC_COMM_SELF, PETSC_ERR_ARG_UNKNOWN_TYPE,
                "profile '%s' cannot stand here", s->profile);
     components->weight[i] = several ? s->weight[0] + I * s->weight[1] : 1.0;
-    *in = (struct ebb_profile_input){.settings = s, .constants = request->constants, .shift = request->shift};
+    *in = (struct ebb_profile_input){
+        .settings = s, .constants = request->constants, .kappa = ebb_state_kappa(request), .shift = request->shift};
     if (request->file) {
       in->file_v = request->file[i].v;
       in->file_psi = request->file[i].psi;

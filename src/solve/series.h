@@ -10,14 +10,15 @@
 
 enum { EBB_SERIES_TERMS = 26 };
 
-/* x(v) = v^{ik} sum_j x[j] v^-j and flux y(v) = C(v) (x(v+4) - x(v)) = v^{ik} sum_j y[j] v^-j, with x[0] = 1. */
+/* x(v) = v^{ik + tilt/2} sum_j x[j] v^-j and flux y(v) = C(v) (x(v+4) - x(v)) = v^{ik - tilt/2} sum_j y[j] v^-j, with
+ * x[0] = 1. */
 struct ebb_series {
-  double k;
+  double k, tilt;
   double complex x[EBB_SERIES_TERMS], y[EBB_SERIES_TERMS];
 };
 
 /* Coefficients for one k > 0 from the expansions of B and C ([EBB_SERIES_TERMS + 1] each, see operators.h). */
-void ebb_series_make(double k, const double b[], const double c[], struct ebb_series *series);
+void ebb_series_make(double k, double tilt, const double b[], const double c[], struct ebb_series *series);
 /* Smallest v from which the last two terms are below tiny times the first. */
 double ebb_series_reach(const struct ebb_series *series, double tiny);
 /* Values at v, without the common factor v^{ik}. */

@@ -73,7 +73,8 @@ static const struct bad_model {
      "gravity.prescription = 'slcq' is unknown; nearest is 'slqc'"},
     {"prescription far from any", "gravity: {prescription: everything}\n" CLOCK STATE,
      1,
-     "gravity.prescription = 'everything' is unknown; there are slqc, aps, mmo, smmo, wdw, wdw_lattice"},
+     "gravity.prescription = 'everything' is unknown; there are slqc, aps, mmo, smmo, wdw, wdw_lattice, mu0, "
+     "refined"},
     {"open without an extension", "gravity: {curvature: open}\n" CLOCK STATE,
      1,
      "gravity.extension is missing: the deficiency indices are (1,1), so there is a family of self-adjoint extensions, each with a spectrum of its own; give extension: {tau: ...}"},
@@ -319,7 +320,7 @@ static const struct bad_model {
      "output.quantiles = 0 must be in (0, 1); default [0.05, 0.5, 0.95]"},
     {"no quantiles", "output: {quantiles: []}\n" CLOCK STATE,
      1,
-     "output.quantiles has 0 entries, must be in [1, 32]; default [0.05, 0.5, 0.95]"},
+     "output.quantiles has 0 entries, must be in [1, 256]; default [0.05, 0.5, 0.95]"},
     {"every zero", "output: {every: 0}\n" CLOCK STATE,
      1,
      "output.every = 0 must be in [1, 1000000]; default 1"},

@@ -49,8 +49,19 @@ Test(spectrum_command, refuses_what_has_no_list_of_eigenvalues)
       {"gravity: {prescription: smmo, curvature: closed, extension: {tau: 0.4}}\n",
        "  line 1  gravity.extension does not belong here: the operator is essentially self-adjoint; leave it out\n"},
       {"gravity: {prescription: smmo}\n",
-       "  line 1  this model has a continuous spectrum; 'spectrum' lists discrete ones in this version: a negative "
-       "cosmological constant, a closed model, or an extension\n"},
+       "  line 2  this model has a continuous spectrum: no list of eigenvalues, but a generalised eigenfunction for "
+       "every wave number; give spectrum.k: [0.5, 1, 2]\n"},
+      {"clock: {kind: radiation}\n",
+       "  line 1  this model has a continuous spectrum, and its generalised eigenfunctions are not available: they are "
+       "with a scalar clock, no curvature and no cosmological constant; 'selfadjoint' examines it\n"},
+      {"gravity: {prescription: mu0, curvature: closed}\n",
+       "  line 1  prescription 'mu0' is spatially flat: the curvature term is known on a lattice of volumes; take one "
+       "of slqc, aps, mmo, smmo\n"},
+      {"gravity: {prescription: refined}\nclock: {kind: dust}\n",
+       "  line 2  prescription 'refined' has a scalar clock only: the other clocks are known on a lattice of volumes; "
+       "take one of slqc, aps, mmo, smmo\n"},
+      {"gravity: {prescription: mu0, cosmological_constant_over_critical: -0.1}\n",
+       "  line 1  prescription 'mu0' has no critical cosmological constant; give gravity.cosmological_constant\n"},
       {"gravity: {prescription: smmo, cosmological_constant_over_critical: 1.5}\n",
        "  line 1  the cosmological constant is 1.5 of the critical one, 3/(gamma^2 lambda^2): the operator has no "
        "positive part, no physical states; take less than 1\n"},
@@ -94,6 +105,19 @@ Test(spectrum_command, needs_to_know_which_eigenvalues)
       {"gravity: {cosmological_constant: -1}\nspectrum: {interval: [1, 0]}\n", "is not above the entry before it"},
       {"gravity: {cosmological_constant: 1, extension: {tau: 0}}\nspectrum: {count: 3}\n",
        "spectrum.count: there is no lowest eigenvalue"},
+      {"gravity: {cosmological_constant: -1}\nspectrum: {k: [1]}\n",
+       "spectrum.k is for continuous spectra, and this model has a discrete one; give spectrum.count or "
+       "spectrum.interval"},
+      {"gravity: {prescription: slqc, fixed_scale: 2}\n",
+       "gravity.fixed_scale does not belong to prescription 'slqc'; it is for 'mu0' and 'refined'\n"},
+      {"gravity: {prescription: mu0, refinement_exponent: 0.2}\n",
+       "gravity.refinement_exponent does not belong to prescription 'mu0'; it is for 'refined'\n"},
+      {"gravity: {prescription: refined, reference_p: 2, polymer_scale: 1}\n",
+       "gravity.reference_p says the same as gravity.polymer_scale = fixed_scale sqrt(reference_p); give at "
+       "most one of them\n"},
+      {"gravity: {prescription: aps}\n", "spectrum.k is missing: this model has a continuous spectrum"},
+      {"spectrum: {k: [0, 1]}\n", "spectrum.k = 0 must be in (0, 10000]"},
+      {"spectrum: {k: [1]}\nlattice: {points: 50}\n", "lattice.points asks for a wall"},
   };
   char *folder = ebb_test_folder_create();
 
@@ -158,6 +182,96 @@ Test(spectrum_command, worked_models)
       ebb_test_run_clear(&run);
     }
     free(model);
+  }
+  ebb_test_folder_remove(&folder);
+}
+
+static void read_text(const char *path, const char *name, char **text)
+{
+  struct ebb_store *store;
+  bool found;
+
+  cr_assert_eq(ebb_store_open(MPI_COMM_NULL, path, &store), 0);
+  cr_assert_eq(ebb_store_get_text(store, "/spectrum", name, text, &found), 0);
+  cr_assert(found, "%s", name);
+  cr_assert_eq(ebb_store_destroy(&store), 0);
+}
+
+/* Phases and values recomputed independently with 50 digits (mpmath), on one rank and on two; phases modulo 2 pi */
+Test(spectrum_command, waves_of_continuous_spectra)
+{
+  static const struct {
+    const char *gravity;
+    PetscInt site;
+    double alpha, value, alpha_printed;
+  } rows[] = {
+      {"{prescription: smmo, sector: 1.5}", 6, 0.65226929536850232029, -0.31571663920535276258, 1e-15},
+      {"{prescription: slqc}", 5, NAN, 0.14411243917187715681, NAN},
+      {"{prescription: refined, refinement_exponent: 0.2}", 5, NAN, 0.14411243917187715681, NAN},
+      {"{prescription: aps}", 0, -0.57915220306637, NAN, 0.5e-14},
+      {"{prescription: mmo}", 0, -1.2259107996488, NAN, 0.5e-13},
+  };
+  char *folder = ebb_test_folder_create(), path[1024], text[256], *nature;
+
+  snprintf(path, sizeof path, "%s/model.h5", folder);
+  for (size_t i = 0; i < sizeof rows / sizeof *rows; i++)
+    for (int ranks = 0; ranks <= 2; ranks += 2) {
+      double alpha[2], error[2], value[2 * 100], function_error[2];
+      hsize_t start[2] = {0, 0}, extent[EBB_STORE_RANK_MAX];
+      struct ebb_store *store;
+      struct ebb_test_run run;
+      bool found;
+      int rank;
+
+      snprintf(text, sizeof text, "gravity: %s\nspectrum: {k: [0.75, 12]}\n", rows[i].gravity);
+      write_model(folder, text);
+      run = ebb_test_ebbturn(folder, ranks, (const char *const[]){"spectrum", "model.yaml", "--force", NULL});
+      cr_assert_eq(run.status, 0, "%s: exit %d, %s", rows[i].gravity, run.status, run.err);
+      cr_expect_not_null(strstr(run.out, "simple, above 0"), "%s", run.out);
+      read_line(path, "/spectrum/alpha", 2, alpha);
+      read_line(path, "/spectrum/alpha_error", 2, error);
+      read_line(path, "/spectrum/function_error", 2, function_error);
+      read_text(path, "nature", &nature);
+      cr_expect_str_eq(nature, "continuous");
+      free(nature);
+      cr_assert_eq(ebb_store_open(MPI_COMM_NULL, path, &store), 0);
+      cr_assert_eq(ebb_store_extent(store, "/spectrum/function", &rank, extent, &found), 0);
+      cr_assert(found && rank == 2 && extent[0] == 2 && extent[1] == 100, "sites up to v = 400");
+      cr_assert_eq(ebb_store_read(store, "/spectrum/function", start, extent, value), 0);
+      cr_assert_eq(ebb_store_destroy(&store), 0);
+      if (!isnan(rows[i].alpha))
+        cr_expect_leq(fabs(remainder(alpha[0] - rows[i].alpha, 2.0 * acos(-1.0))), error[0] + rows[i].alpha_printed,
+                      "%s: %.17g", rows[i].gravity, alpha[0]);
+      if (!isnan(rows[i].value))
+        cr_expect_leq(fabs(value[rows[i].site] - rows[i].value), function_error[0], "%s: %.17g", rows[i].gravity,
+                      value[rows[i].site]);
+      cr_expect(error[0] < 1e-13 && error[1] < 1e-12 && function_error[0] < 1e-13, "%g %g %g", error[0], error[1],
+                function_error[0]);
+      ebb_test_run_clear(&run);
+    }
+  ebb_test_folder_remove(&folder);
+}
+
+/* A full lattice has two channels for each wave number; the fixed lattice has a threshold and a bound state */
+Test(spectrum_command, says_what_kind_of_continuum)
+{
+  static const struct {
+    const char *gravity, *says[2];
+  } rows[] = {
+      {"{prescription: aps, sector: 1}", {"double, above 0", "left"}},
+      {"{prescription: mu0}", {"simple, above 1.0471975512", "bound state    eigenvalue 0"}},
+  };
+  char *folder = ebb_test_folder_create(), text[256];
+
+  for (size_t i = 0; i < sizeof rows / sizeof *rows; i++) {
+    struct ebb_test_run run;
+
+    snprintf(text, sizeof text, "gravity: %s\nspectrum: {k: [0.75]}\nlattice: {volume_max: 1000}\n", rows[i].gravity);
+    write_model(folder, text);
+    run = ebb_test_ebbturn(folder, 0, (const char *const[]){"spectrum", "model.yaml", "--force", NULL});
+    cr_assert_eq(run.status, 0, "%s: exit %d, %s", rows[i].gravity, run.status, run.err);
+    for (int j = 0; j < 2; j++) cr_expect_not_null(strstr(run.out, rows[i].says[j]), "%s", run.out);
+    ebb_test_run_clear(&run);
   }
   ebb_test_folder_remove(&folder);
 }

@@ -89,10 +89,13 @@ Test(constants, largest_hubble_rate_of_the_effective_trajectory, .init = ebb_tes
   const struct ebb_constants c = standard();
   const double turn = -log(tan(EBB_PI / 8.0)) / c.kappa; /* tan(b/2) = exp(-kappa phi): b = pi/4 */
   double phi[SAMPLES], largest = 0.0, at = 0.0;
+  struct ebb_rows rows = {
+      .prescription = ebb_prescription_find("slqc"), .clock = ebb_clock_find("scalar"), .constants = c, .sector = 4.0};
   struct ebb_effective e;
 
+  ebb_rows_make(&rows);
   for (int s = 0; s < SAMPLES; s++) phi[s] = turn * (s - HALF) / 50.0; /* sample HALF + 50 stands at b = pi/4 */
-  ebb_test_call(ebb_effective_make(&c, ebb_prescription_find("slqc"), 500.0, 0.0, 0.0, 0.0, SAMPLES, phi, &e));
+  ebb_test_call(ebb_effective_make(&rows, 500.0, 0.0, 0.0, 0.0, SAMPLES, phi, &e));
   for (int s = 0; s < SAMPLES; s++) {
     /* Friedmann's equation with the loop correction, H^2 = (8 pi G/3) rho (1 - rho/rho_c) */
     const double square = 8.0 * EBB_PI / 3.0 * e.density[s] * (1.0 - e.density[s] / c.critical_density);

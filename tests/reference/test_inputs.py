@@ -14,10 +14,13 @@ with tempfile.TemporaryDirectory() as scratch:
         with open(path, encoding="utf-8") as f:
             text = f.read()
         check(text.startswith("# "), f"{name} opens with a comment")
-        command = "spectrum" if "\nspectrum:" in text else "evolve"
-        out = os.path.join(scratch, name + ".h5")
-        run(command, path, "-o", out)
-        if os.path.exists(out):
-            with h5py.File(out) as f:
-                check(f.attrs["complete"] == 1, f"{name}: complete result of '{command}'")
+        commands = [command for command, key in (("spectrum", "\nspectrum:"), ("evolve", "\nstate:")) if key in text]
+        check(commands, f"{name} is for some command")
+        for command in commands:
+            check(f"ebbturn {command} inputs/{name}" in text.replace("\n# ", " "), f"{name} says how to run '{command}'")
+            out = os.path.join(scratch, f"{name}.{command}.h5")
+            run(command, path, "-o", out)
+            if os.path.exists(out):
+                with h5py.File(out) as f:
+                    check(f.attrs["complete"] == 1, f"{name}: complete result of '{command}'")
 finish()

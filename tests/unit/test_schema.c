@@ -14,18 +14,18 @@
   "clock: {from: -1, to: 1}\n"                                                                                         \
   "state: {profile: gaussian_momentum, momentum: 500, relative_spread: 0.05}\n"
 
-#define FIELD "matter: [{kind: scalar, name: chi, momentum: 1, spread: 1, grid: {points: 8, length: 1}}]\n"
-
 /* True where the model is good with `set` on top; message [256]: the first problem. */
-static bool accepts(const char *set, char message[256])
+static bool accepts(const struct ebb_setting *row, const char *set, char message[256])
 {
+  const bool refined = row->places & (EBB_ON_FIXED | EBB_ON_REFINED); /* keys of that prescription only */
+  const char *const overrides[] = {set, "gravity.prescription=refined"};
+  const unsigned need = refined ? EBB_NEED_MODEL : EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE;
   struct ebb_problems *problems = ebb_problems_create();
   struct ebb_settings settings;
-  const char *model = strncmp(set, "matter.", strlen("matter.")) ? MODEL : MODEL FIELD; /* its keys need a field */
   bool good;
 
   cr_assert_not_null(problems);
-  good = ebb_input_parse(model, strlen(model), &set, 1, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, problems);
+  good = ebb_input_parse(MODEL, strlen(MODEL), overrides, refined ? 2 : 1, need, &settings, problems);
   snprintf(message, 256, "%s", good ? "" : ebb_problems_text(problems, 0));
   ebb_settings_clear(&settings);
   ebb_problems_destroy(&problems);
@@ -40,10 +40,10 @@ static void expect_end(const struct ebb_setting *row, double end, bool open, dou
   if (isinf(end)) return;
   snprintf(key, sizeof key, "%s = ", row->key);
   snprintf(set, sizeof set, "%s=%.17g", row->key, end);
-  cr_expect_eq(accepts(set, message), !open, "%s: %s", set, message);
+  cr_expect_eq(accepts(row, set, message), !open, "%s: %s", set, message);
   if (open) cr_expect_not_null(strstr(message, key), "%s", message);
   snprintf(set, sizeof set, "%s=%.17g", row->key, outside);
-  cr_expect_not(accepts(set, message), "%s", set);
+  cr_expect_not(accepts(row, set, message), "%s", set);
 }
 
 Test(schema, ranges_end_where_the_row_says)
@@ -55,9 +55,30 @@ Test(schema, ranges_end_where_the_row_says)
 
     if ((row->type != EBB_TYPE_REAL && !integer) || (row->places & EBB_ON_GRID)) continue;
     if (ebb_setting_of_state(row) && !(row->profiles & EBB_PROFILE_GAUSSIAN_MOMENTUM)) continue;
+    if (!strncmp(row->key, "matter.", strlen("matter."))) continue; /* none of them stands alone: below */
     /* 1 apart for integers; a neighbouring double would do for reals, but not below 0: it underflows */
     expect_end(row, low, row->range.low_open, integer ? low - 1 : low - 1e-6);
     expect_end(row, high, row->range.high_open, integer ? high + 1 : nextafter(high, INFINITY));
+  }
+}
+
+/* The keys of a further field need each other: the field is written whole, one value at a time at the end of its range.
+ */
+Test(schema, ranges_of_a_field_end_where_the_row_says)
+{
+  static const struct {
+    const char *spread, *points, *length;
+    bool good;
+  } rows[] = {{"1e-300", "4", "1e-300", true}, {"1", "4096", "1", true},  {"0", "8", "1", false},
+              {"1", "2", "1", false},          {"1", "4098", "1", false}, {"1", "8", "0", false}};
+
+  for (size_t i = 0; i < sizeof rows / sizeof *rows; i++) {
+    char set[256], message[256];
+
+    snprintf(set, sizeof set,
+             "matter=[{kind: scalar, name: chi, momentum: 1, spread: %s, grid: {points: %s, length: %s}}]",
+             rows[i].spread, rows[i].points, rows[i].length);
+    cr_expect_eq(accepts(ebb_setting_find("matter"), set, message), rows[i].good, "%s: %s", set, message);
   }
 }
 
@@ -96,7 +117,7 @@ Test(schema, every_default_is_accepted_as_an_input)
 
     if (!row->fallback || ebb_setting_of_state(row) || (row->places & EBB_ON_GRID)) continue;
     snprintf(set, sizeof set, "%s=%s", row->key, row->fallback[0] ? row->fallback : "''");
-    cr_expect(accepts(set, message), "%s: %s", set, message);
+    cr_expect(accepts(row, set, message), "%s: %s", set, message);
   }
   cr_expect_not_null(ebb_prescription_find(ebb_setting_find("gravity.prescription")->fallback));
 }

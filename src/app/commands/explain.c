@@ -111,6 +111,8 @@ static void explain_setting(const struct ebb_setting *setting)
   explain_profiles(setting);
   if (setting->places & EBB_ON_VOLUME) row("belongs to", "prescriptions on a lattice of volumes");
   if (setting->places & EBB_ON_GRID) row("belongs to", "prescriptions on a grid in ln v");
+  if (setting->places & EBB_ON_FIXED) row("belongs to", "prescriptions mu0 and refined");
+  if (setting->places & EBB_ON_REFINED) row("belongs to", "prescription refined");
   if (setting->places & EBB_COMPONENT_ONLY) row("belongs to", "a component of a superposition");
   if (setting->places_required & EBB_ON_GRID) row("required", "on a grid in ln v");
   if (setting->places_required & EBB_FOR_RANGE) row("required", "by commands that evolve");
@@ -127,13 +129,13 @@ static void explain_entry(const char *name, const char *title, const char *formu
 /* Keys of the lattice and the state depend on the kind of lattice; those of gravity and clock matter to everyone. */
 static void explain_prescription(const struct ebb_prescription *prescription)
 {
-  const unsigned here = prescription->grid ? EBB_ON_GRID : EBB_ON_VOLUME;
+  const unsigned here = ebb_input_places(prescription);
   const char *name = "settings";
 
   explain_entry(prescription->name, prescription->title, prescription->formula, prescription->source);
   for (size_t i = 0; i < ebb_setting_count(); i++) {
     const struct ebb_setting *setting = ebb_setting_at(i);
-    const unsigned places = setting->places & (EBB_ON_GRID | EBB_ON_VOLUME);
+    const unsigned places = setting->places & EBB_ON_ANY;
 
     if (!ebb_setting_in(setting, "gravity") && !ebb_setting_in(setting, "lattice")) continue;
     if ((places && !(places & here)) || !strcmp(ebb_setting_leaf(setting), "prescription")) continue;

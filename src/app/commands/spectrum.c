@@ -2,6 +2,7 @@
 #include "ebbturn/spectrum.h"
 
 #include "../result.h"
+#include "../waves.h"
 #include "ebbturn/input.h"
 
 #include <math.h>
@@ -13,11 +14,13 @@ static int run(const struct ebb_invocation *invocation);
 const struct ebb_command ebb_command_spectrum = {
     .name = "spectrum",
     .synopsis = "MODEL [-o RESULT]",
-    .summary = "list eigenvalues and eigenfunctions of a model with a discrete spectrum",
+    .summary = "eigenvalues and eigenfunctions of a model, or the waves of a continuous spectrum",
     .help =
         "Reads a model file (state and clock range may be missing), takes the eigenvalues that spectrum.count or\n"
         "spectrum.interval asks for, on a lattice that grows until they stay, and writes them with residuals, error\n"
-        "bounds and eigenfunctions. Exit 0: done, and counted to be complete; 1: an eigenvalue within its error of an\n"
+        "bounds and eigenfunctions. Where the spectrum is continuous, spectrum.k asks for the normalised generalised\n"
+        "eigenfunctions and their phases at these wave numbers. Exit 0: done, and counted to be complete; 1: an "
+        "eigenvalue within its error of an\n"
         "end of the interval; 2: input problem, or an operator without such a list; 4: file failure.",
     .operands_min = 1,
     .operands_max = 1,
@@ -179,7 +182,8 @@ static int run(const struct ebb_invocation *invocation)
   PetscErrorCode error;
 
   if (code != EBB_EXIT_OK) return code;
-  error = spectrum(invocation, &settings, text, &code);
+  error = settings.spectrum.ks ? ebb_waves_run(invocation, &settings, text, &code)
+                               : spectrum(invocation, &settings, text, &code);
   if (error) code = ebb_exit_from_error(error);
   ebb_settings_clear(&settings);
   free(text);

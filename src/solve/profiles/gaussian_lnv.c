@@ -7,7 +7,7 @@
 
 static void resolve(struct ebb_profile_input *in)
 {
-  in->k0 = in->settings->momentum / in->constants->kappa;
+  in->k0 = in->settings->momentum / in->kappa;
   in->sigma_k = in->settings->relative_spread * in->k0;
   in->v0 = in->settings->v0;
   in->at = in->settings->at;

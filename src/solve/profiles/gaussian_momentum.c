@@ -6,7 +6,7 @@
 
 static void resolve(struct ebb_profile_input *in)
 {
-  in->k0 = in->settings->momentum / in->constants->kappa;
+  in->k0 = in->settings->momentum / in->kappa;
   in->sigma_k = in->settings->relative_spread * in->k0;
   in->at = in->settings->bounce_at;
   in->branch = "";
