@@ -11,7 +11,6 @@
 
 enum {
   BLOCK = 16, /* sites transformed together: a block's table of m values stays in the first-level cache */
-  CORRELATED = 1024,
   TAG = 82
 };
 static const double KEEP_BYTES = 4e8; /* per process, of states kept for the purity */
@@ -27,10 +26,10 @@ struct ebb_cosine {
   double *tap;                    /* [p + 1]: K_l without its phase */
   double complex *factor;         /* [p + 1]: K_l exp(i pi l/m) */
   double complex *ext;            /* [local + 2 halo] */
-  double complex *work;           /* [m][BLOCK] */
-  double *tally;                  /* [m][BLOCK] */
+  double complex *work;           /* [BLOCK][m] */
+  double *tally;                  /* [BLOCK][m] */
+  double *histogram;              /* [bins][m]: a site's centres side by side, until finish */
   double *size;                   /* [sites + 2 half]: |v| of outputs */
-  double *seen;                   /* [samples of a batch][m] */
   fftw_plan plan;
   struct run *run;
   PetscInt runs;
@@ -105,12 +104,13 @@ PetscErrorCode ebb_cosine_create(struct ebb_relational *r, struct ebb_engine *e)
   c->narrow = r->ranks > 1 && least < c->halo;
   if (c->narrow) PetscCall(PetscMalloc1(r->space->sites, &c->whole));
   PetscCall(make_taps(c));
-  PetscCall(PetscMalloc3(c->m * BLOCK, &c->work, c->m * BLOCK, &c->tally, c->m, &c->seen));
+  PetscCall(PetscMalloc2(c->m * BLOCK, &c->work, c->m * BLOCK, &c->tally));
   PetscCall(PetscCalloc1(c->local + 2 * c->halo, &c->ext));
-  c->plan = fftw_plan_many_dft(1, &c->m, BLOCK, (fftw_complex *)c->work, NULL, BLOCK, 1, (fftw_complex *)c->work, NULL,
-                               BLOCK, 1, FFTW_BACKWARD, FFTW_ESTIMATE);
+  c->plan = fftw_plan_many_dft(1, &c->m, BLOCK, (fftw_complex *)c->work, NULL, 1, c->m, (fftw_complex *)c->work, NULL,
+                               1, c->m, FFTW_BACKWARD, FFTW_ESTIMATE);
   PetscCheck(c->plan, PETSC_COMM_SELF, PETSC_ERR_LIB, "FFTW has no plan for length %d", c->m);
   PetscCall(make_bins(r, e, c));
+  PetscCall(PetscCalloc1((size_t)e->bins->n * (size_t)c->m, &c->histogram));
   PetscCall(PetscCalloc1(1, &e->windows));
   e->windows->n = c->m;
   PetscCall(PetscMalloc1(c->m, &e->windows->centre));
@@ -128,7 +128,8 @@ PetscErrorCode ebb_cosine_destroy(struct ebb_cosine **cosine)
   if (!c) PetscFunctionReturn(0);
   if (c->plan) fftw_destroy_plan(c->plan);
   PetscCall(PetscFree2(c->tap, c->factor));
-  PetscCall(PetscFree3(c->work, c->tally, c->seen));
+  PetscCall(PetscFree2(c->work, c->tally));
+  PetscCall(PetscFree(c->histogram));
   PetscCall(PetscFree(c->ext));
   PetscCall(PetscFree(c->size));
   PetscCall(PetscFree(c->run));
@@ -196,6 +197,24 @@ static PetscErrorCode extend(struct ebb_relational *r, struct ebb_cosine *c, con
   PetscFunctionReturn(0);
 }
 
+/* The loops that cost anything beside the transform, for the vectors of this processor. Element by element, so that
+ * their width changes no digit. */
+#if defined(__x86_64__) && defined(__gnu_linux__) && defined(__GNUC__) && !defined(__clang__) &&                       \
+    !defined(__SANITIZE_ADDRESS__)
+#define WIDE __attribute__((target_clones("avx512f", "avx2", "default"), optimize("O3")))
+#else
+#define WIDE
+#endif
+
+/* y += (re + i im) x. */
+WIDE static void add_multiple(int n, double re, double im, const double *restrict x, double *restrict y)
+{
+  for (int j = 0; j < n; j++) {
+    y[2 * j] += re * x[2 * j] - im * x[2 * j + 1];
+    y[2 * j + 1] += re * x[2 * j + 1] + im * x[2 * j];
+  }
+}
+
 /* int dt sum_k conj(psi_k) psi_{k+d} within each coarse bin: all that reading the system first needs. */
 static void correlate(const struct ebb_relational *r, struct ebb_cosine *c, double w)
 {
@@ -203,81 +222,69 @@ static void correlate(const struct ebb_relational *r, struct ebb_cosine *c, doub
   const double complex *x = c->ext + c->halo - begin; /* by global site */
 
   for (PetscInt j = 0; j < c->runs; j++) {
-    const PetscInt a = PetscMax(c->run[j].begin, begin), z = c->run[j].end;
     double complex *sum = c->correlation + c->run[j].group * (c->p + 1);
 
-    for (PetscInt k0 = a; k0 < PetscMin(z, end); k0 += CORRELATED) {
-      for (PetscInt d = 0; d <= c->p; d++) {
-        const PetscInt k1 = PetscMin(PetscMin(k0 + CORRELATED, end), z - d);
-        double re = 0.0, im = 0.0;
+    for (PetscInt k = PetscMax(c->run[j].begin, begin); k < PetscMin(c->run[j].end, end); k++)
+      add_multiple((int)PetscMin(c->p + 1, c->run[j].end - k), w * creal(x[k]), -w * cimag(x[k]),
+                   (const double *)(x + k), (double *)sum);
+  }
+}
 
-        for (PetscInt k = k0; k < k1; k++) {
-          re += creal(x[k]) * creal(x[k + d]) + cimag(x[k]) * cimag(x[k + d]);
-          im += creal(x[k]) * cimag(x[k + d]) - cimag(x[k]) * creal(x[k + d]);
-        }
-        sum[d] += w * (re + I * im);
-      }
-    }
+/* y = factor x, complex numbers as pairs. */
+WIDE static void multiply(int n, const double *restrict factor, const double *restrict x, double *restrict y)
+{
+  for (int j = 0; j < n; j++) {
+    y[2 * j] = factor[2 * j] * x[2 * j] - factor[2 * j + 1] * x[2 * j + 1];
+    y[2 * j + 1] = factor[2 * j] * x[2 * j + 1] + factor[2 * j + 1] * x[2 * j];
+  }
+}
+
+/* |y|^2 of one site, with weight into its tally and without into what is seen of the sample. */
+WIDE static void add_squares(int n, double w, const double *restrict y, double *restrict tally, double *restrict seen)
+{
+  for (int i = 0; i < n; i++) {
+    const double p = y[2 * i] * y[2 * i] + y[2 * i + 1] * y[2 * i + 1];
+
+    tally[i] += w * p;
+    seen[i] += p;
   }
 }
 
 /* y_l = K_l exp(i pi l/m) psi_{n+l} for a block of sites, folded modulo m, and its transform. */
-static void transform(struct ebb_cosine *c, PetscInt first, PetscInt count)
+static void transform(struct ebb_cosine *c, const double complex ext[], PetscInt first, PetscInt count)
 {
-  const double complex *x = c->ext + c->halo - c->half + first; /* psi_{n - p/2} of the block's first site */
+  const double complex *x = ext + c->halo - c->half + first; /* psi_{n - p/2} of the block's first site */
+  const int half = (int)c->half;
 
-  memset(c->work, 0, (size_t)(c->m * BLOCK) * sizeof *c->work);
-  for (int j = 0; j <= c->p; j++) {
-    const int l = j - c->p / 2;
-    const double re = creal(c->factor[j]), im = cimag(c->factor[j]);
-    double *restrict y = (double *)(c->work + (l < 0 ? l + c->m : l) * BLOCK);
-    const double *restrict z = (const double *)(x + j);
+  for (PetscInt b = 0; b < count; b++) {
+    double complex *y = c->work + b * c->m;
 
-    for (PetscInt b = 0; b < 2 * count; b += 2) {
-      y[b] = re * z[b] - im * z[b + 1];
-      y[b + 1] = re * z[b + 1] + im * z[b];
-    }
+    multiply(half + 1, (const double *)(c->factor + half), (const double *)(x + b + half), (double *)y);
+    memset(y + half + 1, 0, (size_t)(c->m - c->p - 1) * sizeof *y);
+    multiply(half, (const double *)c->factor, (const double *)(x + b), (double *)(y + c->m - half));
   }
   fftw_execute(c->plan);
 }
 
-/* |M_i psi|^2 of a block of sites. */
-static void add_block(struct ebb_cosine *c, PetscInt count, double w)
-{
-  for (int i = 0; i < c->m; i++) {
-    const double *restrict y = (const double *)(c->work + i * BLOCK);
-    double *restrict tally = c->tally + i * BLOCK;
-    double seen = 0.0;
-
-    for (PetscInt b = 0; b < count; b++) {
-      const double p = y[2 * b] * y[2 * b] + y[2 * b + 1] * y[2 * b + 1];
-
-      tally[b] += w * p;
-      seen += p;
-    }
-    c->seen[i] += seen;
-  }
-}
-
-/* A block's tally into histograms and moments. */
+/* A block's tally into histogram and moments. */
 static void flush(const struct ebb_relational *r, struct ebb_engine *e, PetscInt first, PetscInt count)
 {
   struct ebb_cosine *c = e->cosine;
 
-  for (int i = 0; i < c->m; i++)
-    for (PetscInt b = 0; b < count; b++) {
-      const PetscInt site = c->out_begin + first + b, at = site + c->half;
-      const double p = c->tally[i * BLOCK + b];
+  for (PetscInt b = 0; b < count; b++) {
+    const PetscInt site = c->out_begin + first + b, at = site + c->half, bin = e->bins->map[at];
+    const bool off = site < 0 || (!r->model.lattice->half && site >= r->space->sites);
+    const double *tally = c->tally + b * c->m, v = c->size[at];
+    double *row = bin < 0 ? e->lost : c->histogram + (size_t)bin * (size_t)c->m;
 
-      if (site < 0 || (!r->model.lattice->half && site >= r->space->sites)) e->leaked[i] += p;
-      if (e->bins->map[at] < 0) {
-        e->lost[i] += p;
-        continue;
-      }
-      e->sum[(size_t)i * (size_t)e->bin_count + (size_t)e->bins->map[at]] += p;
-      e->first[i] += p * c->size[at];
-      e->second[i] += p * c->size[at] * c->size[at];
+    for (int i = 0; i < c->m; i++) {
+      row[i] += tally[i];
+      if (off) e->leaked[i] += tally[i];
+      if (bin < 0) continue;
+      e->first[i] += tally[i] * v;
+      e->second[i] += tally[i] * v * v;
     }
+  }
 }
 
 /* D_Q, the norm, and the mean at the ends. */
@@ -305,41 +312,54 @@ PetscErrorCode ebb_cosine_add(struct ebb_relational *r, struct ebb_engine *e, Pe
                               const double complex psi[])
 {
   struct ebb_cosine *c = e->cosine;
-  const size_t length = (size_t)(c->local + 2 * c->halo), lines = (size_t)count * (size_t)r->space->slices;
+  const size_t length = (size_t)(c->local + 2 * c->halo), slices = (size_t)r->space->slices;
+  const size_t lines = (size_t)count * slices;
   double complex *extended;
+  double *seen; /* [count][m] */
 
   PetscFunctionBegin;
   PetscCall(prepare(r, e));
   PetscCall(PetscMalloc1(lines * length, &extended));
+  PetscCall(PetscCalloc1((size_t)count * (size_t)c->m, &seen));
   for (size_t j = 0; j < lines; j++) {
-    const PetscInt sample = first + (PetscInt)(j / (size_t)r->space->slices);
+    const PetscInt sample = first + (PetscInt)(j / slices);
 
     PetscCall(extend(r, c, psi + j * (size_t)c->local));
     correlate(r, c, r->weight[sample]);
     add_system(r, e, sample);
     memcpy(extended + j * length, c->ext, length * sizeof *extended);
   }
-  if (c->kept)
-    memcpy(c->kept + (size_t)first * (size_t)r->space->slices * length, extended, lines * length * sizeof *extended);
+  if (c->kept) memcpy(c->kept + (size_t)first * slices * length, extended, lines * length * sizeof *extended);
   for (PetscInt n = 0; n < c->out; n += BLOCK) {
     const PetscInt block = PetscMin(BLOCK, c->out - n), at = c->out_begin + n - r->model.lattice->begin;
 
     memset(c->tally, 0, (size_t)(c->m * BLOCK) * sizeof *c->tally);
     for (size_t j = 0; j < lines; j++) {
-      const PetscInt sample = first + (PetscInt)(j / (size_t)r->space->slices);
-      double complex *own = c->ext;
+      const size_t s = j / slices;
 
-      c->ext = extended + j * length;
-      memset(c->seen, 0, (size_t)c->m * sizeof *c->seen);
-      transform(c, at, block);
-      add_block(c, block, r->weight[sample]);
-      for (int i = 0; i < c->m; i++) e->seen[(size_t)i * (size_t)r->model.samples + (size_t)sample] += c->seen[i];
-      c->ext = own;
+      transform(c, extended + j * length, at, block);
+      for (PetscInt b = 0; b < block; b++)
+        add_squares(c->m, r->weight[first + (PetscInt)s], (const double *)(c->work + b * c->m), c->tally + b * c->m,
+                    seen + s * (size_t)c->m);
     }
     flush(r, e, n, block);
   }
+  for (PetscInt s = 0; s < count; s++)
+    for (int i = 0; i < c->m; i++)
+      e->seen[(size_t)i * (size_t)r->model.samples + (size_t)(first + s)] += seen[(size_t)s * (size_t)c->m + (size_t)i];
   PetscCall(PetscFree(extended));
+  PetscCall(PetscFree(seen));
   PetscFunctionReturn(0);
+}
+
+/* From centres side by side to [centre][bin], before ranks are added up. */
+void ebb_cosine_transpose(struct ebb_engine *e)
+{
+  const struct ebb_cosine *c = e->cosine;
+
+  for (PetscInt q = 0; q < e->bin_count; q++)
+    for (int i = 0; i < c->m; i++)
+      e->sum[(size_t)i * (size_t)e->bin_count + (size_t)q] = c->histogram[(size_t)q * (size_t)c->m + (size_t)i];
 }
 
 PetscErrorCode ebb_cosine_finish(struct ebb_relational *r, struct ebb_engine *e)

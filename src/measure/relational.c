@@ -246,6 +246,7 @@ PetscErrorCode ebb_relational_finish(struct ebb_relational *r)
     struct ebb_engine *e = &r->engine[i];
     const size_t n = (size_t)e->n, groups = (size_t)e->bins->groups;
 
+    if (e->cosine) ebb_cosine_transpose(e);
     PetscCall(add_up(r, n * (size_t)e->bin_count, e->sum));
     PetscCall(add_up(r, n, e->first));
     PetscCall(add_up(r, n, e->second));

@@ -69,6 +69,7 @@ PetscErrorCode ebb_cosine_destroy(struct ebb_cosine **cosine);
 /* Bins of the system are known only now: makes engine->bins. */
 PetscErrorCode ebb_cosine_add(struct ebb_relational *relational, struct ebb_engine *engine, PetscInt first,
                               PetscInt count, const double complex psi[]);
+void ebb_cosine_transpose(struct ebb_engine *engine); /* first */
 PetscErrorCode ebb_cosine_finish(struct ebb_relational *relational, struct ebb_engine *engine);
 PetscErrorCode ebb_cosine_purity(struct ebb_relational *relational, struct ebb_engine *engine, double purity[]);
 

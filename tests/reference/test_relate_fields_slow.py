@@ -17,8 +17,8 @@ SITES = "window: {tolerance: 1}\nreadings:\n  - {name: phi2, clock: {observable:
 EDGE = "from: -0.0859375, to: 0.0859375, bins: 11"
 MIXED = "window: {samples: 49, tolerance: 1}\nreadings:\n" \
         f"  - {{name: plain, clock: {{observable: phi2, instrument: cosine, {EDGE}}}}}\n" + "".join(
-            f"  - {{name: a{a.replace(".", "_")}, clock: {{observable: {{phi2_plus_b: {{alpha: {a}}}}}, instrument: cosine, {EDGE}}}}}\n"
-            for a in ("0.0", "0.02", "0.1"))
+            f"  - {{name: {name}, clock: {{observable: {{phi2_plus_b: {{alpha: {a}}}}}, instrument: cosine, {EDGE}}}}}\n"
+            for name, a in (("a0_0", 0.0), ("a0_02", 0.02), ("a0_1", 0.1)))
 
 
 def two(folder):
