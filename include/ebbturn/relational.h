@@ -55,7 +55,7 @@ struct ebb_reading_result {
   double *intervals; /* disjoint stretches of the parameter in which the clock may read this */
   double *probability, *quantile, *quantile_error;
   double *system_centre, *system_dwell, *level; /* system_dwell: int dt Tr P_Q rho_t, whatever the clock reads */
-  char (*status)[160]; /* "ok" or "refused: reason" */
+  char (*status)[160];                          /* "ok" or "refused: reason" */
   bool *refused;
   double back_action, order_violation, order_width;
   double resolution, back_action_spread; /* cosine_power; NAN elsewhere */

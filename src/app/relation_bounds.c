@@ -58,9 +58,11 @@ PetscErrorCode ebb_relation_put_bounds(struct ebb_store *store, const struct ebb
       !ebb_rows_is_flat(&r->run.rows))
     PetscFunctionReturn(0);
   recall = ebb_recall_of_packet(r->run.packet, &r->run.constants);
-  PetscCall(put(store, "recall_bound", recall.digamma_bound, "2 sd(Re digamma(1 + ik)), bound on |sd(ln v)_+ - sd(ln v)_-|"));
+  PetscCall(
+      put(store, "recall_bound", recall.digamma_bound, "2 sd(Re digamma(1 + ik)), bound on |sd(ln v)_+ - sd(ln v)_-|"));
   PetscCall(put(store, "recall_bound_log", recall.log_bound, "2 sd(ln k), which it nearly is"));
-  PetscCall(put(store, "lnv_sum", recall.lnv_sum, "2 <Re digamma(1 + ik)>, limit of ln v(phi) + ln v(-phi) - 2 kappa phi"));
+  PetscCall(
+      put(store, "lnv_sum", recall.lnv_sum, "2 <Re digamma(1 + ik)>, limit of ln v(phi) + ln v(-phi) - 2 kappa phi"));
   PetscCall(put(store, "v_bound", recall.v_bound, "<p>/sqrt(3 pi G): no state has a smaller mean |v|"));
   PetscCall(read_series(r, "/moments/v_mean", n, &v));
   PetscCall(read_series(r, "/moments/v_mean_error", n, &error));

@@ -162,7 +162,7 @@ PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct
     rows[n++] = of_reading(s, ebb_relational_result(relational, i));
   }
 #define COLUMN(name, text) PetscCall(put_column(store, #name, text, n, rows, offsetof(struct row, name)))
-#define WORDS(name, text) PetscCall(put_words(store, #name, text, n, rows, offsetof(struct row, name)))
+#define WORDS(name, text)  PetscCall(put_words(store, #name, text, n, rows, offsetof(struct row, name)))
   WORDS(reading, "reading");
   WORDS(clock, "observable of the clock");
   WORDS(verdict, "is it a good clock");

@@ -45,7 +45,7 @@ PetscErrorCode ebb_engine_result_clear(struct ebb_reading_result *x)
                            &x->mean,         &x->mean_error,  &x->spread,       &x->spread_error,   &x->purity,
                            &x->purity_model, &x->leak,        &x->window_error, &x->clock_error,    &x->curve,
                            &x->intervals,    &x->probability, &x->quantile,     &x->quantile_error, &x->system_centre,
-                           &x->level,       &x->system_dwell};
+                           &x->level,        &x->system_dwell};
 
   PetscFunctionBegin;
   for (size_t i = 0; i < sizeof line / sizeof line[0]; i++) PetscCall(PetscFree(*line[i]));

@@ -127,12 +127,29 @@ def truncated(folder):
                 check(abs(group["median"][4] - median) < 0.005, f"window {window}: median {group['median'][4]:.2f}")
 
 
+def without_time(f):
+    """The same probabilities without any integral: N = 2 pi sum_j g_j p_j <j|M^+ P_Q M|j>, g the density of levels."""
+    universe, ring = reference.Universe(512), reference.Ring(512)
+    weight, omega = np.abs(universe.c)**2, universe.omega
+    spacing = np.gradient(omega)
+    spacing[2:-2] = (omega[:-4] - 8 * omega[1:-3] + 8 * omega[3:-1] - omega[4:]) / 12
+    used = weight > 1e-13
+    for outcome in (5, 7):
+        mass, _ = ring.read(ring.cosine(16, outcome), universe.mode[:, used])
+        mass = mass @ (2 * np.pi * weight[used] / spacing[used])
+        p = f["relational/cosine/probability"][outcome]
+        off = 0.5 * np.abs(mass / mass.sum() - p).sum()  # truncation: the density of levels by a difference of 4th order
+        check(off < 1e-5, f"bin {outcome}: no time integral, the same P: {off:.1e}")
+        check(abs(mass.sum() / f["relational/cosine/dwell"][outcome] - 1) < 5e-5, f"bin {outcome}: and the same dwell")
+
+
 with tempfile.TemporaryDirectory() as folder:
     result = make(folder, "run")
     path, _ = relate(folder, result, READINGS, "stored", 1)
     with h5py.File(path) as f:
         compare(f)
         laws(f)
+        without_time(f)
         check(f.attrs["states"] == b"from the result" or f.attrs["states"] == "from the result", "stored states are used")
     bare = make(folder, "bare", keep="[moments]")
     again, _ = relate(folder, bare, READINGS, "again", 1)

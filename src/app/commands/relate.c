@@ -155,7 +155,8 @@ static PetscErrorCode relate(const struct ebb_invocation *invocation, int *code)
       *code = relational ? judge(&r, relational, rank == 0) : EBB_EXIT_OK;
       if (!kept) {
         *code = EBB_EXIT_LIMIT;
-        if (rank == 0) fprintf(stderr, "ebbturn: error: an inequality that every state obeys is violated; see /bounds\n");
+        if (rank == 0)
+          fprintf(stderr, "ebbturn: error: an inequality that every state obeys is violated; see /bounds\n");
       }
       if (rank == 0 && relational) ebb_relation_print(&r, relational);
       if (rank == 0) ebb_relation_two_times_print(&r, &two_times);
