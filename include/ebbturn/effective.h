@@ -56,4 +56,9 @@ PetscErrorCode ebb_effective_clear(struct ebb_effective *effective);
 PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double p, double clock0, double v0,
                                             double sign, struct ebb_turning_points *points);
 
+/* Volume [length^3] and density [1/G^2] of the bounce that ends the classical contracting branch, each with what an
+ * error of the momentum makes of it; NAN without a bounce (continuum). density: rho_c f(b), all energy, as the mean
+ * density of a state measures it; that of matter alone is in struct ebb_turning_point. */
+void ebb_effective_bounce(const struct ebb_rows *rows, double p, double p_error, double volume[2], double density[2]);
+
 #endif

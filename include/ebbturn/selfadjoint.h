@@ -9,10 +9,21 @@
 
 #include <petscsys.h>
 
-enum { EBB_WEYL_OCTAVES = 20 };
+enum { EBB_WEYL_OCTAVES = 20, EBB_ROOT_VOLUMES = 7 };
 
 /* What one kind of evidence says of the solutions at infinity. */
 enum ebb_limit { EBB_LIMIT_POINT, EBB_LIMIT_CIRCLE, EBB_LIMIT_UNDECIDED };
+
+/* Von Neumann's question to a difference equation at large volume: can a solution grow without a classical reason? */
+enum ebb_stability {
+  EBB_STABLE,            /* the roots lie on the unit circle or tend to it: waves */
+  EBB_UNSTABLE_BOUNDED,  /* the largest tends to a number above 1: a region that classical universes do not reach */
+  EBB_UNSTABLE_UNBOUNDED /* the largest grows without bound: a large universe never becomes classical */
+};
+/* largest [n], n >= 2: modulus of the largest root at volumes of a geometric sequence, ascending. For any order of
+ * difference equation: moduli are all that counts. Saini, Singh, Class. Quantum Grav. 36, 105010 (2019),
+ * arXiv:1901.01279 (abstract read). */
+enum ebb_stability ebb_stability_decide(size_t n, const double largest[]);
 
 struct ebb_selfadjoint {
   /* Verdict of both: n_plus = n_minus = 0 or 1, of the half lattice (even sector where the lattice is full); -1 where
@@ -24,8 +35,9 @@ struct ebb_selfadjoint {
   enum ebb_limit asymptotic;
   double exponent;   /* of |psi|^2, NAN where the solutions are exponentials */
   double cosine;     /* cos(theta) of the large-volume roots exp(+-i theta) */
-  double modulus[2]; /* |root| of the two, ascending: von Neumann stable where both are 1 */
-  bool stable;       /* the roots lie on the unit circle or tend to it */
+  double modulus[2]; /* |root| of the two, ascending, at the largest volume looked at */
+  double root_v[EBB_ROOT_VOLUMES], root_modulus[EBB_ROOT_VOLUMES]; /* volumes, and the larger modulus there */
+  enum ebb_stability stability;
   /* Second evidence: Weyl's disc at z = i scale has radius 1/(2 Im z sum_{n<N} |p_n(z)|^2), p_n the solution of the
    * first kind: it shrinks to a point exactly where the operator is essentially self-adjoint. */
   enum ebb_limit weyl;

@@ -34,11 +34,11 @@ struct ebb_symbol {
   enum ebb_curvature curvature;
   bool root;
   double scale, growth;
-  double part;    /* w */
-  double square;  /* gamma^2 */
-  double d1;      /* D = d1 v^{-1/3} */
-  double s;       /* Lambda over Lambda_c of the constants */
-  double p_phi;   /* momentum of a scalar beside the clock */
+  double part;   /* w */
+  double square; /* gamma^2 */
+  double d1;     /* D = d1 v^{-1/3} */
+  double s;      /* Lambda over Lambda_c of the constants */
+  double p_phi;  /* momentum of a scalar beside the clock */
   double volume_unit, volume_power;
   double local, local_power; /* rho_c(v) = local v^local_power; a constant where the steps are of equal volume */
   double critical;           /* rho_c of the constants, which s refers to */
@@ -53,10 +53,14 @@ struct ebb_symbol_value {
   double f, f_x, f_b, f_bb;
 };
 struct ebb_symbol_value ebb_symbol_at(const struct ebb_symbol *symbol, double v, double b);
+/* f(b) alone: rho_c(v) f is the density of the gravitational part, equal to that of all energy. */
+double ebb_symbol_connection(const struct ebb_symbol *symbol, double v, double b);
 /* h and its derivatives with respect to v and b (either may be NULL). */
 double ebb_symbol_h(const struct ebb_symbol *symbol, double v, double b, double *h_v, double *h_b);
 
 double ebb_symbol_volume(const struct ebb_symbol *symbol, double v);
+/* rho_c(v), 1/length^4: 3/(8 pi G gamma^2 lambda(v)^2) */
+double ebb_symbol_local(const struct ebb_symbol *symbol, double v);
 /* F on the level set of a momentum of the clock: h/(scale v^growth) with h = p^2 (root) or p. */
 double ebb_symbol_level(const struct ebb_symbol *symbol, double momentum, double v);
 /* Energy density of matter in 1/length^4, from the clock's momentum (energy, for the linear clocks): the clock's own
@@ -94,8 +98,8 @@ size_t ebb_symbol_turnings(const struct ebb_symbol *symbol, double momentum,
 /* The bounce that ends the classical contracting branch; false where there is none. */
 bool ebb_symbol_bounce(const struct ebb_symbol *symbol, double momentum, struct ebb_symbol_turning *turning);
 
-/* The modified Friedmann equation and the critical density of a prescription, clock or curvature, as text; NULL for a
- * name that has none. */
+/* The modified Friedmann equation and the critical density that go with a prescription, a clock or the key of a
+ * setting, as text; NULL for a name that has none. */
 const char *ebb_symbol_text(const char *name);
 
 #endif

@@ -3,6 +3,7 @@
 
 #include "result.h"
 
+#include <stddef.h>
 #include <string.h>
 
 PetscErrorCode ebb_record_create(PetscInt m, size_t levels, struct ebb_record *r)
@@ -49,8 +50,8 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
   PetscCall(ebb_store_set_text(store, "/", "propagator", ebb_method_name(run->method)));
   PetscCall(ebb_store_set_text(store, "/", "propagator_reason", run->why));
   PetscCall(ebb_result_lattice(store, &run->lattice, &run->constants));
-  PetscCall(
-      ebb_result_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
+  PetscCall(ebb_result_line(store, "/clock/value", run->m, run->phi, run->rows.clock->clock_unit, "value of the clock",
+                            NULL));
   PetscCall(ebb_store_make_scale(store, "/clock/value"));
   PetscCall(ebb_store_set_text(store, "/clock", "kind", run->settings->clock.kind));
   if (o->keep & EBB_KEEP_PROBABILITY)
@@ -66,7 +67,7 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
 
     PetscCall(PetscMalloc1(states, &clock));
     for (hsize_t s = 0; s < states; s++) clock[s] = run->phi[s * (hsize_t)o->every];
-    PetscCall(ebb_result_line(store, "/state/clock", (PetscInt)states, clock, "1/sqrt(G)",
+    PetscCall(ebb_result_line(store, "/state/clock", (PetscInt)states, clock, run->rows.clock->clock_unit,
                               "clock values of the stored states", NULL));
     PetscCall(ebb_store_make_scale(store, "/state/clock"));
     PetscCall(PetscFree(clock));
@@ -146,20 +147,23 @@ static PetscErrorCode put_quantiles(struct ebb_store *store, const struct ebb_ru
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_bounce *b)
+static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_run *run, const struct ebb_bounce *b)
 {
   static const char g[] = "/bounce";
 
   PetscFunctionBegin;
-  PetscCall(put_value(store, g, "clock", b->clock, "1/sqrt(G)", "clock value of the bounce"));
+  PetscCall(put_value(store, g, "clock", b->clock, run->rows.clock->clock_unit, "clock value of the bounce"));
   PetscCall(put_value(store, g, "v", b->v, "1", "smallest volume, as |v|"));
   PetscCall(put_value(store, g, "volume", b->volume, "length^3", "smallest physical volume"));
   PetscCall(put_value(store, g, "density", b->density, "1/G^2", "density_mean at the bounce"));
   PetscCall(put_value(store, g, "ratio", b->ratio, "1", "bounce volume over the effective one"));
   PetscCall(put_value(store, g, "v_median", b->v_median, "1", "smallest median of |v| over the clock"));
   PetscCall(put_value(store, g, "v_mode", b->v_mode, "1", "most probable |v| at the bounce clock"));
-  PetscCall(put_value(store, g, "effective_volume", b->effective_volume, "length^3", "<p>/sqrt(2 rho_c)"));
-  PetscCall(put_value(store, g, "effective_density", b->effective_density, "1/G^2", "density at the effective bounce"));
+  PetscCall(put_value(
+      store, g, "effective_volume", b->effective_volume, "length^3",
+      "volume of the effective bounce at the mean momentum, <p>/sqrt(2 rho_c) of a flat model with scalar clock"));
+  PetscCall(put_value(store, g, "effective_density", b->effective_density, "1/G^2",
+                      "density of all energy at the effective bounce"));
   PetscCall(ebb_result_number(store, "/bounce/turning_v", b->turning_v, "1",
                               "where the grid turns a continuum operator's packet (no property of the continuum)"));
   PetscCall(ebb_store_set_text(store, g, "verdict", ebb_verdict_names[b->verdict]));
@@ -169,7 +173,63 @@ static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_bounc
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode put_effective(struct ebb_store *store, const struct ebb_effective *e)
+/* One member of every turning point, with a relative error. */
+static PetscErrorCode put_turning(struct ebb_store *store, const char *name, const struct ebb_turning_points *t,
+                                  size_t offset, double relative, const char *units, const char *long_name)
+{
+  double value[EBB_EFFECTIVE_TURNINGS], error[EBB_EFFECTIVE_TURNINGS];
+  char path[96], text[128];
+
+  PetscFunctionBegin;
+  for (size_t i = 0; i < t->n; i++) {
+    value[i] = *(const double *)((const char *)&t->point[i] + offset);
+    error[i] = relative * fabs(value[i]);
+  }
+  PetscCall(PetscSNPrintf(path, sizeof path, "/effective/turning_%s", name));
+  PetscCall(ebb_result_line(store, path, (PetscInt)t->n, value, units, long_name, "/effective/turning_clock"));
+  PetscCall(PetscSNPrintf(path, sizeof path, "/effective/turning_%s_error", name));
+  PetscCall(PetscSNPrintf(text, sizeof text, "absolute error of: %s", long_name));
+  PetscCall(ebb_result_line(store, path, (PetscInt)t->n, error, units, text, "/effective/turning_clock"));
+  PetscFunctionReturn(0);
+}
+
+/* Turning points of the effective orbit, its period and its ends. unit: of the clock. */
+static PetscErrorCode put_turnings(struct ebb_store *store, const char *unit, const struct ebb_turning_points *t)
+{
+  static const double rounding = 64.0 * PETSC_MACHINE_EPSILON; /* volumes are roots to rounding */
+  static const char g[] = "/effective", scale[] = "/effective/turning_clock";
+  const PetscInt n = (PetscInt)t->n;
+  double clock[EBB_EFFECTIVE_TURNINGS], error[EBB_EFFECTIVE_TURNINGS], kind[EBB_EFFECTIVE_TURNINGS];
+
+  PetscFunctionBegin;
+  PetscCall(put_value(store, g, "period", (struct ebb_measured){t->period, t->period_error}, unit,
+                      "period of the effective orbit"));
+  PetscCall(put_value(store, g, "begin", (struct ebb_measured){t->begin, t->begin_error}, unit,
+                      "clock value before which there is no effective orbit"));
+  PetscCall(put_value(store, g, "end", (struct ebb_measured){t->end, t->end_error}, unit,
+                      "clock value after which there is no effective orbit"));
+  if (n == 0) PetscFunctionReturn(0);
+  for (PetscInt i = 0; i < n; i++) {
+    clock[i] = t->point[i].clock;
+    error[i] = t->point[i].clock_error;
+    kind[i] = t->point[i].bounce ? 1.0 : 0.0;
+  }
+  PetscCall(
+      ebb_result_line(store, scale, n, clock, unit, "turning points of the effective orbit, of one period", NULL));
+  PetscCall(ebb_store_make_scale(store, scale));
+  PetscCall(ebb_result_line(store, "/effective/turning_clock_error", n, error, unit,
+                            "absolute error of the clock value of a turning point", scale));
+  PetscCall(ebb_result_line(store, "/effective/turning_bounce", n, kind, "1",
+                            "1: a bounce, the volume is least; 0: a recollapse, it is greatest", scale));
+  PetscCall(put_turning(store, "v", t, offsetof(struct ebb_turning_point, v), rounding, "1", "|v| of a turning point"));
+  PetscCall(put_turning(store, "volume", t, offsetof(struct ebb_turning_point, volume), rounding, "length^3",
+                        "volume of a turning point"));
+  PetscCall(put_turning(store, "density", t, offsetof(struct ebb_turning_point, density), rounding, "1/G^2",
+                        "energy density of matter at a turning point"));
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode put_effective(struct ebb_store *store, const char *unit, const struct ebb_effective *e)
 {
   static const char clock[] = "/clock/value";
 
@@ -185,6 +245,8 @@ static PetscErrorCode put_effective(struct ebb_store *store, const struct ebb_ef
                             "effective trajectory, energy density of the clock and of a scalar beside it", clock));
   PetscCall(ebb_result_line(store, "/effective/density_error", e->m, e->density_error, "1/G^2",
                             "absolute error of the effective density", clock));
+  PetscCall(ebb_store_set_text(store, "/effective", "reason", e->reason));
+  PetscCall(put_turnings(store, unit, &e->turning));
   PetscFunctionReturn(0);
 }
 
@@ -265,8 +327,8 @@ PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run
   PetscFunctionBegin;
   if (keep & EBB_KEEP_MOMENTS) PetscCall(put_series(store, run, record));
   if ((keep & EBB_KEEP_QUANTILES) && record->levels) PetscCall(put_quantiles(store, run, record));
-  PetscCall(put_bounce(store, &record->bounce));
-  PetscCall(put_effective(store, &record->effective));
+  PetscCall(put_bounce(store, run, &record->bounce));
+  PetscCall(put_effective(store, run->rows.clock->clock_unit, &record->effective));
   if (record->has_law) PetscCall(put_law(store, run, &record->law));
   PetscCall(put_budget(store, &record->budget));
   if (run->bundle) PetscCall(put_field(store, run));

@@ -36,6 +36,7 @@ void ebb_run_extension(const struct ebb_run *run, struct ebb_spectrum_request *l
     levels->extension = EBB_EXTENSION_TAU;
     levels->angle = g->extension_tau;
   }
+  levels->exact = true;
   levels->wall =
       ebb_rows_nature(&run->rows) == EBB_NATURE_CONTINUOUS || ebb_rows_nature(&run->rows) == EBB_NATURE_OVERCRITICAL;
 }

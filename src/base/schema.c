@@ -200,8 +200,9 @@ static const struct ebb_setting rows[] = {
     {.key = "numerics.tolerance", .unit = "1", REAL(numerics.tolerance), .range = {1e-14, 1e-2, false, false},
      .fallback = "1e-10", .sentence = "target relative error of the moments"},
     {.key = "numerics.eigensolver", NAME(numerics.eigensolver), .fallback = "auto",
-     .choices = CHOICES("auto", "bisection"),
-     .sentence = "how a list of eigenvalues is found"},
+     .choices = CHOICES("auto", "bisection", "slicing"),
+     .sentence = "how a list of eigenvalues is found: by bisection on every rank, or by spectrum slicing over ranks, whose "
+                 "inertias prove a second time that none is missing; auto: bisection"},
 
     /* spectrum */
     {.key = "spectrum.count", INTEGER(spectrum.count), .range = {1, 100000, false, false},

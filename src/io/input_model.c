@@ -8,8 +8,8 @@
 
 #include <string.h>
 
-/* The first setting that goes beyond the flat model without cosmological constant, with a scalar clock and a lattice of
- * volumes; NULL: none. */
+/* The first setting that goes beyond the flat model without cosmological constant and with a scalar clock; NULL: none.
+ */
 static const struct ebb_given *beyond(const struct ebb_reader *reader)
 {
   static const char *const lambda = "gravity.cosmological_constant";
@@ -20,7 +20,6 @@ static const struct ebb_given *beyond(const struct ebb_reader *reader)
     return ebb_reader_given(reader,
                             ebb_reader_taken(reader, lambda) ? lambda : "gravity.cosmological_constant_over_critical");
   if (strcmp(s->clock.kind, "scalar") != 0) return ebb_reader_given(reader, "clock.kind");
-  if (reader->prescription->scheme != EBB_SCHEME_VOLUME) return ebb_reader_given(reader, "gravity.prescription");
   return NULL;
 }
 
@@ -95,6 +94,35 @@ static void check_extension(const struct ebb_reader *reader, const struct ebb_ro
                         "phase at infinity drifts; give gravity.extension.tau");
 }
 
+/* A continuous spectrum: wave numbers, and waves whose normalisation is known; always false, there is no list. */
+static bool check_waves(const struct ebb_reader *reader, const struct ebb_rows *rows)
+{
+  const struct ebb_given *k = ebb_reader_given(reader, "spectrum.k");
+  const struct ebb_given *points = ebb_reader_given(reader, "lattice.points");
+  const struct ebb_given *other = ebb_reader_given(reader, "spectrum.count")->node
+                                      ? ebb_reader_given(reader, "spectrum.count")
+                                      : ebb_reader_given(reader, "spectrum.interval");
+
+  if (!ebb_rows_is_flat(rows))
+    ebb_reader_complain(reader, k->node ? k->origin : ebb_reader_section(reader, "gravity"),
+                        "this model has a continuous spectrum, and its generalised eigenfunctions are not available: "
+                        "they are with a scalar clock, no curvature and no cosmological constant; 'selfadjoint' "
+                        "examines it");
+  else if (other->node)
+    ebb_reader_complain(reader, other->origin,
+                        "this model has a continuous spectrum: no list of eigenvalues, but a generalised eigenfunction "
+                        "for every wave number; give spectrum.k: [0.5, 1, 2]");
+  else if (!k->node)
+    ebb_reader_complain(reader, ebb_reader_section(reader, "spectrum"),
+                        "spectrum.k is missing: this model has a continuous spectrum; say at which wave numbers, k: "
+                        "[0.5, 1, 2]");
+  else if (points->node)
+    ebb_reader_complain(reader, points->origin,
+                        "lattice.points asks for a wall, and with one there is no continuous spectrum; say by "
+                        "lattice.volume_max how far the eigenfunctions are wanted");
+  return false;
+}
+
 /* Complains where the operator needs an extension and none is given; false then. */
 static bool has_extension(const struct ebb_reader *reader, const struct ebb_rows *rows)
 {
@@ -145,41 +173,16 @@ static void check_evolution(const struct ebb_reader *reader, const struct ebb_ro
 {
   const enum ebb_nature nature = ebb_rows_nature(rows);
 
-  if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
+  if (reader->prescription->scheme != EBB_SCHEME_VOLUME)
+    ebb_reader_complain(reader, ebb_reader_given(reader, "gravity.prescription")->origin,
+                        "evolution with prescription '%s' is not available in this version; 'spectrum' and "
+                        "'selfadjoint' are",
+                        reader->prescription->name);
+  else if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
     complain_overcritical(reader, rows);
   else if (nature == EBB_NATURE_FAMILY)
     (void)has_extension(reader, rows);
   check_profile(reader, rows);
-}
-
-/* A continuous spectrum: wave numbers, and waves whose normalisation is known; always false, there is no list. */
-static bool check_waves(const struct ebb_reader *reader, const struct ebb_rows *rows)
-{
-  const struct ebb_given *k = ebb_reader_given(reader, "spectrum.k");
-  const struct ebb_given *points = ebb_reader_given(reader, "lattice.points");
-  const struct ebb_given *other = ebb_reader_given(reader, "spectrum.count")->node
-                                      ? ebb_reader_given(reader, "spectrum.count")
-                                      : ebb_reader_given(reader, "spectrum.interval");
-  const bool plain = rows->s == 0.0 && rows->curvature == EBB_CURVATURE_NONE && !strcmp(rows->clock->kind, "scalar");
-
-  if (!plain)
-    ebb_reader_complain(reader, k->node ? k->origin : ebb_reader_section(reader, "gravity"),
-                        "this model has a continuous spectrum, and its generalised eigenfunctions are not available: "
-                        "they are with a scalar clock, no curvature and no cosmological constant; 'selfadjoint' "
-                        "examines it");
-  else if (other->node)
-    ebb_reader_complain(reader, other->origin,
-                        "this model has a continuous spectrum: no list of eigenvalues, but a generalised eigenfunction "
-                        "for every wave number; give spectrum.k: [0.5, 1, 2]");
-  else if (!k->node)
-    ebb_reader_complain(reader, ebb_reader_section(reader, "spectrum"),
-                        "spectrum.k is missing: this model has a continuous spectrum; say at which wave numbers, k: "
-                        "[0.5, 1, 2]");
-  else if (points->node)
-    ebb_reader_complain(reader, points->origin,
-                        "lattice.points asks for a wall, and with one there is no continuous spectrum; say by "
-                        "lattice.volume_max how far the eigenfunctions are wanted");
-  return false;
 }
 
 /* Why this operator has no list of eigenvalues; false where it has none. */

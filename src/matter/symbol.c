@@ -71,7 +71,7 @@ static struct ebb_symbol_value quadratic(double a, double c, double m, double b)
                                    (a - 2.0 * c * x) * 0.5 * m * m * cos(m * b) - 2.0 * c * slope * slope};
 }
 
-static struct ebb_symbol_value connection(const struct ebb_symbol *y, double d, double b)
+static struct ebb_symbol_value of_connection(const struct ebb_symbol *y, double d, double b)
 {
   const double off = sin(b) - d;
 
@@ -94,7 +94,7 @@ static struct ebb_symbol_value connection(const struct ebb_symbol *y, double d, 
 struct ebb_symbol_value ebb_symbol_at(const struct ebb_symbol *y, double v, double b)
 {
   const double d = y->d1 != 0.0 ? y->d1 / cbrt(v) : 0.0;
-  struct ebb_symbol_value value = connection(y, d, b);
+  struct ebb_symbol_value value = of_connection(y, d, b);
 
   if (y->kind == EBB_SYMBOL_CONNECTION || y->curvature != EBB_CURVATURE_NONE) {
     const double sign = y->curvature == EBB_CURVATURE_OPEN ? -1.0 : 1.0;
@@ -109,13 +109,18 @@ struct ebb_symbol_value ebb_symbol_at(const struct ebb_symbol *y, double v, doub
     value.f_x -= d * slope / 3.0;
   }
   if (y->s != 0.0 || y->p_phi != 0.0) {
-    const double local = y->local * pow(v, y->local_power), p = y->p_phi / ebb_symbol_volume(y, v);
+    const double local = ebb_symbol_local(y, v), p = y->p_phi / ebb_symbol_volume(y, v);
     const double lambda = y->s * y->critical / local, kinetic = 0.5 * p * p / local;
 
     value.f -= lambda + kinetic;
     value.f_x += y->local_power * lambda + (2.0 * y->volume_power + y->local_power) * kinetic;
   }
   return value;
+}
+
+double ebb_symbol_connection(const struct ebb_symbol *y, double v, double b)
+{
+  return of_connection(y, y->d1 != 0.0 ? y->d1 / cbrt(v) : 0.0, b).f;
 }
 
 double ebb_symbol_h(const struct ebb_symbol *y, double v, double b, double *h_v, double *h_b)
@@ -133,6 +138,11 @@ double ebb_symbol_volume(const struct ebb_symbol *y, double v)
   return y->volume_unit * (y->volume_power == 1.0 ? v : pow(v, y->volume_power));
 }
 
+double ebb_symbol_local(const struct ebb_symbol *y, double v)
+{
+  return y->local_power == 0.0 ? y->local : y->local * pow(v, y->local_power);
+}
+
 double ebb_symbol_level(const struct ebb_symbol *y, double momentum, double v)
 {
   /* the square is taken last: v^growth of a large universe overflows */
@@ -145,13 +155,13 @@ double ebb_symbol_density(const struct ebb_symbol *y, double v, double momentum)
 {
   const double p = y->p_phi / ebb_symbol_volume(y, v);
 
-  return y->local * pow(v, y->local_power) * ebb_symbol_level(y, momentum, v) + 0.5 * p * p;
+  return ebb_symbol_local(y, v) * ebb_symbol_level(y, momentum, v) + 0.5 * p * p;
 }
 
 double ebb_symbol_hubble(const struct ebb_symbol *y, double v, double b)
 {
   /* dv/dt = 2 d/db (V rho_c(v) F), and H = power d ln v/3dt */
-  return 2.0 / 3.0 * y->volume_power * (ebb_symbol_volume(y, v) / v) * y->local * pow(v, y->local_power) *
+  return 2.0 / 3.0 * y->volume_power * (ebb_symbol_volume(y, v) / v) * ebb_symbol_local(y, v) *
          ebb_symbol_at(y, v, b).f_b;
 }
 
@@ -175,7 +185,7 @@ double ebb_symbol_violation(const struct ebb_symbol *y, double momentum, double 
 
 double ebb_symbol_critical_density(const struct ebb_symbol *y, double v, bool second)
 {
-  const double local = y->local * pow(v, y->local_power), d = y->d1 != 0.0 ? y->d1 / cbrt(v) : 0.0;
+  const double local = ebb_symbol_local(y, v), d = y->d1 != 0.0 ? y->d1 / cbrt(v) : 0.0;
   const double off = second ? 1.0 + d : 1.0 - d;
 
   switch (y->kind) {

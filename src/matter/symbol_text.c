@@ -30,15 +30,17 @@ static const struct { const char *name, *text; } table[] = {
     {"dust_densitised", "rho = p_T/V; flat bounce at V = p_T/rho_c, V = V_b + 6 pi G p_T (T - T_b)^2"},
     {"unimodular", "rho = Lambda/(8 pi G) + p_phi^2/(2 V^2) <= rho_c; no bounce without the scalar"},
     {"radiation", "rho = p_A^2/(2 V^{4/3}); flat bounce at V = [p_A^2/(2 rho_c)]^{3/4}"},
-    {"none", "H^2 = (8 pi G/3) rho (1 - rho/rho_c)"},
-    {"closed", "H^2 = (8 pi G/3) (rho - rho_1) (1 - (rho - rho_1)/rho_c),  rho_1 = rho_c [(1 + gamma^2) D^2 - sin^2 D],\n"
-               "D = lambda/a; bounce at rho = rho_c + rho_1, recollapse at rho = rho_1"},
-    {"closed_connection", "H = (sin b - D) cos b/(gamma lambda),  rho = rho_c [(sin b - D)^2 + gamma^2 D^2],  D = lambda/a;\n"
-                          "two bounces in turn, at rho_c [(1 - D)^2 + gamma^2 D^2] and rho_c [(1 + D)^2 + gamma^2 D^2];\n"
-                          "recollapse at rho = rho_c gamma^2 D^2 = 3/(8 pi G a^2)"},
-    {"open", "H^2 = (8 pi G/3) (rho + rho_k) (1 - (rho + rho_k)/rho_c),  rho_k = 3/(8 pi G a^2); bounce also without matter,\n"
-             "at a = gamma lambda"},
-    {"gravity.cosmological_constant", "rho + Lambda/(8 pi G) in place of rho; bounce at rho_c - Lambda/(8 pi G)"},
+    {"gravity.curvature",
+     "with D = lambda/a:\n"
+     "closed: H^2 = (8 pi G/3) (rho - rho_1) (1 - (rho - rho_1)/rho_c),  rho_1 = rho_c [(1 + gamma^2) D^2 - sin^2 D];\n"
+     "bounce at rho = rho_c + rho_1, recollapse at rho = rho_1\n"
+     "closed_connection: H = (sin b - D) cos b/(gamma lambda),  rho = rho_c [(sin b - D)^2 + gamma^2 D^2];\n"
+     "two bounces in turn, at rho_c [(1 - D)^2 + gamma^2 D^2] and rho_c [(1 + D)^2 + gamma^2 D^2], recollapse at\n"
+     "rho = rho_c gamma^2 D^2 = 3/(8 pi G a^2)\n"
+     "open: H^2 = (8 pi G/3) (rho + rho_k) (1 - (rho + rho_k)/rho_c),  rho_k = 3/(8 pi G a^2);\n"
+     "bounce also without matter, at a = gamma lambda"},
+    {"gravity.cosmological_constant", "rho + Lambda/(8 pi G) in place of rho: bounce where matter has rho_c - Lambda/(8 pi G)"},
+    {"gravity.lorentzian_weight", "omega: w = omega gamma^2 in the equations of mlqc1 and mlqc2"},
 };
 /* clang-format on */
 

@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/bounce.h"
 
-#include "ebbturn/symbol.h"
+#include "ebbturn/effective.h"
 
 #include <math.h>
 #include <string.h>
@@ -230,24 +230,14 @@ static double edge_speed(const struct ebb_lattice *lattice)
 static void effective(const struct ebb_source *source, double p, double p_error, struct ebb_bounce *bounce)
 {
   struct ebb_rows rows = source->lattice->rows;
-  const double unit = source->constants->newton * source->constants->newton;
-  struct ebb_symbol symbol;
-  struct ebb_symbol_turning here, moved;
   double volume[2], density[2];
 
   rows.constants = *source->constants;
   rows.p_phi = source->field_momentum != 0.0 ? source->field_momentum : rows.p_phi;
   ebb_rows_make(&rows);
-  symbol = ebb_symbol_make(&rows);
-  if (!ebb_symbol_bounce(&symbol, p, &here) || !ebb_symbol_bounce(&symbol, p + p_error, &moved)) return;
-  volume[0] = ebb_symbol_volume(&symbol, here.v);
-  volume[1] = ebb_symbol_volume(&symbol, moved.v);
-  density[0] = unit * ebb_symbol_density(&symbol, here.v, p);
-  density[1] = unit * ebb_symbol_density(&symbol, moved.v, p + p_error);
-  bounce->effective_volume =
-      (struct ebb_measured){volume[0], fabs(volume[1] - volume[0]) + 4.0 * PETSC_MACHINE_EPSILON * volume[0]};
-  bounce->effective_density =
-      (struct ebb_measured){density[0], fabs(density[1] - density[0]) + 4.0 * PETSC_MACHINE_EPSILON * density[0]};
+  ebb_effective_bounce(&rows, p, p_error, volume, density);
+  bounce->effective_volume = (struct ebb_measured){volume[0], volume[1]};
+  bounce->effective_density = (struct ebb_measured){density[0], density[1]};
 }
 
 /* Volume, density and mode at the bounce clock, with errors from the budget and the independent rule. */

@@ -20,11 +20,14 @@ const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS] = {
 };
 
 /* Moments that may vanish are compared with their own bound instead of their value. */
-static double scale_of(const struct ebb_constants *c, int which, const double moment[])
+static double scale_of(const struct ebb_constants *c, bool family, int which, const double moment[])
 {
   const double value = moment[which];
 
   switch (which) {
+  case EBB_MOMENT_DENSITY_MEAN:
+  case EBB_MOMENT_DENSITY_SANDWICH: /* vanish where the universe is infinitely large */
+    return family ? fmax(fabs(value), c->newton * c->newton * c->critical_density) : fabs(value);
   case EBB_MOMENT_FIELD_MEAN:
     return fmax(fabs(value), moment[EBB_MOMENT_FIELD_SPREAD]);
   case EBB_MOMENT_HUBBLE_MEAN:
@@ -200,7 +203,7 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   double contribution[EBB_CONTRIBUTIONS];
 
   for (int i = 0; i < EBB_MOMENTS; i++)
-    error[i] = scale_of(c, i, moment) * (budget->quadrature[i] + common + edge0 + 2.0 * state);
+    error[i] = scale_of(c, family, i, moment) * (budget->quadrature[i] + common + edge0 + 2.0 * state);
   contribution[EBB_ERROR_EDGE] = family ? edge0 : edge1 / v;
   contribution[EBB_ERROR_QUADRATURE] = budget->quadrature[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN];
   contribution[EBB_ERROR_NORMALISATION] = normalisation;
@@ -294,7 +297,7 @@ void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c
     ebb_moments_from_sums(c, lattice, rule, s, a);
     ebb_moments_from_sums(c, lattice, check, s, b);
     for (int i = 0; i < EBB_MOMENTS; i++) {
-      const double scale = scale_of(c, i, a);
+      const double scale = scale_of(c, family, i, a);
       if (scale > 0.0) budget->quadrature[i] = fmax(budget->quadrature[i], fabs(a[i] - b[i]) / scale);
     }
     for (size_t q = 0; q < levels; q++) {

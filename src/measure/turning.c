@@ -197,3 +197,27 @@ PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double 
   t->end_error = apart(t->end, rough.end, side[0].end_error);
   PetscFunctionReturn(0);
 }
+
+void ebb_effective_bounce(const struct ebb_rows *rows, double p, double p_error, double volume[2], double density[2])
+{
+  const struct ebb_symbol symbol = ebb_symbol_make(rows);
+  const double near[] = {p, p - p_error, p + p_error}, unit = symbol.newton * symbol.newton;
+
+  volume[0] = volume[1] = density[0] = density[1] = NAN;
+  for (int i = 0; i < 3; i++) {
+    struct ebb_symbol_turning bounce;
+    double v, rho;
+
+    if (isnan(near[i]) || !ebb_symbol_bounce(&symbol, near[i], &bounce)) continue;
+    v = ebb_symbol_volume(&symbol, bounce.v);
+    rho = unit * ebb_symbol_local(&symbol, bounce.v) * ebb_symbol_connection(&symbol, bounce.v, bounce.b);
+    if (i == 0) {
+      volume[0] = v;
+      density[0] = rho;
+      volume[1] = 4.0 * DBL_EPSILON * v;
+      density[1] = 4.0 * DBL_EPSILON * rho;
+    }
+    volume[1] = fmax(volume[1], fabs(v - volume[0]));
+    density[1] = fmax(density[1], fabs(rho - density[0]));
+  }
+}

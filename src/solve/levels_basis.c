@@ -47,7 +47,6 @@ PetscErrorCode ebb_basis_create_levels(const struct ebb_spectrum *spectrum, doub
                                        struct ebb_basis **basis)
 {
   const PetscInt sites = ebb_lattice_size(&spectrum->lattice), n = spectrum->n;
-  const double whole = sqrt(1.0 + spectrum->tail_mass);
   struct table *t;
 
   PetscFunctionBegin;
@@ -61,7 +60,7 @@ PetscErrorCode ebb_basis_create_levels(const struct ebb_spectrum *spectrum, doub
     const double z = spectrum->eigenvalue[j];
 
     (*basis)->k[j] = (root ? sqrt(fmax(z, 0.0)) : z) / kappa;
-    t->vectors[(size_t)(j + 1) * (size_t)sites - 1] *= whole;
+    t->vectors[(size_t)(j + 1) * (size_t)sites - 1] *= sqrt(1.0 + (spectrum->tail ? spectrum->tail[j] : 0.0));
   }
   PetscFunctionReturn(0);
 }

@@ -199,6 +199,7 @@ static void levels_cut(struct ebb_spectrum *s, PetscInt first, PetscInt last)
   s->n = last - first + 1;
   memmove(s->eigenvalue, s->eigenvalue + first, (size_t)s->n * sizeof *s->eigenvalue);
   memmove(s->residual, s->residual + first, (size_t)s->n * sizeof *s->residual);
+  memmove(s->tail, s->tail + first, (size_t)s->n * sizeof *s->tail);
   memmove(s->error, s->error + first, (size_t)s->n * sizeof *s->error);
   memmove(s->function, s->function + (size_t)first * sites, (size_t)s->n * sites * sizeof *s->function);
 }

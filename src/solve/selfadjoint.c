@@ -10,10 +10,14 @@
 #include <complex.h>
 #include <math.h>
 
-static const double FAR = 1e8, FARTHER = 1e10; /* volumes between which exponents are taken */
-static const double LEVEL = 1e-6;              /* |cos theta + 1| below which the roots count as meeting at -1 */
-static const double EXACT = 1e-3;              /* exponent -1 to this precision: the sum diverges like a logarithm */
-static const double SUMMABLE = 0.05;           /* farther below -1 than this: the sum converges */
+static const double FAR = 1e8, FARTHER = 1e10; /* volumes between which exponents and roots are taken ... */
+static const double FARTHEST = 1e60;   /* ... both moved outwards where that is not far enough, at most to here */
+static const double OUTGROWN = 1e4;    /* |cos theta - 1| of a potential that has outgrown the hops */
+static const double ON_CIRCLE = 1e-12; /* |root| - 1 below which a root is on the unit circle: roundings */
+static const double FALLS = 0.5;       /* |root| - 1 that falls by more over a factor 100 in v tends to 0 */
+static const double LEVEL = 1e-6;      /* |cos theta + 1| below which the roots count as meeting at -1 */
+static const double EXACT = 1e-3;      /* exponent -1 to this precision: the sum diverges like a logarithm */
+static const double SUMMABLE = 0.05;   /* farther below -1 than this: the sum converges */
 static const double CONVERGES = -0.15, DIVERGES = -0.03; /* slopes of the Weyl sums */
 static const double OVERGROWN = 1e200;
 enum { TAIL_OCTAVES = 4 };
@@ -39,16 +43,47 @@ static double outer_modulus(double cosine)
   return fabs(cosine) > 1.0 ? fabs(cosine) + sqrt(cosine * cosine - 1.0) : 1.0;
 }
 
+enum ebb_stability ebb_stability_decide(size_t n, const double largest[])
+{
+  const double first = largest[0] - 1.0, last = largest[n - 1] - 1.0;
+
+  if (last <= ON_CIRCLE || last < FALLS * first) return EBB_STABLE;
+  return first <= ON_CIRCLE || last > first / FALLS ? EBB_UNSTABLE_UNBOUNDED : EBB_UNSTABLE_BOUNDED;
+}
+
+/* The largest volume to look at: FARTHER, or where a potential that outgrows the hops, like V^2 on a lattice of fixed
+ * or refined step, has done so, however small it is. */
+static double outermost(const struct ebb_rows *rows)
+{
+  const double excess = 2.0 * rows->volume_power - 2.0; /* |drive| ~ v^excess */
+
+  if (rows->s == 0.0 || !(excess > 0.0)) return FARTHER;
+  return fmin(fmax(FARTHER, FARTHER * pow(OUTGROWN / fabs(drive(rows, FARTHER, false)), 1.0 / excess)), FARTHEST);
+}
+
+static void roots(const struct ebb_rows *rows, double far, struct ebb_selfadjoint *r)
+{
+  const bool bare = ebb_rows_potential(rows, FAR) == 0.0;
+
+  for (int i = 0; i < EBB_ROOT_VOLUMES; i++) {
+    const double v = far * pow(FAR / FARTHER, 1.0 - i / (EBB_ROOT_VOLUMES - 1.0));
+
+    r->root_v[i] = v;
+    r->cosine = bare ? 1.0 : 1.0 + drive(rows, v, false);
+    r->root_modulus[i] = outer_modulus(r->cosine);
+  }
+  r->modulus[1] = r->root_modulus[EBB_ROOT_VOLUMES - 1];
+  r->modulus[0] = 1.0 / r->modulus[1];
+  r->stability = ebb_stability_decide(EBB_ROOT_VOLUMES, r->root_modulus);
+}
+
 static void asymptotics(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
 {
+  const double far = outermost(rows);
   bool bare = ebb_rows_potential(rows, FAR) == 0.0;
-  const double w = bare ? 0.0 : -drive(rows, FARTHER, false), nearer = bare ? 0.0 : -drive(rows, FAR, false);
+  const double w = bare ? 0.0 : -drive(rows, far, false);
 
-  r->cosine = 1.0 - w;
-  r->modulus[1] = outer_modulus(r->cosine);
-  r->modulus[0] = 1.0 / r->modulus[1];
-  /* roots that tend to the unit circle as v grows are stable; those that stay off it are not */
-  r->stable = r->modulus[1] == 1.0 || r->modulus[1] - 1.0 < 0.5 * (outer_modulus(1.0 - nearer) - 1.0);
+  roots(rows, far, r);
   r->exponent = NAN;
   /* Roots that meet at -1 (Lambda = Lambda_c): the gauge (-1)^n turns them to +1, and what is left of U beside C falls
    * off like the terms that Lambda = 0 has there. */

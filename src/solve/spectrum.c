@@ -1,12 +1,15 @@
 /* SPDX-License-Identifier: BSD-2-Clause
  *
  * The infinite matrix is cut after N sites, its eigenvalues are found by bisection (LAPACK dstebz), and N is doubled
- * until they stay. Where the operator is bounded below, the cut may cost what the outgoing link carries, and no
- * eigenvalue hides beyond a site from which on every Gershgorin disc lies above the wanted ones. In the limit-circle
- * case the last site carries the boundary condition of the extension (edge.h). */
+ * until they stay. Where the operator is bounded below (above), the cut may cost what the outgoing link carries, and no
+ * eigenvalue hides beyond a site from which on every Gershgorin disc lies above (below) the wanted ones. In the
+ * limit-circle case the last site carries the boundary condition of the extension (edge.h). */
 #include "ebbturn/spectrum.h"
 
 #include "edge.h"
+#include "extension.h"
+#include "limit_circle.h"
+#include "slicing.h"
 #include "sturm.h"
 
 #include <float.h>
@@ -87,7 +90,7 @@ static PetscErrorCode matrix_make(const struct ebb_spectrum_request *r, PetscInt
   } else {
     t->out[0] = t->e[t->n - 1];
     t->out[1] = rows->half ? 0.0 : ebb_rows_offdiagonal(rows, ebb_lattice_v(lattice, 0) - 4.0);
-    t->floor = t->d[t->n - 1] - fabs(t->e[t->n - 2]) - fabs(t->out[0]);
+    t->floor = fabs(t->d[t->n - 1]) - fabs(t->e[t->n - 2]) - fabs(t->out[0]);
   }
   PetscFunctionReturn(0);
 }
@@ -142,6 +145,7 @@ static PetscErrorCode pair_find(const struct matrix *t, PetscInt j, double x[], 
   PetscFunctionBegin;
   (void)ebb_sturm_vector(n, t->d, t->e, s->eigenvalue[j], (size_t)s->lattice.sites[1], x, pivots, &sign);
   s->residual[j] = ebb_sturm_residual(n, t->d, t->e, s->eigenvalue[j], x, &quadratic);
+  s->tail[j] = t->tail;
   cut = hypot(t->out[0] * x[n - 1], t->out[1] * x[0]);
   s->error[j] = ELEMENT_ROUNDINGS * DBL_EPSILON * quadratic;
   if (t->tail == 0.0) s->error[j] += hypot(s->residual[j], cut);
@@ -159,6 +163,8 @@ static void prove(const struct ebb_spectrum_request *r, const struct matrix *t, 
   s->counted[1] = r->count ? s->eigenvalue[last] + 2.0 * s->error[last] : nextafter(r->high, INFINITY);
   for (int i = 0; i < 2; i++) s->below[i] = (PetscInt)ebb_sturm_count((size_t)t->n, t->d, t->e, s->counted[i]);
   s->complete = s->below[1] - s->below[0] == s->n && (!r->count || s->below[0] == 0);
+  for (int i = 0; s->sliced && i < 2; i++)
+    if (s->inertia[i] != s->below[i]) s->complete = false;
   for (PetscInt j = 0; !r->count && j < s->n; j++)
     if (s->eigenvalue[j] - s->error[j] < r->low || s->eigenvalue[j] + s->error[j] > r->high) s->complete = false;
 }
@@ -170,7 +176,7 @@ static PetscErrorCode pairs_find(const struct ebb_spectrum_request *r, const str
 
   PetscFunctionBegin;
   PetscCall(PetscMalloc1((size_t)s->n * (size_t)t->n, &s->function));
-  PetscCall(PetscMalloc2(s->n, &s->residual, s->n, &s->error));
+  PetscCall(PetscMalloc3(s->n, &s->residual, s->n, &s->error, s->n, &s->tail));
   PetscCall(PetscMalloc2(t->n, &x, 2 * t->n, &pivots));
   for (PetscInt j = 0; j < s->n; j++) {
     PetscCall(pair_find(t, j, x, pivots, s));
@@ -180,6 +186,26 @@ static PetscErrorCode pairs_find(const struct ebb_spectrum_request *r, const str
   PetscCall(PetscFree2(x, pivots));
   s->tail_mass = t->tail;
   prove(r, t, s);
+  PetscFunctionReturn(0);
+}
+
+/* The values a second time, by slicing: in place of those of the bisection, so that the vectors' residuals speak of
+ * them. A list of another length is kept out and fails the proof. */
+static PetscErrorCode slice(const struct ebb_spectrum_request *r, const struct matrix *t, MPI_Comm comm,
+                            struct ebb_spectrum *s)
+{
+  PetscInt found;
+  double *values, *x, *pivots;
+  int sign;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_slicing_find(t->n, t->d, t->e, r->low, r->high, comm, &found, &values, s->inertia));
+  s->sliced = true;
+  PetscCall(PetscMalloc2(t->n, &x, 2 * t->n, &pivots));
+  for (PetscInt j = 0; found == s->n && j < found; j++)
+    s->eigenvalue[j] = values[j] + ebb_sturm_vector((size_t)t->n, t->d, t->e, values[j], 0, x, pivots, &sign);
+  PetscCall(PetscFree2(x, pivots));
+  PetscCall(PetscFree(values));
   PetscFunctionReturn(0);
 }
 
@@ -206,6 +232,7 @@ static bool far_enough(const struct ebb_spectrum_request *r, const struct matrix
   const double high = r->count ? (n ? z[n - 1] : 0.0) : r->high;
 
   if (r->sites) return true;
+  if (ebb_rows_nature(r->rows) == EBB_NATURE_INVERTED) return t->d[t->n - 1] < 0.0 && t->floor > -r->low;
   return t->floor > (t->tail > 0.0 ? fmax(fabs(high), fabs(r->low)) : high);
 }
 
@@ -234,6 +261,14 @@ static PetscErrorCode refuse(const struct ebb_spectrum_request *r, PetscInt foun
   PetscFunctionReturn(0);
 }
 
+/* Few enough eigenvalues in the interval to keep their functions; n: how many there are. */
+static bool bearable(const struct ebb_spectrum_request *r, const struct matrix *t, PetscInt *n)
+{
+  *n = (PetscInt)ebb_sturm_count((size_t)t->n, t->d, t->e, r->high) -
+       (PetscInt)ebb_sturm_count((size_t)t->n, t->d, t->e, r->low);
+  return (double)*n * (double)t->n <= (double)FUNCTIONS_MOST;
+}
+
 /* The doubling: leaves the last matrix in t, its eigenvalues in s, those before in *half (PetscMalloc'ed or NULL). */
 static PetscErrorCode grow(const struct ebb_spectrum_request *r, bool family, MPI_Comm comm, char *problem, size_t size,
                            double **half, struct matrix *t, struct ebb_spectrum *s)
@@ -246,6 +281,10 @@ static PetscErrorCode grow(const struct ebb_spectrum_request *r, bool family, MP
     const PetscInt sites = size_at(r, family, step, &last);
 
     PetscCall(matrix_make(r, sites, comm, t, &s->lattice));
+    if (!r->count && !bearable(r, t, &s->n)) { /* said before hours are spent on it */
+      PetscCall(refuse(r, s->n, t->n, true, true, problem, size));
+      break;
+    }
     PetscCall(values_find(r, t, &s->n, &s->eigenvalue));
     s->moved = compare(r, half_n, *half, s->n, s->eigenvalue, &tight);
     reaches = far_enough(r, t, s->n, s->eigenvalue);
@@ -275,14 +314,22 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
   PetscFunctionBegin;
   *spectrum = NULL;
   problem[0] = '\0';
-  PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) && (family || r->wall || nature == EBB_NATURE_DISCRETE),
+  PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) &&
+                 (family || r->wall || nature == EBB_NATURE_DISCRETE || (nature == EBB_NATURE_INVERTED && !r->count)),
              PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "no discrete spectrum without the extension the operator needs");
   if (family && r->sites && r->sites < SITES_LEAST) {
     PetscCall(PetscSNPrintf(problem, size, "an extension needs a lattice of %d sites or more", SITES_LEAST));
     PetscFunctionReturn(0);
   }
   PetscCall(PetscNew(&s));
+  *spectrum = s;
+  if (family && r->exact && ebb_limit_circle_known(r->rows)) {
+    PetscCall(ebb_extension_solve(r, comm, problem, size, s));
+    if (problem[0]) PetscCall(ebb_spectrum_destroy(spectrum));
+    PetscFunctionReturn(0);
+  }
   PetscCall(grow(r, family, comm, problem, size, &half, &t, s));
+  if (!problem[0] && r->slicing && !r->count) PetscCall(slice(r, &t, comm, s));
   if (!problem[0]) PetscCall(pairs_find(r, &t, half, s));
   PetscCall(PetscFree(half));
   PetscCall(matrix_clear(&t));
@@ -296,7 +343,7 @@ PetscErrorCode ebb_spectrum_destroy(struct ebb_spectrum **spectrum)
   PetscFunctionBegin;
   if (!*spectrum) PetscFunctionReturn(0);
   PetscCall(PetscFree((*spectrum)->eigenvalue));
-  PetscCall(PetscFree2((*spectrum)->residual, (*spectrum)->error));
+  PetscCall(PetscFree3((*spectrum)->residual, (*spectrum)->error, (*spectrum)->tail));
   PetscCall(PetscFree((*spectrum)->function));
   PetscCall(PetscFree(*spectrum));
   PetscFunctionReturn(0);

@@ -73,8 +73,7 @@ static const struct bad_model {
      "gravity.prescription = 'slcq' is unknown; nearest is 'slqc'"},
     {"prescription far from any", "gravity: {prescription: everything}\n" CLOCK STATE,
      1,
-     "gravity.prescription = 'everything' is unknown; there are slqc, aps, mmo, smmo, wdw, wdw_lattice, mu0, "
-     "refined"},
+     "gravity.prescription = 'everything' is unknown; there are slqc, aps, mmo, smmo, wdw, wdw_lattice, mu0, refined"},
     {"open without an extension", "gravity: {curvature: open}\n" CLOCK STATE,
      1,
      "gravity.extension is missing: the deficiency indices are (1,1), so there is a family of self-adjoint extensions, each with a spectrum of its own; give extension: {tau: ...}"},

@@ -115,6 +115,9 @@ Test(spectrum_command, needs_to_know_which_eigenvalues)
       {"gravity: {prescription: refined, reference_p: 2, polymer_scale: 1}\n",
        "gravity.reference_p says the same as gravity.polymer_scale = fixed_scale sqrt(reference_p); give at "
        "most one of them\n"},
+      {"gravity: {cosmological_constant: -1}\nspectrum: {count: 3}\nnumerics: {eigensolver: slicing}\n",
+       "numerics.eigensolver = 'slicing' finds every eigenvalue in an interval; give spectrum.interval in place of "
+       "spectrum.count"},
       {"gravity: {prescription: aps}\n", "spectrum.k is missing: this model has a continuous spectrum"},
       {"spectrum: {k: [0, 1]}\n", "spectrum.k = 0 must be in (0, 10000]"},
       {"spectrum: {k: [1]}\nlattice: {points: 50}\n", "lattice.points asks for a wall"},
@@ -182,6 +185,42 @@ Test(spectrum_command, worked_models)
       ebb_test_run_clear(&run);
     }
     free(model);
+  }
+  ebb_test_folder_remove(&folder);
+}
+
+/* Slicing gives the same list as bisection, within the errors of both, and proves it by inertias, on one rank and two
+ */
+Test(spectrum_command, slices_are_the_same_spectrum)
+{
+  static const char *const models[] = {
+      "gravity: {prescription: aps, cosmological_constant_over_critical: -0.2}\nspectrum: {interval: [100, 4000]}\n",
+      "gravity: {prescription: mmo, cosmological_constant_over_critical: 0.35, extension: {delta: 0.4}}\n"
+      "spectrum: {interval: [-100, 700]}\n"};
+  static const size_t count[] = {6, 3};
+  char *folder = ebb_test_folder_create(), path[1024];
+
+  snprintf(path, sizeof path, "%s/model.h5", folder);
+  for (int i = 0; i < 2; i++) {
+    double values[2][16], errors[2][16];
+
+    write_model(folder, models[i]);
+    for (int run_no = 0; run_no < 3; run_no++) {
+      const int which = run_no > 0;
+      struct ebb_test_run run = ebb_test_ebbturn(
+          folder, run_no == 2 ? 2 : 0,
+          (const char *const[]){"spectrum", "model.yaml", "--force", "--set",
+                                which ? "numerics.eigensolver=slicing" : "numerics.eigensolver=bisection", NULL});
+
+      cr_assert_eq(run.status, 0, "%s: exit %d, %s%s", models[i], run.status, run.out, run.err);
+      cr_expect_eq(strstr(run.out, "slicing        inertias") != NULL, which, "%s", run.out);
+      read_line(path, "/spectrum/eigenvalue", count[i], values[which]);
+      read_line(path, "/spectrum/error", count[i], errors[which]);
+      for (size_t j = 0; which && j < count[i]; j++)
+        cr_expect_leq(fabs(values[0][j] - values[1][j]), errors[0][j] + errors[1][j], "%.17g %.17g", values[0][j],
+                      values[1][j]);
+      ebb_test_run_clear(&run);
+    }
   }
   ebb_test_folder_remove(&folder);
 }

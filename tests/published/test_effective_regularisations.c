@@ -46,7 +46,7 @@ static struct ebb_rows fixed_length(struct ebb_rows rows, double mu0)
 EFFECTIVE_TEST(fixed_length_bounces_at_a_density_that_depends_on_the_state)
 {
   const double mu0 = 1.5 * sqrt(3.0);
-  const struct ebb_rows rows = fixed_length(ebb_test_effective_rows("slqc", "scalar", NEW_GAP), mu0);
+  const struct ebb_rows rows = ebb_test_effective_rows("mu0", "scalar", NEW_GAP);
   const struct ebb_symbol symbol = ebb_symbol_make(&rows);
   const double factor = sqrt(2.0) * pow(3.0 / (8.0 * EBB_PI * pow(0.2375 * mu0, 2)), 1.5);
   double before = NAN;
@@ -69,7 +69,7 @@ EFFECTIVE_TEST(fixed_length_bounces_at_a_density_that_depends_on_the_state)
 EFFECTIVE_TEST(fixed_length_has_the_classical_limit)
 {
   const double mu0 = 1.5 * sqrt(3.0), w = 4e4, b = 0.3;
-  const struct ebb_rows rows = fixed_length(ebb_test_effective_rows("slqc", "scalar", NEW_GAP), mu0);
+  const struct ebb_rows rows = ebb_test_effective_rows("mu0", "scalar", NEW_GAP);
   const struct ebb_symbol symbol = ebb_symbol_make(&rows);
   const double hubble = sin(2.0 * b) / (2.0 * 0.2375 * mu0 * cbrt(ebb_symbol_volume(&symbol, w)));
   double rate[2];
@@ -79,11 +79,30 @@ EFFECTIVE_TEST(fixed_length_has_the_classical_limit)
   ebb_test_close(symbol.volume_power * rate[0], rows.constants.kappa, exact(rows.constants.kappa));
 }
 
+/* Refinement: lambda(V) = mu0^{1-2x} lambda^{2x} V^{(1-2x)/3}, and at the bounce rho_c(V) = 3/(8 pi G gamma^2
+ * lambda(V)^2) is p^2/(2 V^2), solved for V (own derivation; x = 0 is the formula above). */
+EFFECTIVE_TEST(refined_bounce_has_the_local_critical_density)
+{
+  for (double x = 0.0; x <= 0.5; x += 0.125) {
+    struct ebb_rows rows = ebb_test_effective_rows("refined", "scalar", NEW_GAP);
+    const double p = 500.0, c = pow(rows.fixed_scale, 1.0 - 2.0 * x) * pow(rows.constants.polymer_scale, 2.0 * x);
+    struct ebb_turning_point bounce;
+    double volume;
+
+    rows.refinement = x;
+    ebb_rows_make(&rows);
+    bounce = ebb_test_effective_point(&rows, p, true);
+    volume = pow(p * p * 4.0 * EBB_PI / 3.0 * pow(0.2375 * c, 2), 0.75 / (1.0 + x));
+    ebb_test_close(bounce.volume, volume, exact(volume));
+    ebb_test_close(bounce.density, 0.5 * p * p / (volume * volume), exact(bounce.density));
+  }
+}
+
 /* Holonomies of fixed length with Lambda > 0: the volume is bounded, sin^2 b = 1 in a classical region (the known
  * failure of the scheme: Liegener, Singh, Phys. Rev. D 100, 124049 (2019), arXiv:1908.07543, abstract) */
 EFFECTIVE_TEST(fixed_length_recollapses_for_every_positive_lambda)
 {
-  struct ebb_rows rows = fixed_length(ebb_test_effective_rows("slqc", "scalar", NEW_GAP), 1.5 * sqrt(3.0));
+  struct ebb_rows rows = ebb_test_effective_rows("mu0", "scalar", NEW_GAP);
   struct ebb_turning_points t;
 
   rows.s = 1e-6;
@@ -160,7 +179,7 @@ EFFECTIVE_TEST(mlqc1_far_branch_is_de_sitter)
     ebb_test_close_printed(3.0 * hubble * hubble, printed[i]);
     ebb_test_close(hubble, 1.0 / (rows.constants.polymer_scale * (1.0 + 0.2375 * 0.2375)),
                    ebb_test_solver(10.0, e.density[3], 1.0)); /* what matter is left */
-    cr_expect_gt(e.v[2], 3.0 * e.v[1]);                       /* asymmetric: 0.35 after the bounce against 0.35 before */
+    cr_expect_gt(e.v[2], 3.0 * e.v[1]); /* asymmetric: 0.35 after the bounce against 0.35 before */
     cr_expect_lt(ebb_symbol_hubble(&symbol, e.v[0], e.b[0]), 0.0);
     ebb_test_call(ebb_effective_clear(&e));
   }
@@ -275,4 +294,26 @@ EFFECTIVE_TEST(derivatives_of_every_symbol)
         ebb_test_close(slope_b, difference_b, ebb_test_solver(100.0, h * h, 100.0 * fabs(value)));
         ebb_test_close(ebb_symbol_at(&y, v, b).f_bb, difference_bb, ebb_test_solver(100.0, h * h, 10.0));
       }
+}
+
+/* The curvature of the closed model at small D, where D^2 - sin^2 D is summed as a series: its share of dF/dv is some
+ * D^2 of the whole, so that the difference is taken where nothing else is left. */
+EFFECTIVE_TEST(curvature_of_large_closed_universes)
+{
+  struct ebb_rows rows = ebb_test_effective_rows("slqc", "scalar", NEW_GAP);
+  const double h = 1e-5;
+  struct ebb_symbol y;
+
+  rows.curvature = EBB_CURVATURE_CLOSED;
+  ebb_rows_make(&rows);
+  y = ebb_symbol_make(&rows);
+  for (double d = 0.03; d < 0.12; d += 0.0175) { /* the series ends at 0.1 */
+    const double v = pow(y.d1 / d, 3.0), u = (1.0 + y.square) * d * d - sin(d) * sin(d);
+    const struct ebb_symbol_value value = ebb_symbol_at(&y, v, 0.0);
+    const double slope = (ebb_symbol_at(&y, v * exp(h), 0.0).f - ebb_symbol_at(&y, v * exp(-h), 0.0).f) / (2.0 * h);
+
+    /* the closed form loses 1/gamma^2 of its digits */
+    ebb_test_close(value.f, u, ebb_test_rounding(64, d * d));
+    ebb_test_close(value.f_x, slope, ebb_test_solver(100.0, h * h, u));
+  }
 }

@@ -4,6 +4,7 @@
  * refinement. Numbers recomputed independently; gamma = 0.2375, G = 1. */
 #include "ebbturn/basis.h"
 #include "ebbturn/rows.h"
+#include "ebbturn/spectrum.h"
 #include "solve/series.h"
 #include "solve/sturm.h"
 
@@ -201,4 +202,63 @@ REFINEMENT_TEST(eigenfunctions_of_the_fixed_lattice_are_complete)
       }
     ebb_test_call(ebb_basis_destroy(&basis));
   }
+}
+
+/* Lambda > 0 on a lattice whose step does not follow the volume: discrete and bounded above, p_phi^2 has a largest
+ * value. Values found are those of a lattice four times as large, by counts on both sides of the stated error. */
+REFINEMENT_TEST(a_positive_cosmological_constant_bounds_the_momentum)
+{
+  static const double exponents[] = {NAN, 0.0, 0.25}, lambda[] = {0.02, 0.02, 2.0};
+
+  for (int i = 0; i < 3; i++) {
+    const struct ebb_rows rows = rows_of(i ? "refined" : "mu0", 4.0, 1.5 * sqrt(3.0), exponents[i], lambda[i]);
+    const struct ebb_spectrum_request request = {.rows = &rows, .low = -500.0, .high = 1e6, .tolerance = 1e-10};
+    struct ebb_spectrum *found;
+    char problem[256];
+    PetscInt sites;
+    double *d, *e;
+
+    cr_expect_eq(ebb_rows_nature(&rows), EBB_NATURE_INVERTED);
+    ebb_test_call(ebb_spectrum_find(&request, PETSC_COMM_SELF, problem, sizeof problem, &found));
+    cr_assert_not_null(found, "%s", problem);
+    cr_expect(found->complete && found->n > 2 && found->eigenvalue[found->n - 1] > 0.0, "%d", (int)found->n);
+    sites = 4 * ebb_lattice_size(&found->lattice);
+    ebb_test_call(PetscMalloc2(sites, &d, sites, &e));
+    for (PetscInt n = 0; n < sites; n++) {
+      d[n] = ebb_rows_diagonal(&rows, 4.0 * (double)(n + 1));
+      e[n] = ebb_rows_offdiagonal(&rows, 4.0 * (double)(n + 1));
+    }
+    for (PetscInt j = 0; j < found->n; j++) {
+      const size_t above = (size_t)(found->n - j); /* of them, and the largest eigenvalue of all is the last */
+
+      cr_expect_eq((size_t)sites - ebb_sturm_count((size_t)sites, d, e, found->eigenvalue[j] - found->error[j]), above);
+      cr_expect_eq((size_t)sites - ebb_sturm_count((size_t)sites, d, e, found->eigenvalue[j] + found->error[j]),
+                   above - 1);
+      cr_expect_lt(found->error[j], 1e-8 * fmax(1.0, fabs(found->eigenvalue[j])));
+    }
+    ebb_test_call(PetscFree2(d, e));
+    ebb_test_call(ebb_spectrum_destroy(&found));
+  }
+}
+
+/* Lambda < 0 there: positive and discrete; mu0 and refined at x = 0 share the classical limit, so high levels have one
+ * spacing of p_phi to a part in a thousand */
+REFINEMENT_TEST(a_negative_cosmological_constant_closes_the_fixed_lattice)
+{
+  double spacing[2];
+
+  for (int i = 0; i < 2; i++) {
+    const struct ebb_rows rows = rows_of(i ? "refined" : "mu0", 2.0, 1.5 * sqrt(3.0), 0.0, -0.001);
+    const struct ebb_spectrum_request request = {.rows = &rows, .count = 60, .tolerance = 1e-10};
+    struct ebb_spectrum *found;
+    char problem[256];
+
+    cr_expect_eq(ebb_rows_nature(&rows), EBB_NATURE_DISCRETE);
+    ebb_test_call(ebb_spectrum_find(&request, PETSC_COMM_SELF, problem, sizeof problem, &found));
+    cr_assert_not_null(found, "%s", problem);
+    cr_expect(found->complete);
+    spacing[i] = sqrt(found->eigenvalue[59]) - sqrt(found->eigenvalue[58]);
+    ebb_test_call(ebb_spectrum_destroy(&found));
+  }
+  cr_expect_lt(fabs(spacing[0] / spacing[1] - 1.0), 1e-3, "%g %g", spacing[0], spacing[1]);
 }

@@ -11,7 +11,9 @@ struct ebb_rows ebb_test_effective_rows(const char *prescription, const char *cl
   struct ebb_rows rows = {.prescription = ebb_prescription_find(prescription),
                           .clock = ebb_clock_find(clock),
                           .constants = ebb_constants_make(1.0, gamma, sqrt(gap * EBB_PI * gamma)),
-                          .sector = 4.0};
+                          .sector = 4.0,
+                          .fixed_scale = 1.5 * sqrt(3.0), /* mu0 of Ashtekar, Pawlowski, Singh, gr-qc/0604013 */
+                          .refinement = 0.25};
 
   cr_assert(rows.prescription && rows.clock, "%s %s", prescription, clock);
   ebb_rows_make(&rows);

@@ -10,7 +10,8 @@
 #define NEW_GAP 6.928203230275509
 #define OLD_GAP 3.4641016151377544
 
-/* Flat, Lambda = 0, sector 4; members may be set afterwards, then ebb_rows_make once more. */
+/* Flat, Lambda = 0, sector 4; where holonomies are of fixed length mu0 = 3 sqrt3/2, refined with x = 1/4; members may
+ * be set afterwards, then ebb_rows_make once more. */
 struct ebb_rows ebb_test_effective_rows(const char *prescription, const char *clock, double gap);
 /* The bounce that ends the classical branch, or the recollapse of the same orbit. */
 struct ebb_turning_point ebb_test_effective_point(const struct ebb_rows *rows, double momentum, bool bounce);

@@ -5,6 +5,7 @@
 #include "ebbturn/operators.h"
 #include "ebbturn/propagator.h"
 #include "ebbturn/state.h"
+#include "ebbturn/symbol.h"
 
 #include <string.h>
 
@@ -100,6 +101,14 @@ static void explain_profiles(const struct ebb_setting *setting)
   ebb_text_clear(&text);
 }
 
+/* The modified Friedmann equation of a prescription, clock or choice of curvature. */
+static void explain_effective(const char *name)
+{
+  const char *text = ebb_symbol_text(name);
+
+  if (text) row("effective", text);
+}
+
 static void explain_setting(const struct ebb_setting *setting)
 {
   printf("%s: %s\n", setting->key, setting->sentence);
@@ -108,6 +117,7 @@ static void explain_setting(const struct ebb_setting *setting)
   if (setting->unit) row("unit", setting->unit);
   explain_values(setting);
   if (setting->hint) row("note", setting->hint);
+  explain_effective(setting->key);
   explain_profiles(setting);
   if (setting->places & EBB_ON_VOLUME) row("belongs to", "prescriptions on a lattice of volumes");
   if (setting->places & EBB_ON_GRID) row("belongs to", "prescriptions on a grid in ln v");
@@ -133,6 +143,7 @@ static void explain_prescription(const struct ebb_prescription *prescription)
   const char *name = "settings";
 
   explain_entry(prescription->name, prescription->title, prescription->formula, prescription->source);
+  explain_effective(prescription->name);
   for (size_t i = 0; i < ebb_setting_count(); i++) {
     const struct ebb_setting *setting = ebb_setting_at(i);
     const unsigned places = setting->places & EBB_ON_ANY;
@@ -162,6 +173,7 @@ static void explain_profile(const struct ebb_profile *profile)
 static void explain_clock(const struct ebb_clock *clock)
 {
   explain_entry(clock->name, clock->title, clock->formula, clock->source);
+  explain_effective(clock->name);
   row("unit", clock->unit);
   row("settings", "clock.kind");
   if (clock->ordering) row("", "clock.ordering");

@@ -41,6 +41,11 @@ struct work {
   char path[2 * EBB_PATH_MAX], folder[EBB_PATH_MAX];
 };
 
+static const char *const stability_words[] = {
+    "stable: the large-volume roots lie on the unit circle or tend to it",
+    "unstable: the largest root stays above 1, beyond a recollapse or the critical cosmological constant",
+    "unstable: the largest root grows without bound, a large universe never becomes classical"};
+
 static const char *verdict_of(const struct ebb_selfadjoint *s)
 {
   return s->n_plus < 0 ? "undecided" : s->n_plus == 0 ? "yes" : "no";
@@ -59,7 +64,8 @@ static PetscErrorCode first_positive(const struct work *w, double angle, double 
                                                  .angle = angle,
                                                  .low = 0.0,
                                                  .high = high,
-                                                 .tolerance = TOLERANCE};
+                                                 .tolerance = TOLERANCE,
+                                                 .exact = true};
     struct ebb_spectrum *spectrum;
     char problem[256];
 
@@ -99,14 +105,16 @@ static PetscErrorCode put_attributes(struct ebb_store *store, const struct work 
   PetscCall(ebb_store_set_integer(store, g, "n_minus", s->n_minus));
   PetscCall(ebb_store_set_text(store, g, "reason", s->reason));
   PetscCall(ebb_store_set_text(store, g, "operator", w->rows.clock->formula));
-  PetscCall(ebb_store_set_text(store, g, "stable", s->stable ? "yes" : "no"));
+  PetscCall(ebb_store_set_text(store, g, "stable", s->stability == EBB_STABLE ? "yes" : "no"));
+  PetscCall(ebb_store_set_text(store, g, "stability", stability_words[s->stability]));
   PetscFunctionReturn(0);
 }
 
 static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *invocation, const char *text,
                           const struct work *w)
 {
-  static const char sites[] = "/selfadjoint/sites", angle[] = "/selfadjoint/extension/angle";
+  static const char roots[] = "/selfadjoint/root_v", sites[] = "/selfadjoint/sites",
+                    angle[] = "/selfadjoint/extension/angle";
   const struct ebb_selfadjoint *s = &w->found;
 
   PetscFunctionBegin;
@@ -119,6 +127,10 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
                               "exponent of |psi|^2 at large v; NaN: exponentials"));
   PetscCall(ebb_result_number(store, "/selfadjoint/slope", s->slope, "1",
                               "d log(sum over an octave)/d log(sites) at the end"));
+  PetscCall(ebb_result_line(store, roots, EBB_ROOT_VOLUMES, s->root_v, "1", "volume label of the roots", NULL));
+  PetscCall(ebb_store_make_scale(store, roots));
+  PetscCall(ebb_result_line(store, "/selfadjoint/root_modulus", EBB_ROOT_VOLUMES, s->root_modulus, "1",
+                            "modulus of the larger root of the difference equation", roots));
   PetscCall(
       ebb_result_line(store, "/selfadjoint/modulus", 2, s->modulus, "1", "moduli of the large-volume roots", NULL));
   if (w->angles) {
@@ -145,8 +157,9 @@ static void print(const struct work *w)
   else
     printf("  self-adjoint   %s: deficiency indices (%d,%d)\n", verdict_of(s), s->n_plus, s->n_minus);
   printf("  evidence       %s\n", s->reason);
-  printf("  roots          moduli %.6g and %.6g at large v: von Neumann %s\n", s->modulus[0], s->modulus[1],
-         s->stable ? "stable" : "unstable (one solution grows exponentially)");
+  printf("  roots          moduli %.6g and %.6g at v = %.3g\n", s->modulus[0], s->modulus[1],
+         s->root_v[EBB_ROOT_VOLUMES - 1]);
+  printf("  von Neumann    %s\n", stability_words[s->stability]);
   if (w->angles)
     printf("  family         least positive eigenvalue by gravity.extension.%s\n", w->delta ? "delta" : "tau");
   for (PetscInt i = 0; i < w->angles; i++)

@@ -8,6 +8,7 @@
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
+#include <string.h>
 
 static int run(const struct ebb_invocation *invocation);
 
@@ -51,6 +52,8 @@ static void request_make(struct work *w)
                                              .high = s->spectrum.interval[1],
                                              .tolerance = s->numerics.tolerance,
                                              .sites = s->lattice.points};
+  w->request.exact = true;
+  w->request.slicing = !strcmp(s->numerics.eigensolver, "slicing");
   if (s->lattice.volume_max > 0.0) w->request.sites = (PetscInt)floor((s->lattice.volume_max - g->sector) / 4.0) + 1;
   if (!isnan(g->extension_delta)) {
     w->request.extension = EBB_EXTENSION_DELTA;
@@ -73,11 +76,18 @@ static PetscErrorCode put_attributes(struct ebb_store *store, const struct work 
   PetscCall(ebb_store_set_real(store, g, "counted_high", s->counted[1]));
   PetscCall(ebb_store_set_integer(store, g, "below_low", s->below[0]));
   PetscCall(ebb_store_set_integer(store, g, "below_high", s->below[1]));
+  PetscCall(ebb_store_set_text(store, g, "eigensolver", s->sliced ? "slicing" : "bisection"));
+  if (s->sliced) {
+    PetscCall(ebb_store_set_integer(store, g, "inertia_low", s->inertia[0]));
+    PetscCall(ebb_store_set_integer(store, g, "inertia_high", s->inertia[1]));
+  }
   if (!isnan(s->moved)) PetscCall(ebb_store_set_real(store, g, "moved", s->moved));
   if (w->request.extension != EBB_EXTENSION_NONE) {
     PetscCall(ebb_store_set_text(store, g, "extension", w->request.extension == EBB_EXTENSION_DELTA ? "delta" : "tau"));
     PetscCall(ebb_store_set_real(store, g, "angle", w->request.angle));
-    PetscCall(ebb_store_set_real(store, g, "tail_mass", s->tail_mass));
+    PetscCall(ebb_result_line(store, "/spectrum/tail_mass", s->n, s->tail, "1",
+                              "sum of squares beyond the last site over that of its component, which stands for them",
+                              "/spectrum/eigenvalue"));
   }
   PetscFunctionReturn(0);
 }
@@ -136,6 +146,9 @@ static void print(const struct work *w)
   if (s->n > LISTED) printf("    ... and %" PetscInt_FMT " more in the result\n", s->n - LISTED);
   printf("  complete       %s: Sturm counts %" PetscInt_FMT " and %" PetscInt_FMT " below %.6g and %.6g\n",
          s->complete ? "yes" : "undecided", s->below[0], s->below[1], s->counted[0], s->counted[1]);
+  if (s->sliced)
+    printf("  slicing        inertias %" PetscInt_FMT " and %" PetscInt_FMT " below the same ends\n", s->inertia[0],
+           s->inertia[1]);
   printf("  result         %s\n", w->path);
 }
 

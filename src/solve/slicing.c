@@ -1,0 +1,97 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "slicing.h"
+
+#include "ebbturn/compat.h"
+
+#include <slepceps.h>
+
+static const double TOLERANCE = 1e-12; /* relative, of an eigenpair's residual */
+static const char PREFIX[] = "ebb_slicing_";
+/* Without this MUMPS on several ranks gives the last block to ScaLAPACK and loses the signs of its pivots. */
+static const char INERTIA_OPTION[] = "-ebb_slicing_st_mat_mumps_icntl_13";
+
+static PetscErrorCode matrix_make(PetscInt n, const double d[], const double e[], MPI_Comm comm, Mat *matrix)
+{
+  PetscInt begin, end;
+
+  PetscFunctionBegin;
+  PetscCall(MatCreateAIJ(comm, PETSC_DECIDE, PETSC_DECIDE, n, n, 3, NULL, 1, NULL, matrix));
+  PetscCall(MatGetOwnershipRange(*matrix, &begin, &end));
+  for (PetscInt i = begin; i < end; i++) {
+    PetscCall(MatSetValue(*matrix, i, i, d[i], INSERT_VALUES));
+    if (i > 0) PetscCall(MatSetValue(*matrix, i, i - 1, e[i - 1], INSERT_VALUES));
+    if (i + 1 < n) PetscCall(MatSetValue(*matrix, i, i + 1, e[i], INSERT_VALUES));
+  }
+  PetscCall(MatAssemblyBegin(*matrix, MAT_FINAL_ASSEMBLY));
+  PetscCall(MatAssemblyEnd(*matrix, MAT_FINAL_ASSEMBLY));
+  PetscCall(MatSetOption(*matrix, MAT_SYMMETRIC, PETSC_TRUE));
+  PetscFunctionReturn(0);
+}
+
+/* PETSc's own Cholesky factorisation on one rank, MUMPS on several; both tell their inertia. Settings go to the solver
+ * of the slices: those on the spectral transformation's are not looked at. */
+static PetscErrorCode solver_make(Mat matrix, double low, double high, EPS *eps)
+{
+  PetscMPIInt ranks;
+  ST st;
+  KSP ksp;
+  PC pc;
+
+  PetscFunctionBegin;
+  PetscCallMPI(MPI_Comm_size(PetscObjectComm((PetscObject)matrix), &ranks));
+  PetscCall(EPSCreate(PetscObjectComm((PetscObject)matrix), eps));
+  PetscCall(EPSSetOptionsPrefix(*eps, PREFIX));
+  PetscCall(EPSSetOperators(*eps, matrix, NULL));
+  PetscCall(EPSSetProblemType(*eps, EPS_HEP));
+  PetscCall(EPSSetType(*eps, EPSKRYLOVSCHUR));
+  PetscCall(EPSSetWhichEigenpairs(*eps, EPS_ALL));
+  PetscCall(EPSSetInterval(*eps, low, high));
+  PetscCall(EPSSetTolerances(*eps, TOLERANCE, PETSC_DEFAULT));
+  PetscCall(EPSGetST(*eps, &st));
+  PetscCall(STSetType(st, STSINVERT));
+  PetscCall(EPSKrylovSchurGetKSP(*eps, &ksp));
+  PetscCall(KSPSetType(ksp, KSPPREONLY));
+  PetscCall(KSPGetPC(ksp, &pc));
+  PetscCall(PCSetType(pc, PCCHOLESKY));
+  if (ranks > 1) PetscCall(PCFactorSetMatSolverType(pc, MATSOLVERMUMPS));
+  PetscCall(EPSSetFromOptions(*eps));
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode inertia_read(EPS eps, PetscInt inertia[2])
+{
+  PetscInt shifts, *counts;
+  PetscReal *at;
+
+  PetscFunctionBegin;
+  PetscCall(EPSKrylovSchurGetInertias(eps, &shifts, &at, &counts));
+  inertia[0] = counts[0];
+  inertia[1] = counts[shifts - 1];
+  PetscCall(PetscFree(at));
+  PetscCall(PetscFree(counts));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_slicing_find(PetscInt n, const double d[], const double e[], double low, double high, MPI_Comm comm,
+                                PetscInt *found, double **values, PetscInt inertia[2])
+{
+  PetscMPIInt ranks;
+  Mat matrix;
+  EPS eps;
+
+  PetscFunctionBegin;
+  PetscCallMPI(MPI_Comm_size(comm, &ranks));
+  if (ranks > 1) PetscCall(PetscOptionsSetValue(NULL, INERTIA_OPTION, "1"));
+  PetscCall(matrix_make(n, d, e, comm, &matrix));
+  PetscCall(solver_make(matrix, low, high, &eps));
+  PetscCall(EPSSolve(eps));
+  PetscCall(EPSGetConverged(eps, found));
+  PetscCall(PetscMalloc1(PetscMax(*found, 1), values));
+  for (PetscInt j = 0; j < *found; j++) PetscCall(EPSGetEigenvalue(eps, j, &(*values)[j], NULL));
+  PetscCall(PetscSortReal(*found, *values));
+  PetscCall(inertia_read(eps, inertia));
+  PetscCall(EPSDestroy(&eps));
+  PetscCall(MatDestroy(&matrix));
+  if (ranks > 1) PetscCall(PetscOptionsClearValue(NULL, INERTIA_OPTION));
+  PetscFunctionReturn(0);
+}
