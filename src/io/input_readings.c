@@ -59,19 +59,21 @@ static const struct ebb_reading_word *take_function(const struct reading_file *f
 {
   char of[EBB_NAME_MAX] = "", apply[EBB_NAME_MAX] = "";
   const struct ebb_reading_word *word = NULL;
+  bool good;
   struct ebb_field fields[] = {
       {.name = "of", .kind = EBB_FIELD_NAME_ANY, .out = of, .required = true},
       {.name = "apply", .kind = EBB_FIELD_NAME, .out = apply, .choices = ebb_function_names + 1, .required = true},
   };
 
-  if (!ebb_fields_take(file->problems, map, path, fields, sizeof fields / sizeof fields[0])) return NULL;
+  good = ebb_fields_take(file->problems, map, path, fields, sizeof fields / sizeof fields[0]);
+  if (!of[0]) return NULL;
   for (size_t i = 0; i < file->words; i++)
     if (!strcmp(file->word[i]->name, of)) word = file->word[i];
   if (!word) complain_of_word(file, fields[0].node, path);
   for (int f = 1; f < EBB_FUNCTIONS; f++)
     if (!strcmp(apply, ebb_function_names[f])) out->function = (enum ebb_function)f;
   if (word) (void)ebb_text_copy(out->name, sizeof out->name, word->name);
-  return word;
+  return good ? word : NULL;
 }
 
 /* NAME, {NAME: {alpha: a}}, or {function: ...}. */
@@ -329,11 +331,11 @@ static void take_histories(const struct reading_file *file, const struct ebb_yam
   };
 
   h->given = true;
-  if (!ebb_fields_take(file->problems, node, "histories", fields, sizeof fields / sizeof fields[0])) return;
-  if (ends != 2)
+  (void)ebb_fields_take(file->problems, node, "histories", fields, sizeof fields / sizeof fields[0]);
+  if (fields[1].node && ends > 0 && ends != 2)
     ebb_problems_add(file->problems, fields[1].node->line,
                      "histories.at must be two values of the parameter: [from, to]");
-  else
+  else if (ends == 2)
     memcpy(h->at, at, sizeof h->at);
 }
 
@@ -357,14 +359,14 @@ static void take_two_time(const struct reading_file *file, const struct ebb_yaml
   (void)ebb_fields_take(file->problems, node, "propagator", fields, sizeof fields / sizeof fields[0]);
   if (fields[2].node)
     (void)ebb_fields_take(file->problems, fields[2].node, "propagator.clock", clock, sizeof clock / sizeof clock[0]);
-  if (fields[0].node && ends != 2)
+  if (fields[0].node && ends > 0 && ends != 2)
     ebb_problems_add(file->problems, fields[0].node->line,
                      "propagator.at must be two values of the parameter: [t1, t2]");
-  else
+  else if (ends == 2)
     memcpy(p->at, at, sizeof p->at);
-  if (fields[1].node && volumes != 2)
+  if (fields[1].node && volumes > 0 && volumes != 2)
     ebb_problems_add(file->problems, fields[1].node->line, "propagator.first must be two volumes: [from, to]");
-  else
+  else if (volumes == 2)
     memcpy(p->first, first, sizeof p->first);
 }
 
