@@ -424,13 +424,17 @@ static PetscErrorCode rows_of(const struct ebb_relational *r, const struct ebb_e
     for (size_t s = 0; s < slices; s++) {
       const double complex *x = c->kept + ((size_t)sample[t] * slices + s) * length;
       double complex *row = rows + ((size_t)t * slices + s) * (size_t)outputs;
+      const double weight = sqrt(r->weight[sample[t]]);
 
       for (PetscInt n = 0; n < outputs; n++) {
         const double complex *from = x + c->halo - c->half + (c->out_begin + output[n] - r->model.lattice->begin);
-        double complex sum = 0.0;
+        double re = 0.0, im = 0.0; /* by hand: C's product of complex numbers looks for infinities */
 
-        for (int j = 0; j <= c->p; j++) sum += k[j] * from[j];
-        row[n] = sqrt(r->weight[sample[t]]) * sum;
+        for (int j = 0; j <= c->p; j++) {
+          re += creal(k[j]) * creal(from[j]) - cimag(k[j]) * cimag(from[j]);
+          im += creal(k[j]) * cimag(from[j]) + cimag(k[j]) * creal(from[j]);
+        }
+        row[n] = weight * (re + I * im);
       }
     }
   PetscCall(PetscFree(k));

@@ -4,6 +4,7 @@
  * spectrum. Outcomes are shared among ranks; the whole state is on each of them. */
 #include "relational_impl.h"
 
+#include <cblas.h>
 #include <math.h>
 #include <string.h>
 
@@ -217,17 +218,8 @@ PetscErrorCode ebb_purity_of_rows(PetscInt m, PetscInt length, const double comp
 
   PetscFunctionBegin;
   PetscCall(PetscCalloc1((size_t)m * (size_t)m, &gram));
-  for (PetscInt a = 0; a < m; a++)
-    for (PetscInt b = a; b < m; b++) {
-      const double complex *x = rows + (size_t)a * (size_t)length, *y = rows + (size_t)b * (size_t)length;
-      double re = 0.0, im = 0.0;
-
-      for (PetscInt i = 0; i < length; i++) {
-        re += creal(x[i]) * creal(y[i]) + cimag(x[i]) * cimag(y[i]);
-        im += creal(x[i]) * cimag(y[i]) - cimag(x[i]) * creal(y[i]);
-      }
-      gram[a * m + b] = re + I * im;
-    }
+  if (m > 0 && length > 0)
+    cblas_zherk(CblasRowMajor, CblasUpper, CblasNoTrans, (int)m, (int)length, 1.0, rows, (int)length, 0.0, gram, (int)m);
   if (comm != MPI_COMM_NULL)
     PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, gram, (PetscMPIInt)(2 * m * m), MPI_DOUBLE, MPI_SUM, comm));
   for (PetscInt a = 0; a < m; a++) {

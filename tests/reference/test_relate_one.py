@@ -142,6 +142,22 @@ def propagator(folder, result):
         f.close()
 
 
+def three_ways(folder, result):
+    """Hoehn, Smith, Lock, Phys. Rev. D 104, 066001 (2021), arXiv:1912.00033: for an ideal clock the deparametrised state, the
+    relational observable and the conditional probability agree. Stored by `evolve`, read as a clock, and evolved from an
+    earlier reading that found nothing out, in functions of its own."""
+    f, _ = relate(folder, result, "three", "readings: [{name: phi, clock: {observable: phi}}]\n"
+                  "propagator: {at: [-0.2, 0.05], first: [4, 2048], clock: {spread: 0.02, half_width: 0.01}}\n")
+    with h5py.File(result) as e:
+        at = np.argmin(np.abs(e["clock/value"][()] - 0.05))
+        stored = e["probability/v"][at]
+    read = f["relational/phi/probability"][at][1:513]
+    moved = f["propagator/right"][()]
+    check(np.abs(stored - read).max() < 1e-10 and np.abs(stored - moved).max() < 1e-10,
+          f"three ways to P(v|phi): {np.abs(stored - read).max():.1e}, {np.abs(stored - moved).max():.1e}")
+    f.close()
+
+
 RECALL = dict(v_plus=53.356119015, v_minus=42.643880985, clock=-0.0182497007009, v_min=95.4004609862, d_plus=0.0102297238996,
               d_minus=0.0482527804488)
 
@@ -178,5 +194,6 @@ with tempfile.TemporaryDirectory() as folder:
     histories(folder, result)
     continuum(folder)
     propagator(folder, result)
+    three_ways(folder, result)
     recall(folder)
 finish()
