@@ -25,8 +25,9 @@ struct ebb_rows {
   double sector;
   double s; /* Lambda/Lambda_c */
   enum ebb_curvature curvature;
-  double p_phi; /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
-  bool field;   /* a further field stands beside the volume */
+  double p_phi;   /* momentum of a scalar beside the clock; only where clock->kinetic says how it enters */
+  bool field;     /* a further field stands beside the volume ... */
+  bool potential; /* ... and has a potential; both concern the joint operator, not the rows of the volume */
   /* Schemes FIXED and REFINED of the prescription: mu_bar = mu0^{1-2x} lambda^{2x} |p|^{-x}, x = 0 where FIXED. */
   double fixed_scale; /* mu0 */
   double refinement;  /* x in [0, 1/2] */

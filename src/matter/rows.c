@@ -72,6 +72,7 @@ struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings)
   };
 
   rows.field = settings->matter.kind[0] != '\0';
+  rows.potential = settings->matter.potential[0] != '\0';
   rows.s = g->cosmological_constant / rows.constants.critical_lambda;
   ebb_rows_make(&rows);
   return rows;

@@ -132,6 +132,24 @@ static void weyl(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
   r->weyl = r->slope < CONVERGES ? EBB_LIMIT_CIRCLE : r->slope > DIVERGES ? EBB_LIMIT_POINT : EBB_LIMIT_UNDECIDED;
 }
 
+/* A field with a potential W: at each of its values the volume sees W as a positive cosmological constant, which leaves
+ * a boundary condition open where W > 0, and the field's kinetic term couples those values. What the volume alone shows
+ * does not decide that operator, and no theorem on it is known to us. */
+static PetscErrorCode joint(struct ebb_selfadjoint *r)
+{
+  char volume[sizeof r->reason];
+
+  PetscFunctionBegin;
+  PetscCall(PetscStrncpy(volume, r->reason, sizeof volume));
+  r->n_plus = r->n_minus = -1;
+  PetscCall(
+      PetscSNPrintf(r->reason, sizeof r->reason,
+                    "the field's potential acts as a cosmological constant that differs from value to value; this "
+                    "evidence is of the volume alone and does not decide the joint operator: %s",
+                    volume));
+  PetscFunctionReturn(0);
+}
+
 static const char *const limit_words[] = {"limit point", "limit circle", "undecided"};
 
 PetscErrorCode ebb_selfadjoint_find(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
@@ -152,5 +170,6 @@ PetscErrorCode ebb_selfadjoint_find(const struct ebb_rows *rows, struct ebb_self
                           "%s (%s); Weyl's disc at z = i scale has radius %.3g after %.0f sites (%s)", solutions,
                           limit_words[r->asymptotic], r->radius[r->octaves - 1], r->sites[r->octaves - 1],
                           limit_words[r->weyl]));
+  if (rows->potential) PetscCall(joint(r));
   PetscFunctionReturn(0);
 }

@@ -68,6 +68,8 @@ Test(selfadjoint_command, says_yes_no_and_what_it_cannot_take)
       {"gravity: {prescription: aps, cosmological_constant_over_critical: 0.2}\n", "deficiency indices (1,1)", "no", 1,
        1},
       {"gravity: {prescription: smmo, curvature: open}\n", "by gravity.extension.tau", "no", 1, 1},
+      {"matter: [{kind: scalar, name: chi, potential: quadratic, mass: 1, grid: {points: 8, length: 1}}]\n",
+       "does not decide the joint operator", "undecided", 1, -1},
       {"gravity: {prescription: wdw}\nlattice: {lnv_min: 0, lnv_max: 1, points: 64}\n", "no operator on a lattice",
        NULL, 2, 0},
       {"gravity: {prescripton: aps}\n", "nearest is 'prescription'", NULL, 2, 0},

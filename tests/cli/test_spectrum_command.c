@@ -65,6 +65,8 @@ Test(spectrum_command, refuses_what_has_no_list_of_eigenvalues)
       {"gravity: {prescription: smmo, cosmological_constant_over_critical: 1.5}\n",
        "  line 1  the cosmological constant is 1.5 of the critical one, 3/(gamma^2 lambda^2): the operator has no "
        "positive part, no physical states; take less than 1\n"},
+      {"matter: [{kind: scalar, name: chi, grid: {points: 8, length: 1}}]\ngravity: {cosmological_constant: -1}\n",
+       "  line 1  matter belongs to 'evolve' and 'selfadjoint'; 'spectrum' is of the volume alone\n"},
       {"gravity: {prescription: wdw}\nlattice: {lnv_min: 0, lnv_max: 1, points: 64}\n",
        "  line 1  prescription 'wdw' has a continuous spectrum\n"},
       {"gravity: {cosmological_constant: -1}\nclock: {kind: unimodular}\n",
