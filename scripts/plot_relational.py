@@ -97,7 +97,7 @@ def draw_dwell(axes, result, group):
     axes.set_ylabel("dwell [parameter time]")
     axes.set_xlabel(NAMES.get(result.text("/" + group, "clock"), plain(result.text("/" + group, "clock"))))
     twin = axes.twinx()
-    for name, color, dash, label in (("purity", BLUE, "-", "purity"), ("clock_error", GREEN, "-.", r"$\kappa\sigma_t$"),
+    for name, color, dash, label in (("purity", BLUE, "-", "purity"), ("clock_spread", GREEN, "-.", r"$\kappa\sigma_t$"),
                                      ("leak", ORANGE, ":", r"leak to $v \leq 0$")):
         values = result[group + "/" + name]
         if np.any(np.isfinite(values)) and np.nanmax(values) > 0:

@@ -51,7 +51,7 @@ struct ebb_relational_model {
 struct ebb_reading_result {
   PetscInt n, bins, levels;
   double *centre, *dwell, *dwell_error, *median, *median_error, *mean, *mean_error, *spread, *spread_error;
-  double *purity, *purity_model, *leak, *window_error, *clock_error /* kappa sigma_t */, *curve;
+  double *purity, *purity_model, *leak, *window_error, *clock_spread /* kappa sigma_t */, *curve;
   double *intervals; /* disjoint stretches of the parameter in which the clock may read this */
   double *probability, *quantile, *quantile_error;
   double *system_centre, *system_dwell, *level; /* system_dwell: int dt Tr P_Q rho_t, whatever the clock reads */

@@ -249,6 +249,29 @@ static PetscErrorCode read_rows(struct ebb_relation *r, PetscInt first, PetscInt
   PetscFunctionReturn(0);
 }
 
+/* Probability near the lattice's end, where a wall would send it back. */
+static PetscErrorCode watch_edge(struct ebb_relation *r, PetscInt count, const double complex psi[])
+{
+  const struct ebb_lattice *l = &r->run.lattice;
+  const PetscInt local = l->end - l->begin, slices = r->run.bundle ? r->run.bundle->points : 1;
+  const double edge = 0.9 * fabs(ebb_lattice_v(l, ebb_lattice_size(l) - 1));
+  double *beyond;
+
+  PetscFunctionBegin;
+  PetscCall(PetscCalloc1(count, &beyond));
+  for (PetscInt i = 0; i < local; i++) {
+    if (fabs(ebb_lattice_v(l, l->begin + i)) <= edge) continue;
+    for (PetscInt j = 0; j < count * slices; j++) {
+      const double complex z = psi[(size_t)j * (size_t)local + (size_t)i];
+      beyond[j / slices] += ebb_lattice_weight(l, l->begin + i) * creal(z * conj(z));
+    }
+  }
+  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, beyond, (PetscMPIInt)count, MPI_DOUBLE, MPI_SUM, r->run.comm));
+  for (PetscInt s = 0; s < count; s++) r->edge_probability = fmax(r->edge_probability, beyond[s]);
+  PetscCall(PetscFree(beyond));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode,
                                    PetscErrorCode (*take)(void *context, PetscInt first, PetscInt count,
                                                           const double complex psi[]),
@@ -272,6 +295,7 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode,
       PetscCall(read_rows(r, first, count, psi));
     else
       PetscCall(evaluate(r, false, count, r->t + first, psi));
+    PetscCall(watch_edge(r, count, psi));
     PetscCall(take(context, first, count, psi));
     ebb_progress_tell(&progress, first + count);
   }

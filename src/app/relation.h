@@ -19,9 +19,10 @@ struct ebb_relation {
   struct ebb_store *source;                         /* the result */
   struct ebb_run run;
   PetscInt m;
-  double *t;          /* [m]: the window */
-  hsize_t *row;       /* [m]: rows of /state/psi, NULL where states are evolved again */
-  double state_error; /* relative to the norm */
+  double *t;               /* [m]: the window */
+  hsize_t *row;            /* [m]: rows of /state/psi, NULL where states are evolved again */
+  double state_error;      /* relative to the norm */
+  double edge_probability; /* largest P(|v| > 0.9 of the largest one) over the window */
 };
 
 /* Opens the result and reads the readings file; problems are printed. *code: 0, 2 or 4. Collective. */

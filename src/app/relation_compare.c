@@ -15,7 +15,7 @@ enum { ROWS_MOST = EBB_READINGS_MAX + 1 };
 /* One clock. */
 struct row {
   const char *reading, *clock, *verdict, *meaning;
-  double median, median_error, at, low, high, dwell, clock_error, effective;
+  double median, median_error, at, low, high, dwell, clock_spread, effective;
 };
 
 static const char parameter_means[] = "minimum over the parameter of the median";
@@ -47,7 +47,7 @@ static struct row of_reading(const struct ebb_reading_settings *s, const struct 
                     .low = NAN,
                     .high = NAN,
                     .dwell = NAN,
-                    .clock_error = NAN,
+                    .clock_spread = NAN,
                     .effective = NAN};
   PetscInt where = -1;
 
@@ -60,7 +60,7 @@ static struct row of_reading(const struct ebb_reading_settings *s, const struct 
     row.median_error = x->n > 1 ? fabs(x->centre[1] - x->centre[0]) : NAN;
     row.at = x->centre[where];
     row.dwell = x->dwell[where];
-    row.clock_error = x->clock_error[where];
+    row.clock_spread = x->clock_spread[where];
     return row;
   }
   row.median = least(x, x->median, 1, &where);
@@ -68,7 +68,7 @@ static struct row of_reading(const struct ebb_reading_settings *s, const struct 
   row.median_error = x->median_error[where];
   row.at = x->centre[where];
   row.dwell = x->dwell[where];
-  row.clock_error = x->clock_error[where];
+  row.clock_spread = x->clock_spread[where];
   row.effective = x->curve[where];
   if (x->levels > 0) {
     row.low = least(x, x->quantile, x->levels, NULL);
@@ -95,7 +95,7 @@ static PetscErrorCode of_parameter(const struct ebb_relation *r, struct row *row
                       .low = NAN,
                       .high = NAN,
                       .dwell = NAN,
-                      .clock_error = 0.0,
+                      .clock_spread = 0.0,
                       .effective = NAN};
   for (size_t i = 0; i < sizeof wanted / sizeof wanted[0]; i++) {
     hsize_t extent[EBB_STORE_RANK_MAX];
@@ -173,7 +173,7 @@ PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct
   COLUMN(low, "minimum over readings of the lowest quantile");
   COLUMN(high, "minimum over readings of the highest quantile");
   COLUMN(dwell, "dwell of that reading");
-  COLUMN(clock_error, "rate of expansion times the standard deviation of the parameter at that reading");
+  COLUMN(clock_spread, "rate of expansion times the standard deviation of the parameter at that reading");
   COLUMN(effective, "effective volume at that reading");
 #undef COLUMN
 #undef WORDS

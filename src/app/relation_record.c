@@ -29,8 +29,8 @@ static PetscErrorCode put_series(struct ebb_store *store, const char *group, con
       {"purity_model", "1", "1/sqrt(1 + 4 sigma_t^2 dE^2), a Gaussian clock that commutes", x->purity_model},
       {"leak", "1", "share of the dwell that the reading sends to v <= 0", x->leak},
       {"window_error", "1", "share of the outcome that may lie outside the window", x->window_error},
-      {"clock_error", "1", "rate of expansion times the standard deviation of the parameter at this reading",
-       x->clock_error},
+      {"clock_spread", "1", "rate of expansion times the standard deviation of the parameter at this reading",
+       x->clock_spread},
       {"stretches", "1", "stretches of the parameter with this reading above a tenth of its largest probability",
        x->intervals},
       {"effective", "1", "volume on the effective trajectory at this reading", x->curve},
@@ -185,6 +185,8 @@ void ebb_relation_print(const struct ebb_relation *r, const struct ebb_relationa
            (int)refused, x->outside / (r->t[r->m - 1] - r->t[0]));
     if (least >= 0)
       printf("  least median   %.12g +- %.2g at %.6g\n", x->median[least], x->median_error[least], x->centre[least]);
+    if (i == 0)
+      printf("  edge           at most %.1e of the probability above 0.9 of the largest v\n", r->edge_probability);
     printf("  back action    %.6g   order of reading %.6g   identities to %.1e\n", x->back_action, x->order_violation,
            fmax(fmax(x->identity_probability, x->identity_dwell), x->identity_action));
   }

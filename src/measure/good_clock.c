@@ -28,7 +28,7 @@ static struct worst worst_of(const struct ebb_reading_result *x)
     if (x->refused[i]) continue;
     w.good++;
     w.stretches = fmax(w.stretches, x->intervals[i]);
-    w.clock = fmax(w.clock, x->clock_error[i]);
+    w.clock = fmax(w.clock, x->clock_spread[i]);
     w.leak = fmax(w.leak, x->leak[i]);
     if (!isnan(x->purity[i])) w.purity = fmin(w.purity, x->purity[i]);
   }

@@ -16,7 +16,7 @@ static PetscErrorCode result_allocate(struct ebb_engine *e)
   double **const line[] = {&x->centre,       &x->dwell,       &x->dwell_error,  &x->median,
                            &x->median_error, &x->mean,        &x->mean_error,   &x->spread,
                            &x->spread_error, &x->purity,      &x->purity_model, &x->leak,
-                           &x->window_error, &x->clock_error, &x->curve,        &x->intervals};
+                           &x->window_error, &x->clock_spread, &x->curve,        &x->intervals};
   const PetscInt n = e->n;
 
   PetscFunctionBegin;
@@ -43,7 +43,7 @@ PetscErrorCode ebb_engine_result_clear(struct ebb_reading_result *x)
 {
   double **const line[] = {&x->centre,       &x->dwell,       &x->dwell_error,  &x->median,         &x->median_error,
                            &x->mean,         &x->mean_error,  &x->spread,       &x->spread_error,   &x->purity,
-                           &x->purity_model, &x->leak,        &x->window_error, &x->clock_error,    &x->curve,
+                           &x->purity_model, &x->leak,        &x->window_error, &x->clock_spread,    &x->curve,
                            &x->intervals,    &x->probability, &x->quantile,     &x->quantile_error, &x->system_centre,
                            &x->level,        &x->system_dwell};
 
@@ -288,7 +288,7 @@ PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
     x->dwell[i] = v.dwell;
     x->window_error[i] = v.dwell > 0.0 ? v.window_error : NAN;
     x->dwell_error[i] = v.dwell * (v.window_error + v.step_error + ROUNDING) + 2.0 * r->model.propagation * window;
-    x->clock_error[i] = r->model.rate * v.sigma;
+    x->clock_spread[i] = r->model.rate * v.sigma;
     x->intervals[i] = (double)v.stretches;
     x->purity_model[i] = 1.0 / sqrt(1.0 + 4.0 * v.sigma * v.sigma * r->model.energy_spread * r->model.energy_spread);
     x->curve[i] = e->kind->curve && e->settings.clock.function == EBB_FUNCTION_NONE

@@ -18,6 +18,8 @@ readings:
   - {name: hubble, clock: {observable: hubble, instrument: cosine, bins: 10}}
   - {name: v, clock: {observable: v, instrument: sharp, from: 0, to: 640, bins: 16}, system: {observable: b, bins: 8}}
   - {name: phi, clock: {observable: phi}}
+histories: {v_star: [96, 144, 288], at: [-0.35, 0.35], times: 5}
+propagator: {at: [-0.2, 0.05], first: [164, 188], clock: {spread: 0.02, half_width: 0.01}}
 """
 
 with tempfile.TemporaryDirectory() as folder:

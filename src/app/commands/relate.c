@@ -94,6 +94,7 @@ static PetscErrorCode put_root(struct ebb_store *store, const struct ebb_relatio
                             NULL));
   PetscCall(ebb_store_set_real(store, "/window", "tolerance", r->readings.window.tolerance));
   PetscCall(ebb_store_set_real(store, "/window", "state_error", r->state_error));
+  PetscCall(ebb_store_set_real(store, "/window", "edge_probability", r->edge_probability));
   PetscFunctionReturn(0);
 }
 

@@ -16,7 +16,31 @@ POWER = 48
 READING = f"readings:\n  - {{name: b, clock: {{observable: b, instrument: cosine_power, power: {POWER}, centres: 64}}}}\n"
 CASES = (("slqc", 4), ("slqc", 2), ("aps", 4), ("aps", 2), ("mmo", 4), ("mmo", 1.3), ("aps", 1.3))
 
+
+
+def twirl(folder):
+    """Integrated over all of the parameter, P(v|b) knows |c(k)|^2 and no phase: shifted and squeezed packets give the same, and
+    squeezed ones, which differ before and after their bounce, still the same at b and pi - b."""
+    seen = []
+    for i, more in enumerate(("", ", bounce_at: 0.03", ", squeeze: 0.8", ", squeeze: -0.8, bounce_at: -0.02")):
+        text = MODEL.format(p="slqc", sector=4).replace("relative_spread: 0.07", "relative_spread: 0.07" + more)
+        f, _ = relate(folder, evolve(folder, f"twirl{i}", text), f"twirl{i}_b", READING, expect=1)
+        g = f["relational/b"]
+        seen.append((g["system_centre"][()], g["probability"][()], g["window_error"][()]))
+        f.close()
+    sites = min(len(v) for v, _, _ in seen)  # the lattice is as large as each packet needs
+    good = np.all([np.isfinite(p).all(axis=1) & (w < 1e-8) for _, p, w in seen], axis=0)
+    check(good.sum() >= 20, f"{good.sum()} outcomes whose window error is below 1e-8")
+    for i in range(1, 4):
+        off = 0.5 * np.abs(seen[i][1][good][:, :sites] - seen[0][1][good][:, :sites]).sum(axis=1).max()
+        check(off < 1e-7, f"other phases {i}: total variation {off:.1e}")
+        both = good & good[::-1]
+        off = 0.5 * np.abs(seen[i][1] - seen[i][1][::-1])[both].sum(axis=1).max()
+        check(off < 1e-7, f"other phases {i}: b and pi - b differ by {off:.1e}")
+
+
 with tempfile.TemporaryDirectory() as folder:
+    twirl(folder)
     for p, sector in CASES:
         name = f"{p}_{sector}"
         result = evolve(folder, name, MODEL.format(p=p, sector=sector))
