@@ -127,6 +127,26 @@ def truncated(folder):
                 check(abs(group["median"][4] - median) < 0.005, f"window {window}: median {group['median'][4]:.2f}")
 
 
+def orientation(folder, result):
+    """b > pi/2 while the universe contracts, and the Hubble rate is negative. What integrates over the whole life cannot tell."""
+    text = "window: {{from: {0}, to: {1}, samples: 41, tolerance: 1}}\nreadings:\n" \
+           "  - {{name: power, clock: {{observable: b, instrument: cosine_power, power: 64, centres: 96}}}}\n" \
+           "  - {{name: sharp, clock: {{observable: b, instrument: sharp, bins: 16}}}}\n" \
+           "  - {{name: hubble, clock: {{observable: hubble, instrument: sharp, bins: 16}}}}\n" \
+           "  - {{name: v, clock: {{observable: v, instrument: sharp, from: 120, to: 160, bins: 1}}, system: {{observable: b, bins: 2}}}}\n"
+    for low, high, contracting in ((-0.3, -0.1, True), (0.1, 0.3, False)):
+        path, _ = relate(folder, result, text.format(low, high), f"side{contracting}", 1)
+        with h5py.File(path) as f:
+            for name, sign in (("power", 1), ("sharp", 1), ("hubble", -1)):
+                dwell = f[f"relational/{name}/dwell"][()]
+                half = len(dwell) // 2
+                upper = dwell[half:].sum() / dwell.sum()
+                check((upper > 0.97) == (contracting == (sign > 0)) and (upper < 0.03) != (contracting == (sign > 0)),
+                      f"{name}, {'contracting' if contracting else 'expanding'}: {upper:.4f} of the dwell in the upper half")
+            p = f["relational/v/probability"][0]
+            check((p[1] > 0.97) == contracting and (p[0] > 0.97) != contracting, f"P(b|v) on one side: {p}")
+
+
 def without_time(f):
     """The same probabilities without any integral: N = 2 pi sum_j g_j p_j <j|M^+ P_Q M|j>, g the density of levels."""
     universe, ring = reference.Universe(512), reference.Ring(512)
@@ -156,6 +176,7 @@ with tempfile.TemporaryDirectory() as folder:
     one, other = datasets(path), datasets(again)
     check(all(np.array_equal(one[k], other[k], equal_nan=one[k].dtype.kind == "f") for k in one if "error" not in k),
           "evolved again from the model, the numbers are the same")
+    orientation(folder, result)
     twirl(folder, result)
     truncated(folder)
 finish()
