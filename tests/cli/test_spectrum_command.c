@@ -180,8 +180,9 @@ Test(spectrum_command, worked_models)
       read_line(path, "/spectrum/eigenvalue", rows[i].count, values);
       read_line(path, "/spectrum/error", rows[i].count, errors);
       if (!isnan(rows[i].expected))
-        cr_expect_leq(fabs(values[rows[i].which] - rows[i].expected), errors[rows[i].which] + 1e-12 * rows[i].expected,
-                      "%s: %.17g", rows[i].model, values[rows[i].which]);
+        cr_expect_leq(fabs(values[rows[i].which] - rows[i].expected),
+                      errors[rows[i].which] + 1e-12 * fabs(rows[i].expected), "%s: %.17g", rows[i].model,
+                      values[rows[i].which]);
       if (ranks == 0) memcpy(first, values, sizeof first);
       for (size_t j = 0; j < rows[i].count; j++) cr_expect_eq(values[j], first[j]);
       ebb_test_run_clear(&run);
