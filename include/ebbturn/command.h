@@ -4,6 +4,7 @@
 #ifndef EBBTURN_COMMAND_H
 #define EBBTURN_COMMAND_H
 
+#include "ebbturn/problems.h"
 #include "ebbturn/settings.h"
 
 #include <petscsys.h>
@@ -69,6 +70,10 @@ const struct ebb_command *ebb_command_find(const char *name);
  */
 int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, struct ebb_settings *settings,
                      char **text);
+
+/* The text of a file, read by rank 0, on every rank; NULL on all of them where it cannot be read, with a problem on
+ * rank 0. The caller frees it. */
+char *ebb_command_text(const char *path, size_t *length, struct ebb_problems *problems);
 
 /* The exit code for an error that a library call returned: a file failure (4; rank 0 prints the reason that the store
  * gives) or a bug (70; the trace was printed when it was raised). 0 for no error. */

@@ -79,6 +79,11 @@ PetscErrorCode ebb_store_write(struct ebb_store *store, const char *path, const 
 /* define + write of a whole dataset whose values every rank holds (rank 0's are written). */
 PetscErrorCode ebb_store_put(struct ebb_store *store, const struct ebb_dataset *dataset, const void *values);
 
+/* A whole list of n > 0 texts that every rank holds (rank 0's are written). scale: path of a dimension scale, or NULL.
+ */
+PetscErrorCode ebb_store_put_texts(struct ebb_store *store, const char *path, hsize_t n, const char *const text[],
+                                   const char *long_name, const char *scale);
+
 /* Reading: extent[rank]; *found = false where the dataset is missing. Blocks as in write; every rank may read any
  * block. */
 PetscErrorCode ebb_store_extent(struct ebb_store *store, const char *path, int *rank, hsize_t extent[], bool *found);
