@@ -38,6 +38,7 @@ struct ebb_relational_model {
   const char *parameter;    /* "phi", or "dust": what is integrated out */
   double momentum_mean;     /* p: of sqrt(Theta), or of the scalar beside dust; v_B = p/sqrt(3 pi G) without dust */
   double dust_energy;       /* E = 2 V1 p_T in 3 pi G v sin^2 b = p^2/v + E; 0 on a scalar clock */
+  bool effective;           /* has the trajectory of that constraint as its effective one */
   double rate;              /* of expansion, d ln v/dt far from the bounce: the scale of clock errors */
   double energy_spread;     /* standard deviation of the generator of t in the part that is no clock */
   PetscInt samples;

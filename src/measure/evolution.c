@@ -23,7 +23,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
   for (PetscInt j = 0; j < e->packet->n; j++) high = fmax(high, e->packet->omega[j] / kappa);
   e->n = (PetscInt)ceil(finer *
                         (1.2 * high * (kappa * fabs(t) + 2.0 * log(2.0 * v_all)) / EBB_PI + 12.0 * sqrt(high) + 40.0));
-  if ((double)e->n * v_reach / 4.0 > ROWS_MOST) {
+  if ((double)e->n * v_reach / e->lattice->step > ROWS_MOST) {
     PetscCall(PetscSNPrintf(problem, size,
                             "cuts up to |v| = %.3g need %d functions on as many sites; take smaller volumes", v_reach,
                             (int)e->n));
@@ -64,13 +64,20 @@ PetscErrorCode ebb_evolution_create(const struct ebb_packet *packet, const struc
 {
   PetscFunctionBegin;
   *e = (struct ebb_evolution){.packet = packet, .lattice = lattice};
+  if (ebb_basis_info(packet->basis) && (lattice->rows.band != 1 || lattice->step != 4.0)) {
+    PetscCall(PetscSNPrintf(problem, size,
+                            "on the infinite lattice of prescription '%s' projected states are not resolved; give "
+                            "lattice.points",
+                            lattice->prescription->name));
+    PetscFunctionReturn(0);
+  }
   if (ebb_basis_info(packet->basis)) {
     PetscCall(nodes(e, constants, v_reach, v_all, t, finer, problem, size));
     PetscFunctionReturn(0);
   }
   e->basis = packet->basis;
   e->n = packet->n;
-  if ((double)e->n * v_reach / 4.0 > ROWS_MOST) {
+  if ((double)e->n * v_reach / lattice->step > ROWS_MOST) {
     PetscCall(
         PetscSNPrintf(problem, size, "cuts up to |v| = %.3g need too large a table; take smaller volumes", v_reach));
     PetscFunctionReturn(0);
@@ -98,8 +105,8 @@ static void interval(const struct ebb_lattice *l, int arm, double low, double hi
 {
   const double slack = 1e-9;
 
-  *first = PetscMax((PetscInt)ceil((low - l->first[arm]) / 4.0 - slack), 0);
-  *end = PetscMin((PetscInt)floor((high - l->first[arm]) / 4.0 + slack) + 1, l->sites[arm]);
+  *first = PetscMax((PetscInt)ceil((low - l->first[arm]) / l->step - slack), 0);
+  *end = PetscMin((PetscInt)floor((high - l->first[arm]) / l->step + slack) + 1, l->sites[arm]);
 }
 
 PetscErrorCode ebb_block_make(const struct ebb_evolution *e, double low, double high, struct ebb_block *b)
@@ -128,7 +135,7 @@ PetscErrorCode ebb_block_make(const struct ebb_evolution *e, double low, double 
     PetscCall(ebb_cursor_open(e->packet->basis, arm, first, &cursor));
     ebb_cursor_next(cursor, end - first, b->packet_rows + (size_t)at * (size_t)p);
     ebb_cursor_close(&cursor);
-    for (PetscInt i = first; i < end; i++) b->v[at++] = e->lattice->first[arm] + 4.0 * (double)i;
+    for (PetscInt i = first; i < end; i++) b->v[at++] = e->lattice->first[arm] + e->lattice->step * (double)i;
   }
   PetscFunctionReturn(0);
 }

@@ -13,9 +13,9 @@ static const double ROUNDING = 1e-13;
 static PetscErrorCode result_allocate(struct ebb_engine *e)
 {
   struct ebb_reading_result *x = &e->result;
-  double **const line[] = {&x->centre,       &x->dwell,       &x->dwell_error,  &x->median,
-                           &x->median_error, &x->mean,        &x->mean_error,   &x->spread,
-                           &x->spread_error, &x->purity,      &x->purity_model, &x->leak,
+  double **const line[] = {&x->centre,       &x->dwell,        &x->dwell_error,  &x->median,
+                           &x->median_error, &x->mean,         &x->mean_error,   &x->spread,
+                           &x->spread_error, &x->purity,       &x->purity_model, &x->leak,
                            &x->window_error, &x->clock_spread, &x->curve,        &x->intervals};
   const PetscInt n = e->n;
 
@@ -43,7 +43,7 @@ PetscErrorCode ebb_engine_result_clear(struct ebb_reading_result *x)
 {
   double **const line[] = {&x->centre,       &x->dwell,       &x->dwell_error,  &x->median,         &x->median_error,
                            &x->mean,         &x->mean_error,  &x->spread,       &x->spread_error,   &x->purity,
-                           &x->purity_model, &x->leak,        &x->window_error, &x->clock_spread,    &x->curve,
+                           &x->purity_model, &x->leak,        &x->window_error, &x->clock_spread,   &x->curve,
                            &x->intervals,    &x->probability, &x->quantile,     &x->quantile_error, &x->system_centre,
                            &x->level,        &x->system_dwell};
 
@@ -291,7 +291,7 @@ PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
     x->clock_spread[i] = r->model.rate * v.sigma;
     x->intervals[i] = (double)v.stretches;
     x->purity_model[i] = 1.0 / sqrt(1.0 + 4.0 * v.sigma * v.sigma * r->model.energy_spread * r->model.energy_spread);
-    x->curve[i] = e->kind->curve && e->settings.clock.function == EBB_FUNCTION_NONE
+    x->curve[i] = r->model.effective && e->kind->curve && e->settings.clock.function == EBB_FUNCTION_NONE
                       ? e->kind->curve(&r->model, e->settings.clock.alpha, x->centre[i])
                       : NAN;
     share[i] = e->clock ? v.window_error + v.step_error + 2.0 * r->model.propagation * window / fmax(v.dwell, 1e-300)

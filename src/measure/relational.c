@@ -27,7 +27,7 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
   const struct ebb_representation *s = e->system;
   const struct ebb_lattice *l = r->model.lattice;
   const bool volume = !strcmp(s->kind->word.name, "v") && s->function == EBB_FUNCTION_NONE;
-  const double half_cell = volume && !l->prescription->grid ? 2.0 : 0.0;
+  const double half_cell = volume && !l->prescription->grid ? 0.5 * l->step : 0.0;
   double low = INFINITY, high = -INFINITY, bytes;
 
   PetscFunctionBegin;
@@ -72,8 +72,8 @@ static void prepare_groups(struct ebb_relational *r, struct ebb_engine *e)
   e->result.order_width = NAN;
   if (!strcmp(e->system->kind->word.name, "v") && e->settings.binning == EBB_BINNING_SITES &&
       !r->model.lattice->prescription->grid && r->model.lattice->half) {
-    b->per_group = PetscMax((PetscInt)lround(v_bounce / 6.0), 1);
-    e->result.order_width = 4.0 * (double)b->per_group;
+    b->per_group = PetscMax((PetscInt)lround(v_bounce / (1.5 * r->model.lattice->step)), 1);
+    e->result.order_width = r->model.lattice->step * (double)b->per_group;
   } else {
     b->per_group = (b->n + GROUPS - 1) / GROUPS;
     b->groups = (b->n + b->per_group - 1) / b->per_group;

@@ -30,7 +30,8 @@ PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct
   s->slices = PetscMax(model->circle.points, 1);
   PetscCall(PetscMalloc1(s->ring, &s->v));
   for (PetscInt r = 0; r < s->ring; r++)
-    s->v[r] = l->prescription->grid ? ebb_lattice_v(l, r) : ebb_lattice_v(l, 0) + 4.0 * (double)(ebb_space_n(s, r) - 1);
+    s->v[r] =
+        l->prescription->grid ? ebb_lattice_v(l, r) : ebb_lattice_v(l, 0) + l->step * (double)(ebb_space_n(s, r) - 1);
   PetscFunctionReturn(0);
 }
 
@@ -238,6 +239,11 @@ bool ebb_reading_volume_lattice(const struct ebb_representation *rep, char probl
 
   if (l->prescription->grid)
     (void)PetscSNPrintf(problem, size, "observable '%s' needs a volume lattice; prescription '%s' has a grid in ln v",
+                        rep->kind->word.name, l->prescription->name);
+  else if (l->step != 4.0 || l->rows.band != 1 || l->rows.volume_power != 1.0)
+    (void)PetscSNPrintf(problem, size,
+                        "observable '%s' is for three-point operators on v = epsilon + 4n, where V goes like v; "
+                        "prescription '%s' is read by v, lnv and fields",
                         rep->kind->word.name, l->prescription->name);
   else if (rep->matrix == NULL && rep->space->sites > DENSE_MOST && rep->kind->forward == ebb_reading_matrix_forward)
     (void)PetscSNPrintf(problem, size,
