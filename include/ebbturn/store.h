@@ -39,6 +39,8 @@ struct ebb_dataset {
 /* The sentence about the last file failure, without "error:" and without a full stop; false where there was none since
  * the last create or open. The text lives until the next call. Not collective. */
 bool ebb_store_reason(const char **text);
+/* Keeps a reason that is a whole sentence already. Local. */
+void ebb_store_say(const char *format, ...) __attribute__((format(printf, 1, 2)));
 /* For PetscPushErrorHandler: silent for file failures that have a reason, PETSc's trace for everything else. With it,
  * PetscCall may carry a file failure up to the function that prints it. */
 PetscErrorCode ebb_store_error_handler(MPI_Comm comm, int line, const char *function, const char *file,
