@@ -37,9 +37,19 @@ struct ebb_mode_info {
 PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscInt n, const double k[],
                                       const enum ebb_channel channel[], struct ebb_basis **basis);
 
-/* All eigenvectors of the lattice cut by a wall after its last site (LAPACK dstevr), unit l2 norm, k_j = sqrt(zeta_j)/2
- * ascending. Sign: sign(last component) (-1)^j, that is positive at the
- * first site of a half lattice, where the component itself may underflow. Storage sites^2. */
+/* The same of a flat five-point operator (mlqc1, mlqc2) on its infinite half lattice; ebb_basis_create_modes calls it
+ * there. e -> sqrt(2 step/(pi v)) cos(k ln v + alpha), and where there is a family of extensions (mlqc1), rows.delta
+ * being the member, + (A/v) cos(beta0 v/2 + delta), sin^2(step beta0/4) the far zero of the symbol. k: [n] > 0,
+ * ascending. Sign: positive on the first site; with a family A > 0, which goes on smoothly with k where the first site
+ * does not. Errors: another operator, no extension chosen. Cost: mlqc1 as above, twice; mlqc2 8 bytes x n x (matching
+ * volume)/step. Not collective. Derived here; exact phases on the decoupled lattices are in the tests. */
+PetscErrorCode ebb_basis_create_five(const struct ebb_lattice *lattice, PetscInt n, const double k[],
+                                     struct ebb_basis **basis);
+
+/* All eigenvectors of the lattice cut by a wall after its last site (LAPACK dstevr; with two bands dsbevd, and not
+ * where there is a family of extensions, among which a wall would choose by its place), unit l2 norm, k_j =
+ * sqrt(zeta_j)/2 ascending. Sign: sign(last component) (-1)^j, that is positive at the first site of a half lattice,
+ * where the component itself may underflow. Storage sites^2. */
 PetscErrorCode ebb_basis_create_eigenpairs(const struct ebb_lattice *lattice, struct ebb_basis **basis);
 
 /* The eigenfunctions of a spectrum (copied), k_j = sqrt(z_j)/kappa, or z_j/kappa where states move by exp(i H t). In

@@ -9,7 +9,8 @@
 
 enum { EBB_CONTINUUM_CHANNELS = 2 };
 
-/* e_k, <e_k|e_k'> = delta(k - k'). On a half lattice the spectrum is simple: e_k -> sqrt(8/(pi v)) cos(k ln v + alpha).
+/* e_k, <e_k|e_k'> = delta(k - k'). On a half lattice the spectrum is simple: e_k -> sqrt(2 step/(pi v)) cos(k ln v +
+ * alpha).
  * On a full one it is double: channel 0 is large on the right, 1 on the left, e_k -> C_+- sqrt(8/(pi |v|)) cos(k ln|v|
  * + alpha). */
 struct ebb_continuum {
@@ -27,6 +28,9 @@ struct ebb_continuum {
   /* Where the sum of B converges (tilt > 0) and no flux leaves the first site, sqrt(B) is a normalisable state of
    * eigenvalue 0 below the continuum. */
   bool bound;
+  /* Two bands, no family: one negative eigenvalue lies below the continuum, as the solution of zero energy, a + b ln v
+   * at large volume, has a node (b/a < 0). The sign rule of mlqc2 does this in sectors up to about 1. */
+  bool below;
 };
 
 /* rows: flat, no cosmological constant, scalar clock. k [n] > 0. sites: per arm, of `function`. Collective: every rank

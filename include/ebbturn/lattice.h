@@ -9,14 +9,16 @@
 
 #include <petscsys.h>
 
-/* Global index i ascending in v. Arm 0 (right): v = sector + 4n, n = 0..sites[0]-1, global index sites[1] + n.
- * Arm 1 (left; empty on half lattices): v = -(4 - sector) - 4n, global index sites[1] - 1 - n.
- * On both arms |v| = first + 4n and the operator reads alike in |v|; the crossing link joins the two first sites. */
+/* Global index i ascending in v. Arm 0 (right): v = sector + step n, n = 0..sites[0]-1, global index sites[1] + n.
+ * Arm 1 (left; empty on half lattices): v = -(step - sector) - step n, global index sites[1] - 1 - n.
+ * On both arms |v| = first + step n and the operator reads alike in |v|; the crossing link joins the two first sites.
+ */
 struct ebb_lattice {
   struct ebb_rows rows; /* the model; on a grid in ln v only prescription and constants count */
   const struct ebb_prescription *prescription;
   double sector;
   bool half;           /* one arm */
+  double step;         /* between neighbours in v: 4, or 2 */
   double first[2];     /* |v| of each arm's first site */
   PetscInt sites[2];   /* per arm */
   double cross;        /* C of the crossing link (0 on half lattices) */
@@ -37,7 +39,7 @@ PetscErrorCode ebb_lattice_make_grid(const struct ebb_prescription *prescription
 PetscInt ebb_lattice_size(const struct ebb_lattice *lattice);             /* sites of all arms */
 double ebb_lattice_v(const struct ebb_lattice *lattice, PetscInt global); /* signed v */
 double ebb_lattice_weight(const struct ebb_lattice *lattice, PetscInt global);
-/* Edges of the cell of a site, in |v|: |v| -+ 2, or exp(x -+ dx/2) on a grid. */
+/* Edges of the cell of a site, in |v|: |v| -+ step/2, or exp(x -+ dx/2) on a grid. */
 void ebb_lattice_cell(const struct ebb_lattice *lattice, PetscInt global, double *low, double *high);
 /* This rank's sites on an arm: n in [*begin, *end). */
 void ebb_lattice_local(const struct ebb_lattice *lattice, int arm, PetscInt *begin, PetscInt *end);

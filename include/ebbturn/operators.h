@@ -8,14 +8,23 @@
 #include <stdbool.h>
 #include <stddef.h>
 
-/* Every flat operator with a scalar clock has the form (v on the lattice epsilon + 4Z, Theta in units of A0 = 3 pi G;
- * of (4 pi G/3) (1 + x)^2 in the schemes FIXED and REFINED)
+enum ebb_scheme { EBB_SCHEME_VOLUME, EBB_SCHEME_FIXED, EBB_SCHEME_REFINED };
+
+/* Every flat tridiagonal operator with a scalar clock has the form (v on the lattice epsilon + 4Z, Theta in units of A0
+ * = 3 pi G; of (4 pi G/3) (1 + x)^2 in the schemes FIXED and REFINED)
  *
  *     (Theta psi)(v) = B(v)^{-1/2} [ C(v) (x(v) - x(v+4)) + C(v-4) (x(v) - x(v-4)) ],   x = psi/sqrt(B)
  *
- * with a measure B and a hop weight C: a positive quadratic form sum_v C(v) |x(v+4) - x(v)|^2. */
-enum ebb_scheme { EBB_SCHEME_VOLUME, EBB_SCHEME_FIXED, EBB_SCHEME_REFINED };
-
+ * with a measure B and a hop weight C: a positive quadratic form sum_v C(v) |x(v+4) - x(v)|^2.
+ *
+ * Five-point operators are sums of two building blocks, Theta = A0 (w[0] S_step + w[1] S_2step), on half lattices
+ * v = epsilon + step n:
+ *
+ *     S_a = sqrt(v) sin(a beta/4) v sin(a beta/4) sqrt(v),  beta = lambda b, so that exp(i a beta/2) shifts v by a;
+ *     S_a(v,v) = v [(v + a/2) + (v - a/2)]/4, the second term only where v > a/2;
+ *     S_a(v,v+a) = -sqrt(v(v+a)) (v + a/2)/4; hops that leave v > 0 are dropped.
+ *
+ * S_a -> v^2 sin^2(a beta/4) at large v. */
 struct ebb_prescription {
   const char *name;
   const char *title;
@@ -24,9 +33,13 @@ struct ebb_prescription {
   const char *bibtex;
   bool continuum; /* a stand-in for the continuum (Wheeler-DeWitt) operator: a turning point is never physical here */
   bool grid;      /* lives on a uniform grid in ln v instead of a volume lattice (wdw); measure and hop are NULL */
-  bool one_orientation;        /* no hop crosses v = 0: a half lattice in every sector */
-  bool exact_law;              /* v obeys the two-exponential law exactly (solvable ordering, sectors 2 and 4) */
-  double (*measure)(double v); /* B(v), v > 0; even in v */
+  bool one_orientation; /* no hop crosses v = 0: a half lattice in every sector */
+  bool exact_law;       /* v obeys the two-exponential law exactly (solvable ordering, sectors 2 and 4) */
+  /* Five-point operators; NULL: tridiagonal. Weights of both building blocks, from gamma and gravity.lorentzian_weight.
+   */
+  void (*split)(double immirzi, double lorentzian_weight, double w[2]);
+  double step;                 /* of a five-point operator's lattice: 4 or 2; sectors are reduced into (0, step] */
+  double (*measure)(double v); /* B(v), v > 0; even in v. Five-point operators: 1/v, and no hop, edge or series */
   double (*hop)(
       double v); /* C(v) of the link v -> v + 4, any real v; C(-v - 4) = C(v) where both orientations couple */
   /* Link weight below the first site of a half lattice that stays in the first diagonal element although the hop leaves

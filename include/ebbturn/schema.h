@@ -44,7 +44,8 @@ enum ebb_place {
   EBB_COMPONENT_ONLY = 16, /* of `state`: only inside a component */
   EBB_ON_FIXED = 32,       /* prescriptions with a holonomy length mu0 */
   EBB_ON_REFINED = 64,     /* prescriptions with a refinement exponent */
-  EBB_ON_ANY = EBB_ON_VOLUME | EBB_ON_GRID | EBB_ON_FIXED | EBB_ON_REFINED
+  EBB_ON_WEIGHTED = 128,   /* prescriptions that weight a Lorentzian term */
+  EBB_ON_ANY = EBB_ON_VOLUME | EBB_ON_GRID | EBB_ON_FIXED | EBB_ON_REFINED | EBB_ON_WEIGHTED
 };
 
 enum ebb_catalogue { EBB_CATALOGUE_NONE, EBB_CATALOGUE_PRESCRIPTIONS };

@@ -30,6 +30,7 @@ struct ebb_gravity_settings {
   double cosmological_constant;               /* after ebb_settings_resolve also where given over critical */
   double cosmological_constant_over_critical; /* NAN when not given; at most one of the two may be given */
   double extension_delta, extension_tau;      /* NAN when not given; at most one */
+  double lorentzian_weight;                   /* NAN where it does not belong */
 };
 
 struct ebb_clock_settings {

@@ -8,7 +8,8 @@
 #include "ebbturn/lattice.h"
 #include "ebbturn/rows.h"
 
-/* Which self-adjoint extension of a limit-circle operator (operators of nature EBB_NATURE_FAMILY). */
+/* Which self-adjoint extension (operators of nature EBB_NATURE_FAMILY; delta alone for EBB_NATURE_FAMILY_CONTINUOUS,
+ * whose eigenvalues below the continuum, in [low, min(high, 0)), are then found). */
 enum ebb_extension { EBB_EXTENSION_NONE, EBB_EXTENSION_DELTA, EBB_EXTENSION_TAU };
 
 struct ebb_spectrum_request {
@@ -44,6 +45,7 @@ struct ebb_spectrum {
                         it */
   double counted[2]; /* where the Sturm counts were taken */
   PetscInt below[2]; /* eigenvalues below them */
+  bool by_phase;     /* the counts follow the phase of the solution instead, from counted[0] on (FAMILY_CONTINUOUS) */
   bool sliced;       /* slicing was asked for, and ... */
   PetscInt inertia[2]; /* ... its factorisations have so many eigenvalues below counted; FAMILY, exact: of the
                         * boundary condition linear about the middle of the interval, so only their difference counts */

@@ -50,8 +50,8 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
   PetscCall(ebb_store_set_text(store, "/", "propagator", ebb_method_name(run->method)));
   PetscCall(ebb_store_set_text(store, "/", "propagator_reason", run->why));
   PetscCall(ebb_result_lattice(store, &run->lattice, &run->constants));
-  PetscCall(
-      ebb_result_line(store, "/clock/value", run->m, run->phi, "1/sqrt(G)", "clock value, scalar field phi", NULL));
+  PetscCall(ebb_result_line(store, "/clock/value", run->m, run->phi, run->rows.clock->clock_unit, "value of the clock",
+                            NULL));
   PetscCall(ebb_store_make_scale(store, "/clock/value"));
   PetscCall(ebb_store_set_text(store, "/clock", "kind", run->settings->clock.kind));
   if (o->keep & EBB_KEEP_PROBABILITY)
@@ -67,7 +67,7 @@ PetscErrorCode ebb_record_begin(struct ebb_store *store, const struct ebb_run *r
 
     PetscCall(PetscMalloc1(states, &clock));
     for (hsize_t s = 0; s < states; s++) clock[s] = run->phi[s * (hsize_t)o->every];
-    PetscCall(ebb_result_line(store, "/state/clock", (PetscInt)states, clock, "1/sqrt(G)",
+    PetscCall(ebb_result_line(store, "/state/clock", (PetscInt)states, clock, run->rows.clock->clock_unit,
                               "clock values of the stored states", NULL));
     PetscCall(ebb_store_make_scale(store, "/state/clock"));
     PetscCall(PetscFree(clock));
@@ -147,12 +147,12 @@ static PetscErrorCode put_quantiles(struct ebb_store *store, const struct ebb_ru
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_bounce *b)
+static PetscErrorCode put_bounce(struct ebb_store *store, const struct ebb_run *run, const struct ebb_bounce *b)
 {
   static const char g[] = "/bounce";
 
   PetscFunctionBegin;
-  PetscCall(put_value(store, g, "clock", b->clock, "1/sqrt(G)", "clock value of the bounce"));
+  PetscCall(put_value(store, g, "clock", b->clock, run->rows.clock->clock_unit, "clock value of the bounce"));
   PetscCall(put_value(store, g, "v", b->v, "1", "smallest volume, as |v|"));
   PetscCall(put_value(store, g, "volume", b->volume, "length^3", "smallest physical volume"));
   PetscCall(put_value(store, g, "density", b->density, "1/G^2", "density_mean at the bounce"));
@@ -191,16 +191,6 @@ static PetscErrorCode put_turning(struct ebb_store *store, const char *name, con
   PetscCall(PetscSNPrintf(text, sizeof text, "absolute error of: %s", long_name));
   PetscCall(ebb_result_line(store, path, (PetscInt)t->n, error, units, text, "/effective/turning_clock"));
   PetscFunctionReturn(0);
-}
-
-/* hbar over the unit of the clock's momentum */
-static const char *clock_unit(const struct ebb_clock *clock)
-{
-  static const char *const unit[][2] = {{"dust", "length"}, {"unimodular", "length^4"}, {"radiation", "1"}};
-
-  for (size_t i = 0; i < sizeof unit / sizeof unit[0]; i++)
-    if (!strcmp(clock->kind, unit[i][0])) return unit[i][1];
-  return "1/sqrt(G)";
 }
 
 /* Turning points of the effective orbit, its period and its ends. unit: of the clock. */
@@ -337,8 +327,8 @@ PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run
   PetscFunctionBegin;
   if (keep & EBB_KEEP_MOMENTS) PetscCall(put_series(store, run, record));
   if ((keep & EBB_KEEP_QUANTILES) && record->levels) PetscCall(put_quantiles(store, run, record));
-  PetscCall(put_bounce(store, &record->bounce));
-  PetscCall(put_effective(store, clock_unit(run->rows.clock), &record->effective));
+  PetscCall(put_bounce(store, run, &record->bounce));
+  PetscCall(put_effective(store, run->rows.clock->clock_unit, &record->effective));
   if (record->has_law) PetscCall(put_law(store, run, &record->law));
   PetscCall(put_budget(store, &record->budget));
   if (run->bundle) PetscCall(put_field(store, run));

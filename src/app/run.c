@@ -25,6 +25,8 @@ static const char *why_levels(enum ebb_nature nature)
   switch (nature) {
   case EBB_NATURE_DISCRETE:
     return "the spectrum is discrete: every level in the packet's range, no wall, no time step";
+  case EBB_NATURE_INVERTED:
+    return "the spectrum is discrete and bounded above: every positive level in the packet's range, no time step";
   case EBB_NATURE_FAMILY:
     return "the extension's spectrum is discrete: every positive level in the packet's range, no time step";
   default:

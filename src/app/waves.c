@@ -40,8 +40,10 @@ static PetscErrorCode put_channel(struct ebb_store *store, const struct ebb_cont
     const char *name, *long_name;
     const double *values;
   } lines[] = {
-      {"alpha", "phase: e -> C sqrt(8/(pi |v|)) cos(k ln|v| + alpha)", c->alpha[i]},
-      {"alpha_error", "absolute error of: phase: e -> C sqrt(8/(pi |v|)) cos(k ln|v| + alpha)", c->error[i]},
+      {"alpha", "phase: e -> C sqrt(2 step/(pi |v|)) cos(k ln|v| + alpha), step that of the lattice", c->alpha[i]},
+      {"alpha_error",
+       "absolute error of: phase: e -> C sqrt(2 step/(pi |v|)) cos(k ln|v| + alpha), step that of the lattice",
+       c->error[i]},
       {"function_error", "absolute error of: generalised eigenfunction, at any site", c->function_error[i]},
       {"c_plus", "C on the right", c->c_plus[i]},
       {"c_minus", "C on the left", c->c_minus[i]},
@@ -78,7 +80,10 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
   PetscCall(ebb_store_set_real(store, "/spectrum", "kappa", rows->kappa));
   PetscCall(ebb_store_set_real(store, "/spectrum", "threshold", rows->kappa * rows->kappa * rows->gap));
   PetscCall(ebb_store_set_integer(store, "/spectrum", "multiplicity", c->channels));
-  PetscCall(ebb_store_set_text(store, "/spectrum", "bound_state", c->bound ? "eigenvalue 0" : "none"));
+  PetscCall(ebb_store_set_text(store, "/spectrum", "bound_state",
+                               c->bound   ? "eigenvalue 0"
+                               : c->below ? "one negative eigenvalue"
+                                          : "none"));
   PetscCall(ebb_result_stamp(store, "finished"));
   PetscFunctionReturn(0);
 }
@@ -95,6 +100,10 @@ static void print(const struct ebb_continuum *c, const char *path)
   if (c->bound)
     printf("  bound state    eigenvalue 0: the sum of B converges, psi = sqrt(B) is normalisable and below the "
            "continuum\n");
+  if (c->below)
+    printf("  bound state    one negative eigenvalue: the solution of zero energy has a node; the waves do not resolve "
+           "the "
+           "identity without it\n");
   printf("  functions      on %" PetscInt_FMT " sites up to |v| = %.6g\n", size,
          fabs(ebb_lattice_v(&c->lattice, size - 1)));
   printf("    %-12s %-22s alpha\n", "k", "eigenvalue");
@@ -123,7 +132,7 @@ PetscErrorCode ebb_waves_run(const struct ebb_invocation *invocation, const stru
   PetscCallMPI(MPI_Comm_rank(PETSC_COMM_WORLD, &rank));
   ebb_result_path(invocation, settings, sizeof path, path, folder);
   PetscCall(ebb_continuum_find(&rows, (PetscInt)settings->spectrum.ks, settings->spectrum.k,
-                               (PetscInt)floor((reach - rows.sector) / 4.0) + 1, PETSC_COMM_WORLD, &continuum));
+                               (PetscInt)floor((reach - rows.sector) / rows.step) + 1, PETSC_COMM_WORLD, &continuum));
   error = ebb_store_create(PETSC_COMM_WORLD, path, invocation->force, &store);
   if (!error) error = put(store, invocation, settings, text, continuum);
   if (!error) error = ebb_store_commit(&store, true);

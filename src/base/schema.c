@@ -66,11 +66,13 @@ static const struct ebb_setting rows[] = {
      .sentence = "superselection sector: lattice values of v are epsilon + 4n",
      .source = "Ashtekar, Pawlowski, Singh, Phys. Rev. D 74, 084003 (2006), gr-qc/0607039 (from memory)"},
     {.key = "gravity.curvature", NAME(gravity.curvature), .fallback = "none",
-     .choices = CHOICES("none", "closed", "open"),
-     .sentence = "spatial curvature: none, closed (three-sphere) or open (hyperbolic space), holonomies of the extrinsic "
-                 "curvature",
+     .choices = CHOICES("none", "closed", "open", "closed_connection"),
+     .hint = "closed_connection has hops of 2 and 4: lattice step 2, prescriptions slqc and smmo",
+     .sentence = "spatial curvature: none, closed (three-sphere) or open (hyperbolic space) with holonomies of the "
+                 "extrinsic curvature; closed_connection: the three-sphere with holonomies of the connection",
      .source = "closed: Ashtekar, Pawlowski, Singh, Vandersloot, Phys. Rev. D 75, 024035 (2007), gr-qc/0612104; open: "
-               "Vandersloot, Phys. Rev. D 75, 023523 (2007), gr-qc/0612070 (from memory)"},
+               "Vandersloot, Phys. Rev. D 75, 023523 (2007), gr-qc/0612070; closed_connection: Corichi, Karami, Phys. "
+               "Rev. D 84, 044003 (2011), arXiv:1105.3724, in an ordering of this program (from memory)"},
     {.key = "gravity.cosmological_constant", .letter = "Lambda", .unit = "1/length^2",
      REAL(gravity.cosmological_constant), .range = ANY, .fallback = "0", .sentence = "cosmological constant",
      .source = "Bentivegna, Pawlowski, Phys. Rev. D 77, 124025 (2008), arXiv:0803.4446 (from memory)"},
@@ -86,6 +88,12 @@ static const struct ebb_setting rows[] = {
      .sentence = "which self-adjoint extension, by the solution of zero energy it contains: cos(tau) p + sin(tau) q, the "
                  "polynomials of first and second kind (p_0 = 1, q_0 = 0); modulo pi",
      .source = "Akhiezer, The Classical Moment Problem (1965), chapter 4 (from memory)"},
+
+    {.key = "gravity.lorentzian_weight", .letter = "omega", .unit = "1", REAL(gravity.lorentzian_weight), .range = ANY,
+     .fallback = "1", .places = EBB_ON_WEIGHTED,
+     .sentence = "weight of the Lorentzian term quantised for itself beside the Euclidean one; every weight has the same "
+                 "classical limit",
+     .source = "Gallegos, Matos, Morales-Tecotl, arXiv:2412.07916 (abstract read; the form of the family is recomputed)"},
 
     /* clock */
     {.key = "clock.kind", NAME(clock.kind), .fallback = "scalar",

@@ -9,7 +9,15 @@
 #include <math.h>
 #include <string.h>
 
-enum { SITES_MIN = 8, LATTICE_STEP = 4 /* in v */ };
+enum { SITES_MIN = 8 };
+
+/* Between neighbours of a volume lattice, in v. */
+static double lattice_step(const struct ebb_reader *reader)
+{
+  const bool connection = !strcmp(reader->settings->gravity.curvature, "closed_connection");
+
+  return connection ? 2.0 : reader->prescription->split ? reader->prescription->step : 4.0;
+}
 
 bool ebb_reader_good(const struct ebb_reader *reader, const char *key)
 {
@@ -71,6 +79,7 @@ static void check_clock(const struct ebb_reader *reader)
 unsigned ebb_input_places(const struct ebb_prescription *p)
 {
   if (p->grid) return EBB_ON_GRID;
+  if (p->split) return EBB_ON_VOLUME | EBB_ON_WEIGHTED;
   if (p->scheme == EBB_SCHEME_FIXED) return EBB_ON_VOLUME | EBB_ON_FIXED;
   return p->scheme == EBB_SCHEME_REFINED ? EBB_ON_VOLUME | EBB_ON_FIXED | EBB_ON_REFINED : EBB_ON_VOLUME;
 }
@@ -96,7 +105,9 @@ static void check_places(const struct ebb_reader *reader)
       else if (given->node)
         ebb_reader_complain(reader, given->origin, "%s does not belong to prescription '%s'; it is for %s",
                             setting->key, reader->prescription->name,
-                            places & EBB_ON_FIXED ? "'mu0' and 'refined'" : "'refined'");
+                            places & EBB_ON_WEIGHTED ? "'mlqc1' and 'mlqc2'"
+                            : places & EBB_ON_FIXED  ? "'mu0' and 'refined'"
+                                                     : "'refined'");
       ebb_setting_unset(setting, reader->settings, &reader->settings->state);
     }
     if (!given->node && (setting->places_required & needed)) {
@@ -131,10 +142,11 @@ static void check_lattice(const struct ebb_reader *reader)
   if (points->node)
     ebb_reader_complain(reader, ebb_reader_later(edge, points),
                         "lattice.points and lattice.volume_max both say where the lattice ends; give at most one");
-  else if (ebb_reader_good(reader, "gravity.sector") && lattice->volume_max < sector + LATTICE_STEP * (SITES_MIN - 1))
+  else if (ebb_reader_good(reader, "gravity.sector") &&
+           lattice->volume_max < sector + lattice_step(reader) * (SITES_MIN - 1))
     ebb_reader_complain(reader, edge->origin,
                         "lattice.volume_max = %.15g must be at least %.15g: %d sites of sector %.15g",
-                        lattice->volume_max, sector + LATTICE_STEP * (SITES_MIN - 1), SITES_MIN, sector);
+                        lattice->volume_max, sector + lattice_step(reader) * (SITES_MIN - 1), SITES_MIN, sector);
 }
 
 static void check_numerics(const struct ebb_reader *reader)

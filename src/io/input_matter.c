@@ -64,6 +64,9 @@ void ebb_reader_check_matter(const struct ebb_reader *reader, const struct ebb_r
                         "matter.grid.points = %d must be even", m->points);
   if (!m->potential[0] != !ebb_reader_given(reader, "matter.mass")->node)
     ebb_reader_complain(reader, origin, "matter.potential and matter.mass belong together; give both or none");
+  if (reader->need & EBB_NEED_SPECTRUM)
+    ebb_reader_complain(reader, origin,
+                        "matter belongs to 'evolve' and 'selfadjoint'; 'spectrum' is of the volume alone");
   if (!(reader->need & EBB_NEED_CLOCK_RANGE)) return;
   need(reader, origin, evolved, sizeof evolved / sizeof *evolved);
   check_evolved(reader, rows, origin);

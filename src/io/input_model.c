@@ -173,12 +173,7 @@ static void check_evolution(const struct ebb_reader *reader, const struct ebb_ro
 {
   const enum ebb_nature nature = ebb_rows_nature(rows);
 
-  if (reader->prescription->scheme != EBB_SCHEME_VOLUME)
-    ebb_reader_complain(reader, ebb_reader_given(reader, "gravity.prescription")->origin,
-                        "evolution with prescription '%s' is not available in this version; 'spectrum' and "
-                        "'selfadjoint' are",
-                        reader->prescription->name);
-  else if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
+  if (nature == EBB_NATURE_OVERCRITICAL && rows->clock->root)
     complain_overcritical(reader, rows);
   else if (nature == EBB_NATURE_FAMILY)
     (void)has_extension(reader, rows);
@@ -197,6 +192,11 @@ static bool has_eigenvalues(const struct ebb_reader *reader, const struct ebb_ro
     return true;
   case EBB_NATURE_CONTINUOUS:
     return check_waves(reader, rows);
+  case EBB_NATURE_FAMILY_CONTINUOUS:
+    if (!ebb_reader_wanted_five(reader)) return false;
+    return !ebb_reader_given(reader, "spectrum.k")->node || check_waves(reader, rows);
+  case EBB_NATURE_UNLABELLED: /* complained of already */
+    return false;
   case EBB_NATURE_OVERCRITICAL:
     complain_overcritical(reader, rows);
     return false;
@@ -210,7 +210,8 @@ static void check_wanted(const struct ebb_reader *reader, const struct ebb_rows 
   const struct ebb_given *interval = ebb_reader_given(reader, "spectrum.interval");
   const struct ebb_given *k = ebb_reader_given(reader, "spectrum.k");
   const enum ebb_nature nature = ebb_rows_nature(rows);
-  const bool unbounded = nature == EBB_NATURE_FAMILY || nature == EBB_NATURE_INVERTED;
+  const bool family = nature == EBB_NATURE_FAMILY || nature == EBB_NATURE_FAMILY_CONTINUOUS;
+  const bool unbounded = family || nature == EBB_NATURE_INVERTED;
 
   if (k->node)
     ebb_reader_complain(reader, k->origin,
@@ -227,7 +228,7 @@ static void check_wanted(const struct ebb_reader *reader, const struct ebb_rows 
         reader, count->origin,
         "spectrum.count: there is no lowest eigenvalue, the spectrum of %s goes to minus infinity; give "
         "spectrum.interval",
-        nature == EBB_NATURE_FAMILY ? "every extension" : "this operator");
+        family ? "every extension" : "this operator");
   else if (count->node && !strcmp(reader->settings->numerics.eigensolver, "slicing"))
     ebb_reader_complain(
         reader, ebb_reader_given(reader, "numerics.eigensolver")->origin,
@@ -249,6 +250,7 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
                                        "gravity.refinement_exponent",
                                        "gravity.reference_p",
                                        "gravity.curvature",
+                                       "gravity.lorentzian_weight",
                                        "clock.kind",
                                        "clock.ordering",
                                        "gravity.cosmological_constant",
@@ -262,7 +264,7 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
     if (!ebb_reader_good(reader, needed[i])) return;
   if (ebb_reader_given(reader, "gravity.area_gap")->node && ebb_reader_given(reader, "gravity.polymer_scale")->node)
     return; /* complained of already */
-  if (!consistent(reader)) return;
+  if (!consistent(reader) || !ebb_reader_consistent_five(reader)) return;
   rows = ebb_rows_of_settings(reader->settings);
   ebb_reader_check_matter(reader, &rows);
   if (reader->prescription->grid) {
@@ -271,7 +273,8 @@ void ebb_reader_check_model(const struct ebb_reader *reader)
                           reader->prescription->name);
     return;
   }
-  check_extension(reader, &rows);
+  if (rows.band == 2 && !ebb_reader_check_five(reader, &rows)) return;
+  if (ebb_rows_nature(&rows) != EBB_NATURE_FAMILY_CONTINUOUS) check_extension(reader, &rows); /* or looked at already */
   if (reader->need & EBB_NEED_CLOCK_RANGE) check_evolution(reader, &rows);
   if ((reader->need & EBB_NEED_SPECTRUM) && has_eigenvalues(reader, &rows)) check_wanted(reader, &rows);
 }

@@ -67,6 +67,12 @@ void ebb_reader_check_model(const struct ebb_reader *reader);
 struct ebb_rows;
 /* rows: of the model, all of whose settings are good. */
 void ebb_reader_check_matter(const struct ebb_reader *reader, const struct ebb_rows *rows);
+struct ebb_rows;
+/* Models with hops of two sizes: settings that exclude each other, and what a command can do; false with a problem. */
+bool ebb_reader_consistent_five(const struct ebb_reader *reader);
+bool ebb_reader_wanted_five(
+    const struct ebb_reader *reader); /* a family with a continuum: which part of the spectrum */
+bool ebb_reader_check_five(const struct ebb_reader *reader, const struct ebb_rows *rows);
 bool ebb_reader_good(const struct ebb_reader *reader, const char *key); /* not given, or given and taken */
 struct ebb_origin ebb_reader_later(const struct ebb_given *a, const struct ebb_given *b);
 

@@ -1,6 +1,8 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "ebbturn/rows.h"
 
+#include "rows_five.h"
+
 #include <math.h>
 #include <string.h>
 
@@ -34,7 +36,10 @@ void ebb_rows_make(struct ebb_rows *rows)
   rows->kappa = c->kappa;
   rows->gap = 0.0;
   rows->weight_unit = 1.0;
-  rows->half = rows->prescription->grid || ebb_prescription_half(rows->prescription, rows->sector);
+  rows->step = 4.0;
+  rows->band = 1;
+  ebb_rows_five_make(rows);
+  rows->half = rows->band == 2 || rows->prescription->grid || ebb_prescription_half(rows->prescription, rows->sector);
   rows->d1 = rows->curvature == EBB_CURVATURE_NONE ? 0.0 : c->polymer_scale * cbrt(cell / c->volume_unit);
   if (rows->prescription->scheme != EBB_SCHEME_VOLUME) make_refined(rows);
 }
@@ -55,6 +60,7 @@ struct ebb_rows ebb_rows_flat(const struct ebb_prescription *prescription, doubl
 static enum ebb_curvature curvature_find(const char *name)
 {
   if (!strcmp(name, "closed")) return EBB_CURVATURE_CLOSED;
+  if (!strcmp(name, "closed_connection")) return EBB_CURVATURE_CLOSED_CONNECTION;
   return strcmp(name, "open") ? EBB_CURVATURE_NONE : EBB_CURVATURE_OPEN;
 }
 
@@ -67,11 +73,14 @@ struct ebb_rows ebb_rows_of_settings(const struct ebb_settings *settings)
       .constants = ebb_constants_make(g->newton, g->immirzi, g->polymer_scale),
       .sector = g->sector,
       .curvature = curvature_find(g->curvature),
+      .delta = g->extension_delta,
+      .lorentzian_weight = isnan(g->lorentzian_weight) ? 1.0 : g->lorentzian_weight,
       .fixed_scale = g->fixed_scale,
       .refinement = g->refinement_exponent,
   };
 
   rows.field = settings->matter.kind[0] != '\0';
+  rows.joint = settings->matter.potential[0] != '\0';
   rows.s = g->cosmological_constant / rows.constants.critical_lambda;
   ebb_rows_make(&rows);
   return rows;
@@ -81,7 +90,10 @@ double ebb_rows_measure(const struct ebb_rows *rows, double v) { return rows->cl
 
 double ebb_rows_hop(const struct ebb_rows *rows, double v) { return rows->clock->hop(rows->prescription, v); }
 
-double ebb_rows_edge(const struct ebb_rows *rows) { return rows->clock->edge(rows->prescription, rows->sector); }
+double ebb_rows_edge(const struct ebb_rows *rows)
+{
+  return rows->band == 2 ? 0.0 : rows->clock->edge(rows->prescription, rows->sector);
+}
 
 static double curvature(const struct ebb_rows *rows, double v)
 {
@@ -130,6 +142,8 @@ double ebb_rows_volume(const struct ebb_rows *rows, double v)
 
 double ebb_rows_diagonal(const struct ebb_rows *rows, double v)
 {
+  if (rows->band == 2) return ebb_rows_five_diagonal(rows, v);
+
   const double below = rows->half && v == rows->sector ? ebb_rows_edge(rows) : ebb_rows_hop(rows, v - 4.0);
 
   return rows->scale * ((ebb_rows_hop(rows, v) + below) / ebb_rows_measure(rows, v) + ebb_rows_potential(rows, v));
@@ -137,13 +151,20 @@ double ebb_rows_diagonal(const struct ebb_rows *rows, double v)
 
 double ebb_rows_offdiagonal(const struct ebb_rows *rows, double v)
 {
+  if (rows->band == 2) return ebb_rows_five_first(rows, v);
   return -rows->scale * ebb_rows_hop(rows, v) / sqrt(ebb_rows_measure(rows, v) * ebb_rows_measure(rows, v + 4.0));
+}
+
+double ebb_rows_second(const struct ebb_rows *rows, double v)
+{
+  return rows->band == 2 ? ebb_rows_five_second(rows, v) : 0.0;
 }
 
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows)
 {
   const double growth = rows->clock->growth;
 
+  if (rows->band == 2) return ebb_rows_five_nature(rows);
   if (!(growth > 0.0)) return EBB_NATURE_CONTINUOUS; /* bounded */
   if (rows->volume_power > 1.0 && rows->s != 0.0) return rows->s < 0.0 ? EBB_NATURE_DISCRETE : EBB_NATURE_INVERTED;
   if (rows->s >= 1.0) return EBB_NATURE_OVERCRITICAL;
@@ -172,7 +193,7 @@ double ebb_rows_reach(const struct ebb_rows *rows, double depth)
   if (rows->volume_power > 1.0 && rows->s != 0.0) return reach_refined(rows, depth);
 
   if (rows->s < 0.0) reach = 2.0 * depth / asinh(sqrt(-rows->s));
-  if (rows->curvature == EBB_CURVATURE_CLOSED)
+  if (rows->curvature == EBB_CURVATURE_CLOSED || rows->curvature == EBB_CURVATURE_CLOSED_CONNECTION)
     reach = fmin(reach, pow(depth / (0.75 * rows->constants.immirzi * rows->d1), 1.5));
   return reach;
 }

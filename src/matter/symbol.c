@@ -30,7 +30,7 @@ struct ebb_symbol ebb_symbol_make(const struct ebb_rows *rows)
                               .root = rows->clock->root,
                               .scale = rows->scale,
                               .growth = growth,
-                              .part = square,
+                              .part = rows->prescription->split ? rows->lorentzian_weight * square : square,
                               .square = square,
                               .d1 = rows->d1,
                               .s = rows->s,

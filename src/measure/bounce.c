@@ -12,7 +12,6 @@ static const double CLOSE = 1e-4;            /* of the bracket: half width of th
 static const double SECTIONED = 1e-9;        /* of the bracket: where sectioning for the median stops */
 static const double EDGE_ALLOWED = 1e-3;     /* probability at the lattice edge above which no verdict is given */
 static const double ERROR_ALLOWED = 1e-2;    /* relative error of the bounce volume above which no verdict is given */
-static const double HALF_CELL = 2.0;
 
 const char *const ebb_verdict_names[] = {"no", "yes", "undecided"};
 
@@ -270,8 +269,9 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
   }
   bounce->volume = (struct ebb_measured){moment[EBB_MOMENT_VOLUME_MEAN], error[EBB_MOMENT_VOLUME_MEAN]};
   bounce->density = (struct ebb_measured){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
-  bounce->v_mode = (struct ebb_measured){
-      sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx : HALF_CELL};
+  bounce->v_mode =
+      (struct ebb_measured){sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx
+                                                                               : 0.5 * source->lattice->step};
   p = moment[EBB_MOMENT_MOMENTUM_MEAN];
   effective(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce);
   PetscCall(ebb_sheet_clear(&sheet));

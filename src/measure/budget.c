@@ -156,7 +156,7 @@ PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct 
 
     ebb_lattice_local(lattice, arm, &begin, &end);
     for (int i = 0; i < EBB_DRIFTS; i++) {
-      const PetscInt site = PetscMax((PetscInt)((budget->drift_v[i] - lattice->first[arm]) / 4.0), 0) + 1;
+      const PetscInt site = PetscMax((PetscInt)((budget->drift_v[i] - lattice->first[arm]) / lattice->step), 0) + 1;
       /* each rank looks at the sites it owns; the last one looks as far as the matching volume where that is beyond */
       const bool mine = (site >= begin && site < end) || (end == lattice->sites[arm] && site >= end && begin < end);
 

@@ -141,8 +141,8 @@ static void links(const struct ebb_lattice *lattice, double v, const struct ebb_
 void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, const struct ebb_site_rows *rows,
                         PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
-  const double v = lattice->first[arm] + 4.0 * (double)n;
-  const double v_max = lattice->first[arm] + 4.0 * (double)(lattice->sites[arm] - 1);
+  const double v = lattice->first[arm] + lattice->step * (double)n;
+  const double v_max = lattice->first[arm] + lattice->step * (double)(lattice->sites[arm] - 1);
   const struct ebb_clock *clock = lattice->rows.clock;
   const double volume = ebb_rows_volume(&lattice->rows, v);
   const struct site_weights at = {.cell = 1.0,

@@ -106,7 +106,8 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
 
   PetscFunctionBegin;
   ebb_lattice_local(lattice, arm, &begin, &end);
-  if (v_limit > 0.0 && !grid) end = PetscMin(end, (PetscInt)fmax((v_limit - lattice->first[arm]) / 4.0, 0.0) + 1);
+  if (v_limit > 0.0 && !grid)
+    end = PetscMin(end, (PetscInt)fmax((v_limit - lattice->first[arm]) / lattice->step, 0.0) + 1);
   if (begin >= end) PetscFunctionReturn(0);
   PetscCall(PetscMalloc2((size_t)ROWS * (size_t)packet->n, &e, (size_t)(ROWS + HALO) * (size_t)columns, &block));
   PetscCall(ebb_fold_begin(sheet, &fold));

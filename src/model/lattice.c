@@ -29,15 +29,16 @@ PetscErrorCode ebb_lattice_make_model(const struct ebb_rows *rows, PetscInt site
              sector);
   PetscCheck(sites > 1, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
              "a lattice needs two sites or more, got %" PetscInt_FMT, sites);
-  *lattice = (struct ebb_lattice){.rows = *rows, .prescription = prescription, .sector = sector, .half = rows->half};
+  *lattice = (struct ebb_lattice){
+      .rows = *rows, .prescription = prescription, .sector = sector, .half = rows->half, .step = rows->step};
   lattice->first[0] = sector;
   lattice->sites[0] = sites;
   if (lattice->half)
     lattice->edge = ebb_rows_edge(rows);
   else {
-    lattice->first[1] = 4.0 - sector;
+    lattice->first[1] = rows->step - sector;
     lattice->sites[1] = sites;
-    lattice->cross = ebb_rows_hop(rows, sector - 4.0);
+    lattice->cross = ebb_rows_hop(rows, sector - rows->step);
   }
   PetscCall(split(lattice, comm));
   PetscFunctionReturn(0);
@@ -77,8 +78,8 @@ double ebb_lattice_v(const struct ebb_lattice *lattice, PetscInt global)
   const PetscInt left = lattice->sites[1];
 
   if (lattice->prescription->grid) return exp(lattice->lnv_min + (double)global * lattice->dx);
-  if (global < left) return -(lattice->first[1] + 4.0 * (double)(left - 1 - global));
-  return lattice->first[0] + 4.0 * (double)(global - left);
+  if (global < left) return -(lattice->first[1] + lattice->step * (double)(left - 1 - global));
+  return lattice->first[0] + lattice->step * (double)(global - left);
 }
 
 double ebb_lattice_weight(const struct ebb_lattice *lattice, PetscInt global)
@@ -95,8 +96,8 @@ void ebb_lattice_cell(const struct ebb_lattice *lattice, PetscInt global, double
     *low = v * exp(-0.5 * lattice->dx);
     *high = v * exp(0.5 * lattice->dx);
   } else {
-    *low = v - 2.0;
-    *high = v + 2.0;
+    *low = v - 0.5 * lattice->step;
+    *high = v + 0.5 * lattice->step;
   }
 }
 

@@ -34,7 +34,7 @@ static PetscErrorCode allocate(const struct ebb_rows *rows, PetscInt n, PetscInt
 /* Largest relative stray of a single mode on any arm, at twice the matching volume. */
 static PetscErrorCode stray(const struct ebb_basis *basis, const struct ebb_lattice *lattice, double *worst)
 {
-  const PetscInt far = (PetscInt)(2.0 * ebb_basis_match_volume(basis) / 4.0);
+  const PetscInt far = (PetscInt)(2.0 * ebb_basis_match_volume(basis) / lattice->step);
 
   PetscFunctionBegin;
   *worst = 0.0;
@@ -97,6 +97,20 @@ static PetscErrorCode mode_find(struct ebb_continuum *c, int channel, PetscInt j
   PetscFunctionReturn(0);
 }
 
+/* cos(k ln v + alpha) = cos(alpha) - k sin(alpha) ln v + ... is the solution of zero energy as k falls: b/a = -k
+ * tan(alpha). */
+static PetscErrorCode look_below(struct ebb_continuum *c)
+{
+  static const double SMALL = 1e-4;
+  struct ebb_basis *basis;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_basis_create_modes(&c->lattice, 1, &SMALL, NULL, &basis));
+  c->below = tan(ebb_basis_info(basis)[0].alpha) > 0.0;
+  PetscCall(ebb_basis_destroy(&basis));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_continuum_find(const struct ebb_rows *rows, PetscInt n, const double k[], PetscInt sites,
                                   MPI_Comm comm, struct ebb_continuum **continuum)
 {
@@ -104,7 +118,10 @@ PetscErrorCode ebb_continuum_find(const struct ebb_rows *rows, PetscInt n, const
 
   PetscFunctionBegin;
   *continuum = NULL;
-  PetscCheck(ebb_rows_nature(rows) == EBB_NATURE_CONTINUOUS && rows->curvature == EBB_CURVATURE_NONE && rows->s == 0.0,
+  const enum ebb_nature nature = ebb_rows_nature(rows);
+
+  PetscCheck((nature == EBB_NATURE_CONTINUOUS || nature == EBB_NATURE_FAMILY_CONTINUOUS) &&
+                 rows->curvature == EBB_CURVATURE_NONE && rows->s == 0.0,
              PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "no flat model with a continuous spectrum");
   PetscCall(allocate(rows, n, sites, comm, &c));
   c->bound = rows->prescription->tilt > 0.0 && c->lattice.edge == 0.0;
@@ -113,6 +130,7 @@ PetscErrorCode ebb_continuum_find(const struct ebb_rows *rows, PetscInt n, const
     c->eigenvalue[j] = rows->kappa * rows->kappa * (k[j] * k[j] + rows->gap);
     for (int i = 0; i < c->channels; i++) PetscCall(mode_find(c, i, j, comm));
   }
+  if (rows->band == 2 && nature == EBB_NATURE_CONTINUOUS) PetscCall(look_below(c));
   *continuum = c;
   PetscFunctionReturn(0);
 }

@@ -353,6 +353,10 @@ PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscIn
 
   PetscFunctionBegin;
   PetscCheck(!lattice->prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "modes need a volume lattice");
+  if (lattice->rows.band == 2) {
+    PetscCall(ebb_basis_create_five(lattice, n, k, basis));
+    PetscFunctionReturn(0);
+  }
   PetscCall(ebb_basis_allocate(&modes_kind, lattice, n, basis));
   PetscCall(PetscArraycpy((*basis)->k, k, n));
   PetscCall(PetscCalloc1(n, &(*basis)->info));

@@ -235,7 +235,7 @@ PetscErrorCode ebb_plan_make(const struct ebb_state_request *request, const stru
   {
     /* a lattice asked for may end beyond the packet's reach: no image may stand on it either */
     const struct ebb_lattice_settings *l = &request->settings->lattice;
-    const double v_end = fmax(l->volume_max > 0.0 ? l->volume_max : 0.0, 4.0 * (double)(l->points + 1));
+    const double v_end = fmax(l->volume_max > 0.0 ? l->volume_max : 0.0, lattice->step * (double)(l->points + 1));
 
     period = fmax(period, log(v_end / fmax(plan->k_low, 1.0)) + reach.lnv_clock + IMAGE_MARGIN);
   }

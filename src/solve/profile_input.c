@@ -60,8 +60,8 @@ static PetscErrorCode project_arm(const struct ebb_profile *profile, const struc
   PetscCallMPI(MPI_Comm_rank(comm, &rank));
   PetscCallMPI(MPI_Comm_size(comm, &size));
   profile->reach_v(input, &low, &high);
-  first = low > lattice->first[arm] ? (PetscInt)((low - lattice->first[arm]) / 4.0) : 0;
-  last = high > lattice->first[arm] ? (PetscInt)((high - lattice->first[arm]) / 4.0) + 2 : 0;
+  first = low > lattice->first[arm] ? (PetscInt)((low - lattice->first[arm]) / lattice->step) : 0;
+  last = high > lattice->first[arm] ? (PetscInt)((high - lattice->first[arm]) / lattice->step) + 2 : 0;
   begin = first + (PetscInt)((PetscInt64)(last - first) * rank / size);
   end = first + (PetscInt)((PetscInt64)(last - first) * (rank + 1) / size);
   PetscCall(PetscMalloc1((size_t)ROWS * (size_t)n, &rows));
@@ -71,7 +71,7 @@ static PetscErrorCode project_arm(const struct ebb_profile *profile, const struc
 
     ebb_cursor_next(cursor, count, rows);
     for (PetscInt r = 0; r < count; r++) {
-      const double complex psi = profile->value(input, lattice->first[arm] + 4.0 * (double)(i + r), arm == 1);
+      const double complex psi = profile->value(input, lattice->first[arm] + lattice->step * (double)(i + r), arm == 1);
 
       *norm += creal(psi * conj(psi));
       for (PetscInt j = 0; j < n; j++) c[j] += rows[r * n + j] * psi;

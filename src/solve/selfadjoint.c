@@ -7,6 +7,8 @@
  * any v. */
 #include "ebbturn/selfadjoint.h"
 
+#include "selfadjoint_five.h"
+
 #include <complex.h>
 #include <math.h>
 
@@ -83,6 +85,7 @@ static void asymptotics(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
   bool bare = ebb_rows_potential(rows, FAR) == 0.0;
   const double w = bare ? 0.0 : -drive(rows, far, false);
 
+  r->roots = 2;
   roots(rows, far, r);
   r->exponent = NAN;
   /* Roots that meet at -1 (Lambda = Lambda_c): the gauge (-1)^n turns them to +1, and what is left of U beside C falls
@@ -134,12 +137,44 @@ static void weyl(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
 
 static const char *const limit_words[] = {"limit point", "limit circle", "undecided"};
 
+/* A further field with a potential W(chi): Theta (x) 1 - 1 (x) p^2 - 2 V1^2 q (x) W with a scalar clock, every slice of
+ * chi with W > 0 a problem of a positive cosmological constant. With clocks whose operator grows like v at most, H (x)
+ * 1
+ * - [1/V] p^2/2 - V W: |Im <psi, (H - z) psi>| <= a_N |psi_N| |psi_{N+1}| over N sites, and sum 1/a_N diverges, so no
+ * solution is square summable where every slice p^2/(2V) + V W is essentially self-adjoint, as oscillators are
+ * (derived here). */
+static PetscErrorCode join(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
+{
+  PetscFunctionBegin;
+  if (rows->clock->growth <= 1.0) {
+    r->n_plus = r->n_minus = 0;
+    PetscCall(
+        PetscSNPrintf(r->reason, sizeof r->reason,
+                      "the sum of the inverse links between volumes diverges and every slice of the further field "
+                      "is an oscillator, so the joint operator has no square-summable solution; without the "
+                      "field: Weyl's disc has radius %.3g after %.0f sites",
+                      r->radius[r->octaves - 1], r->sites[r->octaves - 1]));
+    PetscFunctionReturn(0);
+  }
+  r->n_plus = r->n_minus = -1;
+  PetscCall(PetscSNPrintf(r->reason, sizeof r->reason,
+                          "the further field's potential makes of each of its values a problem of its own, with a "
+                          "positive cosmological constant, and no result is known for the joint operator; without the "
+                          "potential: %s, Weyl's disc has radius %.3g after %.0f sites",
+                          limit_words[r->asymptotic], r->radius[r->octaves - 1], r->sites[r->octaves - 1]));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_selfadjoint_find(const struct ebb_rows *rows, struct ebb_selfadjoint *r)
 {
   char solutions[128];
 
   PetscFunctionBegin;
   *r = (struct ebb_selfadjoint){.n_plus = -1, .n_minus = -1};
+  if (rows->band == 2) {
+    PetscCall(ebb_selfadjoint_five(rows, r));
+    PetscFunctionReturn(0);
+  }
   asymptotics(rows, r);
   weyl(rows, r);
   if (r->asymptotic == r->weyl && r->weyl != EBB_LIMIT_UNDECIDED)
@@ -152,5 +187,6 @@ PetscErrorCode ebb_selfadjoint_find(const struct ebb_rows *rows, struct ebb_self
                           "%s (%s); Weyl's disc at z = i scale has radius %.3g after %.0f sites (%s)", solutions,
                           limit_words[r->asymptotic], r->radius[r->octaves - 1], r->sites[r->octaves - 1],
                           limit_words[r->weyl]));
+  if (rows->joint) PetscCall(join(rows, r));
   PetscFunctionReturn(0);
 }

@@ -5,10 +5,9 @@
 
 #include <slepceps.h>
 
-static const double TOLERANCE = 1e-12; /* relative, of an eigenpair's residual */
+static const double TOLERANCE = 1e-12;     /* relative, of an eigenpair's residual */
+static const double OFFSET = 0.0718281828; /* of a part's length */
 static const char PREFIX[] = "ebb_slicing_";
-/* Without this MUMPS on several ranks gives the last block to ScaLAPACK and loses the signs of its pivots. */
-static const char INERTIA_OPTION[] = "-ebb_slicing_st_mat_mumps_icntl_13";
 
 static PetscErrorCode matrix_make(PetscInt n, const double d[], const double e[], MPI_Comm comm, Mat *matrix)
 {
@@ -28,8 +27,28 @@ static PetscErrorCode matrix_make(PetscInt n, const double d[], const double e[]
   PetscFunctionReturn(0);
 }
 
-/* PETSc's own Cholesky factorisation on one rank, MUMPS on several; both tell their inertia. Settings go to the solver
- * of the slices: those on the spectral transformation's are not looked at. */
+/* Parts of about equal length; their ends are off any simple fraction, where a matrix of simple numbers could have a
+ * vanishing pivot. */
+static PetscErrorCode divide(EPS eps, PetscMPIInt ranks, double low, double high)
+{
+  double *ends;
+
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc1(ranks + 1, &ends));
+  for (PetscMPIInt i = 0; i <= ranks; i++) {
+    const double share = (i + (i > 0 && i < ranks ? OFFSET : 0.0)) / ranks;
+
+    ends[i] = i == ranks ? high : low + share * (high - low);
+  }
+  PetscCall(EPSKrylovSchurSetPartitions(eps, ranks));
+  PetscCall(EPSKrylovSchurSetSubintervals(eps, ends));
+  PetscCall(PetscFree(ends));
+  PetscFunctionReturn(0);
+}
+
+/* One part of the interval for each rank, with a matrix of its own: a parallel factorisation of so narrow a band would
+ * only wait for messages (MUMPS on two ranks was given up after minutes). Settings go to the solver of the slices:
+ * those on the spectral transformation's are not looked at. */
 static PetscErrorCode solver_make(Mat matrix, double low, double high, EPS *eps)
 {
   PetscMPIInt ranks;
@@ -46,6 +65,7 @@ static PetscErrorCode solver_make(Mat matrix, double low, double high, EPS *eps)
   PetscCall(EPSSetType(*eps, EPSKRYLOVSCHUR));
   PetscCall(EPSSetWhichEigenpairs(*eps, EPS_ALL));
   PetscCall(EPSSetInterval(*eps, low, high));
+  if (ranks > 1) PetscCall(divide(*eps, ranks, low, high));
   PetscCall(EPSSetTolerances(*eps, TOLERANCE, PETSC_DEFAULT));
   PetscCall(EPSGetST(*eps, &st));
   PetscCall(STSetType(st, STSINVERT));
@@ -53,7 +73,6 @@ static PetscErrorCode solver_make(Mat matrix, double low, double high, EPS *eps)
   PetscCall(KSPSetType(ksp, KSPPREONLY));
   PetscCall(KSPGetPC(ksp, &pc));
   PetscCall(PCSetType(pc, PCCHOLESKY));
-  if (ranks > 1) PetscCall(PCFactorSetMatSolverType(pc, MATSOLVERMUMPS));
   PetscCall(EPSSetFromOptions(*eps));
   PetscFunctionReturn(0);
 }
@@ -75,13 +94,10 @@ static PetscErrorCode inertia_read(EPS eps, PetscInt inertia[2])
 PetscErrorCode ebb_slicing_find(PetscInt n, const double d[], const double e[], double low, double high, MPI_Comm comm,
                                 PetscInt *found, double **values, PetscInt inertia[2])
 {
-  PetscMPIInt ranks;
   Mat matrix;
   EPS eps;
 
   PetscFunctionBegin;
-  PetscCallMPI(MPI_Comm_size(comm, &ranks));
-  if (ranks > 1) PetscCall(PetscOptionsSetValue(NULL, INERTIA_OPTION, "1"));
   PetscCall(matrix_make(n, d, e, comm, &matrix));
   PetscCall(solver_make(matrix, low, high, &eps));
   PetscCall(EPSSolve(eps));
@@ -92,6 +108,5 @@ PetscErrorCode ebb_slicing_find(PetscInt n, const double d[], const double e[], 
   PetscCall(inertia_read(eps, inertia));
   PetscCall(EPSDestroy(&eps));
   PetscCall(MatDestroy(&matrix));
-  if (ranks > 1) PetscCall(PetscOptionsClearValue(NULL, INERTIA_OPTION));
   PetscFunctionReturn(0);
 }

@@ -10,6 +10,7 @@
 #include "extension.h"
 #include "limit_circle.h"
 #include "slicing.h"
+#include "spectrum_five.h"
 #include "sturm.h"
 
 #include <float.h>
@@ -314,6 +315,17 @@ PetscErrorCode ebb_spectrum_find(const struct ebb_spectrum_request *r, MPI_Comm 
   PetscFunctionBegin;
   *spectrum = NULL;
   problem[0] = '\0';
+  if (r->rows->band == 2) {
+    const bool continuous = nature == EBB_NATURE_FAMILY_CONTINUOUS && r->extension == EBB_EXTENSION_DELTA;
+
+    PetscCheck(continuous || r->wall || nature == EBB_NATURE_DISCRETE, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG,
+               "no eigenvalues of this five-point operator");
+    PetscCall(PetscNew(spectrum));
+    PetscCall(continuous ? ebb_spectrum_below(r, comm, problem, size, *spectrum)
+                         : ebb_spectrum_five(r, comm, problem, size, *spectrum));
+    if (problem[0]) PetscCall(ebb_spectrum_destroy(spectrum));
+    PetscFunctionReturn(0);
+  }
   PetscCheck(family == (r->extension != EBB_EXTENSION_NONE) &&
                  (family || r->wall || nature == EBB_NATURE_DISCRETE || (nature == EBB_NATURE_INVERTED && !r->count)),
              PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "no discrete spectrum without the extension the operator needs");

@@ -3,7 +3,7 @@
  * Walks the catalogue of prescriptions: what every flat operator must be, whatever its ordering, and its rows against
  * the papers' own form, written here a second time. Flat, massless scalar clock; Theta in units of 3 pi G, for mu0 of 4
  * pi G/3. */
-#include "ebbturn/operators.h"
+#include "ebbturn/rows.h"
 
 #include "support/start.h"
 
@@ -21,6 +21,9 @@ enum { SECTORS = sizeof sectors / sizeof *sectors };
 static double sgn(double x) { return (x > 0.0) - (x < 0.0); }
 static double s_plus(double v) { return sgn(v + 2.0) + sgn(v); }
 static double s_minus(double v) { return sgn(v - 2.0) + sgn(v); }
+
+/* tridiagonal ones on a lattice of volumes; the five-point ones have a part of their own below */
+static bool tridiagonal(const struct ebb_prescription *p) { return !p->grid && !p->split; }
 
 /* inverse-volume step, in long double because it cancels: |(v+1)^{1/3} - (v-1)^{1/3}| */
 static double inverse_step(double v) { return (double)fabsl(cbrtl(fabsl(v + 1.0L)) - cbrtl(fabsl(v - 1.0L))); }
@@ -103,9 +106,11 @@ Test(prescriptions, entries_are_complete)
   {
     cr_expect(p->name && p->title && p->formula && p->source && p->bibtex, "%s", p->name);
     cr_expect_eq(ebb_prescription_find(p->name), p);
-    cr_expect_eq(p->grid, p->measure == NULL && p->hop == NULL, "%s", p->name);
-    cr_expect(p->grid || (p->edge && p->measure_series && p->hop_series), "%s", p->name);
-    cr_expect(p->grid || paper(p), "'%s' has no second form here: write one", p->name);
+    cr_expect_eq(p->grid, p->measure == NULL, "%s", p->name);
+    cr_expect_eq(tridiagonal(p), p->hop != NULL, "%s", p->name);
+    cr_expect(!tridiagonal(p) || (p->edge && p->measure_series && p->hop_series), "%s", p->name);
+    cr_expect(!tridiagonal(p) || paper(p), "'%s' has no second form here: write one", p->name);
+    cr_expect(!p->split || (p->step == 2.0 || p->step == 4.0), "%s", p->name);
   }
   cr_expect_null(ebb_prescription_find("aqs"));
 }
@@ -141,7 +146,7 @@ Test(prescriptions, reflection_of_the_volume_changes_nothing)
 {
   each_prescription(p)
   {
-    for (int i = 0; !p->grid && i < SECTORS; i++)
+    for (int i = 0; tridiagonal(p) && i < SECTORS; i++)
       for (double v = sectors[i]; v < 100.0; v += 4.0) {
         ebb_test_close(p->measure(-v), p->measure(v), ebb_test_rounding(16, p->measure(v)));
         if (!ebb_prescription_half(p, sectors[i]))
@@ -154,7 +159,7 @@ Test(prescriptions, one_orientation_never_sees_the_other)
 {
   each_prescription(p)
   {
-    for (int i = 0; !p->grid && i < SECTORS; i++) {
+    for (int i = 0; tridiagonal(p) && i < SECTORS; i++) {
       const double eps = sectors[i], edge = p->edge(eps);
 
       if (p->one_orientation) {
@@ -177,7 +182,7 @@ Test(prescriptions, are_positive_forms)
 
   each_prescription(p)
   {
-    for (int i = 0; !p->grid && i < SECTORS; i++) {
+    for (int i = 0; tridiagonal(p) && i < SECTORS; i++) {
       const double eps = sectors[i];
       const bool half = ebb_prescription_half(p, eps);
       double psi[SITES], x[SITES], rows = 0.0, form = 0.0, size = 0.0;
@@ -218,7 +223,7 @@ Test(prescriptions, series_are_the_functions_at_large_volume)
 
   each_prescription(p)
   {
-    if (p->grid) continue;
+    if (!tridiagonal(p)) continue;
     p->measure_series(TERMS, b);
     p->hop_series(TERMS, c);
     if (p->square_series) p->square_series(TERMS, q);
@@ -248,7 +253,7 @@ Test(prescriptions, large_volume_limit_is_reached_at_second_order)
 {
   each_prescription(p)
   {
-    for (int i = 0; !p->grid && i < SECTORS; i++) {
+    for (int i = 0; tridiagonal(p) && i < SECTORS; i++) {
       double off[2][2];
 
       for (int fine = 0; fine < 2; fine++) {
@@ -282,6 +287,88 @@ Test(prescriptions, squares_of_the_volume_have_their_limit)
 
       cr_expect_lt(fabs(p->square(v) / limit - 1.0), 1.0 / (v * v) + 1e-14, "%s, v = %g", p->name, v);
       ebb_test_close(p->square(-v), p->square(v), ebb_test_rounding(16, limit)); /* parts summed in another order */
+    }
+  }
+}
+
+/* ---- five-point prescriptions */
+
+/* sin(n beta/2) between square roots of v, as matrices: S_a = sqrt(v) s_a v s_a sqrt(v) on lattice points j step, with
+ * <v|exp(+-i a beta/4)|v +- a/2> = 1; written as the sum over the midpoint, which must be positive as v is there. */
+static double block(double v, double w, double a)
+{
+  double sum = 0.0;
+
+  for (int i = -1; i <= 1; i += 2)
+    for (int j = -1; j <= 1; j += 2) {
+      const double middle = v + 0.5 * i * a, end = middle - 0.5 * j * a;
+
+      if (middle > 0.0 && fabs(end - w) < 1e-9) sum += (i == j ? 0.25 : -0.25) * sqrt(v) * middle * sqrt(w);
+    }
+  return sum;
+}
+
+static struct ebb_rows five_rows(const struct ebb_prescription *p, double sector, double weight)
+{
+  struct ebb_rows rows = {.prescription = p,
+                          .clock = ebb_clock_select("scalar", ""),
+                          .constants = ebb_constants_make(1.0, 0.31, 1.7),
+                          .sector = sector,
+                          .lorentzian_weight = weight};
+
+  ebb_rows_make(&rows);
+  return rows;
+}
+
+/* 16 eps: a square root, products, and two terms of the size of the larger one */
+Test(prescriptions, five_point_rows_are_products_of_sines)
+{
+  each_prescription(p)
+  {
+    for (int i = 0; p->split && i < SECTORS; i++)
+      for (int n = 0; n < 30; n++) {
+        const struct ebb_rows rows = five_rows(p, sectors[i], 0.8);
+        const double v = rows.sector + rows.step * n, size = rows.scale * v * v * (fabs(rows.w[0]) + fabs(rows.w[1]));
+        double element[3];
+
+        cr_expect(rows.half && rows.band == 2 && rows.sector > 0.0 && rows.sector <= rows.step, "%s", p->name);
+        for (int j = 0; j < 3; j++) {
+          const double w = v + j * rows.step;
+
+          element[j] = rows.scale * (rows.w[0] * block(v, w, rows.step) + rows.w[1] * block(v, w, 2.0 * rows.step));
+        }
+        ebb_test_close(ebb_rows_diagonal(&rows, v), element[0], ebb_test_rounding(16, size));
+        ebb_test_close(ebb_rows_offdiagonal(&rows, v), element[1], ebb_test_rounding(16, size));
+        ebb_test_close(ebb_rows_second(&rows, v), element[2], ebb_test_rounding(16, size));
+      }
+  }
+}
+
+/* Small b, any weight: sum_j theta(v, v + j step) cos(j step b/2)/v^2 -> b^2 (lambda = 1), the limit of general
+ * relativity; here by second differences of the symbol, 2 sum_j j^2 step^2/4 theta_j/v^2 -> -2/2. */
+Test(prescriptions, five_point_symbols_have_the_classical_limit_for_every_weight)
+{
+  static const double weight[] = {-2.0, -1.0, -0.3, 0.4, 1.0, 3.0};
+
+  each_prescription(p)
+  {
+    for (size_t i = 0; p->split && i < sizeof weight / sizeof *weight; i++) {
+      const struct ebb_rows rows = five_rows(p, 4.0, weight[i]);
+      double error[2];
+
+      for (int fine = 0; fine < 2; fine++) {
+        const double v = fine ? 4000.0 : 2000.0;
+        double curve = 0.0;
+
+        for (int j = -2; j <= 2; j++) {
+          const double low = j < 0 ? v + j * rows.step : v;
+          const double element = j % 2 ? ebb_rows_offdiagonal(&rows, low) : j ? ebb_rows_second(&rows, low) : 0.0;
+
+          curve -= element * 0.25 * j * j * rows.step * rows.step;
+        }
+        error[fine] = fabs(curve / (2.0 * rows.scale * v * v) - 1.0);
+      }
+      ebb_test_order(error[0], error[1], 2.0, 2);
     }
   }
 }

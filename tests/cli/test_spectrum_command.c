@@ -65,6 +65,8 @@ Test(spectrum_command, refuses_what_has_no_list_of_eigenvalues)
       {"gravity: {prescription: smmo, cosmological_constant_over_critical: 1.5}\n",
        "  line 1  the cosmological constant is 1.5 of the critical one, 3/(gamma^2 lambda^2): the operator has no "
        "positive part, no physical states; take less than 1\n"},
+      {"matter: [{kind: scalar, name: chi, grid: {points: 8, length: 1}}]\ngravity: {cosmological_constant: -1}\n",
+       "  line 1  matter belongs to 'evolve' and 'selfadjoint'; 'spectrum' is of the volume alone\n"},
       {"gravity: {prescription: wdw}\nlattice: {lnv_min: 0, lnv_max: 1, points: 64}\n",
        "  line 1  prescription 'wdw' has a continuous spectrum\n"},
       {"gravity: {cosmological_constant: -1}\nclock: {kind: unimodular}\n",
@@ -105,6 +107,17 @@ Test(spectrum_command, needs_to_know_which_eigenvalues)
       {"gravity: {cosmological_constant: -1}\nspectrum: {interval: [1, 0]}\n", "is not above the entry before it"},
       {"gravity: {cosmological_constant: 1, extension: {tau: 0}}\nspectrum: {count: 3}\n",
        "spectrum.count: there is no lowest eigenvalue"},
+      {"gravity: {prescription: mlqc1}\nspectrum: {interval: [-9, 0]}\n",
+       "gravity.extension is missing: the deficiency indices are (1,1)"},
+      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\nspectrum: {count: 3}\n",
+       "spectrum.count: there is no lowest eigenvalue"},
+      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\nspectrum: {interval: [-9, 0], k: [1]}\n",
+       "spectrum.interval asks for eigenvalues below the continuum, spectrum.k for waves in it"},
+      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\n", "spectrum.interval is missing; say where below zero"},
+      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\nspectrum: {interval: [1, 9]}\n",
+       "spectrum.interval begins at 1 G, in the continuum; eigenvalues lie below 0"},
+      {"gravity: {prescription: mlqc2}\nspectrum: {count: 3}\n", "give spectrum.k"},
+      {"gravity: {prescription: mlqc2, curvature: closed}\nspectrum: {count: 3}\n", "no label of extensions is known"},
       {"gravity: {cosmological_constant: -1}\nspectrum: {k: [1]}\n",
        "spectrum.k is for continuous spectra, and this model has a discrete one; give spectrum.count or "
        "spectrum.interval"},
@@ -161,6 +174,8 @@ Test(spectrum_command, worked_models)
       {"inputs/negative_lambda.yaml", 20, 0, 81.507187423872},
       {"inputs/closed_universe.yaml", 5, 0, NAN},
       {"inputs/positive_lambda.yaml", 3, 1, 71.349761918243695998},
+      {"inputs/mlqc1.yaml", 5, 4, -116.0676215728159298},
+      {"inputs/closed_connection.yaml", 20, 0, 361.93201754020130094},
   };
   char *folder = ebb_test_folder_create();
 
@@ -178,8 +193,9 @@ Test(spectrum_command, worked_models)
       read_line(path, "/spectrum/eigenvalue", rows[i].count, values);
       read_line(path, "/spectrum/error", rows[i].count, errors);
       if (!isnan(rows[i].expected))
-        cr_expect_leq(fabs(values[rows[i].which] - rows[i].expected), errors[rows[i].which] + 1e-12 * rows[i].expected,
-                      "%s: %.17g", rows[i].model, values[rows[i].which]);
+        cr_expect_leq(fabs(values[rows[i].which] - rows[i].expected),
+                      errors[rows[i].which] + 1e-12 * fabs(rows[i].expected), "%s: %.17g", rows[i].model,
+                      values[rows[i].which]);
       if (ranks == 0) memcpy(first, values, sizeof first);
       for (size_t j = 0; j < rows[i].count; j++) cr_expect_eq(values[j], first[j]);
       ebb_test_run_clear(&run);

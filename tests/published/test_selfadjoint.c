@@ -11,6 +11,7 @@
 #include <complex.h>
 #include <criterion/criterion.h>
 #include <math.h>
+#include <string.h>
 
 struct expectation {
   const char *clock;
@@ -183,4 +184,23 @@ Test(selfadjoint, decides_by_moduli)
   cr_expect_eq(ebb_stability_decide(3, (const double[]){2.5, 2.5, 2.5}), EBB_UNSTABLE_BOUNDED);
   cr_expect_eq(ebb_stability_decide(3, (const double[]){2.5, 25.0, 250.0}), EBB_UNSTABLE_UNBOUNDED);
   cr_expect_eq(ebb_stability_decide(3, (const double[]){1.0, 1.0, 250.0}), EBB_UNSTABLE_UNBOUNDED);
+}
+
+/* A quadratic potential of a second scalar: open with a scalar clock, essentially self-adjoint with dust (derived here;
+ * no published counterpart known) */
+Test(selfadjoint, says_what_is_not_known_of_a_potential)
+{
+  const struct expectation scalar = {"scalar", 0.0, EBB_CURVATURE_NONE, 0, true};
+  const struct expectation dust = {"dust_symmetric_sqrt", 0.0, EBB_CURVATURE_NONE, 0, true};
+  struct ebb_rows rows = rows_of("smmo", 4.0, &scalar);
+  struct ebb_selfadjoint found;
+
+  rows.joint = true;
+  cr_assert_eq(ebb_selfadjoint_find(&rows, &found), 0);
+  cr_expect(found.n_plus == -1 && found.n_minus == -1, "%d", found.n_plus);
+  cr_expect_not_null(strstr(found.reason, "no result is known for the joint operator"), "%s", found.reason);
+  rows = rows_of("smmo", 4.0, &dust);
+  rows.joint = true;
+  cr_assert_eq(ebb_selfadjoint_find(&rows, &found), 0);
+  cr_expect_eq(found.n_plus, 0, "%s", found.reason);
 }

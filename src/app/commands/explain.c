@@ -124,6 +124,7 @@ static void explain_setting(const struct ebb_setting *setting)
   if (setting->places & EBB_ON_VOLUME) row("belongs to", "prescriptions on a lattice of volumes");
   if (setting->places & EBB_ON_GRID) row("belongs to", "prescriptions on a grid in ln v");
   if (setting->places & EBB_ON_FIXED) row("belongs to", "prescriptions mu0 and refined");
+  if (setting->places & EBB_ON_WEIGHTED) row("belongs to", "prescriptions mlqc1 and mlqc2");
   if (setting->places & EBB_ON_REFINED) row("belongs to", "prescription refined");
   if (setting->places & EBB_COMPONENT_ONLY) row("belongs to", "a component of a superposition");
   if (setting->places_required & EBB_ON_GRID) row("required", "on a grid in ln v");

@@ -20,7 +20,8 @@ const struct ebb_command ebb_command_selfadjoint = {
         "evidence: the solutions at large volume, and Weyl's disc by recursion. Beside them stand the moduli of the\n"
         "large-volume roots and, where the operator has a family of extensions, the first positive eigenvalue of some "
         "of\n"
-        "its members. Exit 0: essentially self-adjoint; 1: it is not, or undecided; 2: input problem; 4: file failure.",
+        "its members (the largest negative one where a continuum begins at 0). Exit 0: essentially self-adjoint; 1: it "
+        "is not, or undecided; 2: input problem; 4: file failure.",
     .operands_min = 1,
     .operands_max = 1,
     .options = EBB_OPTION_SET | EBB_OPTION_OUTPUT | EBB_OPTION_FORCE | EBB_OPTION_LIBRARY,
@@ -37,6 +38,7 @@ struct work {
   struct ebb_selfadjoint found;
   PetscInt angles; /* 0 where there is no family */
   bool delta;      /* the label is delta; else tau */
+  bool below;      /* positive spectrum continuous: the family is shown by its largest negative eigenvalues */
   double angle[ANGLES], eigenvalue[ANGLES], error[ANGLES];
   char path[2 * EBB_PATH_MAX], folder[EBB_PATH_MAX];
 };
@@ -46,12 +48,21 @@ static const char *const stability_words[] = {
     "unstable: the largest root stays above 1, beyond a recollapse or the critical cosmological constant",
     "unstable: the largest root grows without bound, a large universe never becomes classical"};
 
+/* With hops of two sizes a root may stay off the circle at every volume; no state contains its solution. */
+static const char *stability_of(const struct ebb_selfadjoint *s)
+{
+  if (s->roots == 4 && s->stability == EBB_UNSTABLE_BOUNDED)
+    return "unstable: the largest root stays above 1, a solution that is not square summable: no state contains it";
+  return stability_words[s->stability];
+}
+
 static const char *verdict_of(const struct ebb_selfadjoint *s)
 {
   return s->n_plus < 0 ? "undecided" : s->n_plus == 0 ? "yes" : "no";
 }
 
-/* Least positive eigenvalue of one member: the interval [0, high] is widened until it holds one. */
+/* Least positive eigenvalue of one member, or largest negative one where the positive spectrum is continuous: the
+ * interval from 0 is widened until it holds one. */
 static PetscErrorCode first_positive(const struct work *w, double angle, double *value, double *error)
 {
   double high = w->rows.scale;
@@ -62,8 +73,8 @@ static PetscErrorCode first_positive(const struct work *w, double angle, double 
     const struct ebb_spectrum_request request = {.rows = &w->rows,
                                                  .extension = w->delta ? EBB_EXTENSION_DELTA : EBB_EXTENSION_TAU,
                                                  .angle = angle,
-                                                 .low = 0.0,
-                                                 .high = high,
+                                                 .low = w->below ? -high : 0.0,
+                                                 .high = w->below ? 0.0 : high,
                                                  .tolerance = TOLERANCE,
                                                  .exact = true};
     struct ebb_spectrum *spectrum;
@@ -72,8 +83,8 @@ static PetscErrorCode first_positive(const struct work *w, double angle, double 
     PetscCall(ebb_spectrum_find(&request, PETSC_COMM_WORLD, problem, sizeof problem, &spectrum));
     if (problem[0]) continue; /* an eigenvalue at an end of the interval: the next one is wider */
     if (spectrum->n > 0) {
-      *value = spectrum->eigenvalue[0];
-      *error = spectrum->error[0];
+      *value = spectrum->eigenvalue[w->below ? spectrum->n - 1 : 0];
+      *error = spectrum->error[w->below ? spectrum->n - 1 : 0];
     }
     PetscCall(ebb_spectrum_destroy(&spectrum));
     if (!isnan(*value)) break;
@@ -84,7 +95,9 @@ static PetscErrorCode first_positive(const struct work *w, double angle, double 
 static PetscErrorCode look_at_family(struct work *w)
 {
   PetscFunctionBegin;
-  if (w->found.n_plus != 1 || ebb_rows_nature(&w->rows) != EBB_NATURE_FAMILY || !w->rows.half) PetscFunctionReturn(0);
+  w->below = ebb_rows_nature(&w->rows) == EBB_NATURE_FAMILY_CONTINUOUS;
+  if (w->found.n_plus != 1 || !w->rows.half || (!w->below && ebb_rows_nature(&w->rows) != EBB_NATURE_FAMILY))
+    PetscFunctionReturn(0);
   w->delta = w->rows.curvature == EBB_CURVATURE_NONE;
   w->angles = ANGLES;
   for (int i = 0; i < ANGLES; i++) {
@@ -106,7 +119,7 @@ static PetscErrorCode put_attributes(struct ebb_store *store, const struct work 
   PetscCall(ebb_store_set_text(store, g, "reason", s->reason));
   PetscCall(ebb_store_set_text(store, g, "operator", w->rows.clock->formula));
   PetscCall(ebb_store_set_text(store, g, "stable", s->stability == EBB_STABLE ? "yes" : "no"));
-  PetscCall(ebb_store_set_text(store, g, "stability", stability_words[s->stability]));
+  PetscCall(ebb_store_set_text(store, g, "stability", stability_of(s)));
   PetscFunctionReturn(0);
 }
 
@@ -131,15 +144,22 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
   PetscCall(ebb_store_make_scale(store, roots));
   PetscCall(ebb_result_line(store, "/selfadjoint/root_modulus", EBB_ROOT_VOLUMES, s->root_modulus, "1",
                             "modulus of the larger root of the difference equation", roots));
-  PetscCall(
-      ebb_result_line(store, "/selfadjoint/modulus", 2, s->modulus, "1", "moduli of the large-volume roots", NULL));
+  PetscCall(ebb_result_line(store, "/selfadjoint/modulus", s->roots, s->modulus, "1",
+                            "moduli of the large-volume roots", NULL));
+  if (s->roots == 4)
+    PetscCall(ebb_result_line(store, "/selfadjoint/second_radius", s->octaves, s->second, "1",
+                              "smaller semi-axis of Weyl's disc of matrices; radius: the larger one", sites));
   if (w->angles) {
     PetscCall(ebb_result_line(store, angle, w->angles, w->angle, "rad", w->delta ? "label delta" : "label tau", NULL));
     PetscCall(ebb_store_make_scale(store, angle));
     PetscCall(ebb_result_line(store, "/selfadjoint/extension/eigenvalue", w->angles, w->eigenvalue, w->rows.clock->unit,
-                              "least positive eigenvalue of this extension", angle));
+                              w->below ? "largest negative eigenvalue of this extension"
+                                       : "least positive eigenvalue of this extension",
+                              angle));
     PetscCall(ebb_result_line(store, "/selfadjoint/extension/eigenvalue_error", w->angles, w->error,
-                              w->rows.clock->unit, "absolute error of: least positive eigenvalue of this extension",
+                              w->rows.clock->unit,
+                              w->below ? "absolute error of: largest negative eigenvalue of this extension"
+                                       : "absolute error of: least positive eigenvalue of this extension",
                               angle));
   }
   PetscCall(put_attributes(store, w));
@@ -157,11 +177,13 @@ static void print(const struct work *w)
   else
     printf("  self-adjoint   %s: deficiency indices (%d,%d)\n", verdict_of(s), s->n_plus, s->n_minus);
   printf("  evidence       %s\n", s->reason);
-  printf("  roots          moduli %.6g and %.6g at v = %.3g\n", s->modulus[0], s->modulus[1],
-         s->root_v[EBB_ROOT_VOLUMES - 1]);
-  printf("  von Neumann    %s\n", stability_words[s->stability]);
+  printf("  roots          moduli ");
+  for (int i = 0; i < s->roots; i++) printf("%s%.6g", !i ? "" : i + 1 < s->roots ? ", " : " and ", s->modulus[i]);
+  printf(" at v = %.3g\n", s->root_v[EBB_ROOT_VOLUMES - 1]);
+  printf("  von Neumann    %s\n", stability_of(s));
   if (w->angles)
-    printf("  family         least positive eigenvalue by gravity.extension.%s\n", w->delta ? "delta" : "tau");
+    printf("  family         %s eigenvalue by gravity.extension.%s\n", w->below ? "largest negative" : "least positive",
+           w->delta ? "delta" : "tau");
   for (PetscInt i = 0; i < w->angles; i++)
     printf("    %-12.6f %.9g +- %.1g %s\n", w->angle[i], w->eigenvalue[i], w->error[i], w->rows.clock->unit);
   printf("  result         '%s'\n", w->path);

@@ -54,7 +54,8 @@ static void request_make(struct work *w)
                                              .sites = s->lattice.points};
   w->request.exact = true;
   w->request.slicing = !strcmp(s->numerics.eigensolver, "slicing");
-  if (s->lattice.volume_max > 0.0) w->request.sites = (PetscInt)floor((s->lattice.volume_max - g->sector) / 4.0) + 1;
+  if (s->lattice.volume_max > 0.0)
+    w->request.sites = (PetscInt)floor((s->lattice.volume_max - w->rows.sector) / w->rows.step) + 1;
   if (!isnan(g->extension_delta)) {
     w->request.extension = EBB_EXTENSION_DELTA;
     w->request.angle = g->extension_delta;
@@ -144,8 +145,12 @@ static void print(const struct work *w)
   for (PetscInt j = 0; j < PetscMin(s->n, LISTED); j++)
     printf("    %-6" PetscInt_FMT " %.15g +- %.2g\n", j + 1, s->eigenvalue[j], s->error[j]);
   if (s->n > LISTED) printf("    ... and %" PetscInt_FMT " more in the result\n", s->n - LISTED);
-  printf("  complete       %s: Sturm counts %" PetscInt_FMT " and %" PetscInt_FMT " below %.6g and %.6g\n",
-         s->complete ? "yes" : "undecided", s->below[0], s->below[1], s->counted[0], s->counted[1]);
+  printf("  complete       %s: %s counts %" PetscInt_FMT " and %" PetscInt_FMT " below %.6g and %.6g\n",
+         s->complete ? "yes" : "undecided",
+         s->by_phase         ? "phase"
+         : w->rows.band == 2 ? "inertia"
+                             : "Sturm",
+         s->below[0], s->below[1], s->counted[0], s->counted[1]);
   if (s->sliced)
     printf("  slicing        inertias %" PetscInt_FMT " and %" PetscInt_FMT " below the same ends\n", s->inertia[0],
            s->inertia[1]);

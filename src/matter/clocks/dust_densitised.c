@@ -18,6 +18,7 @@ const struct ebb_clock ebb_clock_dust_densitised = {
     .formula = "p_T = H = v^{-1/2} Theta v^{-1/2}/(2 V1),  Psi(T) = exp(i H T) Psi(0)",
     .source = "Husain, Pawlowski, Phys. Rev. Lett. 108, 141301 (2012), arXiv:1108.1145 (ordering: common practice)",
     .unit = "1/length",
+    .clock_unit = "length",
     .growth = 1.0,
     .density_factor = 1.0,
     .density_power = 1.0,

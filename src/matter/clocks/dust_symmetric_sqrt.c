@@ -28,6 +28,7 @@ const struct ebb_clock ebb_clock_dust_symmetric_sqrt = {
     .formula = "p_T = H = 3/(4 gamma lambda) sqrt(v) sin^2(b) sqrt(v),  Psi(T) = exp(i H T) Psi(0)",
     .source = "Husain, Pawlowski, Class. Quantum Grav. 28, 225014 (2011), arXiv:1108.1147 (ordering recalled)",
     .unit = "1/length",
+    .clock_unit = "length",
     .growth = 1.0,
     .density_factor = 1.0,
     .density_power = 1.0,

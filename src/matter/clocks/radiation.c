@@ -49,6 +49,7 @@ const struct ebb_clock ebb_clock_radiation = {
     .source = "Pawlowski, Pierini, Wilson-Ewing, Phys. Rev. D 90, 123538 (2014), arXiv:1404.4036 (ordering not read)",
     .root = true,
     .unit = "1",
+    .clock_unit = "1",
     .growth = 4.0 / 3.0,
     .density_factor = 0.5,
     .density_power = 4.0 / 3.0,

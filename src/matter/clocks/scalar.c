@@ -23,6 +23,7 @@ const struct ebb_clock ebb_clock_scalar = {
     .source = "Ashtekar, Pawlowski, Singh, Phys. Rev. D 74, 084003 (2006), gr-qc/0607039 (recalled)",
     .root = true,
     .unit = "G",
+    .clock_unit = "1/sqrt(G)",
     .growth = 2.0,
     .density_factor = 0.5,
     .density_power = 2.0,

@@ -25,6 +25,7 @@ const struct ebb_clock ebb_clock_unimodular = {
     .formula = "Lambda/(8 pi G) = rho_c sin^2 b - p_phi^2/(2 V^2)",
     .source = "Chiou, Geiller, Phys. Rev. D 82, 064012 (2010), arXiv:1007.0735 (recalled)",
     .unit = "1/length^4",
+    .clock_unit = "length^4",
     .growth = 0.0,
     .density_factor = 1.0,
     .density_power = 0.0,
