@@ -4,6 +4,7 @@
 #ifndef EBBTURN_COMMAND_H
 #define EBBTURN_COMMAND_H
 
+#include "ebbturn/problems.h"
 #include "ebbturn/settings.h"
 
 #include <petscsys.h>
@@ -35,6 +36,8 @@ struct ebb_invocation {
   bool json;            /* --json */
   bool bibtex;          /* --bibtex */
   const char *resume;   /* --resume RESULT */
+  bool dry_run;         /* --dry-run */
+  const char *csv;      /* --csv FILE */
   double time_limit;    /* --time-limit, seconds; 0: none given */
   const char *progress; /* --progress auto|always|never */
   char *text;           /* the whole command line as one text, stored in results */
@@ -54,6 +57,8 @@ enum ebb_option {
   EBB_OPTION_RESUME = 128,      /* --resume RESULT takes the operands' place, ... */
   EBB_OPTION_RESUME_PLAN = 256, /* ... or stands beside them */
   EBB_OPTION_TIME_LIMIT = 512,
+  EBB_OPTION_DRY_RUN = 1024,
+  EBB_OPTION_CSV = 2048
 };
 
 struct ebb_command {
@@ -76,6 +81,10 @@ const struct ebb_command *ebb_command_find(const char *name);
  */
 int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, struct ebb_settings *settings,
                      char **text);
+
+/* The text of a file, read by rank 0, on every rank; NULL on all of them where it cannot be read, with a problem on
+ * rank 0. The caller frees it. */
+char *ebb_command_text(const char *path, size_t *length, struct ebb_problems *problems);
 
 /* The exit code for an error that a library call returned: a file failure (4; rank 0 prints the reason that the store
  * gives) or a bug (70; the trace was printed when it was raised). 0 for no error. */

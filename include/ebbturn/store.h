@@ -81,11 +81,20 @@ PetscErrorCode ebb_store_write(struct ebb_store *store, const char *path, const 
 /* define + write of a whole dataset whose values every rank holds (rank 0's are written). */
 PetscErrorCode ebb_store_put(struct ebb_store *store, const struct ebb_dataset *dataset, const void *values);
 
+/* A whole list of n > 0 texts that every rank holds (rank 0's are written). scale: path of a dimension scale, or NULL.
+ */
+PetscErrorCode ebb_store_put_texts(struct ebb_store *store, const char *path, hsize_t n, const char *const text[],
+                                   const char *long_name, const char *scale);
+
 /* Reading: extent[rank]; *found = false where the dataset is missing. Blocks as in write; every rank may read any
  * block. */
 PetscErrorCode ebb_store_extent(struct ebb_store *store, const char *path, int *rank, hsize_t extent[], bool *found);
 PetscErrorCode ebb_store_read(struct ebb_store *store, const char *path, const hsize_t start[], const hsize_t count[],
                               void *values);
+
+/* A whole list of texts: (*bytes)[i * *width], each terminated; PetscMalloc'ed. */
+PetscErrorCode ebb_store_get_texts(struct ebb_store *store, const char *path, hsize_t *n, size_t *width, char **bytes,
+                                   bool *found);
 
 /* As ebb_store_extent, with what the values are. Text datasets are only recognised, not read. */
 enum ebb_kind { EBB_KIND_REAL, EBB_KIND_COMPLEX, EBB_KIND_TEXT, EBB_KIND_OTHER };

@@ -18,6 +18,8 @@ static const struct ebb_option_row rows[] = {
     {EBB_OPTION_RESUME_PLAN, 0, "resume", "RESULT", "go on with that result; no finished case runs again"},
     {EBB_OPTION_TIME_LIMIT, 0, "time-limit", "TIME",
      "stop with a checkpoint before so much time has passed, e.g. 3h50m; else $SLURM_JOB_END_TIME"},
+    {EBB_OPTION_DRY_RUN, 0, "dry-run", NULL, "print the cases, memory and time, and compute nothing"},
+    {EBB_OPTION_CSV, 0, "csv", "FILE", "write the table as comma-separated values as well"},
     {EBB_OPTION_PROGRESS, 0, "progress", "WHEN", "auto (default), always or never"},
     {EBB_OPTION_JSON, 0, "json", NULL, "print JSON, for scripts"},
     {EBB_OPTION_BIBTEX, 0, "bibtex", NULL, "print the source as a BibTeX entry"},
@@ -192,6 +194,13 @@ static int take_option(const struct ebb_option_row *row, const char *argument, F
     if (ebb_text_duration(argument, strlen(argument), &invocation->time_limit) != EBB_NUMBER_OK ||
         !(invocation->time_limit > 0.0))
       return complain(err, command->name, "option '--time-limit' takes a time such as 90s, 30min or 3h50m");
+    break;
+  case EBB_OPTION_CSV:
+    if (!argument[0]) return complain(err, command->name, "option '--csv' has an empty file name");
+    invocation->csv = argument;
+    break;
+  case EBB_OPTION_DRY_RUN:
+    invocation->dry_run = true;
     break;
   case EBB_OPTION_FORCE:
     invocation->force = true;

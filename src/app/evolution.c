@@ -39,6 +39,10 @@ static PetscErrorCode safe_point(struct ebb_evolution *e, bool *stop, int *code)
   *stop = false;
   if (!e->watched) PetscFunctionReturn(0);
   PetscCall(ebb_watch_ask(&e->watch, &action, code));
+  if (e->abandon) {
+    *stop = action == EBB_ACTION_STOP;
+    PetscFunctionReturn(0);
+  }
   if (action == EBB_ACTION_GO || (action == EBB_ACTION_KEEP && e->next == e->run.m)) PetscFunctionReturn(0);
   PetscCall(ebb_evolution_save(e, true, &good));
   *stop = action == EBB_ACTION_STOP;

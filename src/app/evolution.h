@@ -28,6 +28,7 @@ struct ebb_evolution {
   PetscInt kept;                   /* samples in the last good checkpoint, -1 where there is none */
   char path[2 * EBB_PATH_MAX];
   bool watched, speaks;
+  bool abandon; /* a stop saves nothing: a sweep runs the case again */
 };
 
 PetscErrorCode ebb_origin_of(const struct ebb_invocation *invocation, const char *model_text, const char *folder,

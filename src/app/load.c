@@ -33,6 +33,16 @@ static char *broadcast_text(char *text, size_t *length)
   return text;
 }
 
+char *ebb_command_text(const char *path, size_t *length, struct ebb_problems *problems)
+{
+  char *text = NULL;
+  int rank;
+
+  (void)whole_world(&rank);
+  if (rank == 0) text = ebb_input_read(path, length, problems);
+  return broadcast_text(text, length);
+}
+
 int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, struct ebb_settings *settings, char **text)
 {
   const char *path = invocation->operand[0];
@@ -44,8 +54,7 @@ int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, str
   ebb_settings_unset(settings);
   (void)whole_world(&rank);
   if (!problems) return EBB_EXIT_BUG;
-  if (rank == 0) *text = ebb_input_read(path, &length, problems);
-  *text = broadcast_text(*text, &length);
+  *text = ebb_command_text(path, &length, problems);
   if (!*text) {
     code = EBB_EXIT_FILE;
   } else if (!ebb_input_parse(*text, length, invocation->override, (size_t)invocation->overrides, need, settings,
