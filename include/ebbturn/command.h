@@ -19,6 +19,8 @@ enum ebb_exit {
   EBB_EXIT_LIMIT = 3,   /* a numerical limit was broken; what was computed is saved */
   EBB_EXIT_FILE = 4,    /* file or HDF5 failure */
   EBB_EXIT_BUG = 70,    /* a bug in ebbturn */
+  EBB_EXIT_AGAIN = 75,  /* stopped at SIGUSR1 or before a time limit, checkpoint written; a job script requeues on it */
+  EBB_EXIT_SIGNAL = 128 /* + SIGTERM or SIGINT: stopped, checkpoint written */
 };
 
 enum { EBB_OVERRIDES_MAX = 64, EBB_OPERANDS_MAX = 4 };
@@ -33,6 +35,10 @@ struct ebb_invocation {
   bool force;           /* --force */
   bool json;            /* --json */
   bool bibtex;          /* --bibtex */
+  const char *resume;   /* --resume RESULT */
+  bool dry_run;         /* --dry-run */
+  const char *csv;      /* --csv FILE */
+  double time_limit;    /* --time-limit, seconds; 0: none given */
   const char *progress; /* --progress auto|always|never */
   char *text;           /* the whole command line as one text, stored in results */
   char **library_argv;  /* options after a bare --, for PETSc/SLEPc; library_argc of them */
@@ -47,7 +53,12 @@ enum ebb_option {
   EBB_OPTION_JSON = 8,
   EBB_OPTION_BIBTEX = 16,
   EBB_OPTION_PROGRESS = 32,
-  EBB_OPTION_LIBRARY = 64
+  EBB_OPTION_LIBRARY = 64,
+  EBB_OPTION_RESUME = 128,      /* --resume RESULT takes the operands' place, ... */
+  EBB_OPTION_RESUME_PLAN = 256, /* ... or stands beside them */
+  EBB_OPTION_TIME_LIMIT = 512,
+  EBB_OPTION_DRY_RUN = 1024,
+  EBB_OPTION_CSV = 2048
 };
 
 struct ebb_command {

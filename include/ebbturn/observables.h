@@ -79,10 +79,10 @@ struct ebb_source {
   PetscErrorCode (*evaluate)(struct ebb_source *source, PetscInt m, const double phi[],
                              const struct ebb_sheet_request *request, struct ebb_sheet *sheet);
   void *data;
-  PetscInt batch;       /* samples that are best asked for at once; 0 = any */
-  double edge_ratio;    /* of the windows before the lattice edge; 0 = EBB_EDGE_RATIO */
+  PetscInt batch;        /* samples that are best asked for at once; 0 = any */
+  double edge_ratio;     /* of the windows before the lattice edge; 0 = EBB_EDGE_RATIO */
   double field_momentum; /* mean momentum of a further field, for the effective bounce */
-  double bounded_scale; /* > 0: arctan(|v|/bounded_scale) is wanted, and EBB_SUM_SLOPE is the slope of its mean */
+  double bounded_scale;  /* > 0: arctan(|v|/bounded_scale) is wanted, and EBB_SUM_SLOPE is the slope of its mean */
 };
 
 /* Source over a packet (not owned). Collective. Cost of evaluate: sites x modes x 12 m flops in dgemm, plus a few
@@ -166,5 +166,10 @@ void ebb_source_steps_plain(struct ebb_source *source);
  * that led there, and the relative drift of <psi|psi>, <psi|sqrt(Theta) psi> and <Theta>. */
 double ebb_source_steps_error(const struct ebb_source *source);
 PetscErrorCode ebb_source_steps_destroy(struct ebb_source *source);
+/* Everything that later steps depend on, to or from a checkpoint: move is called in a fixed order, with pieces that
+ * every rank holds (spread = false) or each rank its sites of (spread = true). load: into a source just created for the
+ * same model, on any number of ranks. Collective. */
+typedef PetscErrorCode ebb_move(void *context, bool spread, size_t bytes, void *data);
+PetscErrorCode ebb_source_steps_move(struct ebb_source *source, bool load, ebb_move *move, void *context);
 
 #endif

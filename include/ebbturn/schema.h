@@ -9,16 +9,17 @@
 #include "ebbturn/text.h"
 
 enum ebb_type {
-  EBB_TYPE_REAL,    /* double; unset: NAN */
-  EBB_TYPE_INTEGER, /* int; unset: 0, which no range of a row contains */
-  EBB_TYPE_NAME,    /* char [EBB_NAME_MAX], one of the choices; unset: "" */
-  EBB_TYPE_TEXT,    /* char [size], one line; unset: "" */
-  EBB_TYPE_PATH,    /* the same, not empty when given */
-  EBB_TYPE_REALS,   /* double [EBB_LEVELS_MAX] and a count, strictly ascending; unset: count 0 */
-  EBB_TYPE_FLAGS,   /* unsigned: bit i for choice i of a list */
-  EBB_TYPE_COMPLEX, /* double [2]: a number, or a list of real and imaginary part; unset: NAN */
-  EBB_TYPE_PARTS,   /* the components of a superposition; read by the input */
-  EBB_TYPE_FIELDS   /* a list of at most one section of keys, the rows of section `matter`; read by the input */
+  EBB_TYPE_REAL,     /* double; unset: NAN */
+  EBB_TYPE_INTEGER,  /* int; unset: 0, which no range of a row contains */
+  EBB_TYPE_NAME,     /* char [EBB_NAME_MAX], one of the choices; unset: "" */
+  EBB_TYPE_TEXT,     /* char [size], one line; unset: "" */
+  EBB_TYPE_PATH,     /* the same, not empty when given */
+  EBB_TYPE_REALS,    /* double [EBB_LEVELS_MAX] and a count, strictly ascending; unset: count 0 */
+  EBB_TYPE_FLAGS,    /* unsigned: bit i for choice i of a list */
+  EBB_TYPE_COMPLEX,  /* double [2]: a number, or a list of real and imaginary part; unset: NAN */
+  EBB_TYPE_DURATION, /* double, seconds; written 10min, 3h50m; unset: NAN */
+  EBB_TYPE_PARTS,    /* the components of a superposition; read by the input */
+  EBB_TYPE_FIELDS    /* a list of at most one section of keys, the rows of section `matter`; read by the input */
 };
 
 /* Which keys of `state` a profile takes: bit i is choice i of state.profile, the last one gaussian_momentum on a grid.

@@ -93,6 +93,7 @@ struct ebb_output_settings {
   char file[EBB_PATH_MAX]; /* as given, relative to the model's folder; empty = <model name>.h5 beside the model */
   unsigned keep;           /* bits of enum ebb_keep */
   int every;               /* keep every n-th sample's state */
+  double checkpoint_every; /* seconds between checkpoints; NAN: none but at signals and before a time limit */
   double quantile[EBB_LEVELS_MAX];
   size_t quantiles;
 };

@@ -39,6 +39,8 @@ struct ebb_dataset {
 /* The sentence about the last file failure, without "error:" and without a full stop; false where there was none since
  * the last create or open. The text lives until the next call. Not collective. */
 bool ebb_store_reason(const char **text);
+/* Keeps a reason that is a whole sentence already. Local. */
+void ebb_store_say(const char *format, ...) __attribute__((format(printf, 1, 2)));
 /* For PetscPushErrorHandler: silent for file failures that have a reason, PETSc's trace for everything else. With it,
  * PetscCall may carry a file failure up to the function that prints it. */
 PetscErrorCode ebb_store_error_handler(MPI_Comm comm, int line, const char *function, const char *file,
@@ -89,6 +91,10 @@ PetscErrorCode ebb_store_put_texts(struct ebb_store *store, const char *path, hs
 PetscErrorCode ebb_store_extent(struct ebb_store *store, const char *path, int *rank, hsize_t extent[], bool *found);
 PetscErrorCode ebb_store_read(struct ebb_store *store, const char *path, const hsize_t start[], const hsize_t count[],
                               void *values);
+
+/* A whole list of texts: (*bytes)[i * *width], each terminated; PetscMalloc'ed. */
+PetscErrorCode ebb_store_get_texts(struct ebb_store *store, const char *path, hsize_t *n, size_t *width, char **bytes,
+                                   bool *found);
 
 /* As ebb_store_extent, with what the values are. Text datasets are only recognised, not read. */
 enum ebb_kind { EBB_KIND_REAL, EBB_KIND_COMPLEX, EBB_KIND_TEXT, EBB_KIND_OTHER };

@@ -36,6 +36,9 @@ bool ebb_text_copy(char *out, size_t size, const char *in);
 enum ebb_number { EBB_NUMBER_OK, EBB_NUMBER_SYNTAX, EBB_NUMBER_OVERFLOW, EBB_NUMBER_UNDERFLOW };
 enum ebb_number ebb_text_real(const char *bytes, size_t length, double *value);
 enum ebb_number ebb_text_integer(const char *bytes, size_t length, long long *value);
+/* A duration in seconds: numbers with a unit, without blanks, largest unit first: 90s, 10min, 3h50m, 1d12h. Units d, h,
+ * m or min, s. */
+enum ebb_number ebb_text_duration(const char *bytes, size_t length, double *seconds);
 
 /* Edit distance: insertions, deletions, substitutions and swaps of neighbours (optimal string alignment; Damerau,
  * Commun. ACM 7, 171 (1964), from memory). Words of 64 bytes and more are not compared: the result is SIZE_MAX. */

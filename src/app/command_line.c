@@ -8,12 +8,18 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { OPTIONS_MAX = 16, LONG_ONLY = 256 /* getopt values of options without a letter start here */ };
+enum { OPTIONS_MAX = 24, LONG_ONLY = 256 /* getopt values of options without a letter start here */ };
 
 static const struct ebb_option_row rows[] = {
     {EBB_OPTION_OUTPUT, 'o', "output", "FILE", "where the result goes, in place of output.file"},
     {EBB_OPTION_FORCE, 0, "force", NULL, "overwrite an existing result"},
     {EBB_OPTION_SET, 0, "set", "KEY=VALUE", "override one setting, e.g. state.momentum=200; may be repeated"},
+    {EBB_OPTION_RESUME, 0, "resume", "RESULT", "go on from the last checkpoint of that result; takes no model"},
+    {EBB_OPTION_RESUME_PLAN, 0, "resume", "RESULT", "go on with that result; no finished case runs again"},
+    {EBB_OPTION_TIME_LIMIT, 0, "time-limit", "TIME",
+     "stop with a checkpoint before so much time has passed, e.g. 3h50m; else $SLURM_JOB_END_TIME"},
+    {EBB_OPTION_DRY_RUN, 0, "dry-run", NULL, "print the cases, memory and time, and compute nothing"},
+    {EBB_OPTION_CSV, 0, "csv", "FILE", "write the table as comma-separated values as well"},
     {EBB_OPTION_PROGRESS, 0, "progress", "WHEN", "auto (default), always or never"},
     {EBB_OPTION_JSON, 0, "json", NULL, "print JSON, for scripts"},
     {EBB_OPTION_BIBTEX, 0, "bibtex", NULL, "print the source as a BibTeX entry"},
@@ -178,6 +184,24 @@ static int take_option(const struct ebb_option_row *row, const char *argument, F
       return complain(err, command->name, "option '--progress' takes auto, always or never");
     invocation->progress = argument;
     break;
+  case EBB_OPTION_RESUME:
+  case EBB_OPTION_RESUME_PLAN:
+    if (invocation->resume) return complain(err, command->name, "option '--resume' is given twice");
+    if (!argument[0]) return complain(err, command->name, "option '--resume' has an empty file name");
+    invocation->resume = argument;
+    break;
+  case EBB_OPTION_TIME_LIMIT:
+    if (ebb_text_duration(argument, strlen(argument), &invocation->time_limit) != EBB_NUMBER_OK ||
+        !(invocation->time_limit > 0.0))
+      return complain(err, command->name, "option '--time-limit' takes a time such as 90s, 30min or 3h50m");
+    break;
+  case EBB_OPTION_CSV:
+    if (!argument[0]) return complain(err, command->name, "option '--csv' has an empty file name");
+    invocation->csv = argument;
+    break;
+  case EBB_OPTION_DRY_RUN:
+    invocation->dry_run = true;
+    break;
   case EBB_OPTION_FORCE:
     invocation->force = true;
     break;
@@ -196,9 +220,16 @@ static int take_option(const struct ebb_option_row *row, const char *argument, F
 static int take_operands(int argc, char *argv[], FILE *err, const struct ebb_command *command,
                          struct ebb_invocation *invocation)
 {
-  const int count = argc - optind, most = command->operands_max;
+  const bool resume = invocation->resume && (command->options & EBB_OPTION_RESUME);
+  const int count = argc - optind, most = resume ? 0 : command->operands_max;
 
-  if (count < command->operands_min)
+  if (resume && count > 0)
+    return complain(err, command->name, "'%s --resume RESULT' takes no model: it stands in the checkpoint",
+                    command->name);
+  if (invocation->resume && (invocation->output || invocation->overrides || invocation->force))
+    return complain(err, command->name,
+                    "--resume goes on as the run was started; it takes no --output, --set or --force");
+  if (!resume && count < command->operands_min)
     return complain(err, command->name, "'%s' needs %s", command->name, command->synopsis);
   if (count > most || count > EBB_OPERANDS_MAX) {
     struct ebb_text quoted = {0};

@@ -35,6 +35,8 @@ void ebb_help_program(FILE *out)
                "  3   a numerical limit was broken; what was computed is saved\n"
                "  4   file or HDF5 failure\n"
                "  70  a bug in ebbturn\n"
+               "  75  stopped at SIGUSR1 or before a time limit, checkpoint written: go on with --resume\n"
+               "  128 + n  stopped by SIGTERM or SIGINT (n), checkpoint written\n"
                "\noptions for PETSc and SLEPc follow a bare --; settings: 'ebbturn list settings'\n");
 }
 

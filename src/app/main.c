@@ -2,6 +2,7 @@
 #include "command_line.h"
 
 #include "ebbturn/store.h"
+#include "watch.h"
 
 #include <omp.h>
 #include <signal.h>
@@ -43,6 +44,7 @@ static int run_parallel(char *program, const struct ebb_command *command, const 
     free(given);
     return EBB_EXIT_BUG; /* PETSc said why */
   }
+  if (command->options & EBB_OPTION_TIME_LIMIT) ebb_watch_signals(); /* PETSc has just put its own in place */
   if (PetscPushErrorHandler(ebb_store_error_handler, NULL))
     code = EBB_EXIT_BUG;
   else {
@@ -68,6 +70,8 @@ int main(int argc, char *argv[])
   if (!getenv("OMP_NUM_THREADS")) omp_set_num_threads(1);
   if (ebb_command_line(argc, argv, speaks ? stdout : NULL, speaks ? stderr : NULL, &command, &invocation, &code) ==
       EBB_INTENT_RUN) {
+    /* at once: a batch system may send its signal while MPI starts, and the signal's own effect is the end */
+    if (command->options & EBB_OPTION_TIME_LIMIT) ebb_watch_signals();
     if (command->parallel)
       code = run_parallel(argv[0], command, &invocation);
     else

@@ -132,6 +132,16 @@ static bool read_real(const struct task *task, const struct ebb_scalar *scalar, 
   return refuse_syntax(task, scalar);
 }
 
+static bool read_duration(const struct task *task, const struct ebb_scalar *scalar, double *value)
+{
+  if (ebb_text_duration(scalar->text, scalar->length, value) != EBB_NUMBER_OK) {
+    append_value(task, scalar);
+    ebb_text_append(task->why, " is not a duration such as 30s, 10min or 3h50m, a number and a unit without a blank");
+    return false;
+  }
+  return in_range(task, scalar, *value);
+}
+
 static bool read_integer(const struct task *task, const struct ebb_scalar *scalar, int *value)
 {
   long long number = 0;
@@ -281,6 +291,10 @@ bool ebb_setting_assign(const struct ebb_setting *setting, const struct ebb_valu
     if (!read_real(&task, value->item, &real)) return false;
     memcpy(out, &real, sizeof real);
     return true;
+  case EBB_TYPE_DURATION:
+    if (!read_duration(&task, value->item, &real)) return false;
+    memcpy(out, &real, sizeof real);
+    return true;
   case EBB_TYPE_INTEGER:
     return read_integer(&task, value->item, out);
   case EBB_TYPE_NAME:
@@ -350,6 +364,7 @@ void ebb_setting_unset(const struct ebb_setting *setting, struct ebb_settings *s
 
   switch (setting->type) {
   case EBB_TYPE_REAL:
+  case EBB_TYPE_DURATION:
     *(double *)out = NAN;
     break;
   case EBB_TYPE_COMPLEX:

@@ -237,6 +237,10 @@ static const struct ebb_setting rows[] = {
      .offset = offsetof(struct ebb_settings, output.quantile), .size = offsetof(struct ebb_settings, output.quantiles),
      .range = {0, 1, true, true}, .fallback = "[0.05, 0.5, 0.95]",
      .sentence = "levels of the quantiles of v, strictly ascending"},
+    {.key = "output.checkpoint.every", .unit = "s", .type = EBB_TYPE_DURATION,
+     .offset = offsetof(struct ebb_settings, output.checkpoint_every), .range = {1e-3, 1e9, false, false},
+     .sentence = "time between checkpoints, such as 30s, 10min or 1h30m; without it there is one at a signal and before a "
+                 "time limit only"},
 };
 /* clang-format on */
 

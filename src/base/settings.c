@@ -69,6 +69,7 @@ static bool is_set(const struct ebb_setting *setting, const struct ebb_settings 
 
   switch (setting->type) {
   case EBB_TYPE_REAL:
+  case EBB_TYPE_DURATION:
   case EBB_TYPE_COMPLEX:
     return !isnan(*(const double *)at);
   case EBB_TYPE_INTEGER:
@@ -183,6 +184,9 @@ static void append_value(struct ebb_text *text, const struct ebb_setting *settin
       append_string(text, setting->word, style);
     else
       append_number(text, *(const double *)at, style);
+    break;
+  case EBB_TYPE_DURATION:
+    ebb_text_append(text, style == STYLE_JSON ? "\"%.15gs\"" : "%.15g", *(const double *)at);
     break;
   case EBB_TYPE_INTEGER:
     ebb_text_append(text, "%d", *(const int *)at);

@@ -162,6 +162,35 @@ enum ebb_number ebb_text_integer(const char *bytes, size_t length, long long *va
   return EBB_NUMBER_OK;
 }
 
+enum ebb_number ebb_text_duration(const char *bytes, size_t length, double *seconds)
+{
+  static const struct {
+    const char *name;
+    double seconds;
+    int rank; /* units come in this order */
+  } unit[] = {{"d", 86400.0, 0}, {"h", 3600.0, 1}, {"min", 60.0, 2}, {"m", 60.0, 2}, {"s", 1.0, 3}};
+  int rank = -1;
+
+  *seconds = 0.0;
+  if (length == 0) return EBB_NUMBER_SYNTAX;
+  for (size_t at = 0; at < length;) {
+    size_t number = 0, name = 0, found = 0;
+    double value;
+
+    while (at + number < length && strchr("0123456789.", bytes[at + number]) && bytes[at + number]) number++;
+    while (at + number + name < length && bytes[at + number + name] >= 'a' && bytes[at + number + name] <= 'z') name++;
+    if (ebb_text_real(bytes + at, number, &value) != EBB_NUMBER_OK) return EBB_NUMBER_SYNTAX;
+    while (found < sizeof unit / sizeof unit[0] &&
+           (strlen(unit[found].name) != name || memcmp(unit[found].name, bytes + at + number, name) != 0))
+      found++;
+    if (found == sizeof unit / sizeof unit[0] || unit[found].rank <= rank) return EBB_NUMBER_SYNTAX;
+    rank = unit[found].rank;
+    *seconds += value * unit[found].seconds;
+    at += number + name;
+  }
+  return EBB_NUMBER_OK;
+}
+
 static size_t least(size_t a, size_t b) { return a < b ? a : b; }
 
 size_t ebb_text_distance(const char *a, const char *b)

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: BSD-2-Clause
  *
- * Layer L4 (io), private to src/io/store*.c: what a store is made of, and how its failures are said and agreed on. */
+ * Layer L4 (io), private to src/io: what a store is made of, and how its failures are said and agreed on. */
 #ifndef EBBTURN_STORE_IMPL_H
 #define EBBTURN_STORE_IMPL_H
 
@@ -36,8 +36,6 @@ PetscErrorCode ebb_store_fail(struct ebb_store *store, PetscErrorCode code, cons
     __attribute__((format(printf, 4, 5)));
 /* Collective: the code of the lowest failing rank on every rank, with that rank's reason; 0 when none failed. */
 PetscErrorCode ebb_store_agree(struct ebb_store *store, PetscErrorCode mine);
-/* Keeps a reason that is a whole sentence already. Local. */
-void ebb_store_say(const char *format, ...) __attribute__((format(printf, 1, 2)));
 void ebb_store_forget(void);
 
 /* What was asked of a store that is no longer, or never was, open for writing: 0 when it may be written. Collective. */

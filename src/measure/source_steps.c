@@ -255,3 +255,39 @@ PetscErrorCode ebb_source_steps_destroy(struct ebb_source *source)
   *source = (struct ebb_source){0};
   PetscFunctionReturn(0);
 }
+
+static PetscErrorCode move_state(const struct steps *steps, struct state *state, ebb_move *move, void *context)
+{
+  double number[3] = {state->phi, state->v_mean, state->error};
+
+  PetscFunctionBegin;
+  PetscCall(move(context, false, sizeof number, number));
+  state->phi = number[0];
+  state->v_mean = number[1];
+  state->error = number[2];
+  for (int f = 0; f < steps->fields; f++) /* values beyond both ends are exchanged before they are looked at */
+    PetscCall(move(context, true, (size_t)steps->local * sizeof *state->field[f], state->field[f] + HALO));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_source_steps_move(struct ebb_source *source, bool load, ebb_move *move, void *context)
+{
+  struct steps *steps = source->data;
+  int count[2] = {steps->snapshots, steps->fields};
+
+  PetscFunctionBegin;
+  PetscCall(move(context, false, sizeof count, count));
+  PetscCheck(count[0] >= 1 && count[0] <= SNAPSHOTS && count[1] == steps->fields, source->comm,
+             PETSC_ERR_FILE_UNEXPECTED, "%d kept states of %d fields", count[0], count[1]);
+  PetscCall(move(context, false, sizeof steps->kept, steps->kept));
+  PetscCall(move(context, false, sizeof steps->error, &steps->error));
+  PetscCall(move_state(steps, &steps->now, move, context));
+  for (int i = 0; i < count[0]; i++) {
+    if (load && i >= steps->snapshots) {
+      PetscCall(state_allocate(steps, &steps->snapshot[i]));
+      steps->snapshots = i + 1;
+    }
+    PetscCall(move_state(steps, &steps->snapshot[i], move, context));
+  }
+  PetscFunctionReturn(0);
+}

@@ -1,13 +1,12 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
-#include "../progress.h"
-#include "../record.h"
+#include "../evolution.h"
 #include "../result.h"
 #include "ebbturn/input.h"
-#include "ebbturn/propagator.h"
 
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
+#include <string.h>
 
 static int run(const struct ebb_invocation *invocation);
 
@@ -19,10 +18,16 @@ const struct ebb_command ebb_command_evolve = {
         "Reads a model file, resolves the state, evaluates it at every clock sample, finds the bounce and writes a\n"
         "result file. The summary goes to stdout, progress to stderr. Exit 0: done, all checks met; 1: the bounce is\n"
         "undecided, or missing where the operator should give one; 2: input problem, nothing computed; 3: a numerical\n"
-        "limit was broken, what was computed is saved; 4: file failure.",
+        "limit was broken, what was computed is saved; 4: file failure.\n"
+        "SIGUSR1, SIGTERM, SIGINT or a time limit near: the run writes RESULT.checkpoint-0 or -1 at the next safe "
+        "point,\n"
+        "between batches of clock samples, says how to go on and ends with 75 (SIGUSR1, time limit) or 128 + signal;\n"
+        "'ebbturn evolve --resume RESULT' goes on, on any number of ranks. output.checkpoint.every writes checkpoints\n"
+        "at an interval as well. They go when the run is complete.",
     .operands_min = 1,
     .operands_max = 1,
-    .options = EBB_OPTION_SET | EBB_OPTION_OUTPUT | EBB_OPTION_FORCE | EBB_OPTION_PROGRESS | EBB_OPTION_LIBRARY,
+    .options = EBB_OPTION_SET | EBB_OPTION_OUTPUT | EBB_OPTION_FORCE | EBB_OPTION_PROGRESS | EBB_OPTION_LIBRARY |
+               EBB_OPTION_RESUME | EBB_OPTION_TIME_LIMIT,
     .parallel = true,
     .run = run,
 };
@@ -30,47 +35,8 @@ const struct ebb_command ebb_command_evolve = {
 static const double NORM_LIMIT = 1e-6; /* |norm - 1| above which the run is called broken */
 static const double PURE = 0.99;       /* channel purity below which a warning is given */
 
-/* Everything of one run. */
-struct work {
-  struct ebb_run run;
-  struct ebb_record record;
-  struct ebb_store *store;
-  char path[2 * EBB_PATH_MAX], folder[EBB_PATH_MAX];
-  bool speaks;
-};
-
-/* All samples, batch by batch; every batch is written before the next is computed. */
-static PetscErrorCode evaluate_all(struct work *w, const struct ebb_invocation *invocation)
-{
-  const struct ebb_output_settings *o = &w->run.settings->output;
-  const struct ebb_sheet_request request = {.levels = o->quantiles,
-                                            .level = o->quantile,
-                                            .probability = (o->keep & EBB_KEEP_PROBABILITY) != 0,
-                                            .state = ebb_run_keeps_states(&w->run)};
-  const PetscInt batch = w->run.source.batch ? w->run.source.batch : ebb_run_estimate(&w->run).batch;
-  const bool steps = w->run.method == EBB_METHOD_CHEBYSHEV || w->run.method == EBB_METHOD_KRYLOV;
-  struct ebb_progress progress;
-
-  PetscFunctionBegin;
-  ebb_progress_start(&progress, w->run.comm, invocation->progress, "clock sample", w->run.m);
-  for (PetscInt first = 0; first < w->run.m; first += batch) {
-    const PetscInt count = PetscMin(batch, w->run.m - first);
-    struct ebb_sheet sheet;
-
-    PetscCall(w->run.source.evaluate(&w->run.source, count, w->run.phi + first, &request, &sheet));
-    if (steps)
-      w->record.budget.propagation = fmax(w->record.budget.propagation, ebb_source_steps_error(&w->run.source));
-    ebb_record_take(&w->record, &w->run, first, &sheet);
-    PetscCall(ebb_record_batch(w->store, &w->run, first, &sheet));
-    PetscCall(ebb_sheet_clear(&sheet));
-    ebb_progress_tell(&progress, first + count);
-  }
-  ebb_progress_end(&progress);
-  PetscFunctionReturn(0);
-}
-
 /* What a user should know although nothing failed. */
-static void warn(const struct work *w)
+static void warn(const struct ebb_evolution *w)
 {
   if (!w->speaks) return;
   if (w->run.packet->channel_purity < PURE)
@@ -88,7 +54,7 @@ static void warn(const struct work *w)
 }
 
 /* Numerical limits: the worst norm. Returns the exit code. */
-static int limits(const struct work *w)
+static int limits(const struct ebb_evolution *w)
 {
   const struct ebb_record *r = &w->record;
   PetscInt worst = 0;
@@ -111,65 +77,226 @@ static int limits(const struct work *w)
   return EBB_EXIT_LIMIT;
 }
 
-static PetscErrorCode compute(const struct ebb_invocation *invocation, const char *text, struct work *w, int *code)
+/* The last lines of a run that was stopped: what is saved, and what to do next. */
+static void tell_stop(const struct ebb_evolution *e, int code)
 {
-  const struct ebb_bounce *bounce = &w->record.bounce;
+  if (!e->speaks) return;
+  if (code == EBB_EXIT_FILE)
+    fprintf(stderr,
+            "ebbturn: error: stopped after %" PetscInt_FMT " of %" PetscInt_FMT
+            " clock samples without a new checkpoint\n",
+            e->next, e->run.m);
+  else
+    fprintf(stderr,
+            "ebbturn: stopped at %s after %" PetscInt_FMT " of %" PetscInt_FMT " clock samples\n"
+            "  saved     '%s.checkpoint-%d'\n",
+            ebb_watch_reason(code, ebb_watch_signal() != 0), e->next, e->run.m, e->path, e->generation);
+  if (e->kept >= 0) fprintf(stderr, "  go on     'ebbturn evolve --resume %s'\n", e->path);
+}
+
+/* Provenance alone tells a run that was resumed from one that was not. */
+static PetscErrorCode put_history(struct ebb_evolution *e)
+{
+  PetscFunctionBegin;
+  PetscCall(ebb_store_set_text(e->store, "/provenance", "run", e->mark.run));
+  PetscCall(ebb_store_set_text(e->store, "/provenance", "started", e->origin.started));
+  if (e->origin.resumed[0]) PetscCall(ebb_store_set_text(e->store, "/provenance", "resumed", e->origin.resumed));
+  PetscFunctionReturn(0);
+}
+
+/* checkpoint: where to go on from, NULL for a new run; closed here. */
+static PetscErrorCode compute(const struct ebb_invocation *invocation, struct ebb_checkpoint **checkpoint,
+                              struct ebb_evolution *e, int *code)
+{
+  const struct ebb_bounce *bounce = &e->record.bounce;
+  struct ebb_invocation first = *invocation;
+  bool verified = false, good;
 
   PetscFunctionBegin;
-  PetscCall(ebb_record_create(w->run.m, w->run.settings->output.quantiles, &w->record));
-  PetscCall(ebb_record_begin(w->store, &w->run, invocation, text));
-  PetscCall(ebb_run_start(&w->run));
-  PetscCall(ebb_record_verify(&w->record, &w->run));
-  PetscCall(evaluate_all(w, invocation));
-  PetscCall(ebb_record_conclude(&w->record, &w->run));
-  PetscCall(ebb_record_end(w->store, &w->run, &w->record));
-  PetscCall(ebb_store_commit(&w->store, true));
-  warn(w);
-  if (w->speaks) ebb_record_print(&w->run, &w->record, w->path);
-  *code = limits(w);
+  ebb_origin_invocation(&e->origin, &first);
+  PetscCall(ebb_record_create(e->run.m, e->run.settings->output.quantiles, &e->record));
+  PetscCall(ebb_record_begin(e->store, &e->run, &first, e->origin.model_text));
+  PetscCall(put_history(e));
+  if (!*checkpoint && e->watch.every > 0.0) PetscCall(ebb_evolution_save(e, false, &good));
+  PetscCall(ebb_run_start(&e->run));
+  if (*checkpoint) PetscCall(ebb_evolution_load(*checkpoint, e, &verified));
+  PetscCall(ebb_checkpoint_destroy(checkpoint));
+  if (!verified) PetscCall(ebb_record_verify(&e->record, &e->run));
+  PetscCall(ebb_evolution_evaluate(e, invocation->progress, code));
+  if (*code) {
+    tell_stop(e, *code);
+    PetscFunctionReturn(0);
+  }
+  PetscCall(ebb_record_conclude(&e->record, &e->run));
+  PetscCall(ebb_record_end(e->store, &e->run, &e->record));
+  PetscCall(ebb_store_commit(&e->store, true));
+  if (e->speaks) ebb_checkpoint_remove(e->path);
+  warn(e);
+  if (e->speaks) ebb_record_print(&e->run, &e->record, e->path);
+  *code = limits(e);
   if (*code == EBB_EXIT_OK && (bounce->verdict == EBB_VERDICT_UNDECIDED ||
-                               (bounce->verdict == EBB_VERDICT_NO && !w->run.lattice.prescription->continuum)))
+                               (bounce->verdict == EBB_VERDICT_NO && !e->run.lattice.prescription->continuum)))
     *code = EBB_EXIT_VERDICT;
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode evolve(const struct ebb_invocation *invocation, const struct ebb_settings *settings,
-                             const char *text, int *code)
+/* The part that new and resumed runs share: e holds origin, path, mark. name: of the model, for messages. */
+static PetscErrorCode evolve(const struct ebb_invocation *invocation, const char *name,
+                             const struct ebb_settings *settings, struct ebb_checkpoint **checkpoint,
+                             struct ebb_evolution *e, int *code)
 {
-  struct work w = {0};
-  PetscMPIInt rank;
+  const bool fresh = !*checkpoint;
 
   PetscFunctionBegin;
-  PetscCallMPI(MPI_Comm_rank(PETSC_COMM_WORLD, &rank));
-  w.speaks = rank == 0;
-  ebb_result_path(invocation, settings, sizeof w.path, w.path, w.folder);
-  PetscCall(ebb_run_create(settings, w.folder, PETSC_COMM_WORLD, &w.run, code));
-  if (*code && w.speaks)
-    fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", invocation->operand[0],
-            w.run.problem);
+  PetscCall(ebb_watch_start(&e->watch, PETSC_COMM_WORLD, settings->output.checkpoint_every, invocation->time_limit));
+  e->watched = true;
+  PetscCall(ebb_run_create(settings, e->origin.folder, PETSC_COMM_WORLD, &e->run, code));
+  if (*code && e->speaks)
+    fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", name, e->run.problem);
   if (!*code) {
-    PetscErrorCode error = ebb_store_create(PETSC_COMM_WORLD, w.path, invocation->force, &w.store);
+    PetscErrorCode error = ebb_store_create(PETSC_COMM_WORLD, e->path, e->origin.force, &e->store);
 
-    if (!error) error = compute(invocation, text, &w, code);
+    if (!error && fresh && e->speaks) ebb_checkpoint_remove(e->path); /* of another run: --force was given */
+    if (!error) error = compute(invocation, checkpoint, e, code);
     if (error) *code = ebb_exit_from_error(error);
   }
-  PetscCall(ebb_store_destroy(&w.store));
-  PetscCall(ebb_record_destroy(&w.record));
-  PetscCall(ebb_run_destroy(&w.run));
+  PetscCall(ebb_checkpoint_destroy(checkpoint));
+  PetscCall(ebb_store_destroy(&e->store));
+  PetscCall(ebb_record_destroy(&e->record));
+  PetscCall(ebb_run_destroy(&e->run));
+  PetscFunctionReturn(0);
+}
+
+/* An interrupted run's checkpoints are hours of work: only --force starts over. */
+static PetscErrorCode refuse_interrupted(const struct ebb_invocation *invocation, struct ebb_evolution *e, int *code)
+{
+  int there = e->speaks && !invocation->force && ebb_checkpoint_present(e->path);
+
+  PetscFunctionBegin;
+  PetscCallMPI(MPI_Bcast(&there, 1, MPI_INT, 0, PETSC_COMM_WORLD));
+  if (!there) PetscFunctionReturn(0);
+  *code = EBB_EXIT_FILE;
+  if (e->speaks)
+    fprintf(stderr,
+            "ebbturn: error: '%s' has checkpoints of an interrupted run; nothing was computed\n"
+            "  go on     'ebbturn evolve --resume %s'\n"
+            "  try       --force to start over\n",
+            e->path, e->path);
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode begin(const struct ebb_invocation *invocation, const struct ebb_settings *settings,
+                            const char *text, struct ebb_evolution *e, int *code)
+{
+  struct ebb_checkpoint *none = NULL;
+  char folder[EBB_PATH_MAX];
+
+  PetscFunctionBegin;
+  ebb_result_path(invocation, settings, sizeof e->path, e->path, folder);
+  PetscCall(refuse_interrupted(invocation, e, code));
+  if (*code) PetscFunctionReturn(0);
+  PetscCall(ebb_checkpoint_name_run(PETSC_COMM_WORLD, e->mark.run));
+  PetscCall(ebb_origin_of(invocation, text, folder, &e->origin));
+  PetscCall(evolve(invocation, invocation->operand[0], settings, &none, e, code));
+  PetscFunctionReturn(0);
+}
+
+/* Is there a whole result, of the given run where that is not NULL? */
+static bool finished(const char *path, const char *run)
+{
+  struct ebb_store *store;
+  char *text = NULL;
+  double complete = 0.0;
+  bool found = false, same = run == NULL;
+
+  if (ebb_store_open(PETSC_COMM_WORLD, path, &store)) return false;
+  if (ebb_store_get_real(store, "/", "complete", &complete, &found) || !found) complete = 0.0;
+  if (run && !ebb_store_get_text(store, "/provenance", "run", &text, &found) && found) same = !strcmp(text, run);
+  (void)PetscFree(text);
+  (void)ebb_store_destroy(&store);
+  return same && complete == 1.0;
+}
+
+/* Opens a checkpoint, or says why there is none to go on from; *code 0 and *checkpoint NULL: the run is complete. */
+static PetscErrorCode find_checkpoint(struct ebb_evolution *e, struct ebb_checkpoint **checkpoint, int *code)
+{
+  char note[EBB_CHECKPOINT_GENERATIONS][EBB_CHECKPOINT_NOTE];
+  int there = e->speaks && ebb_checkpoint_present(e->path);
+
+  PetscFunctionBegin;
+  PetscCall(ebb_checkpoint_open(PETSC_COMM_WORLD, e->path, checkpoint, &e->mark, &e->generation, note));
+  PetscCallMPI(MPI_Bcast(&there, 1, MPI_INT, 0, PETSC_COMM_WORLD));
+  if (*checkpoint ? finished(e->path, e->mark.run) : !there && finished(e->path, NULL)) {
+    if (e->speaks) {
+      ebb_checkpoint_remove(e->path);
+      printf("'%s' is complete; there is nothing to go on with\n", e->path);
+    }
+    PetscCall(ebb_checkpoint_destroy(checkpoint));
+    PetscFunctionReturn(0);
+  }
+  if (!*checkpoint) *code = EBB_EXIT_FILE;
+  if (!e->speaks) PetscFunctionReturn(0);
+  if (!*checkpoint)
+    fprintf(stderr, "ebbturn: error: '%s' has no checkpoint to go on from; nothing was computed\n", e->path);
+  for (int g = 0; g < EBB_CHECKPOINT_GENERATIONS; g++)
+    if (note[g][0]) fprintf(stderr, *checkpoint ? "ebbturn: warning: %s\n" : "  %s\n", note[g]);
+  if (*checkpoint && note[1 - e->generation][0])
+    fprintf(stderr, "  used      '%s.checkpoint-%d'\n", e->path, e->generation);
+  if (!*checkpoint) fprintf(stderr, "  try       'ebbturn evolve MODEL -o %s', which starts over\n", e->path);
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode resume(const struct ebb_invocation *invocation, struct ebb_evolution *e, int *code)
+{
+  struct ebb_checkpoint *checkpoint = NULL;
+  struct ebb_problems *problems = ebb_problems_create();
+  struct ebb_invocation first = *invocation;
+  struct ebb_settings settings = {0};
+
+  PetscFunctionBegin;
+  PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory");
+  PetscCall(PetscSNPrintf(e->path, sizeof e->path, "%s", invocation->resume));
+  PetscCall(find_checkpoint(e, &checkpoint, code));
+  if (checkpoint) {
+    PetscCall(ebb_evolution_load_origin(checkpoint, &e->origin));
+    PetscCall(ebb_origin_resumed(&e->origin));
+    PetscCall(PetscOptionsInsertString(NULL, e->origin.options));
+    ebb_origin_invocation(&e->origin, &first);
+    if (!ebb_input_parse(e->origin.model_text, e->origin.length, first.override, (size_t)first.overrides,
+                         EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, problems)) {
+      *code = EBB_EXIT_USAGE; /* written by this version, so it was right once */
+      if (e->speaks) ebb_problems_print(problems, stderr, e->path);
+    } else {
+      PetscCall(evolve(invocation, e->path, &settings, &checkpoint, e, code));
+    }
+    ebb_settings_clear(&settings);
+  }
+  ebb_problems_destroy(&problems);
+  PetscCall(ebb_checkpoint_destroy(&checkpoint));
   PetscFunctionReturn(0);
 }
 
 static int run(const struct ebb_invocation *invocation)
 {
+  struct ebb_evolution e = {.kept = -1, .generation = 1};
   struct ebb_settings settings;
-  char *text;
-  int code = ebb_command_load(invocation, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, &text);
+  PetscMPIInt rank = 0;
   PetscErrorCode error;
+  char *text = NULL;
+  int code = EBB_EXIT_OK;
 
-  if (code != EBB_EXIT_OK) return code;
-  error = evolve(invocation, &settings, text, &code);
+  (void)MPI_Comm_rank(PETSC_COMM_WORLD, &rank);
+  e.speaks = rank == 0;
+  if (invocation->resume) {
+    error = resume(invocation, &e, &code);
+  } else {
+    code = ebb_command_load(invocation, EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, &text);
+    if (code != EBB_EXIT_OK) return code;
+    error = begin(invocation, &settings, text, &e, &code);
+    ebb_settings_clear(&settings);
+  }
   if (error) code = ebb_exit_from_error(error);
-  ebb_settings_clear(&settings);
+  (void)ebb_origin_clear(&e.origin);
   free(text);
   return code;
 }

@@ -47,6 +47,8 @@ static const char *type_name(enum ebb_type type)
     return "list of words";
   case EBB_TYPE_COMPLEX:
     return "number or [real, imaginary]";
+  case EBB_TYPE_DURATION:
+    return "duration";
   case EBB_TYPE_PARTS:
     return "list of sections";
   case EBB_TYPE_FIELDS:

@@ -1,0 +1,84 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "evolution.h"
+
+#include "ebbturn/propagator.h"
+#include "progress.h"
+
+#include <math.h>
+#include <string.h>
+
+/* A safe point every so many seconds by estimate, where the batch is not smaller than what the serial recursion needs
+ * beside the sum (some percent of it at 16 samples). */
+static const double STRETCH = 5.0, STRETCH_SHARE = 0.25; /* the latter of the interval between checkpoints */
+enum { BATCH_LEAST = 16 };
+
+static bool stepping(const struct ebb_run *run)
+{
+  return run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV;
+}
+
+PetscInt ebb_evolution_batch(const struct ebb_run *run)
+{
+  const struct ebb_estimate estimate = ebb_run_estimate(run);
+  const double every = run->settings->output.checkpoint_every;
+  const double stretch = isnan(every) ? STRETCH : fmin(STRETCH, STRETCH_SHARE * every);
+  const double most =
+      fmax(stretch * (double)run->m / fmax(estimate.seconds, 1e-300), stepping(run) ? 1.0 : BATCH_LEAST);
+  const PetscInt memory = run->source.batch ? run->source.batch : estimate.batch;
+
+  return PetscMax((PetscInt)fmin((double)memory, most), 1);
+}
+
+/* At a safe point: whatever the watch asks for. */
+static PetscErrorCode safe_point(struct ebb_evolution *e, bool *stop, int *code)
+{
+  enum ebb_action action;
+  bool good = true;
+
+  PetscFunctionBegin;
+  *stop = false;
+  if (!e->watched) PetscFunctionReturn(0);
+  PetscCall(ebb_watch_ask(&e->watch, &action, code));
+  if (e->abandon) {
+    *stop = action == EBB_ACTION_STOP;
+    PetscFunctionReturn(0);
+  }
+  if (action == EBB_ACTION_GO || (action == EBB_ACTION_KEEP && e->next == e->run.m)) PetscFunctionReturn(0);
+  PetscCall(ebb_evolution_save(e, true, &good));
+  *stop = action == EBB_ACTION_STOP;
+  if (*stop && !good) *code = EBB_EXIT_FILE;
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_evolution_evaluate(struct ebb_evolution *e, const char *progress_mode, int *code)
+{
+  struct ebb_run *run = &e->run;
+  const struct ebb_output_settings *o = &run->settings->output;
+  const struct ebb_sheet_request request = {.levels = o->quantiles,
+                                            .level = o->quantile,
+                                            .probability = e->store && (o->keep & EBB_KEEP_PROBABILITY) != 0,
+                                            .state = e->store && ebb_run_keeps_states(run)};
+  const PetscInt batch = ebb_evolution_batch(run);
+  struct ebb_progress progress;
+  bool stop;
+
+  PetscFunctionBegin;
+  ebb_progress_start(&progress, run->comm, progress_mode, "clock sample", run->m);
+  PetscCall(safe_point(e, &stop, code));
+  while (!stop && e->next < run->m) {
+    const PetscInt first = e->next, count = PetscMin(batch, run->m - first);
+    struct ebb_sheet sheet;
+
+    PetscCall(run->source.evaluate(&run->source, count, run->phi + first, &request, &sheet));
+    if (stepping(run))
+      e->record.budget.propagation = fmax(e->record.budget.propagation, ebb_source_steps_error(&run->source));
+    ebb_record_take(&e->record, run, first, &sheet);
+    if (e->store) PetscCall(ebb_record_batch(e->store, run, first, &sheet));
+    PetscCall(ebb_sheet_clear(&sheet));
+    e->next += count;
+    ebb_progress_tell(&progress, e->next);
+    PetscCall(safe_point(e, &stop, code));
+  }
+  ebb_progress_end(&progress);
+  PetscFunctionReturn(0);
+}

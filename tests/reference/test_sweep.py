@@ -1,0 +1,152 @@
+#!/usr/bin/env python3
+# SPDX-License-Identifier: BSD-2-Clause
+"""Sweeps: the table against closed forms, against single runs, killed and resumed, extended, with a case that fails, and on
+two ranks. Program: $EBBTURN. Tolerances: the errors that the table states (a stated error that is too small is a bug), and
+rounding, 1e-13, for the slope of a massless flat model, which is 1 identically: V = 2 pi gamma lambda G v, and the state in
+v does not know lambda."""
+import csv
+import math
+import os
+import signal
+import subprocess
+import tempfile
+import time
+
+import h5py
+import numpy as np
+from common import MPIEXEC, PROGRAM, check, finish
+
+ROUNDING = 1e-13
+BASE = """title: flat
+gravity: {prescription: slqc}
+clock: {kind: scalar, from: -0.2, to: 0.2, samples: 11}
+state: {profile: gaussian_momentum, momentum: 100.0, relative_spread: 0.1}
+output: {keep: [moments, quantiles]}
+"""
+PLAN = """base: flat.yaml
+vary:
+  gravity.polymer_scale: {{from: 0.5, to: 8.0, count: 3, spacing: log}}
+  gravity.prescription: [slqc, aps]
+  state.momentum: {momenta}
+{more}output: {{file: scales.h5}}
+"""
+
+
+def sweep(folder, *arguments, ranks=0, expect=0):
+    command = ([MPIEXEC, "-n", str(ranks)] if ranks else []) + [PROGRAM, "sweep", *arguments]
+    done = subprocess.run(command, cwd=folder, capture_output=True, text=True, timeout=110, stdin=subprocess.DEVNULL, check=False)
+    check(done.returncode == expect, f"sweep {' '.join(arguments)}: exit {done.returncode}, expected {expect} {done.stderr}")
+    return done
+
+
+def prepare(top, name, momenta="[150, 200]", more=""):
+    folder = os.path.join(top, name)
+    os.makedirs(folder, exist_ok=True)
+    for file, text in (("flat.yaml", BASE), ("plan.yaml", PLAN.format(momenta=momenta, more=more))):
+        with open(os.path.join(folder, file), "w", encoding="utf-8") as f:
+            f.write(text)
+    return folder
+
+
+def table(folder, name="scales.h5"):
+    with h5py.File(os.path.join(folder, name)) as f:
+        return {k: v[()] for k, v in f["sweep"].items()}, {k: v[()] for k, v in f["provenance"].items()}
+
+
+def closed_form(p):
+    """R = exp(kappa^2/8 sigma^2) <sqrt(k^2 + 1/4)>/<k> over a Gaussian |c|^2 (bounce-symmetric packet, solvable ordering)."""
+    kappa, sigma = math.sqrt(12 * math.pi), 0.1 * p
+    x, w = np.polynomial.hermite.hermgauss(60)
+    k = (p + math.sqrt(2) * sigma * x) / kappa
+    return math.exp(kappa**2 / (8 * sigma**2)) * np.sum(w * np.sqrt(k * k + 0.25)) / np.sum(w * k)
+
+
+def numbers(top):
+    folder = prepare(top, "whole")
+    sweep(folder, "plan.yaml", "--csv", "table.csv")
+    t, _ = table(folder)
+    check(len(t["bounce_v"]) == 12 and np.all(t["status"] == b"done") and np.all(t["verdict"] == b"yes"), "twelve cases, all done")
+    worst = np.max(np.abs(t["slope"] - 1))
+    check(worst < ROUNDING and np.nanmax(np.abs(t["slope_local"] - 1)) < ROUNDING, f"slopes are 1 to rounding ({worst:.1e})")
+    for p in (150, 200):
+        here = (t["gravity.prescription"] == b"slqc") & (t["state.momentum"] == p)
+        off = np.abs(t["bounce_ratio"][here] - closed_form(p)) / t["bounce_ratio_error"][here]
+        # exact up to the Gaussian's weight below k = 0, exp(-50), at k0 = 10 sigma_k
+        check(here.sum() == 3 and off.max() < 1, f"the ratio to the effective bounce is the closed form, to {off.max():.2g} errors")
+    with open(os.path.join(folder, "table.csv"), newline="", encoding="utf-8") as f:
+        rows = list(csv.DictReader(f))
+    check([float(r["bounce_volume"]) for r in rows] == list(t["bounce_volume"]), "the csv holds the same digits")
+    subprocess.run([PROGRAM, "evolve", "flat.yaml", "--set", "gravity.polymer_scale=2", "--set", "gravity.prescription=aps",
+                    "--set", "state.momentum=150", "-o", "one.h5"], cwd=folder, check=True, capture_output=True)
+    with h5py.File(os.path.join(folder, "one.h5")) as f:
+        here = (t["gravity.prescription"] == b"aps") & (t["state.momentum"] == 150) & (t["gravity.polymer_scale"] == 2)
+        check(t["bounce_v"][here] == f["bounce/v"][()], "a case equals a run of evolve bit for bit")
+    return folder, t
+
+
+def interrupted(top, reference):
+    folder = prepare(top, "killed")
+    kills = 0
+    for attempt in range(8):
+        journal = any("journal" in n for n in os.listdir(folder))
+        process = subprocess.Popen([PROGRAM, "sweep", "plan.yaml", *(("--resume", "scales.h5") if journal else ())], cwd=folder,
+                                   stdout=subprocess.DEVNULL, stderr=subprocess.PIPE, text=True)
+        before = sum(os.path.getsize(os.path.join(folder, n)) for n in os.listdir(folder) if "journal" in n)
+        while attempt < 3 and process.poll() is None:  # until two or three more cases are in the journal
+            if sum(os.path.getsize(os.path.join(folder, n)) for n in os.listdir(folder) if "journal" in n) > before + 7000:
+                process.send_signal((signal.SIGKILL, signal.SIGUSR1, signal.SIGKILL)[attempt])
+                break
+            time.sleep(0.002)
+        _, err = process.communicate(timeout=110)
+        kills += process.returncode != 0
+        if process.returncode == 0:
+            break
+        check(process.returncode in (-signal.SIGKILL, 75), f"stopped: {process.returncode} {err}")
+        if process.returncode == 75:
+            check(err.strip().splitlines()[-1].endswith("'ebbturn sweep plan.yaml --resume scales.h5'"), "the last line says how to go on")
+    t, p = table(folder)
+    check(kills == 3, f"the sweep was stopped {kills} times")
+    check(all(np.array_equal(t[k], reference[k], equal_nan=t[k].dtype.kind == "f") for k in reference), "the table is that of an uninterrupted sweep, bit for bit")
+    check(p["case_attempts"].sum() <= 12 + kills and p["case_attempts"].min() == 1, f"no finished case ran again: {p['case_attempts']}")
+    prepare(top, "killed", "[150, 200, 250]")
+    sweep(folder, "plan.yaml", expect=4)
+    sweep(folder, "plan.yaml", "--resume", "scales.h5")
+    t, later = table(folder)
+    old = t["state.momentum"] < 250
+    check(len(old) == 18 and np.array_equal(later["case_finished"][old], p["case_finished"]) and
+          np.array_equal(later["case_attempts"][old], p["case_attempts"]), "an extended plan runs its new cases only")
+    prepare(top, "killed", "[150, 250]")
+    done = sweep(folder, "plan.yaml", "--resume", "scales.h5", expect=2)
+    check("6 finished cases" in done.stderr, "a plan that lost cases is refused")
+
+
+def failures(top):
+    folder = prepare(top, "fails", "[150]", "  lattice.volume_max: [10, 20000]\n")
+    done = sweep(folder, "plan.yaml", expect=1)
+    t, _ = table(folder)
+    few = t["lattice.volume_max"] == 10
+    check(np.all(t["status"][few] == b"failed") and all(b"sites" in r for r in t["reason"][few]), f"a case that fails says why: {t['reason'][0]}")
+    check(np.all(t["status"][~few] == b"done") and np.all(np.isnan(t["bounce_v"][few])) and "6 done" in done.stdout, "and the rest goes on")
+    with open(os.path.join(folder, "bad.yaml"), "w", encoding="utf-8") as f:
+        f.write("base: flat.yaml\nvary:\n  state.momentm: [1, 2]\n  gravity.immirzi: [0.2, -1]\narange: grid\n")
+    done = sweep(folder, "bad.yaml", expect=2)
+    check(all(s in done.stderr for s in ("3 problems", "line 3", "'state.momentum'", "line 4", "gravity.immirzi = -1", "'arrange'")),
+          f"a plan's problems are told together: {done.stderr}")
+
+
+def main():
+    with tempfile.TemporaryDirectory() as top:
+        _, t = numbers(top)
+        interrupted(top, t)
+        failures(top)
+        folder = prepare(top, "two")
+        sweep(folder, "plan.yaml", "--dry-run", ranks=2)
+        sweep(folder, "plan.yaml", ranks=2)
+        two, _ = table(folder)
+        check(all(np.array_equal(t[k], two[k], equal_nan=t[k].dtype.kind == "f") for k in t), "two ranks, one case each: the same table")
+        command = [PROGRAM, "compare", os.path.join(folder, "scales.h5"), os.path.join(top, "whole", "scales.h5")]
+        check(subprocess.run(command, capture_output=True, check=False).returncode == 0, "compare finds them equal")
+    finish()
+
+
+main()
