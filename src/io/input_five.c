@@ -94,11 +94,12 @@ bool ebb_reader_check_five(const struct ebb_reader *reader, const struct ebb_row
     return false;
   }
   if (!chosen(reader, rows)) return false;
-  if (!strcmp(reader->settings->numerics.eigensolver, "slicing")) {
+  if (!strcmp(reader->settings->numerics.eigensolver, "slicing") &&
+      ebb_rows_nature(rows) == EBB_NATURE_FAMILY_CONTINUOUS) {
     ebb_reader_complain(
         reader, ebb_reader_given(reader, "numerics.eigensolver")->origin,
-        "numerics.eigensolver = 'slicing' knows operators with hops of one size; leave it out here, the "
-        "list is proved complete by inertias all the same");
+        "numerics.eigensolver = 'slicing' is for spectra that are discrete as a whole; leave it out here, where the "
+        "eigenvalues lie under waves and are counted by the phase of the solution");
     return false;
   }
   return true;

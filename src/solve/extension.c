@@ -192,8 +192,8 @@ static PetscErrorCode slice(struct matrix *t, MPI_Comm comm, struct ebb_spectrum
   PetscFunctionBegin;
   t->d[t->n - 1] = (t->last + link * r.ratio + slope * middle) / whole;
   t->e[t->n - 2] /= sqrt(whole);
-  PetscCall(
-      ebb_slicing_find((PetscInt)t->n, t->d, t->e, s->counted[0], s->counted[1], comm, &found, &values, s->inertia));
+  PetscCall(ebb_slicing_find((PetscInt)t->n, t->d, t->e, NULL, s->counted[0], s->counted[1], comm, &found, &values,
+                             s->inertia));
   t->e[t->n - 2] = inner;
   s->sliced = true;
   if (found != s->n || s->inertia[1] - s->inertia[0] != s->n) s->complete = false;

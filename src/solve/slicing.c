@@ -9,17 +9,20 @@ static const double TOLERANCE = 1e-12;     /* relative, of an eigenpair's residu
 static const double OFFSET = 0.0718281828; /* of a part's length */
 static const char PREFIX[] = "ebb_slicing_";
 
-static PetscErrorCode matrix_make(PetscInt n, const double d[], const double e[], MPI_Comm comm, Mat *matrix)
+static PetscErrorCode matrix_make(PetscInt n, const double d[], const double e[], const double f[], MPI_Comm comm,
+                                  Mat *matrix)
 {
   PetscInt begin, end;
 
   PetscFunctionBegin;
-  PetscCall(MatCreateAIJ(comm, PETSC_DECIDE, PETSC_DECIDE, n, n, 3, NULL, 1, NULL, matrix));
+  PetscCall(MatCreateAIJ(comm, PETSC_DECIDE, PETSC_DECIDE, n, n, 5, NULL, 2, NULL, matrix));
   PetscCall(MatGetOwnershipRange(*matrix, &begin, &end));
   for (PetscInt i = begin; i < end; i++) {
     PetscCall(MatSetValue(*matrix, i, i, d[i], INSERT_VALUES));
     if (i > 0) PetscCall(MatSetValue(*matrix, i, i - 1, e[i - 1], INSERT_VALUES));
     if (i + 1 < n) PetscCall(MatSetValue(*matrix, i, i + 1, e[i], INSERT_VALUES));
+    if (f && i > 1) PetscCall(MatSetValue(*matrix, i, i - 2, f[i - 2], INSERT_VALUES));
+    if (f && i + 2 < n) PetscCall(MatSetValue(*matrix, i, i + 2, f[i], INSERT_VALUES));
   }
   PetscCall(MatAssemblyBegin(*matrix, MAT_FINAL_ASSEMBLY));
   PetscCall(MatAssemblyEnd(*matrix, MAT_FINAL_ASSEMBLY));
@@ -91,14 +94,14 @@ static PetscErrorCode inertia_read(EPS eps, PetscInt inertia[2])
   PetscFunctionReturn(0);
 }
 
-PetscErrorCode ebb_slicing_find(PetscInt n, const double d[], const double e[], double low, double high, MPI_Comm comm,
-                                PetscInt *found, double **values, PetscInt inertia[2])
+PetscErrorCode ebb_slicing_find(PetscInt n, const double d[], const double e[], const double f[], double low,
+                                double high, MPI_Comm comm, PetscInt *found, double **values, PetscInt inertia[2])
 {
   Mat matrix;
   EPS eps;
 
   PetscFunctionBegin;
-  PetscCall(matrix_make(n, d, e, comm, &matrix));
+  PetscCall(matrix_make(n, d, e, f, comm, &matrix));
   PetscCall(solver_make(matrix, low, high, &eps));
   PetscCall(EPSSolve(eps));
   PetscCall(EPSGetConverged(eps, found));

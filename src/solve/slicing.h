@@ -7,10 +7,11 @@
 
 #include <petscsys.h>
 
-/* Real symmetric tridiagonal d [n], e [n - 1], held whole by every rank. values: PetscMalloc'ed, ascending, the same on
- * every rank. inertia: eigenvalues below low and below high by Sylvester's law. Collective; cost: some factorisations
- * and O(found) solves a shift. Source: Campos, Roman, Numer. Algor. 60, 279 (2012) (from memory). */
-PetscErrorCode ebb_slicing_find(PetscInt n, const double d[], const double e[], double low, double high, MPI_Comm comm,
-                                PetscInt *found, double **values, PetscInt inertia[2]);
+/* Real symmetric, diagonal d [n], first band e [n - 1], second band f [n - 2] or NULL where there is none; held whole
+ * by every rank. values: PetscMalloc'ed, ascending, the same on every rank. inertia: eigenvalues below low and below
+ * high by Sylvester's law. Collective; cost: some factorisations and O(found) solves a shift. Source: Campos, Roman,
+ * Numer. Algor. 60, 279 (2012) (from memory). */
+PetscErrorCode ebb_slicing_find(PetscInt n, const double d[], const double e[], const double f[], double low,
+                                double high, MPI_Comm comm, PetscInt *found, double **values, PetscInt inertia[2]);
 
 #endif

@@ -200,7 +200,7 @@ static PetscErrorCode slice(const struct ebb_spectrum_request *r, const struct m
   int sign;
 
   PetscFunctionBegin;
-  PetscCall(ebb_slicing_find(t->n, t->d, t->e, r->low, r->high, comm, &found, &values, s->inertia));
+  PetscCall(ebb_slicing_find(t->n, t->d, t->e, NULL, r->low, r->high, comm, &found, &values, s->inertia));
   s->sliced = true;
   PetscCall(PetscMalloc2(t->n, &x, 2 * t->n, &pivots));
   for (PetscInt j = 0; found == s->n && j < found; j++)
