@@ -17,7 +17,7 @@ daemons() { # pid files of those that run
   done
 }
 
-start() {
+start() { # nproc --all: plain nproc obeys OMP_NUM_THREADS
   local host port tool state=
   PATH=$PATH:/usr/sbin:/sbin
   for tool in munged slurmctld slurmd sbatch srun; do
@@ -62,7 +62,7 @@ MinJobAge=600
 InactiveLimit=0
 SchedulerType=sched/backfill
 SchedulerParameters=sched_interval=1,bf_interval=1,sched_min_interval=100000,batch_sched_delay=0
-NodeName=$host NodeAddr=127.0.0.1 CPUs=$(nproc) RealMemory=$(awk '/MemTotal/ {print int($2 / 1024 * 0.9)}' /proc/meminfo)
+NodeName=$host NodeAddr=127.0.0.1 CPUs=$(nproc --all) RealMemory=$(awk '/MemTotal/ {print int($2 / 1024 * 0.9)}' /proc/meminfo)
 PartitionName=main Nodes=$host Default=YES MaxTime=INFINITE State=UP
 EOF
   slurmctld -c -f "$SLURM_CONF" || { echo "local-slurm.sh: slurmctld failed" >&2; exit 1; }
@@ -82,11 +82,13 @@ EOF
 
 stop() {
   local file
-  scancel --quiet --user="$(id -un)" 2>/dev/null
-  for _ in $(seq 50); do
-    [ -z "$(squeue -h 2>/dev/null)" ] && break
-    sleep 0.1
-  done
+  if daemons | grep -q slurmctld; then # without it scancel would wait for minutes
+    scancel --quiet --user="$(id -un)" 2>/dev/null
+    for _ in $(seq 50); do
+      [ -z "$(squeue -h 2>/dev/null)" ] && break
+      sleep 0.1
+    done
+  fi
   for file in $(daemons); do kill "$(cat "$file")" 2>/dev/null; done
   for _ in $(seq 50); do
     [ -z "$(daemons)" ] && break

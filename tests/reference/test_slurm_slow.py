@@ -91,6 +91,7 @@ def in_the_queue(folder):
 
 def main():
     with tempfile.TemporaryDirectory(prefix="ebbslurm-", dir="/tmp") as top:
+        os.chmod(top, 0o755)  # munge asks for it
         started = subprocess.run([LOCAL, "start", os.path.join(top, "s")], capture_output=True, text=True, timeout=60, check=False)
         try:
             if started.returncode:
