@@ -14,7 +14,7 @@ struct ebb_turning_point {
   bool bounce;            /* v is least; false: a recollapse, v is greatest */
   double clock, v, b;     /* b in [0, period of the symbol) */
   double volume, density; /* length^3; 1/G^2, as in struct ebb_effective */
-  double clock_error;     /* absolute; v, volume and density are exact to rounding */
+  double clock_spread;     /* absolute; v, volume and density are exact to rounding */
 };
 
 /* What one orbit does between its ends. */
@@ -56,9 +56,10 @@ PetscErrorCode ebb_effective_clear(struct ebb_effective *effective);
 PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double p, double clock0, double v0,
                                             double sign, struct ebb_turning_points *points);
 
-/* Volume [length^3] and density [1/G^2] of the bounce that ends the classical contracting branch, each with what an
- * error of the momentum makes of it; NAN without a bounce (continuum). density: rho_c f(b), all energy, as the mean
+/* Volume [length^3] and density [1/G^2] of the bounce nearest to near_v (few models have more than one), each with what
+ * an error of the momentum makes of it; NAN without a bounce (continuum). density: rho_c f(b), all energy, as the mean
  * density of a state measures it; that of matter alone is in struct ebb_turning_point. */
-void ebb_effective_bounce(const struct ebb_rows *rows, double p, double p_error, double volume[2], double density[2]);
+void ebb_effective_bounce(const struct ebb_rows *rows, double p, double p_error, double near_v, double volume[2],
+                          double density[2]);
 
 #endif

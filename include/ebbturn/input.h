@@ -6,6 +6,7 @@
 
 #include "ebbturn/operators.h"
 #include "ebbturn/problems.h"
+#include "ebbturn/readings.h"
 #include "ebbturn/schema.h"
 #include "ebbturn/settings.h"
 
@@ -23,6 +24,11 @@ bool ebb_input_parse(const char *text, size_t length, const char *const override
 /* Reads a whole file, up to one byte more than a model may have (1 MiB), which ebb_input_parse then refuses; NULL with
  * a problem added where it cannot be read. The caller frees it. */
 char *ebb_input_read(const char *path, size_t *length, struct ebb_problems *problems);
+
+/* The same for a readings file. word [words]: the observables there are. readings is overwritten; ebb_readings_clear
+ * it. */
+bool ebb_input_readings(const char *text, size_t length, const struct ebb_reading_word *const word[], size_t words,
+                        struct ebb_readings *readings, struct ebb_problems *problems);
 
 /* Choice index of a setting, catalogues of other layers included; NULL past the end. */
 const char *ebb_input_choice(const struct ebb_setting *setting, size_t index);

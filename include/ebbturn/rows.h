@@ -98,6 +98,8 @@ bool ebb_rows_is_flat(const struct ebb_rows *rows);
 /* True where there is anything on the diagonal beside the flux form. */
 bool ebb_rows_has_potential(const struct ebb_rows *rows);
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows);
+/* Extensions in whose states |psi|^2 falls like 1/v^2, so that no power of v has a mean. */
+bool ebb_rows_is_family(const struct ebb_rows *rows);
 
 /* |v| beyond which eigenfunctions of a low eigenvalue of a discrete operator have fallen by exp(-depth): psi ~
  * exp(-(v/2) arcsinh sqrt|s|) for Lambda < 0, exp(-(3/4) gamma d1 v^{2/3}) where closed, either way. */

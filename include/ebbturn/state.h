@@ -141,6 +141,11 @@ PetscErrorCode ebb_phases_clear(struct ebb_phases *phases);
 /* out [rows][columns] = e [rows][n] x table: one dgemm. */
 void ebb_phases_sum(const struct ebb_phases *phases, PetscInt rows, const double *e, double *out);
 
+/* One field at m clock values on this rank's sites: values [m][end - begin], ascending global order. One dgemm a block
+ * of sites. */
+PetscErrorCode ebb_packet_samples(const struct ebb_packet *packet, const struct ebb_lattice *lattice, PetscInt m,
+                                  const double phi[], enum ebb_field field, double complex values[]);
+
 /* One field at one clock value on this rank's sites, [end - begin] in ascending global order. */
 PetscErrorCode ebb_packet_values(const struct ebb_packet *packet, const struct ebb_lattice *lattice, double phi,
                                  enum ebb_field field, double complex values[]);

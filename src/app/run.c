@@ -86,7 +86,16 @@ static PetscErrorCode refuse(struct ebb_run *run, const struct ebb_prescription 
 
   PetscFunctionBegin;
   for (size_t i = 0; i < s->state.components; i++) infinite = infinite || unbounded_start(&s->state.component[i]);
-  if (levels && run->method == EBB_METHOD_MODES)
+  const bool steps = run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV;
+
+  if (run->rows.band == 2 && steps)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "numerics.propagator '%s' steps with operators whose hops have one size; take auto",
+                            s->numerics.propagator));
+  else if (s->lattice.points > 0 && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY_CONTINUOUS)
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "lattice.points puts a wall, which would choose an extension of its own; leave it out"));
+  else if (levels && run->method == EBB_METHOD_MODES)
     PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
                             "numerics.propagator 'modes' is for flat models with a scalar clock and no cosmological "
                             "constant; take auto"));
@@ -137,7 +146,7 @@ static PetscErrorCode size_lattice(struct ebb_run *run, const struct ebb_prescri
   double sites;
 
   PetscFunctionBegin;
-  sites = s->lattice.points > 0 ? s->lattice.points : floor((v_max - s->gravity.sector) / 4.0) + 1.0;
+  sites = s->lattice.points > 0 ? s->lattice.points : floor((v_max - run->rows.sector) / run->rows.step) + 1.0;
   if (sites > SITES_MOST || sites < 8.0) {
     PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
                             "the lattice would have %.3g sites, must be 8 to %.0e; set lattice.volume_max", sites,

@@ -21,7 +21,7 @@ static PetscInt sites_wanted(const struct ebb_run *run)
   const struct ebb_lattice_settings *l = &run->settings->lattice;
 
   if (l->points > 0) return l->points;
-  if (l->volume_max > 0.0) return (PetscInt)fmax(floor((l->volume_max - run->rows.sector) / 4.0) + 1.0, 8.0);
+  if (l->volume_max > 0.0) return (PetscInt)fmax(floor((l->volume_max - run->rows.sector) / run->rows.step) + 1.0, 8.0);
   return 0;
 }
 

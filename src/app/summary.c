@@ -69,8 +69,7 @@ void ebb_record_print(const struct ebb_run *run, const struct ebb_record *record
          run->m);
   print_bounce(run, record);
   printf("  error          %s to %.1e relative; largest contribution: %s (%s)\n",
-         ebb_run_has_levels(run) && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY ? "bounded observables"
-                                                                                     : "mean volume",
+         !run->lattice.prescription->grid && ebb_rows_is_family(&run->rows) ? "bounded observables" : "mean volume",
          record->budget.worst[largest], ebb_contribution_names[largest], ebb_contribution_texts[largest]);
   printf("  edge           at most %.1e of the probability above 0.9 of the largest v\n",
          record->budget.edge_probability);

@@ -13,7 +13,7 @@ enum { VERIFIED = 5 };            /* samples on which the independent rule is ev
 
 bool ebb_run_mean_exists(const struct ebb_run *run)
 {
-  if (!run->lattice.prescription->grid && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY) return false;
+  if (!run->lattice.prescription->grid && ebb_rows_is_family(&run->rows)) return false;
   return run->packet->low_weight < LOW_WEIGHT || ebb_run_has_levels(run);
 }
 
@@ -65,27 +65,55 @@ void ebb_record_take(struct ebb_record *r, const struct ebb_run *run, PetscInt f
   }
 }
 
+/* The effective orbit through the bounce that was found, or through the first sample. A universe with a de Sitter
+ * branch is told by the end of the clock range where it is classical; where bounces of two sizes take turns, the clock
+ * is set so that the one that was found comes when it did. */
+static PetscErrorCode follow_effective(struct ebb_record *r, const struct ebb_run *run, bool family)
+{
+  const double *v = family && r->levels ? NULL : r->moment[EBB_MOMENT_V_MEAN];
+  const bool found = !isnan(r->bounce.clock.value),
+             sitter = ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY_CONTINUOUS;
+  const PetscInt end = sitter && r->slope[run->m - 1] > 0.0 ? run->m - 1 : 0;
+  const double phi0 = found && !sitter ? r->bounce.clock.value : run->phi[end];
+  const double v0 = v ? v[end] : r->quantile[(size_t)end * r->levels + r->levels / 2];
+  const double sign = found && !sitter ? 0.0 : r->slope[end] < 0.0 ? -1.0 : 1.0, p = ebb_run_momentum(run);
+  struct ebb_rows rows = run->rows;
+  double shift = 0.0, least;
+
+  PetscFunctionBegin;
+  if (rows.field) rows.p_phi = run->settings->matter.momentum;
+  PetscCall(ebb_effective_make(&rows, p, phi0, v0, sign, run->m, run->phi, &r->effective));
+  if (!found || sitter || rows.band == 1) PetscFunctionReturn(0);
+  least = INFINITY;
+  for (size_t i = 0; i < r->effective.turning.n; i++) {
+    const struct ebb_turning_point *point = &r->effective.turning.point[i];
+    const double off = fabs(log(point->v / r->bounce.v.value));
+
+    if (!point->bounce || !(off < least)) continue;
+    least = off;
+    shift = phi0 - point->clock;
+  }
+  if (shift == 0.0) PetscFunctionReturn(0);
+  PetscCall(ebb_effective_clear(&r->effective));
+  PetscCall(ebb_effective_make(&rows, p, phi0 + shift, v0, sign, run->m, run->phi, &r->effective));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
 {
   const struct ebb_prescription *p = run->lattice.prescription;
-  const bool family = !p->grid && ebb_rows_nature(&run->rows) == EBB_NATURE_FAMILY;
+  const bool family = !p->grid && ebb_rows_is_family(&run->rows);
   const struct ebb_samples samples = {
       run->m,   run->phi,  r->moment[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN],
       r->slope, r->levels, r->levels ? r->quantile : NULL};
-  struct ebb_rows rows = run->rows;
-  double phi0, v0, sign;
 
   PetscFunctionBegin;
   PetscCall(ebb_bounce_find(&run->source, run->check ? &run->check_source : NULL, &samples, &r->budget,
                             ebb_run_mean_exists(run), &r->bounce));
   r->has_law = !p->grid && !p->continuum && !isnan(r->bounce.clock.value) && ebb_rows_is_flat(&run->rows) &&
-               run->rows.volume_power == 1.0 && !run->bundle;
+               run->rows.volume_power == 1.0 && run->rows.band == 1 && !run->bundle;
   if (r->has_law)
     PetscCall(ebb_law_find(&run->source, run->packet, &samples, &r->budget, r->bounce.clock.value, &r->law));
-  phi0 = isnan(r->bounce.clock.value) ? run->phi[0] : r->bounce.clock.value;
-  v0 = family && r->levels ? r->quantile[r->levels / 2] : r->moment[EBB_MOMENT_V_MEAN][0];
-  sign = isnan(r->bounce.clock.value) ? (r->slope[0] < 0.0 ? -1.0 : 1.0) : 0.0;
-  if (rows.field) rows.p_phi = run->settings->matter.momentum;
-  PetscCall(ebb_effective_make(&rows, ebb_run_momentum(run), phi0, v0, sign, run->m, run->phi, &r->effective));
+  PetscCall(follow_effective(r, run, family));
   PetscFunctionReturn(0);
 }

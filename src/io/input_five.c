@@ -101,9 +101,5 @@ bool ebb_reader_check_five(const struct ebb_reader *reader, const struct ebb_row
         "list is proved complete by inertias all the same");
     return false;
   }
-  if (!(reader->need & EBB_NEED_CLOCK_RANGE)) return true;
-  ebb_reader_complain(reader, ebb_reader_section(reader, "gravity"),
-                      "evolution with hops of two sizes is not available in this version; 'spectrum' and 'selfadjoint' "
-                      "are");
-  return false;
+  return true;
 }

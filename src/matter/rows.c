@@ -160,6 +160,13 @@ double ebb_rows_second(const struct ebb_rows *rows, double v)
   return rows->band == 2 ? ebb_rows_five_second(rows, v) : 0.0;
 }
 
+bool ebb_rows_is_family(const struct ebb_rows *rows)
+{
+  const enum ebb_nature nature = ebb_rows_nature(rows);
+
+  return nature == EBB_NATURE_FAMILY || nature == EBB_NATURE_FAMILY_CONTINUOUS;
+}
+
 enum ebb_nature ebb_rows_nature(const struct ebb_rows *rows)
 {
   const double growth = rows->clock->growth;

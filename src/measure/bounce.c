@@ -225,8 +225,9 @@ static double edge_speed(const struct ebb_lattice *lattice)
   return 2.0 * rows->scale * pow(v, growth - 1.0);
 }
 
-/* The effective bounce of the mean momentum; its error is what the momentum's moves it by. */
-static void effective(const struct ebb_source *source, double p, double p_error, struct ebb_bounce *bounce)
+/* The effective bounce of the mean momentum, the one nearest to v = at; its error is what the momentum's moves it by.
+ */
+static void effective(const struct ebb_source *source, double p, double p_error, double at, struct ebb_bounce *bounce)
 {
   struct ebb_rows rows = source->lattice->rows;
   double volume[2], density[2];
@@ -234,7 +235,7 @@ static void effective(const struct ebb_source *source, double p, double p_error,
   rows.constants = *source->constants;
   rows.p_phi = source->field_momentum != 0.0 ? source->field_momentum : rows.p_phi;
   ebb_rows_make(&rows);
-  ebb_effective_bounce(&rows, p, p_error, volume, density);
+  ebb_effective_bounce(&rows, p, p_error, at, volume, density);
   bounce->effective_volume = (struct ebb_measured){volume[0], volume[1]};
   bounce->effective_density = (struct ebb_measured){density[0], density[1]};
 }
@@ -273,7 +274,7 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
       (struct ebb_measured){sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx
                                                                                : 0.5 * source->lattice->step};
   p = moment[EBB_MOMENT_MOMENTUM_MEAN];
-  effective(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce);
+  effective(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce->v_mode.value, bounce);
   PetscCall(ebb_sheet_clear(&sheet));
   PetscFunctionReturn(0);
 }

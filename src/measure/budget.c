@@ -51,6 +51,13 @@ static double normal_ratio(double z, double width)
  * included, is uncertain by this many times its probability. */
 static const double TAIL_AND_LINK = 3.0;
 
+/* Probability beyond the last site: in levels the last component stands for it, with modes it is what the norm lacks.
+ */
+static double tail_of(const struct ebb_lattice *lattice, const struct ebb_sheet *sheet, PetscInt s)
+{
+  return lattice->rows.band == 2 ? fabs(1.0 - sheet->sum[EBB_SUM_NORM][s]) : sheet->sum[EBB_SUM_LAST][s];
+}
+
 /* Weight beyond the edge from the last two windows of equal ratio: a tail falling by r per window holds r/(1-r) of the
  * last one; a Gaussian tail holds less. Where the tail hardly falls, SLOW windows of it are charged. */
 static const double SLOW = 20.0;
@@ -184,9 +191,9 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
 {
-  const bool family = !lattice->prescription->grid && ebb_rows_nature(&lattice->rows) == EBB_NATURE_FAMILY;
+  const bool family = !lattice->prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double edge0 =
-      family ? TAIL_AND_LINK * sheet->sum[EBB_SUM_LAST][s]
+      family ? TAIL_AND_LINK * tail_of(lattice, sheet, s)
              : weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]);
   const double edge1 = weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V, sheet->sum[EBB_SUM_V][s]);
   const double edge2 =
@@ -264,7 +271,7 @@ double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct e
                                  const struct ebb_sheet *sheet, PetscInt s, size_t levels, const double level[],
                                  size_t which)
 {
-  const bool family = !lattice->prescription->grid && ebb_rows_nature(&lattice->rows) == EBB_NATURE_FAMILY;
+  const bool family = !lattice->prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double edge0 = family ? 0.0 : beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
   const double *q = sheet->quantile + (size_t)s * levels;
   const double v = sheet->sum[EBB_SUM_V][s], spread = sqrt(fmax(sheet->sum[EBB_SUM_V2][s] - v * v, 1.0));
@@ -288,7 +295,7 @@ void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c
                         const struct ebb_sheet *rule, const struct ebb_sheet *check, size_t levels)
 {
   static const double FAMILY_TOP = 0.45; /* the check's lattice is half as large */
-  const bool family = !lattice->prescription->grid && ebb_rows_nature(&lattice->rows) == EBB_NATURE_FAMILY;
+  const bool family = !lattice->prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
 
   for (PetscInt s = 0; s < rule->m; s++) {

@@ -80,7 +80,7 @@ static void diagonal_more(const struct ebb_lattice *lattice, double v, bool last
                           PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
   const struct ebb_rows *rows = &lattice->rows;
-  const bool powers = rows->volume_power != 1.0, potential = ebb_rows_has_potential(rows);
+  const bool powers = rows->volume_power != 1.0, potential = rows->band == 1 && ebb_rows_has_potential(rows);
   const double volume = powers ? ebb_rows_volume(rows, v) : 0.0, u = potential ? ebb_rows_potential(rows, v) : 0.0;
   const double bounded = sheet->bounded_scale > 0.0 ? atan(v / sheet->bounded_scale) : 0.0;
 
@@ -107,6 +107,35 @@ static void most_probable(double v, const struct ebb_site_rows *r, PetscInt s0, 
       best[s0 + s] = p;
       mode[s] = v;
     }
+  }
+}
+
+/* Quadratic forms of a five-point operator, by its elements, and shifts; v: this site. With holonomies of the
+ * connection the flat operator hops two sites, in the gauge i^n of the rows: the difference becomes a sum. */
+static void links_five(const struct ebb_lattice *lattice, double v, const struct ebb_site_rows *r, PetscInt s0,
+                       PetscInt m, struct ebb_sheet *sheet)
+{
+  const struct ebb_rows *rows = &lattice->rows;
+  const struct ebb_prescription *flat = lattice->prescription;
+  const double step = rows->step, over = 1.0 / rows->scale, here = 1.0 / ebb_rows_volume(rows, v);
+  const double d0 = over * ebb_rows_diagonal(rows, v), d1 = 2.0 * over * ebb_rows_offdiagonal(rows, v);
+  const double d2 = 2.0 * over * ebb_rows_second(rows, v);
+  const double y1 = here / ebb_rows_volume(rows, v + step), y2 = here / ebb_rows_volume(rows, v + 2.0 * step);
+  const bool split = flat->split;
+  const double a = split ? 0.0 : here / sqrt(flat->measure(v)), hop = split ? 0.0 : flat->hop(v);
+  const double b = split ? 0.0 : 1.0 / (sqrt(flat->measure(v + 4.0)) * ebb_rows_volume(rows, v + 4.0));
+  const double edge = !split && v <= 4.0 ? flat->edge(v) : 0.0;
+
+  for (PetscInt s = 0; s < m; s++) {
+    const double pr = r->psi[0][s], pi = r->psi[1][s];
+    const double p = pr * pr + pi * pi, one = r->next[0][s] * pr + r->next[1][s] * pi;
+    const double two = r->after[0][s] * pr + r->after[1][s] * pi;
+    const double xr = b * r->after[0][s] + a * pr, xi = b * r->after[1][s] + a * pi;
+
+    sheet->sum[EBB_SUM_THETA][s0 + s] += d0 * p + d1 * one + d2 * two;
+    sheet->sum[EBB_SUM_DENSITY][s0 + s] +=
+        split ? d0 * here * here * p + d1 * y1 * one + d2 * y2 * two : hop * (xr * xr + xi * xi) + edge * a * a * p;
+    sheet->sum[EBB_SUM_SHIFT_RE][s0 + s] += step == 4.0 ? one : split ? two : -two;
   }
 }
 
@@ -155,7 +184,10 @@ void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, 
   diagonal(&at, v, v_max, false, rows, s0, m, sheet);
   diagonal_more(lattice, v, n + 1 == lattice->sites[arm], rows, s0, m, sheet);
   most_probable(v, rows, s0, m, sheet, sheet->sum[EBB_SUMS]);
-  links(lattice, v, rows, s0, m, sheet);
+  if (lattice->rows.band == 2)
+    links_five(lattice, v, rows, s0, m, sheet);
+  else
+    links(lattice, v, rows, s0, m, sheet);
 }
 
 void ebb_kernel_first(const struct ebb_lattice *lattice, const double *const right[2], const double *const left[2],

@@ -62,7 +62,7 @@ static void shift_moments(const struct ebb_constants *c, const struct ebb_lattic
 bool ebb_moment_exists(const struct ebb_lattice *lattice, enum ebb_moment moment)
 {
   const struct ebb_rows *rows = &lattice->rows;
-  const bool grid = lattice->prescription->grid, family = !grid && ebb_rows_nature(rows) == EBB_NATURE_FAMILY;
+  const bool grid = lattice->prescription->grid, family = !grid && ebb_rows_is_family(rows);
 
   switch (moment) {
   case EBB_MOMENT_V_MEAN:
@@ -77,7 +77,7 @@ bool ebb_moment_exists(const struct ebb_lattice *lattice, enum ebb_moment moment
     return rows->clock->root && !family;
   case EBB_MOMENT_HUBBLE_MEAN:
   case EBB_MOMENT_HUBBLE_SPREAD:
-    return rows->volume_power == 1.0;
+    return rows->volume_power == 1.0 && rows->band == 1; /* sin 2b/(2 gamma lambda) is theirs alone */
   case EBB_MOMENT_ARCTAN_V_MEAN:
     return family;
   case EBB_MOMENT_FIELD_MEAN:

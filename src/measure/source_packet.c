@@ -174,7 +174,9 @@ static PetscErrorCode evaluate(struct ebb_source *source, PetscInt m, const doub
   PetscCall(ebb_sheet_allocate(source, m, request, sheet));
   PetscCall(make_table(source, m, phi, &phases));
   for (int arm = 0; arm < 2; arm++) PetscCall(sum_arm(source, arm, &phases, request->v_limit, sheet));
-  if (!source->lattice->prescription->grid) PetscCall(sum_first(source, &phases, sheet));
+  /* five-point elements hold all there is at the first sites */
+  if (!source->lattice->prescription->grid && source->lattice->rows.band == 1)
+    PetscCall(sum_first(source, &phases, sheet));
   PetscCall(ebb_phases_clear(&phases));
   PetscCall(ebb_sheet_finish(source, request, sheet));
   PetscFunctionReturn(0);

@@ -190,7 +190,7 @@ PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double 
   join(rough_side, at_turning, clock0, &rough);
   PetscCheck(t->n == rough.n && t->cyclic == rough.cyclic, PETSC_COMM_SELF, PETSC_ERR_CONV_FAILED,
              "effective turning points: %zu at one tolerance, %zu at another", t->n, rough.n);
-  for (size_t i = 0; i < t->n; i++) t->point[i].clock_error = apart(t->point[i].clock, rough.point[i].clock, 0.0);
+  for (size_t i = 0; i < t->n; i++) t->point[i].clock_spread = apart(t->point[i].clock, rough.point[i].clock, 0.0);
   t->period_error = apart(t->period, rough.period, 0.0);
   if (!t->cyclic) t->period_error = NAN;
   t->begin_error = apart(t->begin, rough.begin, side[1].end_error);
@@ -198,17 +198,35 @@ PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double 
   PetscFunctionReturn(0);
 }
 
-void ebb_effective_bounce(const struct ebb_rows *rows, double p, double p_error, double volume[2], double density[2])
+/* The bounce of momentum p whose v is nearest to near_v; false where there is none. */
+static bool nearest_bounce(const struct ebb_symbol *symbol, double p, double near_v, struct ebb_symbol_turning *bounce)
+{
+  struct ebb_symbol_turning turning[EBB_SYMBOL_TURNINGS_MAX];
+  const size_t n = ebb_symbol_turnings(symbol, p, turning);
+  double least = INFINITY;
+
+  for (size_t i = 0; i < n; i++) {
+    const double off = fabs(log(turning[i].v / near_v));
+
+    if (!turning[i].bounce || !(off < least)) continue;
+    least = off;
+    *bounce = turning[i];
+  }
+  return isfinite(least);
+}
+
+void ebb_effective_bounce(const struct ebb_rows *rows, double p, double p_error, double near_v, double volume[2],
+                          double density[2])
 {
   const struct ebb_symbol symbol = ebb_symbol_make(rows);
   const double near[] = {p, p - p_error, p + p_error}, unit = symbol.newton * symbol.newton;
 
   volume[0] = volume[1] = density[0] = density[1] = NAN;
   for (int i = 0; i < 3; i++) {
-    struct ebb_symbol_turning bounce;
+    struct ebb_symbol_turning bounce = {0};
     double v, rho;
 
-    if (isnan(near[i]) || !ebb_symbol_bounce(&symbol, near[i], &bounce)) continue;
+    if (isnan(near[i]) || !nearest_bounce(&symbol, near[i], near_v, &bounce)) continue;
     v = ebb_symbol_volume(&symbol, bounce.v);
     rho = unit * ebb_symbol_local(&symbol, bounce.v) * ebb_symbol_connection(&symbol, bounce.v, bounce.b);
     if (i == 0) {

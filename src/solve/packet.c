@@ -156,11 +156,15 @@ PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *requ
 static void symbol_range(const struct ebb_rows *rows, double v_low, double v_high, double *low, double *high)
 {
   enum { LOOKS = 64 };
-  const double from = fmax(v_low, rows->sector), ratio = fmax(v_high, from + 4.0) / from;
+  const double from = fmax(v_low, rows->sector), ratio = fmax(v_high, from + rows->step) / from;
 
   for (int i = 0; i <= LOOKS; i++) {
-    const double v = from * pow(ratio, (double)i / LOOKS), u = rows->scale * ebb_rows_potential(rows, v);
-    const double top = 4.0 * rows->scale * ebb_rows_hop(rows, v) / ebb_rows_measure(rows, v);
+    const double v = from * pow(ratio, (double)i / LOOKS);
+    /* two bands: Gershgorin's discs, and positive */
+    const double u = rows->band == 2 ? 0.0 : rows->scale * ebb_rows_potential(rows, v);
+    const double top = rows->band == 2 ? ebb_rows_diagonal(rows, v) + 2.0 * fabs(ebb_rows_offdiagonal(rows, v)) +
+                                             2.0 * fabs(ebb_rows_second(rows, v))
+                                       : 4.0 * rows->scale * ebb_rows_hop(rows, v) / ebb_rows_measure(rows, v);
 
     *low = fmin(*low, rows->clock->root ? fmax(u, 0.0) : u);
     *high = fmax(*high, u + MARGIN * top);

@@ -210,7 +210,9 @@ static PetscErrorCode find_edge(const struct ebb_packet *packet, const struct eb
       break;
     }
   }
-  plan->v_max = exp(edge);
+  /* the waves far out follow one exponential of the classical v = x + k^2/x, x = k exp(kappa phi): near the bounce the
+   * other one counts as well */
+  plan->v_max = exp(edge) + k[packet->n - 1] * k[packet->n - 1] * exp(-edge);
   PetscCall(PetscFree3(turned, tail, plain));
   PetscFunctionReturn(0);
 }

@@ -107,17 +107,6 @@ Test(spectrum_command, needs_to_know_which_eigenvalues)
       {"gravity: {cosmological_constant: -1}\nspectrum: {interval: [1, 0]}\n", "is not above the entry before it"},
       {"gravity: {cosmological_constant: 1, extension: {tau: 0}}\nspectrum: {count: 3}\n",
        "spectrum.count: there is no lowest eigenvalue"},
-      {"gravity: {prescription: mlqc1}\nspectrum: {interval: [-9, 0]}\n",
-       "gravity.extension is missing: the deficiency indices are (1,1)"},
-      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\nspectrum: {count: 3}\n",
-       "spectrum.count: there is no lowest eigenvalue"},
-      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\nspectrum: {interval: [-9, 0], k: [1]}\n",
-       "spectrum.interval asks for eigenvalues below the continuum, spectrum.k for waves in it"},
-      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\n", "spectrum.interval is missing; say where below zero"},
-      {"gravity: {prescription: mlqc1, extension: {delta: 0}}\nspectrum: {interval: [1, 9]}\n",
-       "spectrum.interval begins at 1 G, in the continuum; eigenvalues lie below 0"},
-      {"gravity: {prescription: mlqc2}\nspectrum: {count: 3}\n", "give spectrum.k"},
-      {"gravity: {prescription: mlqc2, curvature: closed}\nspectrum: {count: 3}\n", "no label of extensions is known"},
       {"gravity: {cosmological_constant: -1}\nspectrum: {k: [1]}\n",
        "spectrum.k is for continuous spectra, and this model has a discrete one; give spectrum.count or "
        "spectrum.interval"},
@@ -174,8 +163,6 @@ Test(spectrum_command, worked_models)
       {"inputs/negative_lambda.yaml", 20, 0, 81.507187423872},
       {"inputs/closed_universe.yaml", 5, 0, NAN},
       {"inputs/positive_lambda.yaml", 3, 1, 71.349761918243695998},
-      {"inputs/mlqc1.yaml", 5, 4, -116.0676215728159298},
-      {"inputs/closed_connection.yaml", 20, 0, 361.93201754020130094},
   };
   char *folder = ebb_test_folder_create();
 

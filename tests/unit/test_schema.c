@@ -17,8 +17,10 @@
 /* True where the model is good with `set` on top; message [256]: the first problem. */
 static bool accepts(const struct ebb_setting *row, const char *set, char message[256])
 {
-  const bool refined = row->places & (EBB_ON_FIXED | EBB_ON_REFINED); /* keys of that prescription only */
-  const char *const overrides[] = {set, "gravity.prescription=refined"};
+  /* keys of one prescription only */
+  const bool weighted = row->places & EBB_ON_WEIGHTED,
+             refined = weighted || row->places & (EBB_ON_FIXED | EBB_ON_REFINED);
+  const char *const overrides[] = {set, weighted ? "gravity.prescription=mlqc1" : "gravity.prescription=refined"};
   const unsigned need = refined ? EBB_NEED_MODEL : EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE;
   struct ebb_problems *problems = ebb_problems_create();
   struct ebb_settings settings;

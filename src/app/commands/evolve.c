@@ -42,7 +42,7 @@ static void warn(const struct ebb_evolution *w)
   if (w->run.packet->channel_purity < PURE)
     fprintf(stderr, "ebbturn: warning: the two orientations mix: least |C|^2 of the channel is %.4f, below %.2f\n",
             w->run.packet->channel_purity, PURE);
-  if (ebb_rows_nature(&w->run.rows) == EBB_NATURE_FAMILY)
+  if (ebb_rows_is_family(&w->run.rows))
     fprintf(stderr,
             "ebbturn: warning: every state of this extension falls like 1/v at large volume, so powers of v have no "
             "means:\n  the result holds quantiles and bounded observables, the bounce is taken from the median\n");

@@ -4,6 +4,7 @@
 #include "ebbturn/matter.h"
 #include "ebbturn/operators.h"
 #include "ebbturn/propagator.h"
+#include "ebbturn/relational.h"
 #include "ebbturn/state.h"
 #include "ebbturn/symbol.h"
 
@@ -15,7 +16,8 @@ const struct ebb_command ebb_command_explain = {
     .name = "explain",
     .synopsis = "NAME",
     .summary = "say everything about one entry of a catalogue or one setting",
-    .help = "NAME is a prescription (slqc), a profile (gaussian_momentum), a clock (scalar), a propagator (modes) or "
+    .help = "NAME is a prescription (slqc), a profile (gaussian_momentum), a clock (scalar), a propagator (modes), a "
+            "reading (b) or "
             "the key\n"
             "of a setting (gravity.immirzi). For an entry of a catalogue: formula, source and the settings that "
             "matter; for a setting:\n"
@@ -182,6 +184,20 @@ static void explain_clock(const struct ebb_clock *clock)
   if (clock->ordering) row("", "clock.ordering");
 }
 
+static void explain_reading(const struct ebb_reading_word *word)
+{
+  char instruments[128] = "";
+
+  explain_entry(word->name, word->title, word->formula, word->source);
+  for (int i = 0; ebb_instrument_names[i]; i++)
+    if (word->instruments & (1u << i)) {
+      (void)strncat(instruments, instruments[0] ? ", " : "", sizeof instruments - strlen(instruments) - 1);
+      (void)strncat(instruments, ebb_instrument_names[i], sizeof instruments - strlen(instruments) - 1);
+    }
+  row("instruments", instruments);
+  row("system", word->system ? "may be asked for, given a clock" : "is a clock only");
+}
+
 /* True where the name is one of a catalogue or a setting, and was explained. */
 static bool explain(const char *name)
 {
@@ -190,6 +206,7 @@ static bool explain(const char *name)
   const struct ebb_propagator *propagator = ebb_propagator_find(name);
   const struct ebb_clock *clock = ebb_clock_find(name) ? ebb_clock_find(name) : ebb_clock_select(name, "");
   const struct ebb_setting *setting = ebb_setting_find(name);
+  const struct ebb_reading *reading = ebb_reading_kind_find(name);
 
   if (prescription)
     explain_prescription(prescription);
@@ -201,7 +218,9 @@ static bool explain(const char *name)
     explain_clock(clock);
   else if (setting)
     explain_setting(setting);
-  return prescription || profile || propagator || clock || setting;
+  else if (reading)
+    explain_reading(ebb_reading_word_of(reading));
+  return prescription || profile || propagator || clock || setting || reading;
 }
 
 static int complain(const char *before, const char *word, const char *after, const char *nearest)
@@ -225,6 +244,8 @@ static int complain_of_unknown(const char *name)
   for (size_t i = 0; i < ebb_profiles(); i++) ebb_nearest_try(&nearest, ebb_profile_at(i)->name);
   for (size_t i = 0; i < ebb_propagators(); i++) ebb_nearest_try(&nearest, ebb_propagator_at(i)->name);
   for (size_t i = 0; i < ebb_clocks(); i++) ebb_nearest_try(&nearest, ebb_clock_at(i)->name);
+  for (size_t i = 0; i < ebb_reading_kinds(); i++)
+    ebb_nearest_try(&nearest, ebb_reading_word_of(ebb_reading_kind_at(i))->name);
   for (size_t i = 0; i < ebb_setting_count(); i++) {
     /* a bare last part, `immirzi`, points at its key */
     if (!strcmp(ebb_setting_leaf(ebb_setting_at(i)), name))
@@ -244,7 +265,8 @@ static int run(const struct ebb_invocation *invocation)
     printf("%s\n", prescription->bibtex);
     return EBB_EXIT_OK;
   }
-  if (ebb_setting_find(name) || ebb_profile_find(name) || ebb_propagator_find(name) || ebb_clock_find(name))
+  if (ebb_setting_find(name) || ebb_profile_find(name) || ebb_propagator_find(name) || ebb_clock_find(name) ||
+      ebb_reading_kind_find(name))
     return complain("", name, " has no BibTeX entry; prescriptions have one", NULL);
   return complain_of_unknown(name);
 }

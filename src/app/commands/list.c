@@ -4,6 +4,7 @@
 #include "ebbturn/matter.h"
 #include "ebbturn/operators.h"
 #include "ebbturn/propagator.h"
+#include "ebbturn/relational.h"
 #include "ebbturn/state.h"
 
 #include <string.h>
@@ -47,6 +48,15 @@ static void list_clocks(void)
   for (size_t i = 0; i < ebb_clocks(); i++) printf("  %-20s %s\n", ebb_clock_at(i)->name, ebb_clock_at(i)->title);
 }
 
+static void list_readings(void)
+{
+  for (size_t i = 0; i < ebb_reading_kinds(); i++) {
+    const struct ebb_reading_word *word = ebb_reading_word_of(ebb_reading_kind_at(i));
+
+    printf("  %-20s %s\n", word->name, word->title);
+  }
+}
+
 static void list_commands(void)
 {
   for (size_t i = 0; i < ebb_commands(); i++)
@@ -67,6 +77,7 @@ static const struct {
     {"profiles", "shapes of the physical state", list_profiles},
     {"clocks", "fields whose value serves as clock", list_clocks},
     {"propagators", "ways to evolve a state", list_propagators},
+    {"readings", "what clocks inside the universe read", list_readings},
     {"commands", "what ebbturn does", list_commands},
     {"settings", "keys of a model file", list_settings},
 };

@@ -1,0 +1,67 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L5 (app), private. What `relate` works with: a result's own model set up again, and its states over a window,
+ * from the file where it holds all of them, evolved again where it does not. */
+#ifndef EBBTURN_APP_RELATION_H
+#define EBBTURN_APP_RELATION_H
+
+#include "ebbturn/command.h"
+#include "ebbturn/histories.h"
+#include "ebbturn/readings.h"
+#include "ebbturn/relational.h"
+#include "ebbturn/store.h"
+#include "run.h"
+
+struct ebb_relation {
+  struct ebb_settings settings;
+  struct ebb_readings readings;
+  char *model_text, *readings_text, *settings_text; /* settings_text, model_text: PetscMalloc'ed */
+  struct ebb_store *source;                         /* the result */
+  struct ebb_run run;
+  PetscInt m;
+  double *t;               /* [m]: the window */
+  hsize_t *row;            /* [m]: rows of /state/psi, NULL where states are evolved again */
+  double state_error;      /* relative to the norm */
+  double edge_probability; /* largest P(|v| > 0.9 of the largest one) over the window */
+};
+
+/* Opens the result and reads the readings file; problems are printed. *code: 0, 2 or 4. Collective. */
+PetscErrorCode ebb_relation_create(const struct ebb_invocation *invocation, struct ebb_relation *relation, int *code);
+PetscErrorCode ebb_relation_destroy(struct ebb_relation *relation);
+/* All samples of the window in order, batch by batch. psi [count][local]. */
+PetscErrorCode ebb_relation_stream(struct ebb_relation *relation, const char *progress,
+                                   PetscErrorCode (*take)(void *context, PetscInt first, PetscInt count,
+                                                          const double complex psi[]),
+                                   void *context);
+/* The model that readings share. */
+void ebb_relation_model(const struct ebb_relation *relation, struct ebb_relational_model *model);
+
+/* Groups /relational/<name>, /comparison. */
+PetscErrorCode ebb_relation_put(struct ebb_store *store, const struct ebb_relation *relation,
+                                const struct ebb_relational *relational);
+/* What a second scalar as clock has beside; nothing for other readings. */
+PetscErrorCode ebb_relation_put_field(struct ebb_store *store, const struct ebb_relation *relation, const char *group,
+                                      const struct ebb_reading_settings *settings,
+                                      const struct ebb_reading_result *result);
+/* Group /comparison, one row for the parameter and one for each reading of v; printed as well. */
+PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct ebb_relation *relation,
+                                           const struct ebb_relational *relational);
+/* Group /bounds, for the solvable ordering; *kept: no inequality is violated. */
+PetscErrorCode ebb_relation_put_bounds(struct ebb_store *store, const struct ebb_relation *relation, bool *kept);
+/* The summary on stdout. */
+void ebb_relation_print(const struct ebb_relation *relation, const struct ebb_relational *relational);
+
+/* Histories and the propagator diagnostic, where the readings file asks for them. *code: 0, or 2 with the problem said.
+ * Collective. */
+struct ebb_relation_two_times {
+  struct ebb_history *history; /* [v_stars], NULL where not asked for */
+  struct ebb_two_time two_time;
+};
+PetscErrorCode ebb_relation_two_times(struct ebb_relation *relation, const struct ebb_invocation *invocation,
+                                      struct ebb_relation_two_times *two_times, int *code);
+PetscErrorCode ebb_relation_two_times_put(struct ebb_store *store, const struct ebb_relation *relation,
+                                          const struct ebb_relation_two_times *two_times);
+void ebb_relation_two_times_print(const struct ebb_relation *relation, const struct ebb_relation_two_times *two_times);
+PetscErrorCode ebb_relation_two_times_clear(struct ebb_relation_two_times *two_times);
+
+#endif

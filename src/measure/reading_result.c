@@ -1,0 +1,308 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * From the histograms of a reading to its numbers, their errors, and what is refused. */
+#include "relational_impl.h"
+
+#include <math.h>
+#include <string.h>
+
+static const double NEVER = 1e-12; /* share of the window below which a clock is said never to read this */
+static const double LOBE = 0.1;    /* of the largest I_T(t): what counts as reading it */
+static const double ROUNDING = 1e-13;
+
+static PetscErrorCode result_allocate(struct ebb_engine *e)
+{
+  struct ebb_reading_result *x = &e->result;
+  double **const line[] = {&x->centre,       &x->dwell,        &x->dwell_error,  &x->median,
+                           &x->median_error, &x->mean,         &x->mean_error,   &x->spread,
+                           &x->spread_error, &x->purity,       &x->purity_model, &x->leak,
+                           &x->window_error, &x->clock_spread, &x->curve,        &x->intervals};
+  const PetscInt n = e->n;
+
+  PetscFunctionBegin;
+  x->n = n;
+  x->bins = e->bin_count;
+  x->levels = (PetscInt)e->settings.quantiles;
+  for (size_t i = 0; i < sizeof line / sizeof line[0]; i++) PetscCall(PetscMalloc1(n, line[i]));
+  PetscCall(PetscMalloc1((size_t)n * (size_t)x->bins, &x->probability));
+  PetscCall(PetscMalloc1((size_t)n * (size_t)PetscMax(x->levels, 1), &x->quantile));
+  PetscCall(PetscMalloc1((size_t)n * (size_t)PetscMax(x->levels, 1), &x->quantile_error));
+  PetscCall(PetscMalloc1(x->bins, &x->system_centre));
+  PetscCall(PetscMalloc1(PetscMax(x->levels, 1), &x->level));
+  PetscCall(PetscCalloc1(n, &x->status));
+  PetscCall(PetscCalloc1(n, &x->refused));
+  PetscCall(PetscMalloc1(x->bins, &x->system_dwell));
+  memcpy(x->system_dwell, e->action, (size_t)x->bins * sizeof(double));
+  memcpy(x->system_centre, e->bins->centre, (size_t)x->bins * sizeof(double));
+  memcpy(x->level, e->settings.quantile, (size_t)x->levels * sizeof(double));
+  memcpy(x->centre, e->windows->centre, (size_t)n * sizeof(double));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_engine_result_clear(struct ebb_reading_result *x)
+{
+  double **const line[] = {&x->centre,       &x->dwell,       &x->dwell_error,  &x->median,         &x->median_error,
+                           &x->mean,         &x->mean_error,  &x->spread,       &x->spread_error,   &x->purity,
+                           &x->purity_model, &x->leak,        &x->window_error, &x->clock_spread,   &x->curve,
+                           &x->intervals,    &x->probability, &x->quantile,     &x->quantile_error, &x->system_centre,
+                           &x->level,        &x->system_dwell};
+
+  PetscFunctionBegin;
+  for (size_t i = 0; i < sizeof line / sizeof line[0]; i++) PetscCall(PetscFree(*line[i]));
+  PetscCall(PetscFree(x->status));
+  PetscCall(PetscFree(x->refused));
+  PetscFunctionReturn(0);
+}
+
+/* When the clock reads an outcome: dwell, its window and step errors, spread of t, number of stretches. */
+struct visit {
+  double dwell, window_error, step_error, sigma;
+  PetscInt stretches;
+};
+
+/* I/|dI/dt| at an end of the window, between half a step and the window. */
+static double fading(double end, double inside, double step, double window)
+{
+  const double slope = fabs(end - inside) / step;
+
+  return slope > 0.0 ? fmin(fmax(end / slope, 0.5 * step), window) : window;
+}
+
+static struct visit visit_of(const struct ebb_relational *r, const double seen[])
+{
+  const PetscInt m = r->model.samples;
+  const double step = r->t[1] - r->t[0], window = r->t[m - 1] - r->t[0];
+  struct visit v = {0};
+  double mean = 0.0, square = 0.0, peak = 0.0, coarse = 0.0;
+  bool inside = false;
+
+  for (PetscInt s = 0; s < m; s++) {
+    v.dwell += r->weight[s] * seen[s];
+    mean += r->weight[s] * seen[s] * r->t[s];
+    peak = fmax(peak, seen[s]);
+  }
+  if (!(v.dwell > 0.0)) return v;
+  mean /= v.dwell;
+  for (PetscInt s = 0; s < m; s++) square += r->weight[s] * seen[s] * (r->t[s] - mean) * (r->t[s] - mean);
+  v.sigma = sqrt(square / v.dwell);
+  for (PetscInt s = 0; s < m; s++) {
+    if (seen[s] > LOBE * peak && !inside) v.stretches++;
+    inside = seen[s] > LOBE * peak;
+  }
+  for (PetscInt s = 0; s + 2 < m; s += 2) coarse += step * (seen[s] + seen[s + 2]);
+  if (m % 2 == 0) coarse += 0.5 * step * (seen[m - 2] + seen[m - 1]);
+  v.step_error = fabs(coarse - v.dwell) / v.dwell;
+  v.window_error = (seen[0] * fading(seen[0], seen[1], step, window) +
+                    seen[m - 1] * fading(seen[m - 1], seen[m - 2], step, window)) /
+                   v.dwell;
+  return v;
+}
+
+/* Dwell that grows with the window: the part of W_i^2 at b = 0, where every late state is, over a whole window. */
+static double endless(const struct ebb_relational *r, const struct ebb_engine *e, PetscInt i, double dwell)
+{
+  const double window = r->t[r->model.samples - 1] - r->t[0];
+  const struct ebb_reading_settings *s = &e->settings;
+  double a;
+
+  if (s->instrument != EBB_INSTRUMENT_COSINE_POWER) return 0.0;
+  a = ebb_cosine_power_norm(s->power, s->centres) * pow(cos(e->result.centre[i]), s->power);
+  return a * a * window / dwell;
+}
+
+static PetscErrorCode refuse(struct ebb_reading_result *x, PetscInt i, const char *format, double a, double b)
+{
+  char text[160];
+
+  PetscFunctionBegin;
+  PetscCall(PetscSNPrintf(text, sizeof text, format, a, b));
+  PetscCall(PetscSNPrintf(x->status[i], sizeof x->status[i], "refused: %s", text));
+  x->refused[i] = true;
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode set_status(const struct ebb_relational *r, struct ebb_engine *e, PetscInt i)
+{
+  struct ebb_reading_result *x = &e->result;
+  const double window = r->t[r->model.samples - 1] - r->t[0], tolerance = r->model.tolerance;
+
+  PetscFunctionBegin;
+  PetscCall(PetscStrncpy(x->status[i], "ok", sizeof x->status[i]));
+  if (!(x->dwell[i] > NEVER * window))
+    PetscCall(refuse(x, i, "the clock never reads this in the window: dwell %.2g of %.2g", x->dwell[i], window));
+  else if (e->windows->no_limit[i])
+    PetscCall(refuse(x, i,
+                     "no limit: holds a value that the universe tends to, so the dwell grows with the window (window "
+                     "error %.2g, limit %.2g)",
+                     x->window_error[i], tolerance));
+  else if (endless(r, e, i, x->dwell[i]) > tolerance)
+    PetscCall(refuse(x, i, "no limit: %.2g of the dwell grows with the window (limit %.2g)",
+                     endless(r, e, i, x->dwell[i]), tolerance));
+  else if (!(x->window_error[i] <= tolerance))
+    PetscCall(refuse(x, i, "window error %.2g above window.tolerance %.2g", x->window_error[i], tolerance));
+  PetscFunctionReturn(0);
+}
+
+/* Largest change of a quantile when a share `eps` of the mass moves. */
+static double quantile_error(const struct ebb_bins *b, const double mass[], double level, double value, double eps)
+{
+  const double low = ebb_bins_quantile(b, mass, fmax(level - eps, 0.0));
+  const double high = ebb_bins_quantile(b, mass, fmin(level + eps, 1.0));
+
+  return fmax(fabs(high - value), fabs(value - low)) + ROUNDING * fabs(value);
+}
+
+static void numbers(const struct ebb_relational *r, struct ebb_engine *e, PetscInt i, double eps)
+{
+  struct ebb_reading_result *x = &e->result;
+  const double *mass = e->sum + (size_t)i * (size_t)x->bins, dwell = x->dwell[i];
+  const double reach = fmax(fabs(e->end_mean[0]), fabs(e->end_mean[1]));
+  double inside = 0.0;
+
+  for (PetscInt q = 0; q < x->bins; q++) inside += mass[q];
+  x->mean[i] = e->first[i] / inside;
+  x->spread[i] = sqrt(fmax(e->second[i] / inside - x->mean[i] * x->mean[i], 0.0));
+  x->mean_error[i] = eps * fmax(reach, fabs(x->mean[i])) + ROUNDING * fabs(x->mean[i]);
+  x->spread_error[i] = fmin(eps * fmax(reach * reach, e->second[i] / inside) / fmax(2.0 * x->spread[i], 1e-300),
+                            sqrt(eps) * fmax(reach, fabs(x->mean[i]))) +
+                       ROUNDING * fabs(x->mean[i]);
+  x->median[i] = ebb_bins_quantile(e->bins, mass, 0.5);
+  x->median_error[i] = quantile_error(e->bins, mass, 0.5, x->median[i], eps);
+  for (PetscInt l = 0; l < x->levels; l++) {
+    x->quantile[i * x->levels + l] = ebb_bins_quantile(e->bins, mass, x->level[l]);
+    x->quantile_error[i * x->levels + l] =
+        quantile_error(e->bins, mass, x->level[l], x->quantile[i * x->levels + l], eps);
+  }
+  for (PetscInt q = 0; q < x->bins; q++) x->probability[(size_t)i * (size_t)x->bins + (size_t)q] = mass[q] / dwell;
+  x->leak[i] = e->leaked[i] / dwell;
+  if (x->refused[i]) {
+    x->median[i] = x->median_error[i] = x->mean[i] = x->mean_error[i] = x->spread[i] = x->spread_error[i] = NAN;
+    x->purity[i] = x->purity_model[i] = NAN;
+    for (PetscInt l = 0; l < x->levels; l++)
+      x->quantile[i * x->levels + l] = x->quantile_error[i * x->levels + l] = NAN;
+    for (PetscInt q = 0; q < x->bins; q++) x->probability[(size_t)i * (size_t)x->bins + (size_t)q] = NAN;
+  }
+  (void)r;
+}
+
+/* Residuals that are rounding in every run, and what non-commutativity does. */
+static void identities(const struct ebb_relational *r, struct ebb_engine *e)
+{
+  struct ebb_reading_result *x = &e->result;
+  const double window = r->t[r->model.samples - 1] - r->t[0];
+  const PetscInt groups = e->bins->groups;
+  double dwell = 0.0, deficit = 0.0, distance = 0.0, violation = 0.0;
+
+  x->identity_probability = x->identity_commuting = 0.0;
+  for (PetscInt i = 0; i < x->n; i++) {
+    double inside = e->lost[i];
+
+    for (PetscInt q = 0; q < x->bins; q++) {
+      const double mass = e->sum[(size_t)i * (size_t)x->bins + (size_t)q];
+      const PetscInt g = PetscMin(q / e->bins->per_group, groups - 1);
+
+      inside += mass;
+      e->joint[i * groups + g] += mass;
+    }
+    if (x->dwell[i] > 0.0) /* relative to the whole window: an outcome that is hardly ever read has only rounding */
+      x->identity_probability = fmax(x->identity_probability, fabs(inside - x->dwell[i]) / window);
+    dwell += x->dwell[i];
+    deficit -= e->lost[i];
+  }
+  for (PetscInt q = 0; q < x->bins; q++) {
+    double change = e->action[q];
+
+    for (PetscInt i = 0; i < x->n; i++) change -= e->sum[(size_t)i * (size_t)x->bins + (size_t)q];
+    deficit += change - e->rest_bin[q];
+    distance += fabs(change - e->rest_bin[q]);
+    if (e->direct) x->identity_commuting = fmax(x->identity_commuting, fabs(change - e->rest_bin[q]) / window);
+  }
+  for (PetscInt j = 0; j < x->n * groups; j++) violation += fabs(e->joint[j] - e->reversed[j]);
+  x->identity_dwell = fabs(dwell + e->rest - e->norm) / window;
+  x->identity_action = fabs(deficit + e->action_lost - e->rest_lost) / window;
+  x->norm_drift = fabs(e->norm - window) / window;
+  x->outside = e->rest;
+  x->back_action = 0.5 * distance / window;
+  x->order_violation = e->commuting ? 0.0 : 0.5 * violation / window;
+}
+
+static void resolution(struct ebb_engine *e)
+{
+  const struct ebb_reading_settings *s = &e->settings;
+  struct ebb_reading_result *x = &e->result;
+  double sum = 0.0, square = 0.0, taps = 0.0, width = 0.0;
+
+  x->resolution = x->back_action_spread = NAN;
+  if (s->instrument != EBB_INSTRUMENT_COSINE_POWER) return;
+  for (int j = 0; j < 4 * s->centres; j++) { /* exact: a trigonometric polynomial times a smooth even function */
+    const double y = EBB_PI * ((double)j + 0.5) / (4.0 * s->centres) - 0.5 * EBB_PI, w = pow(cos(y), 2 * s->power);
+
+    sum += w;
+    square += w * y * y;
+  }
+  for (int l = -s->power / 2; l <= s->power / 2; l++) {
+    const double k = exp(2.0 * (lgamma(s->power + 1.0) - lgamma(0.5 * s->power + l + 1.0) -
+                                lgamma(0.5 * s->power - l + 1.0) - s->power * log(2.0)));
+    taps += k;
+    width += k * l * l;
+  }
+  x->resolution = sqrt(square / sum);
+  x->back_action_spread = 4.0 * sqrt(width / taps); /* a step of the lattice is 4 in v */
+}
+
+static PetscErrorCode purities(struct ebb_relational *r, struct ebb_engine *e)
+{
+  struct ebb_reading_result *x = &e->result;
+
+  PetscFunctionBegin;
+  if (!e->clock)
+    for (PetscInt i = 0; i < x->n; i++) x->purity[i] = 1.0;
+  else if (e->cosine)
+    PetscCall(ebb_cosine_purity(r, e, x->purity));
+  else if (e->kept)
+    PetscCall(ebb_engine_purity(r, e, x->purity));
+  else {
+    for (PetscInt i = 0; i < x->n; i++) x->purity[i] = NAN;
+    PetscCall(PetscStrncpy(x->purity_note, "left out: the states of the window do not fit the memory kept for them",
+                           sizeof x->purity_note));
+  }
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
+{
+  struct ebb_reading_result *x = &e->result;
+  const double window = r->t[r->model.samples - 1] - r->t[0];
+  double *share; /* of an outcome's probability that may lie elsewhere */
+
+  PetscFunctionBegin;
+  PetscCall(result_allocate(e));
+  x->commuting = e->commuting;
+  x->binned = e->binned;
+  x->mean_exists = e->settings.instrument != EBB_INSTRUMENT_SHARP || e->commuting;
+  PetscCall(PetscMalloc1(e->n, &share));
+  for (PetscInt i = 0; i < e->n; i++) {
+    struct visit v = {.dwell = r->weight[PetscMin(i, r->model.samples - 1)], .stretches = 1};
+
+    if (e->clock) v = visit_of(r, e->seen + (size_t)i * (size_t)r->model.samples);
+    x->dwell[i] = v.dwell;
+    x->window_error[i] = v.dwell > 0.0 ? v.window_error : NAN;
+    x->dwell_error[i] = v.dwell * (v.window_error + v.step_error + ROUNDING) + 2.0 * r->model.propagation * window;
+    x->clock_spread[i] = r->model.rate * v.sigma;
+    x->intervals[i] = (double)v.stretches;
+    x->purity_model[i] = 1.0 / sqrt(1.0 + 4.0 * v.sigma * v.sigma * r->model.energy_spread * r->model.energy_spread);
+    x->curve[i] = r->model.effective && e->kind->curve && e->settings.clock.function == EBB_FUNCTION_NONE
+                      ? e->kind->curve(&r->model, e->settings.clock.alpha, x->centre[i])
+                      : NAN;
+    share[i] = e->clock ? v.window_error + v.step_error + 2.0 * r->model.propagation * window / fmax(v.dwell, 1e-300)
+                        : 2.0 * r->model.propagation;
+    PetscCall(set_status(r, e, i));
+  }
+  PetscCall(purities(r, e));
+  for (PetscInt i = 0; i < e->n; i++) numbers(r, e, i, fmin(share[i], 1.0));
+  PetscCall(PetscFree(share));
+  identities(r, e);
+  resolution(e);
+  ebb_engine_judge(r, e);
+  PetscFunctionReturn(0);
+}

@@ -1,0 +1,134 @@
+/* SPDX-License-Identifier: BSD-2-Clause
+ *
+ * Layer L4 (measure), private. Observables as spectral representations of the space of states. */
+#ifndef EBBTURN_MEASURE_READING_H
+#define EBBTURN_MEASURE_READING_H
+
+#include "ebbturn/relational.h"
+
+#include <fftw3.h>
+
+/* Vectors are [slices][ring]: the lattice zero-padded to a ring of twice its sites, so that what a reading of b sends
+ * to n <= 0 stays apart from the edge. Ring position r is site r of the lattice where r < sites; positions from `wrap`
+ * on are the negative ones, r - ring. Grids in ln v have no padding. */
+struct ebb_space {
+  const struct ebb_relational_model *model;
+  PetscInt sites, ring, slices, wrap;
+  double *v; /* [ring], signed */
+};
+PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct ebb_space **space);
+PetscErrorCode ebb_space_destroy(struct ebb_space **space);
+/* Position on the integer line: site r (or the negative one it stands for) plus one, n of v = 4n at sector 4. */
+static inline PetscInt ebb_space_n(const struct ebb_space *space, PetscInt r)
+{
+  return (r >= space->wrap ? r - space->ring : r) + 1;
+}
+
+/* An observable in its spectral representation: coefficients [slices][stride] with one value each. */
+struct ebb_representation {
+  const struct ebb_reading *kind;
+  const struct ebb_space *space;
+  PetscInt stride;
+  size_t size;
+  double *value;    /* [size], the observable's function applied */
+  bool keeps_sites; /* coefficient (slice, r) belongs to ring position r */
+  double alpha;
+  enum ebb_function function;
+  fftw_plan there, back; /* along the ring */
+  fftw_plan circle[2];   /* across slices: to points, to momenta */
+  double complex *line;  /* [slices] */
+  double complex *phase; /* [ring]: half a cell of b */
+  double complex *work;
+  double *matrix; /* [sites][sites], row j: eigenvector j */
+  bool extended;
+  bool turned; /* sine transforms in the gauge (-i)^n */
+};
+
+struct ebb_reading {
+  struct ebb_reading_word word;
+  bool parameter; /* the parameter itself: no integral */
+  bool field;     /* needs a further field */
+  int limits;     /* values that the observable tends to at large volume: outcomes that hold one have no finite dwell */
+  double limit[2];
+  /* Fills value, stride, size and what the transforms need. extended: keep what lies off the lattice, as the system
+   * of a b reading must. problem: what does not fit this model. */
+  PetscErrorCode (*create)(struct ebb_representation *rep, bool extended, char problem[], size_t size);
+  PetscErrorCode (*forward)(struct ebb_representation *rep, const double complex in[], double complex out[]);
+  PetscErrorCode (*backward)(struct ebb_representation *rep, const double complex in[], double complex out[]);
+  /* Volume on the effective trajectory at a value of the observable, NAN where there is none. */
+  double (*curve)(const struct ebb_relational_model *model, double alpha, double value);
+};
+
+PetscErrorCode ebb_representation_create(const struct ebb_space *space, const struct ebb_observable_settings *what,
+                                         bool extended, struct ebb_representation **rep, char problem[], size_t size);
+PetscErrorCode ebb_representation_destroy(struct ebb_representation **rep);
+
+/* Amplitude windows W_i of a clock, as lists of the coefficients each of them touches. */
+struct ebb_windows {
+  PetscInt n;
+  double *centre; /* [n] */
+  size_t *start;  /* [n + 1] into index and amplitude */
+  size_t *index;
+  double *amplitude;
+  double *rest;   /* [size]: 1 - sum_i W_i^2, what no outcome sees */
+  bool *no_limit; /* [n]: holds a value that the observable tends to */
+  bool touches;   /* overlapping windows */
+};
+PetscErrorCode ebb_windows_create(const struct ebb_representation *rep, const struct ebb_reading_settings *settings,
+                                  struct ebb_windows **windows, char problem[], size_t size);
+PetscErrorCode ebb_windows_destroy(struct ebb_windows **windows);
+/* A of A cos^power(b - b_i): sum_i W_i^2 = 1 for centres > power. */
+double ebb_central_binomial(int n); /* C(2n, n)/4^n */
+double ebb_cosine_power_norm(int power, int centres);
+
+/* Bins of the system. */
+struct ebb_bins {
+  PetscInt n;
+  double *centre, *low, *high; /* [n] */
+  PetscInt *map;               /* [size]: bin of a coefficient, -1 for none */
+  bool contiguous;             /* cells touch */
+  PetscInt groups, per_group;  /* coarse bins for the order of reading; the last one is open */
+};
+/* value [size] of the coefficients; half_cell: half width of a site's cell, 0: half way to the neighbours; low_most,
+ * high_most: range of LOG and of EQUAL where the settings give none. */
+PetscErrorCode ebb_bins_create(const struct ebb_reading_settings *settings, size_t size, const double value[],
+                               double half_cell, double low_most, double high_most, struct ebb_bins **bins);
+PetscErrorCode ebb_bins_destroy(struct ebb_bins **bins);
+double ebb_bins_quantile(const struct ebb_bins *bins, const double mass[], double level);
+
+/* Shared by entries of the catalogue. */
+PetscErrorCode ebb_reading_allocate(struct ebb_representation *rep, PetscInt stride);
+PetscErrorCode ebb_reading_sites_forward(struct ebb_representation *rep, const double complex in[],
+                                         double complex out[]);
+PetscErrorCode ebb_reading_sites_backward(struct ebb_representation *rep, const double complex in[],
+                                          double complex out[]);
+PetscErrorCode ebb_reading_circle_plans(struct ebb_representation *rep);
+PetscErrorCode ebb_reading_ring_plans(struct ebb_representation *rep);
+PetscErrorCode ebb_reading_ring_forward(struct ebb_representation *rep, const double complex in[],
+                                        double complex out[]);
+PetscErrorCode ebb_reading_ring_backward(struct ebb_representation *rep, const double complex in[],
+                                         double complex out[]);
+PetscErrorCode ebb_reading_circle_forward(struct ebb_representation *rep, const double complex in[],
+                                          double complex out[]);
+PetscErrorCode ebb_reading_circle_backward(struct ebb_representation *rep, const double complex in[],
+                                           double complex out[]);
+/* Eigenvectors of a real symmetric tridiagonal matrix [n] as rows; eigenvalues ascending. */
+PetscErrorCode ebb_reading_tridiagonal(PetscInt n, double d[], double e[], double value[], double rows[]);
+/* Sine transforms of the first kind, in the gauge (-i)^n where rep->turned. */
+PetscErrorCode ebb_reading_sine_plans(struct ebb_representation *rep);
+PetscErrorCode ebb_reading_sine_forward(struct ebb_representation *rep, const double complex in[],
+                                        double complex out[]);
+PetscErrorCode ebb_reading_sine_backward(struct ebb_representation *rep, const double complex in[],
+                                         double complex out[]);
+/* Dense transforms by rep->matrix, with the part off the lattice mirrored onto it where extended. */
+PetscErrorCode ebb_reading_matrix_forward(struct ebb_representation *rep, const double complex in[],
+                                          double complex out[]);
+PetscErrorCode ebb_reading_matrix_backward(struct ebb_representation *rep, const double complex in[],
+                                           double complex out[]);
+PetscErrorCode ebb_reading_matrix_values(struct ebb_representation *rep, const double value[], double mirror);
+bool ebb_reading_volume_lattice(const struct ebb_representation *rep, char problem[], size_t size);
+/* Volume at which the effective constraint 3 pi G v sin^2 b = p^2/v + E holds; E: dust, 0 on a scalar clock, where this
+ * is v_B/sin b. */
+double ebb_reading_volume_at(const struct ebb_relational_model *model, double sin2);
+
+#endif

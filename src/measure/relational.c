@@ -1,0 +1,298 @@
+/* SPDX-License-Identifier: BSD-2-Clause */
+#include "relational_impl.h"
+
+#include <math.h>
+#include <string.h>
+
+static const double KEEP_BYTES = 4e8; /* per process and reading, of states kept for the purity */
+
+static PetscErrorCode prepare_ranks(struct ebb_relational *r)
+{
+  const struct ebb_lattice *l = r->model.lattice;
+  int mine = 2 * (int)(l->end - l->begin);
+
+  PetscFunctionBegin;
+  PetscCallMPI(MPI_Comm_rank(r->model.comm, &r->rank));
+  PetscCallMPI(MPI_Comm_size(r->model.comm, &r->ranks));
+  PetscCall(PetscMalloc2(r->ranks, &r->count, r->ranks, &r->start));
+  PetscCallMPI(MPI_Allgather(&mine, 1, MPI_INT, r->count, 1, MPI_INT, r->model.comm));
+  r->start[0] = 0;
+  for (int i = 1; i < r->ranks; i++) r->start[i] = r->start[i - 1] + r->count[i - 1];
+  PetscFunctionReturn(0);
+}
+
+/* What the moments of the system are taken of: the observable's value, of |v| where the bins are of ln v. */
+static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *e)
+{
+  const struct ebb_representation *s = e->system;
+  const struct ebb_lattice *l = r->model.lattice;
+  const bool volume = !strcmp(s->kind->word.name, "v") && s->function == EBB_FUNCTION_NONE;
+  const double half_cell = volume && !l->prescription->grid ? 0.5 * l->step : 0.0;
+  double low = INFINITY, high = -INFINITY, bytes;
+
+  PetscFunctionBegin;
+  for (size_t c = 0; c < s->size; c++) {
+    if (!isfinite(s->value[c]) || (e->settings.binning == EBB_BINNING_LOG && s->value[c] <= 0.0)) continue;
+    low = fmin(low, s->value[c]);
+    high = fmax(high, s->value[c]);
+  }
+  if (s->kind->word.bounded && s->function == EBB_FUNCTION_NONE) {
+    low = s->kind->word.from;
+    high = s->kind->word.to;
+  }
+  bytes = 8.0 * (double)e->n * (double)r->space->ring;
+  if (volume && e->settings.binning == EBB_BINNING_SITES && bytes > r->model.bytes) {
+    e->binned = true;
+    e->settings.binning = EBB_BINNING_LOG;
+    e->settings.system_bins = (int)fmax(r->model.bytes / (8.0 * (double)e->n), 64.0);
+  }
+  if (e->settings.binning == EBB_BINNING_LOG && volume) { /* the cells of the first and the last site */
+    low = fmax(low - half_cell, 0.5 * low);
+    high += half_cell;
+  } else if (!s->kind->word.bounded) {
+    high += half_cell > 0.0 ? half_cell : 1e-9 * fmax(fabs(high), 1.0);
+    if (half_cell > 0.0) low = fmax(low - half_cell, 0.0);
+  }
+  if (volume && e->clock && e->clock->kind->word.takes_alpha) /* a mixed clock is not folded: v <= 0 is a leak alone */
+    for (PetscInt k = 0; k < r->space->slices; k++)
+      for (PetscInt i = r->space->sites; i < s->stride; i++) e->system->value[k * s->stride + i] = NAN;
+  PetscCall(ebb_bins_create(&e->settings, s->size, s->value, half_cell, low, high, &e->bins));
+  PetscFunctionReturn(0);
+}
+
+/* Coarse bins for the question whether the order of reading matters: two thirds of the effective bounce volume wide
+ * for sites of v, sixteen of them, the last one open; other systems: their own bins, sixteen groups at most. */
+static void prepare_groups(struct ebb_relational *r, struct ebb_engine *e)
+{
+  enum { GROUPS = 16 };
+  const double v_bounce = ebb_reading_volume_at(&r->model, 1.0);
+  struct ebb_bins *b = e->bins;
+
+  b->groups = GROUPS;
+  e->result.order_width = NAN;
+  if (!strcmp(e->system->kind->word.name, "v") && e->settings.binning == EBB_BINNING_SITES &&
+      !r->model.lattice->prescription->grid && r->model.lattice->half) {
+    b->per_group = PetscMax((PetscInt)lround(v_bounce / (1.5 * r->model.lattice->step)), 1);
+    e->result.order_width = r->model.lattice->step * (double)b->per_group;
+  } else {
+    b->per_group = (b->n + GROUPS - 1) / GROUPS;
+    b->groups = (b->n + b->per_group - 1) / b->per_group;
+  }
+}
+
+static PetscErrorCode prepare_parameter(struct ebb_relational *r, struct ebb_engine *e)
+{
+  PetscFunctionBegin;
+  PetscCall(PetscNew(&e->windows));
+  e->windows->n = r->model.samples;
+  PetscCall(PetscMalloc1(e->windows->n, &e->windows->centre));
+  PetscCall(PetscCalloc1(e->windows->n + 1, &e->windows->start));
+  PetscCall(PetscCalloc1(e->windows->n, &e->windows->no_limit));
+  memcpy(e->windows->centre, r->t, (size_t)e->windows->n * sizeof *r->t);
+  PetscFunctionReturn(0);
+}
+
+/* Does this reading mean the parameter itself? */
+static bool is_parameter(const struct ebb_relational *r, const struct ebb_engine *e)
+{
+  return e->kind->parameter && !strcmp(e->kind->word.name, r->model.parameter);
+}
+
+static PetscErrorCode allocate(struct ebb_relational *r, struct ebb_engine *e)
+{
+  const size_t n = (size_t)e->n, m = (size_t)r->model.samples, q = (size_t)e->bins->n, g = (size_t)e->bins->groups;
+  const size_t whole = (size_t)r->space->slices * (size_t)r->space->ring;
+
+  PetscFunctionBegin;
+  e->bin_count = e->bins->n;
+  PetscCall(PetscCalloc2(n * q, &e->sum, q, &e->rest_bin));
+  PetscCall(PetscCalloc7(n, &e->first, n, &e->second, n, &e->leaked, n, &e->lost, q, &e->action, n * g, &e->reversed,
+                         n * g, &e->joint));
+  PetscCall(PetscCalloc1(is_parameter(r, e) ? 1 : n * m, &e->seen));
+  if (e->cosine) PetscFunctionReturn(0);
+  PetscCall(PetscMalloc4(e->clock ? e->clock->size : 1, &e->c, whole, &e->chi, e->system->size, &e->s,
+                         e->clock ? PetscMax(e->clock->size, whole) : whole, &e->masked));
+  if (e->clock && (double)m * (double)e->clock->size * 16.0 <= KEEP_BYTES)
+    PetscCall(PetscMalloc1(m * e->clock->size, &e->kept));
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_reading_settings *settings,
+                                    struct ebb_engine *e, char problem[], size_t size)
+{
+  const struct ebb_reading_settings *s = settings;
+  bool volume;
+
+  PetscFunctionBegin;
+  problem[0] = '\0';
+  e->settings = *settings;
+  e->kind = ebb_reading_kind_find(s->clock.name);
+  volume = !strcmp(s->system.name, "v");
+  PetscCall(ebb_representation_create(r->space, &s->system, true, &e->system, problem, size));
+  if (problem[0]) PetscFunctionReturn(0);
+  if (e->kind->parameter && !is_parameter(r, e) && r->space->slices < 2)
+    PetscCall(PetscSNPrintf(problem, size, "the parameter of this run is %s, and there is no field '%s' beside it",
+                            r->model.parameter, s->clock.name));
+  if (problem[0]) PetscFunctionReturn(0);
+  if (is_parameter(r, e)) {
+    PetscCall(prepare_parameter(r, e));
+    e->commuting = true;
+  } else {
+    PetscCall(ebb_representation_create(r->space, &s->clock, false, &e->clock, problem, size));
+    if (problem[0]) PetscFunctionReturn(0);
+    /* a window of b on a volume binned by v needs no transform of the whole state */
+    if (s->instrument == EBB_INSTRUMENT_COSINE_POWER && volume && s->system.function == EBB_FUNCTION_NONE &&
+        s->clock.function == EBB_FUNCTION_NONE) {
+      e->n = s->centres;
+      PetscCall(ebb_cosine_create(r, e));
+    } else {
+      PetscCall(ebb_windows_create(e->clock, s, &e->windows, problem, size));
+      if (problem[0]) PetscFunctionReturn(0);
+    }
+    e->direct = e->clock->keeps_sites && e->system->keeps_sites && !e->system->circle[0];
+    e->commuting = e->clock->keeps_sites && e->system->keeps_sites;
+  }
+  if (!e->cosine) e->n = e->windows->n;
+  if (!e->bins) PetscCall(prepare_bins(r, e));
+  prepare_groups(r, e);
+  PetscCall(allocate(r, e));
+  if (!e->cosine) r->gathers = true;
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, size_t n,
+                                     const struct ebb_reading_settings reading[], struct ebb_relational **relational,
+                                     size_t *which, char problem[], size_t size)
+{
+  struct ebb_relational *r;
+
+  PetscFunctionBegin;
+  problem[0] = '\0';
+  PetscCall(PetscNew(&r));
+  *relational = r;
+  r->model = *model;
+  PetscCall(PetscMalloc2(model->samples, &r->t, model->samples, &r->weight));
+  for (PetscInt s = 0; s < model->samples; s++) {
+    const double before = s > 0 ? model->t[s] - model->t[s - 1] : 0.0;
+    const double after = s + 1 < model->samples ? model->t[s + 1] - model->t[s] : 0.0;
+
+    r->t[s] = model->t[s];
+    r->weight[s] = 0.5 * (before + after);
+  }
+  r->model.t = r->t;
+  PetscCall(prepare_ranks(r));
+  PetscCall(ebb_space_create(&r->model, &r->space));
+  PetscCall(PetscCalloc1(n, &r->engine));
+  r->n = n;
+  for (size_t i = 0; i < n && !problem[0]; i++) {
+    *which = i;
+    PetscCall(engine_create(r, &reading[i], &r->engine[i], problem, size));
+  }
+  if (r->gathers) PetscCall(PetscCalloc1((size_t)r->space->slices * (size_t)r->space->ring, &r->full));
+  PetscFunctionReturn(0);
+}
+
+/* The whole state of one sample, zero off the lattice. */
+static PetscErrorCode gather(struct ebb_relational *r, const double complex psi[])
+{
+  const struct ebb_lattice *l = r->model.lattice;
+  const size_t local = (size_t)(l->end - l->begin);
+  /* on a grid psi is a density in ln v; l2 amplitudes carry the root of the cell */
+  const double root = l->prescription->grid ? sqrt(l->dx) : 1.0;
+
+  PetscFunctionBegin;
+  for (PetscInt k = 0; k < r->space->slices; k++) {
+    double complex *line = r->full + k * r->space->ring;
+
+    PetscCallMPI(MPI_Allgatherv(psi + (size_t)k * local, r->count[r->rank], MPI_DOUBLE, line, r->count, r->start,
+                                MPI_DOUBLE, r->model.comm));
+    for (PetscInt i = 0; root != 1.0 && i < r->space->sites; i++) line[i] *= root;
+  }
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_relational_add(struct ebb_relational *r, PetscInt first, PetscInt count, const double complex psi[])
+{
+  const size_t local = (size_t)(r->model.lattice->end - r->model.lattice->begin);
+  const size_t one = local * (size_t)r->space->slices;
+
+  PetscFunctionBegin;
+  for (PetscInt s = 0; s < count && r->gathers; s++) {
+    PetscCall(gather(r, psi + (size_t)s * one));
+    for (size_t i = 0; i < r->n; i++)
+      if (!r->engine[i].cosine) PetscCall(ebb_engine_add(r, &r->engine[i], first + s, r->full));
+  }
+  for (size_t i = 0; i < r->n; i++)
+    if (r->engine[i].cosine) PetscCall(ebb_cosine_add(r, &r->engine[i], first, count, psi));
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode add_up(struct ebb_relational *r, size_t n, double *values)
+{
+  enum { PIECE = 1 << 26 };
+
+  PetscFunctionBegin;
+  for (size_t done = 0; done < n; done += PIECE) {
+    const size_t piece = n - done < PIECE ? n - done : PIECE;
+    PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, values + done, (PetscMPIInt)piece, MPI_DOUBLE, MPI_SUM, r->model.comm));
+  }
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_relational_finish(struct ebb_relational *r)
+{
+  PetscFunctionBegin;
+  for (size_t i = 0; i < r->n; i++) {
+    struct ebb_engine *e = &r->engine[i];
+    const size_t n = (size_t)e->n, groups = (size_t)e->bins->groups;
+
+    if (e->cosine) ebb_cosine_transpose(e);
+    PetscCall(add_up(r, n * (size_t)e->bin_count, e->sum));
+    PetscCall(add_up(r, n, e->first));
+    PetscCall(add_up(r, n, e->second));
+    PetscCall(add_up(r, n, e->leaked));
+    PetscCall(add_up(r, n, e->lost));
+    PetscCall(add_up(r, n * groups, e->reversed));
+    if (e->clock) PetscCall(add_up(r, n * (size_t)r->model.samples, e->seen));
+    if (e->cosine) PetscCall(ebb_cosine_finish(r, e));
+    PetscCall(ebb_engine_result(r, e));
+  }
+  PetscFunctionReturn(0);
+}
+
+void ebb_relational_propagation(struct ebb_relational *r, double error) { r->model.propagation = error; }
+
+const struct ebb_reading_result *ebb_relational_result(const struct ebb_relational *r, size_t reading)
+{
+  return &r->engine[reading].result;
+}
+
+PetscErrorCode ebb_relational_destroy(struct ebb_relational **relational)
+{
+  struct ebb_relational *r = *relational;
+
+  PetscFunctionBegin;
+  if (!r) PetscFunctionReturn(0);
+  for (size_t i = 0; i < r->n; i++) {
+    struct ebb_engine *e = &r->engine[i];
+
+    PetscCall(ebb_engine_result_clear(&e->result));
+    PetscCall(ebb_cosine_destroy(&e->cosine));
+    PetscCall(ebb_windows_destroy(&e->windows));
+    PetscCall(ebb_bins_destroy(&e->bins));
+    PetscCall(ebb_representation_destroy(&e->clock));
+    PetscCall(ebb_representation_destroy(&e->system));
+    PetscCall(PetscFree2(e->sum, e->rest_bin));
+    PetscCall(PetscFree(e->seen));
+    PetscCall(PetscFree(e->kept));
+    PetscCall(PetscFree7(e->first, e->second, e->leaked, e->lost, e->action, e->reversed, e->joint));
+    PetscCall(PetscFree4(e->c, e->chi, e->s, e->masked));
+  }
+  PetscCall(PetscFree(r->engine));
+  PetscCall(PetscFree(r->full));
+  PetscCall(PetscFree2(r->count, r->start));
+  PetscCall(PetscFree2(r->t, r->weight));
+  PetscCall(ebb_space_destroy(&r->space));
+  PetscCall(PetscFree(*relational));
+  PetscFunctionReturn(0);
+}
