@@ -20,7 +20,7 @@ with tempfile.TemporaryDirectory() as scratch:
         with open(path, encoding="utf-8") as f:
             text = f.read()
         check(text.startswith("# "), f"{name} opens with a comment")
-        commands = [command for command, key in (("spectrum", "\nspectrum:"), ("evolve", "\nstate:")) if key in text]
+        commands = [command for command, key in (("spectrum", "\nspectrum:"), ("evolve", "\nstate:"), ("sweep", "\nbase:")) if key in text]
         check(commands, f"{name} is for some command")
         for command in commands:
             check(f"ebbturn {command} inputs/{name}" in text.replace("\n# ", " "), f"{name} says how to run '{command}'")

@@ -1,0 +1,117 @@
+#!/usr/bin/env python3
+# SPDX-License-Identifier: BSD-2-Clause
+"""A sweep in a real batch queue: signalled before its limit, requeued, its ranks killed, submitted again, finished. The
+table is compared with that of an uninterrupted sweep, bit for bit: every case has a rank of its own. Program: $EBBTURN. Slurm
+is a private one (scripts/cluster/local-slurm.sh); where it is not installed or cannot run the test says so and is skipped."""
+import os
+import subprocess
+import sys
+import tempfile
+import time
+
+import h5py
+import numpy as np
+from common import PROGRAM, check, finish
+
+CLUSTER = os.path.join(os.path.dirname(os.path.abspath(__file__)), "..", "..", "scripts", "cluster")
+LOCAL, JOB = os.path.join(CLUSTER, "local-slurm.sh"), os.path.join(CLUSTER, "job.sh")
+MODEL = """gravity: {prescription: slqc}
+clock: {kind: scalar, from: -0.5, to: 0.5, samples: 41}
+state: {profile: gaussian_momentum, momentum: 200.0, relative_spread: 0.08}
+output: {keep: [moments, quantiles]}
+"""
+PLAN = """base: model.yaml
+vary:
+  state.momentum: {from: 150, to: 250, count: 30}
+output: {file: table.h5}
+"""
+RECORD = 1300  # a record of the journal is a little shorter; two records a case
+
+
+def slurm(*words):
+    return subprocess.run(words, capture_output=True, text=True, timeout=60, check=False).stdout.strip()
+
+
+def state(job):
+    words = slurm("scontrol", "show", "job", job).split()
+    return next((w.split("=")[1] for w in words if w.startswith("JobState=")), "GONE")
+
+
+def wait_for(condition, seconds=90):
+    deadline = time.monotonic() + seconds
+    while time.monotonic() < deadline:
+        if condition():
+            return True
+        time.sleep(0.1)
+    return False
+
+
+def journal(folder):
+    return sum(os.path.getsize(os.path.join(folder, n)) for n in os.listdir(folder) if "journal" in n)
+
+
+def prepare(folder):
+    os.makedirs(folder)
+    for name, text in (("model.yaml", MODEL), ("plan.yaml", PLAN)):
+        with open(os.path.join(folder, name), "w", encoding="utf-8") as f:
+            f.write(text)
+
+
+def submit(folder):
+    return slurm("sbatch", "--parsable", "--chdir", folder, "--time=10", "--output=job.log", JOB, "sweep", "plan.yaml", "table.h5")
+
+
+def log(folder):
+    try:
+        with open(os.path.join(folder, "job.log"), encoding="utf-8") as f:
+            return f.read()
+    except OSError:
+        return ""
+
+
+def in_the_queue(folder):
+    job = submit(folder)
+    check(job.isdigit(), f"the sweep is submitted as job {job}")
+    check(wait_for(lambda: journal(folder) > 8 * RECORD), f"cases are finished {log(folder)}")
+    slurm("scancel", "--batch", "--signal=USR1", job)  # what Slurm does before the limit
+    check(wait_for(lambda: "back into the queue" in log(folder)), f"at the signal the job goes back into the queue {log(folder)}")
+    check("--resume table.h5" in log(folder), "and the program says how to go on")
+    check(wait_for(lambda: state(job) == "PENDING"), f"the job is pending: {state(job)}")
+    before = journal(folder)
+    slurm("scontrol", "update", f"jobid={job}", "StartTime=now")  # Slurm itself waits two minutes
+    check(wait_for(lambda: journal(folder) > before + 6 * RECORD), f"it goes on {log(folder)}")
+    slurm("scancel", "--signal=KILL", f"{job}.0")
+    check(wait_for(lambda: state(job) in ("FAILED", "COMPLETED", "CANCELLED")), f"killed ranks end the job: {state(job)} {log(folder)}")
+    check(state(job) == "FAILED", "as a failure")
+    job = submit(folder)
+    check(wait_for(lambda: state(job) in ("FAILED", "COMPLETED", "CANCELLED")) and state(job) == "COMPLETED",
+          f"submitted again it is completed: {state(job)} {log(folder)}")
+    check("\r" not in log(folder), "no progress bar in the log")
+
+
+def main():
+    with tempfile.TemporaryDirectory(prefix="ebbslurm-", dir="/tmp") as top:
+        os.chmod(top, 0o755)  # munge asks for it
+        started = subprocess.run([LOCAL, "start", os.path.join(top, "s")], capture_output=True, text=True, timeout=60, check=False)
+        try:
+            if started.returncode:
+                print(f"SKIP  Slurm does not run here: {started.stderr.strip()}")
+                sys.exit(0)
+            os.environ["SLURM_CONF"] = started.stdout.strip().split("=")[1]
+            os.environ["EBBTURN"] = os.path.abspath(PROGRAM)
+            whole, folder = os.path.join(top, "whole"), os.path.join(top, "queue")
+            prepare(whole)
+            prepare(folder)
+            subprocess.run([os.environ["EBBTURN"], "sweep", "plan.yaml"], cwd=whole, check=True, capture_output=True, timeout=200)
+            in_the_queue(folder)
+            with h5py.File(os.path.join(whole, "table.h5")) as a, h5py.File(os.path.join(folder, "table.h5")) as b:
+                same = [k for k in a["sweep"] if a["sweep"][k][()].tobytes() == b["sweep"][k][()].tobytes()]
+                check(len(same) == len(a["sweep"]) == len(b["sweep"]), "the table is that of an uninterrupted sweep, bit for bit")
+                attempts = b["provenance/case_attempts"][()]
+                check(np.all(attempts >= 1) and attempts.sum() <= 30 + 4, f"no finished case ran again: {attempts.sum()} attempts")
+        finally:
+            subprocess.run([LOCAL, "stop", os.path.join(top, "s")], capture_output=True, timeout=60, check=False)
+    finish()
+
+
+main()
