@@ -26,14 +26,16 @@ static bool speaks(void)
 /* The model as it was run: settings with all overrides, as JSON, which is YAML. */
 static PetscErrorCode read_result(const char *path, struct ebb_relation *r, int *code)
 {
-  struct ebb_problems *problems = ebb_problems_create();
+  struct ebb_problems *problems;
   bool has_model, has_settings;
 
   PetscFunctionBegin;
-  PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for a list of problems");
+  /* what can fail on the user's side comes before the list exists */
   PetscCall(ebb_store_open(PETSC_COMM_WORLD, path, &r->source));
   PetscCall(ebb_store_get_text(r->source, "/", "model_text", &r->model_text, &has_model));
   PetscCall(ebb_store_get_text(r->source, "/", "settings_json", &r->settings_text, &has_settings));
+  problems = ebb_problems_create();
+  PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for a list of problems");
   if (!has_model || !has_settings)
     ebb_problems_add(problems, 0, "the result holds no model; 'relate' needs one of 'ebbturn evolve'");
   else
