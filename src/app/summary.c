@@ -71,7 +71,8 @@ void ebb_record_print(const struct ebb_run *run, const struct ebb_record *record
   printf("  error          %s to %.1e relative; largest contribution: %s (%s)\n",
          !run->lattice.prescription->grid && ebb_rows_is_family(&run->rows) ? "bounded observables" : "mean volume",
          record->budget.worst[largest], ebb_contribution_names[largest], ebb_contribution_texts[largest]);
-  printf("  edge           at most %.1e of the probability above 0.9 of the largest v\n",
-         record->budget.edge_probability);
+  if (run->lattice.prescription->grid || !ebb_rows_is_family(&run->rows)) /* there the quantiles' errors say it */
+    printf("  edge           at most %.1e of the probability above 0.9 of the largest v\n",
+           record->budget.edge_probability);
   if (path) printf("  result         '%s'\n", path);
 }
