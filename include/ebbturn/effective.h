@@ -14,7 +14,7 @@ struct ebb_turning_point {
   bool bounce;            /* v is least; false: a recollapse, v is greatest */
   double clock, v, b;     /* b in [0, period of the symbol) */
   double volume, density; /* length^3; 1/G^2, as in struct ebb_effective */
-  double clock_spread;     /* absolute; v, volume and density are exact to rounding */
+  double clock_error;     /* absolute; v, volume and density are exact to rounding */
 };
 
 /* What one orbit does between its ends. */

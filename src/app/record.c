@@ -211,13 +211,13 @@ static PetscErrorCode put_turnings(struct ebb_store *store, const char *unit, co
   if (n == 0) PetscFunctionReturn(0);
   for (PetscInt i = 0; i < n; i++) {
     clock[i] = t->point[i].clock;
-    error[i] = t->point[i].clock_spread;
+    error[i] = t->point[i].clock_error;
     kind[i] = t->point[i].bounce ? 1.0 : 0.0;
   }
   PetscCall(
       ebb_result_line(store, scale, n, clock, unit, "turning points of the effective orbit, of one period", NULL));
   PetscCall(ebb_store_make_scale(store, scale));
-  PetscCall(ebb_result_line(store, "/effective/turning_clock_spread", n, error, unit,
+  PetscCall(ebb_result_line(store, "/effective/turning_clock_error", n, error, unit,
                             "absolute error of the clock value of a turning point", scale));
   PetscCall(ebb_result_line(store, "/effective/turning_bounce", n, kind, "1",
                             "1: a bounce, the volume is least; 0: a recollapse, it is greatest", scale));

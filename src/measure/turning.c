@@ -190,7 +190,7 @@ PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double 
   join(rough_side, at_turning, clock0, &rough);
   PetscCheck(t->n == rough.n && t->cyclic == rough.cyclic, PETSC_COMM_SELF, PETSC_ERR_CONV_FAILED,
              "effective turning points: %zu at one tolerance, %zu at another", t->n, rough.n);
-  for (size_t i = 0; i < t->n; i++) t->point[i].clock_spread = apart(t->point[i].clock, rough.point[i].clock, 0.0);
+  for (size_t i = 0; i < t->n; i++) t->point[i].clock_error = apart(t->point[i].clock, rough.point[i].clock, 0.0);
   t->period_error = apart(t->period, rough.period, 0.0);
   if (!t->cyclic) t->period_error = NAN;
   t->begin_error = apart(t->begin, rough.begin, side[1].end_error);

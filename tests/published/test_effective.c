@@ -213,7 +213,7 @@ EFFECTIVE_TEST(negative_lambda_is_cyclic_with_one_period)
     ebb_test_close_printed(t.period, "0.814649");
     ebb_test_close(t.period, 2.0 * elliptic_k(1.0 / 1.1) / (rows.constants.kappa * sqrt(1.1)),
                    of_error(t.period_error, t.period));
-    ebb_test_close(t.point[1].clock - 3.0, 0.5 * t.period, of_error(t.period_error + t.point[1].clock_spread, 3.0));
+    ebb_test_close(t.point[1].clock - 3.0, 0.5 * t.period, of_error(t.period_error + t.point[1].clock_error, 3.0));
   }
 }
 

@@ -24,7 +24,7 @@ def layout(folder):
         check("out.h5" in f.attrs["model_text"].decode() if isinstance(f.attrs["model_text"], bytes) else True, "model text kept")
         for group in ("moments", "bounce", "effective", "law"):
             for name, item in f[group].items():
-                if not name.endswith("_error") and name not in ("turning_v", "residual"):
+                if not name.endswith("_error") and name not in ("turning_v", "turning_bounce", "residual"):
                     check(name + "_error" in f[group], f"{group}/{name} has an error beside it")
                 check("units" in item.attrs and "long_name" in item.attrs, f"{group}/{name} has units and a long name")
     run("evolve", path, expect=4)  # exists, not overwritten
