@@ -79,6 +79,11 @@ static const struct ebb_setting rows[] = {
     {.key = "gravity.cosmological_constant_over_critical", .letter = "Lambda/Lambda_c", .unit = "1",
      REAL(gravity.cosmological_constant_over_critical), .range = ANY, .input_only = true,
      .sentence = "cosmological constant over 3/(gamma^2 lambda^2), in place of cosmological_constant"},
+    {.key = "gravity.lorentzian_weight", .letter = "omega", .unit = "1", REAL(gravity.lorentzian_weight), .range = ANY,
+     .fallback = "1", .places = EBB_ON_WEIGHTED,
+     .sentence = "weight of the Lorentzian term quantised for itself beside the Euclidean one; every weight has the same "
+                 "classical limit",
+     .source = "Gallegos, Matos, Morales-Tecotl, arXiv:2412.07916 (abstract read; the form of the family is recomputed)"},
     {.key = "gravity.extension.delta", .letter = "delta", .unit = "1", REAL(gravity.extension_delta), .range = ANY,
      .sentence = "which self-adjoint extension, by the phase at infinite volume: psi -> (A/v) cos(beta0 v/2 + delta), "
                  "sin^2(beta0) = Lambda/Lambda_c; modulo pi",
@@ -88,12 +93,6 @@ static const struct ebb_setting rows[] = {
      .sentence = "which self-adjoint extension, by the solution of zero energy it contains: cos(tau) p + sin(tau) q, the "
                  "polynomials of first and second kind (p_0 = 1, q_0 = 0); modulo pi",
      .source = "Akhiezer, The Classical Moment Problem (1965), chapter 4 (from memory)"},
-
-    {.key = "gravity.lorentzian_weight", .letter = "omega", .unit = "1", REAL(gravity.lorentzian_weight), .range = ANY,
-     .fallback = "1", .places = EBB_ON_WEIGHTED,
-     .sentence = "weight of the Lorentzian term quantised for itself beside the Euclidean one; every weight has the same "
-                 "classical limit",
-     .source = "Gallegos, Matos, Morales-Tecotl, arXiv:2412.07916 (abstract read; the form of the family is recomputed)"},
 
     /* clock */
     {.key = "clock.kind", NAME(clock.kind), .fallback = "scalar",

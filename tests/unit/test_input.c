@@ -391,6 +391,10 @@ Test(input, json_is_a_model_with_the_same_settings)
       CLOCK "state: {profile: superposition, components: [{" PACKET "}, {weight: [0.1, 2], " PACKET "}]}\n",
       "gravity: {prescription: wdw}\nlattice: {lnv_min: -2, lnv_max: 12, points: 512}\n" CLOCK "state: {" PACKET
       ", lnv0: 5, branch: both}\n",
+      /* keys of a section after one that stands inside it, and a further field */
+      "gravity: {prescription: mlqc1, lorentzian_weight: 2, extension: {delta: 0.4}}\n" CLOCK STATE,
+      "gravity: {curvature: open, extension: {tau: 0.4}}\n" CLOCK STATE,
+      CLOCK STATE "matter: [{name: chi, kind: scalar, grid: {length: 1, points: 8}, momentum: 3, spread: 2}]\n",
   };
 
   for (size_t i = 0; i < sizeof models / sizeof *models; i++) {
