@@ -52,10 +52,10 @@ PetscErrorCode ebb_basis_create_five(const struct ebb_lattice *lattice, PetscInt
  * where the component itself may underflow. Storage sites^2. */
 PetscErrorCode ebb_basis_create_eigenpairs(const struct ebb_lattice *lattice, struct ebb_basis **basis);
 
-/* The eigenfunctions of a spectrum (copied), k_j = sqrt(z_j)/kappa, or z_j/kappa where states move by exp(i H t). In
- * the limit-circle case the last component stands for the whole tail: it is the tail's amplitude, so that sums over
- * sites are those of the infinite lattice. Storage n sites on every rank. */
-PetscErrorCode ebb_basis_create_levels(const struct ebb_spectrum *spectrum, double kappa, bool root,
+/* The eigenfunctions of a spectrum (its table is taken over), k_j = sqrt(z_j)/kappa, or z_j/kappa where states move by
+ * exp(i H t). In the limit-circle case the last component stands for the whole tail: it is the tail's amplitude, so
+ * that sums over sites are those of the infinite lattice. Storage n sites on every rank. */
+PetscErrorCode ebb_basis_create_levels(struct ebb_spectrum *spectrum, double kappa, bool root,
                                        struct ebb_basis **basis);
 
 /* cos(k x), sin(k x) on the grid in x = ln v, for k_j = 2 pi (j0 + j)/L, j < n; functions 2j (cos) and 2j + 1 (sin),
@@ -64,6 +64,13 @@ PetscErrorCode ebb_basis_create_waves(const struct ebb_lattice *lattice, PetscIn
                                       struct ebb_basis **basis);
 
 PetscErrorCode ebb_basis_destroy(struct ebb_basis **basis);
+/* One more user, who destroys it too; the last one frees it. */
+struct ebb_basis *ebb_basis_share(struct ebb_basis *basis);
+/* Functions first..last alone (levels only, one user). */
+PetscErrorCode ebb_basis_keep(struct ebb_basis *basis, PetscInt first, PetscInt last);
+/* [size] absolute errors of the eigenvalues, NULL where they are exact or their rounding is the budget's affair. */
+const double *ebb_basis_error(const struct ebb_basis *basis);
+const struct ebb_lattice *ebb_basis_lattice(const struct ebb_basis *basis);
 
 PetscInt ebb_basis_size(const struct ebb_basis *basis);
 const double *ebb_basis_k(const struct ebb_basis *basis);                  /* [size] */

@@ -17,8 +17,8 @@ struct ebb_clock {
   const char *title, *formula, *source;
   const char *unit;       /* of the operator */
   const char *clock_unit; /* of the clock's values */
-  bool root;        /* states move by exp(i sqrt(operator) clock); false: by exp(i operator clock) */
-  double growth;    /* the operator grows like v^growth sin^2 b */
+  bool root;              /* states move by exp(i sqrt(operator) clock); false: by exp(i operator clock) */
+  double growth;          /* the operator grows like v^growth sin^2 b */
   /* density of the clock's matter: density_factor p^2 (root) or p, over V^density_power; p: its momentum */
   double density_factor, density_power;
   double (*measure)(const struct ebb_prescription *p, double v); /* B(v) */

@@ -94,6 +94,8 @@ void ebb_source_packet(struct ebb_source *source, const struct ebb_packet *packe
  * request->state is an error. */
 void ebb_source_bundle(struct ebb_source *source, const struct ebb_bundle *bundle, const struct ebb_lattice *lattice,
                        const struct ebb_constants *constants, MPI_Comm comm);
+/* Bytes of the states that it holds at once on a rank of `local` sites, for m samples. */
+double ebb_source_bundle_bytes(const struct ebb_bundle *bundle, PetscInt local, PetscInt m);
 
 /* For stepping propagators: sums over this rank's sites from fields given in ascending local order, with two more
  * values beyond each end (0 where there is no site). field[f]: [local + 4], index 2 is the first local site. Fields:

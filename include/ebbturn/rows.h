@@ -93,6 +93,9 @@ enum ebb_nature {
                                  * eigenvalues without end */
   EBB_NATURE_UNLABELLED /* with Lambda or curvature: no label of extensions is known, only a verdict can be given */
 };
+/* A scalar clock: another massless scalar then shifts the operator by a constant, and Theta_0 is the operator itself.
+ */
+bool ebb_rows_scalar_clock(const struct ebb_rows *rows);
 /* The flat model with a scalar clock and no cosmological constant: a continuum of generalised eigenfunctions. */
 bool ebb_rows_is_flat(const struct ebb_rows *rows);
 /* True where there is anything on the diagonal beside the flux form. */

@@ -83,6 +83,8 @@ struct ebb_state_request {
   const struct ebb_file_state *file; /* [components], or [1] for a plain profile; NULL where no profile is `file` */
   MPI_Comm comm;
   double kappa; /* of the model; 0: constants->kappa */
+  /* The basis of an earlier packet of the same lattice and nodes, to be shared; NULL: one is made. */
+  struct ebb_basis *basis;
   double shift; /* omega^2 = kappa^2 k^2 - shift; modes below drop out */
 };
 

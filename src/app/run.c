@@ -70,6 +70,14 @@ static PetscErrorCode choose_method(struct ebb_run *run, const struct ebb_prescr
   PetscFunctionReturn(0);
 }
 
+double ebb_run_shift(const struct ebb_run *run)
+{
+  const bool numbers =
+      run->method == EBB_METHOD_EIGENPAIRS || run->method == EBB_METHOD_LEVELS; /* k from eigenvalues */
+
+  return numbers ? 0.0 : -run->rows.kappa * run->rows.kappa * run->rows.gap;
+}
+
 bool ebb_run_has_levels(const struct ebb_run *run)
 {
   return run->method == EBB_METHOD_EIGENPAIRS || (!run->lattice.prescription->grid && !ebb_rows_is_flat(&run->rows));
@@ -198,7 +206,7 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
                                        .file = run->file,
                                        .comm = comm,
                                        .kappa = run->rows.kappa,
-                                       .shift = -run->rows.kappa * run->rows.kappa * run->rows.gap};
+                                       .shift = ebb_run_shift(run)};
   if (p->grid) {
     const struct ebb_lattice_settings *l = &settings->lattice;
     PetscCall(ebb_lattice_make_grid(p, l->lnv_min, l->lnv_max, l->points, comm, &run->lattice));
@@ -282,6 +290,14 @@ struct ebb_estimate ebb_run_estimate(const struct ebb_run *run)
   e.memory = local * bytes * (double)e.batch + modes * 8.0 * (12.0 * (double)e.batch + 600.0);
   e.seconds = n / ranks * modes * 12.0 * (double)run->m / GIGAFLOPS;
   if (run->method != EBB_METHOD_EIGENPAIRS && ebb_run_has_levels(run)) e.memory += 16.0 * n * modes;
+  if (run->bundle) {
+    const double slices = (double)run->bundle->n;
+
+    /* beside a scalar clock slices share their functions */
+    if (!ebb_rows_scalar_clock(&run->rows)) e.memory += 16.0 * n * modes * slices;
+    e.memory += ebb_source_bundle_bytes(run->bundle, (PetscInt)local, run->m);
+    e.seconds *= slices;
+  }
   if (run->method == EBB_METHOD_EIGENPAIRS) e.memory += 8.0 * n * n;
   if (run->method == EBB_METHOD_CHEBYSHEV ||
       run->method == EBB_METHOD_KRYLOV) { /* 1.5 v_max products per unit of clock */

@@ -60,6 +60,9 @@ void ebb_run_source(const struct ebb_run *run, bool check, struct ebb_source *so
 /* Are states stored? They are asked for, and there is one field: a file holds no table over sites and a further field.
  */
 bool ebb_run_keeps_states(const struct ebb_run *run);
+/* omega^2 = kappa^2 k^2 - shift of a run without a further field: what a threshold of the waves adds; levels count from
+ * their eigenvalues. */
+double ebb_run_shift(const struct ebb_run *run);
 /* Mean of the clock's momentum. */
 double ebb_run_momentum(const struct ebb_run *run);
 /* Starts the propagator: after it the sources can be evaluated. */

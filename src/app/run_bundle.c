@@ -21,7 +21,7 @@ static PetscErrorCode make_levels(struct maker *maker, const struct ebb_lattice 
   struct ebb_lattice where;
 
   PetscFunctionBegin;
-  if (maker->request.shift == 0.0) rows.p_phi = p;
+  if (!ebb_rows_scalar_clock(&rows)) rows.p_phi = p;
   ebb_run_extension(maker->run, &levels);
   PetscCall(ebb_packet_create_levels(&maker->request, &levels, maker->problem, sizeof maker->problem, &where, packet));
   PetscFunctionReturn(0);
@@ -35,9 +35,7 @@ static PetscErrorCode make(void *context, double p, struct ebb_packet **packet)
       maker->check && run->check_lattice.rows.clock ? &run->check_lattice : &run->lattice;
 
   PetscFunctionBegin;
-  maker->request.shift = run->rows.clock->density_power == 2.0
-                             ? p * p - run->rows.kappa * run->rows.kappa * run->rows.gap
-                             : 0.0; /* a second scalar beside the scalar */
+  maker->request.shift = ebb_run_shift(run) + (ebb_rows_scalar_clock(&run->rows) ? p * p : 0.0);
   maker->problem[0] = '\0';
   if (run->method == EBB_METHOD_EIGENPAIRS)
     PetscCall(ebb_packet_create_eigenpairs(&maker->request, lattice, packet));
@@ -58,6 +56,8 @@ PetscErrorCode ebb_run_create_bundles(struct ebb_run *run, const struct ebb_stat
     struct ebb_bundle **bundle = rule ? &run->check_bundle : &run->bundle;
 
     maker.check = rule == 1;
+    /* another scalar shifts the operator by a constant: every slice has the same functions */
+    if (ebb_rows_scalar_clock(&run->rows)) maker.request.basis = (rule ? run->check : run->packet)->basis;
     PetscCall(ebb_bundle_create(&run->settings->matter, make, &maker, bundle));
     if (*bundle) continue;
     PetscCall(

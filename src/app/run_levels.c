@@ -96,7 +96,7 @@ PetscErrorCode ebb_run_create_levels(struct ebb_run *run, const struct ebb_state
 
   PetscFunctionBegin;
   /* beside a further field its mean momentum chooses the lattice */
-  if (rows.field && rows.clock->density_power != 2.0) rows.p_phi = run->settings->matter.momentum;
+  if (rows.field && !ebb_rows_scalar_clock(&rows)) rows.p_phi = run->settings->matter.momentum;
   ebb_run_extension(run, &levels);
   if (levels.wall && levels.sites == 0)
     PetscCall(place_wall(run, request, &levels));

@@ -130,9 +130,11 @@ bool ebb_rows_has_potential(const struct ebb_rows *rows)
   return rows->s != 0.0 || rows->curvature != EBB_CURVATURE_NONE || (rows->p_phi != 0.0 && rows->clock->kinetic);
 }
 
+bool ebb_rows_scalar_clock(const struct ebb_rows *rows) { return !strcmp(rows->clock->kind, "scalar"); }
+
 bool ebb_rows_is_flat(const struct ebb_rows *rows)
 {
-  return !strcmp(rows->clock->name, "scalar") && !ebb_rows_has_potential(rows);
+  return ebb_rows_scalar_clock(rows) && !ebb_rows_has_potential(rows);
 }
 
 double ebb_rows_volume(const struct ebb_rows *rows, double v)

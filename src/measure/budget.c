@@ -58,6 +58,9 @@ static double tail_of(const struct ebb_lattice *lattice, const struct ebb_sheet 
   return lattice->rows.band == 2 ? fabs(1.0 - sheet->sum[EBB_SUM_NORM][s]) : sheet->sum[EBB_SUM_LAST][s];
 }
 
+static const double LAST_ELEMENTS = 4.0; /* two sites, each with as much off the diagonal as on it */
+static const double CANCELLED = 32.0;    /* roundings of the elements of a row and of its sum */
+
 /* Weight beyond the edge from the last two windows of equal ratio: a tail falling by r per window holds r/(1-r) of the
  * last one; a Gaussian tail holds less. Where the tail hardly falls, SLOW windows of it are charged. */
 static const double SLOW = 20.0;
@@ -254,9 +257,24 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
     error[EBB_MOMENT_VOLUME_MEAN] = c->volume_unit * error[EBB_MOMENT_V_MEAN];
     error[EBB_MOMENT_VOLUME_SPREAD] = c->volume_unit * error[EBB_MOMENT_V_SPREAD];
   }
-  error[EBB_MOMENT_DENSITY_OF_MEANS] =
-      2.0 * moment[EBB_MOMENT_DENSITY_OF_MEANS] *
-      (error[EBB_MOMENT_V_MEAN] / v + error[EBB_MOMENT_MOMENTUM_MEAN] / moment[EBB_MOMENT_MOMENTUM_MEAN]);
+  {
+    const struct ebb_clock *clock = lattice->rows.clock;
+
+    error[EBB_MOMENT_DENSITY_OF_MEANS] =
+        fabs(moment[EBB_MOMENT_DENSITY_OF_MEANS]) *
+        (clock->density_power * error[EBB_MOMENT_VOLUME_MEAN] / moment[EBB_MOMENT_VOLUME_MEAN] +
+         (clock->root ? 2.0 : 1.0) * error[EBB_MOMENT_MOMENTUM_MEAN] / fabs(moment[EBB_MOMENT_MOMENTUM_MEAN]));
+  }
+  if (!lattice->prescription->grid && (lattice->rows.band == 2 || ebb_rows_has_potential(&lattice->rows))) {
+    /* by elements or with a potential, terms of size scale v^growth cancel to what is left of them */
+    const double size = lattice->rows.scale * pow(v * v + dv * dv, 0.5 * lattice->rows.clock->growth);
+
+    error[EBB_MOMENT_THETA_MEAN] += CANCELLED * PETSC_MACHINE_EPSILON * size;
+    if (lattice->rows.band == 2) /* elements of the last sites, whose partners beyond are missing */
+      error[EBB_MOMENT_THETA_MEAN] +=
+          LAST_ELEMENTS * fabs(ebb_rows_diagonal(&lattice->rows, v_max)) * sheet->sum[EBB_SUM_LAST][s];
+    error[EBB_MOMENT_DENSITY_MEAN] += CANCELLED * PETSC_MACHINE_EPSILON * c->newton * c->newton * c->critical_density;
+  }
   /* a^4 weighs large volumes like v^{4/3}, and Theta^{-1/4} weighs the slow modes that live there */
   error[EBB_MOMENT_DRESSED_A4] += moment[EBB_MOMENT_DRESSED_A4] *
                                   (far / v + 4.0 * normalisation +

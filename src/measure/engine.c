@@ -219,7 +219,8 @@ PetscErrorCode ebb_purity_of_rows(PetscInt m, PetscInt length, const double comp
   PetscFunctionBegin;
   PetscCall(PetscCalloc1((size_t)m * (size_t)m, &gram));
   if (m > 0 && length > 0)
-    cblas_zherk(CblasRowMajor, CblasUpper, CblasNoTrans, (int)m, (int)length, 1.0, rows, (int)length, 0.0, gram, (int)m);
+    cblas_zherk(CblasRowMajor, CblasUpper, CblasNoTrans, (int)m, (int)length, 1.0, rows, (int)length, 0.0, gram,
+                (int)m);
   if (comm != MPI_COMM_NULL)
     PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, gram, (PetscMPIInt)(2 * m * m), MPI_DOUBLE, MPI_SUM, comm));
   for (PetscInt a = 0; a < m; a++) {

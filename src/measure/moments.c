@@ -95,7 +95,7 @@ static void densities(const struct ebb_rows *rows, const struct ebb_sheet *sheet
   const double g2 = rows->constants.newton * rows->constants.newton, norm = sheet->sum[EBB_SUM_NORM][s];
   const double unit = pow(rows->volume_unit, -clock->density_power), p = moment[EBB_MOMENT_MOMENTUM_MEAN];
   /* A0 of the flat operator with a scalar clock, whatever the clock is */
-  const double theta_scale = clock->density_power == 2.0 ? rows->scale : rows->constants.theta_scale;
+  const double theta_scale = ebb_rows_scalar_clock(rows) ? rows->scale : rows->constants.theta_scale;
 
   moment[EBB_MOMENT_DENSITY_MEAN] = g2 * 0.5 * theta_scale / (rows->volume_unit * rows->volume_unit) *
                                     (rows->prescription->grid ? 1.0 / rows->scale : 1.0) *

@@ -376,10 +376,3 @@ PetscErrorCode ebb_reading_matrix_backward(struct ebb_representation *rep, const
   arms_backward(rep, dense, in, out);
   return 0;
 }
-
-double ebb_reading_volume_at(const struct ebb_relational_model *model, double sin2)
-{
-  const double a = model->constants->theta_scale * sin2, e = model->dust_energy, p = model->momentum_mean;
-
-  return a > 0.0 ? (e + sqrt(e * e + 4.0 * a * p * p)) / (2.0 * a) : NAN;
-}

@@ -6,12 +6,21 @@
 
 static const double BYTES_MOST = 5e8; /* of states held at once, per rank */
 
+/* States of all slices and of the one at work, of one sample. */
+static double one_sample(const struct ebb_bundle *bundle, PetscInt local)
+{
+  return 16.0 * ((double)bundle->n + 1.0) * (double)local;
+}
+
 /* Samples whose states fit. */
 static PetscInt batch_of(const struct ebb_bundle *bundle, PetscInt local, PetscInt m)
 {
-  const double one = 16.0 * ((double)bundle->n + 1.0) * (double)local;
+  return PetscMax(PetscMin(m, (PetscInt)(BYTES_MOST / PetscMax(one_sample(bundle, local), 1.0))), 1);
+}
 
-  return PetscMax(PetscMin(m, (PetscInt)(BYTES_MOST / PetscMax(one, 1.0))), 1);
+double ebb_source_bundle_bytes(const struct ebb_bundle *bundle, PetscInt local, PetscInt m)
+{
+  return one_sample(bundle, local) * (double)batch_of(bundle, local, m);
 }
 
 /* Adds slice k of samples [s0, s0 + count) to the sheet; its states go to psi [count][n][local]. */

@@ -14,6 +14,7 @@ PetscErrorCode ebb_basis_allocate(const struct ebb_basis_kind *kind, const struc
   b->kind = kind;
   b->lattice = *lattice;
   b->n = n;
+  b->users = 1;
   *basis = b;
   PetscCall(PetscCalloc1(n, &b->k));
   PetscFunctionReturn(0);
@@ -23,12 +24,39 @@ PetscErrorCode ebb_basis_destroy(struct ebb_basis **basis)
 {
   PetscFunctionBegin;
   if (!*basis) PetscFunctionReturn(0);
+  if (--(*basis)->users > 0) {
+    *basis = NULL;
+    PetscFunctionReturn(0);
+  }
   if ((*basis)->data) (*basis)->kind->destroy(*basis);
+  PetscCall(PetscFree((*basis)->error));
   PetscCall(PetscFree((*basis)->info));
   PetscCall(PetscFree((*basis)->k));
   PetscCall(PetscFree(*basis));
   PetscFunctionReturn(0);
 }
+
+struct ebb_basis *ebb_basis_share(struct ebb_basis *basis)
+{
+  basis->users++;
+  return basis;
+}
+
+PetscErrorCode ebb_basis_keep(struct ebb_basis *basis, PetscInt first, PetscInt last)
+{
+  PetscFunctionBegin;
+  PetscCheck(basis->kind->keep && basis->users == 1 && !basis->info, PETSC_COMM_SELF, PETSC_ERR_SUP,
+             "this basis keeps all of its functions");
+  basis->n = last - first + 1;
+  PetscCall(PetscArraymove(basis->k, basis->k + first, basis->n));
+  if (basis->error) PetscCall(PetscArraymove(basis->error, basis->error + first, basis->n));
+  basis->kind->keep(basis, first);
+  PetscFunctionReturn(0);
+}
+
+const double *ebb_basis_error(const struct ebb_basis *basis) { return basis->error; }
+
+const struct ebb_lattice *ebb_basis_lattice(const struct ebb_basis *basis) { return &basis->lattice; }
 
 PetscInt ebb_basis_size(const struct ebb_basis *basis) { return basis->n; }
 

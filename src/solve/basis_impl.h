@@ -11,13 +11,16 @@ struct ebb_basis_kind {
   void (*cursor_next)(struct ebb_cursor *cursor, PetscInt count, double *rows);
   double (*cursor_drift)(const struct ebb_cursor *cursor); /* NULL: always 0 */
   void (*destroy)(struct ebb_basis *basis);                /* frees data */
+  void (*keep)(struct ebb_basis *basis, PetscInt first);   /* functions first.. move to the front, basis->n of them */
 };
 
 struct ebb_basis {
   const struct ebb_basis_kind *kind;
   struct ebb_lattice lattice;
   PetscInt n;
+  int users;                  /* packets that share it */
   double *k;                  /* [n] */
+  double *error;              /* [n] of the eigenvalues, or NULL where they are exact */
   struct ebb_mode_info *info; /* [n] or NULL */
   double match_volume;
   void *data;

@@ -223,7 +223,7 @@ static void modes_destroy(struct ebb_basis *basis)
 }
 
 static const struct ebb_basis_kind modes_kind = {modes_cursor_open, modes_cursor_next, modes_cursor_drift,
-                                                 modes_destroy};
+                                                 modes_destroy, NULL};
 
 /* Half lattice: one solution, flux below the first site = (edge weight) x. */
 static PetscErrorCode normalise_half(struct ebb_basis *basis, PetscInt match)

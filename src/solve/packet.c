@@ -105,7 +105,10 @@ PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, 
       channel[n] = lattice->half ? EBB_CHANNEL_ONLY : pass == 0 ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
     }
   }
-  PetscCall(ebb_basis_create_modes(lattice, n, k, channel, &basis));
+  if (request->basis)
+    basis = ebb_basis_share(request->basis);
+  else
+    PetscCall(ebb_basis_create_modes(lattice, n, k, channel, &basis));
   PetscCall(allocate(basis, request, packet));
   PetscCall(
       ebb_components_coefficients(&components, basis, lattice, channel, w, one, request->comm, c, &(*packet)->lost));
@@ -114,13 +117,30 @@ PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, 
   PetscFunctionReturn(0);
 }
 
-/* Widths of the levels in k, for spectral coefficients. */
+/* Widths of the levels in k, for spectral coefficients: half the distance of the two neighbours. */
 static void cells_of(PetscInt n, const double k[], double cell[])
 {
   for (PetscInt j = 0; j < n; j++) {
     const double below = j > 0 ? k[j - 1] : k[0], above = j + 1 < n ? k[j + 1] : k[j];
 
     cell[j] = sqrt(0.5 * (above - below));
+  }
+}
+
+/* The same where a wall stands in for a continuum: dk/dj by central differences of eighth order (Fornberg, Math. Comp.
+ * 51, 699 (1988), from memory), so that the state does not depend on where the wall stands. Near the ends of the list,
+ * where a packet is a rounding, by two neighbours. */
+static void cells_of_wall(PetscInt n, const double k[], double cell[])
+{
+  enum { REACH = 4 };
+  static const double weight[REACH] = {4.0 / 5.0, -1.0 / 5.0, 4.0 / 105.0, -1.0 / 280.0};
+
+  cells_of(n, k, cell);
+  for (PetscInt j = REACH; j + REACH < n; j++) {
+    double slope = 0.0;
+
+    for (int i = 0; i < REACH; i++) slope += weight[i] * (k[j + i + 1] - k[j - i - 1]);
+    if (slope > 0.0) cell[j] = sqrt(slope);
   }
 }
 
@@ -137,7 +157,10 @@ PetscErrorCode ebb_packet_create_eigenpairs(const struct ebb_state_request *requ
   PetscFunctionBegin;
   *packet = NULL;
   PetscCall(ebb_components_resolve(request, &components));
-  PetscCall(ebb_basis_create_eigenpairs(lattice, &basis));
+  if (request->basis)
+    basis = ebb_basis_share(request->basis);
+  else
+    PetscCall(ebb_basis_create_eigenpairs(lattice, &basis));
   PetscCall(allocate(basis, request, packet));
   n = ebb_basis_size(basis);
   k = ebb_basis_k(basis);
@@ -195,42 +218,6 @@ static void interval_of(const struct ebb_components *components, const struct eb
   }
 }
 
-/* Levels first..last alone. */
-static void levels_cut(struct ebb_spectrum *s, PetscInt first, PetscInt last)
-{
-  const size_t sites = (size_t)ebb_lattice_size(&s->lattice);
-
-  s->n = last - first + 1;
-  memmove(s->eigenvalue, s->eigenvalue + first, (size_t)s->n * sizeof *s->eigenvalue);
-  memmove(s->residual, s->residual + first, (size_t)s->n * sizeof *s->residual);
-  memmove(s->tail, s->tail + first, (size_t)s->n * sizeof *s->tail);
-  memmove(s->error, s->error + first, (size_t)s->n * sizeof *s->error);
-  memmove(s->function, s->function + (size_t)first * sites, (size_t)s->n * sites * sizeof *s->function);
-}
-
-static PetscErrorCode levels_packet(const struct ebb_state_request *request, const struct ebb_components *components,
-                                    const struct ebb_spectrum *spectrum, bool root, struct ebb_packet **packet)
-{
-  struct ebb_basis *basis;
-  double *w, *cell;
-  double complex *c;
-
-  PetscFunctionBegin;
-  PetscCall(ebb_basis_create_levels(spectrum, ebb_state_kappa(request), root, &basis));
-  PetscCall(allocate(basis, request, packet));
-  for (PetscInt j = 0; j < spectrum->n; j++)
-    (*packet)->omega_error =
-        fmax((*packet)->omega_error, root ? 0.5 * spectrum->error[j] / (*packet)->omega[j] : spectrum->error[j]);
-  PetscCall(PetscMalloc3(spectrum->n, &w, spectrum->n, &cell, spectrum->n, &c));
-  for (PetscInt j = 0; j < spectrum->n; j++) w[j] = 1.0;
-  cells_of(spectrum->n, ebb_basis_k(basis), cell);
-  PetscCall(ebb_components_coefficients(components, basis, &spectrum->lattice, NULL, w, cell, request->comm, c,
-                                        &(*packet)->lost));
-  finish(*packet, w, 1.0, c);
-  PetscCall(PetscFree3(w, cell, c));
-  PetscFunctionReturn(0);
-}
-
 /* First and last level whose share is no rounding. */
 static void shares_matter(const struct ebb_packet *packet, PetscInt *first, PetscInt *last)
 {
@@ -241,6 +228,52 @@ static void shares_matter(const struct ebb_packet *packet, PetscInt *first, Pets
   *last = packet->n - 1;
   while (packet->share[*first] < NEGLIGIBLE * peak) (*first)++;
   while (packet->share[*last] < NEGLIGIBLE * peak) (*last)--;
+}
+
+/* The packet without the levels whose share is a rounding. */
+static PetscErrorCode packet_trim(struct ebb_packet *p)
+{
+  PetscInt first, last;
+
+  PetscFunctionBegin;
+  shares_matter(p, &first, &last);
+  if (last - first + 1 == p->n || last - first + 1 < FEWEST_LEVELS) PetscFunctionReturn(0);
+  PetscCall(ebb_basis_keep(p->basis, first, last));
+  p->n = last - first + 1;
+  PetscCall(PetscArraymove(p->amplitude, p->amplitude + first, p->n));
+  PetscCall(PetscArraymove(p->omega, p->omega + first, p->n));
+  PetscCall(PetscArraymove(p->share, p->share + first, p->n));
+  PetscFunctionReturn(0);
+}
+
+static PetscErrorCode levels_packet(const struct ebb_state_request *request, const struct ebb_components *components,
+                                    struct ebb_basis *basis, bool wall, struct ebb_packet **packet)
+{
+  const PetscInt n = ebb_basis_size(basis);
+  double *w, *cell;
+  double complex *c;
+
+  PetscFunctionBegin;
+  PetscCall(allocate(basis, request, packet));
+  PetscCall(PetscMalloc3(n, &w, n, &cell, n, &c));
+  for (PetscInt j = 0; j < n; j++) w[j] = 1.0;
+  (wall ? cells_of_wall : cells_of)(n, ebb_basis_k(basis), cell);
+  PetscCall(ebb_components_coefficients(components, basis, ebb_basis_lattice(basis), NULL, w, cell, request->comm, c,
+                                        &(*packet)->lost));
+  finish(*packet, w, 1.0, c);
+  PetscCall(PetscFree3(w, cell, c));
+  PetscFunctionReturn(0);
+}
+
+/* Largest error of an omega: of sqrt(z - shift), or of z. Levels below the shift carry nothing. */
+static double omega_error(const struct ebb_packet *packet, bool root)
+{
+  const double *error = ebb_basis_error(packet->basis);
+  double worst = 0.0;
+
+  for (PetscInt j = 0; error && j < packet->n; j++)
+    if (packet->amplitude[j] != 0.0) worst = fmax(worst, root ? 0.5 * error[j] / packet->omega[j] : error[j]);
+  return worst;
 }
 
 /* Every level in the interval; an end that falls on a level moves outwards a little. */
@@ -269,32 +302,33 @@ PetscErrorCode ebb_packet_create_levels(const struct ebb_state_request *request,
   const bool root = levels->rows->clock->root;
   struct ebb_components components;
   struct ebb_spectrum *spectrum;
-  PetscInt first, last;
+  struct ebb_basis *basis;
   double low, high;
 
   PetscFunctionBegin;
   *packet = NULL;
   PetscCall(ebb_components_resolve(request, &components));
-  interval_of(&components, levels->rows, &low, &high);
-  PetscCall(levels_find(levels, low, high, request->comm, problem, size, &spectrum));
-  if (problem[0]) PetscFunctionReturn(0);
-  if (spectrum->n < FEWEST_LEVELS) {
-    PetscCall(PetscSNPrintf(problem, size,
-                            "only %" PetscInt_FMT " eigenvalues lie in the packet's range of momenta, %.4g to %.4g: "
-                            "widen state.relative_spread or raise state.momentum",
-                            spectrum->n, root ? sqrt(low) : low, root ? sqrt(high) : high));
+  if (request->basis) {
+    basis = ebb_basis_share(request->basis);
+  } else {
+    interval_of(&components, levels->rows, &low, &high);
+    PetscCall(levels_find(levels, low, high, request->comm, problem, size, &spectrum));
+    if (problem[0]) PetscFunctionReturn(0);
+    if (spectrum->n < FEWEST_LEVELS) {
+      PetscCall(PetscSNPrintf(problem, size,
+                              "only %" PetscInt_FMT " eigenvalues lie in the packet's range of momenta, %.4g to %.4g: "
+                              "widen state.relative_spread or raise state.momentum",
+                              spectrum->n, root ? sqrt(low) : low, root ? sqrt(high) : high));
+      PetscCall(ebb_spectrum_destroy(&spectrum));
+      PetscFunctionReturn(0);
+    }
+    PetscCall(ebb_basis_create_levels(spectrum, ebb_state_kappa(request), root, &basis));
     PetscCall(ebb_spectrum_destroy(&spectrum));
-    PetscFunctionReturn(0);
   }
-  *lattice = spectrum->lattice;
-  PetscCall(levels_packet(request, &components, spectrum, root, packet));
-  shares_matter(*packet, &first, &last);
-  if (last - first + 1 < spectrum->n && last - first + 1 >= FEWEST_LEVELS) {
-    PetscCall(ebb_packet_destroy(packet));
-    levels_cut(spectrum, first, last);
-    PetscCall(levels_packet(request, &components, spectrum, root, packet));
-  }
-  PetscCall(ebb_spectrum_destroy(&spectrum));
+  *lattice = *ebb_basis_lattice(basis);
+  PetscCall(levels_packet(request, &components, basis, levels->wall, packet));
+  if (!request->basis && !(*packet)->clipped) PetscCall(packet_trim(*packet));
+  (*packet)->omega_error = omega_error(*packet, root);
   PetscFunctionReturn(0);
 }
 

@@ -10,23 +10,9 @@
 #include <stdlib.h>
 #include <string.h>
 
-static void write_model(const char *folder, const char *text)
-{
-  char path[1024];
-  FILE *file;
-
-  snprintf(path, sizeof path, "%s/model.yaml", folder);
-  file = fopen(path, "w");
-  cr_assert_not_null(file);
-  fputs(text, file);
-  cr_assert_eq(fclose(file), 0);
-}
-
 Test(five_command, refuses_what_it_cannot_choose)
 {
-  static const struct {
-    const char *text, *says;
-  } rows[] = {
+  static const struct ebb_test_refusal rows[] = {
       {"gravity: {prescription: mlqc1}\nspectrum: {interval: [-9, 0]}\n",
        "gravity.extension is missing: the deficiency indices are (1,1)"},
       {"gravity: {prescription: mlqc1, extension: {delta: 0}}\nspectrum: {count: 3}\n",
@@ -39,18 +25,8 @@ Test(five_command, refuses_what_it_cannot_choose)
       {"gravity: {prescription: mlqc2}\nspectrum: {count: 3}\n", "give spectrum.k"},
       {"gravity: {prescription: mlqc2, curvature: closed}\nspectrum: {count: 3}\n", "no label of extensions is known"},
   };
-  char *folder = ebb_test_folder_create();
 
-  for (size_t i = 0; i < sizeof rows / sizeof *rows; i++) {
-    struct ebb_test_run run;
-
-    write_model(folder, rows[i].text);
-    run = ebb_test_ebbturn(folder, 0, (const char *const[]){"spectrum", "model.yaml", NULL});
-    cr_expect_eq(run.status, 2, "%s: exit %d", rows[i].text, run.status);
-    cr_expect_not_null(strstr(run.err, rows[i].says), "%s", run.err);
-    ebb_test_run_clear(&run);
-  }
-  ebb_test_folder_remove(&folder);
+  ebb_test_refusals("spectrum", sizeof rows / sizeof *rows, rows);
 }
 
 /* The numbers that their first comments promise, and the same eigenvalues and functions from two ranks. */

@@ -11,18 +11,6 @@
 #include <string.h>
 #include <unistd.h>
 
-static void write_model(const char *folder, const char *text)
-{
-  char path[1024];
-  FILE *file;
-
-  snprintf(path, sizeof path, "%s/model.yaml", folder);
-  file = fopen(path, "w");
-  cr_assert_not_null(file);
-  fputs(text, file);
-  cr_assert_eq(fclose(file), 0);
-}
-
 /* Exit 2, one problem with exactly this text, no result. */
 Test(spectrum_command, refuses_what_has_no_list_of_eigenvalues)
 {
@@ -82,7 +70,7 @@ Test(spectrum_command, refuses_what_has_no_list_of_eigenvalues)
     snprintf(text, sizeof text, "%s%s", rows[i].gravity, wanted);
     snprintf(expected, sizeof expected, "ebbturn: error: 1 problem in 'model.yaml'; nothing was computed\n%s",
              rows[i].says);
-    write_model(folder, text);
+    ebb_test_model_write(folder, text);
     run = ebb_test_ebbturn(folder, 0, (const char *const[]){"spectrum", "model.yaml", NULL});
     cr_expect_eq(run.status, 2, "%s: exit %d", rows[i].gravity, run.status);
     cr_expect_str_eq(run.err, expected, "%s", run.err);
@@ -95,9 +83,7 @@ Test(spectrum_command, refuses_what_has_no_list_of_eigenvalues)
 
 Test(spectrum_command, needs_to_know_which_eigenvalues)
 {
-  static const struct {
-    const char *text, *says;
-  } rows[] = {
+  static const struct ebb_test_refusal rows[] = {
       {"gravity: {cosmological_constant: -1}\n",
        "spectrum.count is missing; say how many (count: 10) or where (interval: [a, b])"},
       {"gravity: {cosmological_constant: -1}\nspectrum: {count: 3, interval: [0, 1]}\n",
@@ -124,18 +110,8 @@ Test(spectrum_command, needs_to_know_which_eigenvalues)
       {"spectrum: {k: [0, 1]}\n", "spectrum.k = 0 must be in (0, 10000]"},
       {"spectrum: {k: [1]}\nlattice: {points: 50}\n", "lattice.points asks for a wall"},
   };
-  char *folder = ebb_test_folder_create();
 
-  for (size_t i = 0; i < sizeof rows / sizeof *rows; i++) {
-    struct ebb_test_run run;
-
-    write_model(folder, rows[i].text);
-    run = ebb_test_ebbturn(folder, 0, (const char *const[]){"spectrum", "model.yaml", NULL});
-    cr_expect_eq(run.status, 2, "%s: exit %d", rows[i].text, run.status);
-    cr_expect_not_null(strstr(run.err, rows[i].says), "%s", run.err);
-    ebb_test_run_clear(&run);
-  }
-  ebb_test_folder_remove(&folder);
+  ebb_test_refusals("spectrum", sizeof rows / sizeof *rows, rows);
 }
 
 static void read_line(const char *path, const char *dataset, size_t size, double values[])
@@ -207,7 +183,7 @@ Test(spectrum_command, slices_are_the_same_spectrum)
   for (int i = 0; i < 2; i++) {
     double values[2][16], errors[2][16];
 
-    write_model(folder, models[i]);
+    ebb_test_model_write(folder, models[i]);
     for (int run_no = 0; run_no < 3; run_no++) {
       const int which = run_no > 0;
       struct ebb_test_run run = ebb_test_ebbturn(
@@ -266,7 +242,7 @@ Test(spectrum_command, waves_of_continuous_spectra)
       int rank;
 
       snprintf(text, sizeof text, "gravity: %s\nspectrum: {k: [0.75, 12]}\n", rows[i].gravity);
-      write_model(folder, text);
+      ebb_test_model_write(folder, text);
       run = ebb_test_ebbturn(folder, ranks, (const char *const[]){"spectrum", "model.yaml", "--force", NULL});
       cr_assert_eq(run.status, 0, "%s: exit %d, %s", rows[i].gravity, run.status, run.err);
       cr_expect_not_null(strstr(run.out, "simple, above 0"), "%s", run.out);
@@ -309,7 +285,7 @@ Test(spectrum_command, says_what_kind_of_continuum)
     struct ebb_test_run run;
 
     snprintf(text, sizeof text, "gravity: %s\nspectrum: {k: [0.75]}\nlattice: {volume_max: 1000}\n", rows[i].gravity);
-    write_model(folder, text);
+    ebb_test_model_write(folder, text);
     run = ebb_test_ebbturn(folder, 0, (const char *const[]){"spectrum", "model.yaml", "--force", NULL});
     cr_assert_eq(run.status, 0, "%s: exit %d, %s", rows[i].gravity, run.status, run.err);
     for (int j = 0; j < 2; j++) cr_expect_not_null(strstr(run.out, rows[i].says[j]), "%s", run.out);
@@ -323,7 +299,7 @@ Test(spectrum_command, an_empty_interval_is_a_result_and_a_result_is_not_overwri
   char *folder = ebb_test_folder_create();
   struct ebb_test_run run;
 
-  write_model(folder, "gravity: {cosmological_constant_over_critical: -0.2}\nspectrum: {interval: [1, 2]}\n");
+  ebb_test_model_write(folder, "gravity: {cosmological_constant_over_critical: -0.2}\nspectrum: {interval: [1, 2]}\n");
   run = ebb_test_ebbturn(folder, 0, (const char *const[]){"spectrum", "model.yaml", NULL});
   cr_expect_eq(run.status, 0, "%s", run.err);
   cr_expect_not_null(strstr(run.out, "eigenvalues    0"), "%s", run.out);

@@ -120,3 +120,31 @@ void ebb_test_run_clear(struct ebb_test_run *run)
   free(run->err);
   *run = (struct ebb_test_run){0};
 }
+
+void ebb_test_model_write(const char *folder, const char *text)
+{
+  char path[1024];
+  FILE *file;
+
+  snprintf(path, sizeof path, "%s/model.yaml", folder);
+  file = fopen(path, "w");
+  cr_assert_not_null(file);
+  fputs(text, file);
+  cr_assert_eq(fclose(file), 0);
+}
+
+void ebb_test_refusals(const char *command, size_t n, const struct ebb_test_refusal rows[])
+{
+  char *folder = ebb_test_folder_create();
+
+  for (size_t i = 0; i < n; i++) {
+    struct ebb_test_run run;
+
+    ebb_test_model_write(folder, rows[i].text);
+    run = ebb_test_ebbturn(folder, 0, (const char *const[]){command, "model.yaml", NULL});
+    cr_expect_eq(run.status, 2, "%s: exit %d", rows[i].text, run.status);
+    cr_expect_not_null(strstr(run.err, rows[i].says), "%s", run.err);
+    ebb_test_run_clear(&run);
+  }
+  ebb_test_folder_remove(&folder);
+}

@@ -54,4 +54,12 @@ struct ebb_test_run ebb_test_ebbturn(const char *folder, int ranks, const char *
 struct ebb_test_run ebb_test_case(int ranks, const char *name, const char *const arguments[]);
 void ebb_test_run_clear(struct ebb_test_run *run);
 
+/* FOLDER/model.yaml with this text. */
+void ebb_test_model_write(const char *folder, const char *text);
+/* Models that a command must refuse: exit 2, and `says` on stderr. */
+struct ebb_test_refusal {
+  const char *text, *says;
+};
+void ebb_test_refusals(const char *command, size_t n, const struct ebb_test_refusal rows[]);
+
 #endif

@@ -23,4 +23,14 @@ static inline double ebb_clock_quarter_edge(const struct ebb_prescription *p, do
   return 0.25;
 }
 
+/* The prescription's own hops. */
+static inline double ebb_clock_hop(const struct ebb_prescription *p, double v) { return p->hop(v); }
+static inline double ebb_clock_edge(const struct ebb_prescription *p, double sector) { return p->edge(sector); }
+
+/* A scalar beside dust, p_phi^2/(2 V) in H. */
+static inline double ebb_clock_kinetic(const struct ebb_constants *c, double v)
+{
+  return 0.5 / (c->volume_unit * fabs(v));
+}
+
 #endif

@@ -2,13 +2,8 @@
 #include "clock_parts.h"
 
 static double measure(const struct ebb_prescription *p, double v) { return fabs(v) * p->measure(v); }
-static double hop(const struct ebb_prescription *p, double v) { return p->hop(v); }
-static double edge(const struct ebb_prescription *p, double sector) { return p->edge(sector); }
 static double weight(const struct ebb_prescription *p, double v) { return p->square(v) / fabs(v); }
 static double scale(const struct ebb_constants *c) { return c->theta_scale / (2.0 * c->volume_unit); }
-
-/* p_phi^2/(2 V) */
-static double kinetic(const struct ebb_constants *c, double v) { return 0.5 / (c->volume_unit * fabs(v)); }
 
 const struct ebb_clock ebb_clock_dust_densitised = {
     .name = "dust_densitised",
@@ -23,9 +18,9 @@ const struct ebb_clock ebb_clock_dust_densitised = {
     .density_factor = 1.0,
     .density_power = 1.0,
     .measure = measure,
-    .hop = hop,
-    .edge = edge,
+    .hop = ebb_clock_hop,
+    .edge = ebb_clock_edge,
     .weight = weight,
     .scale = scale,
-    .kinetic = kinetic,
+    .kinetic = ebb_clock_kinetic,
 };

@@ -17,9 +17,6 @@ static double weight(const struct ebb_prescription *p, double v)
 /* cD = 3/(4 gamma lambda) */
 static double scale(const struct ebb_constants *c) { return 3.0 / (4.0 * c->immirzi * c->polymer_scale); }
 
-/* p_phi^2/(2 V) */
-static double kinetic(const struct ebb_constants *c, double v) { return 0.5 / (c->volume_unit * fabs(v)); }
-
 const struct ebb_clock ebb_clock_dust_symmetric_sqrt = {
     .name = "dust_symmetric_sqrt",
     .kind = "dust",
@@ -37,5 +34,5 @@ const struct ebb_clock ebb_clock_dust_symmetric_sqrt = {
     .edge = ebb_clock_quarter_edge,
     .weight = weight,
     .scale = scale,
-    .kinetic = kinetic,
+    .kinetic = ebb_clock_kinetic,
 };

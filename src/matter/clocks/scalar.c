@@ -2,8 +2,6 @@
 #include "clock_parts.h"
 
 static double measure(const struct ebb_prescription *p, double v) { return p->measure(v); }
-static double hop(const struct ebb_prescription *p, double v) { return p->hop(v); }
-static double edge(const struct ebb_prescription *p, double sector) { return p->edge(sector); }
 static double weight(const struct ebb_prescription *p, double v) { return p->square(v); }
 static double scale(const struct ebb_constants *c) { return c->theta_scale; }
 
@@ -28,8 +26,8 @@ const struct ebb_clock ebb_clock_scalar = {
     .density_factor = 0.5,
     .density_power = 2.0,
     .measure = measure,
-    .hop = hop,
-    .edge = edge,
+    .hop = ebb_clock_hop,
+    .edge = ebb_clock_edge,
     .weight = weight,
     .scale = scale,
     .kinetic = kinetic,

@@ -30,8 +30,7 @@ const struct ebb_reading ebb_reading_b = {
     .word = {.name = "b",
              .title = "b = lambda times the connection, conjugate to v: pi contracting, pi/2 bounce, 0 expanding",
              .formula = "<b|psi> = sum_v exp(i v b/2) psi(v) on a ring of twice the sites, half-cell grid",
-             .source = "Gambini, Porto, Torterolo, Pullin, Phys. Rev. D 79, 041501 (2009), arXiv:0809.4235 (abstract "
-                       "read); POVM of b sgn(v), see Lahti, Pellonpaa, quant-ph/0106084 (from memory)",
+             .source = EBB_READING_SOURCE "; POVM of b sgn(v), see Lahti, Pellonpaa, quant-ph/0106084 (from memory)",
              .instruments =
                  (1u << EBB_INSTRUMENT_SHARP) | (1u << EBB_INSTRUMENT_COSINE) | (1u << EBB_INSTRUMENT_COSINE_POWER),
              .system = true,

@@ -28,21 +28,15 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
   const struct ebb_lattice *l = rep->space->model->lattice;
   const PetscInt n = rep->space->sites;
   const int m = (int)n;
-  double *d, *e, *value, *root, *basis, *rows, *half;
+  double *value, *root, *basis, *rows, *half;
 
   (void)extended;
   PetscFunctionBegin;
   if (!ebb_reading_volume_lattice(rep, problem, size)) PetscFunctionReturn(0);
-  PetscCall(PetscMalloc4(n, &d, n, &e, n, &value, n, &root));
+  PetscCall(PetscMalloc2(n, &value, n, &root));
   PetscCall(PetscMalloc1((size_t)n * (size_t)n, &rep->matrix));
   PetscCall(PetscMalloc3((size_t)n * (size_t)n, &basis, (size_t)n * (size_t)n, &rows, (size_t)n * (size_t)n, &half));
-  for (PetscInt i = 0; i < n; i++) {
-    const double v = ebb_lattice_v(l, i);
-
-    d[i] = ebb_prescription_diagonal(l->prescription, l->half, l->sector, v) / (v * v);
-    e[i] = i + 1 < n ? ebb_prescription_offdiagonal(l->prescription, v) / (v * (v + 4.0)) : 0.0;
-  }
-  PetscCall(ebb_reading_tridiagonal(n, d, e, value, rows));
+  PetscCall(ebb_reading_density_rows(l, n, value, rows));
   PetscCall(roots(l, n, root, basis));
   for (PetscInt j = 0; j < n; j++)
     for (PetscInt i = 0; i < n; i++) rows[j * n + i] /= ebb_lattice_v(l, i) * sqrt(fmax(value[j], 1e-300));
@@ -53,22 +47,15 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
   cblas_dgemm(CblasRowMajor, CblasNoTrans, CblasNoTrans, m, m, m, 1.0, half, m, basis, m, 0.0, rep->matrix, m);
   PetscCall(ebb_reading_matrix_values(rep, value, 1.0));
   PetscCall(PetscFree3(basis, rows, half));
-  PetscCall(PetscFree4(d, e, value, root));
+  PetscCall(PetscFree2(value, root));
   PetscFunctionReturn(0);
-}
-
-static double curve(const struct ebb_relational_model *model, double alpha, double value)
-{
-  (void)alpha;
-  return ebb_reading_volume_at(model, value);
 }
 
 const struct ebb_reading ebb_reading_density_sandwich = {
     .word = {.name = "density_sandwich",
              .title = "matter density over the critical one, volume between square roots of Theta",
              .formula = "Theta^(1/2) v^-2 Theta^(1/2)/(3 pi G): spectrum of 'density', other projectors",
-             .source =
-                 "Gambini, Porto, Torterolo, Pullin, Phys. Rev. D 79, 041501 (2009), arXiv:0809.4235 (abstract read)",
+             .source = EBB_READING_SOURCE,
              .instruments = (1u << EBB_INSTRUMENT_SHARP) | (1u << EBB_INSTRUMENT_COSINE),
              .system = true,
              .bounded = true,
@@ -79,5 +66,5 @@ const struct ebb_reading ebb_reading_density_sandwich = {
     .create = create,
     .forward = ebb_reading_matrix_forward,
     .backward = ebb_reading_matrix_backward,
-    .curve = curve,
+    .curve = ebb_reading_sin2_curve,
 };

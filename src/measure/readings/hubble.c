@@ -35,8 +35,7 @@ const struct ebb_reading ebb_reading_hubble = {
     .word = {.name = "hubble",
              .title = "Hubble rate [1/length]",
              .formula = "sin 2b/(2 gamma lambda), sin 2b = (S - S^+)/2i; sine transform in the gauge (-i)^n",
-             .source =
-                 "Gambini, Porto, Torterolo, Pullin, Phys. Rev. D 79, 041501 (2009), arXiv:0809.4235 (abstract read)",
+             .source = EBB_READING_SOURCE,
              .instruments = (1u << EBB_INSTRUMENT_SHARP) | (1u << EBB_INSTRUMENT_COSINE),
              .system = true},
     .limits = 1,

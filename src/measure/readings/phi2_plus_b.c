@@ -61,8 +61,7 @@ const struct ebb_reading ebb_reading_phi2_plus_b = {
     .word = {.name = "phi2_plus_b",
              .title = "phi2 + alpha (pi/2 - b): a clock that does not commute with v",
              .formula = "product grid of phi2 and b; alpha -> 0 is phi2",
-             .source =
-                 "Gambini, Porto, Torterolo, Pullin, Phys. Rev. D 79, 041501 (2009), arXiv:0809.4235 (abstract read)",
+             .source = EBB_READING_SOURCE,
              .instruments = (1u << EBB_INSTRUMENT_SHARP) | (1u << EBB_INSTRUMENT_COSINE),
              .takes_alpha = true},
     .field = true,

@@ -97,6 +97,16 @@ PetscErrorCode ebb_bins_destroy(struct ebb_bins **bins);
 double ebb_bins_quantile(const struct ebb_bins *bins, const double mass[], double level);
 
 /* Shared by entries of the catalogue. */
+#define EBB_READING_SOURCE                                                                                             \
+  "Gambini, Porto, Torterolo, Pullin, Phys. Rev. D 79, 041501 (2009), arXiv:0809.4235 (abstract read)"
+/* An observable that is diagonal on the sites, value(|v|). */
+PetscErrorCode ebb_reading_sites_create(struct ebb_representation *rep, bool extended, double (*value)(double v));
+/* A further field on its circle. */
+PetscErrorCode ebb_reading_circle_create(struct ebb_representation *rep, bool extended, char problem[], size_t size);
+/* v^-1 Theta v^-1/(3 pi G) on the walled lattice: rows of its eigenvectors [n][n] and eigenvalues [n], ascending. */
+PetscErrorCode ebb_reading_density_rows(const struct ebb_lattice *lattice, PetscInt n, double value[], double rows[]);
+/* Volume where the effective constraint holds at sin^2 b = value. */
+double ebb_reading_sin2_curve(const struct ebb_relational_model *model, double alpha, double value);
 PetscErrorCode ebb_reading_allocate(struct ebb_representation *rep, PetscInt stride);
 PetscErrorCode ebb_reading_sites_forward(struct ebb_representation *rep, const double complex in[],
                                          double complex out[]);

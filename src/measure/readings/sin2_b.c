@@ -27,18 +27,11 @@ static PetscErrorCode create(struct ebb_representation *rep, bool extended, char
   PetscFunctionReturn(0);
 }
 
-static double curve(const struct ebb_relational_model *model, double alpha, double value)
-{
-  (void)alpha;
-  return ebb_reading_volume_at(model, value);
-}
-
 const struct ebb_reading ebb_reading_sin2_b = {
     .word = {.name = "sin2_b",
              .title = "sin^2 b, the gravitational density over the critical one",
              .formula = "(2 - S - S^+)/4 with the shift S by one site; sine transform of the first kind",
-             .source =
-                 "Gambini, Porto, Torterolo, Pullin, Phys. Rev. D 79, 041501 (2009), arXiv:0809.4235 (abstract read)",
+             .source = EBB_READING_SOURCE,
              .instruments = (1u << EBB_INSTRUMENT_SHARP) | (1u << EBB_INSTRUMENT_COSINE),
              .system = true,
              .bounded = true,
@@ -49,5 +42,5 @@ const struct ebb_reading ebb_reading_sin2_b = {
     .create = create,
     .forward = ebb_reading_sine_forward,
     .backward = ebb_reading_sine_backward,
-    .curve = curve,
+    .curve = ebb_reading_sin2_curve,
 };
