@@ -14,17 +14,14 @@
  * On both arms |v| = first + step n and the operator reads alike in |v|; the crossing link joins the two first sites.
  */
 struct ebb_lattice {
-  struct ebb_rows rows; /* the model; on a grid in ln v only prescription and constants count */
-  const struct ebb_prescription *prescription;
-  double sector;
-  bool half;           /* one arm */
-  double step;         /* between neighbours in v: 4, or 2 */
-  double first[2];     /* |v| of each arm's first site */
-  PetscInt sites[2];   /* per arm */
-  double cross;        /* C of the crossing link (0 on half lattices) */
-  double edge;         /* C below the first site kept in its diagonal (half lattices only) */
-  double lnv_min, dx;  /* grid in ln v (prescription->grid): v_i = exp(lnv_min + i dx), i < sites[0] */
-  PetscInt begin, end; /* this rank's global indices [begin, end) */
+  struct ebb_rows rows; /* the model: prescription, sector, step between neighbours in v, half (one arm); on a grid in
+                         * ln v only prescription and constants count */
+  double first[2];      /* |v| of each arm's first site */
+  PetscInt sites[2];    /* per arm */
+  double cross;         /* C of the crossing link (0 on half lattices) */
+  double edge;          /* C below the first site kept in its diagonal (half lattices only) */
+  double lnv_min, dx;   /* grid in ln v (prescription->grid): v_i = exp(lnv_min + i dx), i < sites[0] */
+  PetscInt begin, end;  /* this rank's global indices [begin, end) */
 };
 
 /* The sites of a model, `sites` per arm. Errors: a grid prescription, a sector out of range, fewer than two sites. */

@@ -253,7 +253,7 @@ static PetscErrorCode put_effective(struct ebb_store *store, const char *unit, c
 static PetscErrorCode put_law(struct ebb_store *store, const struct ebb_run *run, const struct ebb_law *law)
 {
   static const char g[] = "/law";
-  const bool exact = run->lattice.prescription->exact_law && run->lattice.half;
+  const bool exact = run->lattice.rows.prescription->exact_law && run->lattice.rows.half;
 
   PetscFunctionBegin;
   PetscCall(put_value(store, g, "v_plus", law->v_plus, "1", "V+ of <|v|> = V+ exp(kappa phi) + V- exp(-kappa phi)"));

@@ -342,7 +342,8 @@ void ebb_relation_model(const struct ebb_relation *r, struct ebb_relational_mode
       .momentum_mean = dust ? 0.0 : r->run.packet->momentum_mean,
       .dust_energy = dust ? 2.0 * r->run.constants.volume_unit * r->run.packet->momentum_mean : 0.0,
       .effective = r->run.lattice.rows.band <= 1 && r->run.rows.curvature == EBB_CURVATURE_NONE &&
-                   r->run.rows.s == 0.0 && r->run.rows.volume_power == 1.0 && !r->run.lattice.prescription->continuum,
+                   r->run.rows.s == 0.0 && r->run.rows.volume_power == 1.0 &&
+                   !r->run.lattice.rows.prescription->continuum,
       .rate = dust ? r->run.constants.theta_scale / r->run.constants.volume_unit : r->run.constants.kappa,
       .energy_spread = r->run.packet->momentum_spread,
       .samples = r->m,

@@ -54,7 +54,7 @@ PetscErrorCode ebb_relation_put_bounds(struct ebb_store *store, const struct ebb
 
   PetscFunctionBegin;
   *kept = true;
-  if (r->run.bundle || r->run.lattice.prescription->grid || !r->run.lattice.prescription->exact_law ||
+  if (r->run.bundle || r->run.lattice.rows.prescription->grid || !r->run.lattice.rows.prescription->exact_law ||
       !ebb_rows_is_flat(&r->run.rows))
     PetscFunctionReturn(0);
   recall = ebb_recall_of_packet(r->run.packet, &r->run.constants);

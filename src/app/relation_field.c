@@ -93,7 +93,7 @@ PetscErrorCode ebb_relation_put_field(struct ebb_store *store, const struct ebb_
     PetscFunctionReturn(0);
   PetscCall(put_means(store, group, r));
   if (s->instrument != EBB_INSTRUMENT_SITES || strcmp(s->system.name, "v") != 0 || s->binning != EBB_BINNING_SITES ||
-      !l->half || x->binned)
+      !l->rows.half || x->binned)
     PetscFunctionReturn(0);
   PetscCall(PetscMalloc4(x->n, &which, x->n, &value, x->n, &one, x->n, &two));
   for (PetscInt i = 0; i < x->n; i++) {

@@ -102,7 +102,7 @@ PetscErrorCode ebb_result_number(struct ebb_store *store, const char *path, doub
 
 static double volume_of(const struct ebb_lattice *l, const struct ebb_constants *constants, double v)
 {
-  if (l->prescription->scheme == EBB_SCHEME_VOLUME) return constants->volume_unit * v;
+  if (l->rows.prescription->scheme == EBB_SCHEME_VOLUME) return constants->volume_unit * v;
   return l->rows.volume_unit * pow(v, l->rows.volume_power);
 }
 
@@ -110,12 +110,13 @@ PetscErrorCode ebb_result_lattice(struct ebb_store *store, const struct ebb_latt
                                   const struct ebb_constants *constants)
 {
   const hsize_t n = (hsize_t)ebb_lattice_size(l), start = (hsize_t)l->begin, count = (hsize_t)(l->end - l->begin);
-  const bool grid = l->prescription->grid;
+  const bool grid = l->rows.prescription->grid;
   static const char *const path[] = {"/lattice/v", "/lattice/volume", "/lattice/weight"};
   const char *const units[] = {"1", "length^3", "1"};
   const char *const names[] = {"volume label v of a site",
-                               l->prescription->scheme == EBB_SCHEME_VOLUME ? "physical volume 2 pi gamma lambda G |v|"
-                                                                            : "physical volume, a power of the label",
+                               l->rows.prescription->scheme == EBB_SCHEME_VOLUME
+                                   ? "physical volume 2 pi gamma lambda G |v|"
+                                   : "physical volume, a power of the label",
                                grid ? "cell weight dx, x = ln v: probability/v times weight sums to 1"
                                     : "cell weight: probability/v times weight sums to 1"};
   double *values;

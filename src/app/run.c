@@ -80,7 +80,8 @@ double ebb_run_shift(const struct ebb_run *run)
 
 bool ebb_run_has_levels(const struct ebb_run *run)
 {
-  return run->method == EBB_METHOD_EIGENPAIRS || (!run->lattice.prescription->grid && !ebb_rows_is_flat(&run->rows));
+  return run->method == EBB_METHOD_EIGENPAIRS ||
+         (!run->lattice.rows.prescription->grid && !ebb_rows_is_flat(&run->rows));
 }
 
 static bool unbounded_start(const struct ebb_state_settings *s) { return isinf(s->v0); }

@@ -83,7 +83,7 @@ void ebb_run_source(const struct ebb_run *run, bool check, struct ebb_source *so
   else
     ebb_source_packet(source, check ? run->check : run->packet, lattice, &run->constants, run->comm);
   if (run->rows.field) source->field_momentum = run->settings->matter.momentum;
-  if (!run->lattice.prescription->grid && ebb_rows_is_family(&run->rows))
+  if (!run->lattice.rows.prescription->grid && ebb_rows_is_family(&run->rows))
     source->bounded_scale = pow(ebb_run_momentum(run) / sqrt(run->rows.scale), 2.0 / run->rows.clock->growth);
 }
 

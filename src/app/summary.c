@@ -44,7 +44,7 @@ static void print_beyond(const struct ebb_run *run)
   const struct ebb_gravity_settings *g = &run->settings->gravity;
   const struct ebb_rows *rows = &run->rows;
 
-  if (run->lattice.prescription->grid || ebb_rows_is_flat(rows)) return;
+  if (run->lattice.rows.prescription->grid || ebb_rows_is_flat(rows)) return;
   printf("                 clock %s, curvature %s, Lambda %.6g (%.4g of the critical one)", rows->clock->name,
          g->curvature, g->cosmological_constant, rows->s);
   if (!isnan(g->extension_delta)) printf(", extension delta = %g", g->extension_delta);
@@ -69,9 +69,10 @@ void ebb_record_print(const struct ebb_run *run, const struct ebb_record *record
          run->m);
   print_bounce(run, record);
   printf("  error          %s to %.1e relative; largest contribution: %s (%s)\n",
-         !run->lattice.prescription->grid && ebb_rows_is_family(&run->rows) ? "bounded observables" : "mean volume",
+         !run->lattice.rows.prescription->grid && ebb_rows_is_family(&run->rows) ? "bounded observables"
+                                                                                 : "mean volume",
          record->budget.worst[largest], ebb_contribution_names[largest], ebb_contribution_texts[largest]);
-  if (run->lattice.prescription->grid || !ebb_rows_is_family(&run->rows)) /* there the quantiles' errors say it */
+  if (run->lattice.rows.prescription->grid || !ebb_rows_is_family(&run->rows)) /* there the quantiles' errors say it */
     printf("  edge           at most %.1e of the probability above 0.9 of the largest v\n",
            record->budget.edge_probability);
   if (path) printf("  result         '%s'\n", path);

@@ -13,7 +13,7 @@ enum { VERIFIED = 5 };            /* samples on which the independent rule is ev
 
 bool ebb_run_mean_exists(const struct ebb_run *run)
 {
-  if (!run->lattice.prescription->grid && ebb_rows_is_family(&run->rows)) return false;
+  if (!run->lattice.rows.prescription->grid && ebb_rows_is_family(&run->rows)) return false;
   return run->packet->low_weight < LOW_WEIGHT || ebb_run_has_levels(run);
 }
 
@@ -101,7 +101,7 @@ static PetscErrorCode follow_effective(struct ebb_record *r, const struct ebb_ru
 
 PetscErrorCode ebb_record_conclude(struct ebb_record *r, struct ebb_run *run)
 {
-  const struct ebb_prescription *p = run->lattice.prescription;
+  const struct ebb_prescription *p = run->lattice.rows.prescription;
   const bool family = !p->grid && ebb_rows_is_family(&run->rows);
   const struct ebb_samples samples = {
       run->m,   run->phi,  r->moment[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN],

@@ -43,7 +43,7 @@ static PetscErrorCode reach(struct ebb_source *source, PetscInt m, const double 
 
   PetscFunctionBegin;
   *limit = 0.0;
-  if (lattice->prescription->grid) PetscFunctionReturn(0);
+  if (lattice->rows.prescription->grid) PetscFunctionReturn(0);
   PetscCall(source->evaluate(source, m, phi, &request, &sheet));
   for (PetscInt s = 0; s < m; s++)
     for (PetscInt i = 0; i < sheet.local; i++) {
@@ -259,7 +259,7 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
     PetscCall(ebb_sheet_clear(&other));
   }
   /* what crosses the last site at its speed in ln v: the slope of a steep tail exceeds the speed times the tail */
-  if (!source->lattice->prescription->grid)
+  if (!source->lattice->rows.prescription->grid)
     *slope_error += edge_speed(source->lattice) * sheet.sum[EBB_SUM_EDGE_V][0] / log(sheet.edge_ratio);
   ebb_moments_from_sums(source->constants, source->lattice, &sheet, 0, moment);
   ebb_budget_errors(&local, source->constants, source->lattice, &sheet, 0, moment, error);
@@ -270,9 +270,9 @@ static PetscErrorCode values_at(struct ebb_source *source, struct ebb_source *ch
   }
   bounce->volume = (struct ebb_measured){moment[EBB_MOMENT_VOLUME_MEAN], error[EBB_MOMENT_VOLUME_MEAN]};
   bounce->density = (struct ebb_measured){moment[EBB_MOMENT_DENSITY_MEAN], error[EBB_MOMENT_DENSITY_MEAN]};
-  bounce->v_mode =
-      (struct ebb_measured){sheet.mode[0], source->lattice->prescription->grid ? sheet.mode[0] * source->lattice->dx
-                                                                               : 0.5 * source->lattice->step};
+  bounce->v_mode = (struct ebb_measured){sheet.mode[0], source->lattice->rows.prescription->grid
+                                                            ? sheet.mode[0] * source->lattice->dx
+                                                            : 0.5 * source->lattice->rows.step};
   p = moment[EBB_MOMENT_MOMENTUM_MEAN];
   effective(source, p, error[EBB_MOMENT_MOMENTUM_MEAN], bounce->v_mode.value, bounce);
   PetscCall(ebb_sheet_clear(&sheet));
@@ -318,7 +318,7 @@ static PetscErrorCode judge_continuum(const struct ebb_lattice *lattice, const s
   char text[512];
 
   PetscFunctionBegin;
-  if (lattice->prescription->grid) {
+  if (lattice->rows.prescription->grid) {
     PetscCall(
         say(bounce, EBB_VERDICT_NO,
             !turned || samples->m < 2
@@ -392,7 +392,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   blank(bounce);
   at = bracket_of(samples);
   found = at >= 0;
-  if (lattice->prescription->grid) {
+  if (lattice->rows.prescription->grid) {
     PetscCall(judge_continuum(lattice, samples, found, NAN, bounce));
     PetscFunctionReturn(0);
   }
@@ -417,7 +417,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   PetscCall(reach(source, 2, ends, at >= 0 ? samples->v[at] : samples->v[0], &limit));
   PetscCall(refine_mean(source, low, high, limit, &root, &curvature));
   PetscCall(values_at(source, check, budget, root, limit, bounce, &slope_error));
-  if (lattice->prescription->continuum) {
+  if (lattice->rows.prescription->continuum) {
     const double turning = bounce->v.value;
     const bool outside = bounce->outside;
 

@@ -120,7 +120,7 @@ static PetscErrorCode measure_orthonormality(const struct ebb_packet *packet, co
   PetscCall(PetscMalloc1((size_t)ROWS * (size_t)n, &rows));
   PetscCall(PetscCalloc1(n, &own));
   PetscCall(PetscCalloc1(n, &next));
-  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+  for (int arm = 0; arm < (lattice->rows.half ? 1 : 2); arm++) {
     struct ebb_cursor *cursor;
 
     PetscCall(ebb_cursor_open(packet->basis, arm, 0, &cursor));
@@ -160,13 +160,14 @@ PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct 
     PetscCall(measure_orthonormality(packet, lattice, &budget->drift[0]));
     PetscFunctionReturn(0);
   }
-  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+  for (int arm = 0; arm < (lattice->rows.half ? 1 : 2); arm++) {
     struct ebb_cursor *cursor = NULL;
     PetscInt begin, end, here = -1;
 
     ebb_lattice_local(lattice, arm, &begin, &end);
     for (int i = 0; i < EBB_DRIFTS; i++) {
-      const PetscInt site = PetscMax((PetscInt)((budget->drift_v[i] - lattice->first[arm]) / lattice->step), 0) + 1;
+      const PetscInt site =
+          PetscMax((PetscInt)((budget->drift_v[i] - lattice->first[arm]) / lattice->rows.step), 0) + 1;
       /* each rank looks at the sites it owns; the last one looks as far as the matching volume where that is beyond */
       const bool mine = (site >= begin && site < end) || (end == lattice->sites[arm] && site >= end && begin < end);
 
@@ -194,7 +195,7 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
 {
-  const bool family = !lattice->prescription->grid && ebb_rows_is_family(&lattice->rows);
+  const bool family = !lattice->rows.prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double edge0 =
       family ? TAIL_AND_LINK * tail_of(lattice, sheet, s)
              : weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]);
@@ -265,7 +266,7 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
         (clock->density_power * error[EBB_MOMENT_VOLUME_MEAN] / moment[EBB_MOMENT_VOLUME_MEAN] +
          (clock->root ? 2.0 : 1.0) * error[EBB_MOMENT_MOMENTUM_MEAN] / fabs(moment[EBB_MOMENT_MOMENTUM_MEAN]));
   }
-  if (!lattice->prescription->grid && (lattice->rows.band == 2 || ebb_rows_has_potential(&lattice->rows))) {
+  if (!lattice->rows.prescription->grid && (lattice->rows.band == 2 || ebb_rows_has_potential(&lattice->rows))) {
     /* by elements or with a potential, terms of size scale v^growth cancel to what is left of them */
     const double size = lattice->rows.scale * pow(v * v + dv * dv, 0.5 * lattice->rows.clock->growth);
 
@@ -289,7 +290,7 @@ double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct e
                                  const struct ebb_sheet *sheet, PetscInt s, size_t levels, const double level[],
                                  size_t which)
 {
-  const bool family = !lattice->prescription->grid && ebb_rows_is_family(&lattice->rows);
+  const bool family = !lattice->rows.prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double edge0 = family ? 0.0 : beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
   const double *q = sheet->quantile + (size_t)s * levels;
   const double v = sheet->sum[EBB_SUM_V][s], spread = sqrt(fmax(sheet->sum[EBB_SUM_V2][s] - v * v, 1.0));
@@ -313,7 +314,7 @@ void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c
                         const struct ebb_sheet *rule, const struct ebb_sheet *check, size_t levels)
 {
   static const double FAMILY_TOP = 0.45; /* the check's lattice is half as large */
-  const bool family = !lattice->prescription->grid && ebb_rows_is_family(&lattice->rows);
+  const bool family = !lattice->rows.prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
 
   for (PetscInt s = 0; s < rule->m; s++) {

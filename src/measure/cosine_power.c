@@ -248,7 +248,7 @@ static void flush(const struct ebb_relational *r, struct ebb_engine *e, PetscInt
 
   for (PetscInt b = 0; b < count; b++) {
     const PetscInt site = c->out_begin + first + b, at = site + c->half, bin = e->bins->map[at];
-    const bool off = site < 0 || (!r->model.lattice->half && site >= r->space->sites);
+    const bool off = site < 0 || (!r->model.lattice->rows.half && site >= r->space->sites);
     const double *tally = c->tally + b * c->m, v = c->size[at];
     double *row = bin < 0 ? e->lost : c->histogram + (size_t)bin * (size_t)c->m;
 

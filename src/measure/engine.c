@@ -85,7 +85,7 @@ static PetscErrorCode add_outcome(struct ebb_relational *r, struct ebb_engine *e
   PetscCall(e->clock->kind->backward(e->clock, e->masked, e->chi));
   for (PetscInt k = 0; k < s->slices; k++)
     for (PetscInt at = s->sites; at < s->ring; at++) /* half lattice: n <= 0; full lattice: beyond either end */
-      if (!r->model.lattice->half || at >= s->wrap) e->leaked[i] += w * square(e->chi[k * s->ring + at]);
+      if (!r->model.lattice->rows.half || at >= s->wrap) e->leaked[i] += w * square(e->chi[k * s->ring + at]);
   PetscCall(forward(e->system, e->chi, e->s));
   e->lost[i] += w * missing(r, e);
   histogram(e, i, w);

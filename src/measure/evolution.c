@@ -23,7 +23,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
   for (PetscInt j = 0; j < e->packet->n; j++) high = fmax(high, e->packet->omega[j] / kappa);
   e->n = (PetscInt)ceil(finer *
                         (1.2 * high * (kappa * fabs(t) + 2.0 * log(2.0 * v_all)) / EBB_PI + 12.0 * sqrt(high) + 40.0));
-  if ((double)e->n * v_reach / e->lattice->step > ROWS_MOST) {
+  if ((double)e->n * v_reach / e->lattice->rows.step > ROWS_MOST) {
     PetscCall(PetscSNPrintf(problem, size,
                             "cuts up to |v| = %.3g need %d functions on as many sites; take smaller volumes", v_reach,
                             (int)e->n));
@@ -38,7 +38,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
     (void)gsl_integration_glfixed_point(0.0, high, (size_t)j, &k[j], &e->weight[j], table);
   gsl_integration_glfixed_table_free(table);
   {
-    const PetscInt n = e->n, copies = e->lattice->half ? 1 : 2; /* a full lattice has both channels */
+    const PetscInt n = e->n, copies = e->lattice->rows.half ? 1 : 2; /* a full lattice has both channels */
     enum ebb_channel *channel;
     double *all;
 
@@ -47,7 +47,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
       all[j] = k[j % n];
       e->weight[j] = e->weight[j % n];
       e->omega[j] = kappa * all[j];
-      channel[j] = e->lattice->half ? EBB_CHANNEL_ONLY : j < n ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
+      channel[j] = e->lattice->rows.half ? EBB_CHANNEL_ONLY : j < n ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
     }
     e->n = copies * n;
     PetscCall(ebb_basis_create_modes(e->lattice, e->n, all, channel, &e->basis));
@@ -64,11 +64,11 @@ PetscErrorCode ebb_evolution_create(const struct ebb_packet *packet, const struc
 {
   PetscFunctionBegin;
   *e = (struct ebb_evolution){.packet = packet, .lattice = lattice};
-  if (ebb_basis_info(packet->basis) && (lattice->rows.band != 1 || lattice->step != 4.0)) {
+  if (ebb_basis_info(packet->basis) && (lattice->rows.band != 1 || lattice->rows.step != 4.0)) {
     PetscCall(PetscSNPrintf(problem, size,
                             "on the infinite lattice of prescription '%s' projected states are not resolved; give "
                             "lattice.points",
-                            lattice->prescription->name));
+                            lattice->rows.prescription->name));
     PetscFunctionReturn(0);
   }
   if (ebb_basis_info(packet->basis)) {
@@ -77,7 +77,7 @@ PetscErrorCode ebb_evolution_create(const struct ebb_packet *packet, const struc
   }
   e->basis = packet->basis;
   e->n = packet->n;
-  if ((double)e->n * v_reach / lattice->step > ROWS_MOST) {
+  if ((double)e->n * v_reach / lattice->rows.step > ROWS_MOST) {
     PetscCall(
         PetscSNPrintf(problem, size, "cuts up to |v| = %.3g need too large a table; take smaller volumes", v_reach));
     PetscFunctionReturn(0);
@@ -105,8 +105,8 @@ static void interval(const struct ebb_lattice *l, int arm, double low, double hi
 {
   const double slack = 1e-9;
 
-  *first = PetscMax((PetscInt)ceil((low - l->first[arm]) / l->step - slack), 0);
-  *end = PetscMin((PetscInt)floor((high - l->first[arm]) / l->step + slack) + 1, l->sites[arm]);
+  *first = PetscMax((PetscInt)ceil((low - l->first[arm]) / l->rows.step - slack), 0);
+  *end = PetscMin((PetscInt)floor((high - l->first[arm]) / l->rows.step + slack) + 1, l->sites[arm]);
 }
 
 PetscErrorCode ebb_block_make(const struct ebb_evolution *e, double low, double high, struct ebb_block *b)
@@ -135,7 +135,7 @@ PetscErrorCode ebb_block_make(const struct ebb_evolution *e, double low, double 
     PetscCall(ebb_cursor_open(e->packet->basis, arm, first, &cursor));
     ebb_cursor_next(cursor, end - first, b->packet_rows + (size_t)at * (size_t)p);
     ebb_cursor_close(&cursor);
-    for (PetscInt i = first; i < end; i++) b->v[at++] = e->lattice->first[arm] + e->lattice->step * (double)i;
+    for (PetscInt i = first; i < end; i++) b->v[at++] = e->lattice->first[arm] + e->lattice->rows.step * (double)i;
   }
   PetscFunctionReturn(0);
 }

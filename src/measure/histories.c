@@ -289,7 +289,7 @@ PetscErrorCode ebb_histories_find(const struct ebb_packet *packet, const struct 
 {
   PetscFunctionBegin;
   problem[0] = '\0';
-  if (lattice->prescription->grid)
+  if (lattice->rows.prescription->grid)
     PetscCall(of_waves(packet, lattice, constants, comm, settings, history));
   else
     PetscCall(on_lattice(packet, lattice, constants, comm, settings, history, problem, size));

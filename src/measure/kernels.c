@@ -116,7 +116,7 @@ static void links_five(const struct ebb_lattice *lattice, double v, const struct
                        PetscInt m, struct ebb_sheet *sheet)
 {
   const struct ebb_rows *rows = &lattice->rows;
-  const struct ebb_prescription *flat = lattice->prescription;
+  const struct ebb_prescription *flat = lattice->rows.prescription;
   const double step = rows->step, over = 1.0 / rows->scale, here = 1.0 / ebb_rows_volume(rows, v);
   const double d0 = over * ebb_rows_diagonal(rows, v), d1 = 2.0 * over * ebb_rows_offdiagonal(rows, v);
   const double d2 = 2.0 * over * ebb_rows_second(rows, v);
@@ -144,7 +144,7 @@ static void links(const struct ebb_lattice *lattice, double v, const struct ebb_
                   struct ebb_sheet *sheet)
 {
   const struct ebb_rows *rows = &lattice->rows;
-  const struct ebb_prescription *flat = lattice->prescription;
+  const struct ebb_prescription *flat = lattice->rows.prescription;
   const double c = ebb_rows_hop(rows, v), d = flat->hop(v);
   const double a = 1.0 / sqrt(ebb_rows_measure(rows, v)), b = 1.0 / sqrt(ebb_rows_measure(rows, v + 4.0));
   const double av = 1.0 / sqrt(flat->measure(v)) / ebb_rows_volume(rows, v);
@@ -170,8 +170,8 @@ static void links(const struct ebb_lattice *lattice, double v, const struct ebb_
 void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, const struct ebb_site_rows *rows,
                         PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
-  const double v = lattice->first[arm] + lattice->step * (double)n;
-  const double v_max = lattice->first[arm] + lattice->step * (double)(lattice->sites[arm] - 1);
+  const double v = lattice->first[arm] + lattice->rows.step * (double)n;
+  const double v_max = lattice->first[arm] + lattice->rows.step * (double)(lattice->sites[arm] - 1);
   const struct ebb_clock *clock = lattice->rows.clock;
   const double volume = ebb_rows_volume(&lattice->rows, v);
   const struct site_weights at = {.cell = 1.0,
@@ -194,9 +194,9 @@ void ebb_kernel_first(const struct ebb_lattice *lattice, const double *const rig
                       PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
   const struct ebb_rows *rows = &lattice->rows;
-  const struct ebb_prescription *flat = lattice->prescription;
-  const double c = lattice->half ? lattice->edge : lattice->cross, v = lattice->first[0], w = lattice->first[1];
-  const double d = lattice->half ? flat->edge(lattice->sector) : flat->hop(lattice->sector - 4.0);
+  const struct ebb_prescription *flat = lattice->rows.prescription;
+  const double c = lattice->rows.half ? lattice->edge : lattice->cross, v = lattice->first[0], w = lattice->first[1];
+  const double d = lattice->rows.half ? flat->edge(lattice->rows.sector) : flat->hop(lattice->rows.sector - 4.0);
   const double a = 1.0 / sqrt(ebb_rows_measure(rows, v)), b = left ? 1.0 / sqrt(ebb_rows_measure(rows, w)) : 0.0;
   const double av = 1.0 / sqrt(flat->measure(v)) / ebb_rows_volume(rows, v);
   const double bv = left ? 1.0 / sqrt(flat->measure(w)) / ebb_rows_volume(rows, w) : 0.0;

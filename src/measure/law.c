@@ -63,7 +63,8 @@ PetscErrorCode ebb_law_find(struct ebb_source *source, const struct ebb_packet *
     /* a two-point solution amplifies relative errors by the ratio of the larger term to the smaller */
     const double amplify = (v[0] + v[2]) * (1.0 / a + 1.0 / b);
     const double off =
-        relative * amplify + (source->lattice->prescription->exact_law && source->lattice->half ? 0.0 : law->residual);
+        relative * amplify +
+        (source->lattice->rows.prescription->exact_law && source->lattice->rows.half ? 0.0 : law->residual);
     law->v_plus.error = law->v_plus.value * off;
     law->v_minus.error = law->v_minus.value * off;
     {

@@ -48,7 +48,7 @@ static void shift_moments(const struct ebb_constants *c, const struct ebb_lattic
   const double im = sheet->sum[EBB_SUM_SHIFT_IM][s] / norm, two = sheet->sum[EBB_SUM_SHIFT2][s] / norm;
   const double first = sheet->sum[EBB_SUM_FIRST][s] / norm;
 
-  if (lattice->prescription->grid) { /* continuum: sin b -> b, H = b/(gamma lambda) */
+  if (lattice->rows.prescription->grid) { /* continuum: sin b -> b, H = b/(gamma lambda) */
     moment[EBB_MOMENT_SIN2_B_MEAN] = re;
     moment[EBB_MOMENT_HUBBLE_MEAN] = 2.0 * c->hubble_max * im;
     moment[EBB_MOMENT_HUBBLE_SPREAD] = 2.0 * c->hubble_max * spread(re, im);
@@ -62,7 +62,7 @@ static void shift_moments(const struct ebb_constants *c, const struct ebb_lattic
 bool ebb_moment_exists(const struct ebb_lattice *lattice, enum ebb_moment moment)
 {
   const struct ebb_rows *rows = &lattice->rows;
-  const bool grid = lattice->prescription->grid, family = !grid && ebb_rows_is_family(rows);
+  const bool grid = lattice->rows.prescription->grid, family = !grid && ebb_rows_is_family(rows);
 
   switch (moment) {
   case EBB_MOMENT_V_MEAN:
@@ -133,7 +133,7 @@ void ebb_moments_from_sums(const struct ebb_constants *c, const struct ebb_latti
   moment[EBB_MOMENT_INVERSE_MOMENTUM_MEAN] = sheet->sum[EBB_SUM_INVERSE][s] / norm;
   /* the lattice form comes in units of the operator's scale, the grid form with its prefactor */
   moment[EBB_MOMENT_THETA_MEAN] =
-      (lattice->prescription->grid ? 1.0 : rows.scale) * sheet->sum[EBB_SUM_THETA][s] / norm;
+      (lattice->rows.prescription->grid ? 1.0 : rows.scale) * sheet->sum[EBB_SUM_THETA][s] / norm;
   moment[EBB_MOMENT_DRESSED_A4] =
       cbrt(pow(rows.volume_unit, 4.0)) * sheet->sum[EBB_SUM_DRESSED][s] / sheet->sum[EBB_SUM_INVERSE][s];
   moment[EBB_MOMENT_ARCTAN_V_MEAN] = sheet->sum[EBB_SUM_ARCTAN][s] / norm;

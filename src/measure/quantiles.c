@@ -18,8 +18,9 @@ static double mass_below(const struct ebb_lattice *lattice, int arm, PetscInt be
   PetscInt n;
 
   if (begin >= end) return 0.0;
-  position = lattice->prescription->grid ? (log(fmax(q, 1e-300)) - lattice->lnv_min) / lattice->dx + 0.5
-                                         : (q - (lattice->first[arm] - 0.5 * lattice->step)) / lattice->step;
+  position = lattice->rows.prescription->grid
+                 ? (log(fmax(q, 1e-300)) - lattice->lnv_min) / lattice->dx + 0.5
+                 : (q - (lattice->first[arm] - 0.5 * lattice->rows.step)) / lattice->rows.step;
   if (position <= (double)begin) return 0.0;
   if (position >= (double)end) return total;
   n = PetscMin(PetscMax((PetscInt)floor(position), begin), end - 1);

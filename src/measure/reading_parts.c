@@ -43,8 +43,8 @@ PetscErrorCode ebb_reading_density_rows(const struct ebb_lattice *l, PetscInt n,
   for (PetscInt i = 0; i < n; i++) {
     const double v = ebb_lattice_v(l, i);
 
-    d[i] = ebb_prescription_diagonal(l->prescription, l->half, l->sector, v) / (v * v);
-    e[i] = i + 1 < n ? ebb_prescription_offdiagonal(l->prescription, v) / (v * (v + 4.0)) : 0.0;
+    d[i] = ebb_prescription_diagonal(l->rows.prescription, l->rows.half, l->rows.sector, v) / (v * v);
+    e[i] = i + 1 < n ? ebb_prescription_offdiagonal(l->rows.prescription, v) / (v * (v + 4.0)) : 0.0;
   }
   PetscCall(ebb_reading_tridiagonal(n, d, e, value, rows));
   PetscCall(PetscFree2(d, e));

@@ -27,7 +27,7 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
   const struct ebb_representation *s = e->system;
   const struct ebb_lattice *l = r->model.lattice;
   const bool volume = !strcmp(s->kind->word.name, "v") && s->function == EBB_FUNCTION_NONE;
-  const double half_cell = volume && !l->prescription->grid ? 0.5 * l->step : 0.0;
+  const double half_cell = volume && !l->rows.prescription->grid ? 0.5 * l->rows.step : 0.0;
   double low = INFINITY, high = -INFINITY, bytes;
 
   PetscFunctionBegin;
@@ -71,9 +71,9 @@ static void prepare_groups(struct ebb_relational *r, struct ebb_engine *e)
   b->groups = GROUPS;
   e->result.order_width = NAN;
   if (!strcmp(e->system->kind->word.name, "v") && e->settings.binning == EBB_BINNING_SITES &&
-      !r->model.lattice->prescription->grid && r->model.lattice->half) {
-    b->per_group = PetscMax((PetscInt)lround(v_bounce / (1.5 * r->model.lattice->step)), 1);
-    e->result.order_width = r->model.lattice->step * (double)b->per_group;
+      !r->model.lattice->rows.prescription->grid && r->model.lattice->rows.half) {
+    b->per_group = PetscMax((PetscInt)lround(v_bounce / (1.5 * r->model.lattice->rows.step)), 1);
+    e->result.order_width = r->model.lattice->rows.step * (double)b->per_group;
   } else {
     b->per_group = (b->n + GROUPS - 1) / GROUPS;
     b->groups = (b->n + b->per_group - 1) / b->per_group;
@@ -198,7 +198,7 @@ static PetscErrorCode gather(struct ebb_relational *r, const double complex psi[
   const struct ebb_lattice *l = r->model.lattice;
   const size_t local = (size_t)(l->end - l->begin);
   /* on a grid psi is a density in ln v; l2 amplitudes carry the root of the cell */
-  const double root = l->prescription->grid ? sqrt(l->dx) : 1.0;
+  const double root = l->rows.prescription->grid ? sqrt(l->dx) : 1.0;
 
   PetscFunctionBegin;
   for (PetscInt k = 0; k < r->space->slices; k++) {

@@ -25,13 +25,13 @@ PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct
   *space = s;
   s->model = model;
   s->sites = sites;
-  s->ring = l->prescription->grid ? sites : 2 * sites;
-  s->wrap = l->prescription->grid ? sites : l->half ? sites : 2 * sites - sites / 2;
+  s->ring = l->rows.prescription->grid ? sites : 2 * sites;
+  s->wrap = l->rows.prescription->grid ? sites : l->rows.half ? sites : 2 * sites - sites / 2;
   s->slices = PetscMax(model->circle.points, 1);
   PetscCall(PetscMalloc1(s->ring, &s->v));
   for (PetscInt r = 0; r < s->ring; r++)
-    s->v[r] =
-        l->prescription->grid ? ebb_lattice_v(l, r) : ebb_lattice_v(l, 0) + l->step * (double)(ebb_space_n(s, r) - 1);
+    s->v[r] = l->rows.prescription->grid ? ebb_lattice_v(l, r)
+                                         : ebb_lattice_v(l, 0) + l->rows.step * (double)(ebb_space_n(s, r) - 1);
   PetscFunctionReturn(0);
 }
 
@@ -237,14 +237,14 @@ bool ebb_reading_volume_lattice(const struct ebb_representation *rep, char probl
 {
   const struct ebb_lattice *l = rep->space->model->lattice;
 
-  if (l->prescription->grid)
+  if (l->rows.prescription->grid)
     (void)PetscSNPrintf(problem, size, "observable '%s' needs a volume lattice; prescription '%s' has a grid in ln v",
-                        rep->kind->word.name, l->prescription->name);
-  else if (l->step != 4.0 || l->rows.band != 1 || l->rows.volume_power != 1.0)
+                        rep->kind->word.name, l->rows.prescription->name);
+  else if (l->rows.step != 4.0 || l->rows.band != 1 || l->rows.volume_power != 1.0)
     (void)PetscSNPrintf(problem, size,
                         "observable '%s' is for three-point operators on v = epsilon + 4n, where V goes like v; "
                         "prescription '%s' is read by v, lnv and fields",
-                        rep->kind->word.name, l->prescription->name);
+                        rep->kind->word.name, l->rows.prescription->name);
   else if (rep->matrix == NULL && rep->space->sites > DENSE_MOST && rep->kind->forward == ebb_reading_matrix_forward)
     (void)PetscSNPrintf(problem, size,
                         "observable '%s' keeps all its eigenvectors, on at most %d sites; this lattice has %d: set "

@@ -160,7 +160,7 @@ void ebb_sheet_add_fields(struct ebb_source *source, const double complex *const
     const double right[2] = {creal(r), cimag(r)}, other[2] = {creal(l), cimag(l)};
 
     ebb_kernel_first(lattice, (const double *[2]){right, right + 1},
-                     lattice->half ? NULL : (const double *[2]){other, other + 1}, s, 1, sheet);
+                     lattice->rows.half ? NULL : (const double *[2]){other, other + 1}, s, 1, sheet);
   }
   for (PetscInt i = 0; i < sheet->local; i++) {
     const double complex psi = field[0][i + 2];

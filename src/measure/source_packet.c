@@ -36,7 +36,7 @@ static PetscErrorCode make_table(const struct ebb_source *source, PetscInt m, co
   const enum ebb_field psi = EBB_FIELD_PSI;
 
   PetscFunctionBegin;
-  if (!source->lattice->prescription->grid) {
+  if (!source->lattice->rows.prescription->grid) {
     PetscCall(ebb_phases_make(packet, m, phi, EBB_SHEET_FIELDS, fields, phases));
     PetscFunctionReturn(0);
   }
@@ -97,7 +97,7 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
 {
   const struct ebb_packet *packet = source->data;
   const struct ebb_lattice *lattice = source->lattice;
-  const bool grid = lattice->prescription->grid;
+  const bool grid = lattice->rows.prescription->grid;
   const PetscInt columns = phases->columns, m = phases->m, halo = grid ? 0 : HALO;
   struct ebb_cursor *cursor;
   struct ebb_fold fold;
@@ -107,7 +107,7 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
   PetscFunctionBegin;
   ebb_lattice_local(lattice, arm, &begin, &end);
   if (v_limit > 0.0 && !grid)
-    end = PetscMin(end, (PetscInt)fmax((v_limit - lattice->first[arm]) / lattice->step, 0.0) + 1);
+    end = PetscMin(end, (PetscInt)fmax((v_limit - lattice->first[arm]) / lattice->rows.step, 0.0) + 1);
   if (begin >= end) PetscFunctionReturn(0);
   PetscCall(PetscMalloc2((size_t)ROWS * (size_t)packet->n, &e, (size_t)(ROWS + HALO) * (size_t)columns, &block));
   PetscCall(ebb_fold_begin(sheet, &fold));
@@ -151,7 +151,7 @@ static PetscErrorCode sum_first(struct ebb_source *source, const struct ebb_phas
   PetscFunctionBegin;
   if (lattice->sites[1] < lattice->begin || lattice->sites[1] >= lattice->end) PetscFunctionReturn(0);
   PetscCall(PetscMalloc2(packet->n, &e, 2 * columns, &block));
-  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+  for (int arm = 0; arm < (lattice->rows.half ? 1 : 2); arm++) {
     struct ebb_cursor *cursor;
 
     PetscCall(ebb_cursor_open(packet->basis, arm, 0, &cursor));
@@ -160,7 +160,7 @@ static PetscErrorCode sum_first(struct ebb_source *source, const struct ebb_phas
     ebb_cursor_close(&cursor);
   }
   ebb_kernel_first(lattice, (const double *[2]){block, block + m},
-                   lattice->half ? NULL : (const double *[2]){block + columns, block + columns + m}, 0, m, sheet);
+                   lattice->rows.half ? NULL : (const double *[2]){block + columns, block + columns + m}, 0, m, sheet);
   PetscCall(PetscFree2(e, block));
   PetscFunctionReturn(0);
 }
@@ -175,7 +175,7 @@ static PetscErrorCode evaluate(struct ebb_source *source, PetscInt m, const doub
   PetscCall(make_table(source, m, phi, &phases));
   for (int arm = 0; arm < 2; arm++) PetscCall(sum_arm(source, arm, &phases, request->v_limit, sheet));
   /* five-point elements hold all there is at the first sites */
-  if (!source->lattice->prescription->grid && source->lattice->rows.band == 1)
+  if (!source->lattice->rows.prescription->grid && source->lattice->rows.band == 1)
     PetscCall(sum_first(source, &phases, sheet));
   PetscCall(ebb_phases_clear(&phases));
   PetscCall(ebb_sheet_finish(source, request, sheet));

@@ -221,7 +221,7 @@ PetscErrorCode ebb_two_time_find(const struct ebb_packet *packet, const struct e
   PetscFunctionBegin;
   problem[0] = '\0';
   *x = (struct ebb_two_time){.n = ebb_lattice_size(lattice)};
-  if (lattice->prescription->grid) {
+  if (lattice->rows.prescription->grid) {
     PetscCall(PetscSNPrintf(problem, size, "the propagator diagnostic needs a volume lattice"));
     PetscFunctionReturn(0);
   }

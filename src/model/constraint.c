@@ -42,7 +42,7 @@ static void fill_rows(struct ebb_constraint *c)
     s->scale[at] =
         i >= 0 ? sqrt(c->rows.scale / ebb_rows_measure(&c->rows, v)) : 0.0; /* unused there; B(0) may vanish */
     if (i >= lattice->begin)
-      s->link[at - 1] = i == 0 && lattice->half ? lattice->edge : ebb_rows_hop(&c->rows, v - 4.0);
+      s->link[at - 1] = i == 0 && lattice->rows.half ? lattice->edge : ebb_rows_hop(&c->rows, v - 4.0);
     if (s->potential && i >= lattice->begin && i < lattice->end)
       s->potential[at - 1] = c->rows.scale * ebb_rows_potential(&c->rows, v);
   }
@@ -89,8 +89,8 @@ PetscErrorCode ebb_constraint_create(const struct ebb_lattice *lattice, const st
 
   PetscFunctionBegin;
   *constraint = NULL;
-  PetscCheck(!lattice->prescription->grid, comm, PETSC_ERR_ARG_WRONG,
-             "prescription '%s' lives on a grid in ln v and has no rows", lattice->prescription->name);
+  PetscCheck(!lattice->rows.prescription->grid, comm, PETSC_ERR_ARG_WRONG,
+             "prescription '%s' lives on a grid in ln v and has no rows", lattice->rows.prescription->name);
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, &least, 1, MPIU_INT, MPI_MIN, comm));
   PetscCheck(least >= FEWEST_SITES, comm, PETSC_ERR_ARG_OUTOFRANGE,
              "%" PetscInt_FMT " sites are too few for this many ranks: each needs two; use fewer ranks",

@@ -29,11 +29,10 @@ PetscErrorCode ebb_lattice_make_model(const struct ebb_rows *rows, PetscInt site
              sector);
   PetscCheck(sites > 1, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
              "a lattice needs two sites or more, got %" PetscInt_FMT, sites);
-  *lattice = (struct ebb_lattice){
-      .rows = *rows, .prescription = prescription, .sector = sector, .half = rows->half, .step = rows->step};
+  *lattice = (struct ebb_lattice){.rows = *rows};
   lattice->first[0] = sector;
   lattice->sites[0] = sites;
-  if (lattice->half)
+  if (lattice->rows.half)
     lattice->edge = ebb_rows_edge(rows);
   else {
     lattice->first[1] = rows->step - sector;
@@ -63,8 +62,7 @@ PetscErrorCode ebb_lattice_make_grid(const struct ebb_prescription *prescription
   PetscCheck(prescription && prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "not a grid prescription");
   PetscCheck(points > 1 && lnv_max > lnv_min, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
              "a grid needs lnv_max above lnv_min and two points or more");
-  *lattice = (struct ebb_lattice){
-      .rows = ebb_rows_flat(prescription, 4.0), .prescription = prescription, .half = true, .lnv_min = lnv_min};
+  *lattice = (struct ebb_lattice){.rows = ebb_rows_flat(prescription, 4.0), .lnv_min = lnv_min};
   lattice->sites[0] = points;
   lattice->dx = (lnv_max - lnv_min) / (double)points; /* periodic: lnv_max is lnv_min again */
   PetscCall(split(lattice, comm));
@@ -77,27 +75,27 @@ double ebb_lattice_v(const struct ebb_lattice *lattice, PetscInt global)
 {
   const PetscInt left = lattice->sites[1];
 
-  if (lattice->prescription->grid) return exp(lattice->lnv_min + (double)global * lattice->dx);
-  if (global < left) return -(lattice->first[1] + lattice->step * (double)(left - 1 - global));
-  return lattice->first[0] + lattice->step * (double)(global - left);
+  if (lattice->rows.prescription->grid) return exp(lattice->lnv_min + (double)global * lattice->dx);
+  if (global < left) return -(lattice->first[1] + lattice->rows.step * (double)(left - 1 - global));
+  return lattice->first[0] + lattice->rows.step * (double)(global - left);
 }
 
 double ebb_lattice_weight(const struct ebb_lattice *lattice, PetscInt global)
 {
   (void)global;
-  return lattice->prescription->grid ? lattice->dx : 1.0;
+  return lattice->rows.prescription->grid ? lattice->dx : 1.0;
 }
 
 void ebb_lattice_cell(const struct ebb_lattice *lattice, PetscInt global, double *low, double *high)
 {
   const double v = fabs(ebb_lattice_v(lattice, global));
 
-  if (lattice->prescription->grid) {
+  if (lattice->rows.prescription->grid) {
     *low = v * exp(-0.5 * lattice->dx);
     *high = v * exp(0.5 * lattice->dx);
   } else {
-    *low = v - 0.5 * lattice->step;
-    *high = v + 0.5 * lattice->step;
+    *low = v - 0.5 * lattice->rows.step;
+    *high = v + 0.5 * lattice->rows.step;
   }
 }
 

@@ -21,7 +21,7 @@ static PetscErrorCode allocate(const struct ebb_rows *rows, PetscInt n, PetscInt
   *continuum = c;
   PetscCall(ebb_lattice_make_model(rows, sites, comm, &c->lattice));
   c->n = n;
-  c->channels = c->lattice.half ? 1 : 2;
+  c->channels = c->lattice.rows.half ? 1 : 2;
   PetscCall(PetscMalloc2(n, &c->k, n, &c->eigenvalue));
   for (int i = 0; i < c->channels; i++) {
     PetscCall(
@@ -34,11 +34,11 @@ static PetscErrorCode allocate(const struct ebb_rows *rows, PetscInt n, PetscInt
 /* Largest relative stray of a single mode on any arm, at twice the matching volume. */
 static PetscErrorCode stray(const struct ebb_basis *basis, const struct ebb_lattice *lattice, double *worst)
 {
-  const PetscInt far = (PetscInt)(2.0 * ebb_basis_match_volume(basis) / lattice->step);
+  const PetscInt far = (PetscInt)(2.0 * ebb_basis_match_volume(basis) / lattice->rows.step);
 
   PetscFunctionBegin;
   *worst = 0.0;
-  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+  for (int arm = 0; arm < (lattice->rows.half ? 1 : 2); arm++) {
     struct ebb_cursor *cursor;
 
     PetscCall(ebb_cursor_open(basis, arm, far, &cursor));
@@ -54,7 +54,7 @@ static PetscErrorCode values_of(const struct ebb_basis *basis, const struct ebb_
 {
   PetscFunctionBegin;
   *largest = 0.0;
-  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+  for (int arm = 0; arm < (lattice->rows.half ? 1 : 2); arm++) {
     struct ebb_cursor *cursor;
     PetscInt begin, end;
 
@@ -76,7 +76,9 @@ static PetscErrorCode values_of(const struct ebb_basis *basis, const struct ebb_
 /* One mode at a time, so that each has its own error. */
 static PetscErrorCode mode_find(struct ebb_continuum *c, int channel, PetscInt j, MPI_Comm comm)
 {
-  const enum ebb_channel kind = c->lattice.half ? EBB_CHANNEL_ONLY : channel ? EBB_CHANNEL_LEFT : EBB_CHANNEL_RIGHT;
+  const enum ebb_channel kind = c->lattice.rows.half ? EBB_CHANNEL_ONLY
+                                : channel            ? EBB_CHANNEL_LEFT
+                                                     : EBB_CHANNEL_RIGHT;
   const PetscInt local = c->lattice.end - c->lattice.begin;
   struct ebb_basis *basis;
   const struct ebb_mode_info *info;

@@ -69,13 +69,13 @@ static PetscErrorCode solve_five(const struct ebb_lattice *lattice, double w[], 
 
 static void fill_matrix(const struct ebb_lattice *lattice, double d[], double e[])
 {
-  const struct ebb_prescription *p = lattice->prescription;
+  const struct ebb_prescription *p = lattice->rows.prescription;
   const PetscInt n = ebb_lattice_size(lattice);
 
   for (PetscInt i = 0; i < n; i++) {
     const double v = ebb_lattice_v(lattice, i);
 
-    d[i] = ebb_prescription_diagonal(p, lattice->half, lattice->sector, v);
+    d[i] = ebb_prescription_diagonal(p, lattice->rows.half, lattice->rows.sector, v);
     if (i + 1 < n) e[i] = ebb_prescription_offdiagonal(p, v);
   }
 }

@@ -65,7 +65,7 @@ static double cursor_drift(const struct ebb_cursor *cursor)
   const struct ebb_five_walk *walk = cursor->data;
   const struct ebb_basis *basis = cursor->basis;
   const struct modes *m = basis->data;
-  const double unit = sqrt(2.0 * basis->lattice.step / EBB_PI);
+  const double unit = sqrt(2.0 * basis->lattice.rows.step / EBB_PI);
   double worst = 0.0;
 
   if (walk->v < basis->match_volume) return 0.0;
@@ -134,7 +134,7 @@ static void normalise(struct ebb_basis *basis, PetscInt j, const struct ebb_five
   amplitude = ab[0] * part[0].slow + ab[1] * part[1].slow;
   sitter = (ab[0] * part[0].fast + ab[1] * part[1].fast) * cexp(-I * m->delta);
   /* the de Sitter part positive: of the two signs the one that goes on smoothly with k */
-  scale = copysign(sqrt(2.0 * basis->lattice.step / EBB_PI) / cabs(amplitude), creal(sitter));
+  scale = copysign(sqrt(2.0 * basis->lattice.rows.step / EBB_PI) / cabs(amplitude), creal(sitter));
   m->chi0[j] = scale * ab[0];
   m->chi1[j] = scale * ab[1];
   m->exponent[j] = -top;

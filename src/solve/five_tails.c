@@ -77,7 +77,7 @@ static void refresh(const struct ebb_basis *basis, PetscInt site, struct phase *
 {
   const struct tails *t = basis->data;
   const long double log_v =
-      logl((long double)basis->lattice.first[0] + (long double)basis->lattice.step * (long double)site);
+      logl((long double)basis->lattice.first[0] + (long double)basis->lattice.rows.step * (long double)site);
 
   for (PetscInt j = 0; j < basis->n; j++) {
     const long double angle = (long double)basis->k[j] * log_v;
@@ -147,7 +147,7 @@ static void cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows)
   int terms = t->terms;
 
   for (; rows && cursor->site < end; cursor->site++, rows += n) {
-    const double v = b->lattice.first[0] + b->lattice.step * (double)cursor->site;
+    const double v = b->lattice.first[0] + b->lattice.rows.step * (double)cursor->site;
 
     if (cursor->site < t->match) {
       memcpy(rows, t->table + (size_t)cursor->site * (size_t)n, (size_t)n * sizeof(double));
@@ -157,7 +157,7 @@ static void cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows)
     if (cursor->site == p->fresh || terms == t->terms) terms = terms_at(t, v);
     sum_row(t, n, v, terms, p, rows);
     {
-      const double d = log1p(b->lattice.step / v);
+      const double d = log1p(b->lattice.rows.step / v);
 
       if (b->k[n - 1] * d < 0.25) rotate(n, d, b->k, p->re, p->im);
       p->site = b->k[n - 1] * d < 0.25 ? cursor->site + 1 : -1;
@@ -200,7 +200,7 @@ static PetscErrorCode measure_drift(struct ebb_basis *basis, struct ebb_five_bvp
 
     t->drift = fmax(t->drift, cabs(a - t->amplitude[j]) / unit);
     for (PetscInt s = 0; s < t->match; s++) {
-      const double v = basis->lattice.first[0] + basis->lattice.step * (double)s;
+      const double v = basis->lattice.first[0] + basis->lattice.rows.step * (double)s;
 
       t->drift = fmax(t->drift, fabs((double)bvp->x[s] - sqrt(v) * t->table[(size_t)s * (size_t)n + (size_t)j]) / unit);
     }
@@ -254,7 +254,7 @@ PetscErrorCode ebb_five_tails_create(const struct ebb_lattice *lattice, PetscInt
     t->amplitude[j] = solve_mode(&lattice->rows, k[j], t->match + 1, &bvp);
     for (PetscInt s = 0; s < t->match; s++)
       t->table[(size_t)s * (size_t)n + (size_t)j] =
-          (double)(bvp.x[s] / sqrtl((long double)lattice->first[0] + (long double)lattice->step * (long double)s));
+          (double)(bvp.x[s] / sqrtl((long double)lattice->first[0] + (long double)lattice->rows.step * (long double)s));
     (*basis)->info[j] = (struct ebb_mode_info){.alpha = carg(t->amplitude[j]), .c_plus = 1.0, .first = t->table[j]};
   }
   PetscCall(measure_drift(*basis, &bvp));

@@ -83,7 +83,7 @@ static void advance(PetscInt n, double b, double over_c, const double *restrict 
 
 static void walk_next(struct walk *w, PetscInt count, double *rows, bool settle)
 {
-  const struct ebb_prescription *p = w->lattice->prescription;
+  const struct ebb_prescription *p = w->lattice->rows.prescription;
 
   for (PetscInt i = 0; i < count; i++) {
     const double b = p->measure(w->v);
@@ -144,7 +144,7 @@ static PetscErrorCode run_to_match(const struct ebb_lattice *lattice, int arm, P
 {
   void *block;
   struct walk *w;
-  const struct ebb_prescription *p = lattice->prescription;
+  const struct ebb_prescription *p = lattice->rows.prescription;
 
   PetscFunctionBegin;
   PetscCall(walk_create(lattice, arm, n, zeta, growing, &block, &w));
@@ -192,7 +192,7 @@ static double modes_cursor_drift(const struct ebb_cursor *cursor)
 
   if (w->v < cursor->basis->match_volume) return 0.0;
   for (PetscInt j = 0; j < w->n; j++) {
-    const double flux = w->y[j] - w->zeta[j] * w->lattice->prescription->measure(w->v) * w->x[j];
+    const double flux = w->y[j] - w->zeta[j] * w->lattice->rows.prescription->measure(w->v) * w->x[j];
     const double complex a = wave_amplitude(&m->series[j], w->v, w->x[j], flux);
     const double want = m->amplitude[cursor->arm][j];
     /* the phase k ln v itself is known to a rounding of its size: that much is the measurement's, not the recursion's
@@ -322,9 +322,9 @@ static PetscErrorCode normalise_full(struct ebb_basis *basis, const enum ebb_cha
 static PetscErrorCode prepare(struct ebb_basis *basis, PetscInt *match)
 {
   struct modes *m = basis->data;
-  const struct ebb_prescription *p = basis->lattice.prescription;
+  const struct ebb_prescription *p = basis->lattice.rows.prescription;
   double b[EBB_SERIES_TERMS + 1], c[EBB_SERIES_TERMS + 1], reach = 0.0, k_max = 0.0;
-  const double first = fmax(basis->lattice.first[0], basis->lattice.half ? 0.0 : basis->lattice.first[1]);
+  const double first = fmax(basis->lattice.first[0], basis->lattice.rows.half ? 0.0 : basis->lattice.first[1]);
 
   PetscFunctionBegin;
   p->measure_series(EBB_SERIES_TERMS + 1, b);
@@ -352,7 +352,7 @@ PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscIn
   PetscInt match;
 
   PetscFunctionBegin;
-  PetscCheck(!lattice->prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "modes need a volume lattice");
+  PetscCheck(!lattice->rows.prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "modes need a volume lattice");
   if (lattice->rows.band == 2) {
     PetscCall(ebb_basis_create_five(lattice, n, k, basis));
     PetscFunctionReturn(0);
@@ -362,7 +362,7 @@ PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscIn
   PetscCall(PetscCalloc1(n, &(*basis)->info));
   PetscCall(PetscNew(&m));
   (*basis)->data = m;
-  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++) {
+  for (int arm = 0; arm < (lattice->rows.half ? 1 : 2); arm++) {
     PetscCall(PetscMalloc1(n, &m->x0[arm]));
     PetscCall(PetscMalloc1(n, &m->y0[arm]));
     PetscCall(PetscMalloc1(n, &m->e0[arm]));
@@ -372,7 +372,7 @@ PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscIn
   PetscCall(PetscMalloc1(n, &m->zeta));
   PetscCall(PetscMalloc1(n, &m->phase));
   PetscCall(prepare(*basis, &match));
-  if (lattice->half)
+  if (lattice->rows.half)
     PetscCall(normalise_half(*basis, match));
   else
     PetscCall(normalise_full(*basis, channel, match));
@@ -380,7 +380,8 @@ PetscErrorCode ebb_basis_create_modes(const struct ebb_lattice *lattice, PetscIn
     const int arm = channel && channel[j] == EBB_CHANNEL_LEFT ? 1 : 0;
     const int e = m->e0[arm][j];
     (*basis)->info[j].first =
-        e < -4 ? 0.0 : ldexp(m->x0[arm][j], e * STEP_BITS) * sqrt(lattice->prescription->measure(lattice->first[arm]));
+        e < -4 ? 0.0
+               : ldexp(m->x0[arm][j], e * STEP_BITS) * sqrt(lattice->rows.prescription->measure(lattice->first[arm]));
   }
   PetscFunctionReturn(0);
 }

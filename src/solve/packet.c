@@ -96,13 +96,13 @@ PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, 
   channels_needed(&components, &right, &left);
   PetscCall(PetscMalloc5(2 * nodes, &k, 2 * nodes, &w, 2 * nodes, &one, 2 * nodes, &channel, 2 * nodes, &c));
   for (int pass = 0; pass < 2; pass++) {
-    if (pass == 1 && (lattice->half || !left)) break;
-    if (pass == 0 && !lattice->half && !right) continue;
+    if (pass == 1 && (lattice->rows.half || !left)) break;
+    if (pass == 0 && !lattice->rows.half && !right) continue;
     for (PetscInt j = 0; j < nodes; j++, n++) {
       k[n] = node[j];
       w[n] = weight[j];
       one[n] = 1.0;
-      channel[n] = lattice->half ? EBB_CHANNEL_ONLY : pass == 0 ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
+      channel[n] = lattice->rows.half ? EBB_CHANNEL_ONLY : pass == 0 ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
     }
   }
   if (request->basis)

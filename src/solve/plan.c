@@ -194,7 +194,7 @@ static PetscErrorCode find_edge(const struct ebb_packet *packet, const struct eb
       const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
       double p = density_far(packet, turned, x, false);
 
-      if (!lattice->half) p += density_far(packet, turned, x, true);
+      if (!lattice->rows.half) p += density_far(packet, turned, x, true);
       tail[i] = tail[i + 1] + exp(2.0 * x) * p;
       plain[i] = plain[i + 1] + p;
     }
@@ -237,7 +237,7 @@ PetscErrorCode ebb_plan_make(const struct ebb_state_request *request, const stru
   {
     /* a lattice asked for may end beyond the packet's reach: no image may stand on it either */
     const struct ebb_lattice_settings *l = &request->settings->lattice;
-    const double v_end = fmax(l->volume_max > 0.0 ? l->volume_max : 0.0, lattice->step * (double)(l->points + 1));
+    const double v_end = fmax(l->volume_max > 0.0 ? l->volume_max : 0.0, lattice->rows.step * (double)(l->points + 1));
 
     period = fmax(period, log(v_end / fmax(plan->k_low, 1.0)) + reach.lnv_clock + IMAGE_MARGIN);
   }

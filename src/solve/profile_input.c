@@ -60,8 +60,8 @@ static PetscErrorCode project_arm(const struct ebb_profile *profile, const struc
   PetscCallMPI(MPI_Comm_rank(comm, &rank));
   PetscCallMPI(MPI_Comm_size(comm, &size));
   profile->reach_v(input, &low, &high);
-  first = low > lattice->first[arm] ? (PetscInt)((low - lattice->first[arm]) / lattice->step) : 0;
-  last = high > lattice->first[arm] ? (PetscInt)((high - lattice->first[arm]) / lattice->step) + 2 : 0;
+  first = low > lattice->first[arm] ? (PetscInt)((low - lattice->first[arm]) / lattice->rows.step) : 0;
+  last = high > lattice->first[arm] ? (PetscInt)((high - lattice->first[arm]) / lattice->rows.step) + 2 : 0;
   begin = first + (PetscInt)((PetscInt64)(last - first) * rank / size);
   end = first + (PetscInt)((PetscInt64)(last - first) * (rank + 1) / size);
   PetscCall(PetscMalloc1((size_t)ROWS * (size_t)n, &rows));
@@ -71,7 +71,8 @@ static PetscErrorCode project_arm(const struct ebb_profile *profile, const struc
 
     ebb_cursor_next(cursor, count, rows);
     for (PetscInt r = 0; r < count; r++) {
-      const double complex psi = profile->value(input, lattice->first[arm] + lattice->step * (double)(i + r), arm == 1);
+      const double complex psi =
+          profile->value(input, lattice->first[arm] + lattice->rows.step * (double)(i + r), arm == 1);
 
       *norm += creal(psi * conj(psi));
       for (PetscInt j = 0; j < n; j++) c[j] += rows[r * n + j] * psi;
@@ -93,7 +94,7 @@ static PetscErrorCode project(const struct ebb_profile *profile, const struct eb
   PetscFunctionBegin;
   *norm = 0.0;
   for (PetscInt j = 0; j < n; j++) c[j] = 0.0;
-  for (int arm = 0; arm < (lattice->half ? 1 : 2); arm++)
+  for (int arm = 0; arm < (lattice->rows.half ? 1 : 2); arm++)
     PetscCall(project_arm(profile, input, basis, lattice, arm, comm, c, norm));
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, c, (PetscMPIInt)(2 * n), MPI_DOUBLE, MPI_SUM, comm));
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, norm, 1, MPI_DOUBLE, MPI_SUM, comm));

@@ -38,7 +38,7 @@ PetscErrorCode ebb_basis_create_waves(const struct ebb_lattice *lattice, PetscIn
   const double length = lattice->dx * (double)lattice->sites[0];
 
   PetscFunctionBegin;
-  PetscCheck(lattice->prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "waves need a grid in ln v");
+  PetscCheck(lattice->rows.prescription->grid, PETSC_COMM_SELF, PETSC_ERR_ARG_WRONG, "waves need a grid in ln v");
   PetscCall(ebb_basis_allocate(&waves_kind, lattice, 2 * n, basis));
   for (PetscInt j = 0; j < n; j++)
     (*basis)->k[2 * j] = (*basis)->k[2 * j + 1] = 2.0 * EBB_PI * (double)(j0 + j) / length;

@@ -149,7 +149,7 @@ Test(five_spectrum, has_eigenfunctions, .init = ebb_test_slepc_begin, .fini = eb
   struct ebb_spectrum *s = find(&request);
   const PetscInt n = ebb_lattice_size(&s->lattice);
 
-  cr_expect_eq(s->lattice.step, 2.0);
+  cr_expect_eq(s->lattice.rows.step, 2.0);
   for (int a = 0; a < 5; a++) {
     cr_expect_gt(s->function[a * n], 0.0);
     cr_expect_leq(s->residual[a], s->error[a]);

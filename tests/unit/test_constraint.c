@@ -153,11 +153,11 @@ Test(constraint, flux_of_a_constant_vanishes_exactly_inside)
   static double complex psi[2 * SITES], out[2 * SITES];
 
   for (PetscInt i = 0; i < 2 * SITES; i++)
-    psi[i] = (1.0 + 2.0 * I) * sqrt(lattice.prescription->measure(ebb_lattice_v(&lattice, i)) / c.theta_scale);
+    psi[i] = (1.0 + 2.0 * I) * sqrt(lattice.rows.prescription->measure(ebb_lattice_v(&lattice, i)) / c.theta_scale);
   ebb_test_call(op->apply(op, psi, out));
   for (PetscInt i = 1; i + 1 < 2 * SITES; i++) {
-    const double v = ebb_lattice_v(&lattice, i), scale = sqrt(c.theta_scale / lattice.prescription->measure(v));
-    const double links = lattice.prescription->hop(v) + lattice.prescription->hop(v - 4.0);
+    const double v = ebb_lattice_v(&lattice, i), scale = sqrt(c.theta_scale / lattice.rows.prescription->measure(v));
+    const double links = lattice.rows.prescription->hop(v) + lattice.rows.prescription->hop(v - 4.0);
 
     /* u is 1 + 2i to 2 eps on either side of each link */
     ebb_test_close(cabs(out[i]), 0.0, ebb_test_rounding(4, scale * links * sqrt(5.0)));

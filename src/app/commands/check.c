@@ -45,12 +45,12 @@ static void print_lattice(const struct ebb_run *run)
   const PetscInt n = ebb_lattice_size(l);
 
   printf("\nlattice\n");
-  if (l->prescription->grid) {
+  if (l->rows.prescription->grid) {
     printf("  grid             %" PetscInt_FMT " points in ln v from %g, step %g, periodic\n", n, l->lnv_min, l->dx);
     return;
   }
-  printf("  sites            %" PetscInt_FMT ", v = %g + 4n%s, up to |v| = %.6g\n", n, l->sector,
-         l->half ? ", n >= 0" : ", both orientations", fabs(ebb_lattice_v(l, n - 1)));
+  printf("  sites            %" PetscInt_FMT ", v = %g + 4n%s, up to |v| = %.6g\n", n, l->rows.sector,
+         l->rows.half ? ", n >= 0" : ", both orientations", fabs(ebb_lattice_v(l, n - 1)));
   if (run->settings->lattice.points > 0)
     printf("  because          lattice.points puts a wall there\n");
   else if (run->settings->lattice.volume_max > 0.0)
@@ -73,11 +73,11 @@ static PetscErrorCode print_defect(const struct ebb_run *run, bool speaks)
   struct ebb_symmetry symmetry;
 
   PetscFunctionBegin;
-  if (run->lattice.prescription->grid) {
+  if (run->lattice.rows.prescription->grid) {
     if (speaks) printf("\noperator\n  symmetry defect  0 (diagonal in the waves of the grid)\n");
     PetscFunctionReturn(0);
   }
-  PetscCall(ebb_lattice_make(run->lattice.prescription, run->lattice.sector,
+  PetscCall(ebb_lattice_make(run->lattice.rows.prescription, run->lattice.rows.sector,
                              PetscMin(run->lattice.sites[0], SAMPLE_SITES), run->comm, &part));
   PetscCall(ebb_constraint_create(&part, &run->constants, run->comm, &constraint));
   PetscCall(ebb_constraint_symmetry(constraint, &symmetry));

@@ -135,7 +135,7 @@ static PetscErrorCode compute(const struct ebb_invocation *invocation, struct eb
   if (e->speaks) ebb_record_print(&e->run, &e->record, e->path);
   *code = limits(e);
   if (*code == EBB_EXIT_OK && (bounce->verdict == EBB_VERDICT_UNDECIDED ||
-                               (bounce->verdict == EBB_VERDICT_NO && !e->run.lattice.prescription->continuum)))
+                               (bounce->verdict == EBB_VERDICT_NO && !e->run.lattice.rows.prescription->continuum)))
     *code = EBB_EXIT_VERDICT;
   PetscFunctionReturn(0);
 }

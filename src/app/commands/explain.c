@@ -105,6 +105,19 @@ static void explain_profiles(const struct ebb_setting *setting)
   ebb_text_clear(&text);
 }
 
+/* Settings of a few prescriptions: which ones, from their own places. */
+static void explain_few(const struct ebb_setting *setting)
+{
+  const unsigned few = setting->places & EBB_ON_ANY & ~(unsigned)(EBB_ON_VOLUME | EBB_ON_GRID);
+  struct ebb_text text = {0};
+
+  for (size_t i = 0; few && i < ebb_prescriptions(); i++)
+    if (ebb_input_places(ebb_prescription_at(i)) & few)
+      ebb_text_append(&text, "%s%s", text.length ? ", " : "", ebb_prescription_at(i)->name);
+  if (few) row("belongs to", ebb_text_get(&text));
+  ebb_text_clear(&text);
+}
+
 /* The modified Friedmann equation of a prescription, clock or choice of curvature. */
 static void explain_effective(const char *name)
 {
@@ -125,9 +138,7 @@ static void explain_setting(const struct ebb_setting *setting)
   explain_profiles(setting);
   if (setting->places & EBB_ON_VOLUME) row("belongs to", "prescriptions on a lattice of volumes");
   if (setting->places & EBB_ON_GRID) row("belongs to", "prescriptions on a grid in ln v");
-  if (setting->places & EBB_ON_FIXED) row("belongs to", "prescriptions mu0 and refined");
-  if (setting->places & EBB_ON_WEIGHTED) row("belongs to", "prescriptions mlqc1 and mlqc2");
-  if (setting->places & EBB_ON_REFINED) row("belongs to", "prescription refined");
+  explain_few(setting);
   if (setting->places & EBB_COMPONENT_ONLY) row("belongs to", "a component of a superposition");
   if (setting->places_required & EBB_ON_GRID) row("required", "on a grid in ln v");
   if (setting->places_required & EBB_FOR_RANGE) row("required", "by commands that evolve");
@@ -153,7 +164,7 @@ static void explain_prescription(const struct ebb_prescription *prescription)
     const struct ebb_setting *setting = ebb_setting_at(i);
     const unsigned places = setting->places & EBB_ON_ANY;
 
-    if (!ebb_setting_in(setting, "gravity") && !ebb_setting_in(setting, "lattice")) continue;
+    if (strncmp(setting->key, "gravity.", strlen("gravity.")) != 0 && !ebb_setting_in(setting, "lattice")) continue;
     if ((places && !(places & here)) || !strcmp(ebb_setting_leaf(setting), "prescription")) continue;
     row(name, setting->key);
     name = "";

@@ -12,8 +12,8 @@ static PetscErrorCode roots(const struct ebb_lattice *l, PetscInt n, double root
   PetscFunctionBegin;
   PetscCall(PetscMalloc2(n, &d, n, &e));
   for (PetscInt i = 0; i < n; i++) {
-    d[i] = ebb_prescription_diagonal(l->prescription, l->half, l->sector, ebb_lattice_v(l, i));
-    e[i] = i + 1 < n ? ebb_prescription_offdiagonal(l->prescription, ebb_lattice_v(l, i)) : 0.0;
+    d[i] = ebb_prescription_diagonal(l->rows.prescription, l->rows.half, l->rows.sector, ebb_lattice_v(l, i));
+    e[i] = i + 1 < n ? ebb_prescription_offdiagonal(l->rows.prescription, ebb_lattice_v(l, i)) : 0.0;
   }
   PetscCall(ebb_reading_tridiagonal(n, d, e, root, rows));
   for (PetscInt j = 0; j < n; j++) root[j] = sqrt(fmax(root[j], 0.0));
