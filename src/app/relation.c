@@ -138,6 +138,19 @@ PetscErrorCode ebb_relation_create(const struct ebb_invocation *invocation, stru
   if (!*code) PetscCall(make_window(r, invocation->operand[1], code));
   if (*code) PetscFunctionReturn(0);
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
+  if (!strcmp(r->settings.lattice.layout, "graded")) {
+    *code = EBB_EXIT_USAGE;
+    if (speaks())
+      fprintf(
+          stderr,
+          "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
+          "  it was evolved with lattice.layout = 'graded', and readings need the states on every site\n"
+          "  try       'ebbturn evolve MODEL --set lattice.layout=full' with a lattice.volume_max that can be held\n",
+          result);
+    PetscFunctionReturn(0);
+  }
+  /* readings need the states on every site, whatever the run took */
+  (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
   PetscCall(ebb_run_create(&r->settings, folder, PETSC_COMM_WORLD, &r->run, code));
   if (*code) {
     if (speaks())
@@ -256,7 +269,7 @@ static PetscErrorCode watch_edge(struct ebb_relation *r, PetscInt count, const d
 {
   const struct ebb_lattice *l = &r->run.lattice;
   const PetscInt local = l->end - l->begin, slices = r->run.bundle ? r->run.bundle->points : 1;
-  const double edge = 0.9 * fabs(ebb_lattice_v(l, ebb_lattice_size(l) - 1));
+  const double edge = 0.9 * ebb_lattice_top(l);
   double *beyond;
 
   PetscFunctionBegin;

@@ -38,6 +38,13 @@ PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
   PetscCall(main_rule.evaluate(&main_rule, VERIFIED, phi, &request, &rule));
   PetscCall(run->check_source.evaluate(&run->check_source, VERIFIED, phi, &request, &check));
   ebb_budget_compare(&record->budget, &run->constants, &run->lattice, &rule, &check, o->quantiles);
+  if (run->other_source.data) {
+    struct ebb_sheet other;
+
+    PetscCall(run->other_source.evaluate(&run->other_source, VERIFIED, phi, &request, &other));
+    ebb_budget_compare_grading(&record->budget, &run->constants, &run->lattice, &rule, &other, o->quantiles);
+    PetscCall(ebb_sheet_clear(&other));
+  }
   PetscCall(ebb_sheet_clear(&rule));
   PetscCall(ebb_sheet_clear(&check));
   PetscFunctionReturn(0);

@@ -25,6 +25,9 @@ with tempfile.TemporaryDirectory() as scratch:
         for command in commands:
             check(f"ebbturn {command} inputs/{name}" in text.replace("\n# ", " "), f"{name} says how to run '{command}'")
             out = os.path.join(scratch, f"{name}.{command}.h5")
+            if name == "survey.yaml":  # minutes of work: read, planned and left alone
+                run(command, path, "--dry-run")
+                continue
             run(command, path, "-o", out)
             if os.path.exists(out):
                 with h5py.File(out) as f:
