@@ -208,7 +208,7 @@ static int run(const struct ebb_invocation *invocation)
   char *text = NULL;
   int code = EBB_EXIT_OK;
 
-  ebb_keeper_start(&e.keeper, "evolve", "MODEL", "clock samples");
+  ebb_keeper_start(&e.keeper, "evolve", invocation->resume ? "MODEL" : invocation->operand[0], "clock samples");
   if (invocation->resume) {
     error = resume(invocation, &e, &code);
   } else {
