@@ -11,7 +11,7 @@
 #define EBBTURN_RELATIONAL_H
 
 #include "ebbturn/constants.h"
-#include "ebbturn/lattice.h"
+#include "ebbturn/grading.h"
 #include "ebbturn/observables.h"
 #include "ebbturn/readings.h"
 
@@ -29,6 +29,11 @@ struct ebb_circle {
   PetscInt points; /* 1: there is none */
   double length, momentum;
 };
+
+/* Can a reading be taken on a graded lattice, where psi is known at any v but not site by site? Clock and system have
+ * to be functions of v, or the clock the parameter, or b with instrument cosine_power, which is local. why [size]: what
+ * does not fit. */
+bool ebb_reading_is_graded(const struct ebb_reading_settings *reading, const char *parameter, char why[], size_t size);
 
 /* What every reading of a run shares. */
 struct ebb_relational_model {
@@ -57,11 +62,12 @@ struct ebb_reading_result {
   double *intervals; /* disjoint stretches of the parameter in which the clock may read this */
   double *probability, *quantile, *quantile_error;
   double *system_centre, *system_dwell, *level; /* system_dwell: int dt Tr P_Q rho_t, whatever the clock reads */
-  char (*status)[160];                          /* "ok" or "refused: reason" */
+  double *system_sites; /* sites that a bin stands for, where the bins are the rows of a graded lattice; else NULL */
+  char (*status)[160];  /* "ok" or "refused: reason" */
   bool *refused;
-  double back_action, order_violation, order_width;
-  double resolution, back_action_spread; /* cosine_power; NAN elsewhere */
-  bool commuting, mean_exists, binned;   /* binned: sites would not fit the limit, bins in ln v instead */
+  double back_action, back_action_error, order_violation, order_width; /* error: of a graded lattice, 0 elsewhere */
+  double resolution, back_action_spread;                               /* cosine_power; NAN elsewhere */
+  bool commuting, mean_exists, binned; /* binned: sites would not fit the limit, bins in ln v instead */
   double identity_probability, identity_dwell, identity_action, identity_commuting; /* residuals, rounding */
   double norm_drift;                                                                /* |int ||psi||^2 dt - 2W|/2W */
   double outside;                                                                   /* dwell outside the clock's bins */
@@ -72,6 +78,11 @@ struct ebb_reading_result {
 extern const char *const ebb_clock_verdict_names[]; /* "unusable", "poor", "good" */
 
 struct ebb_relational; /* opaque */
+
+/* Adds what readings need of a graded lattice that ends at |v| = last. model: lattice (the rows of any number of
+ * sites), constants and momentum_mean count. */
+PetscErrorCode ebb_relational_needs(const struct ebb_relational_model *model, double last, size_t n,
+                                    const struct ebb_reading_settings reading[], struct ebb_grading_needs *needs);
 
 /* problem [size]: what is wrong with reading *which on this model; "" where nothing is. Collective. */
 PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, size_t n,

@@ -141,33 +141,50 @@ PetscErrorCode ebb_relation_read(const char *result, const char *readings, struc
   PetscFunctionReturn(0);
 }
 
+/* The first thing asked for that no graded lattice gives. */
+static bool needs_every_site(const struct ebb_relation *r, char why[], size_t size)
+{
+  const char *parameter = strcmp(r->settings.clock.kind, "dust") ? "phi" : "dust";
+  char text[200];
+
+  why[0] = '\0';
+  for (size_t i = 0; i < r->readings.readings && !why[0]; i++)
+    if (!ebb_reading_is_graded(&r->readings.reading[i], parameter, text, sizeof text))
+      (void)snprintf(why, size, "readings[%zu] ('%s'): %s", i, r->readings.reading[i].name, text);
+  if (r->readings.two_time.given && !why[0]) (void)snprintf(why, size, "propagator: its states need every site");
+  return why[0] != '\0';
+}
+
 PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
 {
   const char *result = r->keeper.origin.place, *slash = strrchr(result, '/');
-  char folder[EBB_PATH_MAX];
+  char folder[EBB_PATH_MAX], why[320];
 
   PetscFunctionBegin;
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
-  if (!strcmp(r->settings.lattice.layout, "graded")) {
-    *code = EBB_EXIT_USAGE;
-    if (speaks())
-      fprintf(
-          stderr,
-          "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
-          "  it was evolved with lattice.layout = 'graded', and readings need the states on every site\n"
-          "  try       'ebbturn evolve MODEL --set lattice.layout=full' with a lattice.volume_max that can be held\n",
-          result);
-    PetscFunctionReturn(0);
+  if (needs_every_site(r, why, sizeof why)) {
+    if (!strcmp(r->settings.lattice.layout, "graded")) {
+      *code = EBB_EXIT_USAGE;
+      if (speaks())
+        fprintf(
+            stderr,
+            "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
+            "  %s, and '%s' was evolved with lattice.layout = 'graded'\n"
+            "  try       a clock with instrument 'cosine_power', or 'ebbturn evolve MODEL --set lattice.layout=full' "
+            "with a lattice.volume_max that can be held\n",
+            r->readings_name, why, result);
+      PetscFunctionReturn(0);
+    }
+    (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
   }
-  /* readings need the states on every site, whatever the run took */
-  (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
-  PetscCall(ebb_run_create(&r->settings, folder, PETSC_COMM_WORLD, &r->run, code));
+  PetscCall(ebb_run_create_read(&r->settings, folder, PETSC_COMM_WORLD, &r->readings, &r->run, code));
   if (*code) {
     if (speaks())
-      fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", result, r->run.problem);
+      fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n%s%s%s", result, r->run.problem,
+              why[0] ? "  every site is wanted: " : "", why, why[0] ? "\n" : "");
     PetscFunctionReturn(0);
   }
-  PetscCall(find_rows(r));
+  if (!r->run.graded) PetscCall(find_rows(r));
   PetscCall(ebb_run_start(&r->run));
   PetscFunctionReturn(0);
 }

@@ -78,8 +78,9 @@ PetscErrorCode ebb_relation_compare_rules(struct ebb_relation *r)
   PetscCall(evaluate(r, true, 2, ends, psi + 2 * one));
   for (size_t i = 0; i < 2 * one; i++) {
     const double complex d = psi[i] - psi[2 * one + i];
+    const double weight = l->grading ? ebb_lattice_weight(l, l->begin + (PetscInt)(i % one)) : 1.0;
 
-    distance[i / one] += creal(d * conj(d));
+    distance[i / one] += weight * creal(d * conj(d));
   }
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, distance, 2, MPI_DOUBLE, MPI_SUM, r->run.comm));
   r->state_error = fmax(r->state_error, sqrt(fmax(distance[0], distance[1])));

@@ -4,6 +4,7 @@
 #include "run.h"
 
 #include "ebbturn/grading.h"
+#include "ebbturn/relational.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -30,13 +31,34 @@ const char *ebb_run_not_graded(const struct ebb_run *run)
   return NULL;
 }
 
+/* What the run's readings need of a lattice up to v = v_max. */
+static PetscErrorCode needs_of(const struct ebb_run *run, double v_max, struct ebb_grading_needs *needs)
+{
+  const struct ebb_lattice *l = &run->lattice;
+  const double first = l->rows.half ? l->first[0] : fmax(l->first[0], l->first[1]);
+  const double last = first + l->rows.step * floor((v_max - first) / l->rows.step);
+  const struct ebb_relational_model model = {.lattice = l,
+                                             .constants = &run->constants,
+                                             .parameter = "phi",
+                                             .momentum_mean = run->plan.edge_k * run->rows.kappa};
+
+  PetscFunctionBegin;
+  *needs = (struct ebb_grading_needs){0};
+  if (!run->readings) PetscFunctionReturn(0);
+  PetscCall(ebb_relational_needs(&model, last, run->readings->readings, run->readings->reading, needs));
+  PetscFunctionReturn(0);
+}
+
 static PetscErrorCode make(const struct ebb_run *run, double ratio, double margin, struct ebb_grading **grading)
 {
+  struct ebb_grading_needs needs;
   const struct ebb_rows *rows = &run->rows;
   const struct ebb_plan *plan = &run->plan;
   const double asked = run->settings->lattice.volume_max;
   const struct ebb_grading_request request = {
       .first = rows->half ? rows->sector : fmax(rows->sector, rows->step - rows->sector),
+      .other_first = rows->half ? 0.0 : fmin(rows->sector, rows->step - rows->sector),
+      .needs = &needs,
       .step = rows->step,
       .plain_v = margin * plan->match_v + SPARE * rows->step,
       .v_max = asked > 0.0 ? asked : plan->v_max,
@@ -45,7 +67,9 @@ static PetscErrorCode make(const struct ebb_run *run, double ratio, double margi
       .window = ebb_edge_ratio(plan->edge_k)};
 
   PetscFunctionBegin;
+  PetscCall(needs_of(run, request.v_max, &needs));
   PetscCall(ebb_grading_make(&request, grading));
+  PetscCall(ebb_grading_needs_clear(&needs));
   PetscFunctionReturn(0);
 }
 

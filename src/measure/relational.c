@@ -21,6 +21,29 @@ static PetscErrorCode prepare_ranks(struct ebb_relational *r)
   PetscFunctionReturn(0);
 }
 
+/* Rows of a graded lattice, or bins that its blocks end at. */
+static PetscErrorCode prepare_graded_bins(struct ebb_relational *r, struct ebb_engine *e, char problem[], size_t size)
+{
+  const struct ebb_lattice *l = r->model.lattice;
+  const double first[2] = {l->first[0], l->rows.half ? 0.0 : l->first[1]};
+  double low, high;
+
+  PetscFunctionBegin;
+  if (e->settings.binning == EBB_BINNING_SITES && 8.0 * (double)e->n * (double)r->space->sites > r->model.bytes) {
+    PetscCall(PetscSNPrintf(problem, size, "%d outcomes on %d rows exceed the memory limit; give the system bins",
+                            (int)e->n, (int)r->space->sites));
+    PetscFunctionReturn(0);
+  }
+  if (e->settings.binning == EBB_BINNING_SITES) {
+    PetscCall(ebb_bins_create_rows(l, &e->settings.system, (size_t)r->space->sites, r->space->v, &e->bins));
+    PetscFunctionReturn(0);
+  }
+  ebb_graded_bins_range(&e->settings, first, fmax(ebb_lattice_last(l, 0), l->rows.half ? 0.0 : ebb_lattice_last(l, 1)),
+                        l->rows.step, &low, &high);
+  PetscCall(ebb_bins_create(&e->settings, e->system->size, e->system->value, 0.0, low, high, &e->bins));
+  PetscFunctionReturn(0);
+}
+
 /* What the moments of the system are taken of: the observable's value, of |v| where the bins are of ln v. */
 static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *e)
 {
@@ -46,13 +69,7 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
     e->settings.binning = EBB_BINNING_LOG;
     e->settings.system_bins = (int)fmax(r->model.bytes / (8.0 * (double)e->n), 64.0);
   }
-  if (e->settings.binning == EBB_BINNING_LOG && volume) { /* the cells of the first and the last site */
-    low = fmax(low - half_cell, 0.5 * low);
-    high += half_cell;
-  } else if (!s->kind->word.bounded) {
-    high += half_cell > 0.0 ? half_cell : 1e-9 * fmax(fabs(high), 1.0);
-    if (half_cell > 0.0) low = fmax(low - half_cell, 0.0);
-  }
+  if (volume || !s->kind->word.bounded) ebb_bins_range(&e->settings, volume, half_cell, &low, &high);
   if (volume && e->clock && e->clock->kind->word.takes_alpha) /* a mixed clock is not folded: v <= 0 is a leak alone */
     for (PetscInt k = 0; k < r->space->slices; k++)
       for (PetscInt i = r->space->sites; i < s->stride; i++) e->system->value[k * s->stride + i] = NAN;
@@ -64,14 +81,15 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
  * for sites of v, sixteen of them, the last one open; other systems: their own bins, sixteen groups at most. */
 static void prepare_groups(struct ebb_relational *r, struct ebb_engine *e)
 {
-  enum { GROUPS = 16 };
+  enum { GROUPS = EBB_READING_GROUPS };
   const double v_bounce = ebb_reading_volume_at(&r->model, 1.0);
+  const bool rows = r->model.lattice->grading && e->settings.binning == EBB_BINNING_SITES;
   struct ebb_bins *b = e->bins;
 
   b->groups = GROUPS;
   e->result.order_width = NAN;
-  if (!strcmp(e->system->kind->word.name, "v") && e->settings.binning == EBB_BINNING_SITES &&
-      !r->model.lattice->rows.prescription->grid && r->model.lattice->rows.half) {
+  if (rows || (!strcmp(e->system->kind->word.name, "v") && e->settings.binning == EBB_BINNING_SITES &&
+               !r->model.lattice->rows.prescription->grid && r->model.lattice->rows.half)) {
     b->per_group = PetscMax((PetscInt)lround(v_bounce / (1.5 * r->model.lattice->rows.step)), 1);
     e->result.order_width = r->model.lattice->rows.step * (double)b->per_group;
   } else {
@@ -127,6 +145,7 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
   problem[0] = '\0';
   e->settings = *settings;
   e->kind = ebb_reading_kind_find(s->clock.name);
+  if (r->model.lattice->grading && !ebb_reading_is_graded(s, r->model.parameter, problem, size)) PetscFunctionReturn(0);
   volume = !strcmp(s->system.name, "v");
   PetscCall(ebb_representation_create(r->space, &s->system, true, &e->system, problem, size));
   if (problem[0]) PetscFunctionReturn(0);
@@ -153,7 +172,11 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
     e->commuting = e->clock->keeps_sites && e->system->keeps_sites;
   }
   if (!e->cosine) e->n = e->windows->n;
-  if (!e->bins) PetscCall(prepare_bins(r, e));
+  if (!e->bins && r->model.lattice->grading)
+    PetscCall(prepare_graded_bins(r, e, problem, size));
+  else if (!e->bins)
+    PetscCall(prepare_bins(r, e));
+  if (problem[0]) PetscFunctionReturn(0);
   prepare_groups(r, e);
   PetscCall(allocate(r, e));
   if (!e->cosine) r->gathers = true;
@@ -197,7 +220,8 @@ static PetscErrorCode gather(struct ebb_relational *r, const double complex psi[
 {
   const struct ebb_lattice *l = r->model.lattice;
   const size_t local = (size_t)(l->end - l->begin);
-  /* on a grid psi is a density in ln v; l2 amplitudes carry the root of the cell */
+  /* on a grid psi is a density in ln v; l2 amplitudes carry the root of the cell, as those of nodes that of what they
+   * stand for */
   const double root = l->rows.prescription->grid ? sqrt(l->dx) : 1.0;
 
   PetscFunctionBegin;
@@ -207,6 +231,7 @@ static PetscErrorCode gather(struct ebb_relational *r, const double complex psi[
     PetscCallMPI(MPI_Allgatherv(psi + (size_t)k * local, r->count[r->rank], MPI_DOUBLE, line, r->count, r->start,
                                 MPI_DOUBLE, r->model.comm));
     for (PetscInt i = 0; root != 1.0 && i < r->space->sites; i++) line[i] *= root;
+    for (PetscInt i = 0; l->grading && i < r->space->sites; i++) line[i] *= sqrt(ebb_lattice_weight(l, i));
   }
   PetscFunctionReturn(0);
 }
