@@ -14,6 +14,7 @@
 #include "ebbturn/grading.h"
 #include "ebbturn/observables.h"
 #include "ebbturn/readings.h"
+#include "ebbturn/state.h"
 
 #include <complex.h>
 
@@ -93,6 +94,13 @@ PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, s
  * transforms of twice the lattice. */
 PetscErrorCode ebb_relational_add(struct ebb_relational *relational, PetscInt first, PetscInt count,
                                   const double complex psi[]);
+/* On a graded lattice readings of b need psi beside the rows as well: places of this rank (0: none of them is asked
+ * for), their states [count][places] at parameter values t, and the states of both kinds handed on. */
+PetscInt ebb_relational_places(const struct ebb_relational *relational);
+PetscErrorCode ebb_relational_around(const struct ebb_relational *relational, const struct ebb_packet *packet,
+                                     PetscInt count, const double t[], double complex around[]);
+PetscErrorCode ebb_relational_add_around(struct ebb_relational *relational, PetscInt first, PetscInt count,
+                                         const double complex psi[], const double complex around[]);
 /* All that was accumulated over the first `next` samples, to a checkpoint, or from one into readings just created of
  * the same settings on the same model; on as many ranks later numbers have the same bits, on others they agree to
  * rounding. PETSC_ERR_FILE_UNEXPECTED where the checkpoint is of other readings. Before finish. Collective. */

@@ -126,6 +126,7 @@ static PetscErrorCode put_attributes(struct ebb_store *store, const char *group,
     const char *name;
     double value;
   } rows[] = {{"back_action", x->back_action},
+              {"back_action_error", x->system_sites ? x->back_action_error : NAN},
               {"order_violation", x->order_violation},
               {"order_width", x->order_width},
               {"resolution", x->resolution},

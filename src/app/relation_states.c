@@ -143,15 +143,16 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
 {
   const size_t one =
       (size_t)(r->run.lattice.end - r->run.lattice.begin) * (size_t)(r->run.bundle ? r->run.bundle->points : 1);
+  const size_t places = (size_t)ebb_relational_places(relational);
   struct ebb_relation_state state = {r, relational};
   struct ebb_progress progress;
   PetscInt batch;
-  double complex *psi;
+  double complex *psi, *around;
   bool stop;
 
   PetscFunctionBegin;
-  PetscCall(choose_batch(r, one, &batch));
-  PetscCall(PetscMalloc1((size_t)batch * one, &psi));
+  PetscCall(choose_batch(r, one + places, &batch));
+  PetscCall(PetscMalloc2((size_t)batch * one, &psi, (size_t)batch * places, &around));
   ebb_progress_start(&progress, r->run.comm, mode, "window sample", r->keeper.next, r->m);
   PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, &state, &stop, code));
   while (!stop && r->keeper.next < r->m) {
@@ -162,13 +163,14 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
     else
       PetscCall(evaluate(r, false, count, r->t + first, psi));
     PetscCall(watch_edge(r, count, psi));
-    PetscCall(ebb_relational_add(relational, first, count, psi));
+    PetscCall(ebb_relational_around(relational, r->run.packet, count, r->t + first, around));
+    PetscCall(ebb_relational_add_around(relational, first, count, psi, around));
     r->keeper.next += count;
     ebb_progress_tell(&progress, r->keeper.next);
     PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, &state, &stop, code));
   }
   ebb_progress_end(&progress);
-  PetscCall(PetscFree(psi));
+  PetscCall(PetscFree2(psi, around));
   PetscFunctionReturn(0);
 }
 

@@ -86,8 +86,9 @@ static PetscErrorCode cut_bins(const struct ebb_reading_settings *s, const doubl
 
     PetscCall(ebb_grading_needs_cut(needs, edge));
     /* the sites before the end of a coarse bin, whose neighbours beyond it are not of it */
-    if (cosine && q > 0 && q % ((b->n + GROUPS - 1) / GROUPS) == 0)
-      PetscCall(ebb_grading_needs_cut(needs, edge - step * (double)(s->power + 1)));
+    if (cosine && (q == b->n || q % ((b->n + GROUPS - 1) / GROUPS) == 0))
+      for (int side = -1; side <= (first[1] > 0.0 ? 1 : -1); side += 2)
+        PetscCall(ebb_grading_needs_cut(needs, edge + (double)side * step * (double)(s->power + 1)));
   }
   PetscCall(ebb_bins_destroy(&b));
   PetscFunctionReturn(0);

@@ -200,14 +200,27 @@ static PetscErrorCode numbers(struct ebb_engine *e, PetscInt i, double eps)
   PetscFunctionReturn(0);
 }
 
+/* sum_Q |f_Q| by nodes is off by no more than a node's share where f changes its sign between two of them. */
+static double kinks(const struct ebb_reading_result *x, const double f[])
+{
+  double sum = 0.0;
+
+  for (PetscInt q = 1; x->system_sites && q < x->bins; q++)
+    if (f[q] * f[q - 1] < 0.0 && fmax(x->system_sites[q], x->system_sites[q - 1]) > 1.0)
+      sum += fmax(fabs(f[q]), fabs(f[q - 1]));
+  return sum;
+}
+
 /* Residuals that are rounding in every run, and what non-commutativity does. */
-static void identities(const struct ebb_relational *r, struct ebb_engine *e)
+static PetscErrorCode identities(const struct ebb_relational *r, struct ebb_engine *e)
 {
   struct ebb_reading_result *x = &e->result;
   const double window = r->t[r->model.samples - 1] - r->t[0];
   const PetscInt groups = e->bins->groups;
-  double dwell = 0.0, deficit = 0.0, distance = 0.0, violation = 0.0;
+  double dwell = 0.0, deficit = 0.0, distance = 0.0, violation = 0.0, *change;
 
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc1(x->bins, &change));
   x->identity_probability = x->identity_commuting = 0.0;
   for (PetscInt i = 0; i < x->n; i++) {
     double inside = e->lost[i];
@@ -225,12 +238,12 @@ static void identities(const struct ebb_relational *r, struct ebb_engine *e)
     deficit -= e->lost[i];
   }
   for (PetscInt q = 0; q < x->bins; q++) {
-    double change = e->action[q];
-
-    for (PetscInt i = 0; i < x->n; i++) change -= e->sum[(size_t)i * (size_t)x->bins + (size_t)q];
-    deficit += change - e->rest_bin[q];
-    distance += fabs(change - e->rest_bin[q]);
-    if (e->direct) x->identity_commuting = fmax(x->identity_commuting, fabs(change - e->rest_bin[q]) / window);
+    change[q] = e->action[q];
+    for (PetscInt i = 0; i < x->n; i++) change[q] -= e->sum[(size_t)i * (size_t)x->bins + (size_t)q];
+    change[q] -= e->rest_bin[q];
+    deficit += change[q];
+    distance += fabs(change[q]);
+    if (e->direct) x->identity_commuting = fmax(x->identity_commuting, fabs(change[q]) / window);
   }
   for (PetscInt j = 0; j < x->n * groups; j++) violation += fabs(e->joint[j] - e->reversed[j]);
   x->identity_dwell = fabs(dwell + e->rest - e->norm) / window;
@@ -238,7 +251,10 @@ static void identities(const struct ebb_relational *r, struct ebb_engine *e)
   x->norm_drift = fabs(e->norm - window) / window;
   x->outside = e->rest;
   x->back_action = 0.5 * distance / window;
+  x->back_action_error = 0.5 * kinks(x, change) / window;
   x->order_violation = e->commuting ? 0.0 : 0.5 * violation / window;
+  PetscCall(PetscFree(change));
+  PetscFunctionReturn(0);
 }
 
 static void resolution(struct ebb_engine *e)
@@ -316,7 +332,7 @@ PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
   PetscCall(purities(r, e));
   for (PetscInt i = 0; i < e->n; i++) PetscCall(numbers(e, i, fmin(share[i], 1.0)));
   PetscCall(PetscFree(share));
-  identities(r, e);
+  PetscCall(identities(r, e));
   resolution(e);
   ebb_engine_judge(r, e);
   PetscFunctionReturn(0);

@@ -1,5 +1,5 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
-#include "relational_impl.h"
+#include "cosine_power.h"
 
 #include <math.h>
 #include <string.h>
@@ -24,23 +24,25 @@ static PetscErrorCode prepare_ranks(struct ebb_relational *r)
 /* Rows of a graded lattice, or bins that its blocks end at. */
 static PetscErrorCode prepare_graded_bins(struct ebb_relational *r, struct ebb_engine *e, char problem[], size_t size)
 {
+  const size_t n = (size_t)(r->space->sites + (e->cosine ? e->cosine->off : 0));
   const struct ebb_lattice *l = r->model.lattice;
   const double first[2] = {l->first[0], l->rows.half ? 0.0 : l->first[1]};
   double low, high;
 
   PetscFunctionBegin;
-  if (e->settings.binning == EBB_BINNING_SITES && 8.0 * (double)e->n * (double)r->space->sites > r->model.bytes) {
+  if (e->settings.binning == EBB_BINNING_SITES && 8.0 * (double)e->n * (double)n > r->model.bytes) {
     PetscCall(PetscSNPrintf(problem, size, "%d outcomes on %d rows exceed the memory limit; give the system bins",
                             (int)e->n, (int)r->space->sites));
     PetscFunctionReturn(0);
   }
   if (e->settings.binning == EBB_BINNING_SITES) {
-    PetscCall(ebb_bins_create_rows(l, &e->settings.system, (size_t)r->space->sites, r->space->v, &e->bins));
+    PetscCall(ebb_bins_create_rows(l, &e->settings.system, n, e->cosine ? e->cosine->size : r->space->v, &e->bins));
     PetscFunctionReturn(0);
   }
   ebb_graded_bins_range(&e->settings, first, fmax(ebb_lattice_last(l, 0), l->rows.half ? 0.0 : ebb_lattice_last(l, 1)),
                         l->rows.step, &low, &high);
-  PetscCall(ebb_bins_create(&e->settings, e->system->size, e->system->value, 0.0, low, high, &e->bins));
+  PetscCall(
+      ebb_bins_create(&e->settings, n, e->cosine ? e->cosine->value : e->system->value, 0.0, low, high, &e->bins));
   PetscFunctionReturn(0);
 }
 
@@ -160,8 +162,8 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
     PetscCall(ebb_representation_create(r->space, &s->clock, false, &e->clock, problem, size));
     if (problem[0]) PetscFunctionReturn(0);
     /* a window of b on a volume binned by v needs no transform of the whole state */
-    if (s->instrument == EBB_INSTRUMENT_COSINE_POWER && volume && s->system.function == EBB_FUNCTION_NONE &&
-        s->clock.function == EBB_FUNCTION_NONE) {
+    if (ebb_reading_is_cosine_power(s) && (volume || r->model.lattice->grading) &&
+        s->system.function == EBB_FUNCTION_NONE) {
       e->n = s->centres;
       PetscCall(ebb_cosine_create(r, e));
     } else {
@@ -180,6 +182,21 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
   prepare_groups(r, e);
   PetscCall(allocate(r, e));
   if (!e->cosine) r->gathers = true;
+  PetscFunctionReturn(0);
+}
+
+/* What the widest reading of b needs beside the rows: half a stencil below, for the order of reading a whole one above.
+ */
+static PetscErrorCode prepare_stencils(struct ebb_relational *r, size_t n, const struct ebb_reading_settings reading[])
+{
+  PetscInt power = 0;
+
+  PetscFunctionBegin;
+  for (size_t i = 0; i < n; i++)
+    if (ebb_reading_is_cosine_power(&reading[i])) power = PetscMax(power, reading[i].power);
+  if (!power) PetscFunctionReturn(0);
+  PetscCall(PetscNew(&r->stencils));
+  ebb_stencils_make(r->model.lattice, power / 2, power, r->stencils);
   PetscFunctionReturn(0);
 }
 
@@ -205,6 +222,7 @@ PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, s
   r->model.t = r->t;
   PetscCall(prepare_ranks(r));
   PetscCall(ebb_space_create(&r->model, &r->space));
+  if (model->lattice->grading) PetscCall(prepare_stencils(r, n, reading));
   PetscCall(PetscCalloc1(n, &r->engine));
   r->n = n;
   for (size_t i = 0; i < n && !problem[0]; i++) {
@@ -236,7 +254,23 @@ static PetscErrorCode gather(struct ebb_relational *r, const double complex psi[
   PetscFunctionReturn(0);
 }
 
+PetscInt ebb_relational_places(const struct ebb_relational *r) { return r->stencils ? r->stencils->width : 0; }
+
+PetscErrorCode ebb_relational_around(const struct ebb_relational *r, const struct ebb_packet *packet, PetscInt count,
+                                     const double t[], double complex around[])
+{
+  PetscFunctionBegin;
+  if (r->stencils) PetscCall(ebb_stencils_samples(r->stencils, packet, count, t, around));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_relational_add(struct ebb_relational *r, PetscInt first, PetscInt count, const double complex psi[])
+{
+  return ebb_relational_add_around(r, first, count, psi, NULL);
+}
+
+PetscErrorCode ebb_relational_add_around(struct ebb_relational *r, PetscInt first, PetscInt count,
+                                         const double complex psi[], const double complex around[])
 {
   const size_t local = (size_t)(r->model.lattice->end - r->model.lattice->begin);
   const size_t one = local * (size_t)r->space->slices;
@@ -248,7 +282,7 @@ PetscErrorCode ebb_relational_add(struct ebb_relational *r, PetscInt first, Pets
       if (!r->engine[i].cosine) PetscCall(ebb_engine_add(r, &r->engine[i], first + s, r->full));
   }
   for (size_t i = 0; i < r->n; i++)
-    if (r->engine[i].cosine) PetscCall(ebb_cosine_add(r, &r->engine[i], first, count, psi));
+    if (r->engine[i].cosine) PetscCall(ebb_cosine_add(r, &r->engine[i], first, count, r->stencils ? around : psi));
   PetscFunctionReturn(0);
 }
 
@@ -314,6 +348,7 @@ PetscErrorCode ebb_relational_destroy(struct ebb_relational **relational)
     PetscCall(PetscFree4(e->c, e->chi, e->s, e->masked));
   }
   PetscCall(PetscFree(r->engine));
+  PetscCall(PetscFree(r->stencils));
   PetscCall(PetscFree(r->full));
   PetscCall(PetscFree2(r->count, r->start));
   PetscCall(PetscFree2(r->t, r->weight));
