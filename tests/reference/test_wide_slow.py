@@ -1,14 +1,52 @@
-# SPDX-License-Identifier: BSD-2-Clause
-"""Graded lattices as a user meets them: what the file says of its rows, the same numbers on 1, 2 and 3 ranks, what may be done with
-such a result and what may not."""
-from common import check, datasets, finish, h5py, np, os, run, tempfile
+#SPDX - License - Identifier : BSD - 2 - Clause
+""
+    "Graded lattices as a user meets them: what the file says of its rows, the same numbers on 1, 2 and 3 ranks, what may be done with
+    such a result and what may not .""
+                                    "
+    from common import check,
+    datasets, finish, h5py, np, os, run,
+    tempfile
 
-MODEL = """
-gravity: {{prescription: {prescription}, sector: {sector}}}
-clock: {{kind: scalar, from: -0.3, to: 0.25, samples: 9}}
-state: {{profile: gaussian_momentum, momentum: 40, relative_spread: 0.08}}
-lattice: {{layout: {layout}}}
-output: {{keep: [{keep}]}}
+        MODEL = ""
+                "
+    gravity:
+{
+  {
+  prescription : {
+    prescription
+  }
+    , sector: { sector }
+  }
+}
+clock:
+{
+  {
+  kind:
+    scalar, from : -0.3, to : 0.25, samples : 9
+  }
+}
+state:
+{
+  {
+  profile:
+    gaussian_momentum, momentum : 40, relative_spread : 0.08
+  }
+}
+lattice:
+{
+  {
+  layout : {
+    layout
+  }
+  }
+}
+output:
+{
+  {
+  keep:
+    [{keep}]
+  }
+}
 """
 READINGS = "readings:\n  - {name: b, clock: {observable: b, instrument: sharp, bins: 8}}\n"
 
