@@ -10,6 +10,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+const double ebb_relation_identity_limit = 1e-11;
 static const double SAME_CLOCK = 1e-12; /* of the run's range: a stored sample that is one of the window */
 enum { BATCH_MOST = 64 };
 static const double BATCH_BYTES = 2e8;          /* per rank, of states handed on at once */
@@ -49,7 +50,7 @@ static PetscErrorCode read_result(const char *path, struct ebb_relation *r, int 
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode read_readings(const char *path, struct ebb_relation *r, int *code)
+PetscErrorCode ebb_relation_read(const char *path, struct ebb_readings *readings, char **text, int *code)
 {
   const size_t words = ebb_reading_kinds();
   struct ebb_problems *problems = ebb_problems_create();
@@ -60,10 +61,10 @@ static PetscErrorCode read_readings(const char *path, struct ebb_relation *r, in
   PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for a list of problems");
   PetscCall(PetscMalloc1(words, &word));
   for (size_t i = 0; i < words; i++) word[i] = ebb_reading_word_of(ebb_reading_kind_at(i));
-  r->readings_text = ebb_command_text(path, &length, problems);
-  if (!r->readings_text)
+  *text = ebb_command_text(path, &length, problems);
+  if (!*text)
     *code = EBB_EXIT_FILE;
-  else if (!ebb_input_readings(r->readings_text, length, word, words, &r->readings, problems))
+  else if (!ebb_input_readings(*text, length, word, words, readings, problems))
     *code = EBB_EXIT_USAGE;
   if (*code && speaks()) ebb_problems_print(problems, stderr, path);
   PetscCall(PetscFree(word));
@@ -71,24 +72,20 @@ static PetscErrorCode read_readings(const char *path, struct ebb_relation *r, in
   PetscFunctionReturn(0);
 }
 
-/* The window's samples, inside the run's range. */
-static PetscErrorCode make_window(struct ebb_relation *r, const char *path, int *code)
+PetscErrorCode ebb_relation_window(struct ebb_relation *r, char problem[], size_t size)
 {
   struct ebb_window_settings *w = &r->readings.window;
   const struct ebb_clock_settings *c = &r->settings.clock;
   const double slack = 1e-12 * (c->to - c->from);
 
   PetscFunctionBegin;
+  problem[0] = '\0';
   if (isnan(w->from)) w->from = c->from;
   if (isnan(w->to)) w->to = c->to;
   if (w->samples == 0) w->samples = PetscMax(c->samples, 3);
   if (w->from < c->from - slack || w->to > c->to + slack || !(w->from < w->to)) {
-    *code = EBB_EXIT_USAGE;
-    if (speaks())
-      fprintf(stderr,
-              "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
-              "  window from %.15g to %.15g must lie inside the run's clock range, %.15g to %.15g\n",
-              path, w->from, w->to, c->from, c->to);
+    (void)snprintf(problem, size, "window from %.15g to %.15g must lie inside the run's clock range, %.15g to %.15g",
+                   w->from, w->to, c->from, c->to);
     PetscFunctionReturn(0);
   }
   r->m = w->samples;
@@ -124,24 +121,33 @@ static PetscErrorCode find_rows(struct ebb_relation *r)
   PetscFunctionReturn(0);
 }
 
+static void tell(const char *path, const char *problem)
+{
+  if (speaks()) fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", path, problem);
+}
+
 PetscErrorCode ebb_relation_create(const struct ebb_invocation *invocation, struct ebb_relation *r, int *code)
 {
   const char *result = invocation->operand[0], *slash = strrchr(result, '/');
-  char folder[EBB_PATH_MAX];
+  char folder[EBB_PATH_MAX], problem[320];
 
   PetscFunctionBegin;
   *code = EBB_EXIT_OK;
   *r = (struct ebb_relation){0};
   ebb_settings_unset(&r->settings);
   PetscCall(read_result(result, r, code));
-  if (!*code) PetscCall(read_readings(invocation->operand[1], r, code));
-  if (!*code) PetscCall(make_window(r, invocation->operand[1], code));
+  if (!*code) PetscCall(ebb_relation_read(invocation->operand[1], &r->readings, &r->readings_text, code));
   if (*code) PetscFunctionReturn(0);
+  PetscCall(ebb_relation_window(r, problem, sizeof problem));
+  if (problem[0]) {
+    *code = EBB_EXIT_USAGE;
+    tell(invocation->operand[1], problem);
+    PetscFunctionReturn(0);
+  }
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
   PetscCall(ebb_run_create(&r->settings, folder, PETSC_COMM_WORLD, &r->run, code));
   if (*code) {
-    if (speaks())
-      fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", result, r->run.problem);
+    tell(result, r->run.problem);
     PetscFunctionReturn(0);
   }
   PetscCall(find_rows(r));

@@ -12,6 +12,9 @@
 #include "ebbturn/store.h"
 #include "run.h"
 
+/* Identities hold to rounding in sums of the lattice's length: their largest residual, as a share of the window. */
+extern const double ebb_relation_identity_limit;
+
 struct ebb_relation {
   struct ebb_settings settings;
   struct ebb_readings readings;
@@ -28,6 +31,10 @@ struct ebb_relation {
 /* Opens the result and reads the readings file; problems are printed. *code: 0, 2 or 4. Collective. */
 PetscErrorCode ebb_relation_create(const struct ebb_invocation *invocation, struct ebb_relation *relation, int *code);
 PetscErrorCode ebb_relation_destroy(struct ebb_relation *relation);
+/* Its parts. The readings file alone, with its text (malloc'ed); problems are printed; *code as above. Collective. */
+PetscErrorCode ebb_relation_read(const char *path, struct ebb_readings *readings, char **text, int *code);
+/* The window's samples, where settings and readings are there; problem [size]: "" where it lies in the run's range. */
+PetscErrorCode ebb_relation_window(struct ebb_relation *relation, char problem[], size_t size);
 /* All samples of the window in order, batch by batch. psi [count][local]. */
 PetscErrorCode ebb_relation_stream(struct ebb_relation *relation, const char *progress,
                                    PetscErrorCode (*take)(void *context, PetscInt first, PetscInt count,
@@ -43,6 +50,16 @@ PetscErrorCode ebb_relation_put(struct ebb_store *store, const struct ebb_relati
 PetscErrorCode ebb_relation_put_field(struct ebb_store *store, const struct ebb_relation *relation, const char *group,
                                       const struct ebb_reading_settings *settings,
                                       const struct ebb_reading_result *result);
+/* What a clock calls the bounce. Numbers that it does not have are NAN. */
+struct ebb_relation_bounce {
+  const char *reading, *clock, *verdict, *meaning;
+  double median, median_error, at, low, high, dwell, clock_spread, effective;
+  PetscInt outcome; /* that it was read from, -1 where every outcome is refused */
+};
+/* Does a reading say anything of the volume? Only then it has a bounce. */
+bool ebb_relation_of_volume(const struct ebb_reading_settings *settings);
+struct ebb_relation_bounce ebb_relation_bounce_of(const struct ebb_reading_settings *settings,
+                                                  const struct ebb_reading_result *result);
 /* Group /comparison, one row for the parameter and one for each reading of v; printed as well. */
 PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct ebb_relation *relation,
                                            const struct ebb_relational *relational);
@@ -51,14 +68,14 @@ PetscErrorCode ebb_relation_put_bounds(struct ebb_store *store, const struct ebb
 /* The summary on stdout. */
 void ebb_relation_print(const struct ebb_relation *relation, const struct ebb_relational *relational);
 
-/* Histories and the propagator diagnostic, where the readings file asks for them. *code: 0, or 2 with the problem said.
- * Collective. */
+/* Histories and the propagator diagnostic, where the readings file asks for them. problem [size]: "" or what cannot be
+ * done. Collective. */
 struct ebb_relation_two_times {
   struct ebb_history *history; /* [v_stars], NULL where not asked for */
   struct ebb_two_time two_time;
 };
-PetscErrorCode ebb_relation_two_times(struct ebb_relation *relation, const struct ebb_invocation *invocation,
-                                      struct ebb_relation_two_times *two_times, int *code);
+PetscErrorCode ebb_relation_two_times(struct ebb_relation *relation, struct ebb_relation_two_times *two_times,
+                                      char problem[], size_t size);
 PetscErrorCode ebb_relation_two_times_put(struct ebb_store *store, const struct ebb_relation *relation,
                                           const struct ebb_relation_two_times *two_times);
 void ebb_relation_two_times_print(const struct ebb_relation *relation, const struct ebb_relation_two_times *two_times);

@@ -25,9 +25,6 @@ const struct ebb_command ebb_command_relate = {
     .run = run,
 };
 
-static const double IDENTITY_LIMIT =
-    1e-11; /* of the window: identities hold to rounding in sums of the lattice's length */
-
 /* -o as given, else RESULT's name with _relate before its ending. */
 static void out_path(const struct ebb_invocation *invocation, char path[], size_t size)
 {
@@ -68,11 +65,11 @@ static int judge(const struct ebb_relation *r, const struct ebb_relational *rela
               "ebbturn: warning: window: reading '%s' gives no probability at %d of %d outcomes, first at %.6g: %s\n",
               r->readings.reading[i].name, (int)refused, (int)x->n, x->centre[first], x->status[first]);
     if (refused && code == EBB_EXIT_OK) code = EBB_EXIT_VERDICT;
-    if (!(worst <= IDENTITY_LIMIT)) {
+    if (!(worst <= ebb_relation_identity_limit)) {
       code = EBB_EXIT_LIMIT;
       if (speaks)
         fprintf(stderr, "ebbturn: error: reading '%s': an identity is off by %.2g of the window, limit %.0e\n",
-                r->readings.reading[i].name, worst, IDENTITY_LIMIT);
+                r->readings.reading[i].name, worst, ebb_relation_identity_limit);
     }
     if (x->binned && speaks)
       fprintf(stderr,
@@ -132,7 +129,7 @@ static PetscErrorCode relate(const struct ebb_invocation *invocation, int *code)
   struct ebb_relational *relational = NULL;
   struct ebb_relation_two_times two_times = {0};
   struct ebb_store *store = NULL;
-  char path[2 * EBB_PATH_MAX];
+  char path[2 * EBB_PATH_MAX], problem[320] = "";
   bool kept = true;
   PetscErrorCode error;
   PetscMPIInt rank;
@@ -143,7 +140,13 @@ static PetscErrorCode relate(const struct ebb_invocation *invocation, int *code)
   error = ebb_relation_create(invocation, &r, code);
   if (!error && !*code) error = ebb_store_create(PETSC_COMM_WORLD, path, invocation->force, &store);
   if (!error && !*code) error = relate_readings(&r, invocation, &relational, code);
-  if (!error && !*code) error = ebb_relation_two_times(&r, invocation, &two_times, code);
+  if (!error && !*code) error = ebb_relation_two_times(&r, &two_times, problem, sizeof problem);
+  if (problem[0]) {
+    *code = EBB_EXIT_USAGE;
+    if (rank == 0)
+      fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", invocation->operand[1],
+              problem);
+  }
   if (!error && !*code) error = put_root(store, &r, invocation);
   if (!error && !*code && relational) error = ebb_relation_put(store, &r, relational);
   if (!error && !*code && relational) error = ebb_relation_put_comparison(store, &r, relational);
