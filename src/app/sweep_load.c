@@ -36,13 +36,16 @@ static void beside(const char *file, const char *name, char path[3 * EBB_PATH_MA
 static int load_readings(struct ebb_sweep *sweep)
 {
   char path[3 * EBB_PATH_MAX];
+  struct ebb_relation relation = {.readings_name = path};
   int code = EBB_EXIT_OK;
   PetscErrorCode error;
 
   sweep->base = ebb_checkpoint_crc(0, sweep->base_text, sweep->base_length);
   if (!sweep->plan.readings[0]) return EBB_EXIT_OK;
   beside(sweep->plan_name, sweep->plan.readings, path);
-  error = ebb_relation_read(path, &sweep->readings, &sweep->readings_text, &code);
+  error = ebb_relation_read_readings(path, &relation, &code);
+  sweep->readings = relation.readings;
+  sweep->readings_text = relation.readings_text;
   if (error) return ebb_exit_from_error(error);
   if (code) return code;
   sweep->findings = ebb_sweep_findings(&sweep->readings);

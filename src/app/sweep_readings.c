@@ -9,29 +9,6 @@
 #include <stdio.h>
 #include <string.h>
 
-/* What the stream of states is handed to. */
-struct target {
-  struct ebb_relational *relational;
-  struct ebb_watch *watch; /* NULL: nobody asks */
-  bool stop;
-  int code;
-};
-
-/* Once it is to stop, the rest of the window is passed over. */
-static PetscErrorCode take(void *context, PetscInt first, PetscInt count, const double complex psi[])
-{
-  struct target *target = context;
-  enum ebb_action action;
-
-  PetscFunctionBegin;
-  if (target->stop) PetscFunctionReturn(0);
-  PetscCall(ebb_relational_add(target->relational, first, count, psi));
-  if (!target->watch) PetscFunctionReturn(0);
-  PetscCall(ebb_watch_ask(target->watch, &action, &target->code));
-  target->stop = action == EBB_ACTION_STOP;
-  PetscFunctionReturn(0);
-}
-
 static void judge(struct ebb_sweep_finding *finding, const char *status, const char *verdict, const char *reason)
 {
   (void)snprintf(finding->status, sizeof finding->status, "%s", status);
@@ -96,7 +73,8 @@ static PetscErrorCode borrow(const struct ebb_sweep *sweep, const struct ebb_set
   int code = 0;
 
   PetscFunctionBegin;
-  *r = (struct ebb_relation){.settings = *settings, .readings = sweep->readings};
+  *r = (struct ebb_relation){
+      .settings = *settings, .readings = sweep->readings, .abandon = true, .keeper = {.watch = sweep->watch}};
   PetscCall(ebb_relation_window(r, problem, size));
   if (problem[0]) PetscFunctionReturn(0);
   PetscCall(ebb_run_create(&r->settings, sweep->folder, comm, &r->run, &code));
@@ -114,7 +92,8 @@ static PetscErrorCode give_back(struct ebb_relation *r)
 }
 
 /* All clocks in one pass over the window. */
-static PetscErrorCode clocks(struct ebb_relation *r, struct target *target, char problem[], size_t size)
+static PetscErrorCode clocks(struct ebb_relation *r, struct ebb_relational **relational, char problem[], size_t size,
+                             int *code)
 {
   const size_t n = r->readings.readings;
   struct ebb_relational_model model;
@@ -124,15 +103,16 @@ static PetscErrorCode clocks(struct ebb_relation *r, struct target *target, char
   PetscFunctionBegin;
   if (n == 0) PetscFunctionReturn(0);
   ebb_relation_model(r, &model);
-  PetscCall(ebb_relational_create(&model, n, r->readings.reading, &target->relational, &which, why, sizeof why));
+  PetscCall(ebb_relational_create(&model, n, r->readings.reading, relational, &which, why, sizeof why));
   if (why[0]) {
     (void)snprintf(problem, size, "readings[%zu] ('%.60s'): %.220s", which, r->readings.reading[which].name, why);
     PetscFunctionReturn(0);
   }
-  PetscCall(ebb_relation_stream(r, "never", take, target));
-  if (target->stop) PetscFunctionReturn(0);
-  ebb_relational_propagation(target->relational, fmax(r->state_error, PETSC_MACHINE_EPSILON));
-  PetscCall(ebb_relational_finish(target->relational));
+  PetscCall(ebb_relation_stream(r, "never", *relational, code));
+  if (*code) PetscFunctionReturn(0);
+  PetscCall(ebb_relation_compare_rules(r));
+  ebb_relational_propagation(*relational, fmax(r->state_error, PETSC_MACHINE_EPSILON));
+  PetscCall(ebb_relational_finish(*relational));
   PetscFunctionReturn(0);
 }
 
@@ -142,19 +122,20 @@ static void fail(struct ebb_sweep_finding finding[], size_t n, const char *probl
     if (!finding[i].status[0]) judge(&finding[i], "failed", "", problem);
 }
 
-static PetscErrorCode read_all(struct ebb_relation *r, struct target *target, struct ebb_sweep_finding finding[],
-                               size_t findings, char problem[], size_t size)
+static PetscErrorCode read_all(struct ebb_relation *r, struct ebb_relational **relational,
+                               struct ebb_sweep_finding finding[], size_t findings, char problem[], size_t size,
+                               int *code)
 {
   struct ebb_relation_two_times two = {0};
   size_t f = r->readings.readings;
 
   PetscFunctionBegin;
   PetscCall(ebb_run_start(&r->run));
-  PetscCall(clocks(r, target, problem, size));
-  for (size_t i = 0; i < f && !problem[0] && !target->stop; i++)
-    take_reading(&r->readings.reading[i], ebb_relational_result(target->relational, i), &finding[i]);
+  PetscCall(clocks(r, relational, problem, size, code));
+  for (size_t i = 0; i < f && !problem[0] && !*code; i++)
+    take_reading(&r->readings.reading[i], ebb_relational_result(*relational, i), &finding[i]);
   fail(finding, problem[0] ? f : 0, problem);
-  if (target->stop || f == findings) PetscFunctionReturn(0);
+  if (*code || f == findings) PetscFunctionReturn(0);
   PetscCall(ebb_relation_two_times(r, &two, problem, size));
   if (!problem[0]) {
     if (two.history) take_histories(&r->readings.histories, two.history, &finding[f]);
@@ -167,7 +148,7 @@ static PetscErrorCode read_all(struct ebb_relation *r, struct target *target, st
 PetscErrorCode ebb_sweep_read_clocks(struct ebb_sweep *sweep, size_t c, const struct ebb_settings *settings, int *code)
 {
   struct ebb_sweep_finding *finding = &sweep->finding[c * sweep->findings];
-  struct target target = {.watch = &sweep->watch};
+  struct ebb_relational *relational = NULL;
   struct ebb_relation r;
   char problem[320] = "", trouble[EBB_SWEEP_REASON] = "";
   PetscErrorCode error;
@@ -175,13 +156,11 @@ PetscErrorCode ebb_sweep_read_clocks(struct ebb_sweep *sweep, size_t c, const st
   PetscFunctionBegin;
   PetscCall(PetscPushErrorHandler(ebb_sweep_quiet, trouble));
   error = borrow(sweep, settings, sweep->group, &r, problem, sizeof problem);
-  if (!error && !problem[0]) error = read_all(&r, &target, finding, sweep->findings, problem, sizeof problem);
+  if (!error && !problem[0]) error = read_all(&r, &relational, finding, sweep->findings, problem, sizeof problem, code);
   PetscCall(PetscPopErrorHandler());
-  if (target.stop)
-    *code = target.code;
-  else if (error || problem[0])
-    fail(finding, sweep->findings, error ? trouble : problem);
-  PetscCall(ebb_relational_destroy(&target.relational));
+  if (!*code && (error || problem[0])) fail(finding, sweep->findings, error ? trouble : problem);
+  sweep->watch.longest = fmax(sweep->watch.longest, r.keeper.watch.longest);
+  PetscCall(ebb_relational_destroy(&relational));
   PetscCall(give_back(&r));
   PetscFunctionReturn(0);
 }
