@@ -80,6 +80,7 @@ struct ebb_window_settings {
 
 struct ebb_readings {
   struct ebb_window_settings window;
+  double checkpoint_every; /* seconds between checkpoints; NAN: none but at signals and before a time limit */
   struct ebb_reading_settings *reading; /* [readings], owned */
   size_t readings;
   struct ebb_histories_settings histories;

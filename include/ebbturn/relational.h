@@ -12,6 +12,7 @@
 
 #include "ebbturn/constants.h"
 #include "ebbturn/lattice.h"
+#include "ebbturn/observables.h"
 #include "ebbturn/readings.h"
 
 #include <complex.h>
@@ -81,6 +82,11 @@ PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, s
  * transforms of twice the lattice. */
 PetscErrorCode ebb_relational_add(struct ebb_relational *relational, PetscInt first, PetscInt count,
                                   const double complex psi[]);
+/* All that was accumulated over the first `next` samples, to a checkpoint, or from one into readings just created of
+ * the same settings on the same model; on as many ranks later numbers have the same bits, on others they agree to
+ * rounding. PETSC_ERR_FILE_UNEXPECTED where the checkpoint is of other readings. Before finish. Collective. */
+PetscErrorCode ebb_relational_move(struct ebb_relational *relational, bool load, PetscInt next, ebb_move *move,
+                                   void *context);
 /* Error of the states that were added, relative to their norm; before finish. */
 void ebb_relational_propagation(struct ebb_relational *relational, double error);
 /* Sums over ranks and everything that follows from the histograms. Collective. */

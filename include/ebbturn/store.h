@@ -45,6 +45,8 @@ void ebb_store_say(const char *format, ...) __attribute__((format(printf, 1, 2))
  * PetscCall may carry a file failure up to the function that prints it. */
 PetscErrorCode ebb_store_error_handler(MPI_Comm comm, int line, const char *function, const char *file,
                                        PetscErrorCode code, PetscErrorType type, const char *message, void *context);
+/* Has that handler seen an allocation fail? */
+bool ebb_store_no_memory(void);
 
 /* Opens PATH.part for writing. Fails (PETSC_ERR_FILE_OPEN, message names the path and the reason) when the folder is
  * not writable, or when PATH exists and force is false: both are looked at before anything is written. */

@@ -34,7 +34,8 @@ pid=
 trap 'requeue=1; kill -USR1 "$pid" 2>/dev/null' USR1 # limit near: checkpoint, and come back
 trap 'kill -USR1 "$pid" 2>/dev/null' TERM            # scancel: checkpoint, and stay away
 # Another launcher: RUN='mpiexec'. srun hands signals to the ranks and leaves them time; most mpiexecs leave a second.
-read -r -a launcher <<<"${RUN:-srun --mpi=pmix}"
+# A task that dies takes the step with it: the others would wait for it.
+read -r -a launcher <<<"${RUN:-srun --mpi=pmix --kill-on-bad-exit=1}"
 "${launcher[@]}" "${EBBTURN:-ebbturn}" "${words[@]}" &
 pid=$!
 wait "$pid"

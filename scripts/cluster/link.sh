@@ -22,5 +22,6 @@ elif [ "$command" = evolve ]; then
 else
   words=(sweep "$input" --resume "$result")
 fi
-read -r -a launcher <<<"${RUN:-srun --mpi=pmix}"
+# a task that dies takes the step with it: the others would wait for it
+read -r -a launcher <<<"${RUN:-srun --mpi=pmix --kill-on-bad-exit=1}"
 exec "${launcher[@]}" "${EBBTURN:-ebbturn}" "${words[@]}" --time-limit "${LIMIT:-3h50m}"

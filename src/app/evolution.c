@@ -29,24 +29,19 @@ PetscInt ebb_evolution_batch(const struct ebb_run *run)
   return PetscMax((PetscInt)fmin((double)memory, most), 1);
 }
 
-/* At a safe point: whatever the watch asks for. */
 static PetscErrorCode safe_point(struct ebb_evolution *e, bool *stop, int *code)
 {
   enum ebb_action action;
-  bool good = true;
 
   PetscFunctionBegin;
   *stop = false;
   if (!e->watched) PetscFunctionReturn(0);
-  PetscCall(ebb_watch_ask(&e->watch, &action, code));
   if (e->abandon) {
+    PetscCall(ebb_watch_ask(&e->keeper.watch, &action, code));
     *stop = action == EBB_ACTION_STOP;
-    PetscFunctionReturn(0);
+  } else {
+    PetscCall(ebb_keeper_safe_point(&e->keeper, ebb_evolution_move, e, stop, code));
   }
-  if (action == EBB_ACTION_GO || (action == EBB_ACTION_KEEP && e->next == e->run.m)) PetscFunctionReturn(0);
-  PetscCall(ebb_evolution_save(e, true, &good));
-  *stop = action == EBB_ACTION_STOP;
-  if (*stop && !good) *code = EBB_EXIT_FILE;
   PetscFunctionReturn(0);
 }
 
@@ -63,10 +58,10 @@ PetscErrorCode ebb_evolution_evaluate(struct ebb_evolution *e, const char *progr
   bool stop;
 
   PetscFunctionBegin;
-  ebb_progress_start(&progress, run->comm, progress_mode, "clock sample", run->m);
+  ebb_progress_start(&progress, run->comm, progress_mode, "clock sample", e->keeper.next, run->m);
   PetscCall(safe_point(e, &stop, code));
-  while (!stop && e->next < run->m) {
-    const PetscInt first = e->next, count = PetscMin(batch, run->m - first);
+  while (!stop && e->keeper.next < run->m) {
+    const PetscInt first = e->keeper.next, count = PetscMin(batch, run->m - first);
     struct ebb_sheet sheet;
 
     PetscCall(run->source.evaluate(&run->source, count, run->phi + first, &request, &sheet));
@@ -75,8 +70,8 @@ PetscErrorCode ebb_evolution_evaluate(struct ebb_evolution *e, const char *progr
     ebb_record_take(&e->record, run, first, &sheet);
     if (e->store) PetscCall(ebb_record_batch(e->store, run, first, &sheet));
     PetscCall(ebb_sheet_clear(&sheet));
-    e->next += count;
-    ebb_progress_tell(&progress, e->next);
+    e->keeper.next += count;
+    ebb_progress_tell(&progress, e->keeper.next);
     PetscCall(safe_point(e, &stop, code));
   }
   ebb_progress_end(&progress);

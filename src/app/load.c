@@ -5,6 +5,7 @@
 #include "ebbturn/store.h"
 
 #include <mpi.h>
+#include <stdio.h>
 #include <stdlib.h>
 
 /* This rank's place; a single process where MPI does not run. */
@@ -69,6 +70,29 @@ int ebb_command_load(const struct ebb_invocation *invocation, unsigned need, str
   return code;
 }
 
+/* A rank may be alone with such a failure, and the others would wait for it for ever: it ends the whole job, before
+ * anything is given back that takes all of them. */
+static void end_with_bug(PetscErrorCode error)
+{
+  int rank, ranks = 1;
+
+  const bool up = whole_world(&rank);
+  if (up) (void)MPI_Comm_size(MPI_COMM_WORLD, &ranks);
+  if (error == PETSC_ERR_MEM || ebb_store_no_memory())
+    fprintf(stderr,
+            "ebbturn: error: rank %d of %d has no more memory\n"
+            "  try       more ranks or nodes, or a smaller model; 'ebbturn check MODEL' estimates what a rank needs\n",
+            rank, ranks);
+  else
+    fprintf(stderr,
+            "ebbturn: error: this is a bug in ebbturn (code %d, rank %d of %d)\n"
+            "  try       report it with the model file and the trace above\n",
+            (int)error, rank, ranks);
+  if (!up || ranks == 1) return;
+  (void)fflush(NULL);
+  MPI_Abort(MPI_COMM_WORLD, EBB_EXIT_BUG);
+}
+
 int ebb_exit_from_error(PetscErrorCode error)
 {
   const char *reason;
@@ -81,10 +105,6 @@ int ebb_exit_from_error(PetscErrorCode error)
     if (rank == 0 && ebb_store_reason(&reason)) fprintf(stderr, "ebbturn: error: %s\n", reason);
     return EBB_EXIT_FILE;
   }
-  if (rank == 0)
-    fprintf(stderr,
-            "ebbturn: error: this is a bug in ebbturn (code %d)\n"
-            "  try       report it with the model file and the trace above\n",
-            (int)error);
+  end_with_bug(error);
   return EBB_EXIT_BUG;
 }

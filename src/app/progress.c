@@ -16,12 +16,13 @@ static double now(void)
   return t;
 }
 
-void ebb_progress_start(struct ebb_progress *p, MPI_Comm comm, const char *mode, const char *what, PetscInt total)
+void ebb_progress_start(struct ebb_progress *p, MPI_Comm comm, const char *mode, const char *what, PetscInt first,
+                        PetscInt total)
 {
   PetscMPIInt rank = 0;
 
   (void)MPI_Comm_rank(comm, &rank);
-  *p = (struct ebb_progress){.what = what, .start = now(), .total = total};
+  *p = (struct ebb_progress){.what = what, .start = now(), .first = first, .total = total};
   p->quiet = rank != 0 || (mode && !strcmp(mode, "never"));
   p->live = (mode && !strcmp(mode, "always")) || isatty(STDERR_FILENO);
   p->last = p->start;
@@ -30,12 +31,12 @@ void ebb_progress_start(struct ebb_progress *p, MPI_Comm comm, const char *mode,
 void ebb_progress_tell(struct ebb_progress *p, PetscInt done)
 {
   const double t = now(), spent = t - p->start;
-  const double left = done > 0 ? spent * (double)(p->total - done) / (double)done : 0.0;
+  const double here = (double)(done - p->first), left = here > 0.0 ? spent * (double)(p->total - done) / here : 0.0;
 
   if (p->quiet || t - p->last < (p->live ? LIVE_EVERY : LOG_EVERY)) return;
   p->last = t;
   fprintf(stderr, "%s%s %" PetscInt_FMT " of %" PetscInt_FMT ", %.3g per s, %.0f s left%s", p->live ? "\r\033[K" : "",
-          p->what, done, p->total, spent > 0.0 ? (double)done / spent : 0.0, left, p->live ? "" : "\n");
+          p->what, done, p->total, spent > 0.0 ? here / spent : 0.0, left, p->live ? "" : "\n");
   fflush(stderr);
 }
 

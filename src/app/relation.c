@@ -2,17 +2,13 @@
 #include "relation.h"
 
 #include "ebbturn/input.h"
-#include "ebbturn/propagator.h"
-#include "progress.h"
 
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
 
-static const double SAME_CLOCK = 1e-12; /* of the run's range: a stored sample that is one of the window */
-enum { BATCH_MOST = 64 };
-static const double BATCH_BYTES = 2e8;          /* per rank, of states handed on at once */
+static const double SAME_CLOCK = 1e-12;         /* of the run's range: a stored sample that is one of the window */
 static const double ACCUMULATOR_BYTES = 2.56e8; /* a histogram larger than this is binned in ln v */
 
 static bool speaks(void)
@@ -27,13 +23,18 @@ static bool speaks(void)
 static PetscErrorCode read_result(const char *path, struct ebb_relation *r, int *code)
 {
   struct ebb_problems *problems;
-  bool has_model, has_settings;
+  bool has_model, has_settings, has_name;
+  char *name = NULL;
 
   PetscFunctionBegin;
   /* what can fail on the user's side comes before the list exists */
   PetscCall(ebb_store_open(PETSC_COMM_WORLD, path, &r->source));
   PetscCall(ebb_store_get_text(r->source, "/", "model_text", &r->model_text, &has_model));
   PetscCall(ebb_store_get_text(r->source, "/", "settings_json", &r->settings_text, &has_settings));
+  PetscCall(ebb_store_get_text(r->source, "/provenance", "run", &name, &has_name));
+  if (has_settings) r->fingerprint = ebb_checkpoint_crc(0, r->settings_text, strlen(r->settings_text));
+  if (has_name) r->fingerprint = ebb_checkpoint_crc(r->fingerprint, name, strlen(name));
+  PetscCall(PetscFree(name));
   problems = ebb_problems_create();
   PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for a list of problems");
   if (!has_model || !has_settings)
@@ -49,6 +50,7 @@ static PetscErrorCode read_result(const char *path, struct ebb_relation *r, int 
   PetscFunctionReturn(0);
 }
 
+/* path NULL: the text of a checkpoint. */
 static PetscErrorCode read_readings(const char *path, struct ebb_relation *r, int *code)
 {
   const size_t words = ebb_reading_kinds();
@@ -60,19 +62,22 @@ static PetscErrorCode read_readings(const char *path, struct ebb_relation *r, in
   PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for a list of problems");
   PetscCall(PetscMalloc1(words, &word));
   for (size_t i = 0; i < words; i++) word[i] = ebb_reading_word_of(ebb_reading_kind_at(i));
-  r->readings_text = ebb_command_text(path, &length, problems);
+  if (path)
+    r->readings_text = ebb_command_text(path, &length, problems);
+  else if ((r->readings_text = strdup(r->keeper.origin.input_text)))
+    length = r->keeper.origin.length;
   if (!r->readings_text)
     *code = EBB_EXIT_FILE;
   else if (!ebb_input_readings(r->readings_text, length, word, words, &r->readings, problems))
     *code = EBB_EXIT_USAGE;
-  if (*code && speaks()) ebb_problems_print(problems, stderr, path);
+  if (*code && speaks()) ebb_problems_print(problems, stderr, r->readings_name);
   PetscCall(PetscFree(word));
   ebb_problems_destroy(&problems);
   PetscFunctionReturn(0);
 }
 
 /* The window's samples, inside the run's range. */
-static PetscErrorCode make_window(struct ebb_relation *r, const char *path, int *code)
+static PetscErrorCode make_window(struct ebb_relation *r, int *code)
 {
   struct ebb_window_settings *w = &r->readings.window;
   const struct ebb_clock_settings *c = &r->settings.clock;
@@ -88,7 +93,7 @@ static PetscErrorCode make_window(struct ebb_relation *r, const char *path, int 
       fprintf(stderr,
               "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
               "  window from %.15g to %.15g must lie inside the run's clock range, %.15g to %.15g\n",
-              path, w->from, w->to, c->from, c->to);
+              r->readings_name, w->from, w->to, c->from, c->to);
     PetscFunctionReturn(0);
   }
   r->m = w->samples;
@@ -124,19 +129,24 @@ static PetscErrorCode find_rows(struct ebb_relation *r)
   PetscFunctionReturn(0);
 }
 
-PetscErrorCode ebb_relation_create(const struct ebb_invocation *invocation, struct ebb_relation *r, int *code)
+PetscErrorCode ebb_relation_read(const char *result, const char *readings, struct ebb_relation *r, int *code)
 {
-  const char *result = invocation->operand[0], *slash = strrchr(result, '/');
+  PetscFunctionBegin;
+  ebb_settings_unset(&r->settings);
+  r->readings_name = readings ? readings : r->keeper.path;
+  PetscCall(read_result(result, r, code));
+  if (!*code) PetscCall(read_readings(readings, r, code));
+  if (!*code) PetscCall(make_window(r, code));
+  r->keeper.total = r->readings.readings ? r->m : 0;
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
+{
+  const char *result = r->keeper.origin.place, *slash = strrchr(result, '/');
   char folder[EBB_PATH_MAX];
 
   PetscFunctionBegin;
-  *code = EBB_EXIT_OK;
-  *r = (struct ebb_relation){0};
-  ebb_settings_unset(&r->settings);
-  PetscCall(read_result(result, r, code));
-  if (!*code) PetscCall(read_readings(invocation->operand[1], r, code));
-  if (!*code) PetscCall(make_window(r, invocation->operand[1], code));
-  if (*code) PetscFunctionReturn(0);
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
   PetscCall(ebb_run_create(&r->settings, folder, PETSC_COMM_WORLD, &r->run, code));
   if (*code) {
@@ -161,149 +171,6 @@ PetscErrorCode ebb_relation_destroy(struct ebb_relation *r)
   free(r->readings_text);
   ebb_readings_clear(&r->readings);
   ebb_settings_clear(&r->settings);
-  PetscFunctionReturn(0);
-}
-
-static bool steps(const struct ebb_run *run)
-{
-  return run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV;
-}
-
-/* States of two fields, [count][points][local] by the field's momentum. */
-static PetscErrorCode bundle_samples(const struct ebb_bundle *b, const struct ebb_lattice *l, PetscInt count,
-                                     const double t[], double complex psi[])
-{
-  const size_t local = (size_t)(l->end - l->begin), one = local * (size_t)b->points;
-  double complex *slice;
-
-  PetscFunctionBegin;
-  PetscCall(PetscMalloc1((size_t)count * local, &slice));
-  memset(psi, 0, (size_t)count * one * sizeof *psi);
-  for (PetscInt k = 0; k < b->n; k++) {
-    const size_t place = (size_t)(b->place[k] + b->points / 2);
-
-    PetscCall(ebb_packet_samples(b->packet[k], l, count, t, EBB_FIELD_PSI, slice));
-    for (PetscInt s = 0; s < count; s++)
-      for (size_t i = 0; i < local; i++)
-        psi[(size_t)s * one + place * local + i] = sqrt(b->weight[k]) * slice[(size_t)s * local + i];
-  }
-  PetscCall(PetscFree(slice));
-  PetscFunctionReturn(0);
-}
-
-/* Samples [first, first + count) by either rule, however this run gives them. */
-static PetscErrorCode evaluate(struct ebb_relation *r, bool check, PetscInt count, const double t[],
-                               double complex psi[])
-{
-  const struct ebb_sheet_request request = {.state = true};
-  const struct ebb_run *run = &r->run;
-  struct ebb_sheet sheet;
-
-  PetscFunctionBegin;
-  if (run->bundle) {
-    PetscCall(bundle_samples(check ? run->check_bundle : run->bundle, &run->lattice, count, t, psi));
-  } else if (steps(run)) {
-    PetscCall(r->run.source.evaluate(&r->run.source, count, t, &request, &sheet));
-    memcpy(psi, sheet.psi, (size_t)count * (size_t)sheet.local * sizeof *psi);
-    PetscCall(ebb_sheet_clear(&sheet));
-    r->state_error = fmax(r->state_error, ebb_source_steps_error(&r->run.source));
-  } else {
-    PetscCall(ebb_packet_samples(check ? run->check : run->packet, &run->lattice, count, t, EBB_FIELD_PSI, psi));
-  }
-  PetscFunctionReturn(0);
-}
-
-/* Distance of the state to that of the independent rule, at the ends of the window, where phases are largest. */
-static PetscErrorCode compare_rules(struct ebb_relation *r)
-{
-  const struct ebb_lattice *l = &r->run.lattice;
-  const size_t one = (size_t)(l->end - l->begin) * (size_t)(r->run.bundle ? r->run.bundle->points : 1);
-  const double ends[2] = {r->t[0], r->t[r->m - 1]};
-  double complex *psi;
-  double distance[2] = {0.0, 0.0};
-
-  PetscFunctionBegin;
-  /* a rule on another lattice is compared by what it says of observables, in the run itself */
-  if (!(r->run.bundle ? (void *)r->run.check_bundle : (void *)r->run.check) || r->run.check_lattice.rows.clock)
-    PetscFunctionReturn(0);
-  PetscCall(PetscMalloc1(4 * one, &psi));
-  PetscCall(evaluate(r, false, 2, ends, psi));
-  PetscCall(evaluate(r, true, 2, ends, psi + 2 * one));
-  for (size_t i = 0; i < 2 * one; i++) {
-    const double complex d = psi[i] - psi[2 * one + i];
-
-    distance[i / one] += creal(d * conj(d));
-  }
-  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, distance, 2, MPI_DOUBLE, MPI_SUM, r->run.comm));
-  r->state_error = fmax(r->state_error, sqrt(fmax(distance[0], distance[1])));
-  PetscCall(PetscFree(psi));
-  PetscFunctionReturn(0);
-}
-
-static PetscErrorCode read_rows(struct ebb_relation *r, PetscInt first, PetscInt count, double complex psi[])
-{
-  const hsize_t begin = (hsize_t)r->run.lattice.begin, local = (hsize_t)r->run.lattice.end - begin;
-
-  PetscFunctionBegin;
-  for (PetscInt s = 0; s < count; s++)
-    PetscCall(ebb_store_read(r->source, "/state/psi", (const hsize_t[]){r->row[first + s], begin},
-                             (const hsize_t[]){1, local}, psi + (hsize_t)s * local));
-  PetscFunctionReturn(0);
-}
-
-/* Probability near the lattice's end, where a wall would send it back. */
-static PetscErrorCode watch_edge(struct ebb_relation *r, PetscInt count, const double complex psi[])
-{
-  const struct ebb_lattice *l = &r->run.lattice;
-  const PetscInt local = l->end - l->begin, slices = r->run.bundle ? r->run.bundle->points : 1;
-  const double edge = 0.9 * fabs(ebb_lattice_v(l, ebb_lattice_size(l) - 1));
-  double *beyond;
-
-  PetscFunctionBegin;
-  PetscCall(PetscCalloc1(count, &beyond));
-  for (PetscInt i = 0; i < local; i++) {
-    if (fabs(ebb_lattice_v(l, l->begin + i)) <= edge) continue;
-    for (PetscInt j = 0; j < count * slices; j++) {
-      const double complex z = psi[(size_t)j * (size_t)local + (size_t)i];
-      beyond[j / slices] += ebb_lattice_weight(l, l->begin + i) * creal(z * conj(z));
-    }
-  }
-  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, beyond, (PetscMPIInt)count, MPI_DOUBLE, MPI_SUM, r->run.comm));
-  for (PetscInt s = 0; s < count; s++) r->edge_probability = fmax(r->edge_probability, beyond[s]);
-  PetscCall(PetscFree(beyond));
-  PetscFunctionReturn(0);
-}
-
-PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode,
-                                   PetscErrorCode (*take)(void *context, PetscInt first, PetscInt count,
-                                                          const double complex psi[]),
-                                   void *context)
-{
-  const size_t one =
-      (size_t)(r->run.lattice.end - r->run.lattice.begin) * (size_t)(r->run.bundle ? r->run.bundle->points : 1);
-  PetscInt batch = r->run.source.batch;
-  struct ebb_progress progress;
-  double complex *psi;
-
-  PetscFunctionBegin;
-  if (!batch) batch = PetscMax(PetscMin(BATCH_MOST, (PetscInt)(BATCH_BYTES / (16.0 * (double)PetscMax(one, 1)))), 1);
-  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, &batch, 1, MPIU_INT, MPI_MIN, r->run.comm));
-  PetscCall(PetscMalloc1((size_t)batch * one, &psi));
-  ebb_progress_start(&progress, r->run.comm, mode, "window sample", r->m);
-  for (PetscInt first = 0; first < r->m; first += batch) {
-    const PetscInt count = PetscMin(batch, r->m - first);
-
-    if (r->row)
-      PetscCall(read_rows(r, first, count, psi));
-    else
-      PetscCall(evaluate(r, false, count, r->t + first, psi));
-    PetscCall(watch_edge(r, count, psi));
-    PetscCall(take(context, first, count, psi));
-    ebb_progress_tell(&progress, first + count);
-  }
-  ebb_progress_end(&progress);
-  PetscCall(PetscFree(psi));
-  PetscCall(compare_rules(r));
   PetscFunctionReturn(0);
 }
 

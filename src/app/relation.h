@@ -10,13 +10,17 @@
 #include "ebbturn/readings.h"
 #include "ebbturn/relational.h"
 #include "ebbturn/store.h"
+#include "keeper.h"
 #include "run.h"
 
 struct ebb_relation {
+  struct ebb_keeper keeper;
   struct ebb_settings settings;
   struct ebb_readings readings;
   char *model_text, *readings_text, *settings_text; /* settings_text, model_text: PetscMalloc'ed */
+  const char *readings_name;                        /* of the readings file, for messages */
   struct ebb_store *source;                         /* the result */
+  uint64_t fingerprint;                             /* of its model and run: a checkpoint is of one result */
   struct ebb_run run;
   PetscInt m;
   double *t;               /* [m]: the window */
@@ -25,14 +29,25 @@ struct ebb_relation {
   double edge_probability; /* largest P(|v| > 0.9 of the largest one) over the window */
 };
 
-/* Opens the result and reads the readings file; problems are printed. *code: 0, 2 or 4. Collective. */
-PetscErrorCode ebb_relation_create(const struct ebb_invocation *invocation, struct ebb_relation *relation, int *code);
+/* Opens the result and reads the readings, from a file, or from the text that stands in relation->keeper.origin where
+ * readings is NULL; problems are printed. *code: 0, 2 or 4. Collective. */
+PetscErrorCode ebb_relation_read(const char *result, const char *readings, struct ebb_relation *relation, int *code);
+/* Sets up the model of what was read. *code: 0, 2 or 4. Collective. */
+PetscErrorCode ebb_relation_set_up(struct ebb_relation *relation, int *code);
 PetscErrorCode ebb_relation_destroy(struct ebb_relation *relation);
-/* All samples of the window in order, batch by batch. psi [count][local]. */
+/* The samples of the window that are left, in order, batch by batch, to the readings. *code: 0, or the exit code with
+ * which the run has to end, the checkpoint being written. Collective. */
 PetscErrorCode ebb_relation_stream(struct ebb_relation *relation, const char *progress,
-                                   PetscErrorCode (*take)(void *context, PetscInt first, PetscInt count,
-                                                          const double complex psi[]),
-                                   void *context);
+                                   struct ebb_relational *relational, int *code);
+/* Distance of the state to that of the independent rule, at the ends of the window, where phases are largest. */
+PetscErrorCode ebb_relation_compare_rules(struct ebb_relation *relation);
+/* What a checkpoint holds beside the origin, of ebb_keeper_save; context a struct ebb_relation_state. Loading: into
+ * readings just created; PETSC_ERR_FILE_READ where the result is not the one it was. Collective. */
+struct ebb_relation_state {
+  struct ebb_relation *relation;
+  struct ebb_relational *relational;
+};
+PetscErrorCode ebb_relation_move(struct ebb_checkpoint *checkpoint, void *state);
 /* The model that readings share. */
 void ebb_relation_model(const struct ebb_relation *relation, struct ebb_relational_model *model);
 
@@ -57,8 +72,8 @@ struct ebb_relation_two_times {
   struct ebb_history *history; /* [v_stars], NULL where not asked for */
   struct ebb_two_time two_time;
 };
-PetscErrorCode ebb_relation_two_times(struct ebb_relation *relation, const struct ebb_invocation *invocation,
-                                      struct ebb_relation_two_times *two_times, int *code);
+PetscErrorCode ebb_relation_two_times(struct ebb_relation *relation, struct ebb_relation_two_times *two_times,
+                                      int *code);
 PetscErrorCode ebb_relation_two_times_put(struct ebb_store *store, const struct ebb_relation *relation,
                                           const struct ebb_relation_two_times *two_times);
 void ebb_relation_two_times_print(const struct ebb_relation *relation, const struct ebb_relation_two_times *two_times);

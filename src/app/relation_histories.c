@@ -111,8 +111,7 @@ static PetscErrorCode put_two_time(struct ebb_store *store, const struct ebb_rel
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode refuse(const struct ebb_invocation *invocation, const char *section, const char *problem,
-                             int *code)
+static PetscErrorCode refuse(const struct ebb_relation *r, const char *section, const char *problem, int *code)
 {
   PetscMPIInt rank;
 
@@ -120,13 +119,12 @@ static PetscErrorCode refuse(const struct ebb_invocation *invocation, const char
   PetscCallMPI(MPI_Comm_rank(PETSC_COMM_WORLD, &rank));
   *code = EBB_EXIT_USAGE;
   if (rank == 0)
-    fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s: %s\n", invocation->operand[1],
-            section, problem);
+    fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s: %s\n", r->readings_name, section,
+            problem);
   PetscFunctionReturn(0);
 }
 
-PetscErrorCode ebb_relation_two_times(struct ebb_relation *r, const struct ebb_invocation *invocation,
-                                      struct ebb_relation_two_times *x, int *code)
+PetscErrorCode ebb_relation_two_times(struct ebb_relation *r, struct ebb_relation_two_times *x, int *code)
 {
   const struct ebb_histories_settings *h = &r->readings.histories;
   char problem[320] = "";
@@ -134,14 +132,14 @@ PetscErrorCode ebb_relation_two_times(struct ebb_relation *r, const struct ebb_i
   PetscFunctionBegin;
   if (!h->given && !r->readings.two_time.given) PetscFunctionReturn(0);
   if (r->run.bundle) {
-    PetscCall(refuse(invocation, h->given ? "histories" : "propagator", "not available beside a further field", code));
+    PetscCall(refuse(r, h->given ? "histories" : "propagator", "not available beside a further field", code));
     PetscFunctionReturn(0);
   }
   if (h->given) {
     PetscCall(PetscCalloc1(h->v_stars, &x->history));
     PetscCall(ebb_histories_find(r->run.packet, &r->run.lattice, &r->run.constants, r->run.comm, h, x->history, problem,
                                  sizeof problem));
-    if (problem[0]) PetscCall(refuse(invocation, "histories", problem, code));
+    if (problem[0]) PetscCall(refuse(r, "histories", problem, code));
   }
   if (r->readings.two_time.given && !problem[0]) {
     struct ebb_two_time_grids grids = ebb_two_time_default;
@@ -150,7 +148,7 @@ PetscErrorCode ebb_relation_two_times(struct ebb_relation *r, const struct ebb_i
     grids.to = r->t[r->m - 1];
     PetscCall(ebb_two_time_find(r->run.packet, &r->run.lattice, &r->run.constants, r->run.comm, &r->readings.two_time,
                                 &grids, &x->two_time, problem, sizeof problem));
-    if (problem[0]) PetscCall(refuse(invocation, "propagator", problem, code));
+    if (problem[0]) PetscCall(refuse(r, "propagator", problem, code));
   }
   PetscFunctionReturn(0);
 }

@@ -94,8 +94,8 @@ static PetscErrorCode keep_begin(struct ebb_sweep *sweep, size_t c, struct ebb_e
   struct ebb_invocation invocation = *sweep->invocation;
 
   PetscFunctionBegin;
-  ebb_sweep_case_path(sweep, sweep->row[c].id, sizeof e->path, e->path);
-  PetscCall(ebb_store_create(sweep->group, e->path, true, &e->store));
+  ebb_sweep_case_path(sweep, sweep->row[c].id, sizeof e->keeper.path, e->keeper.path);
+  PetscCall(ebb_store_create(sweep->group, e->keeper.path, true, &e->store));
   PetscCall(ebb_record_begin(e->store, &e->run, &invocation, sweep->base_text));
   PetscCall(ebb_store_set_text(e->store, "/", "case", sweep->row[c].id));
   PetscFunctionReturn(0);
@@ -154,7 +154,7 @@ PetscErrorCode ebb_sweep_case(struct ebb_sweep *sweep, size_t c, bool *stopped, 
 {
   struct ebb_sweep_row *row = &sweep->row[c];
   struct ebb_problems *problems = ebb_problems_create();
-  struct ebb_evolution e = {.watch = sweep->watch, .watched = true, .abandon = true, .kept = -1};
+  struct ebb_evolution e = {.keeper = {.watch = sweep->watch, .kept = -1}, .watched = true, .abandon = true};
   struct ebb_settings settings = {0};
   const double begin = ebb_watch_clock();
   PetscErrorCode error = 0;
@@ -174,7 +174,7 @@ PetscErrorCode ebb_sweep_case(struct ebb_sweep *sweep, size_t c, bool *stopped, 
   if (!*stopped && (error || !row->status[0])) fail(row);
   row->finished = *stopped ? 0.0 : (double)time(NULL);
   row->seconds = ebb_watch_clock() - begin;
-  sweep->watch.longest = fmax(sweep->watch.longest, e.watch.longest);
+  sweep->watch.longest = fmax(sweep->watch.longest, e.keeper.watch.longest);
   PetscCall(ebb_store_destroy(&e.store));
   PetscCall(ebb_record_destroy(&e.record));
   PetscCall(ebb_run_destroy(&e.run));

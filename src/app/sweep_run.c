@@ -65,7 +65,7 @@ static PetscErrorCode work(struct ebb_sweep *sweep, MPI_Win window, const size_t
 
   PetscFunctionBegin;
   PetscCallMPI(MPI_Comm_rank(sweep->group, &rank));
-  ebb_progress_start(&progress, PETSC_COMM_WORLD, sweep->invocation->progress, "case", (PetscInt)cases);
+  ebb_progress_start(&progress, PETSC_COMM_WORLD, sweep->invocation->progress, "case", 0, (PetscInt)cases);
   if (rank == 0) {
     fd = ebb_sweep_journal_open(sweep->path, sweep->my_group);
     good = fd >= 0;

@@ -39,4 +39,13 @@ const char *ebb_watch_reason(int code, bool by_signal);
 /* A signal seen so far on this rank, 0 for none. */
 int ebb_watch_signal(void);
 
+enum { EBB_WATCH_WORDS = 12288 };
+/* A stretch without safe points begins (a set-up, the search for a bounce). A signal that finds the run in it waits
+ * EBB_WATCH_GRACE seconds for the next safe point; then the process ends with the code that it would have had, 75 or
+ * 128 + signal, rank 0 saying "ebbturn: stopped at SIGNAL " and words. part: a file to be removed then, or NULL.
+ * limited: so does the time limit. Every rank that gets the signal does this by itself. */
+void ebb_watch_hold(const struct ebb_watch *watch, const char *words, const char *part, bool limited);
+/* It is over. */
+void ebb_watch_release(void);
+
 #endif

@@ -7,7 +7,7 @@
 #include "ebbturn/checkpoint.h"
 #include "store_impl.h"
 
-enum { EBB_CHECKPOINT_BUFFER = 1 << 22, EBB_CHECKPOINT_FORMAT = 1 };
+enum { EBB_CHECKPOINT_BUFFER = 1 << 22, EBB_CHECKPOINT_FORMAT = 2 };
 
 #define EBB_CHECKPOINT_MAGIC "ebbckpt\n"
 #define EBB_CHECKPOINT_ORDER 0x01020304u

@@ -77,6 +77,18 @@ static bool take_integer(struct ebb_problems *problems, const struct ebb_yaml_no
   return true;
 }
 
+static bool take_duration(struct ebb_problems *problems, const struct ebb_yaml_node *node, const char *path,
+                          const struct ebb_range *range, double *out)
+{
+  double x;
+
+  if (node->kind != EBB_YAML_SCALAR || !node->plain || ebb_text_duration(node->text, node->length, &x) != EBB_NUMBER_OK)
+    return complain(problems, node, path, "must be a time such as 30s, 10min or 1h30m");
+  if (!in_range(range, x)) return complain_of_range(problems, node, path, range);
+  *out = x;
+  return true;
+}
+
 static bool take_reals(struct ebb_problems *problems, const struct ebb_yaml_node *node, const char *path,
                        const struct ebb_field *field)
 {
@@ -130,6 +142,8 @@ bool ebb_field_take_one(struct ebb_problems *problems, const struct ebb_yaml_nod
     return take_integer(problems, node, path, &field->range, field->out);
   case EBB_FIELD_REALS:
     return take_reals(problems, node, path, field);
+  case EBB_FIELD_DURATION:
+    return take_duration(problems, node, path, &field->range, field->out);
   case EBB_FIELD_NODE:
     return true;
   default:

@@ -14,6 +14,7 @@ enum ebb_field_kind {
   EBB_FIELD_NAME,     /* char [EBB_NAME_MAX], one of choices */
   EBB_FIELD_NAME_ANY, /* char [EBB_NAME_MAX] */
   EBB_FIELD_REALS,    /* double [most], strictly ascending */
+  EBB_FIELD_DURATION, /* double, seconds; written 10min, 3h50m */
   EBB_FIELD_NODE      /* taken by the caller */
 };
 

@@ -370,6 +370,21 @@ static void take_two_time(const struct reading_file *file, const struct ebb_yaml
     memcpy(p->first, first, sizeof p->first);
 }
 
+/* The same keys as in a model file, as far as they mean anything here. */
+static void take_output(const struct reading_file *file, const struct ebb_yaml_node *node, struct ebb_readings *out)
+{
+  const struct ebb_setting *row = ebb_setting_find("output.checkpoint.every");
+  struct ebb_field checkpoint = {.name = "checkpoint", .kind = EBB_FIELD_NODE, .required = true};
+  struct ebb_field every = {.name = "every",
+                            .kind = EBB_FIELD_DURATION,
+                            .out = &out->checkpoint_every,
+                            .range = row->range,
+                            .required = true};
+
+  (void)ebb_fields_take(file->problems, node, "output", &checkpoint, 1);
+  if (checkpoint.node) (void)ebb_fields_take(file->problems, checkpoint.node, "output.checkpoint", &every, 1);
+}
+
 bool ebb_input_readings(const char *text, size_t length, const struct ebb_reading_word *const word[], size_t words,
                         struct ebb_readings *readings, struct ebb_problems *problems)
 {
@@ -377,13 +392,13 @@ bool ebb_input_readings(const char *text, size_t length, const struct ebb_readin
   const size_t before = ebb_problems_count(problems);
   struct ebb_yaml tree = {0};
   struct ebb_field fields[] = {
-      {.name = "window", .kind = EBB_FIELD_NODE},
-      {.name = "readings", .kind = EBB_FIELD_NODE},
-      {.name = "histories", .kind = EBB_FIELD_NODE},
-      {.name = "propagator", .kind = EBB_FIELD_NODE},
+      {.name = "window", .kind = EBB_FIELD_NODE},    {.name = "readings", .kind = EBB_FIELD_NODE},
+      {.name = "histories", .kind = EBB_FIELD_NODE}, {.name = "propagator", .kind = EBB_FIELD_NODE},
+      {.name = "output", .kind = EBB_FIELD_NODE},
   };
 
-  *readings = (struct ebb_readings){.window = {.from = NAN, .to = NAN, .tolerance = 1e-3},
+  *readings = (struct ebb_readings){.checkpoint_every = NAN,
+                                    .window = {.from = NAN, .to = NAN, .tolerance = 1e-3},
                                     .histories = {.epsilon = 0.1, .times = 2},
                                     .two_time = {.inertia = INFINITY}};
   ebb_yaml_parse(&tree, text, length, "", true, problems);
@@ -392,6 +407,7 @@ bool ebb_input_readings(const char *text, size_t length, const struct ebb_readin
     if (fields[1].node) take_readings(&file, fields[1].node, readings);
     if (fields[2].node) take_histories(&file, fields[2].node, &readings->histories);
     if (fields[3].node) take_two_time(&file, fields[3].node, &readings->two_time);
+    if (fields[4].node) take_output(&file, fields[4].node, readings);
     if (!fields[1].node && !fields[2].node && !fields[3].node)
       ebb_problems_add(problems, tree.root->line, "nothing is asked for: give readings, histories or propagator");
   }

@@ -4,6 +4,7 @@
  * developers; users get the innermost cause. */
 #include "store_impl.h"
 
+#include <errno.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <string.h>
@@ -26,9 +27,15 @@ void ebb_store_say(const char *format, ...)
   va_end(arguments);
 }
 
+static bool no_memory;
+
+bool ebb_store_no_memory(void) { return no_memory; }
+
 PetscErrorCode ebb_store_error_handler(MPI_Comm comm, int line, const char *function, const char *file,
                                        PetscErrorCode code, PetscErrorType type, const char *message, void *context)
 {
+  /* Where an allocation fails PETSc 3.18 mixes up the arguments of its report: the code is a line number then. */
+  if (code == PETSC_ERR_MEM || errno == ENOMEM) no_memory = true;
   bool ours = code == PETSC_ERR_FILE_OPEN || code == PETSC_ERR_FILE_READ || code == PETSC_ERR_FILE_WRITE;
 
   if (ours && ebb_store_reason(NULL)) return code;

@@ -122,9 +122,7 @@ static PetscInt group_of(const struct ebb_engine *e, PetscInt site)
   return q < 0 ? -1 : PetscMin(q / e->bins->per_group, e->bins->groups - 1);
 }
 
-/* Stretches of neighbouring sites in one coarse bin, and room for what is kept: at the first call of add, when the
- * groups are known. */
-static PetscErrorCode prepare(struct ebb_relational *r, struct ebb_engine *e)
+PetscErrorCode ebb_cosine_prepare(struct ebb_relational *r, struct ebb_engine *e)
 {
   struct ebb_cosine *c = e->cosine;
   const PetscInt n = r->space->sites;
@@ -147,8 +145,7 @@ static PetscErrorCode prepare(struct ebb_relational *r, struct ebb_engine *e)
   PetscFunctionReturn(0);
 }
 
-/* One slice of a state with its halo, zero beyond the lattice. */
-static PetscErrorCode extend(struct ebb_relational *r, struct ebb_cosine *c, const double complex psi[])
+PetscErrorCode ebb_cosine_extend(struct ebb_relational *r, struct ebb_cosine *c, const double complex psi[])
 {
   const PetscInt n = c->local, h = c->halo, begin = r->model.lattice->begin;
   double complex *x = c->ext;
@@ -293,13 +290,13 @@ PetscErrorCode ebb_cosine_add(struct ebb_relational *r, struct ebb_engine *e, Pe
   double *seen; /* [count][m] */
 
   PetscFunctionBegin;
-  PetscCall(prepare(r, e));
+  PetscCall(ebb_cosine_prepare(r, e));
   PetscCall(PetscMalloc1(lines * length, &extended));
   PetscCall(PetscCalloc1((size_t)count * (size_t)c->m, &seen));
   for (size_t j = 0; j < lines; j++) {
     const PetscInt sample = first + (PetscInt)(j / slices);
 
-    PetscCall(extend(r, c, psi + j * (size_t)c->local));
+    PetscCall(ebb_cosine_extend(r, c, psi + j * (size_t)c->local));
     correlate(r, c, r->weight[sample]);
     add_system(r, e, sample);
     memcpy(extended + j * length, c->ext, length * sizeof *extended);

@@ -31,4 +31,11 @@ struct ebb_cosine {
   double complex *whole;
 };
 
+/* Stretches of neighbouring sites in one coarse bin, and room for what is kept: before the first state, when the groups
+ * are known; once. */
+PetscErrorCode ebb_cosine_prepare(struct ebb_relational *relational, struct ebb_engine *engine);
+/* One slice of a state, psi [local], with its halo into ext, zero beyond the lattice. Collective. */
+PetscErrorCode ebb_cosine_extend(struct ebb_relational *relational, struct ebb_cosine *cosine,
+                                 const double complex psi[]);
+
 #endif

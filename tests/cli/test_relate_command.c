@@ -70,9 +70,10 @@ static const char bad[] = "window: {from: 0.1, to: 0.1, samples: 2, tolerence: 1
                           "  - name: eight\n"
                           "    clock: {observable: {function: {of: densty, apply: cube}}, instrument: sharp, bins: 4}\n"
                           "histories: {v_star: [96, 90], at: [0.1]}\n"
-                          "propagator: {at: [0, 1], first: [100, 120, 130], clock: {spread: 0.1}}\n";
+                          "propagator: {at: [0, 1], first: [100, 120, 130], clock: {spread: 0.1}}\n"
+                          "output: {checkpoint: {every: 10}, keep: [state]}\n";
 static const char refusals[] =
-    "ebbturn: error: 22 problems in 'bad.yaml'; nothing was computed\n"
+    "ebbturn: error: 24 problems in 'bad.yaml'; nothing was computed\n"
     "  line 1   window.samples = 2 must be in [3, 1000000]\n"
     "  line 1   unknown key 'tolerence' in window; nearest is 'tolerance'\n"
     "  line 1   window.to = 0.1 must be above window.from = 0.1\n"
@@ -96,7 +97,9 @@ static const char refusals[] =
     "  line 23  histories.v_star must be strictly ascending\n"
     "  line 23  histories.at must be two values of the parameter: [from, to]\n"
     "  line 24  propagator.clock.half_width is missing\n"
-    "  line 24  propagator.first must be two volumes: [from, to]\n";
+    "  line 24  propagator.first must be two volumes: [from, to]\n"
+    "  line 25  unknown key 'keep' in output; there are checkpoint\n"
+    "  line 25  output.checkpoint.every = 10 must be a time such as 30s, 10min or 1h30m\n";
 
 Test(relate_command, says_everything_wrong_at_once)
 {

@@ -1,5 +1,6 @@
 # SPDX-License-Identifier: BSD-2-Clause
 """Runs that are killed and go on: shared by the tests of checkpoints. Results of equal runs are compared byte for byte."""
+import collections
 import os
 import resource
 import signal
@@ -22,6 +23,9 @@ MODES = dict(prescription="aps", samples=161, momentum=100, propagator="auto", v
              keep="[moments, quantiles, probability, state]")
 STEPS = dict(prescription="slqc", samples=61, momentum=100, propagator="chebyshev", volume_max="6000", every="0.01s",
              keep="[moments, quantiles, state]")
+# What is killed and resumed: a command, how it is started afresh, the exit code of a whole run.
+Job = collections.namedtuple("Job", "command fresh code")
+EVOLVE = Job("evolve", ("model.yaml", "--force"), 0)
 
 
 def prepare(folder, **values):
@@ -31,8 +35,8 @@ def prepare(folder, **values):
     return folder
 
 
-def start(folder, *arguments, ranks=0, **options):
-    command = ([MPIEXEC, "-n", str(ranks)] if ranks else []) + [PROGRAM, "evolve", *arguments]
+def start(folder, *arguments, ranks=0, command="evolve", **options):
+    command = ([MPIEXEC, "-n", str(ranks)] if ranks else []) + [PROGRAM, command, *arguments]
     return subprocess.Popen(command, cwd=folder, stdin=subprocess.DEVNULL, stdout=subprocess.PIPE,
                             stderr=subprocess.PIPE, text=True, **options)
 
@@ -46,14 +50,14 @@ def checkpoints(folder):
     return sorted(n for n in os.listdir(folder) if ".checkpoint-" in n and not n.endswith(".part"))
 
 
-def arguments(folder):
-    return ("--resume", "out.h5") if checkpoints(folder) else ("model.yaml", "--force")
+def arguments(folder, job=EVOLVE):
+    return ("--resume", "out.h5") if checkpoints(folder) else job.fresh
 
 
-def whole_run(folder, ranks=0):
+def whole_run(folder, ranks=0, job=EVOLVE):
     begin = time.monotonic()
-    code, _, err = end(start(folder, "model.yaml", "--force", ranks=ranks))
-    check(code == 0, f"an uninterrupted run ends with 0: {code} {err}")
+    code, _, err = end(start(folder, *job.fresh, ranks=ranks, command=job.command))
+    check(code == job.code, f"an uninterrupted run ends with {job.code}: {code} {err}")
     check(not checkpoints(folder), "its checkpoints are gone")
     return time.monotonic() - begin
 
@@ -102,12 +106,12 @@ def wait_for_write(process, folder, deadline):
     return False
 
 
-def kill_and_resume(folder, rng, length, ranks=0, writing=False, most=6):
+def kill_and_resume(folder, rng, length, ranks=0, writing=False, most=6, job=EVOLVE):
     """Kills the run (all ranks) again and again, at most twice as often as it can get on, then lets it end. The number of
     kills, and whether there was one while a checkpoint was being written."""
     kills, in_write = 0, 0
     for attempt in range(most):
-        process = start(folder, *arguments(folder), ranks=ranks, start_new_session=True)
+        process = start(folder, *arguments(folder, job), ranks=ranks, command=job.command, start_new_session=True)
         if attempt < 4 and writing:
             wait_for_write(process, folder, time.monotonic() + 20 * length)
         elif attempt < 4:
@@ -120,10 +124,10 @@ def kill_and_resume(folder, rng, length, ranks=0, writing=False, most=6):
             kills += 1
             in_write += writes_now(folder)
         code, _, err = end(process)
-        if code == 0:
+        if code == job.code:
             return kills, in_write
         if code != -signal.SIGKILL:
-            check(False, f"a resumed run ends with 0 or is killed: {code} {err}")
+            check(False, f"a resumed run ends with {job.code} or is killed: {code} {err}")
             break
     check(False, "the run did not end")
     return kills, in_write

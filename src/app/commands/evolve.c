@@ -38,7 +38,7 @@ static const double PURE = 0.99;       /* channel purity below which a warning i
 /* What a user should know although nothing failed. */
 static void warn(const struct ebb_evolution *w)
 {
-  if (!w->speaks) return;
+  if (!w->keeper.speaks) return;
   if (w->run.packet->channel_purity < PURE)
     fprintf(stderr, "ebbturn: warning: the two orientations mix: least |C|^2 of the channel is %.4f, below %.2f\n",
             w->run.packet->channel_purity, PURE);
@@ -63,7 +63,7 @@ static int limits(const struct ebb_evolution *w)
     if (fabs(r->moment[EBB_MOMENT_NORM][s] - 1.0) > fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0)) worst = s;
   /* a packet that reaches k = 0 has slow tails on every lattice; the warning has said so, the errors include it */
   if (fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0) <= NORM_LIMIT || !ebb_run_mean_exists(&w->run)) return EBB_EXIT_OK;
-  if (w->speaks) {
+  if (w->keeper.speaks) {
     const double v_max = fabs(ebb_lattice_v(&w->run.lattice, ebb_lattice_size(&w->run.lattice) - 1));
 
     fprintf(stderr,
@@ -71,36 +71,22 @@ static int limits(const struct ebb_evolution *w)
             "  saved     '%s', with errors that include it\n"
             "  likely    the packet leaves the lattice: up to %.2g of the probability lies at its edge\n"
             "  try       lattice.volume_max above %.2g, or auto\n",
-            w->run.phi[worst], fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0), NORM_LIMIT, w->path,
+            w->run.phi[worst], fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0), NORM_LIMIT, w->keeper.path,
             r->budget.edge_probability, 2.0 * v_max);
   }
   return EBB_EXIT_LIMIT;
 }
 
-/* The last lines of a run that was stopped: what is saved, and what to do next. */
-static void tell_stop(const struct ebb_evolution *e, int code)
-{
-  if (!e->speaks) return;
-  if (code == EBB_EXIT_FILE)
-    fprintf(stderr,
-            "ebbturn: error: stopped after %" PetscInt_FMT " of %" PetscInt_FMT
-            " clock samples without a new checkpoint\n",
-            e->next, e->run.m);
-  else
-    fprintf(stderr,
-            "ebbturn: stopped at %s after %" PetscInt_FMT " of %" PetscInt_FMT " clock samples\n"
-            "  saved     '%s.checkpoint-%d'\n",
-            ebb_watch_reason(code, ebb_watch_signal() != 0), e->next, e->run.m, e->path, e->generation);
-  if (e->kept >= 0) fprintf(stderr, "  go on     'ebbturn evolve --resume %s'\n", e->path);
-}
-
-/* Provenance alone tells a run that was resumed from one that was not. */
-static PetscErrorCode put_history(struct ebb_evolution *e)
+/* The numbers after the last sample, into the result. */
+static PetscErrorCode conclude(struct ebb_evolution *e)
 {
   PetscFunctionBegin;
-  PetscCall(ebb_store_set_text(e->store, "/provenance", "run", e->mark.run));
-  PetscCall(ebb_store_set_text(e->store, "/provenance", "started", e->origin.started));
-  if (e->origin.resumed[0]) PetscCall(ebb_store_set_text(e->store, "/provenance", "resumed", e->origin.resumed));
+  PetscCall(ebb_keeper_hold_end(&e->keeper, ebb_evolution_move, e));
+  PetscCall(ebb_record_conclude(&e->record, &e->run));
+  PetscCall(ebb_record_end(e->store, &e->run, &e->record));
+  PetscCall(ebb_store_commit(&e->store, true));
+  ebb_watch_release();
+  if (e->keeper.speaks) ebb_checkpoint_remove(e->keeper.path);
   PetscFunctionReturn(0);
 }
 
@@ -110,29 +96,29 @@ static PetscErrorCode compute(const struct ebb_invocation *invocation, struct eb
 {
   const struct ebb_bounce *bounce = &e->record.bounce;
   struct ebb_invocation first = *invocation;
-  bool verified = false, good;
+  bool good;
 
   PetscFunctionBegin;
-  ebb_origin_invocation(&e->origin, &first);
+  e->keeper.total = e->run.m;
+  ebb_origin_invocation(&e->keeper.origin, &first);
   PetscCall(ebb_record_create(e->run.m, e->run.settings->output.quantiles, &e->record));
-  PetscCall(ebb_record_begin(e->store, &e->run, &first, e->origin.model_text));
-  PetscCall(put_history(e));
-  if (!*checkpoint && e->watch.every > 0.0) PetscCall(ebb_evolution_save(e, false, &good));
+  PetscCall(ebb_record_begin(e->store, &e->run, &first, e->keeper.origin.input_text));
+  PetscCall(ebb_keeper_put_history(&e->keeper, e->store));
+  if (!*checkpoint && e->keeper.watch.every > 0.0) PetscCall(ebb_keeper_save(&e->keeper, ebb_evolution_move, e, &good));
   PetscCall(ebb_run_start(&e->run));
-  if (*checkpoint) PetscCall(ebb_evolution_load(*checkpoint, e, &verified));
+  if (*checkpoint) PetscCall(ebb_evolution_load(*checkpoint, e));
   PetscCall(ebb_checkpoint_destroy(checkpoint));
-  if (!verified) PetscCall(ebb_record_verify(&e->record, &e->run));
+  if (!e->verified) PetscCall(ebb_record_verify(&e->record, &e->run));
+  e->verified = true;
+  ebb_watch_release();
   PetscCall(ebb_evolution_evaluate(e, invocation->progress, code));
   if (*code) {
-    tell_stop(e, *code);
+    ebb_keeper_tell_stop(&e->keeper, *code);
     PetscFunctionReturn(0);
   }
-  PetscCall(ebb_record_conclude(&e->record, &e->run));
-  PetscCall(ebb_record_end(e->store, &e->run, &e->record));
-  PetscCall(ebb_store_commit(&e->store, true));
-  if (e->speaks) ebb_checkpoint_remove(e->path);
+  PetscCall(conclude(e));
   warn(e);
-  if (e->speaks) ebb_record_print(&e->run, &e->record, e->path);
+  if (e->keeper.speaks) ebb_record_print(&e->run, &e->record, e->keeper.path);
   *code = limits(e);
   if (*code == EBB_EXIT_OK && (bounce->verdict == EBB_VERDICT_UNDECIDED ||
                                (bounce->verdict == EBB_VERDICT_NO && !e->run.lattice.rows.prescription->continuum)))
@@ -148,40 +134,26 @@ static PetscErrorCode evolve(const struct ebb_invocation *invocation, const char
   const bool fresh = !*checkpoint;
 
   PetscFunctionBegin;
-  PetscCall(ebb_watch_start(&e->watch, PETSC_COMM_WORLD, settings->output.checkpoint_every, invocation->time_limit));
+  PetscCall(
+      ebb_watch_start(&e->keeper.watch, PETSC_COMM_WORLD, settings->output.checkpoint_every, invocation->time_limit));
   e->watched = true;
-  PetscCall(ebb_run_create(settings, e->origin.folder, PETSC_COMM_WORLD, &e->run, code));
-  if (*code && e->speaks)
+  ebb_keeper_hold_setup(&e->keeper, !fresh);
+  PetscCall(ebb_run_create(settings, e->keeper.origin.place, PETSC_COMM_WORLD, &e->run, code));
+  if (*code && e->keeper.speaks)
     fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", name, e->run.problem);
   if (!*code) {
-    PetscErrorCode error = ebb_store_create(PETSC_COMM_WORLD, e->path, e->origin.force, &e->store);
+    PetscErrorCode error = ebb_store_create(PETSC_COMM_WORLD, e->keeper.path, e->keeper.origin.force, &e->store);
 
-    if (!error && fresh && e->speaks) ebb_checkpoint_remove(e->path); /* of another run: --force was given */
+    if (!error && fresh && e->keeper.speaks)
+      ebb_checkpoint_remove(e->keeper.path); /* of another run: --force was given */
     if (!error) error = compute(invocation, checkpoint, e, code);
     if (error) *code = ebb_exit_from_error(error);
   }
+  ebb_watch_release();
   PetscCall(ebb_checkpoint_destroy(checkpoint));
   PetscCall(ebb_store_destroy(&e->store));
   PetscCall(ebb_record_destroy(&e->record));
   PetscCall(ebb_run_destroy(&e->run));
-  PetscFunctionReturn(0);
-}
-
-/* An interrupted run's checkpoints are hours of work: only --force starts over. */
-static PetscErrorCode refuse_interrupted(const struct ebb_invocation *invocation, struct ebb_evolution *e, int *code)
-{
-  int there = e->speaks && !invocation->force && ebb_checkpoint_present(e->path);
-
-  PetscFunctionBegin;
-  PetscCallMPI(MPI_Bcast(&there, 1, MPI_INT, 0, PETSC_COMM_WORLD));
-  if (!there) PetscFunctionReturn(0);
-  *code = EBB_EXIT_FILE;
-  if (e->speaks)
-    fprintf(stderr,
-            "ebbturn: error: '%s' has checkpoints of an interrupted run; nothing was computed\n"
-            "  go on     'ebbturn evolve --resume %s'\n"
-            "  try       --force to start over\n",
-            e->path, e->path);
   PetscFunctionReturn(0);
 }
 
@@ -192,57 +164,12 @@ static PetscErrorCode begin(const struct ebb_invocation *invocation, const struc
   char folder[EBB_PATH_MAX];
 
   PetscFunctionBegin;
-  ebb_result_path(invocation, settings, sizeof e->path, e->path, folder);
-  PetscCall(refuse_interrupted(invocation, e, code));
+  ebb_result_path(invocation, settings, sizeof e->keeper.path, e->keeper.path, folder);
+  PetscCall(ebb_keeper_refuse_interrupted(&e->keeper, invocation->force, code));
   if (*code) PetscFunctionReturn(0);
-  PetscCall(ebb_checkpoint_name_run(PETSC_COMM_WORLD, e->mark.run));
-  PetscCall(ebb_origin_of(invocation, text, folder, &e->origin));
+  PetscCall(ebb_checkpoint_name_run(PETSC_COMM_WORLD, e->keeper.mark.run));
+  PetscCall(ebb_origin_of(invocation, text, folder, &e->keeper.origin));
   PetscCall(evolve(invocation, invocation->operand[0], settings, &none, e, code));
-  PetscFunctionReturn(0);
-}
-
-/* Is there a whole result, of the given run where that is not NULL? */
-static bool finished(const char *path, const char *run)
-{
-  struct ebb_store *store;
-  char *text = NULL;
-  double complete = 0.0;
-  bool found = false, same = run == NULL;
-
-  if (ebb_store_open(PETSC_COMM_WORLD, path, &store)) return false;
-  if (ebb_store_get_real(store, "/", "complete", &complete, &found) || !found) complete = 0.0;
-  if (run && !ebb_store_get_text(store, "/provenance", "run", &text, &found) && found) same = !strcmp(text, run);
-  (void)PetscFree(text);
-  (void)ebb_store_destroy(&store);
-  return same && complete == 1.0;
-}
-
-/* Opens a checkpoint, or says why there is none to go on from; *code 0 and *checkpoint NULL: the run is complete. */
-static PetscErrorCode find_checkpoint(struct ebb_evolution *e, struct ebb_checkpoint **checkpoint, int *code)
-{
-  char note[EBB_CHECKPOINT_GENERATIONS][EBB_CHECKPOINT_NOTE];
-  int there = e->speaks && ebb_checkpoint_present(e->path);
-
-  PetscFunctionBegin;
-  PetscCall(ebb_checkpoint_open(PETSC_COMM_WORLD, e->path, checkpoint, &e->mark, &e->generation, note));
-  PetscCallMPI(MPI_Bcast(&there, 1, MPI_INT, 0, PETSC_COMM_WORLD));
-  if (*checkpoint ? finished(e->path, e->mark.run) : !there && finished(e->path, NULL)) {
-    if (e->speaks) {
-      ebb_checkpoint_remove(e->path);
-      printf("'%s' is complete; there is nothing to go on with\n", e->path);
-    }
-    PetscCall(ebb_checkpoint_destroy(checkpoint));
-    PetscFunctionReturn(0);
-  }
-  if (!*checkpoint) *code = EBB_EXIT_FILE;
-  if (!e->speaks) PetscFunctionReturn(0);
-  if (!*checkpoint)
-    fprintf(stderr, "ebbturn: error: '%s' has no checkpoint to go on from; nothing was computed\n", e->path);
-  for (int g = 0; g < EBB_CHECKPOINT_GENERATIONS; g++)
-    if (note[g][0]) fprintf(stderr, *checkpoint ? "ebbturn: warning: %s\n" : "  %s\n", note[g]);
-  if (*checkpoint && note[1 - e->generation][0])
-    fprintf(stderr, "  used      '%s.checkpoint-%d'\n", e->path, e->generation);
-  if (!*checkpoint) fprintf(stderr, "  try       'ebbturn evolve MODEL -o %s', which starts over\n", e->path);
   PetscFunctionReturn(0);
 }
 
@@ -255,19 +182,16 @@ static PetscErrorCode resume(const struct ebb_invocation *invocation, struct ebb
 
   PetscFunctionBegin;
   PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory");
-  PetscCall(PetscSNPrintf(e->path, sizeof e->path, "%s", invocation->resume));
-  PetscCall(find_checkpoint(e, &checkpoint, code));
+  PetscCall(PetscSNPrintf(e->keeper.path, sizeof e->keeper.path, "%s", invocation->resume));
+  PetscCall(ebb_keeper_find(&e->keeper, &checkpoint, code));
   if (checkpoint) {
-    PetscCall(ebb_evolution_load_origin(checkpoint, &e->origin));
-    PetscCall(ebb_origin_resumed(&e->origin));
-    PetscCall(PetscOptionsInsertString(NULL, e->origin.options));
-    ebb_origin_invocation(&e->origin, &first);
-    if (!ebb_input_parse(e->origin.model_text, e->origin.length, first.override, (size_t)first.overrides,
+    ebb_origin_invocation(&e->keeper.origin, &first);
+    if (!ebb_input_parse(e->keeper.origin.input_text, e->keeper.origin.length, first.override, (size_t)first.overrides,
                          EBB_NEED_STATE | EBB_NEED_CLOCK_RANGE, &settings, problems)) {
       *code = EBB_EXIT_USAGE; /* written by this version, so it was right once */
-      if (e->speaks) ebb_problems_print(problems, stderr, e->path);
+      if (e->keeper.speaks) ebb_problems_print(problems, stderr, e->keeper.path);
     } else {
-      PetscCall(evolve(invocation, e->path, &settings, &checkpoint, e, code));
+      PetscCall(evolve(invocation, e->keeper.path, &settings, &checkpoint, e, code));
     }
     ebb_settings_clear(&settings);
   }
@@ -278,15 +202,13 @@ static PetscErrorCode resume(const struct ebb_invocation *invocation, struct ebb
 
 static int run(const struct ebb_invocation *invocation)
 {
-  struct ebb_evolution e = {.kept = -1, .generation = 1};
+  struct ebb_evolution e = {0};
   struct ebb_settings settings;
-  PetscMPIInt rank = 0;
   PetscErrorCode error;
   char *text = NULL;
   int code = EBB_EXIT_OK;
 
-  (void)MPI_Comm_rank(PETSC_COMM_WORLD, &rank);
-  e.speaks = rank == 0;
+  ebb_keeper_start(&e.keeper, "evolve", invocation->resume ? "MODEL" : invocation->operand[0], "clock samples");
   if (invocation->resume) {
     error = resume(invocation, &e, &code);
   } else {
@@ -296,7 +218,7 @@ static int run(const struct ebb_invocation *invocation)
     ebb_settings_clear(&settings);
   }
   if (error) code = ebb_exit_from_error(error);
-  (void)ebb_origin_clear(&e.origin);
+  (void)ebb_origin_clear(&e.keeper.origin);
   free(text);
   return code;
 }
