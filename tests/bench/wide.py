@@ -1,46 +1,23 @@
-#!/ usr / bin / env python3
-#SPDX - License - Identifier : BSD - 2 - Clause
-""
-    "Time against the largest volume at fixed accuracy: bounce-symmetric packets of momentum 20, ever sharper in momentum and so wider
-    in volume,
-    at one tolerance.Each state says itself how far its lattice has to reach;
-graded lattices follow it, full ones while they are below-- full(default 4e6).Prints a table;
---plot PREFIX draws it.Program : $EBBTURN or
-    build / ebbturn.Asserts that every ratio agrees with the closed form within its error bar.""
-                                                                                              "
-            import argparse import os import re import subprocess import sys import tempfile import time
+#!/usr/bin/env python3
+# SPDX-License-Identifier: BSD-2-Clause
+"""Time against the largest volume at fixed accuracy: bounce-symmetric packets of momentum 20, ever sharper in momentum and so wider
+in volume, at one tolerance. Each state says itself how far its lattice has to reach; graded lattices follow it, full ones while they
+are below --full (default 4e6). Prints a table; --plot PREFIX draws it. Program: $EBBTURN or build/ebbturn. Asserts that every ratio
+agrees with the closed form within its error bar."""
+import argparse
+import os
+import re
+import subprocess
+import sys
+import tempfile
+import time
 
-                SIGMA = (5.0, 3.5, 2.8, 2.4, 2.1, 1.9, 1.7, 1.55, 1.4, 1.3, 1.2)MODEL = ""
-                                                                                        "gravity: {{prescription: slqc}}
-    clock:
-{
-  {
-  from:
-    -0.3, to : 0.3, samples : 9
-  }
-}
-state:
-{
-  {
-  profile:
-    gaussian_momentum, momentum : 20, relative_spread: { spread !r }
-  }
-}
-lattice:
-{
-  {
-  layout : {
-    layout
-  }
-  }
-}
-output:
-{
-  {
-  keep:
-    [moments]
-  }
-}
+SIGMA = (5.0, 3.5, 2.8, 2.4, 2.1, 1.9, 1.7, 1.55, 1.4, 1.3, 1.2)
+MODEL = """gravity: {{prescription: slqc}}
+clock: {{from: -0.3, to: 0.3, samples: 9}}
+state: {{profile: gaussian_momentum, momentum: 20, relative_spread: {spread!r}}}
+lattice: {{layout: {layout}}}
+output: {{keep: [moments]}}
 """
 PROGRAM = os.environ.get("EBBTURN", "build/ebbturn")
 
