@@ -138,6 +138,20 @@ static PetscErrorCode choose_batch(const struct ebb_relation *r, size_t one, Pet
   PetscFunctionReturn(0);
 }
 
+static PetscErrorCode safe_point(struct ebb_relation *r, struct ebb_relation_state *state, bool *stop, int *code)
+{
+  enum ebb_action action;
+
+  PetscFunctionBegin;
+  if (r->abandon) {
+    PetscCall(ebb_watch_ask(&r->keeper.watch, &action, code));
+    *stop = action == EBB_ACTION_STOP;
+  } else {
+    PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, state, stop, code));
+  }
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, struct ebb_relational *relational,
                                    int *code)
 {
@@ -154,7 +168,7 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
   PetscCall(choose_batch(r, one + places, &batch));
   PetscCall(PetscMalloc2((size_t)batch * one, &psi, (size_t)batch * places, &around));
   ebb_progress_start(&progress, r->run.comm, mode, "window sample", r->keeper.next, r->m);
-  PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, &state, &stop, code));
+  PetscCall(safe_point(r, &state, &stop, code));
   while (!stop && r->keeper.next < r->m) {
     const PetscInt first = r->keeper.next, count = PetscMin(batch, r->m - first);
 
@@ -167,7 +181,7 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
     PetscCall(ebb_relational_add_around(relational, first, count, psi, around));
     r->keeper.next += count;
     ebb_progress_tell(&progress, r->keeper.next);
-    PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, &state, &stop, code));
+    PetscCall(safe_point(r, &state, &stop, code));
   }
   ebb_progress_end(&progress);
   PetscCall(PetscFree2(psi, around));

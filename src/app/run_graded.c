@@ -21,13 +21,13 @@ const char *ebb_run_not_graded(const struct ebb_run *run)
   const struct ebb_settings *s = run->settings;
 
   if (run->rows.prescription->grid) return "its lattice is a grid in ln v already";
+  if (!ebb_rows_is_flat(&run->rows)) return "it is for flat models with a scalar clock and no cosmological constant";
+  if (s->lattice.points > 0) return "lattice.points puts a wall";
   if (run->method != EBB_METHOD_MODES)
     return "it needs propagator 'modes', whose functions are known between the sites";
-  if (!ebb_rows_is_flat(&run->rows)) return "it is for flat models with a scalar clock and no cosmological constant";
   if (run->rows.band == 2) return "five-point operators have no waves between the sites";
   if (run->rows.prescription->continuum) return "the turning point of a continuum operator is the lattice's own";
   if (run->rows.field) return "a further field has its states on every site";
-  if (s->lattice.points > 0) return "lattice.points puts a wall";
   return NULL;
 }
 

@@ -206,6 +206,17 @@ static double root_error(double variance, double spread)
   return isfinite(variance) ? variance / fmax(2.0 * spread, sqrt(variance)) : variance;
 }
 
+/* v^power-weighted probability of the tail of a cut at k = 0, |psi|^2 = cut_tail/(v ln^2 v), up to the last site of a
+ * graded lattice, which reaches far enough to feel it: beyond, it has no end, and none of it belongs to a mean. */
+static double cut_of(const struct ebb_budget *budget, const struct ebb_lattice *lattice, double power)
+{
+  static const double TWICE = 2.0; /* ln v is counted from the packet, not from v = 1 */
+  const double top = ebb_lattice_top(lattice), l = log(top);
+
+  if (budget->cut_tail == 0.0) return 0.0;
+  return TWICE * 0.25 * budget->cut_tail * (power > 0.0 ? pow(top, power) / (power * l * l) : 1.0 / l);
+}
+
 void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
@@ -213,10 +224,14 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   const bool family = !lattice->rows.prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double edge0 =
       family ? TAIL_AND_LINK * tail_of(lattice, sheet, s)
-             : weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]);
-  const double edge1 = weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V, sheet->sum[EBB_SUM_V][s]);
+             : weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]) +
+                   cut_of(budget, lattice, 0.0);
+  const double edge1 =
+      weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V, sheet->sum[EBB_SUM_V][s]) +
+      cut_of(budget, lattice, 1.0);
   const double edge2 =
-      weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2, sheet->sum[EBB_SUM_V2][s]);
+      weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2, sheet->sum[EBB_SUM_V2][s]) +
+      cut_of(budget, lattice, 2.0);
   /* without a mean, the geometric one and the whole lattice for its spread: both only size up roundings */
   const double v = family ? exp(moment[EBB_MOMENT_LNV_MEAN]) : moment[EBB_MOMENT_V_MEAN];
   const double dv = family ? ebb_lattice_top(lattice) : moment[EBB_MOMENT_V_SPREAD];

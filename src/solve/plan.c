@@ -183,26 +183,27 @@ static double density_far(const struct ebb_packet *packet, const double complex 
   return 8.0 / EBB_PI * creal(sum * conj(sum));
 }
 
-/* The same of a state whose waves are known to their roundings: what is left of |psi|^2 where it should vanish. */
-static double density_floor(const struct ebb_packet *packet, double clock, double x)
+/* What is left of |psi|^2 where the packet itself has ended: the roundings of its waves, and where the interval is cut
+ * at k = 0 the tail of that cut, int_0 c(0) sin(k x) dk = c(0)/x, in which no power of v has a mean. */
+static double density_floor(const struct ebb_packet *packet, const struct ebb_plan *plan, double clock, double x)
 {
   const double *k = ebb_basis_k(packet->basis);
+  const double turns = plan->uniform ? LDBL_EPSILON / DBL_EPSILON : 1.0; /* nodes of Gauss's rule are rounded */
+  const double cut = plan->uniform ? 0.0 : cabs(packet->amplitude[0]) / plan->weight[0] / fmax(x, 1.0);
   double sum = 0.0;
 
   for (PetscInt j = 0; j < packet->n; j++) {
     const double complex a = packet->amplitude[j];
-    /* k x is formed in extended precision, omega clock is not */
-    const double roundings = FLOOR * (1.0 + packet->omega[j] * fabs(clock) + LDBL_EPSILON / DBL_EPSILON * k[j] * x);
+    const double roundings = FLOOR * (1.0 + packet->omega[j] * fabs(clock) + turns * k[j] * x);
 
     sum += roundings * roundings * creal(a * conj(a));
   }
-  return 8.0 / EBB_PI * DBL_EPSILON * DBL_EPSILON * sum;
+  return 8.0 / EBB_PI * (DBL_EPSILON * DBL_EPSILON * sum + cut * cut);
 }
 
-/* Volume at whose floor the v^2-weighted density is no more than that share of all of it; x of the grid's end where the
- * floor is never reached. p: [grid] */
-static PetscInt floored_end(const struct ebb_packet *packet, double clock, PetscInt grid, const double p[],
-                            double x_low, double x_high)
+/* First cell of the grid, beyond the packet's peak, whose density p is at the floor; grid where there is none. */
+static PetscInt floored_end(const struct ebb_packet *packet, const struct ebb_plan *plan, double clock, PetscInt grid,
+                            const double p[], double x_low, double x_high)
 {
   PetscInt peak = 0;
 
@@ -211,7 +212,7 @@ static PetscInt floored_end(const struct ebb_packet *packet, double clock, Petsc
   for (PetscInt i = peak; i < grid; i++) {
     const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
 
-    if (p[i] < density_floor(packet, clock, x)) return i;
+    if (p[i] < density_floor(packet, plan, clock, x)) return i;
   }
   return grid;
 }
@@ -250,7 +251,7 @@ static PetscErrorCode find_edge(const struct ebb_packet *packet, const struct eb
       density[i] = density_far(packet, turned, x, false);
       if (!lattice->rows.half) density[i] += density_far(packet, turned, x, true);
     }
-    if (wide) end = floored_end(packet, clock[c], grid, density, x_low, x_high);
+    if (wide) end = floored_end(packet, plan, clock[c], grid, density, x_low, x_high);
     for (PetscInt i = grid; i >= end; i--) tail[i] = plain[i] = 0.0;
     for (PetscInt i = end - 1; i >= 0; i--) { /* v^2-weighted, integrated from above; dv/4 = v dx/4 */
       const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;

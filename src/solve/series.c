@@ -21,15 +21,15 @@ void ebb_series_make(double k, double tilt, const double b[], const double c[], 
   enum { N = EBB_SERIES_TERMS };
   const double complex s = 0.5 * tilt + I * k;
   const double zeta = 4.0 * k * k + tilt * tilt;
-  double complex up[N][N + 2], down[N][N + 2]; /* binom(s-j, m) 4^m, binom(s-t-j, m) (-4)^m */
+  double complex up[N][N + 1], down[N][N + 1]; /* binom(s-j, m) 4^m, binom(s-t-j, m) (-4)^m */
   double complex difference[N + 1];            /* of x(v+4) - x(v), coefficient of v^{s-n} */
 
   series->k = k;
   series->tilt = tilt;
   difference[0] = 0.0;
-  for (int j = 0; j < N; j++) {
-    powers(s - (double)j, 4.0, N + 2, up[j]);
-    powers(s - tilt - (double)j, -4.0, N + 2, down[j]);
+  for (int j = 0; j < N; j++) { /* as far as they are used below */
+    powers(s - (double)j, 4.0, N + 1 - j, up[j]);
+    powers(s - tilt - (double)j, -4.0, N + 1 - j, down[j]);
   }
   for (int n = 0; n < N; n++) {
     double complex known = 0.0, rest = 0.0;

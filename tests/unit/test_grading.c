@@ -6,7 +6,7 @@
 #include <gsl/gsl_integration.h>
 #include <math.h>
 
-TestSuite(grading, .init = ebb_test_petsc_begin, .fini = ebb_test_petsc_end);
+TestSuite(grading, .init = ebb_test_slepc_begin, .fini = ebb_test_slepc_end);
 
 enum { NODES_MOST = 64 };
 
@@ -56,7 +56,8 @@ Test(grading, very_many_points_are_an_integral)
   for (size_t i = 0; i < 64; i++) {
     gsl_integration_glfixed_point(-1.0, 1.0, i, &at, &weight, table);
     ebb_test_close(x[i], at, ebb_test_rounding(2, 1.0));
-    ebb_test_close(2.0 * w[i] / sites, weight, ebb_test_rounding(8, weight));
+    /* 64 coefficients of the recurrence, a rounding each: a random walk, four times */
+    ebb_test_close(2.0 * w[i] / sites, weight, ebb_test_rounding(32, weight));
   }
   gsl_integration_glfixed_table_free(table);
 }
@@ -66,7 +67,7 @@ Test(grading, very_many_points_are_an_integral)
 Test(grading, sums_of_waves_are_those_over_all_sites)
 {
   const struct ebb_grading_request request = {
-      .first = 1.3, .step = 4.0, .plain_v = 300.0, .v_max = 3e6, .k_max = 20.0, .ratio = 2.0, .window = 1.3};
+      .first = 1.3, .step = 4.0, .plain_v = 300.0, .v_max = 2e5, .k_max = 20.0, .ratio = 2.0, .window = 1.3};
   struct ebb_grading *g;
   double weight = 0.0;
 

@@ -71,7 +71,8 @@ static void print_lattice(const struct ebb_run *run)
   else if (run->settings->lattice.volume_max > 0.0)
     printf("  because          lattice.volume_max says so\n");
   else if (run->plan.floored)
-    printf("  because          there |psi|^2 reaches the rounding of its waves at an end of the clock range\n");
+    printf("  because          there |psi|^2 reaches %s at an end of the clock range\n",
+           run->plan.uniform ? "the rounding of its waves" : "the tail that modes at k = 0 leave");
   else
     printf("  because          beyond it lies %.1e of the v^2-weighted probability at the ends of the clock range\n",
            run->plan.tail);
