@@ -23,6 +23,9 @@ PetscErrorCode ebb_grading_needs_clear(struct ebb_grading_needs *needs);
 /* Adds a cut; NAN and infinities add nothing. */
 PetscErrorCode ebb_grading_needs_cut(struct ebb_grading_needs *needs, double v);
 
+/* Does no block of the lattice reach across a cut of the needs, but those that hold their sites one by one? */
+bool ebb_grading_suits(const struct ebb_lattice *lattice, const struct ebb_grading_needs *needs);
+
 struct ebb_grading_request {
   double first, step; /* of the lattice: v = first + step n, first the larger of two arms' */
   double other_first; /* the smaller one; 0 where there is one arm */

@@ -36,6 +36,13 @@ struct ebb_circle {
  * does not fit. */
 bool ebb_reading_is_graded(const struct ebb_reading_settings *reading, const char *parameter, char why[], size_t size);
 
+/* What the nodes of a graded lattice leave open of |psi|^2, psi [local]: the last two coefficients of it in the
+ * polynomials of a block, summed over blocks; a bound where they fall. Sums over whole blocks are much better.
+ * Collective.
+ */
+PetscErrorCode ebb_graded_resolution(const struct ebb_lattice *lattice, MPI_Comm comm, const double complex psi[],
+                                     double *error);
+
 /* What every reading of a run shares. */
 struct ebb_relational_model {
   const struct ebb_lattice *lattice;

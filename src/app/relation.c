@@ -161,33 +161,42 @@ static bool needs_every_site(const struct ebb_relation *r, char why[], size_t si
   return why[0] != '\0';
 }
 
-PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
+PetscErrorCode ebb_relation_make_run(struct ebb_relation *r, const char *folder, MPI_Comm comm, char problem[],
+                                     size_t size, int *code)
 {
-  const char *result = r->keeper.origin.place, *slash = strrchr(result, '/');
-  char folder[EBB_PATH_MAX], why[320];
+  char why[320];
 
   PetscFunctionBegin;
-  (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
+  *code = EBB_EXIT_OK;
+  problem[0] = '\0';
   if (needs_every_site(r, why, sizeof why)) {
     if (!strcmp(r->settings.lattice.layout, "graded")) {
       *code = EBB_EXIT_USAGE;
-      if (speaks())
-        fprintf(
-            stderr,
-            "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
-            "  %s, and '%s' was evolved with lattice.layout = 'graded'\n"
-            "  try       a clock with instrument 'cosine_power', or 'ebbturn evolve MODEL --set lattice.layout=full' "
-            "with a lattice.volume_max that can be held\n",
-            r->readings_name, why, result);
+      (void)snprintf(problem, size,
+                     "%s, and the model has lattice.layout = 'graded'; take a clock with instrument 'cosine_power', or "
+                     "lattice.layout full with a lattice.volume_max that can be held",
+                     why);
       PetscFunctionReturn(0);
     }
     (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
   }
-  PetscCall(ebb_run_create_read(&r->settings, folder, PETSC_COMM_WORLD, &r->readings, &r->run, code));
+  PetscCall(ebb_run_create_read(&r->settings, folder, comm, &r->readings, &r->run, code));
+  if (*code)
+    (void)snprintf(problem, size, "%.320s%s%s", r->run.problem[0] ? r->run.problem : "the set-up failed",
+                   why[0] ? "; every site is wanted: " : "", why);
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
+{
+  const char *result = r->keeper.origin.place, *slash = strrchr(result, '/');
+  char folder[EBB_PATH_MAX], problem[800];
+
+  PetscFunctionBegin;
+  (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
+  PetscCall(ebb_relation_make_run(r, folder, PETSC_COMM_WORLD, problem, sizeof problem, code));
   if (*code) {
-    if (speaks())
-      fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n%s%s%s", result, r->run.problem,
-              why[0] ? "  every site is wanted: " : "", why, why[0] ? "\n" : "");
+    if (speaks()) fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", result, problem);
     PetscFunctionReturn(0);
   }
   if (!r->run.graded) PetscCall(find_rows(r));

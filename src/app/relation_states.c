@@ -84,6 +84,13 @@ PetscErrorCode ebb_relation_compare_rules(struct ebb_relation *r)
   }
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, distance, 2, MPI_DOUBLE, MPI_SUM, r->run.comm));
   r->state_error = fmax(r->state_error, sqrt(fmax(distance[0], distance[1])));
+  for (int i = 0; l->grading && i < 2; i++) {
+    double open;
+
+    PetscCall(ebb_graded_resolution(l, r->run.comm, psi + (size_t)i * one, &open));
+    r->grading_error = fmax(r->grading_error, open);
+  }
+  r->state_error += 0.5 * r->grading_error; /* of amplitudes: probabilities move by twice as much */
   PetscCall(PetscFree(psi));
   PetscFunctionReturn(0);
 }

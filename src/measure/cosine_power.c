@@ -53,33 +53,6 @@ static PetscErrorCode make_bins(struct ebb_relational *r, struct ebb_engine *e, 
   PetscFunctionReturn(0);
 }
 
-/* Outputs, where they stand on a line, and what their volume is. */
-static PetscErrorCode make_places(struct ebb_relational *r, const struct ebb_engine *e, struct ebb_cosine *c)
-{
-  const struct ebb_lattice *l = r->model.lattice;
-  const PetscInt n = c->off + r->space->sites + (l->grading ? 0 : c->half);
-  const bool logarithm = !strcmp(e->settings.system.name, "lnv");
-
-  PetscFunctionBegin;
-  PetscCall(PetscMalloc2(n, &c->size, n, &c->value));
-  for (PetscInt i = 0; i < n; i++) {
-    const PetscInt site = i - c->off;
-
-    c->size[i] = fabs(l->grading && site >= 0 ? ebb_lattice_v(l, site) : r->space->v[0] + 4.0 * (double)site);
-    c->value[i] = logarithm ? log(c->size[i]) : c->size[i];
-  }
-  PetscCall(PetscMalloc2(c->out, &c->at, c->out, &c->share));
-  for (PetscInt i = 0; i < c->out; i++) {
-    const PetscInt site = c->out_begin + i;
-
-    c->at[i] = l->grading ? ebb_stencils_at(r->stencils, site) : c->halo + site - l->begin;
-    c->share[i] = l->grading && site >= 0 ? ebb_lattice_weight(l, site) : 1.0;
-  }
-  c->length = l->grading ? r->stencils->width : c->local + 2 * c->halo;
-  if (!l->grading) PetscCall(PetscCalloc1(c->length, &c->ext));
-  PetscFunctionReturn(0);
-}
-
 PetscErrorCode ebb_cosine_create(struct ebb_relational *r, struct ebb_engine *e)
 {
   const struct ebb_lattice *l = r->model.lattice;
@@ -104,7 +77,7 @@ PetscErrorCode ebb_cosine_create(struct ebb_relational *r, struct ebb_engine *e)
   c->narrow = r->ranks > 1 && least < c->halo;
   if (c->narrow) PetscCall(PetscMalloc1(r->space->sites, &c->whole));
   PetscCall(make_taps(c));
-  PetscCall(make_places(r, e, c));
+  PetscCall(ebb_cosine_make_places(r, e));
   PetscCall(PetscMalloc2(c->m * BLOCK, &c->work, c->m * BLOCK, &c->tally));
   c->plan = fftw_plan_many_dft(1, &c->m, BLOCK, (fftw_complex *)c->work, NULL, 1, c->m, (fftw_complex *)c->work, NULL,
                                1, c->m, FFTW_BACKWARD, FFTW_ESTIMATE);

@@ -38,6 +38,8 @@ struct ebb_cosine {
   double complex *whole;
 };
 
+/* Outputs of this rank, where they stand on a line, and what their volume is. */
+PetscErrorCode ebb_cosine_make_places(struct ebb_relational *relational, struct ebb_engine *engine);
 /* Groups of rows on a graded lattice. */
 PetscErrorCode ebb_cosine_group_rows(struct ebb_relational *relational, struct ebb_engine *engine);
 /* Stretches of neighbouring sites in one coarse bin, and room for what is kept: before the first state, when the groups

@@ -185,6 +185,28 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
   PetscFunctionReturn(0);
 }
 
+/* Bins that end inside a block would be wrong by a node's share. */
+static PetscErrorCode check_grading(const struct ebb_relational *r, size_t n,
+                                    const struct ebb_reading_settings reading[])
+{
+  const struct ebb_lattice *l = r->model.lattice;
+  struct ebb_grading_needs needs = {0};
+
+  PetscFunctionBegin;
+  for (size_t i = 0; i < n; i++) {
+    char why[160];
+
+    if (!ebb_reading_is_graded(&reading[i], r->model.parameter, why, sizeof why))
+      PetscFunctionReturn(0); /* said later */
+  }
+  PetscCall(ebb_relational_needs(&r->model, fmax(ebb_lattice_last(l, 0), l->rows.half ? 0.0 : ebb_lattice_last(l, 1)),
+                                 n, reading, &needs));
+  PetscCheck(ebb_grading_suits(l, &needs), PETSC_COMM_SELF, PETSC_ERR_ARG_INCOMP,
+             "the lattice was graded without regard to the bins of these readings");
+  PetscCall(ebb_grading_needs_clear(&needs));
+  PetscFunctionReturn(0);
+}
+
 /* What the widest reading of b needs beside the rows: half a stencil below, for the order of reading a whole one above.
  */
 static PetscErrorCode prepare_stencils(struct ebb_relational *r, size_t n, const struct ebb_reading_settings reading[])
@@ -222,6 +244,7 @@ PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, s
   r->model.t = r->t;
   PetscCall(prepare_ranks(r));
   PetscCall(ebb_space_create(&r->model, &r->space));
+  if (model->lattice->grading) PetscCall(check_grading(r, n, reading));
   if (model->lattice->grading) PetscCall(prepare_stencils(r, n, reading));
   PetscCall(PetscCalloc1(n, &r->engine));
   r->n = n;

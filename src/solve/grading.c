@@ -235,6 +235,22 @@ PetscErrorCode ebb_grading_make(const struct ebb_grading_request *r, struct ebb_
   PetscFunctionReturn(0);
 }
 
+bool ebb_grading_suits(const struct ebb_lattice *l, const struct ebb_grading_needs *needs)
+{
+  const struct ebb_grading *g = l->grading;
+
+  for (PetscInt i = 0; i < needs->cuts; i++)
+    for (int arm = 0; arm < (l->sites[1] ? 2 : 1); arm++) {
+      const double site = (needs->cut[i] - l->first[arm]) / l->rows.step, slack = SAME * fmax(fabs(site), 1.0);
+
+      for (PetscInt b = 0; b < g->blocks; b++)
+        if ((double)g->block[b].nodes < g->block[b].sites && floor(site - slack) + 1.0 > g->block[b].first &&
+            floor(site + slack) + 1.0 < g->block[b].first + g->block[b].sites)
+          return false;
+    }
+  return true;
+}
+
 PetscErrorCode ebb_grading_destroy(struct ebb_grading **grading)
 {
   PetscFunctionBegin;
