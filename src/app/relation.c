@@ -157,7 +157,6 @@ static bool needs_every_site(const struct ebb_relation *r, char why[], size_t si
   for (size_t i = 0; i < r->readings.readings && !why[0]; i++)
     if (!ebb_reading_is_graded(&r->readings.reading[i], parameter, text, sizeof text))
       (void)snprintf(why, size, "readings[%zu] ('%s'): %s", i, r->readings.reading[i].name, text);
-  if (r->readings.two_time.given && !why[0]) (void)snprintf(why, size, "propagator: its states need every site");
   return why[0] != '\0';
 }
 

@@ -4,6 +4,7 @@
 #include "run.h"
 
 #include "ebbturn/grading.h"
+#include "ebbturn/histories.h"
 #include "ebbturn/relational.h"
 
 #include <math.h>
@@ -46,6 +47,7 @@ static PetscErrorCode needs_of(const struct ebb_run *run, double v_max, struct e
   *needs = (struct ebb_grading_needs){0};
   if (!run->readings) PetscFunctionReturn(0);
   PetscCall(ebb_relational_needs(&model, last, run->readings->readings, run->readings->reading, needs));
+  PetscCall(ebb_two_time_needs(l, &run->readings->two_time, needs));
   PetscFunctionReturn(0);
 }
 

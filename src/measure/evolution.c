@@ -9,13 +9,18 @@
 enum { ROWS = 64 };
 static const double ROWS_MOST = 6e7; /* numbers of a block's table: half a gigabyte */
 
+double ebb_evolution_highest(double v_reach)
+{
+  return 0.5 * v_reach + 8.0 * cbrt(v_reach) + 12.0; /* Airy's scale at the turning volume */
+}
+
 /* Gauss-Legendre nodes in k on (0, high): a vector on |v| <= v_reach has no more than k = v_reach/2 and the tail of
  * e_k below its turning volume 2k; its functions turn with k at the rate kappa t + 2 ln v. */
 static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants *constants, double v_reach,
                             double v_all, double t, double finer, char problem[], size_t size)
 {
   const double kappa = constants->kappa;
-  double high = 0.5 * v_reach + 8.0 * cbrt(v_reach) + 12.0; /* Airy's scale at the turning volume */
+  double high = ebb_evolution_highest(v_reach);
   gsl_integration_glfixed_table *table;
   double *k;
 
@@ -132,7 +137,7 @@ PetscErrorCode ebb_block_make(const struct ebb_evolution *e, double low, double 
     PetscCall(ebb_cursor_open(e->basis, arm, first, &cursor));
     ebb_cursor_next(cursor, end - first, b->rows + (size_t)at * (size_t)n);
     ebb_cursor_close(&cursor);
-    PetscCall(ebb_cursor_open(e->packet->basis, arm, first, &cursor));
+    PetscCall(ebb_cursor_open_sites(e->packet->basis, arm, first, &cursor));
     ebb_cursor_next(cursor, end - first, b->packet_rows + (size_t)at * (size_t)p);
     ebb_cursor_close(&cursor);
     for (PetscInt i = first; i < end; i++) b->v[at++] = e->lattice->first[arm] + e->lattice->rows.step * (double)i;
@@ -216,7 +221,7 @@ PetscErrorCode ebb_columns_add(const struct ebb_evolution *e, MPI_Comm comm, con
         double sum = 0.0;
 
         for (PetscInt j = 0; j < c->m; j++) sum += c->share[j] * (re[j] * re[j] + im[j] * im[j]);
-        out[ebb_lattice_global(l, arm, n + r)] = sum;
+        out[ebb_lattice_global(l, arm, n + r)] = ebb_lattice_measure(l, arm, n + r) * sum;
       }
     }
     ebb_cursor_close(&cursor);

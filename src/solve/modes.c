@@ -366,6 +366,22 @@ static PetscErrorCode normalise_full(struct ebb_basis *basis, const enum ebb_cha
   PetscFunctionReturn(0);
 }
 
+double ebb_basis_wave_volume(const struct ebb_rows *rows, double k_max)
+{
+  enum { LOOKS = 24 }; /* halvings of k: small ones reach as far again, as y goes like 1/k against x */
+  double b[EBB_SERIES_TERMS + 1], c[EBB_SERIES_TERMS + 1], reach = 0.0;
+
+  rows->prescription->measure_series(EBB_SERIES_TERMS + 1, b);
+  rows->prescription->hop_series(EBB_SERIES_TERMS + 1, c);
+  for (int i = 0; i < LOOKS; i++) {
+    struct ebb_series series;
+
+    ebb_series_make(ldexp(k_max, -i), rows->prescription->tilt, b, c, &series);
+    reach = fmax(reach, ebb_series_reach(&series, TINY_TERM));
+  }
+  return reach;
+}
+
 /* Series of every mode, the matching site and the end of the growing region. */
 static PetscErrorCode prepare(struct ebb_basis *basis, PetscInt *match)
 {
