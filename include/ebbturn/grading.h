@@ -11,11 +11,12 @@
 
 /* What readers of states ask of a grading beyond its own rule; zeros ask nothing. */
 struct ebb_grading_needs {
-  double plain_v; /* every site is kept up to here at least */
-  double shift;   /* psi is wanted at v -+ shift as well, and what is made of it is summed */
-  double k_max;   /* sums hold waves up to here */
-  PetscInt extra; /* nodes more a block: what multiplies |psi|^2 is a smooth function of the block */
-  PetscInt alone; /* a block of no more sites than this has all of them as its nodes */
+  double plain_v;  /* every site is kept up to here at least */
+  double shift;    /* psi is wanted at v -+ shift as well, and what is made of it is summed */
+  double k_max;    /* sums hold waves up to here */
+  PetscInt extra;  /* nodes more a block: what multiplies |psi|^2 is a smooth function of the block */
+  PetscInt alone;  /* a block of no more sites than this has all of them as its nodes */
+  PetscInt places; /* where psi is wanted for every node, beside itself */
   PetscInt cuts;
   double *cut; /* [cuts] volumes that no block reaches across; owned */
 };

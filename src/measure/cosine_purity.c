@@ -6,7 +6,7 @@
 
 #include <math.h>
 
-/* Outputs of this rank that hold all but a rounding of an outcome: |v| between two of its bins. */
+/* Outputs of this rank that hold all but a rounding of an outcome: the system between two of its bins. */
 static void reach(const struct ebb_engine *e, PetscInt i, double *low, double *high)
 {
   const double *mass = e->sum + (size_t)i * (size_t)e->bin_count;
@@ -18,6 +18,9 @@ static void reach(const struct ebb_engine *e, PetscInt i, double *low, double *h
   for (sum = 0.0; z > a && (sum += mass[z]) < PETSC_MACHINE_EPSILON * total;) z--;
   *low = e->bins->low[a];
   *high = e->bins->high[z];
+  if (e->lost[i] < PETSC_MACHINE_EPSILON * total) return;
+  *low = -INFINITY; /* some of it lies in no bin */
+  *high = INFINITY;
 }
 
 /* Rows of one outcome: its samples and slices as rows, the outputs in reach as columns. */

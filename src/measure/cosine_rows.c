@@ -38,14 +38,14 @@ PetscErrorCode ebb_cosine_make_places(struct ebb_relational *r, struct ebb_engin
   PetscFunctionReturn(0);
 }
 
-/* |v| at the lower end of a coarse bin; infinite beyond the last one where bins are the rows. */
+/* |v| from which a coarse bin holds what is there, by the first of its rows where bins are those. */
 static double edge_of(const struct ebb_engine *e, PetscInt group)
 {
   const struct ebb_bins *b = e->bins;
   const PetscInt q = group < b->groups ? PetscMin(group * b->per_group, b->n) : b->n;
 
   if (q == b->n) return b->rows ? INFINITY : e->system->kind->volume_of(b->high[b->n - 1]);
-  return e->system->kind->volume_of(b->low[q]);
+  return e->system->kind->volume_of(b->rows ? b->centre[q] : b->low[q]);
 }
 
 PetscErrorCode ebb_cosine_group_rows(struct ebb_relational *r, struct ebb_engine *e)

@@ -2,7 +2,6 @@
 #include "evolution.h"
 
 #include <cblas.h>
-#include <gsl/gsl_integration.h>
 #include <math.h>
 #include <string.h>
 
@@ -21,8 +20,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
 {
   const double kappa = constants->kappa;
   double high = ebb_evolution_highest(v_reach);
-  gsl_integration_glfixed_table *table;
-  double *k;
+  double *k, *share;
 
   PetscFunctionBegin;
   for (PetscInt j = 0; j < e->packet->n; j++) high = fmax(high, e->packet->omega[j] / kappa);
@@ -34,14 +32,9 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
                             (int)e->n));
     PetscFunctionReturn(0);
   }
-  table = gsl_integration_glfixed_table_alloc((size_t)e->n);
-  PetscCheck(table, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for %d nodes", (int)e->n);
+  PetscCall(ebb_gauss_legendre(0.0, high, e->n, &k, &share));
   PetscCall(PetscMalloc1(2 * e->n, &e->weight));
   PetscCall(PetscMalloc1(2 * e->n, &e->omega));
-  PetscCall(PetscMalloc1(e->n, &k));
-  for (PetscInt j = 0; j < e->n; j++)
-    (void)gsl_integration_glfixed_point(0.0, high, (size_t)j, &k[j], &e->weight[j], table);
-  gsl_integration_glfixed_table_free(table);
   {
     const PetscInt n = e->n, copies = e->lattice->rows.half ? 1 : 2; /* a full lattice has both channels */
     enum ebb_channel *channel;
@@ -50,7 +43,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
     PetscCall(PetscMalloc2(copies * n, &channel, copies * n, &all));
     for (PetscInt j = 0; j < copies * n; j++) {
       all[j] = k[j % n];
-      e->weight[j] = e->weight[j % n];
+      e->weight[j] = share[j % n];
       e->omega[j] = kappa * all[j];
       channel[j] = e->lattice->rows.half ? EBB_CHANNEL_ONLY : j < n ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
     }
@@ -58,6 +51,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
     PetscCall(ebb_basis_create_modes(e->lattice, e->n, all, channel, &e->basis));
     PetscCall(PetscFree2(channel, all));
     PetscCall(PetscFree(k));
+    PetscCall(PetscFree(share));
   }
   e->own = true;
   PetscFunctionReturn(0);

@@ -112,6 +112,7 @@ PetscErrorCode ebb_relational_needs(const struct ebb_relational_model *model, do
     if (!ebb_reading_is_cosine_power(s)) continue;
     needs->shift = fmax(needs->shift, 4.0 * (double)(s->power / 2));
     needs->alone = PetscMax(needs->alone, s->power + 2);
+    needs->places = PetscMax(needs->places, s->power / 2 + 1 + s->power);
     if (s->binning == EBB_BINNING_SITES) needs->plain_v = fmax(needs->plain_v, groups + 4.0 * (double)(2 * s->power));
   }
   PetscFunctionReturn(0);

@@ -94,6 +94,8 @@ static void prepare_groups(struct ebb_relational *r, struct ebb_engine *e)
                !r->model.lattice->rows.prescription->grid && r->model.lattice->rows.half)) {
     b->per_group = PetscMax((PetscInt)lround(v_bounce / (1.5 * r->model.lattice->rows.step)), 1);
     e->result.order_width = r->model.lattice->rows.step * (double)b->per_group;
+    if (rows && r->model.lattice->sites[1] && r->model.lattice->first[0] != r->model.lattice->first[1])
+      b->per_group *= 2; /* bins of two arms */
   } else {
     b->per_group = (b->n + GROUPS - 1) / GROUPS;
     b->groups = (b->n + b->per_group - 1) / b->per_group;
