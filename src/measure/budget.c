@@ -18,7 +18,7 @@ const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS] = {
     [EBB_ERROR_NORMALISATION] = "|norm - 1| and drift of the recursion against the large-volume waves",
     [EBB_ERROR_PROPAGATION] = "remainder of the propagator, drift of norm and <Theta>",
     [EBB_ERROR_GRADING] = "difference to a lattice graded in other blocks, with other nodes",
-    [EBB_ERROR_ROUNDING] = "rounding of the sums over sites",
+    [EBB_ERROR_ROUNDING] = "rounding of the sums over sites, and of the waves far out where the lattice is graded",
 };
 
 /* Moments that may vanish are compared with their own bound instead of their value. */
