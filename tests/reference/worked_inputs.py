@@ -6,7 +6,9 @@ import re
 from common import check, h5py, os, run, tempfile
 
 INPUTS = os.path.join(os.path.dirname(__file__), "..", "..", "inputs")
-SLOW = ("closed_connection.yaml", "first_bounce.yaml", "open_universe.yaml", "polymer_scale.yaml")  # seconds each
+SLOW = ("closed_connection.yaml", "first_bounce.yaml", "open_universe.yaml", "polymer_scale.yaml", "polymer_scale_closed.yaml",
+        "polymer_scale_lambda.yaml")  # seconds each, or run by test_sweep_physics.py as well
+LONG = ("thousand_cases.yaml",)  # minutes: only what a dry run says
 
 
 def read(path):
@@ -19,7 +21,7 @@ def files():
 
 
 def is_readings(path):
-    return "\nreadings:" in read(path)
+    return "\nreadings:" in read(path) and "\nbase:" not in read(path)
 
 
 def model(path, scratch):
@@ -29,6 +31,9 @@ def model(path, scratch):
     check(commands, f"{name} is for some command")
     for command in commands:
         check(f"ebbturn {command} inputs/{name}" in text.replace("\n# ", " "), f"{name} says how to run '{command}'")
+        if name in LONG:
+            check("1008 cases" in run(command, path, "--dry-run").stdout, f"{name}: its cases")
+            continue
         out = os.path.join(scratch, f"{name}.{command}.h5")
         run(command, path, "-o", out)
         if os.path.exists(out):
