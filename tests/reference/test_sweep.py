@@ -229,12 +229,12 @@ def bad_readings(top):
 
 
 def alone(top):
-    """Runs without a launcher, at once: none may lean on what another one takes away at its end."""
+    """Runs without a launcher, side by side: none may lean on what another one takes away at its end."""
     folder = prepare(top, "alone")
-    runs = [subprocess.Popen([PROGRAM, "evolve", "flat.yaml", "-o", f"{i}.h5"], cwd=folder, stdout=subprocess.DEVNULL,
-                             stderr=subprocess.PIPE, text=True) for i in range(8)]
+    script = 'for i in 1 2 3; do "$0" evolve flat.yaml -o "$1.h5" --force > /dev/null || exit; done'
+    runs = [subprocess.Popen(["sh", "-c", script, PROGRAM, str(i)], cwd=folder, stderr=subprocess.PIPE, text=True) for i in range(5)]
     said = [run.communicate(timeout=110)[1] for run in runs]
-    check(all(run.returncode == 0 for run in runs) and not any(said), f"eight runs at once say nothing: {''.join(said)}")
+    check(all(run.returncode == 0 for run in runs) and not any(said), f"runs side by side say nothing: {''.join(said)}")
 
 
 def main():
