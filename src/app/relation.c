@@ -154,6 +154,19 @@ PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
 
   PetscFunctionBegin;
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
+  if (!strcmp(r->settings.lattice.layout, "graded")) {
+    *code = EBB_EXIT_USAGE;
+    if (speaks())
+      fprintf(
+          stderr,
+          "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
+          "  it was evolved with lattice.layout = 'graded', and readings need the states on every site\n"
+          "  try       'ebbturn evolve MODEL --set lattice.layout=full' with a lattice.volume_max that can be held\n",
+          result);
+    PetscFunctionReturn(0);
+  }
+  /* readings need the states on every site, whatever the run took */
+  (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
   PetscCall(ebb_run_create(&r->settings, folder, PETSC_COMM_WORLD, &r->run, code));
   if (*code) {
     if (speaks())

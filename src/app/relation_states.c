@@ -103,7 +103,7 @@ static PetscErrorCode watch_edge(struct ebb_relation *r, PetscInt count, const d
 {
   const struct ebb_lattice *l = &r->run.lattice;
   const PetscInt local = l->end - l->begin, slices = r->run.bundle ? r->run.bundle->points : 1;
-  const double edge = 0.9 * fabs(ebb_lattice_v(l, ebb_lattice_size(l) - 1));
+  const double edge = 0.9 * ebb_lattice_top(l);
   double *beyond;
 
   PetscFunctionBegin;

@@ -58,10 +58,15 @@ double ebb_series_reach(const struct ebb_series *series, double tiny)
 
 void ebb_series_values(const struct ebb_series *series, double v, double complex *x, double complex *y)
 {
+  ebb_series_partial(series, EBB_SERIES_TERMS, v, x, y);
+}
+
+void ebb_series_partial(const struct ebb_series *series, int terms, double v, double complex *x, double complex *y)
+{
   const double u = 1.0 / v, root = series->tilt != 0.0 ? pow(v, 0.5 * series->tilt) : 1.0;
 
   *x = *y = 0.0;
-  for (int j = EBB_SERIES_TERMS - 1; j >= 0; j--) {
+  for (int j = terms - 1; j >= 0; j--) {
     *x = *x * u + series->x[j];
     *y = *y * u + series->y[j];
   }
