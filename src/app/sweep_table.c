@@ -168,7 +168,7 @@ PetscErrorCode ebb_sweep_write(struct ebb_sweep *sweep, bool force)
                        "s", "when the case was finished, Unix time"));
   PetscCall(put_member(store, sweep, "/provenance", "case_seconds", offsetof(struct ebb_sweep_row, seconds), line, "s",
                        "how long the case took"));
-  PetscCall(ebb_result_stamp(store, "finished"));
+  PetscCall(ebb_result_finish(store, PETSC_COMM_SELF));
   PetscCall(ebb_store_commit(&store, true));
   PetscCall(PetscFree2(line, text));
   ebb_settings_clear(&settings);
