@@ -9,6 +9,7 @@
 #include <slepcsys.h>
 #include <stdlib.h>
 #include <string.h>
+#include <unistd.h>
 
 /* An option for PETSc that nothing has asked for is most often misspelt. */
 static PetscErrorCode warn_of_unused(const struct ebb_invocation *invocation)
@@ -26,6 +27,17 @@ static PetscErrorCode warn_of_unused(const struct ebb_invocation *invocation)
         fprintf(stderr, "ebbturn: warning: nothing used the PETSc option '-%s'\n", name[i]);
   PetscCall(PetscOptionsLeftRestore(NULL, &count, &name, &value));
   PetscFunctionReturn(0);
+}
+
+/* The end where HDF5 is left with a file that it cannot close, on every rank where it is so on any. */
+static void leave_if_abandoned(int code)
+{
+  int abandoned = ebb_store_abandoned();
+
+  if (MPI_Allreduce(MPI_IN_PLACE, &abandoned, 1, MPI_INT, MPI_MAX, PETSC_COMM_WORLD) || !abandoned) return;
+  (void)fflush(NULL);
+  (void)MPI_Barrier(PETSC_COMM_WORLD);
+  _exit(code);
 }
 
 /* SLEPc gets arguments of its own: ours mean nothing to it, and a .petscrc lying about must not change a run. */
@@ -49,6 +61,7 @@ static int run_parallel(char *program, const struct ebb_command *command, const 
     code = EBB_EXIT_BUG;
   else {
     code = command->run(invocation);
+    leave_if_abandoned(code);
     if (warn_of_unused(invocation)) code = EBB_EXIT_BUG;
     if (PetscPopErrorHandler()) code = EBB_EXIT_BUG;
   }
