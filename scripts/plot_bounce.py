@@ -59,7 +59,8 @@ def picture(result, clock):
     data, v = result.file["probability/v"], result["lattice/v"]
     weight = result["lattice/weight"] if "lattice/weight" in result else np.ones(len(v))
     spacing = np.diff(v)
-    logarithmic = len(v) > 2 and v[0] > 0 and np.ptp(spacing) > 1e-6 * np.max(spacing)
+    graded = result.text("/lattice", "layout") == "graded"
+    logarithmic = graded or (len(v) > 2 and v[0] > 0 and np.ptp(spacing) > 1e-6 * np.max(spacing))
     which, weight, edge = cells(v, weight, logarithmic)
     rows = np.unique(np.linspace(0, data.shape[0] - 1, min(ROWS, data.shape[0])).astype(int))
     below = np.zeros((len(rows), len(edge)))  # probability below each cell edge, a uniform density within a cell

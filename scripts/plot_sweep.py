@@ -2,7 +2,7 @@
 # SPDX-License-Identifier: BSD-2-Clause
 """The table of a sweep as a picture: bounce volume, with its error, against the setting that varies most (or --x KEY), one
 curve for each combination of the others, the effective bounce dashed; below it the slope of the logarithms between neighbours
-where the polymer scale varies, else the ratio to the effective bounce. Writes PREFIX.pdf and PREFIX.png."""
+where the polymer scale varies, else the ratio to the effective bounce. Crosses: the bounce by each clock of a readings file. Writes PREFIX.pdf and PREFIX.png."""
 import argparse
 import os
 import sys
@@ -38,6 +38,16 @@ def curves(table, keys, x):
     return found
 
 
+def clocks(axes, table, rows, x, colour):
+    """What other clocks call the bounce, where they read one, as a physical volume."""
+    unit = table["bounce_volume"][rows] / table["bounce_v"][rows]
+    names = [k[len("relational_"):-len("_bounce")] for k in table if k.startswith("relational_") and k.endswith("_bounce")]
+    for name, mark in zip(names, "x+1234" * len(names)):
+        ok = table[f"relational_{name}_status"][rows] == b"ok"
+        value, error = (unit * table[f"relational_{name}_bounce{e}"][rows] for e in ("", "_error"))
+        axes.errorbar(table[x][rows][ok], value[ok], error[ok], fmt=mark, ms=5, lw=1, color=colour, alpha=0.6, label=f"by clock {name}")
+
+
 def main():
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("result")
@@ -45,7 +55,7 @@ def main():
     parser.add_argument("--x", metavar="KEY", help="setting on the horizontal axis")
     arguments = parser.parse_args()
     table = read(arguments.result)
-    keys = [k for k in table if "." in k]
+    keys = [k for k in table if "." in k and not k.startswith(("relational_", "histories_", "propagator_"))]
     numbers = [k for k in keys if table[k].dtype.kind == "f"]
     if not numbers or (arguments.x and arguments.x not in numbers):
         sys.exit(f"plot_sweep: error: no numbers to plot over; the sweep varies {', '.join(keys)}")
@@ -55,6 +65,7 @@ def main():
         at = table[x][rows]
         line = above.errorbar(at, table["bounce_volume"][rows], table["bounce_volume_error"][rows], fmt="o-", ms=4, label=label or "bounce")
         colour = line[0].get_color()
+        clocks(above, table, rows, x, colour)
         above.plot(at, table["bounce_effective_volume"][rows], "--", color=colour, lw=1)
         if x == SCALE:
             middle = np.sqrt(at[:-1] * at[1:])

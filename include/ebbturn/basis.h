@@ -64,6 +64,9 @@ PetscErrorCode ebb_basis_create_waves(const struct ebb_lattice *lattice, PetscIn
                                       struct ebb_basis **basis);
 
 PetscErrorCode ebb_basis_destroy(struct ebb_basis **basis);
+/* The functions of a basis (modes, which it shares and keeps alive) on a lattice with other rows. */
+PetscErrorCode ebb_basis_create_view(struct ebb_basis *basis, const struct ebb_lattice *lattice,
+                                     struct ebb_basis **view);
 /* One more user, who destroys it too; the last one frees it. */
 struct ebb_basis *ebb_basis_share(struct ebb_basis *basis);
 /* Functions first..last alone (levels only, one user). */
@@ -80,6 +83,11 @@ double ebb_basis_match_volume(const struct ebb_basis *basis);
 /* A cursor standing before site n of an arm. next writes rows n..n+count-1, [count][size], and moves on. */
 PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor);
 void ebb_cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows);
+/* The same where rows are to be sites one by one although the lattice is graded (modes: any number of them). */
+PetscErrorCode ebb_cursor_open_sites(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor);
+/* Nodes of a graded lattice: three rows each, [count][3][size]: e here; the difference of e/sqrt(B) from here to the
+ * site next outward, by the flux, so that nothing cancels; e two sites outward. */
+void ebb_cursor_links(struct ebb_cursor *cursor, PetscInt count, double *rows);
 /* Modes only: largest |relative amplitude| and |phase| difference between the wave carried by the recursion to here and
  * the normalised one; 0 before the matching volume. A direct measurement of accumulated rounding. */
 double ebb_cursor_drift(const struct ebb_cursor *cursor);

@@ -70,9 +70,10 @@ struct ebb_state_settings {
 };
 
 struct ebb_lattice_settings {
-  double volume_max;       /* largest v (not physical volume) of the lattice; 0 = auto */
-  int points;              /* 0 = not given; N: a wall after N sites (wdw: number of grid points) */
-  double lnv_min, lnv_max; /* wdw; NAN when not given */
+  double volume_max;         /* largest v (not physical volume) of the lattice; 0 = auto */
+  int points;                /* 0 = not given; N: a wall after N sites (wdw: number of grid points) */
+  char layout[EBB_NAME_MAX]; /* auto | full | graded */
+  double lnv_min, lnv_max;   /* wdw; NAN when not given */
 };
 
 struct ebb_numerics_settings {

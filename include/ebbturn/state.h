@@ -86,6 +86,7 @@ struct ebb_state_request {
   /* The basis of an earlier packet of the same lattice and nodes, to be shared; NULL: one is made. */
   struct ebb_basis *basis;
   double shift; /* omega^2 = kappa^2 k^2 - shift; modes below drop out */
+  bool wide;    /* the lattice may be graded: a plan then reaches as far as the state does, up to v = 1e60 */
 };
 
 double ebb_state_kappa(const struct ebb_state_request *request);
@@ -101,6 +102,9 @@ struct ebb_plan {
   double period; /* images of the packet stand this far apart in ln v */
   double v_max; /* smallest v beyond which the v^2-weighted probability is negligible at both ends of the clock range */
   double tail;  /* that v^2-weighted share beyond v_max, by the large-volume waves */
+  double match_v; /* where the recursion is matched to the large-volume waves */
+  double edge_k;  /* mean k: its waves set the windows before the lattice edge */
+  bool floored;   /* v_max is where |psi|^2 reaches its rounding floor, before its v^2-weighted tail ends */
 };
 
 /* Chooses nodes and the largest volume for clock values in [from, to]. lattice: prescription and sector count, not its

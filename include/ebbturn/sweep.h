@@ -19,7 +19,8 @@ struct ebb_sweep_axis {
 };
 
 struct ebb_sweep_plan {
-  char base[EBB_PATH_MAX]; /* relative to the plan's folder */
+  char base[EBB_PATH_MAX];     /* relative to the plan's folder */
+  char readings[EBB_PATH_MAX]; /* the same; "" where no clocks are read */
   struct ebb_sweep_axis axis[EBB_SWEEP_AXES_MAX];
   size_t axes;
   bool paired; /* values go together; otherwise every combination, the last axis fastest */

@@ -40,6 +40,20 @@ static void leave_if_abandoned(int code)
   _exit(code);
 }
 
+/* Started by hand and not by a launcher, there is nobody to talk to: Open MPI then needs no daemon of its own and no
+ * network, whose search takes it 0.4 s. What the environment says already holds. */
+static void start_alone(void)
+{
+  static const char *const launchers[] = {"PMIX_RANK",    "PMI_RANK",       "PMI_FD",      "OMPI_COMM_WORLD_RANK",
+                                          "SLURM_PROCID", "FLUX_TASK_RANK", "ALPS_APP_PE", "MPI_LOCALRANKID"};
+  static const char *const alone[][2] = {
+      {"OMPI_MCA_ess_singleton_isolated", "1"}, {"OMPI_MCA_pml", "ob1"}, {"OMPI_MCA_btl", "self"}};
+
+  for (size_t i = 0; i < sizeof launchers / sizeof *launchers; i++)
+    if (getenv(launchers[i])) return;
+  for (size_t i = 0; i < sizeof alone / sizeof *alone; i++) setenv(alone[i][0], alone[i][1], 0);
+}
+
 /* SLEPc gets arguments of its own: ours mean nothing to it, and a .petscrc lying about must not change a run. */
 static int run_parallel(char *program, const struct ebb_command *command, const struct ebb_invocation *invocation)
 {
@@ -52,6 +66,7 @@ static int run_parallel(char *program, const struct ebb_command *command, const 
   arguments[0] = program;
   arguments[1] = no_file;
   for (int i = 0; i < options; i++) arguments[2 + i] = invocation->library_argv[i];
+  start_alone();
   if (SlepcInitialize(&count, &arguments, NULL, NULL)) {
     free(given);
     return EBB_EXIT_BUG; /* PETSc said why */

@@ -8,6 +8,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+const double ebb_relation_identity_limit = 1e-11;
 static const double SAME_CLOCK = 1e-12;         /* of the run's range: a stored sample that is one of the window */
 static const double ACCUMULATOR_BYTES = 2.56e8; /* a histogram larger than this is binned in ln v */
 
@@ -17,6 +18,13 @@ static bool speaks(void)
 
   (void)MPI_Comm_rank(PETSC_COMM_WORLD, &rank);
   return rank == 0;
+}
+
+int ebb_relation_refuse(const struct ebb_relation *r, const char *problem)
+{
+  if (speaks())
+    fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", r->readings_name, problem);
+  return EBB_EXIT_USAGE;
 }
 
 /* The model as it was run: settings with all overrides, as JSON, which is YAML. */
@@ -50,8 +58,7 @@ static PetscErrorCode read_result(const char *path, struct ebb_relation *r, int 
   PetscFunctionReturn(0);
 }
 
-/* path NULL: the text of a checkpoint. */
-static PetscErrorCode read_readings(const char *path, struct ebb_relation *r, int *code)
+PetscErrorCode ebb_relation_read_readings(const char *path, struct ebb_relation *r, int *code)
 {
   const size_t words = ebb_reading_kinds();
   struct ebb_problems *problems = ebb_problems_create();
@@ -76,24 +83,20 @@ static PetscErrorCode read_readings(const char *path, struct ebb_relation *r, in
   PetscFunctionReturn(0);
 }
 
-/* The window's samples, inside the run's range. */
-static PetscErrorCode make_window(struct ebb_relation *r, int *code)
+PetscErrorCode ebb_relation_window(struct ebb_relation *r, char problem[], size_t size)
 {
   struct ebb_window_settings *w = &r->readings.window;
   const struct ebb_clock_settings *c = &r->settings.clock;
   const double slack = 1e-12 * (c->to - c->from);
 
   PetscFunctionBegin;
+  problem[0] = '\0';
   if (isnan(w->from)) w->from = c->from;
   if (isnan(w->to)) w->to = c->to;
   if (w->samples == 0) w->samples = PetscMax(c->samples, 3);
   if (w->from < c->from - slack || w->to > c->to + slack || !(w->from < w->to)) {
-    *code = EBB_EXIT_USAGE;
-    if (speaks())
-      fprintf(stderr,
-              "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
-              "  window from %.15g to %.15g must lie inside the run's clock range, %.15g to %.15g\n",
-              r->readings_name, w->from, w->to, c->from, c->to);
+    (void)snprintf(problem, size, "window from %.15g to %.15g must lie inside the run's clock range, %.15g to %.15g",
+                   w->from, w->to, c->from, c->to);
     PetscFunctionReturn(0);
   }
   r->m = w->samples;
@@ -131,12 +134,15 @@ static PetscErrorCode find_rows(struct ebb_relation *r)
 
 PetscErrorCode ebb_relation_read(const char *result, const char *readings, struct ebb_relation *r, int *code)
 {
+  char problem[320] = "";
+
   PetscFunctionBegin;
   ebb_settings_unset(&r->settings);
   r->readings_name = readings ? readings : r->keeper.path;
   PetscCall(read_result(result, r, code));
-  if (!*code) PetscCall(read_readings(readings, r, code));
-  if (!*code) PetscCall(make_window(r, code));
+  if (!*code) PetscCall(ebb_relation_read_readings(readings, r, code));
+  if (!*code) PetscCall(ebb_relation_window(r, problem, sizeof problem));
+  if (problem[0]) *code = ebb_relation_refuse(r, problem);
   r->keeper.total = r->readings.readings ? r->m : 0;
   PetscFunctionReturn(0);
 }
@@ -148,6 +154,19 @@ PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
 
   PetscFunctionBegin;
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
+  if (!strcmp(r->settings.lattice.layout, "graded")) {
+    *code = EBB_EXIT_USAGE;
+    if (speaks())
+      fprintf(
+          stderr,
+          "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
+          "  it was evolved with lattice.layout = 'graded', and readings need the states on every site\n"
+          "  try       'ebbturn evolve MODEL --set lattice.layout=full' with a lattice.volume_max that can be held\n",
+          result);
+    PetscFunctionReturn(0);
+  }
+  /* readings need the states on every site, whatever the run took */
+  (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
   PetscCall(ebb_run_create(&r->settings, folder, PETSC_COMM_WORLD, &r->run, code));
   if (*code) {
     if (speaks())

@@ -13,8 +13,12 @@
 #include "keeper.h"
 #include "run.h"
 
+/* Identities hold to rounding in sums of the lattice's length: their largest residual, as a share of the window. */
+extern const double ebb_relation_identity_limit;
+
 struct ebb_relation {
   struct ebb_keeper keeper;
+  bool abandon; /* a stop saves nothing: a sweep runs the case again */
   struct ebb_settings settings;
   struct ebb_readings readings;
   char *model_text, *readings_text, *settings_text; /* settings_text, model_text: PetscMalloc'ed */
@@ -32,6 +36,13 @@ struct ebb_relation {
 /* Opens the result and reads the readings, from a file, or from the text that stands in relation->keeper.origin where
  * readings is NULL; problems are printed. *code: 0, 2 or 4. Collective. */
 PetscErrorCode ebb_relation_read(const char *result, const char *readings, struct ebb_relation *relation, int *code);
+/* Parts of it, for a sweep, which has settings of its own. The readings, where readings_name is set; path NULL: the
+ * text of a checkpoint. *code: 0, 2 or 4, problems being printed. Collective. */
+PetscErrorCode ebb_relation_read_readings(const char *path, struct ebb_relation *relation, int *code);
+/* The window's samples, of settings and readings; problem [size]: "" where it lies inside the run's range. */
+PetscErrorCode ebb_relation_window(struct ebb_relation *relation, char problem[], size_t size);
+/* Prints a problem of the readings file; an exit code. */
+int ebb_relation_refuse(const struct ebb_relation *relation, const char *problem);
 /* Sets up the model of what was read. *code: 0, 2 or 4. Collective. */
 PetscErrorCode ebb_relation_set_up(struct ebb_relation *relation, int *code);
 PetscErrorCode ebb_relation_destroy(struct ebb_relation *relation);
@@ -58,6 +69,16 @@ PetscErrorCode ebb_relation_put(struct ebb_store *store, const struct ebb_relati
 PetscErrorCode ebb_relation_put_field(struct ebb_store *store, const struct ebb_relation *relation, const char *group,
                                       const struct ebb_reading_settings *settings,
                                       const struct ebb_reading_result *result);
+/* What a clock calls the bounce. Numbers that it does not have are NAN. */
+struct ebb_relation_bounce {
+  const char *reading, *clock, *verdict, *meaning;
+  double median, median_error, at, low, high, dwell, clock_spread, effective;
+  PetscInt outcome; /* that it was read from, -1 where every outcome is refused */
+};
+/* Does a reading say anything of the volume? Only then it has a bounce. */
+bool ebb_relation_of_volume(const struct ebb_reading_settings *settings);
+struct ebb_relation_bounce ebb_relation_bounce_of(const struct ebb_reading_settings *settings,
+                                                  const struct ebb_reading_result *result);
 /* Group /comparison, one row for the parameter and one for each reading of v; printed as well. */
 PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct ebb_relation *relation,
                                            const struct ebb_relational *relational);
@@ -66,14 +87,14 @@ PetscErrorCode ebb_relation_put_bounds(struct ebb_store *store, const struct ebb
 /* The summary on stdout. */
 void ebb_relation_print(const struct ebb_relation *relation, const struct ebb_relational *relational);
 
-/* Histories and the propagator diagnostic, where the readings file asks for them. *code: 0, or 2 with the problem said.
- * Collective. */
+/* Histories and the propagator diagnostic, where the readings file asks for them. problem [size]: "" or what cannot be
+ * done. Collective. */
 struct ebb_relation_two_times {
   struct ebb_history *history; /* [v_stars], NULL where not asked for */
   struct ebb_two_time two_time;
 };
 PetscErrorCode ebb_relation_two_times(struct ebb_relation *relation, struct ebb_relation_two_times *two_times,
-                                      int *code);
+                                      char problem[], size_t size);
 PetscErrorCode ebb_relation_two_times_put(struct ebb_store *store, const struct ebb_relation *relation,
                                           const struct ebb_relation_two_times *two_times);
 void ebb_relation_two_times_print(const struct ebb_relation *relation, const struct ebb_relation_two_times *two_times);

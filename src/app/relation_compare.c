@@ -12,12 +12,6 @@
 
 enum { ROWS_MOST = EBB_READINGS_MAX + 1 };
 
-/* One clock. */
-struct row {
-  const char *reading, *clock, *verdict, *meaning;
-  double median, median_error, at, low, high, dwell, clock_spread, effective;
-};
-
 static const char parameter_means[] = "minimum over the parameter of the median";
 static const char reading_means[] = "minimum over readings of the median given the reading";
 static const char volume_means[] = "peak of the dwell over volume: the turning point, broadened upward";
@@ -35,26 +29,34 @@ static double least(const struct ebb_reading_result *x, const double values[], P
   return best;
 }
 
-static struct row of_reading(const struct ebb_reading_settings *s, const struct ebb_reading_result *x)
+bool ebb_relation_of_volume(const struct ebb_reading_settings *s)
 {
-  struct row row = {.reading = s->name,
-                    .clock = s->clock.name,
-                    .verdict = ebb_clock_verdict_names[x->verdict],
-                    .meaning = reading_means,
-                    .median = NAN,
-                    .median_error = NAN,
-                    .at = NAN,
-                    .low = NAN,
-                    .high = NAN,
-                    .dwell = NAN,
-                    .clock_spread = NAN,
-                    .effective = NAN};
+  return !strcmp(s->system.name, "v") || !strcmp(s->clock.name, "v");
+}
+
+struct ebb_relation_bounce ebb_relation_bounce_of(const struct ebb_reading_settings *s,
+                                                  const struct ebb_reading_result *x)
+{
+  struct ebb_relation_bounce row = {.reading = s->name,
+                                    .clock = s->clock.name,
+                                    .verdict = ebb_clock_verdict_names[x->verdict],
+                                    .meaning = reading_means,
+                                    .median = NAN,
+                                    .median_error = NAN,
+                                    .at = NAN,
+                                    .low = NAN,
+                                    .high = NAN,
+                                    .dwell = NAN,
+                                    .clock_spread = NAN,
+                                    .effective = NAN,
+                                    .outcome = -1};
   PetscInt where = -1;
 
   if (!strcmp(s->clock.name, "v")) { /* what it reads is the volume: only the dwell tells where it turned */
     row.meaning = volume_means;
     for (PetscInt i = 0; i < x->n; i++)
       if (!x->refused[i] && (where < 0 || x->dwell[i] > x->dwell[where])) where = i;
+    row.outcome = where;
     if (where < 0) return row;
     row.median = x->centre[where];
     row.median_error = x->n > 1 ? fabs(x->centre[1] - x->centre[0]) : NAN;
@@ -64,6 +66,7 @@ static struct row of_reading(const struct ebb_reading_settings *s, const struct 
     return row;
   }
   row.median = least(x, x->median, 1, &where);
+  row.outcome = where;
   if (where < 0) return row;
   row.median_error = x->median_error[where];
   row.at = x->centre[where];
@@ -78,25 +81,25 @@ static struct row of_reading(const struct ebb_reading_settings *s, const struct 
 }
 
 /* What `evolve` found with the parameter as clock. */
-static PetscErrorCode of_parameter(const struct ebb_relation *r, struct row *row)
+static PetscErrorCode of_parameter(const struct ebb_relation *r, struct ebb_relation_bounce *row)
 {
   static const struct {
     const char *path;
     size_t member;
-  } wanted[] = {{"/bounce/v_median", offsetof(struct row, median)},
-                {"/bounce/v_median_error", offsetof(struct row, median_error)},
-                {"/bounce/clock", offsetof(struct row, at)}};
+  } wanted[] = {{"/bounce/v_median", offsetof(struct ebb_relation_bounce, median)},
+                {"/bounce/v_median_error", offsetof(struct ebb_relation_bounce, median_error)},
+                {"/bounce/clock", offsetof(struct ebb_relation_bounce, at)}};
 
   PetscFunctionBegin;
-  *row = (struct row){.reading = "parameter",
-                      .clock = strcmp(r->settings.clock.kind, "dust") ? "phi" : "dust",
-                      .verdict = "good",
-                      .meaning = parameter_means,
-                      .low = NAN,
-                      .high = NAN,
-                      .dwell = NAN,
-                      .clock_spread = 0.0,
-                      .effective = NAN};
+  *row = (struct ebb_relation_bounce){.reading = "parameter",
+                                      .clock = strcmp(r->settings.clock.kind, "dust") ? "phi" : "dust",
+                                      .verdict = "good",
+                                      .meaning = parameter_means,
+                                      .low = NAN,
+                                      .high = NAN,
+                                      .dwell = NAN,
+                                      .clock_spread = 0.0,
+                                      .effective = NAN};
   for (size_t i = 0; i < sizeof wanted / sizeof wanted[0]; i++) {
     hsize_t extent[EBB_STORE_RANK_MAX];
     double *value = (double *)((char *)row + wanted[i].member);
@@ -111,7 +114,7 @@ static PetscErrorCode of_parameter(const struct ebb_relation *r, struct row *row
 }
 
 static PetscErrorCode put_column(struct ebb_store *store, const char *name, const char *long_name, PetscInt n,
-                                 const struct row rows[], size_t member)
+                                 const struct ebb_relation_bounce rows[], size_t member)
 {
   double values[ROWS_MOST];
   char path[128];
@@ -124,7 +127,7 @@ static PetscErrorCode put_column(struct ebb_store *store, const char *name, cons
 }
 
 static PetscErrorCode put_words(struct ebb_store *store, const char *name, const char *long_name, PetscInt n,
-                                const struct row rows[], size_t member)
+                                const struct ebb_relation_bounce rows[], size_t member)
 {
   const char *words[ROWS_MOST];
   char path[128];
@@ -136,7 +139,7 @@ static PetscErrorCode put_words(struct ebb_store *store, const char *name, const
   PetscFunctionReturn(0);
 }
 
-static void print(PetscInt n, const struct row rows[])
+static void print(PetscInt n, const struct ebb_relation_bounce rows[])
 {
   printf("bounce of the same state by each clock\n");
   for (PetscInt i = 0; i < n; i++) {
@@ -149,7 +152,7 @@ static void print(PetscInt n, const struct row rows[])
 PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct ebb_relation *r,
                                            const struct ebb_relational *relational)
 {
-  struct row rows[ROWS_MOST];
+  struct ebb_relation_bounce rows[ROWS_MOST];
   PetscInt n = 1;
   PetscMPIInt rank;
 
@@ -158,11 +161,12 @@ PetscErrorCode ebb_relation_put_comparison(struct ebb_store *store, const struct
   for (size_t i = 0; i < r->readings.readings; i++) {
     const struct ebb_reading_settings *s = &r->readings.reading[i];
 
-    if (strcmp(s->system.name, "v") != 0 && strcmp(s->clock.name, "v") != 0) continue;
-    rows[n++] = of_reading(s, ebb_relational_result(relational, i));
+    if (!ebb_relation_of_volume(s)) continue;
+    rows[n++] = ebb_relation_bounce_of(s, ebb_relational_result(relational, i));
   }
-#define COLUMN(name, text) PetscCall(put_column(store, #name, text, n, rows, offsetof(struct row, name)))
-#define WORDS(name, text)  PetscCall(put_words(store, #name, text, n, rows, offsetof(struct row, name)))
+#define COLUMN(name, text)                                                                                             \
+  PetscCall(put_column(store, #name, text, n, rows, offsetof(struct ebb_relation_bounce, name)))
+#define WORDS(name, text) PetscCall(put_words(store, #name, text, n, rows, offsetof(struct ebb_relation_bounce, name)))
   WORDS(reading, "reading");
   WORDS(clock, "observable of the clock");
   WORDS(verdict, "is it a good clock");

@@ -111,44 +111,33 @@ static PetscErrorCode put_two_time(struct ebb_store *store, const struct ebb_rel
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode refuse(const struct ebb_relation *r, const char *section, const char *problem, int *code)
-{
-  PetscMPIInt rank;
-
-  PetscFunctionBegin;
-  PetscCallMPI(MPI_Comm_rank(PETSC_COMM_WORLD, &rank));
-  *code = EBB_EXIT_USAGE;
-  if (rank == 0)
-    fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s: %s\n", r->readings_name, section,
-            problem);
-  PetscFunctionReturn(0);
-}
-
-PetscErrorCode ebb_relation_two_times(struct ebb_relation *r, struct ebb_relation_two_times *x, int *code)
+PetscErrorCode ebb_relation_two_times(struct ebb_relation *r, struct ebb_relation_two_times *x, char problem[],
+                                      size_t size)
 {
   const struct ebb_histories_settings *h = &r->readings.histories;
-  char problem[320] = "";
+  char why[280] = "";
 
   PetscFunctionBegin;
+  problem[0] = '\0';
   if (!h->given && !r->readings.two_time.given) PetscFunctionReturn(0);
   if (r->run.bundle) {
-    PetscCall(refuse(r, h->given ? "histories" : "propagator", "not available beside a further field", code));
+    (void)snprintf(problem, size, "%s: not available beside a further field", h->given ? "histories" : "propagator");
     PetscFunctionReturn(0);
   }
   if (h->given) {
     PetscCall(PetscCalloc1(h->v_stars, &x->history));
-    PetscCall(ebb_histories_find(r->run.packet, &r->run.lattice, &r->run.constants, r->run.comm, h, x->history, problem,
-                                 sizeof problem));
-    if (problem[0]) PetscCall(refuse(r, "histories", problem, code));
+    PetscCall(ebb_histories_find(r->run.packet, &r->run.lattice, &r->run.constants, r->run.comm, h, x->history, why,
+                                 sizeof why));
+    if (why[0]) (void)snprintf(problem, size, "histories: %s", why);
   }
-  if (r->readings.two_time.given && !problem[0]) {
+  if (r->readings.two_time.given && !why[0]) {
     struct ebb_two_time_grids grids = ebb_two_time_default;
 
     grids.from = r->t[0];
     grids.to = r->t[r->m - 1];
     PetscCall(ebb_two_time_find(r->run.packet, &r->run.lattice, &r->run.constants, r->run.comm, &r->readings.two_time,
-                                &grids, &x->two_time, problem, sizeof problem));
-    if (problem[0]) PetscCall(refuse(r, "propagator", problem, code));
+                                &grids, &x->two_time, why, sizeof why));
+    if (why[0]) (void)snprintf(problem, size, "propagator: %s", why);
   }
   PetscFunctionReturn(0);
 }

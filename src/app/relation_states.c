@@ -103,7 +103,7 @@ static PetscErrorCode watch_edge(struct ebb_relation *r, PetscInt count, const d
 {
   const struct ebb_lattice *l = &r->run.lattice;
   const PetscInt local = l->end - l->begin, slices = r->run.bundle ? r->run.bundle->points : 1;
-  const double edge = 0.9 * fabs(ebb_lattice_v(l, ebb_lattice_size(l) - 1));
+  const double edge = 0.9 * ebb_lattice_top(l);
   double *beyond;
 
   PetscFunctionBegin;
@@ -137,6 +137,20 @@ static PetscErrorCode choose_batch(const struct ebb_relation *r, size_t one, Pet
   PetscFunctionReturn(0);
 }
 
+static PetscErrorCode safe_point(struct ebb_relation *r, struct ebb_relation_state *state, bool *stop, int *code)
+{
+  enum ebb_action action;
+
+  PetscFunctionBegin;
+  if (r->abandon) {
+    PetscCall(ebb_watch_ask(&r->keeper.watch, &action, code));
+    *stop = action == EBB_ACTION_STOP;
+  } else {
+    PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, state, stop, code));
+  }
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, struct ebb_relational *relational,
                                    int *code)
 {
@@ -152,7 +166,7 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
   PetscCall(choose_batch(r, one, &batch));
   PetscCall(PetscMalloc1((size_t)batch * one, &psi));
   ebb_progress_start(&progress, r->run.comm, mode, "window sample", r->keeper.next, r->m);
-  PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, &state, &stop, code));
+  PetscCall(safe_point(r, &state, &stop, code));
   while (!stop && r->keeper.next < r->m) {
     const PetscInt first = r->keeper.next, count = PetscMin(batch, r->m - first);
 
@@ -164,7 +178,7 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
     PetscCall(ebb_relational_add(relational, first, count, psi));
     r->keeper.next += count;
     ebb_progress_tell(&progress, r->keeper.next);
-    PetscCall(ebb_keeper_safe_point(&r->keeper, ebb_relation_move, &state, &stop, code));
+    PetscCall(safe_point(r, &state, &stop, code));
   }
   ebb_progress_end(&progress);
   PetscCall(PetscFree(psi));

@@ -132,7 +132,7 @@ PetscErrorCode ebb_result_lattice(struct ebb_store *store, const struct ebb_latt
                                    ? "physical volume 2 pi gamma lambda G |v|"
                                    : "physical volume, a power of the label",
                                grid ? "cell weight dx, x = ln v: probability/v times weight sums to 1"
-                                    : "cell weight: probability/v times weight sums to 1"};
+                                    : "cell weight, in sites: probability/v times weight sums to 1"};
   double *values;
 
   PetscFunctionBegin;
@@ -147,12 +147,23 @@ PetscErrorCode ebb_result_lattice(struct ebb_store *store, const struct ebb_latt
 
     for (hsize_t i = 0; i < count; i++) {
       const double v = ebb_lattice_v(l, l->begin + (PetscInt)i);
-      values[i] = d == 0 ? v : d == 1 ? volume_of(l, constants, fabs(v)) : ebb_lattice_weight(l, l->begin);
+      values[i] = d == 0   ? v
+                  : d == 1 ? volume_of(l, constants, fabs(v))
+                           : ebb_lattice_weight(l, l->begin + (PetscInt)i);
     }
     PetscCall(ebb_store_define(store, &set));
     PetscCall(ebb_store_write(store, path[d], &start, &count, values));
     if (d == 0) PetscCall(ebb_store_make_scale(store, path[d]));
   }
   PetscCall(PetscFree(values));
+  PetscCall(ebb_store_set_text(store, "/lattice", "layout", l->grading ? "graded" : grid ? "grid" : "full"));
+  if (l->grading) {
+    PetscCall(ebb_store_set_real(store, "/lattice", "graded_from", ebb_lattice_place(l, 0, l->grading->plain)));
+    PetscCall(ebb_store_set_real(store, "/lattice", "last_v", ebb_lattice_top(l)));
+    PetscCall(
+        ebb_store_set_text(store, "/lattice", "meaning",
+                           "|v| below graded_from: every site, weight 1; beyond: nodes of blocks of sites, each of "
+                           "weight sites, between which values are a smooth function of v; up to last_v"));
+  }
   PetscFunctionReturn(0);
 }

@@ -124,6 +124,9 @@ static PetscErrorCode refuse(struct ebb_run *run, const struct ebb_prescription 
     PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
                             "lattice.points = %d is more than propagator 'eigenpairs' keeps (%d); try 'chebyshev'",
                             s->lattice.points, EIGENPAIRS_MOST));
+  else if (!strcmp(s->lattice.layout, "graded") && ebb_run_not_graded(run))
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem, "lattice.layout = 'graded': %s; take auto",
+                            ebb_run_not_graded(run)));
   else if (p->grid && strcmp(s->state.profile, "gaussian_momentum") != 0)
     PetscCall(
         PetscSNPrintf(run->problem, sizeof run->problem,
@@ -155,8 +158,8 @@ static PetscErrorCode size_lattice(struct ebb_run *run, const struct ebb_prescri
   sites = s->lattice.points > 0 ? s->lattice.points : floor((v_max - run->rows.sector) / run->rows.step) + 1.0;
   if (sites > SITES_MOST || sites < 8.0) {
     PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
-                            "the lattice would have %.3g sites, must be 8 to %.0e; set lattice.volume_max", sites,
-                            SITES_MOST));
+                            "the lattice would have %.3g sites, must be 8 to %.0e; set lattice.volume_max%s", sites,
+                            SITES_MOST, ebb_run_not_graded(run) ? "" : ", or lattice.layout graded"));
     PetscFunctionReturn(0);
   }
   (void)p;
@@ -174,7 +177,8 @@ static PetscErrorCode plan_lattice(struct ebb_run *run, const struct ebb_state_r
   PetscCall(ebb_lattice_make_model(&run->rows, 2, run->comm, &run->lattice));
   if (run->method != EBB_METHOD_EIGENPAIRS)
     PetscCall(ebb_plan_make(request, &run->lattice, s->clock.from, s->clock.to, &run->plan));
-  PetscCall(size_lattice(run, p));
+  PetscCall(ebb_run_plan_graded(run, request));
+  if (!run->graded && !run->problem[0]) PetscCall(size_lattice(run, p));
   PetscFunctionReturn(0);
 }
 
@@ -223,6 +227,7 @@ PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *f
     else {
       PetscCall(ebb_packet_create_modes(&request, &run->lattice, &run->plan, false, &run->packet));
       PetscCall(ebb_packet_create_modes(&request, &run->lattice, &run->plan, true, &run->check));
+      PetscCall(ebb_run_regrade(run));
     }
   }
   if (!run->problem[0] && run->rows.field) {
@@ -257,6 +262,7 @@ PetscErrorCode ebb_run_destroy(struct ebb_run *run)
   PetscCall(ebb_bundle_destroy(&run->check_bundle));
   PetscCall(ebb_packet_destroy(&run->packet));
   PetscCall(ebb_packet_destroy(&run->check));
+  PetscCall(ebb_run_clear_graded(run));
   PetscCall(ebb_plan_clear(&run->plan));
   PetscCall(PetscFree(run->phi));
   for (PetscInt i = 0; run->file && i < run->files; i++) {

@@ -25,7 +25,15 @@ struct ebb_run {
   MPI_Comm comm;
   struct ebb_rows rows;
   struct ebb_lattice lattice, check_lattice; /* check: of the independent rule */
-  struct ebb_plan plan;                      /* empty for walls and grids */
+  /* Graded lattices: the grading, why (or why not), and the same packet on a lattice graded in another way, by which
+   * the error of the grading is measured. */
+  bool graded;
+  char why_layout[256];
+  struct ebb_grading *grading, *other_grading;
+  struct ebb_lattice other_lattice;
+  struct ebb_packet other;
+  struct ebb_source other_source; /* data: NULL where the lattice is full */
+  struct ebb_plan plan;           /* empty for walls and grids */
   enum ebb_method method;
   char why[256];                     /* why this propagator */
   struct ebb_packet *packet, *check; /* check: the independent rule, NULL where there is none */
@@ -55,6 +63,14 @@ void ebb_run_extension(const struct ebb_run *run, struct ebb_spectrum_request *l
 /* The part of the set-up for a further field, after packet and check of its mean momentum have chosen lattice and
  * nodes: they make way for bundles. */
 PetscErrorCode ebb_run_create_bundles(struct ebb_run *run, const struct ebb_state_request *request);
+/* Why the run's lattice cannot be graded; NULL: it can. */
+const char *ebb_run_not_graded(const struct ebb_run *run);
+/* After a plan for the full lattice (of which run->lattice holds two sites): where the lattice is to be graded, another
+ * plan and that lattice; run->problem says what is wrong. */
+PetscErrorCode ebb_run_plan_graded(struct ebb_run *run, const struct ebb_state_request *request);
+/* After the packet: the other grading's. */
+PetscErrorCode ebb_run_regrade(struct ebb_run *run);
+PetscErrorCode ebb_run_clear_graded(struct ebb_run *run);
 /* A source over the state by either rule, valid at any clock value; not over a stepping propagator. */
 void ebb_run_source(const struct ebb_run *run, bool check, struct ebb_source *source);
 /* Are states stored? They are asked for, and there is one field: a file holds no table over sites and a further field.

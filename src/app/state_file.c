@@ -40,13 +40,20 @@ static PetscErrorCode read_one(const struct ebb_state_settings *s, const char *p
   struct ebb_store *store;
   hsize_t sites[EBB_STORE_RANK_MAX], shape[EBB_STORE_RANK_MAX], row;
   int rank_v, rank_psi;
-  bool has_v, has_psi;
+  bool has_v, has_psi, has_layout;
+  char *layout = NULL;
 
   PetscFunctionBegin;
   PetscCall(ebb_store_open(comm, path, &store));
   PetscCall(ebb_store_extent(store, "/lattice/v", &rank_v, sites, &has_v));
   PetscCall(ebb_store_extent(store, "/state/psi", &rank_psi, shape, &has_psi));
-  if (!has_v || !has_psi || rank_v != 1 || rank_psi != 2 || shape[1] != sites[0] || shape[0] == 0) {
+  if (has_v) PetscCall(ebb_store_get_text(store, "/lattice", "layout", &layout, &has_layout));
+  if (layout && !strcmp(layout, "graded")) {
+    PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
+                            "'%s' holds the state on a graded lattice, not on every site; evolve that model with "
+                            "lattice.layout full",
+                            path));
+  } else if (!has_v || !has_psi || rank_v != 1 || rank_psi != 2 || shape[1] != sites[0] || shape[0] == 0) {
     PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
                             "'%s' holds no state: it needs /lattice/v [n] and /state/psi [rows, n]", path));
   } else {
@@ -63,6 +70,7 @@ static PetscErrorCode read_one(const struct ebb_state_settings *s, const char *p
         PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
                                 "'%s': /lattice/v does not ascend at index %" PetscInt_FMT, path, i));
   }
+  PetscCall(PetscFree(layout));
   PetscCall(ebb_store_destroy(&store));
   PetscFunctionReturn(0);
 }

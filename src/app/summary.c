@@ -63,10 +63,10 @@ void ebb_record_print(const struct ebb_run *run, const struct ebb_record *record
          s->gravity.immirzi, s->gravity.polymer_scale);
   print_beyond(run);
   printf("  method         %s: %s\n", ebb_method_name(run->method), run->why);
-  printf("  size           %" PetscInt_FMT " sites up to v = %.4g, %" PetscInt_FMT " %s, %" PetscInt_FMT
+  printf("  size           %" PetscInt_FMT " %s up to v = %.4g, %" PetscInt_FMT " %s, %" PetscInt_FMT
          " clock samples\n",
-         n, fabs(ebb_lattice_v(&run->lattice, n - 1)), run->packet->n, ebb_run_has_levels(run) ? "levels" : "modes",
-         run->m);
+         n, run->graded ? "rows of a graded lattice" : "sites", ebb_lattice_top(&run->lattice), run->packet->n,
+         ebb_run_has_levels(run) ? "levels" : "modes", run->m);
   print_bounce(run, record);
   printf("  error          %s to %.1e relative; largest contribution: %s (%s)\n",
          !run->lattice.rows.prescription->grid && ebb_rows_is_family(&run->rows) ? "bounded observables"

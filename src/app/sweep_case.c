@@ -37,17 +37,16 @@ void ebb_sweep_case_path(const struct ebb_sweep *sweep, const char *id, size_t s
                  (unsigned long long)ebb_checkpoint_crc(0, id, strlen(id)));
 }
 
-/* PETSc's words of the first error of a case, in place of its trace. */
-static PetscErrorCode quiet_handler(MPI_Comm comm, int line, const char *function, const char *file,
-                                    PetscErrorCode code, PetscErrorType type, const char *message, void *context)
+PetscErrorCode ebb_sweep_quiet(MPI_Comm comm, int line, const char *function, const char *file, PetscErrorCode code,
+                               PetscErrorType type, const char *message, void *context)
 {
-  struct ebb_sweep_row *row = context;
+  char *reason = context;
 
   (void)comm;
   (void)line;
   (void)file;
-  if (type != PETSC_ERROR_INITIAL || row->reason[0]) return code;
-  (void)snprintf(row->reason, sizeof row->reason, "%.160s (%.60s)", message ? message : "error", function);
+  if (type != PETSC_ERROR_INITIAL || reason[0]) return code;
+  (void)snprintf(reason, EBB_SWEEP_REASON, "%.160s (%.60s)", message ? message : "error", function);
   return code;
 }
 
@@ -130,7 +129,16 @@ static PetscErrorCode compute(struct ebb_sweep *sweep, size_t c, const struct eb
     PetscCall(ebb_store_commit(&e->store, true));
   }
   put_row(row, e);
+  if (sweep->findings) PetscCall(ebb_sweep_read_clocks(sweep, c, settings, code));
   PetscFunctionReturn(0);
+}
+
+static void clear_findings(struct ebb_sweep *sweep, size_t c)
+{
+  for (size_t f = c * sweep->findings; f < (c + 1) * sweep->findings; f++) {
+    sweep->finding[f].status[0] = sweep->finding[f].verdict[0] = sweep->finding[f].reason[0] = '\0';
+    for (int i = 0; i < EBB_SWEEP_FINDING_NUMBERS; i++) sweep->finding[f].value[i] = NAN;
+  }
 }
 
 /* The row of a case that failed: no number of it stands. */
@@ -163,14 +171,16 @@ PetscErrorCode ebb_sweep_case(struct ebb_sweep *sweep, size_t c, bool *stopped, 
   PetscCheck(problems, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory");
   row->status[0] = row->reason[0] = row->verdict[0] = '\0';
   for (int i = 0; i < EBB_SWEEP_COLUMNS; i++) row->value[i] = NAN;
+  clear_findings(sweep, c);
   if (!ebb_sweep_settings(sweep, c, &settings, problems)) {
     say_problem(row, problems);
   } else {
-    PetscCall(PetscPushErrorHandler(quiet_handler, row));
+    PetscCall(PetscPushErrorHandler(ebb_sweep_quiet, row->reason));
     error = compute(sweep, c, &settings, &e, code);
     PetscCall(PetscPopErrorHandler());
   }
   *stopped = *code != 0;
+  if (*stopped) row->status[0] = '\0';
   if (!*stopped && (error || !row->status[0])) fail(row);
   row->finished = *stopped ? 0.0 : (double)time(NULL);
   row->seconds = ebb_watch_clock() - begin;

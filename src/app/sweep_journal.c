@@ -16,18 +16,31 @@
 
 static const double SYNC_EVERY = 5.0; /* seconds; a crash of the machine costs the cases since */
 
+/* A record is this, the findings of the case, and the checksum of both. */
 struct record {
   char magic[8];
-  uint64_t base; /* checksum of the base model: cases of another one are other cases */
+  uint64_t base; /* checksum of base model and readings: cases of other ones are other cases */
   uint64_t event;
+  uint64_t head; /* checksum of the three above: whose record it is, also where the rest has another size */
   struct ebb_sweep_row row;
-  uint64_t crc; /* of everything before it */
 };
-static const char magic[8] = "ebbcase1";
+static const char magic[8] = "ebbcase2";
 
-static uint64_t checksum(const struct record *record)
+static size_t findings_bytes(const struct ebb_sweep *sweep) { return sweep->findings * sizeof *sweep->finding; }
+
+static size_t record_bytes(const struct ebb_sweep *sweep)
 {
-  return ebb_checkpoint_crc(0, record, offsetof(struct record, crc));
+  return sizeof(struct record) + findings_bytes(sweep) + sizeof(uint64_t);
+}
+
+static uint64_t head_of(const struct record *record)
+{
+  return ebb_checkpoint_crc(0, record, offsetof(struct record, head));
+}
+
+static uint64_t checksum(const struct ebb_sweep *sweep, const char *bytes)
+{
+  return ebb_checkpoint_crc(0, bytes, record_bytes(sweep) - sizeof(uint64_t));
 }
 
 static void find(const char *result, glob_t *found)
@@ -71,22 +84,29 @@ int ebb_sweep_journal_open(const char *result, int group)
   return open(path, O_WRONLY | O_CREAT | O_APPEND | O_CLOEXEC, 0666);
 }
 
-bool ebb_sweep_journal_put(int fd, uint64_t base, enum ebb_sweep_event event, const struct ebb_sweep_row *row)
+bool ebb_sweep_journal_put(int fd, const struct ebb_sweep *sweep, enum ebb_sweep_event event, size_t c)
 {
   static double synced;
-  struct record record;
+  const size_t size = record_bytes(sweep);
+  struct record *record = calloc(1, size);
+  char *bytes = (char *)record;
   const double now = ebb_watch_clock();
+  uint64_t crc;
   ssize_t wrote;
 
-  memset(&record, 0, sizeof record);
-  memcpy(record.magic, magic, sizeof magic);
-  record.base = base;
-  record.event = event;
-  record.row = *row;
-  record.crc = checksum(&record);
-  do wrote = write(fd, &record, sizeof record);
+  if (!record) return false;
+  memcpy(record->magic, magic, sizeof magic);
+  record->base = sweep->base;
+  record->event = event;
+  record->head = head_of(record);
+  record->row = sweep->row[c];
+  if (sweep->findings) memcpy(bytes + sizeof *record, &sweep->finding[c * sweep->findings], findings_bytes(sweep));
+  crc = checksum(sweep, bytes);
+  memcpy(bytes + size - sizeof crc, &crc, sizeof crc);
+  do wrote = write(fd, record, size);
   while (wrote < 0 && errno == EINTR);
-  if (wrote != (ssize_t)sizeof record) {
+  free(record);
+  if (wrote != (ssize_t)size) {
     if (wrote >= 0) errno = ENOSPC;
     return false;
   }
@@ -98,13 +118,13 @@ bool ebb_sweep_journal_put(int fd, uint64_t base, enum ebb_sweep_event event, co
 }
 
 /* One record into the rows: 1 a finished case, 0 nothing new, -1 another base model. */
-static int take(struct ebb_sweep *sweep, uint64_t base, const struct record *record, long *strange)
+static int take(struct ebb_sweep *sweep, const struct record *record, long *strange)
 {
   const size_t c = ebb_sweep_case_of(sweep, record->row.id);
   struct ebb_sweep_row *row = &sweep->row[c];
   double attempts;
 
-  if (record->base != base) return -1;
+  if (record->base != sweep->base) return -1;
   if (c == sweep->plan.cases) {
     *strange += record->event == EBB_SWEEP_FINISHED;
     return 0;
@@ -117,43 +137,59 @@ static int take(struct ebb_sweep *sweep, uint64_t base, const struct record *rec
   attempts = row->attempts;
   *row = record->row;
   row->attempts = attempts;
+  if (sweep->findings) memcpy(&sweep->finding[c * sweep->findings], record + 1, findings_bytes(sweep));
   return 1;
 }
 
-/* Reads one journal and cuts a record that was torn by a kill off its end, so that later ones stand in line again. */
-static long read_one(struct ebb_sweep *sweep, const char *path, uint64_t base, long *strange)
+/* Whole records of an open journal, counted in *number: finished cases, -1 where they belong to another base model. */
+static long read_records(struct ebb_sweep *sweep, int fd, const char *path, char bytes[], long *number, long *strange)
 {
-  struct record record;
+  const size_t size = record_bytes(sweep);
+  const struct record *record = (const struct record *)(void *)bytes;
+  long finished = 0;
+
+  for (*number = 0;; ++*number) {
+    const ssize_t got = pread(fd, bytes, size, (off_t)*number * (off_t)size);
+    int taken = 0;
+    uint64_t crc;
+
+    if (got >= (ssize_t)offsetof(struct record, row) && !memcmp(record->magic, magic, sizeof magic) &&
+        record->head == head_of(record) && record->base != sweep->base)
+      return -1;
+    if (got != (ssize_t)size) return finished;
+    memcpy(&crc, bytes + size - sizeof crc, sizeof crc);
+    if (memcmp(record->magic, magic, sizeof magic) != 0 || crc != checksum(sweep, bytes))
+      fprintf(stderr, "ebbturn: warning: record %ld of journal '%s' is damaged; its case runs again\n", *number + 1,
+              path);
+    else
+      taken = take(sweep, record, strange);
+    if (taken < 0) return -1;
+    finished += taken;
+  }
+}
+
+/* Reads one journal and cuts a record that was torn by a kill off its end, so that later ones stand in line again. */
+static long read_one(struct ebb_sweep *sweep, const char *path, long *strange)
+{
+  char *bytes = malloc(record_bytes(sweep));
   long finished = 0, number = 0;
   int fd = open(path, O_RDWR | O_CLOEXEC);
   struct stat there;
 
-  if (fd < 0 || fstat(fd, &there)) {
+  if (!bytes || fd < 0 || fstat(fd, &there)) {
     fprintf(stderr, "ebbturn: warning: cannot read journal '%s': %s\n", path, strerror(errno));
-    if (fd >= 0) (void)close(fd);
-    return 0;
-  }
-  for (; pread(fd, &record, sizeof record, (off_t)(number * (long)sizeof record)) == (ssize_t)sizeof record; number++) {
-    int taken = 0;
+  } else {
+    const off_t whole = (off_t)record_bytes(sweep);
 
-    if (memcmp(record.magic, magic, sizeof magic) != 0 || record.crc != checksum(&record))
-      fprintf(stderr, "ebbturn: warning: record %ld of journal '%s' is damaged; its case runs again\n", number + 1,
-              path);
-    else
-      taken = take(sweep, base, &record, strange);
-    if (taken < 0) {
-      (void)close(fd);
-      return -1;
-    }
-    finished += taken;
+    finished = read_records(sweep, fd, path, bytes, &number, strange);
+    if (finished >= 0 && there.st_size > (off_t)number * whole) (void)!ftruncate(fd, (off_t)number * whole);
   }
-  if (there.st_size > (off_t)(number * (long)sizeof record))
-    (void)!ftruncate(fd, (off_t)(number * (long)sizeof record));
-  (void)close(fd);
+  if (fd >= 0) (void)close(fd);
+  free(bytes);
   return finished;
 }
 
-long ebb_sweep_journal_read(struct ebb_sweep *sweep, uint64_t base, long *strange)
+long ebb_sweep_journal_read(struct ebb_sweep *sweep, long *strange)
 {
   glob_t found = {0};
   long finished = 0;
@@ -161,7 +197,7 @@ long ebb_sweep_journal_read(struct ebb_sweep *sweep, uint64_t base, long *strang
   *strange = 0;
   find(sweep->path, &found);
   for (size_t i = 0; i < found.gl_pathc && finished >= 0; i++) {
-    const long more = read_one(sweep, found.gl_pathv[i], base, strange);
+    const long more = read_one(sweep, found.gl_pathv[i], strange);
 
     finished = more < 0 ? -1 : finished + more;
   }

@@ -4,7 +4,6 @@
  * so that nobody has to answer while it computes. */
 #include "sweep_run.h"
 
-#include "ebbturn/checkpoint.h"
 #include "progress.h"
 
 #include <errno.h>
@@ -45,10 +44,9 @@ static PetscErrorCode next_case(const struct ebb_sweep *sweep, MPI_Win window, l
 }
 
 /* First rank of a group: a record, or a reason on stderr. */
-static bool keep(const struct ebb_sweep *sweep, int fd, uint64_t base, enum ebb_sweep_event event,
-                 const struct ebb_sweep_row *row)
+static bool keep(const struct ebb_sweep *sweep, int fd, enum ebb_sweep_event event, size_t c)
 {
-  if (ebb_sweep_journal_put(fd, base, event, row)) return true;
+  if (ebb_sweep_journal_put(fd, sweep, event, c)) return true;
   fprintf(stderr, "ebbturn: error: cannot write journal '%s.journal-%d': %s\n", sweep->path, sweep->my_group,
           strerror(errno));
   return false;
@@ -58,7 +56,6 @@ static bool keep(const struct ebb_sweep *sweep, int fd, uint64_t base, enum ebb_
 static PetscErrorCode work(struct ebb_sweep *sweep, MPI_Win window, const size_t pending[], long long cases,
                            size_t done[], int *finished, int *code)
 {
-  const uint64_t base = ebb_checkpoint_crc(0, sweep->base_text, sweep->base_length);
   struct ebb_progress progress;
   PetscMPIInt rank;
   int fd = -1, good = 1;
@@ -87,13 +84,13 @@ static PetscErrorCode work(struct ebb_sweep *sweep, MPI_Win window, const size_t
     if (action == EBB_ACTION_STOP) break;
     PetscCall(next_case(sweep, window, &next));
     if (next >= cases) break;
-    struct ebb_sweep_row *row = &sweep->row[pending[next]];
+    const size_t c = pending[next];
 
-    row->attempts += 1.0;
-    if (rank == 0) good = keep(sweep, fd, base, EBB_SWEEP_BEGUN, row);
-    PetscCall(ebb_sweep_case(sweep, pending[next], &stopped, code));
+    sweep->row[c].attempts += 1.0;
+    if (rank == 0) good = keep(sweep, fd, EBB_SWEEP_BEGUN, c);
+    PetscCall(ebb_sweep_case(sweep, c, &stopped, code));
     if (stopped) break;
-    if (rank == 0) good = keep(sweep, fd, base, EBB_SWEEP_FINISHED, row) && good;
+    if (rank == 0) good = keep(sweep, fd, EBB_SWEEP_FINISHED, c) && good;
     done[(*finished)++] = pending[next];
     ebb_progress_tell(&progress, (PetscInt)PetscMax(next + 2 - sweep->groups, 1));
   }
@@ -103,10 +100,26 @@ static PetscErrorCode work(struct ebb_sweep *sweep, MPI_Win window, const size_t
   PetscFunctionReturn(0);
 }
 
+/* A case from rank to rank. */
+static PetscErrorCode pass_case(struct ebb_sweep *sweep, bool send, PetscMPIInt other, size_t c)
+{
+  enum { TAG = 84 };
+  void *const part[] = {&sweep->row[c], sweep->findings ? &sweep->finding[c * sweep->findings] : NULL};
+  const size_t size[] = {sizeof sweep->row[0], sweep->findings * sizeof sweep->finding[0]};
+
+  PetscFunctionBegin;
+  for (int i = 0; i < 2; i++)
+    if (size[i] && send)
+      PetscCallMPI(MPI_Send(part[i], (PetscMPIInt)size[i], MPI_BYTE, other, TAG, PETSC_COMM_WORLD));
+    else if (size[i])
+      PetscCallMPI(MPI_Recv(part[i], (PetscMPIInt)size[i], MPI_BYTE, other, TAG, PETSC_COMM_WORLD, MPI_STATUS_IGNORE));
+  PetscFunctionReturn(0);
+}
+
 /* Rows of all groups' first ranks to rank 0. */
 static PetscErrorCode collect(struct ebb_sweep *sweep, const size_t done[], int finished)
 {
-  enum { TAG = 84 };
+  enum { TAG = 83 };
   PetscMPIInt rank, size, in_group = 0;
   unsigned long long place;
   int *count;
@@ -121,13 +134,12 @@ static PetscErrorCode collect(struct ebb_sweep *sweep, const size_t done[], int 
   for (int i = 0; rank != 0 && i < finished; i++) {
     place = done[i];
     PetscCallMPI(MPI_Send(&place, 1, MPI_UNSIGNED_LONG_LONG, 0, TAG, PETSC_COMM_WORLD));
-    PetscCallMPI(MPI_Send(&sweep->row[place], (PetscMPIInt)sizeof sweep->row[0], MPI_BYTE, 0, TAG, PETSC_COMM_WORLD));
+    PetscCall(pass_case(sweep, true, 0, done[i]));
   }
   for (int r = 1; rank == 0 && r < size; r++)
     for (int i = 0; i < count[r]; i++) {
       PetscCallMPI(MPI_Recv(&place, 1, MPI_UNSIGNED_LONG_LONG, r, TAG, PETSC_COMM_WORLD, MPI_STATUS_IGNORE));
-      PetscCallMPI(MPI_Recv(&sweep->row[place], (PetscMPIInt)sizeof sweep->row[0], MPI_BYTE, r, TAG, PETSC_COMM_WORLD,
-                            MPI_STATUS_IGNORE));
+      PetscCall(pass_case(sweep, false, r, (size_t)place));
     }
   PetscCall(PetscFree(count));
   PetscFunctionReturn(0);

@@ -78,21 +78,11 @@ size_t ebb_sweep_case_of(const struct ebb_sweep *sweep, const char *id)
 static PetscErrorCode put_line(struct ebb_store *store, const char *group, const char *name, hsize_t n,
                                const double value[], const char *units, const char *text)
 {
-  char path[2 * EBB_NAME_MAX + 16];
+  char path[EBB_SWEEP_PATH];
 
   PetscFunctionBegin;
-  PetscCall(PetscSNPrintf(path, sizeof path, "%s/%s", group, name));
+  (void)snprintf(path, sizeof path, "%s/%s", group, name);
   PetscCall(ebb_result_line(store, path, (PetscInt)n, value, units, text, NULL));
-  PetscFunctionReturn(0);
-}
-
-/* A member of every row, as numbers. */
-static PetscErrorCode put_member(struct ebb_store *store, const struct ebb_sweep *sweep, const char *group,
-                                 const char *name, size_t offset, double line[], const char *units, const char *text)
-{
-  PetscFunctionBegin;
-  for (size_t c = 0; c < sweep->plan.cases; c++) line[c] = *(const double *)((const char *)&sweep->row[c] + offset);
-  PetscCall(put_line(store, group, name, sweep->plan.cases, line, units, text));
   PetscFunctionReturn(0);
 }
 
@@ -105,7 +95,7 @@ static PetscErrorCode put_axes(struct ebb_store *store, const struct ebb_sweep *
   for (size_t a = 0; a < plan->axes; a++) {
     const struct ebb_sweep_axis *axis = &plan->axis[a];
     const struct ebb_setting *setting = ebb_setting_find(axis->key);
-    char path[2 * EBB_NAME_MAX];
+    char path[EBB_SWEEP_PATH];
 
     for (size_t c = 0; c < plan->cases; c++) {
       line[c] = axis->number[ebb_sweep_value(plan, c, a)];
@@ -121,22 +111,22 @@ static PetscErrorCode put_axes(struct ebb_store *store, const struct ebb_sweep *
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode put_texts(struct ebb_store *store, const struct ebb_sweep *sweep, const char *text[])
+/* One column of all cases. line, text: room for [cases]. */
+static PetscErrorCode put_series(struct ebb_store *store, const struct ebb_sweep *sweep,
+                                 const struct ebb_sweep_series *series, double line[], const char *text[])
 {
-  static const struct {
-    const char *path, *long_name;
-    size_t offset;
-  } list[] = {
-      {"/sweep/case", "the settings that make the case", offsetof(struct ebb_sweep_row, id)},
-      {"/sweep/status", "done, limit (a numerical limit was broken) or failed", offsetof(struct ebb_sweep_row, status)},
-      {"/sweep/verdict", "of the bounce: yes, no or undecided", offsetof(struct ebb_sweep_row, verdict)},
-      {"/sweep/reason", "of the verdict, or of the failure", offsetof(struct ebb_sweep_row, reason)}};
+  const size_t n = sweep->plan.cases;
+  char path[EBB_SWEEP_PATH];
 
   PetscFunctionBegin;
-  for (size_t i = 0; i < sizeof list / sizeof list[0]; i++) {
-    for (size_t c = 0; c < sweep->plan.cases; c++) text[c] = (const char *)&sweep->row[c] + list[i].offset;
-    PetscCall(ebb_store_put_texts(store, list[i].path, sweep->plan.cases, text, list[i].long_name, NULL));
+  if (!series->size) {
+    for (size_t c = 0; c < n; c++) line[c] = *(const double *)(const void *)ebb_sweep_series_at(series, c);
+    PetscCall(put_line(store, series->group, series->name, n, line, series->units, series->long_name));
+    PetscFunctionReturn(0);
   }
+  for (size_t c = 0; c < n; c++) text[c] = ebb_sweep_series_at(series, c);
+  (void)snprintf(path, sizeof path, "%s/%s", series->group, series->name);
+  PetscCall(ebb_store_put_texts(store, path, n, text, series->long_name, NULL));
   PetscFunctionReturn(0);
 }
 
@@ -145,6 +135,7 @@ PetscErrorCode ebb_sweep_write(struct ebb_sweep *sweep, bool force)
   const size_t n = sweep->plan.cases;
   struct ebb_settings settings = {0};
   struct ebb_problems *problems = ebb_problems_create();
+  struct ebb_sweep_series series;
   struct ebb_store *store;
   const char **text;
   double *line;
@@ -157,17 +148,10 @@ PetscErrorCode ebb_sweep_write(struct ebb_sweep *sweep, bool force)
                         problems);
   PetscCall(ebb_result_root(store, &settings, PETSC_COMM_WORLD, sweep->invocation, sweep->base_text));
   PetscCall(put_axes(store, sweep, line, text));
-  PetscCall(put_texts(store, sweep, text));
-  for (int i = 0; i < EBB_SWEEP_COLUMNS; i++)
-    PetscCall(put_member(store, sweep, "/sweep", ebb_sweep_column[i].name,
-                         offsetof(struct ebb_sweep_row, value) + (size_t)i * sizeof(double), line,
-                         ebb_sweep_column[i].units, ebb_sweep_column[i].long_name));
-  PetscCall(put_member(store, sweep, "/provenance", "case_attempts", offsetof(struct ebb_sweep_row, attempts), line,
-                       "1", "how often the case was begun"));
-  PetscCall(put_member(store, sweep, "/provenance", "case_finished", offsetof(struct ebb_sweep_row, finished), line,
-                       "s", "when the case was finished, Unix time"));
-  PetscCall(put_member(store, sweep, "/provenance", "case_seconds", offsetof(struct ebb_sweep_row, seconds), line, "s",
-                       "how long the case took"));
+  for (size_t c = 0; c < n; c++) text[c] = sweep->row[c].id;
+  PetscCall(ebb_store_put_texts(store, "/sweep/case", n, text, "the settings that make the case", NULL));
+  for (size_t i = 0; ebb_sweep_series(sweep, i, &series); i++) PetscCall(put_series(store, sweep, &series, line, text));
+  if (sweep->readings_text) PetscCall(ebb_store_set_text(store, "/", "readings_text", sweep->readings_text));
   PetscCall(ebb_result_finish(store, PETSC_COMM_SELF));
   PetscCall(ebb_store_commit(&store, true));
   PetscCall(PetscFree2(line, text));
@@ -176,61 +160,62 @@ PetscErrorCode ebb_sweep_write(struct ebb_sweep *sweep, bool force)
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode get_member(struct ebb_store *store, struct ebb_sweep *sweep, const size_t place[], hsize_t n,
-                                 const char *group, const char *name, size_t offset, double line[])
+/* A column back into the cases, place [n]; one that the result does not have leaves them as they are. */
+static PetscErrorCode get_series(struct ebb_store *store, const struct ebb_sweep *sweep,
+                                 const struct ebb_sweep_series *series, const size_t place[], hsize_t n, double line[])
 {
   const hsize_t start = 0;
-  hsize_t extent[EBB_STORE_RANK_MAX] = {0};
-  char path[2 * EBB_NAME_MAX];
+  hsize_t count = 0, extent[EBB_STORE_RANK_MAX] = {0};
+  char path[EBB_SWEEP_PATH], *bytes = NULL;
+  size_t width = 0;
   bool found;
-  int rank;
+  int rank = 1;
 
   PetscFunctionBegin;
-  PetscCall(PetscSNPrintf(path, sizeof path, "%s/%s", group, name));
-  PetscCall(ebb_store_extent(store, path, &rank, extent, &found));
-  if (!found || rank != 1 || extent[0] != n) PetscFunctionReturn(0);
-  PetscCall(ebb_store_read(store, path, &start, &n, line));
-  for (hsize_t i = 0; i < n; i++)
-    if (place[i] < sweep->plan.cases) *(double *)(void *)((char *)&sweep->row[place[i]] + offset) = line[i];
-  PetscFunctionReturn(0);
-}
+  (void)snprintf(path, sizeof path, "%s/%s", series->group, series->name);
+  if (series->size) {
+    PetscCall(ebb_store_get_texts(store, path, &count, &width, &bytes, &found));
+  } else {
+    PetscCall(ebb_store_extent(store, path, &rank, extent, &found));
+    count = extent[0];
+    if (found && rank == 1 && count == n) PetscCall(ebb_store_read(store, path, &start, &n, line));
+  }
+  for (hsize_t i = 0; found && rank == 1 && count == n && i < n; i++) {
+    char *at = ebb_sweep_series_at(series, place[i]);
 
-static PetscErrorCode get_texts(struct ebb_store *store, struct ebb_sweep *sweep, const size_t place[], hsize_t n,
-                                const char *path, size_t offset, size_t size)
-{
-  hsize_t count;
-  size_t width;
-  char *bytes;
-  bool found;
-
-  PetscFunctionBegin;
-  PetscCall(ebb_store_get_texts(store, path, &count, &width, &bytes, &found));
-  for (hsize_t i = 0; found && count == n && i < n; i++)
-    if (place[i] < sweep->plan.cases)
-      (void)ebb_text_copy((char *)&sweep->row[place[i]] + offset, size, bytes + i * width);
+    if (place[i] == sweep->plan.cases) continue;
+    if (series->size)
+      (void)ebb_text_copy(at, series->size, bytes + i * width);
+    else
+      memcpy(at, &line[i], sizeof line[i]);
+  }
   PetscCall(PetscFree(bytes));
   PetscFunctionReturn(0);
 }
 
 static PetscErrorCode read_columns(struct ebb_store *store, struct ebb_sweep *sweep, const size_t place[], hsize_t n)
 {
+  struct ebb_sweep_series series;
   double *line;
 
   PetscFunctionBegin;
   PetscCall(PetscMalloc1(n, &line));
-  for (int i = 0; i < EBB_SWEEP_COMPUTED; i++)
-    PetscCall(get_member(store, sweep, place, n, "/sweep", ebb_sweep_column[i].name,
-                         offsetof(struct ebb_sweep_row, value) + (size_t)i * sizeof(double), line));
-  PetscCall(get_member(store, sweep, place, n, "/provenance", "case_attempts", offsetof(struct ebb_sweep_row, attempts),
-                       line));
-  PetscCall(get_member(store, sweep, place, n, "/provenance", "case_finished", offsetof(struct ebb_sweep_row, finished),
-                       line));
-  PetscCall(
-      get_member(store, sweep, place, n, "/provenance", "case_seconds", offsetof(struct ebb_sweep_row, seconds), line));
-  PetscCall(get_texts(store, sweep, place, n, "/sweep/verdict", offsetof(struct ebb_sweep_row, verdict), 16));
-  PetscCall(get_texts(store, sweep, place, n, "/sweep/reason", offsetof(struct ebb_sweep_row, reason), 256));
-  PetscCall(get_texts(store, sweep, place, n, "/sweep/status", offsetof(struct ebb_sweep_row, status), 16));
+  for (size_t i = 0; ebb_sweep_series(sweep, i, &series); i++)
+    PetscCall(get_series(store, sweep, &series, place, n, line));
   PetscCall(PetscFree(line));
+  PetscFunctionReturn(0);
+}
+
+/* Is a text attribute of the result this one? Neither there is the same, too. */
+static PetscErrorCode same_text(struct ebb_store *store, const char *name, const char *wanted, bool *same)
+{
+  char *text;
+  bool found;
+
+  PetscFunctionBegin;
+  PetscCall(ebb_store_get_text(store, "/", name, &text, &found));
+  *same = *same && (found ? wanted && !strcmp(text, wanted) : !wanted);
+  PetscCall(PetscFree(text));
   PetscFunctionReturn(0);
 }
 
@@ -239,15 +224,15 @@ PetscErrorCode ebb_sweep_read(struct ebb_sweep *sweep, long *finished, long *str
   struct ebb_store *store;
   hsize_t n = 0;
   size_t width, *place;
-  char *id, *text;
+  char *id;
   bool found;
 
   PetscFunctionBegin;
+  *same_base = true;
   *finished = *strange = 0;
   PetscCall(ebb_store_open(PETSC_COMM_SELF, sweep->path, &store));
-  PetscCall(ebb_store_get_text(store, "/", "model_text", &text, &found));
-  *same_base = found && !strcmp(text, sweep->base_text);
-  PetscCall(PetscFree(text));
+  PetscCall(same_text(store, "model_text", sweep->base_text, same_base));
+  PetscCall(same_text(store, "readings_text", sweep->readings_text, same_base));
   PetscCall(ebb_store_get_texts(store, "/sweep/case", &n, &width, &id, &found));
   PetscCall(PetscMalloc1(n + 1, &place));
   for (hsize_t i = 0; found && i < n; i++) {
@@ -274,27 +259,34 @@ static void put_quoted(FILE *file, const char *text)
   fputc('"', file);
 }
 
+static void put_cell(FILE *file, const struct ebb_sweep_series *series, size_t c)
+{
+  const void *at = ebb_sweep_series_at(series, c);
+
+  fputc(',', file);
+  if (series->size)
+    put_quoted(file, at);
+  else if (!isnan(*(const double *)at))
+    fprintf(file, "%.17g", *(const double *)at);
+}
+
 bool ebb_sweep_csv(const struct ebb_sweep *sweep, const char *path)
 {
   const struct ebb_sweep_plan *plan = &sweep->plan;
   FILE *file = fopen(path, "w");
+  struct ebb_sweep_series series;
   bool good;
 
   if (!file) return false;
-  for (size_t a = 0; a < plan->axes; a++) fprintf(file, "%s,", plan->axis[a].key);
-  fprintf(file, "status,verdict");
-  for (int i = 0; i < EBB_SWEEP_COLUMNS; i++) fprintf(file, ",%s", ebb_sweep_column[i].name);
-  fprintf(file, ",reason\r\n");
+  for (size_t a = 0; a < plan->axes; a++) fprintf(file, "%s%s", a ? "," : "", plan->axis[a].key);
+  for (size_t i = 0; ebb_sweep_series(sweep, i, &series); i++)
+    if (!strcmp(series.group, "/sweep")) fprintf(file, ",%s", series.name);
+  fprintf(file, "\r\n");
   for (size_t c = 0; c < plan->cases; c++) {
-    for (size_t a = 0; a < plan->axes; a++) fprintf(file, "%s,", plan->axis[a].text[ebb_sweep_value(plan, c, a)]);
-    fprintf(file, "%s,%s", sweep->row[c].status, sweep->row[c].verdict);
-    for (int i = 0; i < EBB_SWEEP_COLUMNS; i++)
-      if (isnan(sweep->row[c].value[i]))
-        fputc(',', file);
-      else
-        fprintf(file, ",%.17g", sweep->row[c].value[i]);
-    fputc(',', file);
-    put_quoted(file, sweep->row[c].reason);
+    for (size_t a = 0; a < plan->axes; a++)
+      fprintf(file, "%s%s", a ? "," : "", plan->axis[a].text[ebb_sweep_value(plan, c, a)]);
+    for (size_t i = 0; ebb_sweep_series(sweep, i, &series); i++)
+      if (!strcmp(series.group, "/sweep")) put_cell(file, &series, c);
     fputs("\r\n", file);
   }
   good = !ferror(file);

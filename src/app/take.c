@@ -3,6 +3,7 @@
  * From sheets to a record: moments with errors, the independent rule, bounce, law and effective trajectory. */
 #include "record.h"
 
+#include <complex.h>
 #include <math.h>
 
 /* |c(0)|^2/|c|^2_max above which the mean volume drifts with the lattice: exp(-k0^2/(2 sigma_k^2)) at k0 = 8 sigma_k.
@@ -32,12 +33,21 @@ PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
   if (run->packet->lost > LOST) record->budget.propagation = sqrt(run->packet->lost);
   record->budget.propagation +=
       run->packet->omega_error * fmax(fabs(run->phi[0]), fabs(run->phi[run->m - 1])); /* phases of the levels */
+  if (run->graded && !run->plan.uniform)
+    record->budget.cut_tail = 8.0 / EBB_PI * pow(cabs(run->packet->amplitude[0]) / run->plan.weight[0], 2.0);
   if (!run->check) PetscFunctionReturn(0);
   for (int i = 0; i < VERIFIED; i++) phi[i] = run->phi[(PetscInt)((double)i / (VERIFIED - 1) * (double)(run->m - 1))];
   ebb_run_source(run, false, &main_rule);
   PetscCall(main_rule.evaluate(&main_rule, VERIFIED, phi, &request, &rule));
   PetscCall(run->check_source.evaluate(&run->check_source, VERIFIED, phi, &request, &check));
   ebb_budget_compare(&record->budget, &run->constants, &run->lattice, &rule, &check, o->quantiles);
+  if (run->other_source.data) {
+    struct ebb_sheet other;
+
+    PetscCall(run->other_source.evaluate(&run->other_source, VERIFIED, phi, &request, &other));
+    ebb_budget_compare_grading(&record->budget, &run->constants, &run->lattice, &rule, &other, o->quantiles);
+    PetscCall(ebb_sheet_clear(&other));
+  }
   PetscCall(ebb_sheet_clear(&rule));
   PetscCall(ebb_sheet_clear(&check));
   PetscFunctionReturn(0);

@@ -195,6 +195,11 @@ static const struct ebb_setting rows[] = {
      .sentence = "largest v of the lattice; auto: from the state and the clock range"},
     {.key = "lattice.points", INTEGER(lattice.points), .range = {8, 1000000000, false, false},
      .places_required = EBB_ON_GRID, .sentence = "a wall after so many sites; on a grid in ln v its number of points"},
+    {.key = "lattice.layout", NAME(lattice.layout), .choices = CHOICES("auto", "full", "graded"), .fallback = "auto",
+     .places = EBB_ON_VOLUME,
+     .sentence = "full: a row for every site; graded: beyond the matching volume blocks of sites summed by the Gauss "
+                 "rule of their own measure, up to v = 1e60; auto: graded where it saves a factor of 4 and no states are "
+                 "kept"},
     {.key = "lattice.lnv_min", .letter = "ln v", .unit = "1", REAL(lattice.lnv_min), .range = ANY,
      .places = EBB_ON_GRID, .places_required = EBB_ON_GRID, .sentence = "lower end of the periodic grid in ln v"},
     {.key = "lattice.lnv_max", .letter = "ln v", .unit = "1", REAL(lattice.lnv_max), .range = ANY,

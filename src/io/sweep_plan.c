@@ -215,15 +215,19 @@ static void take_output(struct ebb_sweep_plan *plan, const struct ebb_yaml_node 
 
 static void take_plan(struct ebb_sweep_plan *plan, const struct ebb_yaml_node *root, struct ebb_problems *problems)
 {
-  static const char *const keys[] = {"base", "vary", "arrange", "ranks_per_case", "output", NULL};
+  static const char *const keys[] = {"base", "vary", "arrange", "readings", "ranks_per_case", "output", NULL};
   const struct ebb_yaml_node *base = find(root, "base"), *vary = find(root, "vary"), *arrange = find(root, "arrange"),
-                             *ranks = find(root, "ranks_per_case"), *output = find(root, "output");
+                             *readings = find(root, "readings"), *ranks = find(root, "ranks_per_case"),
+                             *output = find(root, "output");
   long long number = 1;
 
   check_keys(root, "", keys, problems);
   if (!base || base->kind != EBB_YAML_SCALAR || !base->length ||
       !ebb_text_copy(plan->base, sizeof plan->base, base->text))
     ebb_problems_add(problems, base ? base->line : root->line, "'base' is needed: the model that the cases start from");
+  if (readings && (readings->kind != EBB_YAML_SCALAR || !readings->length ||
+                   !ebb_text_copy(plan->readings, sizeof plan->readings, readings->text)))
+    ebb_problems_add(problems, readings->line, "'readings' must be the name of a readings file, as 'relate' takes it");
   if (arrange && !is(arrange, "grid") && !is(arrange, "paired"))
     ebb_problems_add(problems, arrange->line, "arrange must be grid or paired");
   plan->paired = arrange && is(arrange, "paired");
@@ -253,7 +257,7 @@ bool ebb_sweep_parse(const char *text, size_t length, struct ebb_sweep_plan *pla
     take_plan(plan, tree.root, problems);
   else if (tree.root)
     ebb_problems_add(problems, tree.root->line,
-                     "a plan is a section of keys: base, vary, arrange, ranks_per_case, output");
+                     "a plan is a section of keys: base, vary, arrange, readings, ranks_per_case, output");
   ebb_yaml_clear(&tree);
   return ebb_problems_count(problems) == before;
 }

@@ -97,6 +97,8 @@ double ebb_rows_edge(const struct ebb_rows *rows)
 
 static double curvature(const struct ebb_rows *rows, double v)
 {
+  if (rows->curvature == EBB_CURVATURE_NONE) return 0.0;
+
   const double d = rows->d1 / cbrt(fabs(v)), g = rows->constants.immirzi, sine = sin(d);
   const struct ebb_prescription *p = rows->prescription;
   double value = 0.0;

@@ -82,6 +82,7 @@ size_t ebb_symbol_turnings(const struct ebb_symbol *y, double momentum,
   size_t n = 0;
 
   for (int which = 0; which < STATIONARY; which++) {
+    if (y->kind != EBB_SYMBOL_CONNECTION && isnan(stationary(y, which, 1.0))) continue; /* at no v */
     double before = NAN, at = NAN; /* the last value that was not 0 (underflow of both terms at huge v) */
 
     for (int i = 0; i <= steps; i++) {

@@ -37,13 +37,14 @@ static PetscErrorCode reach(struct ebb_source *source, PetscInt m, const double 
 {
   const struct ebb_lattice *lattice = source->lattice;
   const struct ebb_sheet_request request = {.probability = true};
-  const double top = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+  const double top = ebb_lattice_top(lattice);
   struct ebb_sheet sheet;
   double tail[LIMIT_DOUBLINGS + 1] = {0.0};
 
   PetscFunctionBegin;
   *limit = 0.0;
-  if (lattice->rows.prescription->grid) PetscFunctionReturn(0);
+  /* a graded lattice has few rows: all of them are looked at */
+  if (lattice->rows.prescription->grid || lattice->grading) PetscFunctionReturn(0);
   PetscCall(source->evaluate(source, m, phi, &request, &sheet));
   for (PetscInt s = 0; s < m; s++)
     for (PetscInt i = 0; i < sheet.local; i++) {
@@ -219,7 +220,7 @@ static int quantiles_turn(const struct ebb_samples *samples)
 static double edge_speed(const struct ebb_lattice *lattice)
 {
   const struct ebb_rows *rows = &lattice->rows;
-  const double v = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)), growth = rows->clock->growth;
+  const double v = ebb_lattice_top(lattice), growth = rows->clock->growth;
 
   if (rows->clock->root) return 2.0 * sqrt(rows->scale) * pow(v, 0.5 * growth - 1.0);
   return 2.0 * rows->scale * pow(v, growth - 1.0);

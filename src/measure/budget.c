@@ -8,6 +8,7 @@ const char *const ebb_contribution_names[EBB_CONTRIBUTIONS] = {
     [EBB_ERROR_QUADRATURE] = "quadrature",
     [EBB_ERROR_NORMALISATION] = "normalisation",
     [EBB_ERROR_PROPAGATION] = "propagation",
+    [EBB_ERROR_GRADING] = "grading",
     [EBB_ERROR_ROUNDING] = "rounding",
 };
 
@@ -16,6 +17,7 @@ const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS] = {
     [EBB_ERROR_QUADRATURE] = "difference to an independent rule in k",
     [EBB_ERROR_NORMALISATION] = "|norm - 1| and drift of the recursion against the large-volume waves",
     [EBB_ERROR_PROPAGATION] = "remainder of the propagator, drift of norm and <Theta>",
+    [EBB_ERROR_GRADING] = "difference to a lattice graded in other blocks, with other nodes",
     [EBB_ERROR_ROUNDING] = "rounding of the sums over sites",
 };
 
@@ -85,7 +87,7 @@ static double weight_beyond(const struct ebb_lattice *lattice, const struct ebb_
   if (sheet->sum[last][s] > GOOD_PART * all) return INFINITY;
   const double mean = sheet->sum[EBB_SUM_LNV][s] / norm, square = sheet->sum[EBB_SUM_LNV2][s] / norm;
   const double spread = sqrt(fmax(square - mean * mean, PETSC_MACHINE_EPSILON));
-  const double top = log(fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)));
+  const double top = log(ebb_lattice_top(lattice));
   const double z = (top - mean) / spread - power * spread;
   return fmax(charged, sheet->sum[last][s] * normal_ratio(z, log(sheet->edge_ratio) / spread));
 }
@@ -101,11 +103,21 @@ static double drift_of(const struct ebb_budget *budget, double v, double spread)
   return drift;
 }
 
-/* Rounding of a sum whose terms spread over many sites: a random walk of one rounding per site that matters. */
-static double rounding_of(double spread)
+/* Rounding of a sum whose terms spread over many sites: a random walk of one rounding per site that matters, or per row
+ * of a graded lattice, whose values come with a rounding of the phase k ln v each. */
+static double rounding_of(const struct ebb_lattice *lattice, double spread)
 {
   static const double WIDTH = 6.0, STEP = 4.0;
-  return 2.0 * PETSC_MACHINE_EPSILON * (2.0 + sqrt(WIDTH * spread / STEP));
+  const double sites = WIDTH * spread / STEP;
+
+  return 2.0 * PETSC_MACHINE_EPSILON *
+         (2.0 + sqrt(lattice->grading ? fmin(sites, (double)ebb_lattice_size(lattice)) : sites));
+}
+
+/* Error of a moment by the independent rules, in k and on the lattice. */
+static double rules_of(const struct ebb_budget *budget, int moment)
+{
+  return budget->quadrature[moment] + budget->grading[moment];
 }
 
 /* Largest |<e_j|e_j> - 1| and |<e_j|e_j+1>| over all vectors; the same on every rank, as every rank holds them all. */
@@ -148,7 +160,8 @@ PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct 
                                         const struct ebb_lattice *lattice, MPI_Comm comm)
 {
   const double match = ebb_basis_match_volume(packet->basis);
-  const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+  const double v_max = lattice->grading ? ebb_lattice_place(lattice, 0, lattice->grading->plain - 1)
+                                        : ebb_lattice_top(lattice); /* beyond the sites waves are the normalised ones */
   const double top = log(fmax(v_max, match)), bottom = log(fmax(match, 1.0));
 
   PetscFunctionBegin;
@@ -169,11 +182,13 @@ PetscErrorCode ebb_budget_measure_drift(struct ebb_budget *budget, const struct 
       const PetscInt site =
           PetscMax((PetscInt)((budget->drift_v[i] - lattice->first[arm]) / lattice->rows.step), 0) + 1;
       /* each rank looks at the sites it owns; the last one looks as far as the matching volume where that is beyond */
-      const bool mine = (site >= begin && site < end) || (end == lattice->sites[arm] && site >= end && begin < end);
+      const PetscInt plain = ebb_lattice_plain(lattice, arm);
+      const bool mine = (site >= begin && site < PetscMin(end, plain)) ||
+                        (end >= plain && site >= PetscMin(end, plain) && begin < plain);
 
       if (!mine) continue;
       if (!cursor)
-        PetscCall(ebb_cursor_open(packet->basis, arm, site, &cursor));
+        PetscCall(ebb_cursor_open_sites(packet->basis, arm, site, &cursor));
       else
         ebb_cursor_next(cursor, site - here, NULL);
       here = site;
@@ -191,6 +206,17 @@ static double root_error(double variance, double spread)
   return isfinite(variance) ? variance / fmax(2.0 * spread, sqrt(variance)) : variance;
 }
 
+/* v^power-weighted probability of the tail of a cut at k = 0, |psi|^2 = cut_tail/(v ln^2 v), up to the last site of a
+ * graded lattice, which reaches far enough to feel it: beyond, it has no end, and none of it belongs to a mean. */
+static double cut_of(const struct ebb_budget *budget, const struct ebb_lattice *lattice, double power)
+{
+  static const double TWICE = 2.0; /* ln v is counted from the packet, not from v = 1 */
+  const double top = ebb_lattice_top(lattice), l = log(top);
+
+  if (budget->cut_tail == 0.0) return 0.0;
+  return TWICE * 0.25 * budget->cut_tail * (power > 0.0 ? pow(top, power) / (power * l * l) : 1.0 / l);
+}
+
 void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
@@ -198,25 +224,30 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   const bool family = !lattice->rows.prescription->grid && ebb_rows_is_family(&lattice->rows);
   const double edge0 =
       family ? TAIL_AND_LINK * tail_of(lattice, sheet, s)
-             : weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]);
-  const double edge1 = weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V, sheet->sum[EBB_SUM_V][s]);
+             : weight_beyond(lattice, sheet, s, 0.0, EBB_SUM_EDGE_0, EBB_SUM_INNER_0, sheet->sum[EBB_SUM_NORM][s]) +
+                   cut_of(budget, lattice, 0.0);
+  const double edge1 =
+      weight_beyond(lattice, sheet, s, 1.0, EBB_SUM_EDGE_V, EBB_SUM_INNER_V, sheet->sum[EBB_SUM_V][s]) +
+      cut_of(budget, lattice, 1.0);
   const double edge2 =
-      weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2, sheet->sum[EBB_SUM_V2][s]);
+      weight_beyond(lattice, sheet, s, 2.0, EBB_SUM_EDGE_V2, EBB_SUM_INNER_V2, sheet->sum[EBB_SUM_V2][s]) +
+      cut_of(budget, lattice, 2.0);
   /* without a mean, the geometric one and the whole lattice for its spread: both only size up roundings */
   const double v = family ? exp(moment[EBB_MOMENT_LNV_MEAN]) : moment[EBB_MOMENT_V_MEAN];
-  const double dv = family ? fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)) : moment[EBB_MOMENT_V_SPREAD];
-  const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)), lnv_max = log(v_max);
+  const double dv = family ? ebb_lattice_top(lattice) : moment[EBB_MOMENT_V_SPREAD];
+  const double v_max = ebb_lattice_top(lattice), lnv_max = log(v_max);
   const double state =
       budget->propagation; /* error of the state vector: a mean moves by 2 |state| times its own spread */
   const double normalisation = fabs(moment[EBB_MOMENT_NORM] - 1.0) + 2.0 * drift_of(budget, v, dv);
-  const double rounding = rounding_of(dv), common = normalisation + rounding;
+  const double rounding = rounding_of(lattice, dv), common = normalisation + rounding;
   const double far = 2.0 * state * sqrt(sheet->sum[EBB_SUM_V2][s]) + state * state * v_max;
   double contribution[EBB_CONTRIBUTIONS];
 
   for (int i = 0; i < EBB_MOMENTS; i++)
-    error[i] = scale_of(c, family, i, moment) * (budget->quadrature[i] + common + edge0 + 2.0 * state);
+    error[i] = scale_of(c, family, i, moment) * (rules_of(budget, i) + common + edge0 + 2.0 * state);
   contribution[EBB_ERROR_EDGE] = family ? edge0 : edge1 / v;
   contribution[EBB_ERROR_QUADRATURE] = budget->quadrature[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN];
+  contribution[EBB_ERROR_GRADING] = budget->grading[EBB_MOMENT_V_MEAN];
   contribution[EBB_ERROR_NORMALISATION] = normalisation;
   contribution[EBB_ERROR_PROPAGATION] = family ? 2.0 * state : far / v;
   contribution[EBB_ERROR_ROUNDING] = rounding;
@@ -224,34 +255,34 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   if (!family) budget->edge_probability = fmax(budget->edge_probability, sheet->sum[EBB_SUM_EDGE][s]);
 
   error[EBB_MOMENT_NORM] =
-      edge0 + 2.0 * state + 2.0 * drift_of(budget, v, dv) + rounding + budget->quadrature[EBB_MOMENT_NORM];
-  error[EBB_MOMENT_V_MEAN] = v * (budget->quadrature[EBB_MOMENT_V_MEAN] + common) + edge1 + far;
+      edge0 + 2.0 * state + 2.0 * drift_of(budget, v, dv) + rounding + rules_of(budget, EBB_MOMENT_NORM);
+  error[EBB_MOMENT_V_MEAN] = v * (rules_of(budget, EBB_MOMENT_V_MEAN) + common) + edge1 + far;
   {
     /* variance = <v^2> - <v>^2: the errors of both, cancellation included */
     const double square = v * v + dv * dv, noise = square * common + edge2 + 2.0 * state * v_max * sqrt(square);
     const double variance = noise + 2.0 * v * (v * common + edge1 + far);
-    error[EBB_MOMENT_V_SPREAD] = dv * budget->quadrature[EBB_MOMENT_V_SPREAD] + root_error(variance, dv);
+    error[EBB_MOMENT_V_SPREAD] = dv * rules_of(budget, EBB_MOMENT_V_SPREAD) + root_error(variance, dv);
   }
   {
     const double l = moment[EBB_MOMENT_LNV_MEAN], dl = moment[EBB_MOMENT_LNV_SPREAD];
-    const double first = fabs(l) * (budget->quadrature[EBB_MOMENT_LNV_MEAN] + common) + (edge0 + 2.0 * state) * lnv_max;
+    const double first = fabs(l) * (rules_of(budget, EBB_MOMENT_LNV_MEAN) + common) + (edge0 + 2.0 * state) * lnv_max;
     const double variance =
         (l * l + dl * dl) * common + (edge0 + 2.0 * state) * lnv_max * lnv_max + 2.0 * fabs(l) * first;
     error[EBB_MOMENT_LNV_MEAN] = first;
-    error[EBB_MOMENT_LNV_SPREAD] = dl * budget->quadrature[EBB_MOMENT_LNV_SPREAD] + root_error(variance, dl);
+    error[EBB_MOMENT_LNV_SPREAD] = dl * rules_of(budget, EBB_MOMENT_LNV_SPREAD) + root_error(variance, dl);
   }
   {
     const double p = moment[EBB_MOMENT_MOMENTUM_MEAN], dp = moment[EBB_MOMENT_MOMENTUM_SPREAD];
     const double variance = 4.0 * (p * p + dp * dp) * (common + edge0 + 2.0 * state);
-    error[EBB_MOMENT_MOMENTUM_SPREAD] = dp * budget->quadrature[EBB_MOMENT_MOMENTUM_SPREAD] + root_error(variance, dp);
+    error[EBB_MOMENT_MOMENTUM_SPREAD] = dp * rules_of(budget, EBB_MOMENT_MOMENTUM_SPREAD) + root_error(variance, dp);
   }
   if (lattice->rows.volume_power != 1.0) { /* V = v^power: to first order of its spread, edges by the steeper weight */
     const double power = lattice->rows.volume_power, mean = moment[EBB_MOMENT_VOLUME_MEAN];
     const double tail = power * fmax(edge1 / v, edge2 / (v * v));
 
     error[EBB_MOMENT_VOLUME_MEAN] =
-        mean * (budget->quadrature[EBB_MOMENT_VOLUME_MEAN] + power * (common + far / v) + tail);
-    error[EBB_MOMENT_VOLUME_SPREAD] = moment[EBB_MOMENT_VOLUME_SPREAD] * budget->quadrature[EBB_MOMENT_VOLUME_SPREAD] +
+        mean * (rules_of(budget, EBB_MOMENT_VOLUME_MEAN) + power * (common + far / v) + tail);
+    error[EBB_MOMENT_VOLUME_SPREAD] = moment[EBB_MOMENT_VOLUME_SPREAD] * rules_of(budget, EBB_MOMENT_VOLUME_SPREAD) +
                                       root_error(4.0 * mean * mean * power * (common + tail + 2.0 * state * v_max / v),
                                                  moment[EBB_MOMENT_VOLUME_SPREAD]);
   } else {
@@ -294,8 +325,8 @@ double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct e
   const double edge0 = family ? 0.0 : beyond(sheet->sum[EBB_SUM_EDGE_0][s], sheet->sum[EBB_SUM_INNER_0][s]);
   const double *q = sheet->quantile + (size_t)s * levels;
   const double v = sheet->sum[EBB_SUM_V][s], spread = sqrt(fmax(sheet->sum[EBB_SUM_V2][s] - v * v, 1.0));
-  const double missing =
-      edge0 + fabs(sheet->sum[EBB_SUM_NORM][s] - 1.0) + 2.0 * drift_of(budget, v, spread) + rounding_of(spread);
+  const double missing = edge0 + fabs(sheet->sum[EBB_SUM_NORM][s] - 1.0) + 2.0 * drift_of(budget, v, spread) +
+                         rounding_of(lattice, spread);
   /* a shift of probability moves the quantile by shift/density. The mean density between the neighbouring levels
    * exceeds that at a level inside by less than INSIDE, that between the outer ones the density in a tail by less than
    * THIN. */
@@ -305,17 +336,18 @@ double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct e
   const double width = levels > 1 ? (q[high] - q[low]) / (level[high] - level[low]) : spread;
 
   /* limit circle: beyond the last site only the probability is known, not where it lies */
-  if (family && q[which] > fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1)) - 2.0) return INFINITY;
-  return fabs(q[which]) * (budget->quadrature_quantile + 4.0 * PETSC_MACHINE_EPSILON) +
+  if (family && q[which] > ebb_lattice_top(lattice) - 2.0) return INFINITY;
+  return fabs(q[which]) * (budget->quadrature_quantile + budget->grading_quantile + 4.0 * PETSC_MACHINE_EPSILON) +
          (inside ? INSIDE : THIN) * fmax(width, 1.0) * (missing + 2.0 * budget->propagation);
 }
 
-void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
-                        const struct ebb_sheet *rule, const struct ebb_sheet *check, size_t levels)
+/* Largest differences of two sheets of the same samples so far: moments and quantiles. */
+static void differ(const struct ebb_constants *c, const struct ebb_lattice *lattice, const struct ebb_sheet *rule,
+                   const struct ebb_sheet *check, size_t levels, double moments[EBB_MOMENTS], double *quantile)
 {
   static const double FAMILY_TOP = 0.45; /* the check's lattice is half as large */
   const bool family = !lattice->rows.prescription->grid && ebb_rows_is_family(&lattice->rows);
-  const double v_max = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+  const double v_max = ebb_lattice_top(lattice);
 
   for (PetscInt s = 0; s < rule->m; s++) {
     double a[EBB_MOMENTS], b[EBB_MOMENTS];
@@ -324,15 +356,28 @@ void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c
     ebb_moments_from_sums(c, lattice, check, s, b);
     for (int i = 0; i < EBB_MOMENTS; i++) {
       const double scale = scale_of(c, family, i, a);
-      if (scale > 0.0) budget->quadrature[i] = fmax(budget->quadrature[i], fabs(a[i] - b[i]) / scale);
+      if (scale > 0.0) moments[i] = fmax(moments[i], fabs(a[i] - b[i]) / scale);
     }
     for (size_t q = 0; q < levels; q++) {
       const double x = rule->quantile[(size_t)s * levels + q], y = check->quantile[(size_t)s * levels + q];
 
       if (family && fmax(x, y) > FAMILY_TOP * v_max) continue; /* beyond one of the lattices: said with the quantile */
-      if (x != 0.0) budget->quadrature_quantile = fmax(budget->quadrature_quantile, fabs((x - y) / x));
+      if (x != 0.0) *quantile = fmax(*quantile, fabs((x - y) / x));
     }
   }
+}
+
+void ebb_budget_compare(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
+                        const struct ebb_sheet *rule, const struct ebb_sheet *check, size_t levels)
+{
+  differ(c, lattice, rule, check, levels, budget->quadrature, &budget->quadrature_quantile);
+}
+
+void ebb_budget_compare_grading(struct ebb_budget *budget, const struct ebb_constants *c,
+                                const struct ebb_lattice *lattice, const struct ebb_sheet *sheet,
+                                const struct ebb_sheet *other, size_t levels)
+{
+  differ(c, lattice, sheet, other, levels, budget->grading, &budget->grading_quantile);
 }
 
 enum ebb_contribution ebb_budget_largest(const struct ebb_budget *budget)

@@ -153,7 +153,7 @@ static PetscErrorCode on_lattice(const struct ebb_packet *packet, const struct e
                                  char problem[], size_t size)
 {
   const double reach = settings->v_star[settings->v_stars - 1], t = settings->at[1] - settings->at[0];
-  const double all = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+  const double all = ebb_lattice_top(lattice);
   const bool several = ebb_basis_info(packet->basis) != NULL;
   struct ebb_evolution e, finer;
 

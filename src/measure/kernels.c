@@ -76,8 +76,8 @@ static void diagonal(const struct site_weights *at, double v, double v_max, bool
 }
 
 /* Sums that few models have. */
-static void diagonal_more(const struct ebb_lattice *lattice, double v, bool last, const struct ebb_site_rows *r,
-                          PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
+static void diagonal_more(const struct ebb_lattice *lattice, double cell, double v, bool last,
+                          const struct ebb_site_rows *r, PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
   const struct ebb_rows *rows = &lattice->rows;
   const bool powers = rows->volume_power != 1.0, potential = rows->band == 1 && ebb_rows_has_potential(rows);
@@ -86,7 +86,7 @@ static void diagonal_more(const struct ebb_lattice *lattice, double v, bool last
 
   if (!powers && !potential && bounded == 0.0 && !last) return;
   for (PetscInt s = 0; s < m; s++) {
-    const double p = r->psi[0][s] * r->psi[0][s] + r->psi[1][s] * r->psi[1][s];
+    const double p = cell * (r->psi[0][s] * r->psi[0][s] + r->psi[1][s] * r->psi[1][s]);
 
     sheet->sum[EBB_SUM_THETA][s0 + s] += u * p;
     sheet->sum[EBB_SUM_VOLUME][s0 + s] += volume * p;
@@ -167,14 +167,37 @@ static void links(const struct ebb_lattice *lattice, double v, const struct ebb_
   }
 }
 
+/* The same of the links that a node stands for; r->next: the difference of psi/sqrt(B) along its link. 1/V differs by
+ * expm1(-power log(1 + step/v))/V. */
+static void links_node(const struct ebb_lattice *lattice, double w, double v, const struct ebb_site_rows *r,
+                       PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
+{
+  const struct ebb_rows *rows = &lattice->rows;
+  const struct ebb_prescription *flat = rows->prescription;
+  const double c = w * ebb_rows_hop(rows, v), d = w * flat->hop(v), over = 1.0 / sqrt(ebb_rows_measure(rows, v));
+  const double root = w * sqrt(ebb_rows_measure(rows, v + 4.0)), here = 1.0 / ebb_rows_volume(rows, v);
+  const double next = 1.0 / ebb_rows_volume(rows, v + 4.0), turn = here * expm1(-rows->volume_power * log1p(4.0 / v));
+
+  for (PetscInt s = 0; s < m; s++) {
+    const double pr = r->psi[0][s], pi = r->psi[1][s], dr = r->next[0][s], di = r->next[1][s];
+    const double yr = next * dr + turn * over * pr, yi = next * di + turn * over * pi;
+    const double nr = root * (over * pr + dr), ni = root * (over * pi + di);
+
+    sheet->sum[EBB_SUM_THETA][s0 + s] += c * (dr * dr + di * di);
+    sheet->sum[EBB_SUM_DENSITY][s0 + s] += d * (yr * yr + yi * yi);
+    sheet->sum[EBB_SUM_SHIFT_RE][s0 + s] += nr * pr + ni * pi;
+    sheet->sum[EBB_SUM_SHIFT_IM][s0 + s] += nr * pi - ni * pr;
+    sheet->sum[EBB_SUM_SHIFT2][s0 + s] += w * (r->after[0][s] * pr + r->after[1][s] * pi);
+  }
+}
+
 void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, const struct ebb_site_rows *rows,
                         PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
-  const double v = lattice->first[arm] + lattice->rows.step * (double)n;
-  const double v_max = lattice->first[arm] + lattice->rows.step * (double)(lattice->sites[arm] - 1);
+  const double v = ebb_lattice_place(lattice, arm, n), v_max = ebb_lattice_last(lattice, arm);
   const struct ebb_clock *clock = lattice->rows.clock;
   const double volume = ebb_rows_volume(&lattice->rows, v);
-  const struct site_weights at = {.cell = 1.0,
+  const struct site_weights at = {.cell = ebb_lattice_measure(lattice, arm, n),
                                   .a4 = cbrt(volume * volume * volume * volume),
                                   .density = clock->root && clock->density_power == 2.0
                                                  ? 1.0 / (volume * volume)
@@ -182,10 +205,12 @@ void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, 
                                   .linear = !clock->root};
 
   diagonal(&at, v, v_max, false, rows, s0, m, sheet);
-  diagonal_more(lattice, v, n + 1 == lattice->sites[arm], rows, s0, m, sheet);
+  diagonal_more(lattice, at.cell, v, !lattice->grading && n + 1 == lattice->sites[arm], rows, s0, m, sheet);
   most_probable(v, rows, s0, m, sheet, sheet->sum[EBB_SUMS]);
   if (lattice->rows.band == 2)
     links_five(lattice, v, rows, s0, m, sheet);
+  else if (n >= ebb_lattice_plain(lattice, arm))
+    links_node(lattice, at.cell, v, rows, s0, m, sheet);
   else
     links(lattice, v, rows, s0, m, sheet);
 }

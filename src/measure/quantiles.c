@@ -62,6 +62,10 @@ PetscErrorCode ebb_sheet_quantiles(const struct ebb_source *source, size_t level
   double *before[2], *total[2], *low, *high, *below, top = 0.0, bottom = 0.0;
 
   PetscFunctionBegin;
+  if (lattice->grading) {
+    PetscCall(ebb_sheet_quantiles_graded(source, levels, level, sheet));
+    PetscFunctionReturn(0);
+  }
   for (int arm = 0; arm < 2; arm++) {
     ebb_lattice_local(lattice, arm, &begin[arm], &end[arm]);
     PetscCall(running_sums(lattice, arm, begin[arm], end[arm] - begin[arm], sheet, &before[arm], &total[arm]));

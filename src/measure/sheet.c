@@ -27,7 +27,8 @@ PetscErrorCode ebb_sheet_allocate(struct ebb_source *source, PetscInt m, const s
   for (int i = 0; i <= EBB_SUMS; i++) sheet->sum[i] = block + (size_t)i * (size_t)m;
   PetscCall(PetscCalloc1(m, &sheet->mode));
   if (request->levels) PetscCall(PetscMalloc1((size_t)m * request->levels, &sheet->quantile));
-  if (request->levels || request->probability) PetscCall(PetscCalloc1((size_t)m * (size_t)local, &sheet->probability));
+  if (request->levels || request->probability || source->lattice->grading)
+    PetscCall(PetscCalloc1((size_t)m * (size_t)local, &sheet->probability));
   if (request->state) PetscCall(PetscCalloc1((size_t)m * (size_t)local, &sheet->psi));
   PetscFunctionReturn(0);
 }
@@ -101,6 +102,7 @@ PetscErrorCode ebb_sheet_finish(struct ebb_source *source, const struct ebb_shee
   for (PetscInt s = 0; s < m; s++) place[s] = sheet->sum[EBB_SUMS][s] == best[s] ? sheet->mode[s] : INFINITY;
   PetscCallMPI(MPI_Allreduce(place, sheet->mode, (PetscMPIInt)m, MPI_DOUBLE, MPI_MIN, source->comm));
   PetscCall(PetscFree2(best, place));
+  if (source->lattice->grading) PetscCall(ebb_sheet_modes_graded(source, sheet));
   if (request->levels) PetscCall(ebb_sheet_quantiles(source, request->levels, request->level, sheet));
   if (!request->probability) PetscCall(PetscFree(sheet->probability));
   PetscFunctionReturn(0);

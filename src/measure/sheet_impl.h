@@ -9,14 +9,15 @@
 enum { EBB_SHEET_FIELDS = 3, EBB_GRID_FIELDS = 4 };
 
 /* One site of a block: pointers to its fields' real and imaginary parts, m samples each. psi of the next two sites
- * outward (rows that exist always: beyond a wall they hold zeros). */
+ * outward (rows that exist always: beyond a wall they hold zeros); on a node next is the difference of psi/sqrt(B) to
+ * the next site. */
 struct ebb_site_rows {
   const double *psi[2], *root[2], *quarter[2];
   const double *next[2], *after[2];
   const double *slope[2]; /* grid only: d psi/dx */
 };
 
-/* Adds one lattice site to samples [s0, s0 + m) of the sheet. n: outward index on the arm. */
+/* Adds one row of a lattice, site or node, to samples [s0, s0 + m) of the sheet. n: outward index on the arm. */
 void ebb_kernel_lattice(const struct ebb_lattice *lattice, int arm, PetscInt n, const struct ebb_site_rows *rows,
                         PetscInt s0, PetscInt m, struct ebb_sheet *sheet);
 /* The link across v = 0 of a full lattice, or the weight kept below the first site of a half lattice. */
@@ -41,5 +42,9 @@ PetscErrorCode ebb_fold_end(struct ebb_fold *fold, struct ebb_sheet *sheet);
 /* Quantiles from the sheet's probabilities (needs sheet->probability). Collective. */
 PetscErrorCode ebb_sheet_quantiles(const struct ebb_source *source, size_t levels, const double level[],
                                    struct ebb_sheet *sheet);
+/* The same, and the modes, on a graded lattice. */
+PetscErrorCode ebb_sheet_quantiles_graded(const struct ebb_source *source, size_t levels, const double level[],
+                                          struct ebb_sheet *sheet);
+PetscErrorCode ebb_sheet_modes_graded(const struct ebb_source *source, struct ebb_sheet *sheet);
 
 #endif

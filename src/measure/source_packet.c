@@ -7,7 +7,7 @@
 #include <math.h>
 #include <string.h>
 
-enum { ROWS = EBB_FOLD, HALO = 2, COLUMN_TILE = 16 };
+enum { ROWS = EBB_FOLD, HALO = 2, COLUMN_TILE = 16, NODES = 3 * (EBB_FOLD / 3) };
 
 static const enum ebb_field fields[EBB_SHEET_FIELDS] = {EBB_FIELD_PSI, EBB_FIELD_ROOT, EBB_FIELD_INVERSE_QUARTER};
 
@@ -73,7 +73,7 @@ static void point_rows(const double *block, PetscInt row, PetscInt columns, Pets
 
 /* |psi|^2 and psi of a block into the sheet's [m][local] arrays, tile by tile so that both sides stay in cache. */
 static void keep_block(const struct ebb_lattice *lattice, int arm, PetscInt n, PetscInt count, const double *block,
-                       PetscInt columns, struct ebb_sheet *sheet)
+                       PetscInt stride, struct ebb_sheet *sheet)
 {
   const PetscInt m = sheet->m;
 
@@ -81,7 +81,7 @@ static void keep_block(const struct ebb_lattice *lattice, int arm, PetscInt n, P
     const PetscInt s1 = PetscMin(s0 + COLUMN_TILE, m);
     for (PetscInt r = 0; r < count; r++) {
       const size_t i = (size_t)(ebb_lattice_global(lattice, arm, n + r) - lattice->begin);
-      const double *re = block + r * columns, *im = re + m;
+      const double *re = block + r * stride, *im = re + m;
 
       for (PetscInt s = s0; s < s1; s++) {
         const size_t at = (size_t)s * (size_t)sheet->local + i;
@@ -90,6 +90,42 @@ static void keep_block(const struct ebb_lattice *lattice, int arm, PetscInt n, P
       }
     }
   }
+}
+
+/* Nodes of a graded lattice [begin, end) of an arm: the rows beside a node come with it. */
+static PetscErrorCode sum_nodes(struct ebb_source *source, int arm, PetscInt begin, PetscInt end,
+                                const struct ebb_phases *phases, struct ebb_sheet *sheet)
+{
+  const struct ebb_packet *packet = source->data;
+  const struct ebb_lattice *lattice = source->lattice;
+  const PetscInt columns = phases->columns, m = phases->m;
+  struct ebb_cursor *cursor;
+  struct ebb_fold fold;
+  double *e, *block;
+
+  PetscFunctionBegin;
+  if (begin >= end) PetscFunctionReturn(0);
+  PetscCall(PetscMalloc2((size_t)NODES * (size_t)packet->n, &e, (size_t)NODES * (size_t)columns, &block));
+  PetscCall(ebb_fold_begin(sheet, &fold));
+  PetscCall(ebb_cursor_open(packet->basis, arm, begin, &cursor));
+  for (PetscInt n = begin; n < end; n += NODES / 3) {
+    const PetscInt count = PetscMin(end - n, NODES / 3);
+
+    ebb_cursor_links(cursor, count, e);
+    ebb_phases_sum(phases, 3 * count, e, block);
+    for (PetscInt r = 0; r < count; r++) {
+      struct ebb_site_rows rows;
+
+      point_rows(block, 3 * r, columns, m, false, &rows);
+      ebb_kernel_lattice(lattice, arm, n + r, &rows, 0, m, sheet);
+    }
+    ebb_fold_add(&fold, 0, m, sheet);
+    if (sheet->probability || sheet->psi) keep_block(lattice, arm, n, count, block, 3 * columns, sheet);
+  }
+  ebb_cursor_close(&cursor);
+  PetscCall(ebb_fold_end(&fold, sheet));
+  PetscCall(PetscFree2(e, block));
+  PetscFunctionReturn(0);
 }
 
 static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct ebb_phases *phases, double v_limit,
@@ -106,12 +142,17 @@ static PetscErrorCode sum_arm(struct ebb_source *source, int arm, const struct e
 
   PetscFunctionBegin;
   ebb_lattice_local(lattice, arm, &begin, &end);
-  if (v_limit > 0.0 && !grid)
+  if (lattice->grading) {
+    const PetscInt plain = ebb_lattice_plain(lattice, arm);
+
+    PetscCall(sum_nodes(source, arm, PetscMax(begin, plain), end, phases, sheet));
+    end = PetscMin(end, plain);
+  } else if (v_limit > 0.0 && !grid)
     end = PetscMin(end, (PetscInt)fmax((v_limit - lattice->first[arm]) / lattice->rows.step, 0.0) + 1);
   if (begin >= end) PetscFunctionReturn(0);
   PetscCall(PetscMalloc2((size_t)ROWS * (size_t)packet->n, &e, (size_t)(ROWS + HALO) * (size_t)columns, &block));
   PetscCall(ebb_fold_begin(sheet, &fold));
-  PetscCall(ebb_cursor_open(packet->basis, arm, begin, &cursor));
+  PetscCall(ebb_cursor_open_sites(packet->basis, arm, begin, &cursor));
   if (halo) { /* the two rows that the previous block would have left */
     ebb_cursor_next(cursor, halo, e);
     ebb_phases_sum(phases, halo, e, block);

@@ -127,10 +127,8 @@ static int follow(struct ebb_orbit *orbit, bool at_turning, size_t n, const stru
 }
 
 static int follow_both(const struct ebb_symbol *symbol, double p, double clock0, bool at_turning, const double start[2],
-                       double tolerance, struct visits side[2])
+                       double tolerance, size_t n, const struct ebb_symbol_turning list[], struct visits side[2])
 {
-  struct ebb_symbol_turning list[EBB_SYMBOL_TURNINGS_MAX];
-  const size_t n = ebb_symbol_turnings(symbol, p, list);
   int status = GSL_SUCCESS;
 
   memset(side, 0, 2 * sizeof *side);
@@ -171,7 +169,9 @@ PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double 
   const struct ebb_symbol symbol = ebb_symbol_make(rows);
   struct ebb_turning_points rough = {.n = 0};
   struct visits side[2], rough_side[2];
+  struct ebb_symbol_turning list[EBB_SYMBOL_TURNINGS_MAX];
   const char *reason;
+  size_t n;
   double start[2], rate[2];
   bool at_turning;
   int status[2];
@@ -182,8 +182,9 @@ PetscErrorCode ebb_effective_turning_points(const struct ebb_rows *rows, double 
   ebb_symbol_flow(&symbol, p, start[0], start[1], rate);
   /* the b of a turning point is a rounding away from df/db = 0 */
   at_turning = fabs(ebb_symbol_at(&symbol, exp(start[0]), start[1]).f_b) < 1e-14;
-  status[0] = follow_both(&symbol, p, clock0, at_turning, start, EBB_ORBIT_FINE, side);
-  status[1] = follow_both(&symbol, p, clock0, at_turning, start, EBB_ORBIT_COARSE, rough_side);
+  n = ebb_symbol_turnings(&symbol, p, list);
+  status[0] = follow_both(&symbol, p, clock0, at_turning, start, EBB_ORBIT_FINE, n, list, side);
+  status[1] = follow_both(&symbol, p, clock0, at_turning, start, EBB_ORBIT_COARSE, n, list, rough_side);
   PetscCheck(status[0] == GSL_SUCCESS && status[1] == GSL_SUCCESS, PETSC_COMM_SELF, PETSC_ERR_CONV_FAILED,
              "effective turning points: %s", gsl_strerror(status[0] ? status[0] : status[1]));
   join(side, at_turning, clock0, t);

@@ -214,7 +214,7 @@ PetscErrorCode ebb_two_time_find(const struct ebb_packet *packet, const struct e
                                  const struct ebb_two_time_settings *s, const struct ebb_two_time_grids *grids,
                                  struct ebb_two_time *x, char problem[], size_t size)
 {
-  const double all = fabs(ebb_lattice_v(lattice, ebb_lattice_size(lattice) - 1));
+  const double all = ebb_lattice_top(lattice);
   struct ebb_evolution e;
   struct ebb_block first;
 

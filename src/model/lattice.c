@@ -43,6 +43,15 @@ PetscErrorCode ebb_lattice_make_model(const struct ebb_rows *rows, PetscInt site
   PetscFunctionReturn(0);
 }
 
+PetscErrorCode ebb_lattice_make_graded(const struct ebb_rows *rows, const struct ebb_grading *grading, MPI_Comm comm,
+                                       struct ebb_lattice *lattice)
+{
+  PetscFunctionBegin;
+  PetscCall(ebb_lattice_make_model(rows, grading->rows, comm, lattice));
+  lattice->grading = grading;
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_lattice_make(const struct ebb_prescription *prescription, double sector, PetscInt sites,
                                 MPI_Comm comm, struct ebb_lattice *lattice)
 {
@@ -71,19 +80,55 @@ PetscErrorCode ebb_lattice_make_grid(const struct ebb_prescription *prescription
 
 PetscInt ebb_lattice_size(const struct ebb_lattice *lattice) { return lattice->sites[0] + lattice->sites[1]; }
 
+PetscInt ebb_lattice_plain(const struct ebb_lattice *lattice, int arm)
+{
+  return lattice->grading ? PetscMin(lattice->grading->plain, lattice->sites[arm]) : lattice->sites[arm];
+}
+
+double ebb_lattice_place(const struct ebb_lattice *lattice, int arm, PetscInt n)
+{
+  const struct ebb_grading *g = lattice->grading;
+  const double site = g && n >= g->plain ? g->place[n - g->plain] : (double)n;
+
+  return lattice->first[arm] + lattice->rows.step * site;
+}
+
+double ebb_lattice_measure(const struct ebb_lattice *lattice, int arm, PetscInt n)
+{
+  const struct ebb_grading *g = lattice->grading;
+
+  (void)arm;
+  return g && n >= g->plain ? g->weight[n - g->plain] : 1.0;
+}
+
+double ebb_lattice_last(const struct ebb_lattice *lattice, int arm)
+{
+  const struct ebb_grading *g = lattice->grading;
+
+  return lattice->first[arm] + lattice->rows.step * (g ? g->sites - 1.0 : (double)(lattice->sites[arm] - 1));
+}
+
+double ebb_lattice_top(const struct ebb_lattice *lattice)
+{
+  return lattice->rows.prescription->grid ? ebb_lattice_v(lattice, lattice->sites[0] - 1)
+                                          : ebb_lattice_last(lattice, 0);
+}
+
 double ebb_lattice_v(const struct ebb_lattice *lattice, PetscInt global)
 {
   const PetscInt left = lattice->sites[1];
 
   if (lattice->rows.prescription->grid) return exp(lattice->lnv_min + (double)global * lattice->dx);
-  if (global < left) return -(lattice->first[1] + lattice->rows.step * (double)(left - 1 - global));
-  return lattice->first[0] + lattice->rows.step * (double)(global - left);
+  if (global < left) return -ebb_lattice_place(lattice, 1, left - 1 - global);
+  return ebb_lattice_place(lattice, 0, global - left);
 }
 
 double ebb_lattice_weight(const struct ebb_lattice *lattice, PetscInt global)
 {
-  (void)global;
-  return lattice->rows.prescription->grid ? lattice->dx : 1.0;
+  const PetscInt left = lattice->sites[1];
+
+  if (lattice->rows.prescription->grid) return lattice->dx;
+  return ebb_lattice_measure(lattice, global < left, global < left ? left - 1 - global : global - left);
 }
 
 void ebb_lattice_cell(const struct ebb_lattice *lattice, PetscInt global, double *low, double *high)

@@ -29,7 +29,7 @@ size_t ebb_band_count(const struct ebb_band *t, double z, double *trust)
       size[0] += p * (1.0 + a + b); /* row i, and what this column adds to rows i + 1 and i + 2 */
       size[1] += p * a * (1.0 + a + b);
       size[2] += p * b * (1.0 + a + b);
-      largest = fmax(largest, size[0]);
+      if (size[0] > largest) largest = size[0];
       size[0] = size[1];
       size[1] = size[2];
       size[2] = 0.0;
@@ -110,7 +110,8 @@ static void normalise(size_t n, long double x[])
 {
   long double largest = 0.0L, norm = 0.0L;
 
-  for (size_t i = 0; i < n; i++) largest = fmaxl(largest, fabsl(x[i]));
+  for (size_t i = 0; i < n; i++)
+    if (fabsl(x[i]) > largest) largest = fabsl(x[i]);
   for (size_t i = 0; i < n; i++) norm += (x[i] / largest) * (x[i] / largest);
   for (size_t i = 0; i < n; i++) x[i] /= largest * sqrtl(norm);
 }

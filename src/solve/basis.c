@@ -10,6 +10,8 @@ PetscErrorCode ebb_basis_allocate(const struct ebb_basis_kind *kind, const struc
   *basis = NULL;
   PetscCheck(n > 0, PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE,
              "a basis needs at least one function, got %" PetscInt_FMT, n);
+  PetscCheck(!lattice->grading || kind->cursor_links, PETSC_COMM_SELF, PETSC_ERR_SUP,
+             "these functions are known on the sites alone, not between them");
   PetscCall(PetscNew(&b));
   b->kind = kind;
   b->lattice = *lattice;
@@ -28,11 +30,32 @@ PetscErrorCode ebb_basis_destroy(struct ebb_basis **basis)
     *basis = NULL;
     PetscFunctionReturn(0);
   }
+  if ((*basis)->owner) {
+    PetscCall(ebb_basis_destroy(&(*basis)->owner));
+    PetscCall(PetscFree(*basis));
+    PetscFunctionReturn(0);
+  }
   if ((*basis)->data) (*basis)->kind->destroy(*basis);
   PetscCall(PetscFree((*basis)->error));
   PetscCall(PetscFree((*basis)->info));
   PetscCall(PetscFree((*basis)->k));
   PetscCall(PetscFree(*basis));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_basis_create_view(struct ebb_basis *basis, const struct ebb_lattice *lattice,
+                                     struct ebb_basis **view)
+{
+  PetscFunctionBegin;
+  *view = NULL;
+  PetscCheck(basis->kind->cursor_links &&
+                 (!lattice->grading || ebb_lattice_place(lattice, 0, lattice->grading->plain) > basis->match_volume),
+             PETSC_COMM_SELF, PETSC_ERR_SUP, "these functions are not known on that lattice");
+  PetscCall(PetscNew(view));
+  **view = *basis;
+  (*view)->lattice = *lattice;
+  (*view)->users = 1;
+  (*view)->owner = ebb_basis_share(basis);
   PetscFunctionReturn(0);
 }
 
@@ -66,7 +89,8 @@ const struct ebb_mode_info *ebb_basis_info(const struct ebb_basis *basis) { retu
 
 double ebb_basis_match_volume(const struct ebb_basis *basis) { return basis->match_volume; }
 
-PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor)
+static PetscErrorCode open_at(const struct ebb_basis *basis, int arm, PetscInt n, bool every,
+                              struct ebb_cursor **cursor)
 {
   struct ebb_cursor *c;
 
@@ -75,10 +99,26 @@ PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt 
   PetscCall(PetscNew(&c));
   c->basis = basis;
   c->arm = arm;
+  c->every = every;
   *cursor = c;
   PetscCall(basis->kind->cursor_open(basis, c));
   ebb_cursor_next(c, n, NULL);
   PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor)
+{
+  return open_at(basis, arm, n, false, cursor);
+}
+
+PetscErrorCode ebb_cursor_open_sites(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor)
+{
+  return open_at(basis, arm, n, true, cursor);
+}
+
+void ebb_cursor_links(struct ebb_cursor *cursor, PetscInt count, double *rows)
+{
+  cursor->basis->kind->cursor_links(cursor, count, rows);
 }
 
 void ebb_cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows)

@@ -99,7 +99,8 @@ static void destroy(struct ebb_basis *basis)
   (void)PetscFree(basis->data);
 }
 
-static const struct ebb_basis_kind modes_kind = {cursor_open, cursor_next, cursor_drift, destroy, NULL};
+static const struct ebb_basis_kind modes_kind = {
+    .cursor_open = cursor_open, .cursor_next = cursor_next, .cursor_drift = cursor_drift, .destroy = destroy};
 
 /* The combination a first + b second with arg of the de Sitter part delta modulo pi; by size, largest first. */
 static void combine(const struct ebb_five_split part[2], double delta, double ab[2])

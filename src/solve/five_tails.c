@@ -184,7 +184,8 @@ static void destroy(struct ebb_basis *basis)
   (void)PetscFree(basis->data);
 }
 
-static const struct ebb_basis_kind tails_kind = {cursor_open, cursor_next, cursor_drift, destroy, NULL};
+static const struct ebb_basis_kind tails_kind = {
+    .cursor_open = cursor_open, .cursor_next = cursor_next, .cursor_drift = cursor_drift, .destroy = destroy};
 
 /* Largest relative change of some modes where the match lies farther out: the table's own error, measured. */
 static PetscErrorCode measure_drift(struct ebb_basis *basis, struct ebb_five_bvp *bvp)

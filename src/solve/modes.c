@@ -7,7 +7,7 @@
  * the normalised first value, so a cursor needs no memory of the sites before it. */
 #include "basis_impl.h"
 #include "channels.h"
-#include "series.h"
+#include "far_waves.h"
 
 #include <float.h>
 #include <math.h>
@@ -37,8 +37,9 @@ struct modes {
   int *e0[2];
   struct ebb_series *series;
   double *zeta;
-  double *phase;        /* alpha */
-  double *amplitude[2]; /* per arm: signed C sqrt(8/pi) */
+  double *phase;                  /* alpha */
+  double *amplitude[2];           /* per arm: signed C sqrt(8/pi) */
+  double limit[EBB_SERIES_TERMS]; /* from where a term of the series no longer counts */
   PetscInt growing;
 };
 
@@ -178,9 +179,45 @@ static PetscErrorCode modes_cursor_open(const struct ebb_basis *basis, struct eb
   PetscFunctionReturn(0);
 }
 
+static struct ebb_far_waves far_waves(const struct ebb_cursor *cursor)
+{
+  const struct modes *m = cursor->basis->data;
+
+  return (struct ebb_far_waves){.n = cursor->basis->n,
+                                .prescription = cursor->basis->lattice.rows.prescription,
+                                .series = m->series,
+                                .phase = m->phase,
+                                .amplitude = m->amplitude[cursor->arm],
+                                .limit = m->limit};
+}
+
 static void modes_cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows)
 {
-  walk_next(cursor->data, count, rows, true);
+  const struct ebb_lattice *lattice = &cursor->basis->lattice;
+  const bool every = cursor->every || !lattice->grading;
+  const PetscInt n = cursor->basis->n, left = ebb_lattice_plain(lattice, cursor->arm) - cursor->site;
+  const PetscInt sites = every ? count : PetscMin(PetscMax(left, 0), count);
+  const struct ebb_far_waves waves = far_waves(cursor);
+
+  walk_next(cursor->data, sites, rows, true);
+  for (PetscInt i = sites; rows && i < count; i++)
+    ebb_far_values(&waves, ebb_lattice_place(lattice, cursor->arm, cursor->site + i), rows + i * n, NULL);
+  cursor->site += count;
+}
+
+static void modes_cursor_links(struct ebb_cursor *cursor, PetscInt count, double *rows)
+{
+  const struct ebb_lattice *lattice = &cursor->basis->lattice;
+  const PetscInt n = cursor->basis->n;
+  const struct ebb_far_waves waves = far_waves(cursor);
+
+  for (PetscInt i = 0; i < count; i++) {
+    const double v = ebb_lattice_place(lattice, cursor->arm, cursor->site + i);
+    double *row = rows + 3 * i * n;
+
+    ebb_far_values(&waves, v, row, row + n);
+    ebb_far_values(&waves, v + 2.0 * lattice->rows.step, row + 2 * n, NULL);
+  }
   cursor->site += count;
 }
 
@@ -222,8 +259,11 @@ static void modes_destroy(struct ebb_basis *basis)
   (void)PetscFree(basis->data);
 }
 
-static const struct ebb_basis_kind modes_kind = {modes_cursor_open, modes_cursor_next, modes_cursor_drift,
-                                                 modes_destroy, NULL};
+static const struct ebb_basis_kind modes_kind = {.cursor_open = modes_cursor_open,
+                                                 .cursor_next = modes_cursor_next,
+                                                 .cursor_links = modes_cursor_links,
+                                                 .cursor_drift = modes_cursor_drift,
+                                                 .destroy = modes_destroy};
 
 /* Half lattice: one solution, flux below the first site = (edge weight) x. */
 static PetscErrorCode normalise_half(struct ebb_basis *basis, PetscInt match)
@@ -342,6 +382,10 @@ static PetscErrorCode prepare(struct ebb_basis *basis, PetscInt *match)
   *match = (PetscInt)ceil((MATCH_MARGIN * reach - basis->lattice.first[0]) / 4.0);
   if (*match < m->growing) *match = m->growing;
   basis->match_volume = first + 4.0 * (double)*match;
+  ebb_far_limits(basis->n, m->series, TINY_TERM, m->limit);
+  PetscCheck(!basis->lattice.grading || ebb_lattice_place(&basis->lattice, 0, basis->lattice.grading->plain) > reach,
+             PETSC_COMM_SELF, PETSC_ERR_ARG_OUTOFRANGE, "the lattice is graded below v = %g, where the waves begin",
+             reach);
   PetscFunctionReturn(0);
 }
 

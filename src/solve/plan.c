@@ -6,6 +6,7 @@
  * at k = 0, Gauss-Legendre with more nodes than (phase range)/4. */
 #include "profile_input.h"
 
+#include <float.h>
 #include <gsl/gsl_integration.h>
 #include <math.h>
 #include <string.h>
@@ -19,6 +20,9 @@ static const double FAR = 30.0;          /* a lattice never reaches farther than
                                             (c(0) > 0, or a vector cut off in a file) is left to the error budget */
 static const double FEWEST_V = 256.0;    /* never a smaller lattice than this */
 static const double MOST_V = 4e7;        /* nor, unasked, one larger: 1e7 sites */
+static const double MOST_GRADED = 1e60;  /* nor, graded, one larger: v^4 is still a double */
+static const double WIDER = 0.5; /* v^2 moves the bulk of a wide packet outwards: its reach grows by this part */
+static const double FLOOR = 8.0; /* roundings of the phase and amplitude of a wave, in units of its own */
 
 struct reach {
   double k_low, k_high; /* interval in k */
@@ -45,6 +49,20 @@ static struct reach reach_of(const struct ebb_components *components, double fro
     if (!components->profile[i]->spectral(in)) r.vector = true;
   }
   return r;
+}
+
+/* The interval such that its nodes are doubles: a rounding of k would turn v^{ik} at ln v = 50 by more than that of the
+ * phase. */
+static void exact_nodes(double *low, double *high, PetscInt n)
+{
+  int exponent;
+  double unit, step;
+
+  (void)frexp(*high, &exponent);
+  unit = ldexp(1.0, exponent - 44); /* 2^9 roundings of the largest k */
+  step = unit * ceil((*high - *low) / (double)n / unit / 2.0) * 2.0;
+  *low = unit * floor(*low / unit);
+  *high = *low + (double)n * step;
 }
 
 static PetscErrorCode midpoints(double low, double high, PetscInt n, double shift, double **k, double **w)
@@ -101,7 +119,7 @@ static PetscErrorCode gauss(double low, double high, PetscInt n, double **k, dou
   PetscFunctionReturn(0);
 }
 
-static PetscErrorCode choose_nodes(struct ebb_plan *plan, double period)
+static PetscErrorCode choose_nodes(struct ebb_plan *plan, double period, bool exact)
 {
   const double width = plan->k_high - plan->k_low;
 
@@ -110,6 +128,7 @@ static PetscErrorCode choose_nodes(struct ebb_plan *plan, double period)
   plan->period = period;
   if (plan->uniform) {
     plan->n = plan->check_n = PetscMax((PetscInt)ceil(width * period / (2.0 * EBB_PI)), COARSE_MIN);
+    if (exact) exact_nodes(&plan->k_low, &plan->k_high, plan->n);
     PetscCall(midpoints(plan->k_low, plan->k_high, plan->n, 0.5, &plan->k, &plan->weight));
     PetscCall(midpoints(plan->k_low, plan->k_high, plan->n, 1.0, &plan->check_k, &plan->check_weight));
   } else {
@@ -131,7 +150,7 @@ static PetscErrorCode trim(const struct ebb_state_request *request, const struct
 
   PetscFunctionBegin;
   plan->uniform = true;
-  PetscCall(choose_nodes(plan, 2.0 * reach->lnv + IMAGE_MARGIN));
+  PetscCall(choose_nodes(plan, 2.0 * reach->lnv + IMAGE_MARGIN, false));
   PetscCall(ebb_packet_create_modes(request, lattice, plan, false, &packet));
   for (PetscInt j = 0; j < packet->n; j++) peak = fmax(peak, packet->share[j]);
   first = plan->n;
@@ -164,6 +183,40 @@ static double density_far(const struct ebb_packet *packet, const double complex 
   return 8.0 / EBB_PI * creal(sum * conj(sum));
 }
 
+/* What is left of |psi|^2 where the packet itself has ended: the roundings of its waves, and where the interval is cut
+ * at k = 0 the tail of that cut, int_0 c(0) sin(k x) dk = c(0)/x, in which no power of v has a mean. */
+static double density_floor(const struct ebb_packet *packet, const struct ebb_plan *plan, double clock, double x)
+{
+  const double *k = ebb_basis_k(packet->basis);
+  const double turns = plan->uniform ? LDBL_EPSILON / DBL_EPSILON : 1.0; /* nodes of Gauss's rule are rounded */
+  const double cut = plan->uniform ? 0.0 : cabs(packet->amplitude[0]) / plan->weight[0] / fmax(x, 1.0);
+  double sum = 0.0;
+
+  for (PetscInt j = 0; j < packet->n; j++) {
+    const double complex a = packet->amplitude[j];
+    const double roundings = FLOOR * (1.0 + packet->omega[j] * fabs(clock) + turns * k[j] * x);
+
+    sum += roundings * roundings * creal(a * conj(a));
+  }
+  return 8.0 / EBB_PI * (DBL_EPSILON * DBL_EPSILON * sum + cut * cut);
+}
+
+/* First cell of the grid, beyond the packet's peak, whose density p is at the floor; grid where there is none. */
+static PetscInt floored_end(const struct ebb_packet *packet, const struct ebb_plan *plan, double clock, PetscInt grid,
+                            const double p[], double x_low, double x_high)
+{
+  PetscInt peak = 0;
+
+  for (PetscInt i = 1; i < grid; i++)
+    if (p[i] > p[peak]) peak = i;
+  for (PetscInt i = peak; i < grid; i++) {
+    const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
+
+    if (p[i] < density_floor(packet, plan, clock, x)) return i;
+  }
+  return grid;
+}
+
 /* x beyond which BULK_END of the probability lies; plain[i]: probability above cell i, not normalised. */
 static double bulk_end(PetscInt grid, const double plain[], double x_low, double x_high)
 {
@@ -175,45 +228,54 @@ static double bulk_end(PetscInt grid, const double plain[], double x_low, double
 
 /* v_max and tail: beyond v_max the v^2-weighted probability is below the share of the tolerance at both ends. */
 static PetscErrorCode find_edge(const struct ebb_packet *packet, const struct ebb_lattice *lattice, double from,
-                                double to, double tolerance, double x_high, struct ebb_plan *plan)
+                                double to, double tolerance, double x_high, bool wide, struct ebb_plan *plan)
 {
   const double *k = ebb_basis_k(packet->basis);
   const double x_low = log(fmax(k[0], 1.0));
   const PetscInt grid = PetscMax((PetscInt)((x_high - x_low) * GRID_PER_UNIT), 2);
   const double clock[LOOK] = {from, to}, limit = TAIL_SHARE * tolerance;
   double complex *turned;
-  double *tail, *plain, edge = log(FEWEST_V);
+  double *tail, *plain, *density, edge = log(FEWEST_V);
 
   PetscFunctionBegin;
-  PetscCall(PetscMalloc3(packet->n, &turned, grid + 1, &tail, grid + 1, &plain));
+  PetscCall(PetscMalloc4(packet->n, &turned, grid + 1, &tail, grid + 1, &plain, grid, &density));
   plan->tail = 0.0;
+  plan->floored = false;
   for (int c = 0; c < LOOK; c++) {
-    for (PetscInt j = 0; j < packet->n; j++) turned[j] = packet->amplitude[j] * cexp(I * packet->omega[j] * clock[c]);
-    tail[grid] = plain[grid] = 0.0;
-    for (PetscInt i = grid - 1; i >= 0; i--) { /* v^2-weighted, integrated from above; dv/4 = v dx/4 */
-      const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
-      double p = density_far(packet, turned, x, false);
+    PetscInt end = grid;
 
-      if (!lattice->rows.half) p += density_far(packet, turned, x, true);
-      tail[i] = tail[i + 1] + exp(2.0 * x) * p;
-      plain[i] = plain[i + 1] + p;
+    for (PetscInt j = 0; j < packet->n; j++) turned[j] = packet->amplitude[j] * cexp(I * packet->omega[j] * clock[c]);
+    for (PetscInt i = 0; i < grid; i++) {
+      const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
+
+      density[i] = density_far(packet, turned, x, false);
+      if (!lattice->rows.half) density[i] += density_far(packet, turned, x, true);
     }
-    const double bulk = bulk_end(grid, plain, x_low, x_high);
+    if (wide) end = floored_end(packet, plan, clock[c], grid, density, x_low, x_high);
+    for (PetscInt i = grid; i >= end; i--) tail[i] = plain[i] = 0.0;
+    for (PetscInt i = end - 1; i >= 0; i--) { /* v^2-weighted, integrated from above; dv/4 = v dx/4 */
+      const double x = x_low + (x_high - x_low) * ((double)i + 0.5) / (double)grid;
+
+      tail[i] = tail[i + 1] + exp(2.0 * x) * density[i];
+      plain[i] = plain[i + 1] + density[i];
+    }
+    const double bulk = wide ? INFINITY : bulk_end(grid, plain, x_low, x_high);
 
     /* from above: to where the v^2-weighted tail matters, but not farther than FAR beyond where the bulk ends */
-    for (PetscInt i = grid; i >= 0; i--) {
+    for (PetscInt i = end; i >= 0; i--) {
       const double x = x_low + (x_high - x_low) * (double)(i + 1) / (double)grid;
 
       if (tail[i] < limit * tail[0] || x > bulk + log(FAR)) continue;
+      if (x > edge) plan->floored = end < grid && i + GRID_PER_UNIT > end;
       edge = fmax(edge, x);
-      plan->tail = fmax(plan->tail, i < grid ? tail[i + 1] / tail[0] : 0.0);
+      plan->tail = fmax(plan->tail, i < end ? tail[i + 1] / tail[0] : 0.0);
       break;
     }
   }
   /* the waves far out follow one exponential of the classical v = x + k^2/x, x = k exp(kappa phi): near the bounce the
    * other one counts as well */
   plan->v_max = exp(edge) + k[packet->n - 1] * k[packet->n - 1] * exp(-edge);
-  PetscCall(PetscFree3(turned, tail, plain));
+  PetscCall(PetscFree4(turned, tail, plain, density));
   PetscFunctionReturn(0);
 }
 
@@ -233,6 +295,7 @@ PetscErrorCode ebb_plan_make(const struct ebb_state_request *request, const stru
   plan->k_high = reach.k_high;
   if (reach.vector) PetscCall(trim(request, lattice, &reach, plan));
   plan->uniform = plan->k_low > 0.0;
+  if (request->wide) reach.lnv_clock += WIDER * reach.lnv;
   period = 2.0 * reach.lnv_clock + IMAGE_MARGIN;
   {
     /* a lattice asked for may end beyond the packet's reach: no image may stand on it either */
@@ -241,10 +304,12 @@ PetscErrorCode ebb_plan_make(const struct ebb_state_request *request, const stru
 
     period = fmax(period, log(v_end / fmax(plan->k_low, 1.0)) + reach.lnv_clock + IMAGE_MARGIN);
   }
-  PetscCall(choose_nodes(plan, period));
+  PetscCall(choose_nodes(plan, period, request->wide));
   PetscCall(ebb_packet_create_modes(request, lattice, plan, false, &packet));
-  x_high = fmin(log(plan->k_high) + reach.lnv_clock + 1.0, log(MOST_V));
-  PetscCall(find_edge(packet, lattice, from, to, request->settings->numerics.tolerance, x_high, plan));
+  x_high = fmin(log(plan->k_high) + reach.lnv_clock + 1.0, log(request->wide ? MOST_GRADED : MOST_V));
+  PetscCall(find_edge(packet, lattice, from, to, request->settings->numerics.tolerance, x_high, request->wide, plan));
+  plan->match_v = ebb_basis_match_volume(packet->basis);
+  plan->edge_k = packet->momentum_mean / ebb_state_kappa(request);
   PetscCall(ebb_packet_destroy(&packet));
   PetscFunctionReturn(0);
 }

@@ -65,7 +65,7 @@ static PetscErrorCode project_arm(const struct ebb_profile *profile, const struc
   begin = first + (PetscInt)((PetscInt64)(last - first) * rank / size);
   end = first + (PetscInt)((PetscInt64)(last - first) * (rank + 1) / size);
   PetscCall(PetscMalloc1((size_t)ROWS * (size_t)n, &rows));
-  PetscCall(ebb_cursor_open(basis, arm, begin, &cursor));
+  PetscCall(ebb_cursor_open_sites(basis, arm, begin, &cursor));
   for (PetscInt i = begin; i < end; i += ROWS) {
     const PetscInt count = end - i < ROWS ? end - i : ROWS;
 

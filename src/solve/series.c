@@ -21,15 +21,15 @@ void ebb_series_make(double k, double tilt, const double b[], const double c[], 
   enum { N = EBB_SERIES_TERMS };
   const double complex s = 0.5 * tilt + I * k;
   const double zeta = 4.0 * k * k + tilt * tilt;
-  double complex up[N][N + 2], down[N][N + 2]; /* binom(s-j, m) 4^m, binom(s-t-j, m) (-4)^m */
+  double complex up[N][N + 1], down[N][N + 1]; /* binom(s-j, m) 4^m, binom(s-t-j, m) (-4)^m */
   double complex difference[N + 1];            /* of x(v+4) - x(v), coefficient of v^{s-n} */
 
   series->k = k;
   series->tilt = tilt;
   difference[0] = 0.0;
-  for (int j = 0; j < N; j++) {
-    powers(s - (double)j, 4.0, N + 2, up[j]);
-    powers(s - tilt - (double)j, -4.0, N + 2, down[j]);
+  for (int j = 0; j < N; j++) { /* as far as they are used below */
+    powers(s - (double)j, 4.0, N + 1 - j, up[j]);
+    powers(s - tilt - (double)j, -4.0, N + 1 - j, down[j]);
   }
   for (int n = 0; n < N; n++) {
     double complex known = 0.0, rest = 0.0;
@@ -58,10 +58,15 @@ double ebb_series_reach(const struct ebb_series *series, double tiny)
 
 void ebb_series_values(const struct ebb_series *series, double v, double complex *x, double complex *y)
 {
+  ebb_series_partial(series, EBB_SERIES_TERMS, v, x, y);
+}
+
+void ebb_series_partial(const struct ebb_series *series, int terms, double v, double complex *x, double complex *y)
+{
   const double u = 1.0 / v, root = series->tilt != 0.0 ? pow(v, 0.5 * series->tilt) : 1.0;
 
   *x = *y = 0.0;
-  for (int j = EBB_SERIES_TERMS - 1; j >= 0; j--) {
+  for (int j = terms - 1; j >= 0; j--) {
     *x = *x * u + series->x[j];
     *y = *y * u + series->y[j];
   }

@@ -23,5 +23,7 @@ void ebb_series_make(double k, double tilt, const double b[], const double c[], 
 double ebb_series_reach(const struct ebb_series *series, double tiny);
 /* Values at v, without the common factor v^{ik}. */
 void ebb_series_values(const struct ebb_series *series, double v, double complex *x, double complex *y);
+/* The same by the first terms alone. */
+void ebb_series_partial(const struct ebb_series *series, int terms, double v, double complex *x, double complex *y);
 
 #endif

@@ -35,7 +35,8 @@ static void keep(struct ebb_basis *basis, PetscInt first)
   memmove(vectors, vectors + (size_t)first * sites, (size_t)basis->n * sites * sizeof *vectors);
 }
 
-static const struct ebb_basis_kind table_kind = {cursor_open, cursor_next, NULL, destroy, keep};
+static const struct ebb_basis_kind table_kind = {
+    .cursor_open = cursor_open, .cursor_next = cursor_next, .destroy = destroy, .keep = keep};
 
 PetscErrorCode ebb_basis_create_table(const struct ebb_lattice *lattice, PetscInt n, double *vectors,
                                       struct ebb_basis **basis)

@@ -30,7 +30,8 @@ static void cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows)
 
 static void destroy(struct ebb_basis *basis) { (void)basis; }
 
-static const struct ebb_basis_kind waves_kind = {cursor_open, cursor_next, NULL, destroy, NULL};
+static const struct ebb_basis_kind waves_kind = {
+    .cursor_open = cursor_open, .cursor_next = cursor_next, .destroy = destroy};
 
 PetscErrorCode ebb_basis_create_waves(const struct ebb_lattice *lattice, PetscInt j0, PetscInt n,
                                       struct ebb_basis **basis)

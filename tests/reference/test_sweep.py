@@ -1,7 +1,7 @@
 #!/usr/bin/env python3
 # SPDX-License-Identifier: BSD-2-Clause
-"""Sweeps: the table against closed forms, against single runs, killed and resumed, extended, with a case that fails, and on
-two ranks. Program: $EBBTURN. Tolerances: the errors that the table states (a stated error that is too small is a bug), and
+"""Sweeps: the table against closed forms, against single runs, killed and resumed, extended, with a case that fails, with
+clocks that are read, and on two ranks. Program: $EBBTURN. Tolerances: the errors that the table states (a stated error that is too small is a bug), and
 rounding, 1e-13, for the slope of a massless flat model, which is 1 identically: V = 2 pi gamma lambda G v, and the state in
 v does not know lambda."""
 import csv
@@ -134,11 +134,107 @@ def failures(top):
           f"a plan's problems are told together: {done.stderr}")
 
 
+CLOCKS = """window: {from: -0.2, to: 0.2, tolerance: 1.0e-2}
+readings:
+  - {name: b_fine, clock: {observable: b, instrument: cosine_power, power: 20, centres: 24}}
+  - {name: never, clock: {observable: b, instrument: sharp, bins: 2}}
+histories: {v_star: [30, 60.5], at: [-0.15, 0.2]}
+propagator: {at: [-0.1, 0.1], first: [40, 80], clock: {spread: 0.02, half_width: 0.01}}
+"""
+READ = """base: flat.yaml
+readings: clocks.yaml
+vary:
+  state.momentum: {momenta}
+  gravity.prescription: [slqc, aps]
+{more}output: {{file: scales.h5}}
+"""
+
+
+def prepare_readings(folder, momenta, more="", clocks=CLOCKS):
+    for file, text in (("clocks.yaml", clocks), ("read.yaml", READ.format(momenta=momenta, more=more))):
+        with open(os.path.join(folder, file), "w", encoding="utf-8") as f:
+            f.write(text)
+
+
+def by_hand(folder, t):
+    """The last case by `evolve` and `relate`: the same numbers, to the last bit."""
+    row = len(t["status"]) - 1
+    settings = [f"--set={s}" for s in t["case"][row].decode().split("; ")]
+    subprocess.run([PROGRAM, "evolve", "flat.yaml", *settings, "-o", "one.h5"], cwd=folder, check=True, capture_output=True)
+    subprocess.run([PROGRAM, "relate", "one.h5", "clocks.yaml", "-o", "clocks.h5"], cwd=folder, check=False, capture_output=True)
+    with h5py.File(os.path.join(folder, "clocks.h5")) as f:
+        c, read = f["comparison"], f["relational/b_fine"]
+        at = list(c["reading"]).index(b"b_fine")
+        here = int(np.flatnonzero(read["centre"][()] == c["at"][at])[0])
+        for column, value in (("bounce", c["median"][at]), ("bounce_error", c["median_error"][at]), ("bounce_at", c["at"][at]),
+                              ("bounce_low", c["low"][at]), ("bounce_high", c["high"][at]), ("bounce_effective", c["effective"][at]),
+                              ("bounce_dwell", c["dwell"][at]), ("window_error", read["window_error"][here]),
+                              ("verdict", c["verdict"][at]), ("refused", sum(s != b"ok" for s in read["status"])),
+                              ("back_action", read.attrs["back_action"]), ("order_violation", read.attrs["order_violation"])):
+            check(t["relational_b_fine_" + column][row] == value, f"{column} of a clock is that of evolve and relate: {value}")
+        for i, v in enumerate(("30", "60.5")):
+            same = [t[f"histories_{v}_{name}"][row] == f["histories/" + path][i] for name, path in
+                    (("p_ll", "p_ll"), ("p_ll_error", "error"), ("consistency", "consistency"), ("bound_low", "bound_low"), ("bound_high", "bound_high"))]
+            check(all(same), f"histories at v_star {v} are those of relate")
+        x = f["propagator"].attrs
+        check(t["propagator_distance_conditional"][row] == x["distance_conditional"] and t["propagator_verdict"][row] == x["verdict"], "and the propagator")
+        check(t["relational_never_status"][row] == b"refused" and np.isnan(t["relational_never_bounce"][row]) and
+              t["relational_never_reason"][row] == f["relational/never/status"][0], "a clock that reads nothing is recorded with the reason")
+
+
+def readings(top):
+    folder = prepare(top, "readings")
+    prepare_readings(folder, "[80, 100]")
+    done = sweep(folder, "read.yaml", "--dry-run")
+    check("2 clocks, histories, the propagator" in done.stdout, "a dry run tells the readings")
+    process = subprocess.Popen([PROGRAM, "sweep", "read.yaml"], cwd=folder, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
+    journal, limit = os.path.join(folder, "scales.h5.journal-0"), time.monotonic() + 60
+    while process.poll() is None and time.monotonic() < limit:  # until the second case is in the journal
+        if os.path.exists(journal) and os.path.getsize(journal) > 9000:
+            process.kill()
+        time.sleep(0.002)
+    check(process.wait(timeout=60) == -signal.SIGKILL, "a sweep with readings was killed")
+    prepare_readings(folder, "[80, 100]", clocks=CLOCKS.replace("power: 20", "power: 22"))
+    done = sweep(folder, "read.yaml", "--resume", "scales.h5", expect=2)
+    check("other readings" in done.stderr, "other readings do not go on with it")
+    prepare_readings(folder, "[80, 100]")
+    sweep(folder, "read.yaml", "--resume", "scales.h5")
+    t, before = table(folder)
+    check(len(t["status"]) == 4 and before["case_attempts"].sum() <= 5 and np.all(t["relational_b_fine_status"] == b"ok"), "resumed, all cases read")
+    by_hand(folder, t)
+    prepare_readings(folder, "[80, 90, 100]")
+    sweep(folder, "read.yaml", "--resume", "scales.h5", "--csv", "table.csv", ranks=2)
+    more, after = table(folder)
+    old = more["state.momentum"] != 90
+    same = all(np.array_equal(more[k][old], t[k], equal_nan=t[k].dtype.kind == "f") for k in t if not k.startswith("slope"))
+    check(same and np.array_equal(after["case_finished"][old], before["case_finished"]), "extended on two ranks: old cases and their readings stay")
+    with open(os.path.join(folder, "table.csv"), newline="", encoding="utf-8") as f:
+        rows = list(csv.DictReader(f))
+    check([float(r["relational_b_fine_bounce"]) for r in rows] == list(more["relational_b_fine_bounce"]), "the csv holds the readings")
+
+
+def bad_readings(top):
+    folder = prepare(top, "bad_readings")
+    for old, new, words in (("power: 20", "power: 30", "above power = 30"), ("{observable: b, instrument: sharp", "{observable: phi2, instrument: cosine, from: -1, to: 1", "readings[1] ('never')"),
+                            ("to: 0.2", "to: 0.9", "window from -0.2 to 0.9")):
+        prepare_readings(folder, "[80]", clocks=CLOCKS.replace(old, new, 1))
+        done = sweep(folder, "read.yaml", expect=2)
+        check(words in done.stderr and not os.path.exists(os.path.join(folder, "scales.h5.journal-0")), f"bad readings, nothing computed: {done.stderr}")
+    prepare_readings(folder, "[80]", more="  clock.to: [0.2, 0.15]\n", clocks=CLOCKS.split("histories")[0])
+    done = sweep(folder, "read.yaml", expect=1)
+    t, _ = table(folder)
+    short = t["clock.to"] == 0.15
+    check(np.all(t["relational_b_fine_status"][short] == b"failed") and np.all(t["status"] == b"done") and
+          all(b"window from" in r for r in t["relational_b_fine_reason"][short]) and "4 failed" in done.stdout, "a reading that one case cannot give")
+
+
 def main():
     with tempfile.TemporaryDirectory() as top:
         _, t = numbers(top)
         interrupted(top, t)
         failures(top)
+        readings(top)
+        bad_readings(top)
         folder = prepare(top, "two")
         sweep(folder, "plan.yaml", "--dry-run", ranks=2)
         sweep(folder, "plan.yaml", ranks=2)

@@ -24,6 +24,9 @@ static const struct {
     {"OMPI_MCA_mpi_yield_when_idle", "1"},
     {"OMPI_MCA_hwloc_base_binding_policy", "none"},
     {"OMPI_MCA_btl_vader_single_copy_mechanism", "none"},
+    {"OMPI_MCA_ess_singleton_isolated", "1"}, /* no daemon, no search for a network: a start takes a third */
+    {"OMPI_MCA_pml", "ob1"},
+    {"OMPI_MCA_btl", "self,vader"},
 };
 
 /* malloc'ed printf; tests have no answer to an empty memory but to stop */

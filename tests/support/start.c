@@ -1,6 +1,5 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "support/start.h"
-#include "support/petsc.h"
 
 #include <signal.h>
 #include <stdio.h>
@@ -14,20 +13,11 @@ enum { ARGUMENTS_MAX = 64 };
 
 extern char **environ;
 
-void ebb_test_slepc_begin(void) { ebb_test_call(ebb_test_petsc_begin("test")); }
-
-void ebb_test_slepc_end(void)
-{
-  char *left = NULL;
-  ebb_test_call(ebb_test_petsc_end(&left));
-  cr_expect_null(left, "never freed:\n%s", left);
-  free(left);
-}
-
 /* An MPI program must not take itself for a rank of a job around the test, nor a Criterion worker of this process. */
 static void forget_surroundings(void)
 {
-  static const char *const prefixes[] = {"PMIX_", "PMI_", "OMPI_COMM_", "OMPI_MCA_ess", "OMPI_MCA_orte", "BXFI_"};
+  static const char *const prefixes[] = {
+      "PMIX_", "PMI_", "OMPI_COMM_", "OMPI_MCA_ess=", "OMPI_MCA_pmix", "OMPI_MCA_orte", "ORTE_", "BXFI_"};
   for (char **entry = environ; *entry;) {
     bool foreign = false;
     for (size_t i = 0; i < sizeof prefixes / sizeof *prefixes; i++)

@@ -425,7 +425,7 @@ Test(input, json_text_is_what_scripts_rely_on)
       "\"clock\": {\"kind\": \"scalar\", \"from\": -1, \"to\": 1, \"samples\": 201}, \"matter\": [], "
       "\"state\": {\"profile\": \"gaussian_momentum\", \"momentum\": 500, \"relative_spread\": "
       "0.050000000000000003, \"bounce_at\": 0, \"squeeze\": 0, \"channel\": \"right\"}, "
-      "\"lattice\": {\"volume_max\": \"auto\"}, \"numerics\": {\"propagator\": \"auto\", \"tolerance\": 1e-10, "
+      "\"lattice\": {\"volume_max\": \"auto\", \"layout\": \"auto\"}, \"numerics\": {\"propagator\": \"auto\", \"tolerance\": 1e-10, "
       "\"eigensolver\": \"auto\"}, "
       "\"output\": {\"keep\": [\"moments\", \"quantiles\", \"probability\", \"state\"], \"every\": 1, "
       "\"quantiles\": [0.050000000000000003, 0.5, 0.94999999999999996]}}");

@@ -39,6 +39,21 @@ static void print_constants(const struct ebb_constants *c)
   printf("  largest Hubble   %.15g /length  1/(2 gamma lambda)\n", c->hubble_max);
 }
 
+/* Which rows the lattice has and why. */
+static void print_layout(const struct ebb_run *run)
+{
+  const struct ebb_lattice *l = &run->lattice;
+  const struct ebb_grading *g = l->grading;
+
+  if (!run->why_layout[0]) return;
+  printf("  layout           %s: %s\n", g ? "graded" : "full", run->why_layout);
+  if (!g) return;
+  printf("  plain            %" PetscInt_FMT " sites an arm, up to |v| = %.6g\n", g->plain,
+         ebb_lattice_place(l, 0, g->plain - 1));
+  printf("  nodes            %" PetscInt_FMT " an arm in %" PetscInt_FMT " blocks stand for the other %.6g sites\n",
+         g->rows - g->plain, g->blocks, g->sites - (double)g->plain);
+}
+
 static void print_lattice(const struct ebb_run *run)
 {
   const struct ebb_lattice *l = &run->lattice;
@@ -49,15 +64,19 @@ static void print_lattice(const struct ebb_run *run)
     printf("  grid             %" PetscInt_FMT " points in ln v from %g, step %g, periodic\n", n, l->lnv_min, l->dx);
     return;
   }
-  printf("  sites            %" PetscInt_FMT ", v = %g + 4n%s, up to |v| = %.6g\n", n, l->rows.sector,
-         l->rows.half ? ", n >= 0" : ", both orientations", fabs(ebb_lattice_v(l, n - 1)));
+  printf("  %s             %" PetscInt_FMT ", v = %g + 4n%s, up to |v| = %.6g\n", l->grading ? "rows " : "sites", n,
+         l->rows.sector, l->rows.half ? ", n >= 0" : ", both orientations", ebb_lattice_top(l));
   if (run->settings->lattice.points > 0)
     printf("  because          lattice.points puts a wall there\n");
   else if (run->settings->lattice.volume_max > 0.0)
     printf("  because          lattice.volume_max says so\n");
+  else if (run->plan.floored)
+    printf("  because          there |psi|^2 reaches %s at an end of the clock range\n",
+           run->plan.uniform ? "the rounding of its waves" : "the tail that modes at k = 0 leave");
   else
     printf("  because          beyond it lies %.1e of the v^2-weighted probability at the ends of the clock range\n",
            run->plan.tail);
+  print_layout(run);
   if (run->plan.n > 0) {
     printf("  modes            %" PetscInt_FMT " nodes in k from %.4g to %.4g, %s\n", run->plan.n, run->plan.k_low,
            run->plan.k_high, run->plan.uniform ? "midpoint rule" : "Gauss-Legendre (the packet reaches k = 0)");

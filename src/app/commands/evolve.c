@@ -64,7 +64,7 @@ static int limits(const struct ebb_evolution *w)
   /* a packet that reaches k = 0 has slow tails on every lattice; the warning has said so, the errors include it */
   if (fabs(r->moment[EBB_MOMENT_NORM][worst] - 1.0) <= NORM_LIMIT || !ebb_run_mean_exists(&w->run)) return EBB_EXIT_OK;
   if (w->keeper.speaks) {
-    const double v_max = fabs(ebb_lattice_v(&w->run.lattice, ebb_lattice_size(&w->run.lattice) - 1));
+    const double v_max = ebb_lattice_top(&w->run.lattice);
 
     fprintf(stderr,
             "ebbturn: error: the norm at clock %g is off by %.2g, limit %.0e\n"

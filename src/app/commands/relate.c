@@ -34,9 +34,6 @@ const struct ebb_command ebb_command_relate = {
     .run = run,
 };
 
-static const double IDENTITY_LIMIT =
-    1e-11; /* of the window: identities hold to rounding in sums of the lattice's length */
-
 /* -o as given, else RESULT's name with _relate before its ending. */
 static void out_path(const struct ebb_invocation *invocation, char path[], size_t size)
 {
@@ -70,11 +67,11 @@ static int judge(const struct ebb_relation *r, const struct ebb_relational *rela
               "ebbturn: warning: window: reading '%s' gives no probability at %d of %d outcomes, first at %.6g: %s\n",
               r->readings.reading[i].name, (int)refused, (int)x->n, x->centre[first], x->status[first]);
     if (refused && code == EBB_EXIT_OK) code = EBB_EXIT_VERDICT;
-    if (!(worst <= IDENTITY_LIMIT)) {
+    if (!(worst <= ebb_relation_identity_limit)) {
       code = EBB_EXIT_LIMIT;
       if (speaks)
         fprintf(stderr, "ebbturn: error: reading '%s': an identity is off by %.2g of the window, limit %.0e\n",
-                r->readings.reading[i].name, worst, IDENTITY_LIMIT);
+                r->readings.reading[i].name, worst, ebb_relation_identity_limit);
     }
     if (x->binned && speaks)
       fprintf(stderr,
@@ -174,6 +171,7 @@ static PetscErrorCode compute(const struct ebb_invocation *invocation, struct eb
   struct ebb_invocation first = *invocation;
   struct ebb_store *store = NULL;
   const bool fresh = !*checkpoint;
+  char problem[320] = "";
   PetscErrorCode error;
 
   PetscFunctionBegin;
@@ -184,7 +182,8 @@ static PetscErrorCode compute(const struct ebb_invocation *invocation, struct eb
   if (!error && !*code) error = ebb_store_create(PETSC_COMM_WORLD, r->keeper.path, r->keeper.origin.force, &store);
   if (!error && !*code && fresh && r->keeper.speaks) ebb_checkpoint_remove(r->keeper.path); /* --force was given */
   if (!error && !*code) error = relate_readings(r, invocation, checkpoint, &relational, code);
-  if (!error && !*code) error = ebb_relation_two_times(r, &two_times, code);
+  if (!error && !*code) error = ebb_relation_two_times(r, &two_times, problem, sizeof problem);
+  if (problem[0]) *code = ebb_relation_refuse(r, problem);
   if (!error && !*code) error = put(&first, &store, r, relational, &two_times, code);
   ebb_watch_release();
   if (error) *code = ebb_exit_from_error(error);

@@ -19,12 +19,14 @@ const struct ebb_command ebb_command_sweep = {
     .summary = "evolve many models made from one, in parallel and resumable, into one table",
     .help =
         "PLAN names a base model (base), the settings that vary with their values (vary: lists, or {from, to, count,\n"
-        "spacing: linear | log}), how they combine (arrange: grid | paired), ranks_per_case and output (file,\n"
-        "keep_cases). Cases go to whichever group of ranks is free. A case that fails is recorded with its reason, "
+        "spacing: linear | log}), how they combine (arrange: grid | paired), readings (a file as for 'relate': what\n"
+        "its clocks say of each case), ranks_per_case and output (file, keep_cases). Cases go to whichever group of "
+        "ranks is free. A case that fails is recorded with its reason, "
         "the\n"
         "rest goes on. RESULT.journal-* hold what is done; 'ebbturn sweep PLAN --resume RESULT' goes on after an\n"
         "interruption, or with a plan that names more cases: no finished case runs again. The table is in /sweep.\n"
-        "Exit 0: every case done and its bounce decided; 1: some case failed or has another verdict; 2: a problem in "
+        "Exit 0: every case done and its bounce decided; 1: some case or reading failed, or the verdict is another; 2: "
+        "a problem in "
         "the\n"
         "plan or the base model, nothing computed; 4: file failure; 75, 128 + signal: stopped, go on with --resume.",
     .operands_min = 1,
@@ -37,23 +39,12 @@ const struct ebb_command ebb_command_sweep = {
 
 enum { ESTIMATES_MOST = 24 }; /* cases that a dry run sets up, equally spaced in the list */
 
-/* Folder of a file's name, "." where it has none. */
-static void folder_of(const char *name, char folder[EBB_PATH_MAX])
-{
-  const char *slash = strrchr(name, '/');
-
-  if (slash == name)
-    (void)snprintf(folder, EBB_PATH_MAX, "/");
-  else
-    (void)snprintf(folder, EBB_PATH_MAX, "%.*s", slash ? (int)(slash - name) : 1, slash ? name : ".");
-}
-
 static void place_result(const struct ebb_invocation *invocation, struct ebb_sweep *sweep)
 {
   const char *name = strrchr(sweep->plan_name, '/'), *dot;
   char folder[EBB_PATH_MAX];
 
-  folder_of(sweep->plan_name, folder);
+  ebb_sweep_folder(sweep->plan_name, folder);
   name = name ? name + 1 : sweep->plan_name;
   dot = strrchr(name, '.');
   if (invocation->resume || invocation->output)
@@ -67,84 +58,9 @@ static void place_result(const struct ebb_invocation *invocation, struct ebb_swe
   if (!strncmp(sweep->path, "./", 2)) memmove(sweep->path, sweep->path + 2, strlen(sweep->path + 2) + 1);
 }
 
-/* The plan, and the base model it names; every value of every setting was checked. */
-static int load(const struct ebb_invocation *invocation, struct ebb_sweep *sweep)
-{
-  struct ebb_problems *problems = ebb_problems_create();
-  size_t length = 0;
-  char *text, base[3 * EBB_PATH_MAX], folder[EBB_PATH_MAX];
-  const char *about = invocation->operand[0];
-  int code = EBB_EXIT_OK;
-
-  if (!problems) return EBB_EXIT_BUG;
-  (void)snprintf(sweep->plan_name, sizeof sweep->plan_name, "%s", about);
-  text = ebb_command_text(about, &length, problems);
-  if (!text)
-    code = EBB_EXIT_FILE;
-  else if (!ebb_sweep_parse(text, length, &sweep->plan, problems))
-    code = EBB_EXIT_USAGE;
-  free(text);
-  if (!code) {
-    folder_of(about, folder);
-    (void)snprintf(base, sizeof base, "%s%s%s", sweep->plan.base[0] == '/' ? "" : folder,
-                   sweep->plan.base[0] == '/' ? "" : "/", sweep->plan.base);
-    about = base;
-    folder_of(base, sweep->folder);
-    sweep->base_text = ebb_command_text(base, &sweep->base_length, problems);
-    if (!sweep->base_text) code = EBB_EXIT_FILE;
-  }
-  if (code && sweep->speaks) ebb_problems_print(problems, stderr, about);
-  ebb_problems_destroy(&problems);
-  return code;
-}
-
-/* The base model with the first case's settings must be a model; and there must be ranks for a case. */
-static int check(struct ebb_sweep *sweep)
-{
-  struct ebb_problems *problems = ebb_problems_create();
-  struct ebb_settings settings = {0};
-  size_t good = 0;
-  PetscMPIInt size = 1;
-
-  (void)MPI_Comm_size(PETSC_COMM_WORLD, &size);
-  if (!problems) return EBB_EXIT_BUG;
-  for (size_t c = 0; c < sweep->plan.cases && !good; c++) {
-    struct ebb_problems *mine = c == 0 ? problems : ebb_problems_create();
-
-    good += ebb_sweep_settings(sweep, c, &settings, mine);
-    ebb_settings_clear(&settings);
-    if (c > 0) ebb_problems_destroy(&mine);
-  }
-  if (!good && sweep->speaks) {
-    fprintf(stderr, "ebbturn: error: no case of '%s' is a model; those of the first case follow\n", sweep->plan_name);
-    ebb_problems_print(problems, stderr, sweep->plan.base);
-  }
-  ebb_problems_destroy(&problems);
-  if (good && size < sweep->plan.ranks_per_case) {
-    good = 0;
-    if (sweep->speaks)
-      fprintf(stderr,
-              "ebbturn: error: 1 problem in '%s'; nothing was computed\n  ranks_per_case = %d, but there %s %d\n"
-              "  try       'mpiexec -n %d ebbturn sweep ...'\n",
-              sweep->plan_name, sweep->plan.ranks_per_case, size == 1 ? "is" : "are", (int)size,
-              sweep->plan.ranks_per_case);
-  }
-  return good ? EBB_EXIT_OK : EBB_EXIT_USAGE;
-}
-
-static void make_rows(struct ebb_sweep *sweep)
-{
-  sweep->row = calloc(sweep->plan.cases, sizeof *sweep->row);
-  for (size_t c = 0; sweep->row && c < sweep->plan.cases; c++) {
-    ebb_sweep_id(&sweep->plan, c, sweep->row[c].id);
-    for (int i = 0; i < EBB_SWEEP_COLUMNS; i++) sweep->row[c].value[i] = NAN;
-  }
-}
-
 /* Rank 0: what there is already. Returns an exit code. */
 static int look(const struct ebb_invocation *invocation, struct ebb_sweep *sweep, long *finished)
 {
-  const uint64_t base = ebb_checkpoint_crc(0, sweep->base_text, sweep->base_length);
   const bool journal = ebb_sweep_journal_present(sweep->path);
   struct stat there;
   const bool result = !stat(sweep->path, &there);
@@ -172,13 +88,15 @@ static int look(const struct ebb_invocation *invocation, struct ebb_sweep *sweep
   if (same && journal) {
     long beyond;
 
-    more = ebb_sweep_journal_read(sweep, base, &beyond);
+    more = ebb_sweep_journal_read(sweep, &beyond);
     strange += beyond;
   }
   if (!same || more < 0 || strange) {
     if (!same || more < 0)
-      fprintf(stderr, "ebbturn: error: '%s' was made from another base model than '%s'; nothing was computed\n",
-              sweep->path, sweep->plan.base);
+      fprintf(stderr,
+              "ebbturn: error: '%s' was made from another base model or other readings than '%s' names; nothing was "
+              "computed\n",
+              sweep->path, sweep->plan_name);
     else
       fprintf(stderr, "ebbturn: error: '%s' holds %ld finished cases that '%s' does not name; nothing was computed\n",
               sweep->path, strange, sweep->plan_name);
@@ -196,8 +114,12 @@ static PetscErrorCode share(const struct ebb_invocation *invocation, struct ebb_
   if (sweep->speaks) *code = look(invocation, sweep, finished);
   PetscCallMPI(MPI_Bcast(code, 1, MPI_INT, 0, PETSC_COMM_WORLD));
   PetscCallMPI(MPI_Bcast(finished, 1, MPI_LONG, 0, PETSC_COMM_WORLD));
-  for (size_t c = 0; !*code && c < sweep->plan.cases; c++)
+  for (size_t c = 0; !*code && c < sweep->plan.cases; c++) {
     PetscCallMPI(MPI_Bcast(&sweep->row[c], (PetscMPIInt)sizeof sweep->row[0], MPI_BYTE, 0, PETSC_COMM_WORLD));
+    if (sweep->findings)
+      PetscCallMPI(MPI_Bcast(&sweep->finding[c * sweep->findings],
+                             (PetscMPIInt)(sweep->findings * sizeof sweep->finding[0]), MPI_BYTE, 0, PETSC_COMM_WORLD));
+  }
   PetscFunctionReturn(0);
 }
 
@@ -214,6 +136,10 @@ static PetscErrorCode dry_run(struct ebb_sweep *sweep, long finished)
   if (sweep->speaks)
     printf("%s: %zu cases of '%s', %ld finished, %d at a time on %d ranks\n", sweep->plan_name, n, sweep->plan.base,
            finished, sweep->groups, (int)size);
+  if (sweep->speaks && sweep->findings)
+    printf("  readings  '%s' in each case: %zu clocks%s%s; memory and time below are without them\n",
+           sweep->plan.readings, sweep->readings.readings, sweep->readings.histories.given ? ", histories" : "",
+           sweep->readings.two_time.given ? ", the propagator" : "");
   for (size_t c = 0; c < n; c++) {
     struct ebb_problems *problems = ebb_problems_create();
     struct ebb_settings settings = {0};
@@ -252,10 +178,31 @@ static PetscErrorCode dry_run(struct ebb_sweep *sweep, long finished)
   PetscFunctionReturn(0);
 }
 
+/* What clocks, histories and propagator gave in all cases; the number of failures. */
+static size_t tell_readings(const struct ebb_sweep *sweep)
+{
+  size_t ok = 0, refused = 0, failed = 0;
+  const char *reason = NULL;
+
+  for (size_t f = 0; f < sweep->plan.cases * sweep->findings; f++) {
+    const struct ebb_sweep_finding *finding = &sweep->finding[f];
+
+    ok += !strcmp(finding->status, "ok");
+    refused += !strcmp(finding->status, "refused");
+    failed += !strcmp(finding->status, "failed");
+    if (!reason && !strcmp(finding->status, "failed")) reason = finding->reason;
+  }
+  if (sweep->findings)
+    printf("  readings  %zu ok, %zu refused, %zu failed%s%s\n", ok, refused, failed, reason ? ": " : "",
+           reason ? reason : "");
+  return failed;
+}
+
 /* Rank 0: the summary; an exit code. */
 static int conclude(struct ebb_sweep *sweep)
 {
   size_t done = 0, failed = 0, limit = 0, undecided = 0, yes = 0;
+  size_t readings_failed;
   double worst = 0.0;
   const int slope = ebb_sweep_find("slope"), error = ebb_sweep_find("slope_error");
 
@@ -283,8 +230,9 @@ static int conclude(struct ebb_sweep *sweep)
       printf("  failed    %s: %s\n", sweep->row[c].id, sweep->row[c].reason);
       told++;
     }
+  readings_failed = tell_readings(sweep);
   printf("  result    '%s'\n", sweep->path);
-  return failed || limit || undecided ? EBB_EXIT_VERDICT : EBB_EXIT_OK;
+  return failed || readings_failed || limit || undecided ? EBB_EXIT_VERDICT : EBB_EXIT_OK;
 }
 
 /* Rank 0: the table; the journals go once it is on the disk. */
@@ -320,7 +268,8 @@ static PetscErrorCode compute(const struct ebb_invocation *invocation, struct eb
   long finished = 0;
 
   PetscFunctionBegin;
-  PetscCheck(sweep->row, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for %zu cases", sweep->plan.cases);
+  PetscCheck(sweep->row && sweep->finding, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for %zu cases",
+             sweep->plan.cases);
   PetscCall(ebb_sweep_split(sweep));
   PetscCall(share(invocation, sweep, &finished, code));
   if (*code) PetscFunctionReturn(0);
@@ -354,17 +303,18 @@ static int run(const struct ebb_invocation *invocation)
 
   (void)MPI_Comm_rank(PETSC_COMM_WORLD, &rank);
   sweep.speaks = rank == 0;
-  code = load(invocation, &sweep);
-  if (!code) code = check(&sweep);
+  code = ebb_sweep_load(&sweep);
   if (!code) {
     place_result(invocation, &sweep);
-    make_rows(&sweep);
     error = compute(invocation, &sweep, &code);
     if (error) code = ebb_exit_from_error(error);
   }
   if (sweep.group != MPI_COMM_NULL) (void)MPI_Comm_free(&sweep.group);
   free(sweep.row);
   free(sweep.sorted);
+  free(sweep.finding);
+  free(sweep.readings_text);
+  ebb_readings_clear(&sweep.readings);
   free(sweep.base_text);
   ebb_sweep_clear(&sweep.plan);
   return code;
