@@ -11,7 +11,7 @@ import h5py
 from common import check, finish, run
 
 CLAIM, FALLS = 0.2, 0.7
-SHARED = ("many sites", "everything kept")  # what these models hold is shared out by sites
+SHARED = ("everything kept",)  # what such a model holds is shared out by sites
 PACKET = "state: {{profile: gaussian_momentum, momentum: {}, relative_spread: {}}}\n"
 CLOCK = "clock: {{kind: scalar, from: {}, to: {}, samples: {}}}\n"
 
