@@ -47,7 +47,13 @@ static void start_alone(void)
   static const char *const launchers[] = {"PMIX_RANK",    "PMI_RANK",       "PMI_FD",      "OMPI_COMM_WORLD_RANK",
                                           "SLURM_PROCID", "FLUX_TASK_RANK", "ALPS_APP_PE", "MPI_LOCALRANKID"};
   static const char *const alone[][2] = {
-      {"OMPI_MCA_ess_singleton_isolated", "1"}, {"OMPI_MCA_pml", "ob1"}, {"OMPI_MCA_btl", "self"}};
+      {"OMPI_MCA_ess_singleton_isolated", "1"},
+      {"OMPI_MCA_pml", "ob1"},
+      {"OMPI_MCA_btl", "self"},
+      /* no folder for talking either: all such processes would make and remove the same one, and one of two that start
+       * and end together fails; shared file pointers, which nobody uses here, would miss it */
+      {"OMPI_MCA_orte_create_session_dirs", "0"},
+      {"OMPI_MCA_sharedfp", "^sm"}};
 
   for (size_t i = 0; i < sizeof launchers / sizeof *launchers; i++)
     if (getenv(launchers[i])) return;
