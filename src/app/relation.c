@@ -147,30 +147,36 @@ PetscErrorCode ebb_relation_read(const char *result, const char *readings, struc
   PetscFunctionReturn(0);
 }
 
+PetscErrorCode ebb_relation_make_run(struct ebb_relation *r, const char *folder, MPI_Comm comm, char problem[],
+                                     size_t size, int *code)
+{
+  char *layout = r->settings.lattice.layout;
+
+  PetscFunctionBegin;
+  problem[0] = '\0';
+  if (!strcmp(layout, "graded")) {
+    *code = EBB_EXIT_USAGE;
+    (void)snprintf(problem, size,
+                   "it has lattice.layout = 'graded', and readings need the states on every site\n"
+                   "  try       lattice.layout = 'full' with a lattice.volume_max that can be held");
+    PetscFunctionReturn(0);
+  }
+  (void)snprintf(layout, sizeof r->settings.lattice.layout, "full");
+  PetscCall(ebb_run_create(&r->settings, folder, comm, &r->run, code));
+  if (*code) (void)snprintf(problem, size, "%.255s", r->run.problem[0] ? r->run.problem : "the set-up failed");
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
 {
   const char *result = r->keeper.origin.place, *slash = strrchr(result, '/');
-  char folder[EBB_PATH_MAX];
+  char folder[EBB_PATH_MAX], problem[320];
 
   PetscFunctionBegin;
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
-  if (!strcmp(r->settings.lattice.layout, "graded")) {
-    *code = EBB_EXIT_USAGE;
-    if (speaks())
-      fprintf(
-          stderr,
-          "ebbturn: error: 1 problem in '%s'; nothing was computed\n"
-          "  it was evolved with lattice.layout = 'graded', and readings need the states on every site\n"
-          "  try       'ebbturn evolve MODEL --set lattice.layout=full' with a lattice.volume_max that can be held\n",
-          result);
-    PetscFunctionReturn(0);
-  }
-  /* readings need the states on every site, whatever the run took */
-  (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
-  PetscCall(ebb_run_create(&r->settings, folder, PETSC_COMM_WORLD, &r->run, code));
+  PetscCall(ebb_relation_make_run(r, folder, PETSC_COMM_WORLD, problem, sizeof problem, code));
   if (*code) {
-    if (speaks())
-      fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", result, r->run.problem);
+    if (speaks()) fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", result, problem);
     PetscFunctionReturn(0);
   }
   PetscCall(find_rows(r));

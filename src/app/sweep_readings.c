@@ -77,8 +77,7 @@ static PetscErrorCode borrow(const struct ebb_sweep *sweep, const struct ebb_set
       .settings = *settings, .readings = sweep->readings, .abandon = true, .keeper = {.watch = sweep->watch}};
   PetscCall(ebb_relation_window(r, problem, size));
   if (problem[0]) PetscFunctionReturn(0);
-  PetscCall(ebb_run_create(&r->settings, sweep->folder, comm, &r->run, &code));
-  if (code) (void)snprintf(problem, size, "%.255s", r->run.problem[0] ? r->run.problem : "the set-up failed");
+  PetscCall(ebb_relation_make_run(r, sweep->folder, comm, problem, size, &code));
   PetscFunctionReturn(0);
 }
 
