@@ -11,7 +11,7 @@ EBB_PACKAGES="gcc libc6-dev make cmake pkg-config python3
   python3-numpy python3-h5py python3-matplotlib"
 # to run the tests as well
 EBB_TEST_PACKAGES="libcriterion-dev libflint-arb-dev libflint-dev clang libclang-rt-14-dev shellcheck hdf5-tools
-  python3-scipy python3-mpmath python3-xarray python3-h5netcdf"
+  python3-scipy python3-mpmath python3-xarray python3-h5netcdf slurm-wlm munge"
 
 # Installs those of the given packages that are missing; touches neither apt nor the network where none is.
 ebb_install() {

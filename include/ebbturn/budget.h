@@ -25,6 +25,7 @@ struct ebb_budget {
   double quadrature_quantile;     /* relative */
   double grading[EBB_MOMENTS];    /* the same two for graded lattices, 0 elsewhere */
   double grading_quantile;
+  double noise;    /* graded lattices: sqrt(v) |psi| that the roundings of the waves leave where it should vanish */
   double cut_tail; /* graded lattices: |psi|^2 v ln^2 v of the tail that a cut of c(k) at k = 0 leaves, 0 where there is
                       none */
   double drift_v[EBB_DRIFTS];      /* volumes, ascending, at which the recursion was compared with the waves */

@@ -18,8 +18,14 @@ struct ebb_tally {
   double complex *p, *q; /* [local] */
 };
 
+/* One step of a recurrence; tally may be NULL. */
+struct ebb_recurrence {
+  double scale, shift;
+  const struct ebb_tally *tally;
+};
+
 /* All that a propagator sees of a real symmetric operator. Vectors are [local], this rank's sites in ascending global
- * order; apply and recur are collective and neither x and y nor x and z may overlap. */
+ * order; apply, recur and sweep are collective and neither x and y nor x and z may overlap. */
 struct ebb_operator {
   MPI_Comm comm;
   PetscInt local;   /* sites of this rank */
@@ -30,6 +36,10 @@ struct ebb_operator {
   /* One step of a three-term recurrence, z <- 2 (scale Theta + shift) x - z, in one pass; tally may be NULL. */
   PetscErrorCode (*recur)(const struct ebb_operator *op, double scale, double shift, const double complex x[],
                           double complex z[], const struct ebb_tally *tally);
+  /* Several steps, the same bits as one recur after the other: the first on (x, z), the next on (z, x), and so on. On
+   * one rank in one pass through memory. */
+  PetscErrorCode (*sweep)(const struct ebb_operator *op, PetscInt steps, const struct ebb_recurrence step[],
+                          double complex x[], double complex z[]);
   void *data;
 };
 

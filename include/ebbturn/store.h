@@ -45,6 +45,9 @@ void ebb_store_say(const char *format, ...) __attribute__((format(printf, 1, 2))
  * PetscCall may carry a file failure up to the function that prints it. */
 PetscErrorCode ebb_store_error_handler(MPI_Comm comm, int line, const char *function, const char *file,
                                        PetscErrorCode code, PetscErrorType type, const char *message, void *context);
+/* Was a file given up that HDF5 cannot close (its room was taken away)? The process then has to end without the
+ * libraries' own clean-up, in which HDF5 would try again and crash. */
+bool ebb_store_abandoned(void);
 /* Has that handler seen an allocation fail? */
 bool ebb_store_no_memory(void);
 

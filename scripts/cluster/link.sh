@@ -1,6 +1,6 @@
 #!/bin/bash
 # SPDX-License-Identifier: BSD-2-Clause
-# One link of chain.sh: ends before the limit by --time-limit, read from $SLURM_JOB_END_TIME where Slurm sets it.
+# One link of chain.sh: ends with a checkpoint before the limit, that of $LIMIT or the job's own from $SLURM_JOB_END_TIME.
 #SBATCH --job-name=ebbturn-link
 #SBATCH --ntasks=2
 #SBATCH --time=04:00:00
@@ -24,4 +24,7 @@ else
 fi
 # a task that dies takes the step with it: the others would wait for it
 read -r -a launcher <<<"${RUN:-srun --mpi=pmix --kill-on-bad-exit=1}"
-exec "${launcher[@]}" "${EBBTURN:-ebbturn}" "${words[@]}" --time-limit "${LIMIT:-3h50m}"
+limit=() # LIMIT='3h50m' sets it; otherwise Slurm's own, where it says so
+[ -n "${LIMIT:-}${SLURM_JOB_END_TIME:-}" ] || LIMIT=3h50m
+[ -z "${LIMIT:-}" ] || limit=(--time-limit "$LIMIT")
+exec "${launcher[@]}" "${EBBTURN:-ebbturn}" "${words[@]}" "${limit[@]}"

@@ -5,30 +5,15 @@
 #include "progress.h"
 
 #include <math.h>
-#include <string.h>
-
-/* A safe point every so many seconds by estimate, where the batch is not smaller than what the serial recursion needs
- * beside the sum (some percent of it at 16 samples). */
-static const double STRETCH = 5.0, STRETCH_SHARE = 0.25; /* the latter of the interval between checkpoints */
-enum { BATCH_LEAST = 16 };
-
-static bool stepping(const struct ebb_run *run)
-{
-  return run->method == EBB_METHOD_CHEBYSHEV || run->method == EBB_METHOD_KRYLOV;
-}
 
 PetscInt ebb_evolution_batch(const struct ebb_run *run)
 {
-  const struct ebb_estimate estimate = ebb_run_estimate(run);
-  const double every = run->settings->output.checkpoint_every;
-  const double stretch = isnan(every) ? STRETCH : fmin(STRETCH, STRETCH_SHARE * every);
-  const double most =
-      fmax(stretch * (double)run->m / fmax(estimate.seconds, 1e-300), stepping(run) ? 1.0 : BATCH_LEAST);
-  const PetscInt memory = run->source.batch ? run->source.batch : estimate.batch;
+  const PetscInt batch = ebb_run_estimate(run).batch;
 
-  return PetscMax((PetscInt)fmin((double)memory, most), 1);
+  return run->source.batch ? PetscMin(run->source.batch, batch) : batch;
 }
 
+/* At a safe point: whatever the watch asks for. */
 static PetscErrorCode safe_point(struct ebb_evolution *e, bool *stop, int *code)
 {
   enum ebb_action action;
@@ -65,7 +50,7 @@ PetscErrorCode ebb_evolution_evaluate(struct ebb_evolution *e, const char *progr
     struct ebb_sheet sheet;
 
     PetscCall(run->source.evaluate(&run->source, count, run->phi + first, &request, &sheet));
-    if (stepping(run))
+    if (ebb_run_steps(run))
       e->record.budget.propagation = fmax(e->record.budget.propagation, ebb_source_steps_error(&run->source));
     ebb_record_take(&e->record, run, first, &sheet);
     if (e->store) PetscCall(ebb_record_batch(e->store, run, first, &sheet));

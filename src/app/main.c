@@ -9,6 +9,7 @@
 #include <slepcsys.h>
 #include <stdlib.h>
 #include <string.h>
+#include <unistd.h>
 
 /* An option for PETSc that nothing has asked for is most often misspelt. */
 static PetscErrorCode warn_of_unused(const struct ebb_invocation *invocation)
@@ -28,6 +29,17 @@ static PetscErrorCode warn_of_unused(const struct ebb_invocation *invocation)
   PetscFunctionReturn(0);
 }
 
+/* The end where HDF5 is left with a file that it cannot close, on every rank where it is so on any. */
+static void leave_if_abandoned(int code)
+{
+  int abandoned = ebb_store_abandoned();
+
+  if (MPI_Allreduce(MPI_IN_PLACE, &abandoned, 1, MPI_INT, MPI_MAX, PETSC_COMM_WORLD) || !abandoned) return;
+  (void)fflush(NULL);
+  (void)MPI_Barrier(PETSC_COMM_WORLD);
+  _exit(code);
+}
+
 /* Started by hand and not by a launcher, there is nobody to talk to: Open MPI then needs no daemon of its own and no
  * network, whose search takes it 0.4 s. What the environment says already holds. */
 static void start_alone(void)
@@ -35,7 +47,13 @@ static void start_alone(void)
   static const char *const launchers[] = {"PMIX_RANK",    "PMI_RANK",       "PMI_FD",      "OMPI_COMM_WORLD_RANK",
                                           "SLURM_PROCID", "FLUX_TASK_RANK", "ALPS_APP_PE", "MPI_LOCALRANKID"};
   static const char *const alone[][2] = {
-      {"OMPI_MCA_ess_singleton_isolated", "1"}, {"OMPI_MCA_pml", "ob1"}, {"OMPI_MCA_btl", "self"}};
+      {"OMPI_MCA_ess_singleton_isolated", "1"},
+      {"OMPI_MCA_pml", "ob1"},
+      {"OMPI_MCA_btl", "self"},
+      /* no folder for talking either: all such processes would make and remove the same one, and one of two that start
+       * and end together fails; shared file pointers, which nobody uses here, would miss it */
+      {"OMPI_MCA_orte_create_session_dirs", "0"},
+      {"OMPI_MCA_sharedfp", "^sm"}};
 
   for (size_t i = 0; i < sizeof launchers / sizeof *launchers; i++)
     if (getenv(launchers[i])) return;
@@ -64,6 +82,7 @@ static int run_parallel(char *program, const struct ebb_command *command, const 
     code = EBB_EXIT_BUG;
   else {
     code = command->run(invocation);
+    leave_if_abandoned(code);
     if (warn_of_unused(invocation)) code = EBB_EXIT_BUG;
     if (PetscPopErrorHandler()) code = EBB_EXIT_BUG;
   }

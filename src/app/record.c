@@ -335,6 +335,6 @@ PetscErrorCode ebb_record_end(struct ebb_store *store, const struct ebb_run *run
   PetscCall(ebb_store_set_real(store, "/state", "channel_purity", run->packet->channel_purity));
   PetscCall(ebb_store_set_real(store, "/state", "low_weight", run->packet->low_weight));
   PetscCall(ebb_store_set_real(store, "/state", "lost", run->packet->lost));
-  PetscCall(ebb_result_stamp(store, "finished"));
+  PetscCall(ebb_result_finish(store, run->comm));
   PetscFunctionReturn(0);
 }

@@ -1,6 +1,8 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
 #include "result.h"
 
+#include "ebbturn/memory.h"
+
 #include <gsl/gsl_version.h>
 #include <math.h>
 #include <slepcsys.h>
@@ -43,7 +45,8 @@ static PetscErrorCode library_versions(char *text, size_t size)
   PetscFunctionReturn(0);
 }
 
-PetscErrorCode ebb_result_stamp(struct ebb_store *store, const char *name)
+/* The present time as an attribute of /provenance. */
+static PetscErrorCode stamp(struct ebb_store *store, const char *name)
 {
   char text[32];
   const time_t now = time(NULL);
@@ -52,6 +55,17 @@ PetscErrorCode ebb_result_stamp(struct ebb_store *store, const char *name)
   PetscFunctionBegin;
   (void)strftime(text, sizeof text, "%Y-%m-%dT%H:%M:%SZ", gmtime_r(&now, &utc));
   PetscCall(ebb_store_set_text(store, "/provenance", name, text));
+  PetscFunctionReturn(0);
+}
+
+PetscErrorCode ebb_result_finish(struct ebb_store *store, MPI_Comm comm)
+{
+  double peak = ebb_memory_peak();
+
+  PetscFunctionBegin;
+  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, &peak, 1, MPI_DOUBLE, MPI_MAX, comm));
+  PetscCall(stamp(store, "finished"));
+  PetscCall(ebb_store_set_real(store, "/provenance", "peak_memory", peak));
   PetscFunctionReturn(0);
 }
 
@@ -74,7 +88,7 @@ PetscErrorCode ebb_result_root(struct ebb_store *store, const struct ebb_setting
   PetscCall(library_versions(text, sizeof text));
   PetscCall(ebb_store_set_text(store, "/", "libraries", text));
   PetscCall(ebb_store_set_integer(store, "/", "ranks", ranks));
-  PetscCall(ebb_result_stamp(store, "started"));
+  PetscCall(stamp(store, "started"));
   free(json);
   PetscFunctionReturn(0);
 }

@@ -24,7 +24,7 @@ PetscErrorCode ebb_result_line(struct ebb_store *store, const char *path, PetscI
                                const char *units, const char *long_name, const char *scale);
 PetscErrorCode ebb_result_number(struct ebb_store *store, const char *path, double value, const char *units,
                                  const char *long_name);
-/* The present time as an attribute of /provenance. */
-PetscErrorCode ebb_result_stamp(struct ebb_store *store, const char *name);
+/* The time of the end, and the most memory that a rank of comm has held so far, into /provenance. */
+PetscErrorCode ebb_result_finish(struct ebb_store *store, MPI_Comm comm);
 
 #endif

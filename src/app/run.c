@@ -10,9 +10,6 @@
 
 enum { EIGENPAIRS_MOST = 6000 }; /* sites up to which all eigenvectors are kept: 300 MB */
 static const double SITES_MOST = 5e8;
-static const double BATCH_BYTES = 5e8; /* per rank, for probabilities and states of one batch */
-enum { BATCH_MOST = 256 };
-static const double GIGAFLOPS = 10e9; /* per core, a cautious dense-product rate for the estimate of time */
 
 const char *ebb_method_name(enum ebb_method method)
 {
@@ -280,43 +277,4 @@ PetscErrorCode ebb_run_destroy(struct ebb_run *run)
   }
   PetscCall(PetscFree(run->file));
   PetscFunctionReturn(0);
-}
-
-struct ebb_estimate ebb_run_estimate(const struct ebb_run *run)
-{
-  const unsigned keep = run->settings->output.keep;
-  const double n = (double)ebb_lattice_size(&run->lattice), modes = (double)run->packet->n;
-  const bool quantiles = run->settings->output.quantiles > 0, state = ebb_run_keeps_states(run);
-  /* probabilities, their running sums for quantiles, states; per sample and site */
-  const double bytes =
-      (quantiles || (keep & EBB_KEEP_PROBABILITY) ? 8.0 : 0.0) + (quantiles ? 8.0 : 0.0) + (state ? 16.0 : 0.0);
-  struct ebb_estimate e = {0};
-  double local, kept_states;
-  PetscMPIInt ranks;
-
-  (void)MPI_Comm_size(run->comm, &ranks);
-  local = ceil(n / ranks);
-  e.batch = (PetscInt)fmin(fmin(BATCH_MOST, run->m), fmax(1.0, floor(BATCH_BYTES / fmax(local * bytes, 1.0))));
-  kept_states = ceil((double)run->m / run->settings->output.every);
-  e.file = (keep & EBB_KEEP_PROBABILITY ? 8.0 * n * run->m : 0.0) + (state ? 16.0 * n * kept_states : 0.0) + 24.0 * n +
-           16.0 * (EBB_MOMENTS + 4.0) * run->m;
-  e.memory = local * bytes * (double)e.batch + modes * 8.0 * (12.0 * (double)e.batch + 600.0);
-  e.seconds = n / ranks * modes * 12.0 * (double)run->m / GIGAFLOPS;
-  if (run->method != EBB_METHOD_EIGENPAIRS && ebb_run_has_levels(run)) e.memory += 16.0 * n * modes;
-  if (run->bundle) {
-    const double slices = (double)run->bundle->n;
-
-    /* beside a scalar clock slices share their functions */
-    if (!ebb_rows_scalar_clock(&run->rows)) e.memory += 16.0 * n * modes * slices;
-    e.memory += ebb_source_bundle_bytes(run->bundle, (PetscInt)local, run->m);
-    e.seconds *= slices;
-  }
-  if (run->method == EBB_METHOD_EIGENPAIRS) e.memory += 8.0 * n * n;
-  if (run->method == EBB_METHOD_CHEBYSHEV ||
-      run->method == EBB_METHOD_KRYLOV) { /* 1.5 v_max products per unit of clock */
-    const double clock = run->phi[run->m - 1] - run->phi[0];
-    e.memory += local * 16.0 * 24.0;
-    e.seconds = 1.5 * 4.0 * n * clock * n / ranks * 60.0 / (GIGAFLOPS / 10.0);
-  }
-  return e;
 }

@@ -90,11 +90,13 @@ double ebb_run_momentum(const struct ebb_run *run);
 PetscErrorCode ebb_run_start(struct ebb_run *run);
 PetscErrorCode ebb_run_destroy(struct ebb_run *run);
 
-/* Estimates for this number of ranks: bytes per rank at the peak, bytes of the result file, seconds. */
+/* Estimates for this number of ranks, once the run is created. memory: bytes that this rank holds at the peak, all
+ * told, which is what the set-up took or holds now and the work beyond it; file: of the result. */
 struct ebb_estimate {
-  double memory, file, seconds;
+  double memory, work, file, seconds;
   PetscInt batch; /* samples computed at once */
 };
+bool ebb_run_steps(const struct ebb_run *run);
 struct ebb_estimate ebb_run_estimate(const struct ebb_run *run);
 
 const char *ebb_method_name(enum ebb_method method);

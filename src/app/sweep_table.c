@@ -152,7 +152,7 @@ PetscErrorCode ebb_sweep_write(struct ebb_sweep *sweep, bool force)
   PetscCall(ebb_store_put_texts(store, "/sweep/case", n, text, "the settings that make the case", NULL));
   for (size_t i = 0; ebb_sweep_series(sweep, i, &series); i++) PetscCall(put_series(store, sweep, &series, line, text));
   if (sweep->readings_text) PetscCall(ebb_store_set_text(store, "/", "readings_text", sweep->readings_text));
-  PetscCall(ebb_result_stamp(store, "finished"));
+  PetscCall(ebb_result_finish(store, PETSC_COMM_SELF));
   PetscCall(ebb_store_commit(&store, true));
   PetscCall(PetscFree2(line, text));
   ebb_settings_clear(&settings);

@@ -18,6 +18,24 @@ bool ebb_run_mean_exists(const struct ebb_run *run)
   return run->packet->low_weight < LOW_WEIGHT || ebb_run_has_levels(run);
 }
 
+/* Roundings of amplitudes, phases at large volume (k ln v in extended precision, its k exact or not) and phases of the
+ * clock, of all modes at random. */
+static double noise_of(const struct ebb_run *run)
+{
+  static const double PER_WAVE = 4.0;
+  const struct ebb_packet *p = run->packet;
+  const double *k = ebb_basis_k(p->basis), lnv = log(ebb_lattice_top(&run->lattice));
+  const double clock = fmax(fabs(run->phi[0]), fabs(run->phi[run->m - 1]));
+  double sum = 0.0;
+
+  for (PetscInt j = 0; j < p->n; j++) {
+    const double roundings = PER_WAVE + p->omega[j] * clock + (run->plan.uniform ? 0.0 : k[j] * lnv);
+
+    sum += pow(cabs(p->amplitude[j]) * roundings, 2.0);
+  }
+  return PETSC_MACHINE_EPSILON * sqrt(8.0 / EBB_PI * sum);
+}
+
 PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
 {
   const struct ebb_output_settings *o = &run->settings->output;
@@ -33,6 +51,7 @@ PetscErrorCode ebb_record_verify(struct ebb_record *record, struct ebb_run *run)
   if (run->packet->lost > LOST) record->budget.propagation = sqrt(run->packet->lost);
   record->budget.propagation +=
       run->packet->omega_error * fmax(fabs(run->phi[0]), fabs(run->phi[run->m - 1])); /* phases of the levels */
+  if (run->graded) record->budget.noise = noise_of(run);
   if (run->graded && !run->plan.uniform)
     record->budget.cut_tail = 8.0 / EBB_PI * pow(cabs(run->packet->amplitude[0]) / run->plan.weight[0], 2.0);
   if (!run->check) PetscFunctionReturn(0);

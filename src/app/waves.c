@@ -84,7 +84,7 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
                                c->bound   ? "eigenvalue 0"
                                : c->below ? "one negative eigenvalue"
                                           : "none"));
-  PetscCall(ebb_result_stamp(store, "finished"));
+  PetscCall(ebb_result_finish(store, PETSC_COMM_WORLD));
   PetscFunctionReturn(0);
 }
 

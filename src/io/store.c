@@ -281,6 +281,25 @@ PetscErrorCode ebb_store_commit(struct ebb_store **store, bool complete)
   PetscFunctionReturn(code);
 }
 
+static bool abandoned;
+
+bool ebb_store_abandoned(void) { return abandoned; }
+
+/* After a failure: can the file still be written as far as it goes? Where not even that is possible any more (a limit
+ * that was lowered, a quota) HDF5 1.10 cannot flush its tables and hangs in closing or crashes at the end. Rank 0's
+ * answer on every rank. */
+static bool can_be_closed(struct ebb_store *s)
+{
+  struct stat there;
+  int good = 1;
+  char last;
+
+  if (s->rank == 0 && s->part_fd >= 0 && !fstat(s->part_fd, &there) && there.st_size > 0)
+    good = pread(s->part_fd, &last, 1, there.st_size - 1) == 1 && pwrite(s->part_fd, &last, 1, there.st_size - 1) == 1;
+  if (s->comm != MPI_COMM_NULL && MPI_Bcast(&good, 1, MPI_INT, 0, s->comm)) return false;
+  return good != 0;
+}
+
 PetscErrorCode ebb_store_destroy(struct ebb_store **store)
 {
   struct ebb_store *s = *store;
@@ -288,7 +307,10 @@ PetscErrorCode ebb_store_destroy(struct ebb_store **store)
   PetscFunctionBegin;
   if (!s) PetscFunctionReturn(0);
   *store = NULL;
-  (void)close_handles(s); /* what is thrown away need not be whole */
+  if (s->broken && !can_be_closed(s))
+    abandoned = true;
+  else
+    (void)close_handles(s); /* what is thrown away need not be whole */
   if (s->part_fd >= 0) {
     if (s->part[0]) (void)unlink(s->part); /* while still locked: it is this run's */
     (void)close(s->part_fd);

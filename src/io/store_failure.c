@@ -81,7 +81,8 @@ PetscErrorCode ebb_store_fail(struct ebb_store *store, PetscErrorCode code, cons
   (void)H5Eclear2(H5E_DEFAULT);
   /* What HDF5 cannot read of a file that opened is damage; its words alone do not say so. */
   if (!cause && !store->writing) strcat(innermost, innermost[0] ? "; the file is damaged" : "the file is damaged");
-  if (!cause) cause = innermost[0] ? innermost : "HDF5 gives no reason";
+  if (!cause)
+    cause = innermost[0] ? innermost : "no reason is given; a full disk, a quota or a file-size limit are likely";
   ebb_store_say("cannot %s '%s': %.*s", action, store->path, EBB_STORE_REASON_MAX / 2, cause);
   if (store->writing) store->broken = true;
   return code;

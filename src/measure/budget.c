@@ -18,7 +18,7 @@ const char *const ebb_contribution_texts[EBB_CONTRIBUTIONS] = {
     [EBB_ERROR_NORMALISATION] = "|norm - 1| and drift of the recursion against the large-volume waves",
     [EBB_ERROR_PROPAGATION] = "remainder of the propagator, drift of norm and <Theta>",
     [EBB_ERROR_GRADING] = "difference to a lattice graded in other blocks, with other nodes",
-    [EBB_ERROR_ROUNDING] = "rounding of the sums over sites",
+    [EBB_ERROR_ROUNDING] = "rounding of the sums over sites, and of the waves far out where the lattice is graded",
 };
 
 /* Moments that may vanish are compared with their own bound instead of their value. */
@@ -80,11 +80,13 @@ static double beyond(double last, double inner)
 static double weight_beyond(const struct ebb_lattice *lattice, const struct ebb_sheet *sheet, PetscInt s, double power,
                             enum ebb_sum last, enum ebb_sum inner, double all)
 {
-  static const double GOOD_PART = 0.1;
+  static const double GOOD_PART = 0.1, MORE_THAN_NOISE = 1e-3;
   const double norm = sheet->sum[EBB_SUM_NORM][s], charged = beyond(sheet->sum[last][s], sheet->sum[inner][s]);
 
   if (sheet->sum[last][s] * (1.0 + SLOW) < sheet->sum[inner][s] * SLOW) return charged;
-  if (sheet->sum[last][s] > GOOD_PART * all) return INFINITY;
+  /* a graded lattice reaches as far as the state is known: there more than the noise, and hardly falling, has no bound
+   */
+  if (sheet->sum[last][s] > (lattice->grading && power > 0.0 ? MORE_THAN_NOISE : GOOD_PART) * all) return INFINITY;
   const double mean = sheet->sum[EBB_SUM_LNV][s] / norm, square = sheet->sum[EBB_SUM_LNV2][s] / norm;
   const double spread = sqrt(fmax(square - mean * mean, PETSC_MACHINE_EPSILON));
   const double top = log(ebb_lattice_top(lattice));
@@ -240,7 +242,11 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
       budget->propagation; /* error of the state vector: a mean moves by 2 |state| times its own spread */
   const double normalisation = fabs(moment[EBB_MOMENT_NORM] - 1.0) + 2.0 * drift_of(budget, v, dv);
   const double rounding = rounding_of(lattice, dv), common = normalisation + rounding;
-  const double far = 2.0 * state * sqrt(sheet->sum[EBB_SUM_V2][s]) + state * state * v_max;
+  /* noise far out, independent of the state from one unit of ln v to the next, in the means of v and of v^2 */
+  const double noise1 = 2.0 * budget->noise * sqrt(sheet->sum[EBB_SUM_V2][s]);
+  const double noise2 =
+      2.0 * budget->noise * v_max * sqrt(sheet->sum[EBB_SUM_EDGE_V2][s] + sheet->sum[EBB_SUM_INNER_V2][s]);
+  const double moved = 2.0 * state * sqrt(sheet->sum[EBB_SUM_V2][s]) + state * state * v_max, far = moved + noise1;
   double contribution[EBB_CONTRIBUTIONS];
 
   for (int i = 0; i < EBB_MOMENTS; i++)
@@ -249,8 +255,8 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   contribution[EBB_ERROR_QUADRATURE] = budget->quadrature[family ? EBB_MOMENT_ARCTAN_V_MEAN : EBB_MOMENT_V_MEAN];
   contribution[EBB_ERROR_GRADING] = budget->grading[EBB_MOMENT_V_MEAN];
   contribution[EBB_ERROR_NORMALISATION] = normalisation;
-  contribution[EBB_ERROR_PROPAGATION] = family ? 2.0 * state : far / v;
-  contribution[EBB_ERROR_ROUNDING] = rounding;
+  contribution[EBB_ERROR_PROPAGATION] = family ? 2.0 * state : moved / v;
+  contribution[EBB_ERROR_ROUNDING] = rounding + noise1 / v;
   for (int i = 0; i < EBB_CONTRIBUTIONS; i++) budget->worst[i] = fmax(budget->worst[i], contribution[i]);
   if (!family) budget->edge_probability = fmax(budget->edge_probability, sheet->sum[EBB_SUM_EDGE][s]);
 
@@ -259,7 +265,8 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   error[EBB_MOMENT_V_MEAN] = v * (rules_of(budget, EBB_MOMENT_V_MEAN) + common) + edge1 + far;
   {
     /* variance = <v^2> - <v>^2: the errors of both, cancellation included */
-    const double square = v * v + dv * dv, noise = square * common + edge2 + 2.0 * state * v_max * sqrt(square);
+    const double square = v * v + dv * dv,
+                 noise = square * common + edge2 + noise2 + 2.0 * state * v_max * sqrt(square);
     const double variance = noise + 2.0 * v * (v * common + edge1 + far);
     error[EBB_MOMENT_V_SPREAD] = dv * rules_of(budget, EBB_MOMENT_V_SPREAD) + root_error(variance, dv);
   }

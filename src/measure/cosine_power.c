@@ -5,6 +5,7 @@
  * K_l exp(i pi l/m) psi_{n+l}: one short transform per site in place of one stencil per centre. Sites stay on their
  * ranks; neighbours exchange a halo. */
 #include "cosine_power.h"
+#include "base/wide.h"
 
 #include <math.h>
 #include <string.h>
@@ -170,17 +171,10 @@ PetscErrorCode ebb_cosine_extend(struct ebb_relational *r, struct ebb_cosine *c,
   PetscFunctionReturn(0);
 }
 
-/* The loops that cost anything beside the transform, for the vectors of this processor. Element by element, so that
- * their width changes no digit. */
-#if defined(__x86_64__) && defined(__gnu_linux__) && defined(__GNUC__) && !defined(__clang__) &&                       \
-    !defined(__SANITIZE_ADDRESS__)
-#define WIDE __attribute__((target_clones("avx512f", "avx2", "default"), optimize("O3")))
-#else
-#define WIDE
-#endif
+/* The loops that cost anything beside the transform. */
 
 /* y += (re + i im) x. */
-WIDE static void add_multiple(int n, double re, double im, const double *restrict x, double *restrict y)
+EBB_WIDE static void add_multiple(int n, double re, double im, const double *restrict x, double *restrict y)
 {
   for (int j = 0; j < n; j++) {
     y[2 * j] += re * x[2 * j] - im * x[2 * j + 1];
@@ -211,7 +205,7 @@ static void correlate(const struct ebb_relational *r, struct ebb_cosine *c, doub
 }
 
 /* y = factor x, complex numbers as pairs. */
-WIDE static void multiply(int n, const double *restrict factor, const double *restrict x, double *restrict y)
+EBB_WIDE static void multiply(int n, const double *restrict factor, const double *restrict x, double *restrict y)
 {
   for (int j = 0; j < n; j++) {
     y[2 * j] = factor[2 * j] * x[2 * j] - factor[2 * j + 1] * x[2 * j + 1];
@@ -220,8 +214,8 @@ WIDE static void multiply(int n, const double *restrict factor, const double *re
 }
 
 /* |y|^2 of what stands for `share` sites, with weight into its tally and without into what is seen of the sample. */
-WIDE static void add_squares(int n, double share, double w, const double *restrict y, double *restrict tally,
-                             double *restrict seen)
+EBB_WIDE static void add_squares(int n, double share, double w, const double *restrict y, double *restrict tally,
+                                 double *restrict seen)
 {
   for (int i = 0; i < n; i++) {
     const double p = share * (y[2 * i] * y[2 * i] + y[2 * i + 1] * y[2 * i + 1]);

@@ -2,6 +2,7 @@
  *
  * One site at a time, all samples in the innermost loop: every array is contiguous in the sample. About 60 flops per
  * site and sample beside the 12 x modes of the sum that produced them. */
+#include "base/wide.h"
 #include "sheet_impl.h"
 
 #include <math.h>
@@ -37,8 +38,8 @@ static void edges(const struct site_weights *at, double v, double v_max, bool ou
 }
 
 /* Sums of one site alone. */
-static void diagonal(const struct site_weights *at, double v, double v_max, bool outer, const struct ebb_site_rows *r,
-                     PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
+EBB_WIDE static void diagonal(const struct site_weights *at, double v, double v_max, bool outer,
+                              const struct ebb_site_rows *r, PetscInt s0, PetscInt m, struct ebb_sheet *sheet)
 {
   const double *restrict pr = r->psi[0], *restrict pi = r->psi[1], *restrict rr = r->root[0], *restrict ri = r->root[1];
   const double *restrict qr = r->quarter[0], *restrict qi = r->quarter[1];
@@ -96,8 +97,8 @@ static void diagonal_more(const struct ebb_lattice *lattice, double cell, double
   }
 }
 
-static void most_probable(double v, const struct ebb_site_rows *r, PetscInt s0, PetscInt m, struct ebb_sheet *sheet,
-                          double *restrict best)
+EBB_WIDE static void most_probable(double v, const struct ebb_site_rows *r, PetscInt s0, PetscInt m,
+                                   struct ebb_sheet *sheet, double *restrict best)
 {
   double *restrict mode = sheet->mode + s0;
 
@@ -140,8 +141,8 @@ static void links_five(const struct ebb_lattice *lattice, double v, const struct
 }
 
 /* Quadratic forms and shifts of the link n -> n + 1 (and n + 2). a, b: 1/sqrt(B) at its two ends. */
-static void links(const struct ebb_lattice *lattice, double v, const struct ebb_site_rows *r, PetscInt s0, PetscInt m,
-                  struct ebb_sheet *sheet)
+EBB_WIDE static void links(const struct ebb_lattice *lattice, double v, const struct ebb_site_rows *r, PetscInt s0,
+                           PetscInt m, struct ebb_sheet *sheet)
 {
   const struct ebb_rows *rows = &lattice->rows;
   const struct ebb_prescription *flat = lattice->rows.prescription;

@@ -102,6 +102,7 @@ PetscErrorCode ebb_constraint_create(const struct ebb_lattice *lattice, const st
                                 .local = lattice->end - lattice->begin,
                                 .apply = ebb_stencil_apply,
                                 .recur = ebb_stencil_recur,
+                                .sweep = ebb_stencil_sweep,
                                 .data = &c->stencil};
   c->rows = lattice->rows;
   c->rows.constants = *constants;

@@ -18,5 +18,7 @@ struct ebb_stencil {
 PetscErrorCode ebb_stencil_apply(const struct ebb_operator *op, const double complex x[], double complex y[]);
 PetscErrorCode ebb_stencil_recur(const struct ebb_operator *op, double scale, double shift, const double complex x[],
                                  double complex z[], const struct ebb_tally *tally);
+PetscErrorCode ebb_stencil_sweep(const struct ebb_operator *op, PetscInt steps, const struct ebb_recurrence step[],
+                                 double complex x[], double complex z[]);
 
 #endif

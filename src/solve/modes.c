@@ -8,6 +8,7 @@
 #include "basis_impl.h"
 #include "channels.h"
 #include "far_waves.h"
+#include "flux_row.h"
 
 #include <float.h>
 #include <math.h>
@@ -67,21 +68,6 @@ static void walk_settle(struct walk *w)
   }
 }
 
-/* The inner loops, one pass over the modes per site; vectorised by the compiler. */
-static void emit(PetscInt n, double root, const double *restrict x, const double *restrict scale, double *restrict row)
-{
-  for (PetscInt j = 0; j < n; j++) row[j] = root * x[j] * scale[j];
-}
-
-static void advance(PetscInt n, double b, double over_c, const double *restrict zeta, double *restrict x,
-                    double *restrict y)
-{
-  for (PetscInt j = 0; j < n; j++) {
-    y[j] -= zeta[j] * b * x[j];
-    x[j] += y[j] * over_c;
-  }
-}
-
 static void walk_next(struct walk *w, PetscInt count, double *rows, bool settle)
 {
   const struct ebb_prescription *p = w->lattice->rows.prescription;
@@ -91,8 +77,7 @@ static void walk_next(struct walk *w, PetscInt count, double *rows, bool settle)
 
     if (w->site <= w->growing && w->site % CHECK_EVERY == 0) walk_rescale(w);
     if (settle && w->site == w->growing) walk_settle(w);
-    if (rows) emit(w->n, sqrt(b), w->x, w->scale, rows + i * w->n);
-    advance(w->n, b, 1.0 / p->hop(w->v), w->zeta, w->x, w->y);
+    ebb_flux_row(w->n, sqrt(b), b, 1.0 / p->hop(w->v), w->zeta, w->scale, w->x, w->y, rows ? rows + i * w->n : NULL);
     w->site++;
     w->v += 4.0;
   }

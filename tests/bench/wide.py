@@ -1,6 +1,6 @@
 #!/usr/bin/env python3
 # SPDX-License-Identifier: BSD-2-Clause
-"""Time against the largest volume at fixed accuracy: bounce-symmetric packets of momentum 20, ever sharper in momentum and so wider
+"""Time against the largest volume at fixed accuracy: bounce-symmetric packets of momentum 100, ever sharper in momentum and so wider
 in volume, at one tolerance. Each state says itself how far its lattice has to reach; graded lattices follow it, full ones while they
 are below --full (default 4e6). Prints a table; --plot PREFIX draws it. Program: $EBBTURN or build/ebbturn. Asserts that every ratio
 agrees with the closed form within its error bar."""
@@ -12,10 +12,10 @@ import sys
 import tempfile
 import time
 
-SIGMA = (5.0, 3.5, 2.8, 2.4, 2.1, 1.9, 1.7, 1.55, 1.4, 1.3, 1.2)
+SIGMA = (5.0, 4.4, 3.9, 3.4, 2.9, 2.5, 2.2, 1.9, 1.7, 1.5, 1.35)
 MODEL = """gravity: {{prescription: slqc}}
 clock: {{from: -0.3, to: 0.3, samples: 9}}
-state: {{profile: gaussian_momentum, momentum: 20, relative_spread: {spread!r}}}
+state: {{profile: gaussian_momentum, momentum: 100, relative_spread: {spread!r}}}
 lattice: {{layout: {layout}}}
 output: {{keep: [moments]}}
 """
@@ -26,7 +26,7 @@ def measure(folder, sigma, layout):
     """(largest v, rows, seconds, ratio, its error) of one run."""
     path = os.path.join(folder, "model.yaml")
     with open(path, "w", encoding="utf-8") as f:
-        f.write(MODEL.format(spread=sigma / 20, layout=layout))
+        f.write(MODEL.format(spread=sigma / 100, layout=layout))
     start = time.perf_counter()
     done = subprocess.run([PROGRAM, "evolve", path, "--force", "-o", os.path.join(folder, "out.h5")], capture_output=True, text=True,
                           timeout=3600, check=False)
@@ -38,7 +38,7 @@ def measure(folder, sigma, layout):
     return float(size[2]), int(size[1]), seconds, float(ratio[1]), float(ratio[2])
 
 
-def closed_form(sigma, p=20.0, points=20001):
+def closed_form(sigma, p=100.0, points=20001):
     """exp(kappa^2/8 sigma^2) <sqrt(k^2 + 1/4)>/<k>: the volume law of Ashtekar, Corichi, Singh (2008), trapezoidal rule."""
     import math
     kappa = math.sqrt(12 * math.pi)

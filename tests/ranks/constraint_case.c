@@ -94,6 +94,50 @@ static PetscErrorCode stencil_is_matrix(const char *name, double sector, PetscIn
   PetscFunctionReturn(0);
 }
 
+/* Many steps in one pass are the same steps one after the other, to the bit: with and without a potential and sums, an
+ * odd and an even number of them, more sites than a tile has and fewer than there are steps. */
+static PetscErrorCode sweep_is_steps(double s, PetscInt sites, PetscInt steps)
+{
+  enum { STEPS = 13 };
+  const struct ebb_constants c = constants();
+  struct ebb_rows model = {
+      .prescription = ebb_prescription_find("aps"), .clock = ebb_clock_find("scalar"), .constants = c, .sector = 4.0};
+  struct ebb_constraint *constraint;
+  struct ebb_lattice lattice;
+  struct ebb_recurrence step[STEPS];
+  struct ebb_tally tally[STEPS];
+  double complex *vector[2][2], *sum[2][2]; /* [way][older, newer], [way][p, q] */
+
+  PetscFunctionBegin;
+  model.s = s;
+  ebb_rows_make(&model);
+  PetscCall(ebb_lattice_make_model(&model, sites, PETSC_COMM_WORLD, &lattice));
+  PetscCall(ebb_constraint_create(&lattice, &c, PETSC_COMM_WORLD, &constraint));
+  const struct ebb_operator *op = ebb_constraint_operator(constraint);
+  const size_t bytes = (size_t)op->local * sizeof *vector[0][0];
+
+  for (int way = 0; way < 2; way++) {
+    for (int k = 0; k < 2; k++) {
+      PetscCall(PetscCalloc2(op->local, &vector[way][k], op->local, &sum[way][k]));
+      fill(&lattice, vector[way][k]);
+    }
+    for (PetscInt n = 0; n < steps; n++) {
+      tally[n] = (struct ebb_tally){{0.5, 1.0 / (double)(n + 1)}, {-0.25, 0.125}, sum[way][0], sum[way][1]};
+      step[n] = (struct ebb_recurrence){1.0 / op->high, n == 0 ? -0.25 : -0.5, n % 3 == 0 ? &tally[n] : NULL};
+      if (way == 0)
+        PetscCall(op->recur(op, step[n].scale, step[n].shift, vector[0][n % 2], vector[0][1 - n % 2], step[n].tally));
+    }
+    if (way == 1) PetscCall(op->sweep(op, steps, step, vector[1][0], vector[1][1]));
+  }
+  for (int k = 0; k < 2; k++)
+    ebb_rank_expect(!memcmp(vector[0][k], vector[1][k], bytes) && !memcmp(sum[0][k], sum[1][k], bytes),
+                    "s = %g, %d sites, %d steps: vector and sum %d differ", s, (int)sites, (int)steps, k);
+  for (int way = 0; way < 2; way++)
+    for (int k = 0; k < 2; k++) PetscCall(PetscFree2(vector[way][k], sum[way][k]));
+  PetscCall(ebb_constraint_destroy(&constraint));
+  PetscFunctionReturn(0);
+}
+
 /* Bounds and symmetry do not depend on the number of ranks. */
 static PetscErrorCode numbers_are_those_of_one_rank(const char *name, double sector, PetscInt sites)
 {
@@ -203,6 +247,11 @@ int main(int argc, char **argv)
       ebb_rank_call(stencil_is_matrix(name[i], sector[k], 40));
       ebb_rank_call(numbers_are_those_of_one_rank(name[i], sector[k], 40));
     }
+  for (int potential = 0; potential < 2; potential++) {
+    ebb_rank_call(sweep_is_steps(-0.2 * potential, 7, 13));
+    ebb_rank_call(sweep_is_steps(-0.2 * potential, 4500, 8));
+    ebb_rank_call(sweep_is_steps(-0.2 * potential, 4500, 1));
+  }
   ebb_rank_call(steps_are_those_of_one_rank("chebyshev", 4.0));
   ebb_rank_call(steps_are_those_of_one_rank("chebyshev", 1.0));
   ebb_rank_call(steps_are_those_of_one_rank("krylov", 4.0));

@@ -77,7 +77,9 @@ def time_limit(top, length):
     while len(codes) < 100:
         code, _, err = end(start(folder, *arguments(folder), "--time-limit", f"{0.5 * length:.2f}s"))
         codes.append(code)
-        if code != 75:
+        if codes == [0] and length > 0.1:  # the run that was measured had a busier machine
+            codes, length = [], 0.5 * length
+        elif code != 75:
             break
     check(len(codes) > 1 and set(codes[:-1]) == {75} and codes[-1] == 0, f"a chain of short jobs ends: {codes} {err}")
     return os.path.join(folder, "out.h5")

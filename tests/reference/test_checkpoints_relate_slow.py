@@ -31,6 +31,8 @@ def time_limit(top, result, reference, length):
     while len(codes) < 100 and (not codes or codes[-1] == 75):
         code, _, err = end(start(folder, *arguments(folder, RELATE), "--time-limit", f"{0.5 * length:.2f}s", command="relate"))
         codes.append(code)
+        if codes == [RELATE.code] and length > 0.1:  # the run that was measured had a busier machine
+            codes, length = [], 0.5 * length
     check(len(codes) > 1 and set(codes[:-1]) == {75} and codes[-1] == RELATE.code, f"a chain of short jobs ends: {codes} {err}")
     same(os.path.join(folder, "out.h5"), reference, "after it", but=("/@command",))
 

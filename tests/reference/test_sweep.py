@@ -228,6 +228,15 @@ def bad_readings(top):
           all(b"window from" in r for r in t["relational_b_fine_reason"][short]) and "4 failed" in done.stdout, "a reading that one case cannot give")
 
 
+def alone(top):
+    """Runs without a launcher, side by side: none may lean on what another one takes away at its end."""
+    folder = prepare(top, "alone")
+    script = 'for i in 1 2 3; do "$0" evolve flat.yaml -o "$1.h5" --force > /dev/null || exit; done'
+    runs = [subprocess.Popen(["sh", "-c", script, PROGRAM, str(i)], cwd=folder, stderr=subprocess.PIPE, text=True) for i in range(5)]
+    said = [run.communicate(timeout=110)[1] for run in runs]
+    check(all(run.returncode == 0 for run in runs) and not any(said), f"runs side by side say nothing: {''.join(said)}")
+
+
 def main():
     with tempfile.TemporaryDirectory() as top:
         _, t = numbers(top)
@@ -235,6 +244,7 @@ def main():
         failures(top)
         readings(top)
         bad_readings(top)
+        alone(top)
         folder = prepare(top, "two")
         sweep(folder, "plan.yaml", "--dry-run", ranks=2)
         sweep(folder, "plan.yaml", ranks=2)

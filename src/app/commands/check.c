@@ -127,7 +127,9 @@ static PetscErrorCode report(const struct ebb_invocation *invocation, const stru
       fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", model, run.problem);
   } else {
     const struct ebb_estimate e = ebb_run_estimate(&run);
+    double memory = e.memory;
 
+    PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, &memory, 1, MPI_DOUBLE, MPI_MAX, PETSC_COMM_WORLD));
     if (rank == 0) {
       print_constants(&run.constants);
       print_lattice(&run);
@@ -137,9 +139,9 @@ static PetscErrorCode report(const struct ebb_invocation *invocation, const stru
     }
     PetscCall(print_defect(&run, rank == 0));
     if (rank == 0)
-      printf("\nestimate\n  memory           %.4g MB per rank beside the libraries, %" PetscInt_FMT
+      printf("\nestimate\n  memory           %.4g MB per rank at the peak, %.4g of it for %" PetscInt_FMT
              " samples at once\n  result file      %.4g MB\n  time             %.2g s\n",
-             e.memory / MEGA, e.batch, e.file / MEGA, e.seconds);
+             memory / MEGA, e.work / MEGA, e.batch, e.file / MEGA, e.seconds);
   }
   PetscCall(ebb_run_destroy(&run));
   PetscFunctionReturn(0);

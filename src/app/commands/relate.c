@@ -151,7 +151,7 @@ static PetscErrorCode put(const struct ebb_invocation *first, struct ebb_store *
   PetscCall(ebb_relation_put_bounds(*store, r, &kept));
   PetscCall(ebb_relation_two_times_put(*store, r, two_times));
   PetscCall(ebb_keeper_put_history(&r->keeper, *store));
-  PetscCall(ebb_result_stamp(*store, "finished"));
+  PetscCall(ebb_result_finish(*store, PETSC_COMM_WORLD));
   PetscCall(ebb_store_commit(store, true));
   ebb_watch_release();
   if (r->keeper.speaks) ebb_checkpoint_remove(r->keeper.path);

@@ -163,7 +163,7 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
                               angle));
   }
   PetscCall(put_attributes(store, w));
-  PetscCall(ebb_result_stamp(store, "finished"));
+  PetscCall(ebb_result_finish(store, PETSC_COMM_WORLD));
   PetscFunctionReturn(0);
 }
 

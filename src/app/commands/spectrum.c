@@ -126,7 +126,7 @@ static PetscErrorCode put(struct ebb_store *store, const struct ebb_invocation *
                             "absolute error of: eigenvalue of the operator, ascending", values));
   PetscCall(put_functions(store, s));
   PetscCall(put_attributes(store, w));
-  PetscCall(ebb_result_stamp(store, "finished"));
+  PetscCall(ebb_result_finish(store, PETSC_COMM_WORLD));
   PetscFunctionReturn(0);
 }
 
