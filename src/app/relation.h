@@ -42,10 +42,6 @@ PetscErrorCode ebb_relation_read(const char *result, const char *readings, struc
 PetscErrorCode ebb_relation_read_readings(const char *path, struct ebb_relation *relation, int *code);
 /* The window's samples, of settings and readings; problem [size]: "" where it lies inside the run's range. */
 PetscErrorCode ebb_relation_window(struct ebb_relation *relation, char problem[], size_t size);
-/* The model of the settings, on every site, as readings need the states there, whatever the run took. *code, problem: 0
- * and "", or what is wrong. Collective on comm. */
-PetscErrorCode ebb_relation_make_run(struct ebb_relation *relation, const char *folder, MPI_Comm comm, char problem[],
-                                     size_t size, int *code);
 /* Prints a problem of the readings file; an exit code. */
 int ebb_relation_refuse(const struct ebb_relation *relation, const char *problem);
 /* The run of the settings, on a graded lattice where that saves much, or was asked for, and all readings can be taken
