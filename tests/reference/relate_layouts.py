@@ -28,8 +28,8 @@ def largest(values):
     return max(np.nanmax(np.abs(values), initial=0.0), 1e-300)
 
 
-def alike(name, full, graded):
-    """Every number of a reading within what both say of themselves."""
+def alike(name, full, graded, share=0.001):
+    """Every number of a reading within what both say of themselves; share: least probability on nodes, or it proves little."""
     one, two = full["relational/" + name], graded["relational/" + name]
     check(np.array_equal(ok(one), ok(two)), f"{name}: the same outcomes are refused")
     for key in NUMBERS:
@@ -45,6 +45,10 @@ def alike(name, full, graded):
     for key in ("back_action", "order_violation"):
         error = two.attrs.get("back_action_error", 0.0) + ROUNDING
         check(abs(one.attrs[key] - two.attrs[key]) <= error, f"{name}: {key} {two.attrs[key]:.12g}, {one.attrs[key]:.12g}")
+    if "system_sites" in two:
+        dwell, nodes = two["system_dwell"][()], two["system_sites"][()] > 1
+        on_nodes = dwell[nodes].sum() / dwell.sum()
+        check(on_nodes >= share, f"{name}: {on_nodes:.3g} of the probability is on nodes")
     holds(name, two)
 
 
@@ -55,4 +59,5 @@ def holds(name, reading):
     good, p = ok(reading), reading["probability"][()]
     lost = 1 - p[good].sum(axis=1)
     most = reading["leak"][()][good].max(initial=0.0) if reading.attrs["system"] == b"lnv" else 0.0  # v = 0 has no ln v
-    check(np.all(lost > -1e-11) and np.all(lost < most + 1e-11), f"{name}: probabilities of {good.sum()} outcomes sum to 1")
+    most += 1e-11 + reading.file["window"].attrs["edge_probability"]  # beyond the lattice
+    check(np.all(lost > -1e-11) and np.all(lost < most), f"{name}: probabilities of {good.sum()} outcomes sum to 1")

@@ -7,21 +7,21 @@ from relate_layouts import alike, both
 # an arm, of which sites and nodes beyond the matching volume are a small part of the sites
 MODEL = """
 gravity: {prescription: slqc}
-clock: {kind: scalar, from: -0.5, to: 0.5, samples: 41}
-state: {profile: gaussian_momentum, momentum: 60, relative_spread: 0.1, bounce_at: 0.02}
-lattice: {volume_max: 20000}
+clock: {kind: scalar, from: -0.9, to: 0.9, samples: 31}
+state: {profile: gaussian_momentum, momentum: 60, relative_spread: 0.085, bounce_at: 0.02}
+lattice: {volume_max: 120000}
 output: {keep: [moments]}
 """
 READINGS = """
-window: {tolerance: 0.05}
+window: {tolerance: 0.3}
 readings:
   - {name: phi, clock: {observable: phi}}
   - {name: volumes, clock: {observable: v, instrument: sharp, from: 20, to: 1500, bins: 12}}
-  - {name: logarithms, clock: {observable: lnv, instrument: cosine, from: 3, to: 8, bins: 10},
-     system: {observable: v, from: 10, to: 20002, bins: {log: 24}}}
-  - {name: b, clock: {observable: b, instrument: cosine_power, power: 32, centres: 40}}
-  - {name: b_lnv, clock: {observable: b, instrument: cosine_power, power: 32, centres: 40},
-     system: {observable: lnv, from: -1, to: 10, bins: 22}}
+  - {name: logarithms, clock: {observable: lnv, instrument: cosine, from: 3, to: 9, bins: 10},
+     system: {observable: v, from: 10, to: 120002, bins: {log: 24}}}
+  - {name: b, clock: {observable: b, instrument: cosine_power, power: 16, centres: 20}}
+  - {name: b_lnv, clock: {observable: b, instrument: cosine_power, power: 16, centres: 20},
+     system: {observable: lnv, from: -1, to: 12, bins: 26}}
 histories: {v_star: [16, 30, 44], at: [-0.25, 0.3], times: 4}
 """
 NOT_LOCAL = "readings:\n  - {name: rough, clock: {observable: b, instrument: sharp, bins: 16}}\n"
