@@ -22,7 +22,7 @@ from ebbturn_result import Result
 # Okabe and Ito's palette for colour-blind readers (Color Universal Design, 2008; from memory)
 BLUE, VERMILLION, ORANGE, BLACK, GREEN = "#0072b2", "#d55e00", "#e69f00", "#000000", "#009e73"
 BINS = 300  # logarithmic bins of volume: more than paper shows
-NAMES = {"b": r"$b$  (contracting $> \pi/2 >$ expanding)", "phi": r"$\varphi$", "phi2": r"$\varphi_2$", "v": r"$|v|$",
+NAMES = {"b": r"$b$  (expanding $< \pi/2 <$ contracting)", "phi": r"$\varphi$", "phi2": r"$\varphi_2$", "v": r"$|v|$",
          "dust": "dust time $T$", "sin2_b": r"$\sin^2 b$", "density": r"$\rho/\rho_c$", "hubble": "Hubble rate",
          "phi2_plus_b": r"$\varphi_2 + \alpha(\pi/2 - b)$", "density_sandwich": r"$\rho/\rho_c$ (sandwich)", "lnv": r"$\ln |v|$"}
 
@@ -104,8 +104,10 @@ def draw_dwell(axes, result, group):
             good = np.isfinite(result[group + "/median"])
             twin.plot(centre, np.where(good, values, np.nan), color=color, ls=dash, lw=1.3, label=label)
     twin.set_ylim(0, 1.05)
+    twin.set_ylabel("purity, spread, leak")
     lines = axes.get_legend_handles_labels()[0] + twin.get_legend_handles_labels()[0]
-    axes.legend(lines, [line.get_label() for line in lines], fontsize=8, loc="best", framealpha=0.9)
+    axes.legend(lines, [line.get_label() for line in lines], fontsize=8, loc="lower center", bbox_to_anchor=(0.5, 1.0), ncol=4,
+                frameon=False)
 
 
 def draw_comparison(axes, result):

@@ -39,7 +39,11 @@ def family(axis, result):
         axis.set_axis_off()
         return
     angle, value = result["selfadjoint/extension/angle"], result["selfadjoint/extension/eigenvalue"]
-    axis.errorbar(angle, value, result.error("selfadjoint/extension/eigenvalue"), fmt="s--", color=VERMILLION, mfc="white")
+    # an eigenvalue rises with the angle: where the least positive one falls, another has become it, and no line joins the two
+    falls = np.flatnonzero(np.diff(value) < 0) + 1
+    error = result.error("selfadjoint/extension/eigenvalue")
+    for part in np.split(np.arange(len(value)), falls):
+        axis.errorbar(angle[part], value[part], error[part], fmt="s--", color=VERMILLION, mfc="white")
     label = result.text("selfadjoint/extension/angle", "long_name").replace("label ", "")
     axis.set_xlabel(f"extension {label}, in [0, $\\pi$)")
     axis.set_ylabel("least positive eigenvalue [" + result.text("selfadjoint/extension/eigenvalue", "units") + "]")

@@ -18,6 +18,7 @@ except ImportError as missing:
     switch("plot_sweep", missing)
 
 SCALE = "gravity.polymer_scale"
+LEAST_SLOPE_SPAN = 0.02  # of the lower panel: equal slopes make a straight line, not a picture of their rounding
 MANY = 8  # curves from which on colours run in order and the legend stands beside the panel
 
 
@@ -111,6 +112,11 @@ def main():
     if x == SCALE and len(values := sorted({float(v) for axis in above.lines for v in axis.get_xdata()})) <= 12:
         below.set_xticks(values, [f"{v:g}" for v in values])
         below.minorticks_off()
+    if x == SCALE:
+        below.ticklabel_format(axis="y", useOffset=False)
+        low, high = below.get_ylim()
+        if high - low < LEAST_SLOPE_SPAN:
+            below.set_ylim((low + high - LEAST_SLOPE_SPAN) / 2, (low + high + LEAST_SLOPE_SPAN) / 2)
     prefix = arguments.o or os.path.splitext(arguments.result[0])[0]
     for suffix in (".pdf", ".png"):
         figure.savefig(prefix + suffix, dpi=120)

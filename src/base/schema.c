@@ -310,6 +310,7 @@ void ebb_setting_append_range(struct ebb_text *text, const struct ebb_setting *s
   const struct ebb_range *range = &setting->range;
 
   if (isinf(range->low) && isinf(range->high)) return;
+  if (setting->type == EBB_TYPE_NAME || setting->type == EBB_TYPE_FLAGS) return; /* words have choices */
   if (isinf(range->high)) {
     ebb_text_append(text, range->low_open ? "above " : "at least ");
     ebb_text_append_real(text, range->low);

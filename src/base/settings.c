@@ -332,6 +332,7 @@ void ebb_settings_print(const struct ebb_settings *settings, FILE *out)
     const struct ebb_setting *setting = ebb_setting_at(i);
 
     if (!written(setting, settings, &settings->state)) continue;
+    if (of_field(setting) && !settings->matter.kind[0]) continue;
     if (setting->type != EBB_TYPE_PARTS) {
       print_row(setting, setting->key, settings, &settings->state, out);
       continue;

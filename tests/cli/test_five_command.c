@@ -46,6 +46,12 @@ Test(five_command, worked_models)
     char *model = ebb_test_source_path(rows[i].model), path[1024];
     double values[2][32], errors[32], sum[2];
 
+    struct ebb_test_run check = ebb_test_ebbturn(folder, 0, (const char *const[]){"check", model, NULL});
+
+    cr_expect_eq(check.status, 0, "check of %s: exit %d, %s", rows[i].model, check.status, check.err);
+    cr_expect_not_null(strstr(check.out, "symmetry defect  0 by construction"), "%s", check.out);
+    ebb_test_run_clear(&check);
+
     snprintf(path, sizeof path, "%s/result.h5", folder);
     for (int two = 0; two < 2; two++) {
       struct ebb_test_run run = ebb_test_ebbturn(

@@ -154,7 +154,7 @@ static void print(const struct work *w)
   if (s->sliced)
     printf("  slicing        inertias %" PetscInt_FMT " and %" PetscInt_FMT " below the same ends\n", s->inertia[0],
            s->inertia[1]);
-  printf("  result         %s\n", w->path);
+  printf("  result         '%s'\n", w->path);
 }
 
 static PetscErrorCode spectrum(const struct ebb_invocation *invocation, const struct ebb_settings *settings,

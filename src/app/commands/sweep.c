@@ -201,10 +201,11 @@ static size_t tell_readings(const struct ebb_sweep *sweep)
 /* Rank 0: the summary; an exit code. */
 static int conclude(struct ebb_sweep *sweep)
 {
-  size_t done = 0, failed = 0, limit = 0, undecided = 0, yes = 0;
+  size_t done = 0, failed = 0, limit = 0, undecided = 0, yes = 0, unbounded = 0;
   size_t readings_failed;
   double worst = 0.0;
   const int slope = ebb_sweep_find("slope"), error = ebb_sweep_find("slope_error");
+  const int relative = ebb_sweep_find("relative_error");
 
   for (size_t c = 0; c < sweep->plan.cases; c++) {
     const struct ebb_sweep_row *row = &sweep->row[c];
@@ -214,14 +215,17 @@ static int conclude(struct ebb_sweep *sweep)
     failed += !strcmp(row->status, "failed");
     yes += !strcmp(row->verdict, "yes");
     undecided += !strcmp(row->verdict, "undecided");
-    worst =
-        fmax(worst,
-             isnan(row->value[ebb_sweep_find("relative_error")]) ? 0.0 : row->value[ebb_sweep_find("relative_error")]);
+    if (isinf(row->value[relative]))
+      unbounded++;
+    else
+      worst = fmax(worst, row->value[relative]); /* NaN, of a case without means, counts for nothing */
   }
   printf("%zu cases: %zu done, %zu with a broken numerical limit, %zu failed\n", sweep->plan.cases, done, limit,
          failed);
   printf("  bounce    %zu yes, %zu undecided, %zu no\n", yes, undecided, done + limit - yes - undecided);
-  printf("  error     mean volumes to %.1e relative or better\n", worst);
+  printf("  error     mean volumes to %.1e relative or better", worst);
+  if (unbounded > 0) printf(", but without a bound in %zu cases", unbounded);
+  putchar('\n');
   if (!isnan(sweep->row[0].value[slope]))
     printf("  slope     d ln V_B/d ln lambda = %.12g +- %.1e in the first group of cases\n", sweep->row[0].value[slope],
            sweep->row[0].value[error]);
