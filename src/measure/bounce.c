@@ -90,9 +90,10 @@ static PetscInt bracket_of(const struct ebb_samples *samples)
 }
 
 /* Looks for a bracket beyond the range on the side the packet comes from: exponential growth away from a bounce means
- * the turning point is at most ln(v/v_bounce)/kappa away, about where V+ e^X and V- e^-X balance. */
+ * the turning point is at most ln(v/v_bounce)/kappa away, about where V+ e^X and V- e^-X balance. last: where the
+ * search ended in vain. */
 static PetscErrorCode bracket_outside(struct ebb_source *source, const struct ebb_samples *samples, double *low,
-                                      double *high, bool *found)
+                                      double *high, double *last, bool *found)
 {
   const double kappa = source->lattice->rows.kappa;
   const double stride = (samples->phi[samples->m - 1] - samples->phi[0]) / OUTSIDE_STRIDES;
@@ -122,6 +123,7 @@ static PetscErrorCode bracket_outside(struct ebb_source *source, const struct eb
     v = next_v;
     slope = next_slope;
   }
+  *last = phi;
   PetscFunctionReturn(0);
 }
 
@@ -415,14 +417,35 @@ static PetscErrorCode judge(const struct ebb_samples *samples, const struct ebb_
   PetscFunctionReturn(0);
 }
 
+/* Whether the mean volume is known where the search for a turning point outside the range has ended: the lattice is
+ * made for the range, and its noise may cover what lies far outside. */
+static PetscErrorCode lost_at(struct ebb_source *source, struct ebb_source *check, const struct ebb_budget *budget,
+                              double clock, struct ebb_bounce *bounce, bool *lost)
+{
+  double slope_error;
+  char text[256];
+
+  PetscFunctionBegin;
+  PetscCall(values_at(source, check, budget, clock, 0.0, bounce, &slope_error));
+  *lost = !(bounce->v.error <= ERROR_ALLOWED * fabs(bounce->v.value));
+  blank(bounce);
+  if (!*lost) PetscFunctionReturn(0);
+  PetscCall(PetscSNPrintf(text, sizeof text,
+                          "no turning point in the clock range; outside, at clock %.4g, the error of the mean volume "
+                          "hides one: let clock.from and clock.to enclose the bounce",
+                          clock));
+  PetscCall(say(bounce, EBB_VERDICT_UNDECIDED, text));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *check, const struct ebb_samples *samples,
                                const struct ebb_budget *budget, bool mean_exists, struct ebb_bounce *bounce)
 {
   const struct ebb_lattice *lattice = source->lattice;
   PetscInt at;
   bool found;
-  double low = NAN, high = NAN, root = NAN, root_error = NAN, curvature = NAN, limit = 0.0, median_clock = NAN,
-         slope_error = 0.0, ends[2];
+  double low = NAN, high = NAN, last = NAN, root = NAN, root_error = NAN, curvature = NAN, limit = 0.0,
+         median_clock = NAN, slope_error = 0.0, ends[2];
 
   PetscFunctionBegin;
   blank(bounce);
@@ -436,7 +459,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     low = samples->phi[at];
     high = samples->phi[at + 1];
   } else {
-    PetscCall(bracket_outside(source, samples, &low, &high, &found));
+    PetscCall(bracket_outside(source, samples, &low, &high, &last, &found));
     bounce->outside = found;
   }
   if (!found && budget->edge_probability > EDGE_ALLOWED) { /* what is cut off might turn */
@@ -444,6 +467,10 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     PetscFunctionReturn(0);
   }
   if (!found) {
+    bool lost = false;
+
+    PetscCall(lost_at(source, check, budget, last, bounce, &lost));
+    if (lost) PetscFunctionReturn(0);
     PetscCall(
         say(bounce, EBB_VERDICT_NO, "no turning point in the clock range, nor where the trend of the mean points"));
     PetscFunctionReturn(0);

@@ -120,6 +120,19 @@ Test(law, bounce_between_or_outside_sparse_samples_is_found)
   }
 }
 
+/* A wide packet bounces at 0, where the law says so; seen from clock values whose lattice is too coarse in rounding for
+ * the volume there, that is no reason to deny it */
+Test(law, bounce_that_noise_hides_is_not_denied)
+{
+  struct ebb_test_model model;
+
+  ebb_test_model_create(&model, "{clock: {from: 4, to: 6, samples: 3}, output: {keep: [moments]},\n"
+                                "state: {profile: gaussian_momentum, momentum: 20, relative_spread: 0.03}}");
+  ebb_test_model_conclude(&model);
+  cr_expect_eq(model.record.bounce.verdict, EBB_VERDICT_UNDECIDED, "%s", model.record.bounce.reason);
+  ebb_test_model_destroy(&model);
+}
+
 /* A fixed sequence of numbers in [0, 1) (xorshift, Marsaglia, J. Stat. Softw. 8, 14 (2003)). */
 static double draw(void)
 {
