@@ -85,6 +85,11 @@ PetscErrorCode ebb_cursor_open(const struct ebb_basis *basis, int arm, PetscInt 
 void ebb_cursor_next(struct ebb_cursor *cursor, PetscInt count, double *rows);
 /* The same where rows are to be sites one by one although the lattice is graded (modes: any number of them). */
 PetscErrorCode ebb_cursor_open_sites(const struct ebb_basis *basis, int arm, PetscInt n, struct ebb_cursor **cursor);
+/* Volume from which modes with 0 < k <= k_max are their large-volume series to a rounding (three-point operators). */
+double ebb_basis_wave_volume(const struct ebb_rows *rows, double k_max);
+/* The functions at any |v| [count] of an arm beyond the volume from which they are waves (modes only), [count][size].
+ */
+PetscErrorCode ebb_basis_values(const struct ebb_basis *basis, int arm, PetscInt count, const double v[], double *rows);
 /* Nodes of a graded lattice: three rows each, [count][3][size]: e here; the difference of e/sqrt(B) from here to the
  * site next outward, by the flux, so that nothing cancels; e two sites outward. */
 void ebb_cursor_links(struct ebb_cursor *cursor, PetscInt count, double *rows);

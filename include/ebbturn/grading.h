@@ -9,13 +9,33 @@
 
 #include "ebbturn/lattice.h"
 
+/* What readers of states ask of a grading beyond its own rule; zeros ask nothing. */
+struct ebb_grading_needs {
+  double plain_v;  /* every site is kept up to here at least */
+  double shift;    /* psi is wanted at v -+ shift as well, and what is made of it is summed */
+  double k_max;    /* sums hold waves up to here */
+  PetscInt extra;  /* nodes more a block: what multiplies |psi|^2 is a smooth function of the block */
+  PetscInt alone;  /* a block of no more sites than this has all of them as its nodes */
+  PetscInt places; /* where psi is wanted for every node, beside itself */
+  PetscInt cuts;
+  double *cut; /* [cuts] volumes that no block reaches across; owned */
+};
+PetscErrorCode ebb_grading_needs_clear(struct ebb_grading_needs *needs);
+/* Adds a cut; NAN and infinities add nothing. */
+PetscErrorCode ebb_grading_needs_cut(struct ebb_grading_needs *needs, double v);
+
+/* Does no block of the lattice reach across a cut of the needs, but those that hold their sites one by one? */
+bool ebb_grading_suits(const struct ebb_lattice *lattice, const struct ebb_grading_needs *needs);
+
 struct ebb_grading_request {
   double first, step; /* of the lattice: v = first + step n, first the larger of two arms' */
+  double other_first; /* the smaller one; 0 where there is one arm */
   double plain_v;     /* every site is kept up to here at least: where the large-volume waves are good */
   double v_max;       /* last site */
   double k_max;       /* states are made of waves v^{ik} with |k| <= k_max */
   double ratio;       /* of a block, above 1 */
   double window;      /* ratio of the two outermost blocks: those that the edge of the lattice is judged by */
+  const struct ebb_grading_needs *needs; /* NULL: none */
 };
 
 /* The rule for a block is taken with as many nodes as interpolate |psi|^2 = v^{2ik} to 1e-14 of its largest value, by

@@ -5,6 +5,7 @@
 #ifndef EBBTURN_HISTORIES_H
 #define EBBTURN_HISTORIES_H
 
+#include "ebbturn/grading.h"
 #include "ebbturn/readings.h"
 #include "ebbturn/state.h"
 
@@ -42,10 +43,12 @@ PetscErrorCode ebb_histories_find(const struct ebb_packet *packet, const struct 
  * (Kuchar's objection; Gambini, Porto, Torterolo, Pullin, Phys. Rev. D 79, 041501 (2009), arXiv:0809.4235.) */
 struct ebb_two_time {
   PetscInt n;                                    /* sites */
-  double *v, *right, *conditional, *kinematical; /* [n], each normalised */
+  double *v, *right, *conditional, *kinematical; /* [n], each normalised; of rows that stand for `sites` [n] sites */
+  double *sites;
   double first_probability, distance_conditional, distance_kinematical, delay, delay_spread;
-  double lost; /* 1 - norm of `right` before it was normalised: beyond the lattice */
-  bool yes;    /* kinematical distance above 0.8 and conditional below 0.1 */
+  double distance_error; /* of distances, where rows stand for several sites: |p - q| has kinks */
+  double lost;           /* 1 - norm of `right` before it was normalised: beyond the lattice */
+  bool yes;              /* kinematical distance above 0.8 and conditional below 0.1 */
 };
 /* Grids: of the parameter for the kinematical space, of the clock, of t' and s; window: the parameter's range. */
 struct ebb_two_time_grids {
@@ -57,6 +60,9 @@ PetscErrorCode ebb_two_time_find(const struct ebb_packet *packet, const struct e
                                  const struct ebb_constants *constants, MPI_Comm comm,
                                  const struct ebb_two_time_settings *settings, const struct ebb_two_time_grids *grids,
                                  struct ebb_two_time *two_time, char problem[], size_t size);
+/* Adds what this needs of a graded lattice: functions of all k that reach the first volumes. lattice: rows count. */
+PetscErrorCode ebb_two_time_needs(const struct ebb_lattice *lattice, const struct ebb_two_time_settings *settings,
+                                  struct ebb_grading_needs *needs);
 PetscErrorCode ebb_two_time_clear(struct ebb_two_time *two_time);
 
 #endif

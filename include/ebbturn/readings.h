@@ -22,6 +22,8 @@ extern const char *const ebb_instrument_names[]; /* ended by NULL */
 enum ebb_function { EBB_FUNCTION_NONE, EBB_FUNCTION_SQRT, EBB_FUNCTION_SQUARE, EBB_FUNCTION_LOG, EBB_FUNCTION_INVERSE };
 extern const char *const ebb_function_names[EBB_FUNCTIONS + 1]; /* "none" first, ended by NULL */
 double ebb_function_value(enum ebb_function function, double x);
+/* x >= 0 at which it takes that value. */
+double ebb_function_inverse(enum ebb_function function, double value);
 
 /* A word for an observable, and what may be asked of it. */
 struct ebb_reading_word {

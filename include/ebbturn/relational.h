@@ -11,9 +11,10 @@
 #define EBBTURN_RELATIONAL_H
 
 #include "ebbturn/constants.h"
-#include "ebbturn/lattice.h"
+#include "ebbturn/grading.h"
 #include "ebbturn/observables.h"
 #include "ebbturn/readings.h"
+#include "ebbturn/state.h"
 
 #include <complex.h>
 
@@ -29,6 +30,18 @@ struct ebb_circle {
   PetscInt points; /* 1: there is none */
   double length, momentum;
 };
+
+/* Can a reading be taken on a graded lattice, where psi is known at any v but not site by site? Clock and system have
+ * to be functions of v, or the clock the parameter, or b with instrument cosine_power, which is local. why [size]: what
+ * does not fit. */
+bool ebb_reading_is_graded(const struct ebb_reading_settings *reading, const char *parameter, char why[], size_t size);
+
+/* What the nodes of a graded lattice leave open of |psi|^2, psi [local]: the last two coefficients of it in the
+ * polynomials of a block, summed over blocks; a bound where they fall. Sums over whole blocks are much better.
+ * Collective.
+ */
+PetscErrorCode ebb_graded_resolution(const struct ebb_lattice *lattice, MPI_Comm comm, const double complex psi[],
+                                     double *error);
 
 /* What every reading of a run shares. */
 struct ebb_relational_model {
@@ -57,11 +70,12 @@ struct ebb_reading_result {
   double *intervals; /* disjoint stretches of the parameter in which the clock may read this */
   double *probability, *quantile, *quantile_error;
   double *system_centre, *system_dwell, *level; /* system_dwell: int dt Tr P_Q rho_t, whatever the clock reads */
-  char (*status)[160];                          /* "ok" or "refused: reason" */
+  double *system_sites; /* sites that a bin stands for, where the bins are the rows of a graded lattice; else NULL */
+  char (*status)[160];  /* "ok" or "refused: reason" */
   bool *refused;
-  double back_action, order_violation, order_width;
-  double resolution, back_action_spread; /* cosine_power; NAN elsewhere */
-  bool commuting, mean_exists, binned;   /* binned: sites would not fit the limit, bins in ln v instead */
+  double back_action, back_action_error, order_violation, order_width; /* error: of a graded lattice, 0 elsewhere */
+  double resolution, back_action_spread;                               /* cosine_power; NAN elsewhere */
+  bool commuting, mean_exists, binned; /* binned: sites would not fit the limit, bins in ln v instead */
   double identity_probability, identity_dwell, identity_action, identity_commuting; /* residuals, rounding */
   double norm_drift;                                                                /* |int ||psi||^2 dt - 2W|/2W */
   double outside;                                                                   /* dwell outside the clock's bins */
@@ -73,6 +87,11 @@ extern const char *const ebb_clock_verdict_names[]; /* "unusable", "poor", "good
 
 struct ebb_relational; /* opaque */
 
+/* Adds what readings need of a graded lattice that ends at |v| = last. model: lattice (the rows of any number of
+ * sites), constants and momentum_mean count. */
+PetscErrorCode ebb_relational_needs(const struct ebb_relational_model *model, double last, size_t n,
+                                    const struct ebb_reading_settings reading[], struct ebb_grading_needs *needs);
+
 /* problem [size]: what is wrong with reading *which on this model; "" where nothing is. Collective. */
 PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, size_t n,
                                      const struct ebb_reading_settings reading[], struct ebb_relational **relational,
@@ -82,6 +101,13 @@ PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, s
  * transforms of twice the lattice. */
 PetscErrorCode ebb_relational_add(struct ebb_relational *relational, PetscInt first, PetscInt count,
                                   const double complex psi[]);
+/* On a graded lattice readings of b need psi beside the rows as well: places of this rank (0: none of them is asked
+ * for), their states [count][places] at parameter values t, and the states of both kinds handed on. */
+PetscInt ebb_relational_places(const struct ebb_relational *relational);
+PetscErrorCode ebb_relational_around(const struct ebb_relational *relational, const struct ebb_packet *packet,
+                                     PetscInt count, const double t[], double complex around[]);
+PetscErrorCode ebb_relational_add_around(struct ebb_relational *relational, PetscInt first, PetscInt count,
+                                         const double complex psi[], const double complex around[]);
 /* All that was accumulated over the first `next` samples, to a checkpoint, or from one into readings just created of
  * the same settings on the same model; on as many ranks later numbers have the same bits, on others they agree to
  * rounding. PETSC_ERR_FILE_UNEXPECTED where the checkpoint is of other readings. Before finish. Collective. */

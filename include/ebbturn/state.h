@@ -113,6 +113,9 @@ PetscErrorCode ebb_plan_make(const struct ebb_state_request *request, const stru
                              double to, struct ebb_plan *plan);
 PetscErrorCode ebb_plan_clear(struct ebb_plan *plan);
 
+/* Gauss-Legendre rule of n nodes on (low, high), right to a rounding; the caller frees k and w, [n]. */
+PetscErrorCode ebb_gauss_legendre(double low, double high, PetscInt n, double **k, double **w);
+
 /* Packet in generalised eigenfunctions; check selects the independent rule. Collective: l2 vectors are resolved by a
  * sum over sites shared among ranks. */
 PetscErrorCode ebb_packet_create_modes(const struct ebb_state_request *request, const struct ebb_lattice *lattice,

@@ -147,30 +147,49 @@ PetscErrorCode ebb_relation_read(const char *result, const char *readings, struc
   PetscFunctionReturn(0);
 }
 
+/* The first thing asked for that no graded lattice gives. */
+static bool needs_every_site(const struct ebb_relation *r, char why[], size_t size)
+{
+  const char *parameter = strcmp(r->settings.clock.kind, "dust") ? "phi" : "dust";
+  char text[200];
+
+  why[0] = '\0';
+  for (size_t i = 0; i < r->readings.readings && !why[0]; i++)
+    if (!ebb_reading_is_graded(&r->readings.reading[i], parameter, text, sizeof text))
+      (void)snprintf(why, size, "readings[%zu] ('%s'): %s", i, r->readings.reading[i].name, text);
+  return why[0] != '\0';
+}
+
 PetscErrorCode ebb_relation_make_run(struct ebb_relation *r, const char *folder, MPI_Comm comm, char problem[],
                                      size_t size, int *code)
 {
-  char *layout = r->settings.lattice.layout;
+  char why[320];
 
   PetscFunctionBegin;
+  *code = EBB_EXIT_OK;
   problem[0] = '\0';
-  if (!strcmp(layout, "graded")) {
-    *code = EBB_EXIT_USAGE;
-    (void)snprintf(problem, size,
-                   "it has lattice.layout = 'graded', and readings need the states on every site\n"
-                   "  try       lattice.layout = 'full' with a lattice.volume_max that can be held");
-    PetscFunctionReturn(0);
+  if (needs_every_site(r, why, sizeof why)) {
+    if (!strcmp(r->settings.lattice.layout, "graded")) {
+      *code = EBB_EXIT_USAGE;
+      (void)snprintf(problem, size,
+                     "%s, and the model has lattice.layout = 'graded'; take a clock with instrument 'cosine_power', or "
+                     "lattice.layout full with a lattice.volume_max that can be held",
+                     why);
+      PetscFunctionReturn(0);
+    }
+    (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
   }
-  (void)snprintf(layout, sizeof r->settings.lattice.layout, "full");
-  PetscCall(ebb_run_create(&r->settings, folder, comm, &r->run, code));
-  if (*code) (void)snprintf(problem, size, "%.255s", r->run.problem[0] ? r->run.problem : "the set-up failed");
+  PetscCall(ebb_run_create_read(&r->settings, folder, comm, &r->readings, &r->run, code));
+  if (*code)
+    (void)snprintf(problem, size, "%.320s%s%s", r->run.problem[0] ? r->run.problem : "the set-up failed",
+                   why[0] ? "; every site is wanted: " : "", why);
   PetscFunctionReturn(0);
 }
 
 PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
 {
   const char *result = r->keeper.origin.place, *slash = strrchr(result, '/');
-  char folder[EBB_PATH_MAX], problem[320];
+  char folder[EBB_PATH_MAX], problem[800];
 
   PetscFunctionBegin;
   (void)snprintf(folder, sizeof folder, "%.*s", slash ? (int)(slash - result) : 1, slash ? result : ".");
@@ -179,7 +198,7 @@ PetscErrorCode ebb_relation_set_up(struct ebb_relation *r, int *code)
     if (speaks()) fprintf(stderr, "ebbturn: error: 1 problem in '%s'; nothing was computed\n  %s\n", result, problem);
     PetscFunctionReturn(0);
   }
-  PetscCall(find_rows(r));
+  if (!r->run.graded) PetscCall(find_rows(r));
   PetscCall(ebb_run_start(&r->run));
   PetscFunctionReturn(0);
 }

@@ -30,6 +30,7 @@ struct ebb_relation {
   double *t;               /* [m]: the window */
   hsize_t *row;            /* [m]: rows of /state/psi, NULL where states are evolved again */
   double state_error;      /* relative to the norm */
+  double grading_error;    /* of probabilities, by the last coefficients of every block */
   double edge_probability; /* largest P(|v| > 0.9 of the largest one) over the window */
 };
 
@@ -41,12 +42,12 @@ PetscErrorCode ebb_relation_read(const char *result, const char *readings, struc
 PetscErrorCode ebb_relation_read_readings(const char *path, struct ebb_relation *relation, int *code);
 /* The window's samples, of settings and readings; problem [size]: "" where it lies inside the run's range. */
 PetscErrorCode ebb_relation_window(struct ebb_relation *relation, char problem[], size_t size);
-/* The model of the settings, on every site, as readings need the states there, whatever the run took. *code, problem: 0
- * and "", or what is wrong. Collective on comm. */
-PetscErrorCode ebb_relation_make_run(struct ebb_relation *relation, const char *folder, MPI_Comm comm, char problem[],
-                                     size_t size, int *code);
 /* Prints a problem of the readings file; an exit code. */
 int ebb_relation_refuse(const struct ebb_relation *relation, const char *problem);
+/* The run of the settings, on a graded lattice where that saves much, or was asked for, and all readings can be taken
+ * there; else on every site. problem [size]: what is wrong where *code is not 0. Collective. */
+PetscErrorCode ebb_relation_make_run(struct ebb_relation *relation, const char *folder, MPI_Comm comm, char problem[],
+                                     size_t size, int *code);
 /* Sets up the model of what was read. *code: 0, 2 or 4. Collective. */
 PetscErrorCode ebb_relation_set_up(struct ebb_relation *relation, int *code);
 PetscErrorCode ebb_relation_destroy(struct ebb_relation *relation);

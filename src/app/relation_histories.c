@@ -93,6 +93,11 @@ static PetscErrorCode put_two_time(struct ebb_store *store, const struct ebb_rel
                             "probability by evolving constants, readings integrated over the parameter", scale));
   PetscCall(ebb_result_line(store, "/propagator/kinematical", x->n, x->kinematical, "1",
                             "probability by kinematical projectors, which freeze the universe", scale));
+  if (r->run.graded) {
+    PetscCall(
+        ebb_result_line(store, "/propagator/sites", x->n, x->sites, "1", "sites that a volume stands for", scale));
+    PetscCall(ebb_store_set_real(store, group, "distance_error", x->distance_error));
+  }
   PetscCall(ebb_store_set_real(store, group, "first_probability", x->first_probability));
   PetscCall(ebb_store_set_real(store, group, "distance_conditional", x->distance_conditional));
   PetscCall(ebb_store_set_real(store, group, "distance_kinematical", x->distance_kinematical));

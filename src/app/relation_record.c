@@ -61,6 +61,11 @@ static PetscErrorCode put_tables(struct ebb_store *store, const char *group, con
   PetscCall(PetscSNPrintf(path, sizeof path, "%s/system_dwell", group));
   PetscCall(ebb_result_line(store, path, x->bins, x->system_dwell, "1",
                             "parameter time that the system spends in a bin, whatever the clock reads", system));
+  if (x->system_sites) {
+    PetscCall(PetscSNPrintf(path, sizeof path, "%s/system_sites", group));
+    PetscCall(ebb_result_line(store, path, x->bins, x->system_sites, "1", "sites that a bin of the system stands for",
+                              system));
+  }
   PetscCall(PetscSNPrintf(path, sizeof path, "%s/probability", group));
   PetscCall(ebb_store_put(store,
                           &(struct ebb_dataset){.path = path,
@@ -121,6 +126,7 @@ static PetscErrorCode put_attributes(struct ebb_store *store, const char *group,
     const char *name;
     double value;
   } rows[] = {{"back_action", x->back_action},
+              {"back_action_error", x->system_sites ? x->back_action_error : NAN},
               {"order_violation", x->order_violation},
               {"order_width", x->order_width},
               {"resolution", x->resolution},

@@ -78,11 +78,19 @@ PetscErrorCode ebb_relation_compare_rules(struct ebb_relation *r)
   PetscCall(evaluate(r, true, 2, ends, psi + 2 * one));
   for (size_t i = 0; i < 2 * one; i++) {
     const double complex d = psi[i] - psi[2 * one + i];
+    const double weight = l->grading ? ebb_lattice_weight(l, l->begin + (PetscInt)(i % one)) : 1.0;
 
-    distance[i / one] += creal(d * conj(d));
+    distance[i / one] += weight * creal(d * conj(d));
   }
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, distance, 2, MPI_DOUBLE, MPI_SUM, r->run.comm));
   r->state_error = fmax(r->state_error, sqrt(fmax(distance[0], distance[1])));
+  for (int i = 0; l->grading && i < 2; i++) {
+    double open;
+
+    PetscCall(ebb_graded_resolution(l, r->run.comm, psi + (size_t)i * one, &open));
+    r->grading_error = fmax(r->grading_error, open);
+  }
+  r->state_error += 0.5 * r->grading_error; /* of amplitudes: probabilities move by twice as much */
   PetscCall(PetscFree(psi));
   PetscFunctionReturn(0);
 }
@@ -156,15 +164,16 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
 {
   const size_t one =
       (size_t)(r->run.lattice.end - r->run.lattice.begin) * (size_t)(r->run.bundle ? r->run.bundle->points : 1);
+  const size_t places = (size_t)ebb_relational_places(relational);
   struct ebb_relation_state state = {r, relational};
   struct ebb_progress progress;
   PetscInt batch;
-  double complex *psi;
+  double complex *psi, *around;
   bool stop;
 
   PetscFunctionBegin;
-  PetscCall(choose_batch(r, one, &batch));
-  PetscCall(PetscMalloc1((size_t)batch * one, &psi));
+  PetscCall(choose_batch(r, one + places, &batch));
+  PetscCall(PetscMalloc2((size_t)batch * one, &psi, (size_t)batch * places, &around));
   ebb_progress_start(&progress, r->run.comm, mode, "window sample", r->keeper.next, r->m);
   PetscCall(safe_point(r, &state, &stop, code));
   while (!stop && r->keeper.next < r->m) {
@@ -175,13 +184,14 @@ PetscErrorCode ebb_relation_stream(struct ebb_relation *r, const char *mode, str
     else
       PetscCall(evaluate(r, false, count, r->t + first, psi));
     PetscCall(watch_edge(r, count, psi));
-    PetscCall(ebb_relational_add(relational, first, count, psi));
+    PetscCall(ebb_relational_around(relational, r->run.packet, count, r->t + first, around));
+    PetscCall(ebb_relational_add_around(relational, first, count, psi, around));
     r->keeper.next += count;
     ebb_progress_tell(&progress, r->keeper.next);
     PetscCall(safe_point(r, &state, &stop, code));
   }
   ebb_progress_end(&progress);
-  PetscCall(PetscFree(psi));
+  PetscCall(PetscFree2(psi, around));
   PetscFunctionReturn(0);
 }
 

@@ -185,13 +185,19 @@ static PetscErrorCode plan_lattice(struct ebb_run *run, const struct ebb_state_r
 PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *folder, MPI_Comm comm,
                               struct ebb_run *run, int *code)
 {
+  return ebb_run_create_read(settings, folder, comm, NULL, run, code);
+}
+
+PetscErrorCode ebb_run_create_read(const struct ebb_settings *settings, const char *folder, MPI_Comm comm,
+                                   const struct ebb_readings *readings, struct ebb_run *run, int *code)
+{
   const struct ebb_gravity_settings *g = &settings->gravity;
   const struct ebb_prescription *p = ebb_prescription_find(g->prescription);
   struct ebb_state_request request;
 
   PetscFunctionBegin;
   *code = EBB_EXIT_OK;
-  *run = (struct ebb_run){.settings = settings, .comm = comm};
+  *run = (struct ebb_run){.settings = settings, .comm = comm, .readings = readings};
   run->constants = ebb_constants_make(g->newton, g->immirzi, g->polymer_scale);
   PetscCheck(p, comm, PETSC_ERR_ARG_UNKNOWN_TYPE, "no prescription '%s'", g->prescription);
   run->rows = ebb_rows_of_settings(settings);

@@ -6,6 +6,7 @@
 #define EBBTURN_APP_RUN_H
 
 #include "ebbturn/observables.h"
+#include "ebbturn/readings.h"
 #include "ebbturn/settings.h"
 
 /* EBB_METHOD_LEVELS: the levels of a discrete spectrum, or of a wall beyond the packet's reach; also called
@@ -27,6 +28,7 @@ struct ebb_run {
   struct ebb_lattice lattice, check_lattice; /* check: of the independent rule */
   /* Graded lattices: the grading, why (or why not), and the same packet on a lattice graded in another way, by which
    * the error of the grading is measured. */
+  const struct ebb_readings *readings; /* that a graded lattice has to suit; NULL: none */
   bool graded;
   char why_layout[256];
   struct ebb_grading *grading, *other_grading;
@@ -51,6 +53,9 @@ struct ebb_run {
  * Collective. */
 PetscErrorCode ebb_run_create(const struct ebb_settings *settings, const char *folder, MPI_Comm comm,
                               struct ebb_run *run, int *code);
+/* The same, the lattice, where it is graded, such that readings can be taken on it; they have to outlive the run. */
+PetscErrorCode ebb_run_create_read(const struct ebb_settings *settings, const char *folder, MPI_Comm comm,
+                                   const struct ebb_readings *readings, struct ebb_run *run, int *code);
 /* Has |v| a mean? Where the packet has no weight at k = 0, and behind a wall; never in the limit-circle case. */
 bool ebb_run_mean_exists(const struct ebb_run *run);
 /* Are there levels rather than modes behind the state? */

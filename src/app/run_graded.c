@@ -4,6 +4,8 @@
 #include "run.h"
 
 #include "ebbturn/grading.h"
+#include "ebbturn/histories.h"
+#include "ebbturn/relational.h"
 
 #include <math.h>
 #include <stdio.h>
@@ -30,13 +32,37 @@ const char *ebb_run_not_graded(const struct ebb_run *run)
   return NULL;
 }
 
-static PetscErrorCode make(const struct ebb_run *run, double ratio, double margin, struct ebb_grading **grading)
+/* What the run's readings need of a lattice up to v = v_max. */
+static PetscErrorCode needs_of(const struct ebb_run *run, double v_max, struct ebb_grading_needs *needs)
 {
+  const struct ebb_lattice *l = &run->lattice;
+  const double first = l->rows.half ? l->first[0] : fmax(l->first[0], l->first[1]);
+  const double last = first + l->rows.step * floor((v_max - first) / l->rows.step);
+  const struct ebb_relational_model model = {.lattice = l,
+                                             .constants = &run->constants,
+                                             .parameter = "phi",
+                                             .momentum_mean = run->plan.edge_k * run->rows.kappa};
+
+  PetscFunctionBegin;
+  *needs = (struct ebb_grading_needs){0};
+  if (!run->readings) PetscFunctionReturn(0);
+  PetscCall(ebb_relational_needs(&model, last, run->readings->readings, run->readings->reading, needs));
+  PetscCall(ebb_two_time_needs(l, &run->readings->two_time, needs));
+  PetscFunctionReturn(0);
+}
+
+/* *rows_seen: of an arm, those beside nodes that readings want included; NULL: not asked for. */
+static PetscErrorCode make(const struct ebb_run *run, double ratio, double margin, struct ebb_grading **grading,
+                           double *rows_seen)
+{
+  struct ebb_grading_needs needs;
   const struct ebb_rows *rows = &run->rows;
   const struct ebb_plan *plan = &run->plan;
   const double asked = run->settings->lattice.volume_max;
   const struct ebb_grading_request request = {
       .first = rows->half ? rows->sector : fmax(rows->sector, rows->step - rows->sector),
+      .other_first = rows->half ? 0.0 : fmin(rows->sector, rows->step - rows->sector),
+      .needs = &needs,
       .step = rows->step,
       .plain_v = margin * plan->match_v + SPARE * rows->step,
       .v_max = asked > 0.0 ? asked : plan->v_max,
@@ -45,27 +71,31 @@ static PetscErrorCode make(const struct ebb_run *run, double ratio, double margi
       .window = ebb_edge_ratio(plan->edge_k)};
 
   PetscFunctionBegin;
+  PetscCall(needs_of(run, request.v_max, &needs));
   PetscCall(ebb_grading_make(&request, grading));
+  if (rows_seen && *grading)
+    *rows_seen = (double)(*grading)->rows + (double)needs.places * (double)((*grading)->rows - (*grading)->plain);
+  PetscCall(ebb_grading_needs_clear(&needs));
   PetscFunctionReturn(0);
 }
 
 /* What auto decides once both plans are known; *wide: NULL where nothing is to be graded. */
-static PetscErrorCode choose(struct ebb_run *run, double full_sites, struct ebb_grading *wide)
+static PetscErrorCode choose(struct ebb_run *run, double full_sites, struct ebb_grading *wide, double rows)
 {
   const char *said = run->settings->lattice.layout;
   char *why = run->why_layout;
 
   PetscFunctionBegin;
-  run->graded = wide && (!strcmp(said, "graded") || full_sites > WORTH * (double)wide->rows);
+  run->graded = wide && (!strcmp(said, "graded") || full_sites > WORTH * rows);
   if (!strcmp(said, "graded"))
     PetscCall(PetscSNPrintf(why, sizeof run->why_layout, "asked for in lattice.layout"));
   else if (!wide)
     PetscCall(PetscSNPrintf(why, sizeof run->why_layout, "the packet lives where every site is needed"));
   else
     PetscCall(PetscSNPrintf(why, sizeof run->why_layout,
-                            run->graded ? "%" PetscInt_FMT " rows an arm stand for %.4g sites"
-                                        : "%" PetscInt_FMT " rows an arm for %.4g sites would save too little",
-                            wide->rows, wide->sites));
+                            run->graded ? "%.0f rows an arm stand for %.4g sites"
+                                        : "%.0f rows an arm for %.4g sites would save too little",
+                            rows, wide->sites));
   PetscFunctionReturn(0);
 }
 
@@ -77,6 +107,7 @@ PetscErrorCode ebb_run_plan_graded(struct ebb_run *run, const struct ebb_state_r
   const double v_full = s->lattice.volume_max > 0.0 ? s->lattice.volume_max : run->plan.v_max;
   struct ebb_state_request wide = *request;
   struct ebb_plan plan = run->plan;
+  double rows = 0.0;
 
   PetscFunctionBegin;
   if (not_graded || !strcmp(s->lattice.layout, "full") || (keeps && !asked)) {
@@ -87,13 +118,13 @@ PetscErrorCode ebb_run_plan_graded(struct ebb_run *run, const struct ebb_state_r
     PetscFunctionReturn(0);
   }
   if (!asked && v_full / run->rows.step < WORTH * (plan.match_v / run->rows.step + SPARE)) {
-    PetscCall(choose(run, 0.0, NULL));
+    PetscCall(choose(run, 0.0, NULL, 0.0));
     PetscFunctionReturn(0);
   }
   wide.wide = true;
   PetscCall(ebb_plan_make(&wide, &run->lattice, s->clock.from, s->clock.to, &run->plan));
-  PetscCall(make(run, RATIO, MARGIN, &run->grading));
-  PetscCall(choose(run, v_full / run->rows.step, run->grading));
+  PetscCall(make(run, RATIO, MARGIN, &run->grading, &rows));
+  PetscCall(choose(run, v_full / run->rows.step, run->grading, rows));
   if (!run->graded) {
     if (asked)
       PetscCall(PetscSNPrintf(run->problem, sizeof run->problem,
@@ -105,7 +136,7 @@ PetscErrorCode ebb_run_plan_graded(struct ebb_run *run, const struct ebb_state_r
     PetscFunctionReturn(0);
   }
   PetscCall(ebb_plan_clear(&plan));
-  PetscCall(make(run, OTHER_RATIO, OTHER_MARGIN, &run->other_grading));
+  PetscCall(make(run, OTHER_RATIO, OTHER_MARGIN, &run->other_grading, NULL));
   PetscCall(ebb_lattice_make_graded(&run->rows, run->grading, run->comm, &run->lattice));
   PetscFunctionReturn(0);
 }

@@ -23,6 +23,22 @@ double ebb_function_value(enum ebb_function function, double x)
   }
 }
 
+double ebb_function_inverse(enum ebb_function function, double value)
+{
+  switch (function) {
+  case EBB_FUNCTION_SQRT:
+    return value * value;
+  case EBB_FUNCTION_SQUARE:
+    return sqrt(value);
+  case EBB_FUNCTION_LOG:
+    return exp(value);
+  case EBB_FUNCTION_INVERSE:
+    return 1.0 / value;
+  default:
+    return value;
+  }
+}
+
 void ebb_readings_clear(struct ebb_readings *readings)
 {
   free(readings->reading);

@@ -37,13 +37,10 @@ static PetscErrorCode make_taps(struct ebb_cosine *c)
 static PetscErrorCode make_bins(struct ebb_relational *r, struct ebb_engine *e, struct ebb_cosine *c)
 {
   const PetscInt n = r->space->sites + 2 * c->half;
-  const double v0 = r->space->v[0];
   double low = INFINITY, high = 0.0;
 
   PetscFunctionBegin;
-  PetscCall(PetscMalloc1(n, &c->size));
   for (PetscInt i = 0; i < n; i++) {
-    c->size[i] = fabs(v0 + 4.0 * (double)(i - c->half));
     if (c->size[i] > 0.0) low = fmin(low, c->size[i]);
     high = fmax(high, c->size[i]);
   }
@@ -70,9 +67,10 @@ PetscErrorCode ebb_cosine_create(struct ebb_relational *r, struct ebb_engine *e)
   c->m = e->settings.centres;
   c->halo = c->p;
   c->half = c->p / 2;
+  c->off = l->grading && !l->rows.half ? 0 : c->half;
   c->local = l->end - l->begin;
-  c->out_begin = l->begin - (r->rank == 0 ? c->half : 0);
-  c->out = l->end + (r->rank == r->ranks - 1 ? c->half : 0) - c->out_begin;
+  c->out_begin = l->begin - (r->rank == 0 ? c->off : 0);
+  c->out = l->end + (r->rank == r->ranks - 1 && !l->grading ? c->half : 0) - c->out_begin;
   c->below = r->rank > 0 ? r->rank - 1 : MPI_PROC_NULL;
   c->above = r->rank < r->ranks - 1 ? r->rank + 1 : MPI_PROC_NULL;
   least = c->local;
@@ -80,13 +78,12 @@ PetscErrorCode ebb_cosine_create(struct ebb_relational *r, struct ebb_engine *e)
   c->narrow = r->ranks > 1 && least < c->halo;
   if (c->narrow) PetscCall(PetscMalloc1(r->space->sites, &c->whole));
   PetscCall(make_taps(c));
+  PetscCall(ebb_cosine_make_places(r, e));
   PetscCall(PetscMalloc2(c->m * BLOCK, &c->work, c->m * BLOCK, &c->tally));
-  PetscCall(PetscCalloc1(c->local + 2 * c->halo, &c->ext));
   c->plan = fftw_plan_many_dft(1, &c->m, BLOCK, (fftw_complex *)c->work, NULL, 1, c->m, (fftw_complex *)c->work, NULL,
                                1, c->m, FFTW_BACKWARD, FFTW_ESTIMATE);
   PetscCheck(c->plan, PETSC_COMM_SELF, PETSC_ERR_LIB, "FFTW has no plan for length %d", c->m);
-  PetscCall(make_bins(r, e, c));
-  PetscCall(PetscCalloc1((size_t)e->bins->n * (size_t)c->m, &c->histogram));
+  if (!l->grading) PetscCall(make_bins(r, e, c));
   PetscCall(PetscCalloc1(1, &e->windows));
   e->windows->n = c->m;
   PetscCall(PetscMalloc1(c->m, &e->windows->centre));
@@ -106,8 +103,10 @@ PetscErrorCode ebb_cosine_destroy(struct ebb_cosine **cosine)
   PetscCall(PetscFree2(c->tap, c->factor));
   PetscCall(PetscFree2(c->work, c->tally));
   PetscCall(PetscFree(c->histogram));
-  PetscCall(PetscFree(c->ext));
-  PetscCall(PetscFree(c->size));
+  if (!c->taps) PetscCall(PetscFree(c->ext));
+  PetscCall(PetscFree2(c->taps, c->group));
+  PetscCall(PetscFree2(c->at, c->share));
+  PetscCall(PetscFree2(c->size, c->value));
   PetscCall(PetscFree(c->run));
   PetscCall(PetscFree(c->correlation));
   PetscCall(PetscFree(c->kept));
@@ -118,7 +117,7 @@ PetscErrorCode ebb_cosine_destroy(struct ebb_cosine **cosine)
 
 static PetscInt group_of(const struct ebb_engine *e, PetscInt site)
 {
-  const PetscInt q = e->bins->map[site + e->cosine->half];
+  const PetscInt q = e->bins->map[site + e->cosine->off];
 
   return q < 0 ? -1 : PetscMin(q / e->bins->per_group, e->bins->groups - 1);
 }
@@ -127,11 +126,13 @@ PetscErrorCode ebb_cosine_prepare(struct ebb_relational *r, struct ebb_engine *e
 {
   struct ebb_cosine *c = e->cosine;
   const PetscInt n = r->space->sites;
-  const double bytes = 16.0 * (double)r->model.samples * (double)r->space->slices * (double)(c->local + 2 * c->halo);
+  const double bytes = 16.0 * (double)r->model.samples * (double)r->space->slices * (double)c->length;
 
   PetscFunctionBegin;
-  if (c->run) PetscFunctionReturn(0);
-  for (int pass = 0; pass < 2; pass++) {
+  if (c->histogram) PetscFunctionReturn(0);
+  PetscCall(PetscCalloc1((size_t)e->bins->n * (size_t)c->m, &c->histogram));
+  if (r->model.lattice->grading) PetscCall(ebb_cosine_group_rows(r, e));
+  for (int pass = 0; pass < 2 && !c->taps; pass++) {
     c->runs = 0;
     for (PetscInt begin = 0, end; begin < n; begin = end) {
       for (end = begin + 1; end < n && group_of(e, end) == group_of(e, begin);) end++;
@@ -187,6 +188,13 @@ static void correlate(const struct ebb_relational *r, struct ebb_cosine *c, doub
   const PetscInt begin = r->model.lattice->begin, end = r->model.lattice->end;
   const double complex *x = c->ext + c->halo - begin; /* by global site */
 
+  for (PetscInt k = 0; c->taps && k < c->local; k++) {
+    const PetscInt i = begin - c->out_begin + k;
+    const double complex *here = c->ext + c->at[i], z = w * c->share[i] * here[0];
+
+    add_multiple((int)c->taps[k], creal(z), -cimag(z), (const double *)here,
+                 (double *)(c->correlation + c->group[k] * (c->p + 1)));
+  }
   for (PetscInt j = 0; j < c->runs; j++) {
     double complex *sum = c->correlation + c->run[j].group * (c->p + 1);
 
@@ -205,30 +213,30 @@ EBB_WIDE static void multiply(int n, const double *restrict factor, const double
   }
 }
 
-/* |y|^2 of one site, with weight into its tally and without into what is seen of the sample. */
-EBB_WIDE static void add_squares(int n, double w, const double *restrict y, double *restrict tally,
+/* |y|^2 of what stands for `share` sites, with weight into its tally and without into what is seen of the sample. */
+EBB_WIDE static void add_squares(int n, double share, double w, const double *restrict y, double *restrict tally,
                                  double *restrict seen)
 {
   for (int i = 0; i < n; i++) {
-    const double p = y[2 * i] * y[2 * i] + y[2 * i + 1] * y[2 * i + 1];
+    const double p = share * (y[2 * i] * y[2 * i] + y[2 * i + 1] * y[2 * i + 1]);
 
     tally[i] += w * p;
     seen[i] += p;
   }
 }
 
-/* y_l = K_l exp(i pi l/m) psi_{n+l} for a block of sites, folded modulo m, and its transform. */
+/* y_l = K_l exp(i pi l/m) psi_{n+l} for a block of outputs, folded modulo m, and its transform. */
 static void transform(struct ebb_cosine *c, const double complex ext[], PetscInt first, PetscInt count)
 {
-  const double complex *x = ext + c->halo - c->half + first; /* psi_{n - p/2} of the block's first site */
   const int half = (int)c->half;
 
   for (PetscInt b = 0; b < count; b++) {
+    const double complex *x = ext + c->at[first + b] - half; /* psi_{n - p/2} */
     double complex *y = c->work + b * c->m;
 
-    multiply(half + 1, (const double *)(c->factor + half), (const double *)(x + b + half), (double *)y);
+    multiply(half + 1, (const double *)(c->factor + half), (const double *)(x + half), (double *)y);
     memset(y + half + 1, 0, (size_t)(c->m - c->p - 1) * sizeof *y);
-    multiply(half, (const double *)c->factor, (const double *)(x + b), (double *)(y + c->m - half));
+    multiply(half, (const double *)c->factor, (const double *)x, (double *)(y + c->m - half));
   }
   fftw_execute(c->plan);
 }
@@ -239,9 +247,9 @@ static void flush(const struct ebb_relational *r, struct ebb_engine *e, PetscInt
   struct ebb_cosine *c = e->cosine;
 
   for (PetscInt b = 0; b < count; b++) {
-    const PetscInt site = c->out_begin + first + b, at = site + c->half, bin = e->bins->map[at];
+    const PetscInt site = c->out_begin + first + b, at = site + c->off, bin = e->bins->map[at];
     const bool off = site < 0 || (!r->model.lattice->rows.half && site >= r->space->sites);
-    const double *tally = c->tally + b * c->m, v = c->size[at];
+    const double *tally = c->tally + b * c->m, v = c->value[at];
     double *row = bin < 0 ? e->lost : c->histogram + (size_t)bin * (size_t)c->m;
 
     for (int i = 0; i < c->m; i++) {
@@ -262,16 +270,16 @@ static void add_system(const struct ebb_relational *r, struct ebb_engine *e, Pet
   const double w = r->weight[sample];
 
   for (PetscInt i = 0; i < c->local; i++) {
-    const double p = square(c->ext[c->halo + i]);
-    const PetscInt at = begin + i + c->half;
+    const PetscInt at = begin + i + c->off, out = begin - c->out_begin + i;
+    const double p = c->share[out] * square(c->ext[c->at[out]]);
 
     e->norm += w * p;
     if (e->bins->map[at] < 0)
       e->action_lost += w * p;
     else
       e->action[e->bins->map[at]] += w * p;
-    if (sample == 0) e->end_mean[0] += p * c->size[at];
-    if (sample == r->model.samples - 1) e->end_mean[1] += p * c->size[at];
+    if (sample == 0) e->end_mean[0] += p * c->value[at];
+    if (sample == r->model.samples - 1) e->end_mean[1] += p * c->value[at];
   }
 }
 
@@ -279,35 +287,39 @@ PetscErrorCode ebb_cosine_add(struct ebb_relational *r, struct ebb_engine *e, Pe
                               const double complex psi[])
 {
   struct ebb_cosine *c = e->cosine;
-  const size_t length = (size_t)(c->local + 2 * c->halo), slices = (size_t)r->space->slices;
-  const size_t lines = (size_t)count * slices;
-  double complex *extended;
+  const size_t length = (size_t)c->length, slices = (size_t)r->space->slices, lines = (size_t)count * slices;
+  const double complex *line = psi;
+  double complex *extended = NULL;
   double *seen; /* [count][m] */
 
   PetscFunctionBegin;
   PetscCall(ebb_cosine_prepare(r, e));
-  PetscCall(PetscMalloc1(lines * length, &extended));
+  if (!c->taps) PetscCall(PetscMalloc1(lines * length, &extended));
   PetscCall(PetscCalloc1((size_t)count * (size_t)c->m, &seen));
   for (size_t j = 0; j < lines; j++) {
     const PetscInt sample = first + (PetscInt)(j / slices);
 
-    PetscCall(ebb_cosine_extend(r, c, psi + j * (size_t)c->local));
+    if (c->taps)
+      c->ext = (double complex *)psi + j * length; /* with its neighbours already */
+    else
+      PetscCall(ebb_cosine_extend(r, c, psi + j * (size_t)c->local));
     correlate(r, c, r->weight[sample]);
     add_system(r, e, sample);
-    memcpy(extended + j * length, c->ext, length * sizeof *extended);
+    if (extended) memcpy(extended + j * length, c->ext, length * sizeof *extended);
   }
-  if (c->kept) memcpy(c->kept + (size_t)first * slices * length, extended, lines * length * sizeof *extended);
+  if (extended) line = extended;
+  if (c->kept) memcpy(c->kept + (size_t)first * slices * length, line, lines * length * sizeof *line);
   for (PetscInt n = 0; n < c->out; n += BLOCK) {
-    const PetscInt block = PetscMin(BLOCK, c->out - n), at = c->out_begin + n - r->model.lattice->begin;
+    const PetscInt block = PetscMin(BLOCK, c->out - n);
 
     memset(c->tally, 0, (size_t)(c->m * BLOCK) * sizeof *c->tally);
     for (size_t j = 0; j < lines; j++) {
       const size_t s = j / slices;
 
-      transform(c, extended + j * length, at, block);
+      transform(c, line + j * length, n, block);
       for (PetscInt b = 0; b < block; b++)
-        add_squares(c->m, r->weight[first + (PetscInt)s], (const double *)(c->work + b * c->m), c->tally + b * c->m,
-                    seen + s * (size_t)c->m);
+        add_squares(c->m, c->share[n + b], r->weight[first + (PetscInt)s], (const double *)(c->work + b * c->m),
+                    c->tally + b * c->m, seen + s * (size_t)c->m);
     }
     flush(r, e, n, block);
   }

@@ -6,7 +6,7 @@
 
 #include <math.h>
 
-/* Outputs of this rank that hold all but a rounding of an outcome: |v| between two of its bins. */
+/* Outputs of this rank that hold all but a rounding of an outcome: the system between two of its bins. */
 static void reach(const struct ebb_engine *e, PetscInt i, double *low, double *high)
 {
   const double *mass = e->sum + (size_t)i * (size_t)e->bin_count;
@@ -18,6 +18,9 @@ static void reach(const struct ebb_engine *e, PetscInt i, double *low, double *h
   for (sum = 0.0; z > a && (sum += mass[z]) < PETSC_MACHINE_EPSILON * total;) z--;
   *low = e->bins->low[a];
   *high = e->bins->high[z];
+  if (e->lost[i] < PETSC_MACHINE_EPSILON * total) return;
+  *low = -INFINITY; /* some of it lies in no bin */
+  *high = INFINITY;
 }
 
 /* Rows of one outcome: its samples and slices as rows, the outputs in reach as columns. */
@@ -25,7 +28,7 @@ static PetscErrorCode rows_of(const struct ebb_relational *r, const struct ebb_e
                               const PetscInt sample[], PetscInt outputs, const PetscInt output[], double complex *rows)
 {
   const struct ebb_cosine *c = e->cosine;
-  const size_t length = (size_t)(c->local + 2 * c->halo), slices = (size_t)r->space->slices;
+  const size_t length = (size_t)c->length, slices = (size_t)r->space->slices;
   double complex *k;
 
   PetscFunctionBegin;
@@ -38,14 +41,15 @@ static PetscErrorCode rows_of(const struct ebb_relational *r, const struct ebb_e
       const double weight = sqrt(r->weight[sample[t]]);
 
       for (PetscInt n = 0; n < outputs; n++) {
-        const double complex *from = x + c->halo - c->half + (c->out_begin + output[n] - r->model.lattice->begin);
+        const double complex *from = x + c->at[output[n]] - c->half;
+        const double root = sqrt(c->share[output[n]]);
         double re = 0.0, im = 0.0; /* by hand: C's product of complex numbers looks for infinities */
 
         for (int j = 0; j <= c->p; j++) {
           re += creal(k[j]) * creal(from[j]) - cimag(k[j]) * cimag(from[j]);
           im += creal(k[j]) * cimag(from[j]) + cimag(k[j]) * creal(from[j]);
         }
-        row[n] = weight * (re + I * im);
+        row[n] = weight * root * (re + I * im);
       }
     }
   PetscCall(PetscFree(k));
@@ -63,7 +67,8 @@ PetscErrorCode ebb_cosine_purity(struct ebb_relational *r, struct ebb_engine *e,
   PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, &room, 1, MPI_INT, MPI_MIN, r->model.comm));
   if (!room)
     PetscCall(PetscStrncpy(e->result.purity_note,
-                           "left out: the states of the window do not fit the memory kept for them",
+                           c->lost ? "left out: the run went on from a checkpoint, which holds no states beside nodes"
+                                   : "left out: the states of the window do not fit the memory kept for them",
                            sizeof e->result.purity_note));
   PetscCall(PetscMalloc2(m, &sample, c->out, &output));
   for (PetscInt i = 0; i < e->n; i++) {
@@ -79,7 +84,7 @@ PetscErrorCode ebb_cosine_purity(struct ebb_relational *r, struct ebb_engine *e,
     for (PetscInt t = 0; t < m; t++)
       if (seen[t] >= PETSC_MACHINE_EPSILON * peak) sample[samples++] = t;
     for (PetscInt n = 0; n < c->out; n++) {
-      const double v = c->size[c->out_begin + n + c->half];
+      const double v = c->value[c->out_begin + n + c->off];
       if (v >= low && v <= high) output[outputs++] = n;
     }
     PetscCall(PetscMalloc1((size_t)samples * (size_t)(outputs * r->space->slices) + 1, &rows));

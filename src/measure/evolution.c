@@ -2,12 +2,16 @@
 #include "evolution.h"
 
 #include <cblas.h>
-#include <gsl/gsl_integration.h>
 #include <math.h>
 #include <string.h>
 
 enum { ROWS = 64 };
 static const double ROWS_MOST = 6e7; /* numbers of a block's table: half a gigabyte */
+
+double ebb_evolution_highest(double v_reach)
+{
+  return 0.5 * v_reach + 8.0 * cbrt(v_reach) + 12.0; /* Airy's scale at the turning volume */
+}
 
 /* Gauss-Legendre nodes in k on (0, high): a vector on |v| <= v_reach has no more than k = v_reach/2 and the tail of
  * e_k below its turning volume 2k; its functions turn with k at the rate kappa t + 2 ln v. */
@@ -15,9 +19,8 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
                             double v_all, double t, double finer, char problem[], size_t size)
 {
   const double kappa = constants->kappa;
-  double high = 0.5 * v_reach + 8.0 * cbrt(v_reach) + 12.0; /* Airy's scale at the turning volume */
-  gsl_integration_glfixed_table *table;
-  double *k;
+  double high = ebb_evolution_highest(v_reach);
+  double *k, *share;
 
   PetscFunctionBegin;
   for (PetscInt j = 0; j < e->packet->n; j++) high = fmax(high, e->packet->omega[j] / kappa);
@@ -29,14 +32,9 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
                             (int)e->n));
     PetscFunctionReturn(0);
   }
-  table = gsl_integration_glfixed_table_alloc((size_t)e->n);
-  PetscCheck(table, PETSC_COMM_SELF, PETSC_ERR_MEM, "no memory for %d nodes", (int)e->n);
+  PetscCall(ebb_gauss_legendre(0.0, high, e->n, &k, &share));
   PetscCall(PetscMalloc1(2 * e->n, &e->weight));
   PetscCall(PetscMalloc1(2 * e->n, &e->omega));
-  PetscCall(PetscMalloc1(e->n, &k));
-  for (PetscInt j = 0; j < e->n; j++)
-    (void)gsl_integration_glfixed_point(0.0, high, (size_t)j, &k[j], &e->weight[j], table);
-  gsl_integration_glfixed_table_free(table);
   {
     const PetscInt n = e->n, copies = e->lattice->rows.half ? 1 : 2; /* a full lattice has both channels */
     enum ebb_channel *channel;
@@ -45,7 +43,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
     PetscCall(PetscMalloc2(copies * n, &channel, copies * n, &all));
     for (PetscInt j = 0; j < copies * n; j++) {
       all[j] = k[j % n];
-      e->weight[j] = e->weight[j % n];
+      e->weight[j] = share[j % n];
       e->omega[j] = kappa * all[j];
       channel[j] = e->lattice->rows.half ? EBB_CHANNEL_ONLY : j < n ? EBB_CHANNEL_RIGHT : EBB_CHANNEL_LEFT;
     }
@@ -53,6 +51,7 @@ static PetscErrorCode nodes(struct ebb_evolution *e, const struct ebb_constants 
     PetscCall(ebb_basis_create_modes(e->lattice, e->n, all, channel, &e->basis));
     PetscCall(PetscFree2(channel, all));
     PetscCall(PetscFree(k));
+    PetscCall(PetscFree(share));
   }
   e->own = true;
   PetscFunctionReturn(0);
@@ -132,7 +131,7 @@ PetscErrorCode ebb_block_make(const struct ebb_evolution *e, double low, double 
     PetscCall(ebb_cursor_open(e->basis, arm, first, &cursor));
     ebb_cursor_next(cursor, end - first, b->rows + (size_t)at * (size_t)n);
     ebb_cursor_close(&cursor);
-    PetscCall(ebb_cursor_open(e->packet->basis, arm, first, &cursor));
+    PetscCall(ebb_cursor_open_sites(e->packet->basis, arm, first, &cursor));
     ebb_cursor_next(cursor, end - first, b->packet_rows + (size_t)at * (size_t)p);
     ebb_cursor_close(&cursor);
     for (PetscInt i = first; i < end; i++) b->v[at++] = e->lattice->first[arm] + e->lattice->rows.step * (double)i;
@@ -216,7 +215,7 @@ PetscErrorCode ebb_columns_add(const struct ebb_evolution *e, MPI_Comm comm, con
         double sum = 0.0;
 
         for (PetscInt j = 0; j < c->m; j++) sum += c->share[j] * (re[j] * re[j] + im[j] * im[j]);
-        out[ebb_lattice_global(l, arm, n + r)] = sum;
+        out[ebb_lattice_global(l, arm, n + r)] = ebb_lattice_measure(l, arm, n + r) * sum;
       }
     }
     ebb_cursor_close(&cursor);

@@ -15,6 +15,8 @@ struct ebb_evolution {
   double *weight, *omega; /* [n] */
 };
 
+/* Largest k of a vector on |v| <= v_reach. */
+double ebb_evolution_highest(double v_reach);
 /* Functions that resolve any vector on |v| <= v_reach (v_all: the largest volume looked at) for times up to t. finer:
  * factor on the number of nodes, for an independent rule. problem: too many of them. */
 PetscErrorCode ebb_evolution_create(const struct ebb_packet *packet, const struct ebb_lattice *lattice,
@@ -47,7 +49,8 @@ struct ebb_columns {
 };
 void ebb_column_fill(const struct ebb_evolution *evolution, const double complex c[], double s, PetscInt column,
                      struct ebb_columns *columns);
-/* out [all sites]: sum over columns of share |psi|^2; one dgemm a block of this rank's rows. Collective. */
+/* out [all rows]: sum over columns of share |psi|^2, of all the sites that a row stands for; one dgemm a block of this
+ * rank's rows. Collective. */
 PetscErrorCode ebb_columns_add(const struct ebb_evolution *evolution, MPI_Comm comm, const struct ebb_columns *columns,
                                double out[]);
 

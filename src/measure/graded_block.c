@@ -16,7 +16,14 @@ static const double PER_SQUARE = 1.0; /* ... and up to this many nodes^2: beyond
 /* q_0 .. q_{n-1} at x, against weights: sum_j c_j q_j(x). */
 double ebb_graded_block_value(const struct ebb_graded_block *b, double x)
 {
-  double below = 0.0, here = 1.0, sum = b->coefficient[0];
+  double below = 0.0, here = 1.0, sum;
+
+  if (!b->coefficient) { /* every site is a node */
+    const size_t site = (size_t)fmin(fmax(round(0.5 * ((x + 1.0) * b->sites - 1.0)), 0.0), b->sites - 1.0);
+
+    return b->sum[site + 1] - b->sum[site];
+  }
+  sum = b->coefficient[0];
 
   for (PetscInt j = 1; j < b->n; j++) {
     const double next = (x * here - b->link[j - 1] * below) / b->link[j];
@@ -121,6 +128,12 @@ PetscErrorCode ebb_graded_block_make(const struct ebb_grading *g, PetscInt block
 
   PetscFunctionBegin;
   *b = (struct ebb_graded_block){.n = at->nodes, .sites = at->sites};
+  if ((double)at->nodes == at->sites) {
+    PetscCall(PetscMalloc1(at->nodes + 1, &b->sum));
+    b->sum[0] = 0.0;
+    for (PetscInt i = 0; i < at->nodes; i++) b->sum[i + 1] = b->sum[i] + value[i];
+    PetscFunctionReturn(0);
+  }
   PetscCall(project(g, at, value, b));
   if (!sums) PetscFunctionReturn(0);
   if (b->sites <= fmax(FEW, PER_SQUARE * (double)b->n * (double)b->n))

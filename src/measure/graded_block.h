@@ -11,7 +11,7 @@ struct ebb_graded_block {
   PetscInt n;
   double sites;
   double *link;        /* [n + 1] of the recurrence */
-  double *coefficient; /* [n] */
+  double *coefficient; /* [n]; NULL where every site is a node */
   double *sum;         /* [sites + 1] running sums over the sites, or NULL where the next stands for them */
   double *primitive;   /* [n + 2] Chebyshev coefficients of the integral over x from -1 */
 };

@@ -71,68 +71,29 @@ static PetscErrorCode on_block(const struct ebb_evolution *e, const struct ebb_h
   PetscFunctionReturn(0);
 }
 
-/* Coefficients of the packet in the evolution's functions at a parameter value. Collective. */
-static PetscErrorCode whole_packet(const struct ebb_evolution *e, MPI_Comm comm, double t, double complex c[])
-{
-  enum { ROWS = 64 };
-  const struct ebb_lattice *l = e->lattice;
-  double complex *psi;
-  double *rows;
-
-  PetscFunctionBegin;
-  if (!e->own) {
-    for (PetscInt j = 0; j < e->n; j++) c[j] = e->packet->amplitude[j] * cexp(I * e->omega[j] * t);
-    PetscFunctionReturn(0);
-  }
-  PetscCall(PetscMalloc2(l->end - l->begin, &psi, (size_t)ROWS * (size_t)e->n, &rows));
-  PetscCall(ebb_packet_values(e->packet, l, t, EBB_FIELD_PSI, psi));
-  for (PetscInt j = 0; j < e->n; j++) c[j] = 0.0;
-  for (int arm = 0; arm < 2; arm++) {
-    struct ebb_cursor *cursor;
-    PetscInt begin, end;
-
-    ebb_lattice_local(l, arm, &begin, &end);
-    if (begin >= end) continue;
-    PetscCall(ebb_cursor_open(e->basis, arm, begin, &cursor));
-    for (PetscInt n = begin; n < end; n += ROWS) {
-      const PetscInt count = PetscMin(ROWS, end - n);
-
-      ebb_cursor_next(cursor, count, rows);
-      for (PetscInt r = 0; r < count; r++) {
-        const double complex x = psi[ebb_lattice_global(l, arm, n + r) - l->begin];
-        for (PetscInt j = 0; j < e->n; j++) c[j] += rows[r * e->n + j] * x;
-      }
-    }
-    ebb_cursor_close(&cursor);
-  }
-  PetscCallMPI(MPI_Allreduce(MPI_IN_PLACE, c, (PetscMPIInt)(2 * e->n), MPI_DOUBLE, MPI_SUM, comm));
-  PetscCall(PetscFree2(psi, rows));
-  PetscFunctionReturn(0);
-}
-
-/* Above v_star at K equally spaced times: the parts on S are taken out one after the other. */
-static PetscErrorCode stay(const struct ebb_evolution *e, MPI_Comm comm, const struct ebb_histories_settings *settings,
-                           double v_star, struct ebb_history *h)
+/* Above v_star at K equally spaced times. What is cut out at a time is orthogonal to what stays, and what stays is the
+ * packet less all that was cut out before, moved on: p_stay = 1 - sum_k ||cut_k||^2, on S alone. */
+static PetscErrorCode stay(const struct ebb_evolution *e, const struct ebb_histories_settings *settings, double v_star,
+                           struct ebb_history *h)
 {
   const double step = (settings->at[1] - settings->at[0]) / (double)(settings->times - 1);
   struct ebb_block s;
-  double complex *c, *cut, *x;
+  double complex *c, *cut, *x, *gone;
 
   PetscFunctionBegin;
   PetscCall(ebb_block_make(e, 0.0, v_star, &s));
-  PetscCall(PetscMalloc3(e->n, &c, e->n, &cut, s.sites, &x));
-  PetscCall(whole_packet(e, comm, settings->at[0], c));
+  PetscCall(PetscMalloc4(e->n, &c, e->n, &cut, s.sites, &x, s.sites, &gone));
+  for (PetscInt j = 0; j < e->n; j++) c[j] = 0.0;
+  h->p_stay = 1.0;
   for (int k = 0; k < settings->times; k++) {
-    ebb_block_sum(e, &s, c, 0.0, x);
+    ebb_block_packet(e, &s, settings->at[0] + step * (double)k, x);
+    ebb_block_sum(e, &s, c, k > 0 ? step : 0.0, gone);
+    for (PetscInt i = 0; i < s.sites; i++) x[i] -= gone[i];
     ebb_block_resolve(e, &s, x, cut);
-    for (PetscInt j = 0; j < e->n; j++) {
-      c[j] -= cut[j];
-      if (k + 1 < settings->times) c[j] *= cexp(I * e->omega[j] * step);
-    }
+    h->p_stay -= norm2(s.sites, x);
+    for (PetscInt j = 0; j < e->n; j++) c[j] = (k > 0 ? cexp(I * e->omega[j] * step) : 1.0) * c[j] + cut[j];
   }
-  h->p_stay = 0.0;
-  for (PetscInt j = 0; j < e->n; j++) h->p_stay += e->weight[j] * square(c[j]);
-  PetscCall(PetscFree3(c, cut, x));
+  PetscCall(PetscFree4(c, cut, x, gone));
   PetscCall(ebb_block_clear(&s));
   PetscFunctionReturn(0);
 }
@@ -148,16 +109,21 @@ static double change(const struct ebb_history *x, const struct ebb_history *y)
 }
 
 static PetscErrorCode on_lattice(const struct ebb_packet *packet, const struct ebb_lattice *lattice,
-                                 const struct ebb_constants *constants, MPI_Comm comm,
-                                 const struct ebb_histories_settings *settings, struct ebb_history history[],
-                                 char problem[], size_t size)
+                                 const struct ebb_constants *constants, const struct ebb_histories_settings *settings,
+                                 struct ebb_history history[], char problem[], size_t size)
 {
   const double reach = settings->v_star[settings->v_stars - 1], t = settings->at[1] - settings->at[0];
-  const double all = ebb_lattice_top(lattice);
+  const double all = lattice->grading ? reach : ebb_lattice_top(lattice);
   const bool several = ebb_basis_info(packet->basis) != NULL;
+  struct ebb_lattice small;
   struct ebb_evolution e, finer;
 
   PetscFunctionBegin;
+  if (lattice->grading) { /* S is read site by site, and nothing beyond it */
+    PetscCall(ebb_lattice_make_model(&lattice->rows, PetscMax((PetscInt)(reach / lattice->rows.step) + 1, 2),
+                                     PETSC_COMM_SELF, &small));
+    lattice = &small;
+  }
   PetscCall(ebb_evolution_create(packet, lattice, constants, reach, all, t, 1.0, &e, problem, size));
   if (!problem[0] && several)
     PetscCall(ebb_evolution_create(packet, lattice, constants, reach, all, t, FINER, &finer, problem, size));
@@ -166,12 +132,12 @@ static PetscErrorCode on_lattice(const struct ebb_packet *packet, const struct e
 
     h->p_stay = NAN;
     PetscCall(on_block(&e, settings, settings->v_star[i], h));
-    if (settings->times > 2) PetscCall(stay(&e, comm, settings, settings->v_star[i], h));
+    if (settings->times > 2) PetscCall(stay(&e, settings, settings->v_star[i], h));
     h->error = h->identity + 1e-14; /* rounding of sums over the functions */
     if (!several) continue;
     other.p_stay = NAN;
     PetscCall(on_block(&finer, settings, settings->v_star[i], &other));
-    if (settings->times > 2) PetscCall(stay(&finer, comm, settings, settings->v_star[i], &other));
+    if (settings->times > 2) PetscCall(stay(&finer, settings, settings->v_star[i], &other));
     h->error += change(h, &other);
   }
   if (several && !problem[0]) PetscCall(ebb_evolution_clear(&finer));
@@ -292,6 +258,6 @@ PetscErrorCode ebb_histories_find(const struct ebb_packet *packet, const struct 
   if (lattice->rows.prescription->grid)
     PetscCall(of_waves(packet, lattice, constants, comm, settings, history));
   else
-    PetscCall(on_lattice(packet, lattice, constants, comm, settings, history, problem, size));
+    PetscCall(on_lattice(packet, lattice, constants, settings, history, problem, size));
   PetscFunctionReturn(0);
 }

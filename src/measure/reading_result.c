@@ -34,6 +34,10 @@ static PetscErrorCode result_allocate(struct ebb_engine *e)
   PetscCall(PetscMalloc1(x->bins, &x->system_dwell));
   memcpy(x->system_dwell, e->action, (size_t)x->bins * sizeof(double));
   memcpy(x->system_centre, e->bins->centre, (size_t)x->bins * sizeof(double));
+  if (e->bins->rows) {
+    PetscCall(PetscMalloc1(x->bins, &x->system_sites));
+    memcpy(x->system_sites, ebb_row_bins_sites(e->bins->rows), (size_t)x->bins * sizeof(double));
+  }
   memcpy(x->level, e->settings.quantile, (size_t)x->levels * sizeof(double));
   memcpy(x->centre, e->windows->centre, (size_t)n * sizeof(double));
   PetscFunctionReturn(0);
@@ -41,11 +45,11 @@ static PetscErrorCode result_allocate(struct ebb_engine *e)
 
 PetscErrorCode ebb_engine_result_clear(struct ebb_reading_result *x)
 {
-  double **const line[] = {&x->centre,       &x->dwell,       &x->dwell_error,  &x->median,         &x->median_error,
-                           &x->mean,         &x->mean_error,  &x->spread,       &x->spread_error,   &x->purity,
-                           &x->purity_model, &x->leak,        &x->window_error, &x->clock_spread,   &x->curve,
-                           &x->intervals,    &x->probability, &x->quantile,     &x->quantile_error, &x->system_centre,
-                           &x->level,        &x->system_dwell};
+  double **const line[] = {&x->centre,       &x->dwell,        &x->dwell_error,  &x->median,         &x->median_error,
+                           &x->mean,         &x->mean_error,   &x->spread,       &x->spread_error,   &x->purity,
+                           &x->purity_model, &x->leak,         &x->window_error, &x->clock_spread,   &x->curve,
+                           &x->intervals,    &x->probability,  &x->quantile,     &x->quantile_error, &x->system_centre,
+                           &x->level,        &x->system_dwell, &x->system_sites};
 
   PetscFunctionBegin;
   for (size_t i = 0; i < sizeof line / sizeof line[0]; i++) PetscCall(PetscFree(*line[i]));
@@ -143,22 +147,39 @@ static PetscErrorCode set_status(const struct ebb_relational *r, struct ebb_engi
   PetscFunctionReturn(0);
 }
 
-/* Largest change of a quantile when a share `eps` of the mass moves. */
-static double quantile_error(const struct ebb_bins *b, const double mass[], double level, double value, double eps)
+/* Median and quantiles; error: the largest change when a share `eps` of the mass moves. */
+static PetscErrorCode quantiles(struct ebb_engine *e, PetscInt i, const double mass[], double eps)
 {
-  const double low = ebb_bins_quantile(b, mass, fmax(level - eps, 0.0));
-  const double high = ebb_bins_quantile(b, mass, fmin(level + eps, 1.0));
+  enum { LOOKS = 3 };
+  struct ebb_reading_result *x = &e->result;
+  double level[LOOKS * (EBB_LEVELS_MAX + 1)], value[LOOKS * (EBB_LEVELS_MAX + 1)];
 
-  return fmax(fabs(high - value), fabs(value - low)) + ROUNDING * fabs(value);
+  PetscFunctionBegin;
+  for (PetscInt l = 0; l <= x->levels; l++) {
+    const double at = l < x->levels ? x->level[l] : 0.5;
+
+    level[LOOKS * l] = fmax(at - eps, 0.0);
+    level[LOOKS * l + 1] = at;
+    level[LOOKS * l + 2] = fmin(at + eps, 1.0);
+  }
+  PetscCall(ebb_bins_quantiles(e->bins, mass, LOOKS * (x->levels + 1), level, value));
+  for (PetscInt l = 0; l <= x->levels; l++) {
+    const double *v = value + LOOKS * l, error = fmax(fabs(v[2] - v[1]), fabs(v[1] - v[0])) + ROUNDING * fabs(v[1]);
+
+    *(l < x->levels ? &x->quantile[i * x->levels + l] : &x->median[i]) = v[1];
+    *(l < x->levels ? &x->quantile_error[i * x->levels + l] : &x->median_error[i]) = error;
+  }
+  PetscFunctionReturn(0);
 }
 
-static void numbers(const struct ebb_relational *r, struct ebb_engine *e, PetscInt i, double eps)
+static PetscErrorCode numbers(struct ebb_engine *e, PetscInt i, double eps)
 {
   struct ebb_reading_result *x = &e->result;
   const double *mass = e->sum + (size_t)i * (size_t)x->bins, dwell = x->dwell[i];
   const double reach = fmax(fabs(e->end_mean[0]), fabs(e->end_mean[1]));
   double inside = 0.0;
 
+  PetscFunctionBegin;
   for (PetscInt q = 0; q < x->bins; q++) inside += mass[q];
   x->mean[i] = e->first[i] / inside;
   x->spread[i] = sqrt(fmax(e->second[i] / inside - x->mean[i] * x->mean[i], 0.0));
@@ -166,13 +187,7 @@ static void numbers(const struct ebb_relational *r, struct ebb_engine *e, PetscI
   x->spread_error[i] = fmin(eps * fmax(reach * reach, e->second[i] / inside) / fmax(2.0 * x->spread[i], 1e-300),
                             sqrt(eps) * fmax(reach, fabs(x->mean[i]))) +
                        ROUNDING * fabs(x->mean[i]);
-  x->median[i] = ebb_bins_quantile(e->bins, mass, 0.5);
-  x->median_error[i] = quantile_error(e->bins, mass, 0.5, x->median[i], eps);
-  for (PetscInt l = 0; l < x->levels; l++) {
-    x->quantile[i * x->levels + l] = ebb_bins_quantile(e->bins, mass, x->level[l]);
-    x->quantile_error[i * x->levels + l] =
-        quantile_error(e->bins, mass, x->level[l], x->quantile[i * x->levels + l], eps);
-  }
+  PetscCall(quantiles(e, i, mass, eps));
   for (PetscInt q = 0; q < x->bins; q++) x->probability[(size_t)i * (size_t)x->bins + (size_t)q] = mass[q] / dwell;
   x->leak[i] = e->leaked[i] / dwell;
   if (x->refused[i]) {
@@ -182,17 +197,30 @@ static void numbers(const struct ebb_relational *r, struct ebb_engine *e, PetscI
       x->quantile[i * x->levels + l] = x->quantile_error[i * x->levels + l] = NAN;
     for (PetscInt q = 0; q < x->bins; q++) x->probability[(size_t)i * (size_t)x->bins + (size_t)q] = NAN;
   }
-  (void)r;
+  PetscFunctionReturn(0);
+}
+
+/* sum_Q |f_Q| by nodes is off by no more than a node's share where f changes its sign between two of them. */
+static double kinks(const struct ebb_reading_result *x, const double f[])
+{
+  double sum = 0.0;
+
+  for (PetscInt q = 1; x->system_sites && q < x->bins; q++)
+    if (f[q] * f[q - 1] < 0.0 && fmax(x->system_sites[q], x->system_sites[q - 1]) > 1.0)
+      sum += fmax(fabs(f[q]), fabs(f[q - 1]));
+  return sum;
 }
 
 /* Residuals that are rounding in every run, and what non-commutativity does. */
-static void identities(const struct ebb_relational *r, struct ebb_engine *e)
+static PetscErrorCode identities(const struct ebb_relational *r, struct ebb_engine *e)
 {
   struct ebb_reading_result *x = &e->result;
   const double window = r->t[r->model.samples - 1] - r->t[0];
   const PetscInt groups = e->bins->groups;
-  double dwell = 0.0, deficit = 0.0, distance = 0.0, violation = 0.0;
+  double dwell = 0.0, deficit = 0.0, distance = 0.0, violation = 0.0, *change;
 
+  PetscFunctionBegin;
+  PetscCall(PetscMalloc1(x->bins, &change));
   x->identity_probability = x->identity_commuting = 0.0;
   for (PetscInt i = 0; i < x->n; i++) {
     double inside = e->lost[i];
@@ -210,12 +238,12 @@ static void identities(const struct ebb_relational *r, struct ebb_engine *e)
     deficit -= e->lost[i];
   }
   for (PetscInt q = 0; q < x->bins; q++) {
-    double change = e->action[q];
-
-    for (PetscInt i = 0; i < x->n; i++) change -= e->sum[(size_t)i * (size_t)x->bins + (size_t)q];
-    deficit += change - e->rest_bin[q];
-    distance += fabs(change - e->rest_bin[q]);
-    if (e->direct) x->identity_commuting = fmax(x->identity_commuting, fabs(change - e->rest_bin[q]) / window);
+    change[q] = e->action[q];
+    for (PetscInt i = 0; i < x->n; i++) change[q] -= e->sum[(size_t)i * (size_t)x->bins + (size_t)q];
+    change[q] -= e->rest_bin[q];
+    deficit += change[q];
+    distance += fabs(change[q]);
+    if (e->direct) x->identity_commuting = fmax(x->identity_commuting, fabs(change[q]) / window);
   }
   for (PetscInt j = 0; j < x->n * groups; j++) violation += fabs(e->joint[j] - e->reversed[j]);
   x->identity_dwell = fabs(dwell + e->rest - e->norm) / window;
@@ -223,7 +251,10 @@ static void identities(const struct ebb_relational *r, struct ebb_engine *e)
   x->norm_drift = fabs(e->norm - window) / window;
   x->outside = e->rest;
   x->back_action = 0.5 * distance / window;
+  x->back_action_error = 0.5 * kinks(x, change) / window;
   x->order_violation = e->commuting ? 0.0 : 0.5 * violation / window;
+  PetscCall(PetscFree(change));
+  PetscFunctionReturn(0);
 }
 
 static void resolution(struct ebb_engine *e)
@@ -299,9 +330,9 @@ PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
     PetscCall(set_status(r, e, i));
   }
   PetscCall(purities(r, e));
-  for (PetscInt i = 0; i < e->n; i++) numbers(r, e, i, fmin(share[i], 1.0));
+  for (PetscInt i = 0; i < e->n; i++) PetscCall(numbers(e, i, fmin(share[i], 1.0)));
   PetscCall(PetscFree(share));
-  identities(r, e);
+  PetscCall(identities(r, e));
   resolution(e);
   ebb_engine_judge(r, e);
   PetscFunctionReturn(0);

@@ -287,8 +287,21 @@ PetscErrorCode ebb_bins_destroy(struct ebb_bins **bins)
   if (!*bins) PetscFunctionReturn(0);
   PetscCall(PetscFree3((*bins)->centre, (*bins)->low, (*bins)->high));
   PetscCall(PetscFree((*bins)->map));
+  PetscCall(ebb_row_bins_destroy(&(*bins)->rows));
   PetscCall(PetscFree(*bins));
   PetscFunctionReturn(0);
+}
+
+void ebb_bins_range(const struct ebb_reading_settings *settings, bool volume, double half_cell, double *low,
+                    double *high)
+{
+  if (settings->binning == EBB_BINNING_LOG && volume) { /* the cells of the first and the last site */
+    *low = fmax(*low - half_cell, 0.5 * *low);
+    *high += half_cell;
+  } else {
+    *high += half_cell > 0.0 ? half_cell : 1e-9 * fmax(fabs(*high), 1.0);
+    if (half_cell > 0.0) *low = fmax(*low - half_cell, 0.0);
+  }
 }
 
 /* Share of the bins' mass below x, the mass of a bin spread uniformly over its cell. */
@@ -301,7 +314,7 @@ static double mass_below(const struct ebb_bins *b, const double mass[], double x
   return sum;
 }
 
-double ebb_bins_quantile(const struct ebb_bins *b, const double mass[], double level)
+static double quantile(const struct ebb_bins *b, const double mass[], double level)
 {
   enum { BISECTIONS = 100 };
   double total = 0.0, sum = 0.0, low = b->low[0], high = b->high[b->n - 1];
@@ -329,4 +342,15 @@ double ebb_bins_quantile(const struct ebb_bins *b, const double mass[], double l
       high = middle;
   }
   return 0.5 * (low + high);
+}
+
+PetscErrorCode ebb_bins_quantiles(const struct ebb_bins *b, const double mass[], PetscInt n, const double level[],
+                                  double value[])
+{
+  PetscFunctionBegin;
+  if (b->rows)
+    PetscCall(ebb_row_bins_quantiles(b, mass, n, level, value));
+  else
+    for (PetscInt i = 0; i < n; i++) value[i] = quantile(b, mass, level[i]);
+  PetscFunctionReturn(0);
 }

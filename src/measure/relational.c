@@ -1,5 +1,5 @@
 /* SPDX-License-Identifier: BSD-2-Clause */
-#include "relational_impl.h"
+#include "cosine_power.h"
 
 #include <math.h>
 #include <string.h>
@@ -18,6 +18,31 @@ static PetscErrorCode prepare_ranks(struct ebb_relational *r)
   PetscCallMPI(MPI_Allgather(&mine, 1, MPI_INT, r->count, 1, MPI_INT, r->model.comm));
   r->start[0] = 0;
   for (int i = 1; i < r->ranks; i++) r->start[i] = r->start[i - 1] + r->count[i - 1];
+  PetscFunctionReturn(0);
+}
+
+/* Rows of a graded lattice, or bins that its blocks end at. */
+static PetscErrorCode prepare_graded_bins(struct ebb_relational *r, struct ebb_engine *e, char problem[], size_t size)
+{
+  const size_t n = (size_t)(r->space->sites + (e->cosine ? e->cosine->off : 0));
+  const struct ebb_lattice *l = r->model.lattice;
+  const double first[2] = {l->first[0], l->rows.half ? 0.0 : l->first[1]};
+  double low, high;
+
+  PetscFunctionBegin;
+  if (e->settings.binning == EBB_BINNING_SITES && 8.0 * (double)e->n * (double)n > r->model.bytes) {
+    PetscCall(PetscSNPrintf(problem, size, "%d outcomes on %d rows exceed the memory limit; give the system bins",
+                            (int)e->n, (int)r->space->sites));
+    PetscFunctionReturn(0);
+  }
+  if (e->settings.binning == EBB_BINNING_SITES) {
+    PetscCall(ebb_bins_create_rows(l, &e->settings.system, n, e->cosine ? e->cosine->size : r->space->v, &e->bins));
+    PetscFunctionReturn(0);
+  }
+  ebb_graded_bins_range(&e->settings, first, fmax(ebb_lattice_last(l, 0), l->rows.half ? 0.0 : ebb_lattice_last(l, 1)),
+                        l->rows.step, &low, &high);
+  PetscCall(
+      ebb_bins_create(&e->settings, n, e->cosine ? e->cosine->value : e->system->value, 0.0, low, high, &e->bins));
   PetscFunctionReturn(0);
 }
 
@@ -46,13 +71,7 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
     e->settings.binning = EBB_BINNING_LOG;
     e->settings.system_bins = (int)fmax(r->model.bytes / (8.0 * (double)e->n), 64.0);
   }
-  if (e->settings.binning == EBB_BINNING_LOG && volume) { /* the cells of the first and the last site */
-    low = fmax(low - half_cell, 0.5 * low);
-    high += half_cell;
-  } else if (!s->kind->word.bounded) {
-    high += half_cell > 0.0 ? half_cell : 1e-9 * fmax(fabs(high), 1.0);
-    if (half_cell > 0.0) low = fmax(low - half_cell, 0.0);
-  }
+  if (volume || !s->kind->word.bounded) ebb_bins_range(&e->settings, volume, half_cell, &low, &high);
   if (volume && e->clock && e->clock->kind->word.takes_alpha) /* a mixed clock is not folded: v <= 0 is a leak alone */
     for (PetscInt k = 0; k < r->space->slices; k++)
       for (PetscInt i = r->space->sites; i < s->stride; i++) e->system->value[k * s->stride + i] = NAN;
@@ -64,16 +83,19 @@ static PetscErrorCode prepare_bins(struct ebb_relational *r, struct ebb_engine *
  * for sites of v, sixteen of them, the last one open; other systems: their own bins, sixteen groups at most. */
 static void prepare_groups(struct ebb_relational *r, struct ebb_engine *e)
 {
-  enum { GROUPS = 16 };
+  enum { GROUPS = EBB_READING_GROUPS };
   const double v_bounce = ebb_reading_volume_at(&r->model, 1.0);
+  const bool rows = r->model.lattice->grading && e->settings.binning == EBB_BINNING_SITES;
   struct ebb_bins *b = e->bins;
 
   b->groups = GROUPS;
   e->result.order_width = NAN;
-  if (!strcmp(e->system->kind->word.name, "v") && e->settings.binning == EBB_BINNING_SITES &&
-      !r->model.lattice->rows.prescription->grid && r->model.lattice->rows.half) {
+  if (rows || (!strcmp(e->system->kind->word.name, "v") && e->settings.binning == EBB_BINNING_SITES &&
+               !r->model.lattice->rows.prescription->grid && r->model.lattice->rows.half)) {
     b->per_group = PetscMax((PetscInt)lround(v_bounce / (1.5 * r->model.lattice->rows.step)), 1);
     e->result.order_width = r->model.lattice->rows.step * (double)b->per_group;
+    if (rows && r->model.lattice->sites[1] && r->model.lattice->first[0] != r->model.lattice->first[1])
+      b->per_group *= 2; /* bins of two arms */
   } else {
     b->per_group = (b->n + GROUPS - 1) / GROUPS;
     b->groups = (b->n + b->per_group - 1) / b->per_group;
@@ -127,6 +149,7 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
   problem[0] = '\0';
   e->settings = *settings;
   e->kind = ebb_reading_kind_find(s->clock.name);
+  if (r->model.lattice->grading && !ebb_reading_is_graded(s, r->model.parameter, problem, size)) PetscFunctionReturn(0);
   volume = !strcmp(s->system.name, "v");
   PetscCall(ebb_representation_create(r->space, &s->system, true, &e->system, problem, size));
   if (problem[0]) PetscFunctionReturn(0);
@@ -141,8 +164,8 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
     PetscCall(ebb_representation_create(r->space, &s->clock, false, &e->clock, problem, size));
     if (problem[0]) PetscFunctionReturn(0);
     /* a window of b on a volume binned by v needs no transform of the whole state */
-    if (s->instrument == EBB_INSTRUMENT_COSINE_POWER && volume && s->system.function == EBB_FUNCTION_NONE &&
-        s->clock.function == EBB_FUNCTION_NONE) {
+    if (ebb_reading_is_cosine_power(s) && (volume || r->model.lattice->grading) &&
+        s->system.function == EBB_FUNCTION_NONE) {
       e->n = s->centres;
       PetscCall(ebb_cosine_create(r, e));
     } else {
@@ -153,10 +176,51 @@ static PetscErrorCode engine_create(struct ebb_relational *r, const struct ebb_r
     e->commuting = e->clock->keeps_sites && e->system->keeps_sites;
   }
   if (!e->cosine) e->n = e->windows->n;
-  if (!e->bins) PetscCall(prepare_bins(r, e));
+  if (!e->bins && r->model.lattice->grading)
+    PetscCall(prepare_graded_bins(r, e, problem, size));
+  else if (!e->bins)
+    PetscCall(prepare_bins(r, e));
+  if (problem[0]) PetscFunctionReturn(0);
   prepare_groups(r, e);
   PetscCall(allocate(r, e));
   if (!e->cosine) r->gathers = true;
+  PetscFunctionReturn(0);
+}
+
+/* Bins that end inside a block would be wrong by a node's share. */
+static PetscErrorCode check_grading(const struct ebb_relational *r, size_t n,
+                                    const struct ebb_reading_settings reading[])
+{
+  const struct ebb_lattice *l = r->model.lattice;
+  struct ebb_grading_needs needs = {0};
+
+  PetscFunctionBegin;
+  for (size_t i = 0; i < n; i++) {
+    char why[160];
+
+    if (!ebb_reading_is_graded(&reading[i], r->model.parameter, why, sizeof why))
+      PetscFunctionReturn(0); /* said later */
+  }
+  PetscCall(ebb_relational_needs(&r->model, fmax(ebb_lattice_last(l, 0), l->rows.half ? 0.0 : ebb_lattice_last(l, 1)),
+                                 n, reading, &needs));
+  PetscCheck(ebb_grading_suits(l, &needs), PETSC_COMM_SELF, PETSC_ERR_ARG_INCOMP,
+             "the lattice was graded without regard to the bins of these readings");
+  PetscCall(ebb_grading_needs_clear(&needs));
+  PetscFunctionReturn(0);
+}
+
+/* What the widest reading of b needs beside the rows: half a stencil below, for the order of reading a whole one above.
+ */
+static PetscErrorCode prepare_stencils(struct ebb_relational *r, size_t n, const struct ebb_reading_settings reading[])
+{
+  PetscInt power = 0;
+
+  PetscFunctionBegin;
+  for (size_t i = 0; i < n; i++)
+    if (ebb_reading_is_cosine_power(&reading[i])) power = PetscMax(power, reading[i].power);
+  if (!power) PetscFunctionReturn(0);
+  PetscCall(PetscNew(&r->stencils));
+  ebb_stencils_make(r->model.lattice, power / 2, power, r->stencils);
   PetscFunctionReturn(0);
 }
 
@@ -182,6 +246,8 @@ PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, s
   r->model.t = r->t;
   PetscCall(prepare_ranks(r));
   PetscCall(ebb_space_create(&r->model, &r->space));
+  if (model->lattice->grading) PetscCall(check_grading(r, n, reading));
+  if (model->lattice->grading) PetscCall(prepare_stencils(r, n, reading));
   PetscCall(PetscCalloc1(n, &r->engine));
   r->n = n;
   for (size_t i = 0; i < n && !problem[0]; i++) {
@@ -197,7 +263,8 @@ static PetscErrorCode gather(struct ebb_relational *r, const double complex psi[
 {
   const struct ebb_lattice *l = r->model.lattice;
   const size_t local = (size_t)(l->end - l->begin);
-  /* on a grid psi is a density in ln v; l2 amplitudes carry the root of the cell */
+  /* on a grid psi is a density in ln v; l2 amplitudes carry the root of the cell, as those of nodes that of what they
+   * stand for */
   const double root = l->rows.prescription->grid ? sqrt(l->dx) : 1.0;
 
   PetscFunctionBegin;
@@ -207,11 +274,28 @@ static PetscErrorCode gather(struct ebb_relational *r, const double complex psi[
     PetscCallMPI(MPI_Allgatherv(psi + (size_t)k * local, r->count[r->rank], MPI_DOUBLE, line, r->count, r->start,
                                 MPI_DOUBLE, r->model.comm));
     for (PetscInt i = 0; root != 1.0 && i < r->space->sites; i++) line[i] *= root;
+    for (PetscInt i = 0; l->grading && i < r->space->sites; i++) line[i] *= sqrt(ebb_lattice_weight(l, i));
   }
   PetscFunctionReturn(0);
 }
 
+PetscInt ebb_relational_places(const struct ebb_relational *r) { return r->stencils ? r->stencils->width : 0; }
+
+PetscErrorCode ebb_relational_around(const struct ebb_relational *r, const struct ebb_packet *packet, PetscInt count,
+                                     const double t[], double complex around[])
+{
+  PetscFunctionBegin;
+  if (r->stencils) PetscCall(ebb_stencils_samples(r->stencils, packet, count, t, around));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_relational_add(struct ebb_relational *r, PetscInt first, PetscInt count, const double complex psi[])
+{
+  return ebb_relational_add_around(r, first, count, psi, NULL);
+}
+
+PetscErrorCode ebb_relational_add_around(struct ebb_relational *r, PetscInt first, PetscInt count,
+                                         const double complex psi[], const double complex around[])
 {
   const size_t local = (size_t)(r->model.lattice->end - r->model.lattice->begin);
   const size_t one = local * (size_t)r->space->slices;
@@ -223,7 +307,7 @@ PetscErrorCode ebb_relational_add(struct ebb_relational *r, PetscInt first, Pets
       if (!r->engine[i].cosine) PetscCall(ebb_engine_add(r, &r->engine[i], first + s, r->full));
   }
   for (size_t i = 0; i < r->n; i++)
-    if (r->engine[i].cosine) PetscCall(ebb_cosine_add(r, &r->engine[i], first, count, psi));
+    if (r->engine[i].cosine) PetscCall(ebb_cosine_add(r, &r->engine[i], first, count, r->stencils ? around : psi));
   PetscFunctionReturn(0);
 }
 
@@ -289,6 +373,7 @@ PetscErrorCode ebb_relational_destroy(struct ebb_relational **relational)
     PetscCall(PetscFree4(e->c, e->chi, e->s, e->masked));
   }
   PetscCall(PetscFree(r->engine));
+  PetscCall(PetscFree(r->stencils));
   PetscCall(PetscFree(r->full));
   PetscCall(PetscFree2(r->count, r->start));
   PetscCall(PetscFree2(r->t, r->weight));

@@ -46,7 +46,8 @@ struct ebb_relational {
   double complex *full;      /* [slices][ring] */
   int *count, *start;        /* [ranks]: sites of each rank, for gathering; both times 2 */
   PetscMPIInt rank, ranks;
-  bool gathers; /* some reading needs the whole state on every rank */
+  bool gathers;                  /* some reading needs the whole state on every rank */
+  struct ebb_stencils *stencils; /* what cosine_power readings need beside the rows of a graded lattice, or NULL */
 };
 
 /* One sample, the whole state [slices][ring] on every rank; outcomes are shared among ranks. */
@@ -66,7 +67,7 @@ PetscErrorCode ebb_purity_of_rows(PetscInt m, PetscInt length, const double comp
 /* The cosine_power engine: sites stay where they are, neighbours exchange a halo. */
 PetscErrorCode ebb_cosine_create(struct ebb_relational *relational, struct ebb_engine *engine);
 PetscErrorCode ebb_cosine_destroy(struct ebb_cosine **cosine);
-/* Bins of the system are known only now: makes engine->bins. */
+/* psi [count][slices][local], or on a graded lattice [count][places around the rows]. */
 PetscErrorCode ebb_cosine_add(struct ebb_relational *relational, struct ebb_engine *engine, PetscInt first,
                               PetscInt count, const double complex psi[]);
 void ebb_cosine_transpose(struct ebb_engine *engine); /* first */

@@ -25,13 +25,13 @@ PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct
   *space = s;
   s->model = model;
   s->sites = sites;
-  s->ring = l->rows.prescription->grid ? sites : 2 * sites;
-  s->wrap = l->rows.prescription->grid ? sites : l->rows.half ? sites : 2 * sites - sites / 2;
+  s->padded = !l->rows.prescription->grid && !l->grading;
+  s->ring = s->padded ? 2 * sites : sites;
+  s->wrap = !s->padded || l->rows.half ? sites : 2 * sites - sites / 2;
   s->slices = PetscMax(model->circle.points, 1);
   PetscCall(PetscMalloc1(s->ring, &s->v));
   for (PetscInt r = 0; r < s->ring; r++)
-    s->v[r] = l->rows.prescription->grid ? ebb_lattice_v(l, r)
-                                         : ebb_lattice_v(l, 0) + l->rows.step * (double)(ebb_space_n(s, r) - 1);
+    s->v[r] = s->padded ? ebb_lattice_v(l, 0) + l->rows.step * (double)(ebb_space_n(s, r) - 1) : ebb_lattice_v(l, r);
   PetscFunctionReturn(0);
 }
 

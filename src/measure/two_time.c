@@ -201,11 +201,18 @@ static double normalise(PetscInt n, double p[])
   return sum;
 }
 
-static double distance(PetscInt n, const double p[], const double q[])
+/* Total variation; *error grows by what a row's share may hide where p - q changes its sign. */
+static double distance(const struct ebb_two_time *x, const double p[], const double q[], double *error)
 {
-  double sum = 0.0;
+  double sum = 0.0, open = 0.0;
 
-  for (PetscInt i = 0; i < n; i++) sum += fabs(p[i] - q[i]);
+  for (PetscInt i = 0; i < x->n; i++) {
+    const double here = p[i] - q[i], before = i > 0 ? p[i - 1] - q[i - 1] : 0.0;
+
+    sum += fabs(here);
+    if (x->sites[i] != 1.0 && here * before < 0.0) open += fmax(fabs(here), fabs(before));
+  }
+  *error = fmax(*error, 0.5 * open);
   return 0.5 * sum;
 }
 
@@ -230,8 +237,11 @@ PetscErrorCode ebb_two_time_find(const struct ebb_packet *packet, const struct e
   if (problem[0]) PetscFunctionReturn(0);
   PetscCall(ebb_block_make(&e, s->first[0], s->first[1], &first));
   if (first.sites == 0) PetscCall(PetscSNPrintf(problem, size, "propagator.first holds no site of the lattice"));
-  PetscCall(PetscMalloc4(x->n, &x->v, x->n, &x->right, x->n, &x->conditional, x->n, &x->kinematical));
-  for (PetscInt q = 0; q < x->n; q++) x->v[q] = fabs(ebb_lattice_v(lattice, q));
+  PetscCall(PetscMalloc5(x->n, &x->v, x->n, &x->right, x->n, &x->conditional, x->n, &x->kinematical, x->n, &x->sites));
+  for (PetscInt q = 0; q < x->n; q++) {
+    x->v[q] = fabs(ebb_lattice_v(lattice, q));
+    x->sites[q] = ebb_lattice_weight(lattice, q);
+  }
   if (!problem[0]) {
     PetscCall(right_one(&e, comm, &first, s, x));
     PetscCall(conditional_one(&e, comm, &first, s, grids, x));
@@ -239,8 +249,8 @@ PetscErrorCode ebb_two_time_find(const struct ebb_packet *packet, const struct e
     x->lost = 1.0 - normalise(x->n, x->right);
     (void)normalise(x->n, x->conditional);
     (void)normalise(x->n, x->kinematical);
-    x->distance_conditional = distance(x->n, x->conditional, x->right);
-    x->distance_kinematical = distance(x->n, x->kinematical, x->right);
+    x->distance_conditional = distance(x, x->conditional, x->right, &x->distance_error);
+    x->distance_kinematical = distance(x, x->kinematical, x->right, &x->distance_error);
     x->yes = x->distance_kinematical > WRONG && x->distance_conditional < RIGHT;
   }
   PetscCall(ebb_block_clear(&first));
@@ -248,9 +258,23 @@ PetscErrorCode ebb_two_time_find(const struct ebb_packet *packet, const struct e
   PetscFunctionReturn(0);
 }
 
+PetscErrorCode ebb_two_time_needs(const struct ebb_lattice *l, const struct ebb_two_time_settings *s,
+                                  struct ebb_grading_needs *needs)
+{
+  static const double BEYOND = 1.05; /* the volume from which the functions are waves, with room for its rounding */
+  const double high = ebb_evolution_highest(s->first[1]);
+
+  PetscFunctionBegin;
+  if (!s->given || l->rows.band != 1 || l->rows.step != 4.0) PetscFunctionReturn(0);
+  needs->k_max = fmax(needs->k_max, high);
+  needs->plain_v = fmax(needs->plain_v, s->first[1] + 2.0 * l->rows.step);
+  needs->plain_v = fmax(needs->plain_v, BEYOND * ebb_basis_wave_volume(&l->rows, high));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_two_time_clear(struct ebb_two_time *x)
 {
   PetscFunctionBegin;
-  PetscCall(PetscFree4(x->v, x->right, x->conditional, x->kinematical));
+  PetscCall(PetscFree5(x->v, x->right, x->conditional, x->kinematical, x->sites));
   PetscFunctionReturn(0);
 }

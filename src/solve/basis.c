@@ -116,6 +116,14 @@ PetscErrorCode ebb_cursor_open_sites(const struct ebb_basis *basis, int arm, Pet
   return open_at(basis, arm, n, true, cursor);
 }
 
+PetscErrorCode ebb_basis_values(const struct ebb_basis *basis, int arm, PetscInt count, const double v[], double *rows)
+{
+  PetscFunctionBegin;
+  PetscCheck(basis->kind->values, PETSC_COMM_SELF, PETSC_ERR_SUP, "these functions are known on the sites alone");
+  basis->kind->values(basis, arm, count, v, rows);
+  PetscFunctionReturn(0);
+}
+
 void ebb_cursor_links(struct ebb_cursor *cursor, PetscInt count, double *rows)
 {
   cursor->basis->kind->cursor_links(cursor, count, rows);

@@ -10,9 +10,10 @@ struct ebb_basis_kind {
   PetscErrorCode (*cursor_open)(const struct ebb_basis *basis, struct ebb_cursor *cursor); /* sets cursor->data */
   void (*cursor_next)(struct ebb_cursor *cursor, PetscInt count, double *rows);
   void (*cursor_links)(struct ebb_cursor *cursor, PetscInt count, double *rows); /* NULL: no graded lattices */
-  double (*cursor_drift)(const struct ebb_cursor *cursor);                       /* NULL: always 0 */
-  void (*destroy)(struct ebb_basis *basis);                                      /* frees data */
-  void (*keep)(struct ebb_basis *basis, PetscInt first); /* functions first.. move to the front, basis->n of them */
+  void (*values)(const struct ebb_basis *basis, int arm, PetscInt count, const double v[], double *rows); /* or NULL */
+  double (*cursor_drift)(const struct ebb_cursor *cursor); /* NULL: always 0 */
+  void (*destroy)(struct ebb_basis *basis);                /* frees data */
+  void (*keep)(struct ebb_basis *basis, PetscInt first);   /* functions first.. move to the front, basis->n of them */
 };
 
 struct ebb_basis {

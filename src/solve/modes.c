@@ -164,15 +164,15 @@ static PetscErrorCode modes_cursor_open(const struct ebb_basis *basis, struct eb
   PetscFunctionReturn(0);
 }
 
-static struct ebb_far_waves far_waves(const struct ebb_cursor *cursor)
+static struct ebb_far_waves far_waves(const struct ebb_basis *basis, int arm)
 {
-  const struct modes *m = cursor->basis->data;
+  const struct modes *m = basis->data;
 
-  return (struct ebb_far_waves){.n = cursor->basis->n,
-                                .prescription = cursor->basis->lattice.rows.prescription,
+  return (struct ebb_far_waves){.n = basis->n,
+                                .prescription = basis->lattice.rows.prescription,
                                 .series = m->series,
                                 .phase = m->phase,
-                                .amplitude = m->amplitude[cursor->arm],
+                                .amplitude = m->amplitude[arm],
                                 .limit = m->limit};
 }
 
@@ -182,7 +182,7 @@ static void modes_cursor_next(struct ebb_cursor *cursor, PetscInt count, double 
   const bool every = cursor->every || !lattice->grading;
   const PetscInt n = cursor->basis->n, left = ebb_lattice_plain(lattice, cursor->arm) - cursor->site;
   const PetscInt sites = every ? count : PetscMin(PetscMax(left, 0), count);
-  const struct ebb_far_waves waves = far_waves(cursor);
+  const struct ebb_far_waves waves = far_waves(cursor->basis, cursor->arm);
 
   walk_next(cursor->data, sites, rows, true);
   for (PetscInt i = sites; rows && i < count; i++)
@@ -194,7 +194,7 @@ static void modes_cursor_links(struct ebb_cursor *cursor, PetscInt count, double
 {
   const struct ebb_lattice *lattice = &cursor->basis->lattice;
   const PetscInt n = cursor->basis->n;
-  const struct ebb_far_waves waves = far_waves(cursor);
+  const struct ebb_far_waves waves = far_waves(cursor->basis, cursor->arm);
 
   for (PetscInt i = 0; i < count; i++) {
     const double v = ebb_lattice_place(lattice, cursor->arm, cursor->site + i);
@@ -204,6 +204,13 @@ static void modes_cursor_links(struct ebb_cursor *cursor, PetscInt count, double
     ebb_far_values(&waves, v + 2.0 * lattice->rows.step, row + 2 * n, NULL);
   }
   cursor->site += count;
+}
+
+static void modes_values(const struct ebb_basis *basis, int arm, PetscInt count, const double v[], double *rows)
+{
+  const struct ebb_far_waves waves = far_waves(basis, arm);
+
+  for (PetscInt i = 0; i < count; i++) ebb_far_values(&waves, v[i], rows + i * basis->n, NULL);
 }
 
 static double modes_cursor_drift(const struct ebb_cursor *cursor)
@@ -247,6 +254,7 @@ static void modes_destroy(struct ebb_basis *basis)
 static const struct ebb_basis_kind modes_kind = {.cursor_open = modes_cursor_open,
                                                  .cursor_next = modes_cursor_next,
                                                  .cursor_links = modes_cursor_links,
+                                                 .values = modes_values,
                                                  .cursor_drift = modes_cursor_drift,
                                                  .destroy = modes_destroy};
 
@@ -341,6 +349,22 @@ static PetscErrorCode normalise_full(struct ebb_basis *basis, const enum ebb_cha
   for (int arm = 0; arm < 2; arm++)
     for (int u = 0; u < 2; u++) PetscCall(PetscFree2(amplitude[arm][u], exponent[arm][u]));
   PetscFunctionReturn(0);
+}
+
+double ebb_basis_wave_volume(const struct ebb_rows *rows, double k_max)
+{
+  enum { LOOKS = 24 }; /* halvings of k: small ones reach as far again, as y goes like 1/k against x */
+  double b[EBB_SERIES_TERMS + 1], c[EBB_SERIES_TERMS + 1], reach = 0.0;
+
+  rows->prescription->measure_series(EBB_SERIES_TERMS + 1, b);
+  rows->prescription->hop_series(EBB_SERIES_TERMS + 1, c);
+  for (int i = 0; i < LOOKS; i++) {
+    struct ebb_series series;
+
+    ebb_series_make(ldexp(k_max, -i), rows->prescription->tilt, b, c, &series);
+    reach = fmax(reach, ebb_series_reach(&series, TINY_TERM));
+  }
+  return reach;
 }
 
 /* Series of every mode, the matching site and the end of the growing region. */

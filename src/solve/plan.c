@@ -100,7 +100,7 @@ static double gauss_weight(PetscInt n, long double x)
   return (double)(2.0L / ((1.0L - x * x) * slope * slope));
 }
 
-static PetscErrorCode gauss(double low, double high, PetscInt n, double **k, double **w)
+PetscErrorCode ebb_gauss_legendre(double low, double high, PetscInt n, double **k, double **w)
 {
   gsl_integration_glfixed_table *table = gsl_integration_glfixed_table_alloc((size_t)n);
 
@@ -134,8 +134,8 @@ static PetscErrorCode choose_nodes(struct ebb_plan *plan, double period, bool ex
   } else {
     plan->n = PetscMax((PetscInt)ceil(width * period / 4.0), COARSE_MIN) + GAUSS_EXTRA;
     plan->check_n = plan->n + plan->n / 8 + 1;
-    PetscCall(gauss(plan->k_low, plan->k_high, plan->n, &plan->k, &plan->weight));
-    PetscCall(gauss(plan->k_low, plan->k_high, plan->check_n, &plan->check_k, &plan->check_weight));
+    PetscCall(ebb_gauss_legendre(plan->k_low, plan->k_high, plan->n, &plan->k, &plan->weight));
+    PetscCall(ebb_gauss_legendre(plan->k_low, plan->k_high, plan->check_n, &plan->check_k, &plan->check_weight));
   }
   PetscFunctionReturn(0);
 }

@@ -16,7 +16,7 @@ gravity: {{prescription: {prescription}}}
 clock: {{kind: scalar, from: -0.2, to: 0.3, samples: {samples}}}
 state: {{profile: gaussian_momentum, momentum: {momentum}, relative_spread: 0.08}}
 numerics: {{propagator: {propagator}}}
-lattice: {{volume_max: {volume_max}}}
+lattice: {{volume_max: {volume_max}, layout: full}}
 output: {{file: out.h5, keep: {keep}, every: 3, checkpoint: {{every: {every}}}}}
 """
 MODES = dict(prescription="aps", samples=161, momentum=100, propagator="auto", volume_max="2.0e+4", every="0.01s",

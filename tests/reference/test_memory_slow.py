@@ -23,8 +23,8 @@ def text(gravity, clock, packet, lattice, keep, propagator="auto"):
 
 MODELS = {
     "few modes": text("prescription: slqc", (-0.3, 0.3, 21), (60, 0.08), "volume_max: 3000", "moments"),
-    "many modes": text("prescription: slqc", (-0.2, 0.2, 41), (1000, 0.1), "volume_max: 5.0e+4", "moments"),
-    "many sites": text("prescription: aps", (-0.4, 0.4, 161), (100, 0.05), "volume_max: 4.0e+5", "moments, quantiles"),
+    "many modes": text("prescription: slqc", (-0.2, 0.2, 41), (1000, 0.1), "volume_max: 5.0e+4, layout: full", "moments"),
+    "many sites": text("prescription: aps", (-0.4, 0.4, 161), (100, 0.05), "volume_max: 4.0e+5, layout: full", "moments, quantiles"),
     "everything kept": text("prescription: mmo", (-0.4, 0.4, 64), (100, 0.05), "volume_max: 4.0e+5",
                             "moments, quantiles, probability, state"),
     "chebyshev": text("prescription: slqc", (-0.01, 0.01, 3), (200, 0.05), "volume_max: 6.0e+4", "moments, quantiles", "chebyshev"),

@@ -23,7 +23,7 @@ output: {file: out.h5, keep: [moments]}
 """
 LARGE = """clock: {kind: scalar, from: -0.5, to: 0.5, samples: 401}
 state: {profile: gaussian_momentum, momentum: 200, relative_spread: 0.08}
-lattice: {volume_max: 1.0e+6}
+lattice: {volume_max: 1.0e+6, layout: full}
 output: {file: out.h5, keep: [moments, quantiles]}
 """
 TOO_LITTLE = 700000  # kB of address space: the program and its libraries fit, the states of LARGE do not

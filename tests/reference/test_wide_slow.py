@@ -65,7 +65,7 @@ def uses(folder):
         f.write(READINGS)
     run("show", graded)
     done = run("relate", graded, readings, "-o", os.path.join(folder, "x.h5"), expect=2)
-    check("states on every site" in done.stderr, "relate refuses a lattice that was graded on demand")
+    check("lattice.layout full" in done.stderr, "what needs every site is refused on a lattice that was graded on demand")
     path = os.path.join(folder, "file.yaml")
     with open(path, "w", encoding="utf-8") as f:
         f.write("clock: {from: -0.1, to: 0.1}\nstate: {profile: file, file: graded.h5, at: -0.3}\n")

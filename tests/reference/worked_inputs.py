@@ -8,6 +8,7 @@ from common import check, h5py, os, run, tempfile
 INPUTS = os.path.join(os.path.dirname(__file__), "..", "..", "inputs")
 SLOW = ("closed_connection.yaml", "first_bounce.yaml", "open_universe.yaml", "polymer_scale.yaml", "polymer_scale_closed.yaml",
         "polymer_scale_lambda.yaml")  # seconds each, or run by test_sweep_physics.py as well
+ELSEWHERE = ("wide_clock.yaml", "wide_readings.yaml")  # in test_relate_wide_slow.py
 PLANNED = ("survey.yaml", "thousand_cases.yaml")  # minutes: read, planned and left alone
 
 
@@ -55,7 +56,7 @@ def readings(path, scratch):
 def all_of(wanted):
     """Runs what wanted(name) names: models first, then the readings files of these."""
     with tempfile.TemporaryDirectory() as scratch:
-        names = [path for path in files() if wanted(os.path.basename(path))]
+        names = [path for path in files() if wanted(os.path.basename(path)) and os.path.basename(path) not in ELSEWHERE]
         check(names, f"{len(names)} worked files")
         for path in names:
             if not is_readings(path):

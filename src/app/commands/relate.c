@@ -92,6 +92,9 @@ static PetscErrorCode put_root(struct ebb_store *store, const struct ebb_relatio
   PetscCall(ebb_result_line(store, "/window/value", r->m, r->t, "1", "parameter that is integrated out, trapezoid rule",
                             NULL));
   PetscCall(ebb_store_set_real(store, "/window", "tolerance", r->readings.window.tolerance));
+  PetscCall(ebb_store_set_text(store, "/window", "layout", r->run.graded ? "graded" : "full"));
+  PetscCall(ebb_store_set_text(store, "/window", "why_layout", r->run.why_layout));
+  if (r->run.graded) PetscCall(ebb_store_set_real(store, "/window", "grading_error", r->grading_error));
   PetscCall(ebb_store_set_real(store, "/window", "state_error", r->state_error));
   PetscCall(ebb_store_set_real(store, "/window", "edge_probability", r->edge_probability));
   PetscFunctionReturn(0);

@@ -10,10 +10,11 @@
 
 /* Vectors are [slices][ring]: the lattice zero-padded to a ring of twice its sites, so that what a reading of b sends
  * to n <= 0 stays apart from the edge. Ring position r is site r of the lattice where r < sites; positions from `wrap`
- * on are the negative ones, r - ring. Grids in ln v have no padding. */
+ * on are the negative ones, r - ring. Grids in ln v and graded lattices have no padding. */
 struct ebb_space {
   const struct ebb_relational_model *model;
   PetscInt sites, ring, slices, wrap;
+  bool padded;
   double *v; /* [ring], signed */
 };
 PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct ebb_space **space);
@@ -55,6 +56,10 @@ struct ebb_reading {
   PetscErrorCode (*create)(struct ebb_representation *rep, bool extended, char problem[], size_t size);
   PetscErrorCode (*forward)(struct ebb_representation *rep, const double complex in[], double complex out[]);
   PetscErrorCode (*backward)(struct ebb_representation *rep, const double complex in[], double complex out[]);
+  /* Functions of |v| alone, which can be read on graded lattices: value, increasing, and where it is taken; else NULL.
+   */
+  double (*of_volume)(double v);
+  double (*volume_of)(double value);
   /* Volume on the effective trajectory at a value of the observable, NAN where there is none. */
   double (*curve)(const struct ebb_relational_model *model, double alpha, double value);
 };
@@ -81,6 +86,8 @@ PetscErrorCode ebb_windows_destroy(struct ebb_windows **windows);
 double ebb_central_binomial(int n); /* C(2n, n)/4^n */
 double ebb_cosine_power_norm(int power, int centres);
 
+enum { EBB_READING_GROUPS = 16 }; /* coarse bins for the question whether the order of reading matters */
+
 /* Bins of the system. */
 struct ebb_bins {
   PetscInt n;
@@ -88,13 +95,36 @@ struct ebb_bins {
   PetscInt *map;               /* [size]: bin of a coefficient, -1 for none */
   bool contiguous;             /* cells touch */
   PetscInt groups, per_group;  /* coarse bins for the order of reading; the last one is open */
+  struct ebb_row_bins *rows;   /* of a graded lattice's rows one by one; NULL: cells are all there is to know */
 };
 /* value [size] of the coefficients; half_cell: half width of a site's cell, 0: half way to the neighbours; low_most,
  * high_most: range of LOG and of EQUAL where the settings give none. */
 PetscErrorCode ebb_bins_create(const struct ebb_reading_settings *settings, size_t size, const double value[],
                                double half_cell, double low_most, double high_most, struct ebb_bins **bins);
 PetscErrorCode ebb_bins_destroy(struct ebb_bins **bins);
-double ebb_bins_quantile(const struct ebb_bins *bins, const double mass[], double level);
+/* Outer edges where the settings leave them open: from the smallest and largest value of the system. volume: the bins
+ * are of v itself. */
+void ebb_bins_range(const struct ebb_reading_settings *settings, bool volume, double half_cell, double *low,
+                    double *high);
+/* value [n] at levels [n]. */
+PetscErrorCode ebb_bins_quantiles(const struct ebb_bins *bins, const double mass[], PetscInt n, const double level[],
+                                  double value[]);
+
+/* Rows of a graded lattice as bins. v [size]: |v| of the coefficients, of which the first size - (rows of the lattice)
+ * are sites off the lattice and the others its rows in order. */
+PetscErrorCode ebb_bins_create_rows(const struct ebb_lattice *lattice, const struct ebb_observable_settings *system,
+                                    size_t size, const double v[], struct ebb_bins **bins);
+PetscErrorCode ebb_row_bins_destroy(struct ebb_row_bins **rows);
+PetscErrorCode ebb_row_bins_quantiles(const struct ebb_bins *bins, const double mass[], PetscInt n,
+                                      const double level[], double value[]);
+/* Sites that a bin stands for, [bins]. */
+const double *ebb_row_bins_sites(const struct ebb_row_bins *rows);
+/* Where the bins of a reading on a graded lattice begin and end if nothing is said; first: |v| of each arm's first site
+ * (0: there is none), last: largest |v|. */
+void ebb_graded_bins_range(const struct ebb_reading_settings *settings, const double first[2], double last, double step,
+                           double *low, double *high);
+/* Is this the reading of b with all centres at once? */
+bool ebb_reading_is_cosine_power(const struct ebb_reading_settings *settings);
 
 /* Shared by entries of the catalogue. */
 #define EBB_READING_SOURCE                                                                                             \
