@@ -124,8 +124,9 @@ def draw_probability(figure, axes, result, clock):
     mean, spread = result["moments/v_mean"], result["moments/v_spread"]
     if np.shape(mean) == clock.shape and np.shape(spread) == clock.shape:
         some = np.unique(np.linspace(0, len(clock) - 1, 18).astype(int))[1:-1]  # so that the probability stays visible
-        axes.errorbar(clock[some], mean[some], yerr=np.minimum(spread[some], 0.99 * mean[some]), fmt="x", ms=4, mew=1,
-                      color="white", elinewidth=1, capsize=2.5, label=r"mean $\pm$ spread")
+        below = np.minimum(spread[some], 0.99 * mean[some])  # a logarithmic axis has no room for less than nothing
+        axes.errorbar(clock[some], mean[some], yerr=[below, spread[some]], fmt="x", ms=4, mew=1, color="white",
+                      elinewidth=1, capsize=2.5, label=r"mean $\pm$ spread")
     mark_bounce(axes, result, "v")
     axes.set_ylim(bins[0], bins[-1])
     axes.set_ylabel(r"volume $|v|$")

@@ -31,12 +31,13 @@ struct ebb_samples {
   const double *quantile; /* [m][levels] or NULL */
 };
 
-/* Root of d<|v|>/dphi by the state itself at any clock value (three passes: Chebyshev nodes in the bracket, a parabola,
- * the value), minimum of the median by repeated section of its bracket. check: the independent rule, NULL where there
- * is none. mean_exists: false where the packet's weight at k = 0 makes <v> drift; the median then stands in. Verdict
- * yes: the mean (or median) and every quantile kept turn, and the errors are small; no: no turning point, part of the
- * packet runs on to v = 0, or the turning point is the grid's; undecided: anything else. Collective. Cost: about 60
- * evaluations on the sites below the packet's reach at the bounce. */
+/* Root of d<|v|>/dphi by the state itself at any clock value (passes over Chebyshev nodes in the bracket, narrowed until
+ * the tangent at the interpolant's root agrees with it; then the value), minimum of the median by repeated section of
+ * its bracket. check: the independent rule, NULL where there is none. mean_exists: false where the packet's weight at
+ * k = 0 makes <v> drift; the median then stands in. Verdict yes: the mean (or median) and every quantile kept turn, and
+ * the errors are small; no: no turning point, part of the packet runs on to v = 0, or the turning point is the grid's;
+ * undecided: anything else. Collective. Cost: about 60 evaluations on the sites below the packet's reach at the bounce,
+ * 12 more for each time that the bracket is narrowed. */
 PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *check, const struct ebb_samples *samples,
                                const struct ebb_budget *budget, bool mean_exists, struct ebb_bounce *bounce);
 

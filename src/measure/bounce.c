@@ -6,9 +6,18 @@
 #include <math.h>
 #include <string.h>
 
-enum { NODES = 9, SECTION = 17, SECTIONS = 12, OUTSIDE_TRIES = 6, OUTSIDE_STRIDES = 4, LIMIT_DOUBLINGS = 48 };
+enum {
+  NODES = 9,
+  SECTION = 17,
+  SECTIONS = 12,
+  OUTSIDE_TRIES = 6,
+  OUTSIDE_STRIDES = 4,
+  LIMIT_DOUBLINGS = 48,
+  NARROWINGS = 8
+};
 static const double NEGLIGIBLE_TAIL = 1e-18; /* v^2-weighted share beyond the sites that the search looks at */
 static const double CLOSE = 1e-4;            /* of the bracket: half width of the parabola's support */
+static const double CORRECTED = 1e-7;        /* of the bracket: last correction of the clock, squared in what is left */
 static const double SECTIONED = 1e-9;        /* of the bracket: where sectioning for the median stops */
 static const double EDGE_ALLOWED = 1e-3;     /* probability at the lattice edge above which no verdict is given */
 static const double ERROR_ALLOWED = 1e-2;    /* relative error of the bounce volume above which no verdict is given */
@@ -81,9 +90,10 @@ static PetscInt bracket_of(const struct ebb_samples *samples)
 }
 
 /* Looks for a bracket beyond the range on the side the packet comes from: exponential growth away from a bounce means
- * the turning point is at most ln(v/v_bounce)/kappa away, about where V+ e^X and V- e^-X balance. */
+ * the turning point is at most ln(v/v_bounce)/kappa away, about where V+ e^X and V- e^-X balance. last: where the
+ * search ended in vain. */
 static PetscErrorCode bracket_outside(struct ebb_source *source, const struct ebb_samples *samples, double *low,
-                                      double *high, bool *found)
+                                      double *high, double *last, bool *found)
 {
   const double kappa = source->lattice->rows.kappa;
   const double stride = (samples->phi[samples->m - 1] - samples->phi[0]) / OUTSIDE_STRIDES;
@@ -113,6 +123,7 @@ static PetscErrorCode bracket_outside(struct ebb_source *source, const struct eb
     v = next_v;
     slope = next_slope;
   }
+  *last = phi;
   PetscFunctionReturn(0);
 }
 
@@ -146,22 +157,48 @@ static double interpolated_root(int n, const double x[], const double f[], doubl
   return 0.5 * (low + high);
 }
 
-/* Turning point of the mean in [low, high]. curvature: d^2 v/dphi^2 there. */
-static PetscErrorCode refine_mean(struct ebb_source *source, double low, double high, double v_limit, double *root,
-                                  double *curvature)
+/* The part between neighbouring points [n] in which the slope turns from negative to positive at the smallest volume;
+ * unchanged where there is none. */
+static void narrow(int n, const double x[], const double v[], const double f[], double *low, double *high)
 {
-  double x[NODES], f[NODES], near[2], g[2] = {NAN, NAN};
+  const double end[2] = {*low, *high};
+  double least = INFINITY;
 
+  for (int i = 0; i <= n; i++) { /* from point i - 1, or the lower end, to point i, or the upper one */
+    const double below = i > 0 ? f[i - 1] : -1.0, above = i < n ? f[i] : 1.0;
+    const double here = fmin(i > 0 ? v[i - 1] : INFINITY, i < n ? v[i] : INFINITY);
+
+    if (!(below < 0.0 && above >= 0.0 && here < least)) continue;
+    least = here;
+    *low = i > 0 ? x[i - 1] : end[0];
+    *high = i < n ? x[i] : end[1];
+  }
+}
+
+/* Turning point of the mean in [low, high], narrowed until the slope's interpolant is as good as its own tangent there.
+ * curvature: d^2 v/dphi^2 there; error: second order of the last correction. */
+static PetscErrorCode refine_mean(struct ebb_source *source, double low, double high, double v_limit, double *root,
+                                  double *curvature, double *error)
+{
   PetscFunctionBegin;
-  for (int i = 0; i < NODES; i++)
-    x[i] = 0.5 * (low + high) - 0.5 * (high - low) * cos((2.0 * i + 1.0) * EBB_PI / (2.0 * NODES));
-  PetscCall(look(source, NODES, x, v_limit, NULL, f));
-  *root = interpolated_root(NODES, x, f, low, high);
-  near[0] = *root - CLOSE * (high - low);
-  near[1] = *root + CLOSE * (high - low);
-  PetscCall(look(source, 2, near, v_limit, NULL, g));
-  *curvature = (g[1] - g[0]) / (near[1] - near[0]);
-  if (*curvature > 0.0) *root = near[0] - g[0] / *curvature;
+  for (int round = 0; round < NARROWINGS; round++) {
+    const double width = high - low, reach = CLOSE * width;
+    double x[NODES], v[NODES], f[NODES], g[3] = {NAN, NAN, NAN}, correction;
+
+    for (int i = 0; i < NODES; i++)
+      x[i] = 0.5 * (low + high) - 0.5 * width * cos((2.0 * i + 1.0) * EBB_PI / (2.0 * NODES));
+    PetscCall(look(source, NODES, x, v_limit, v, f));
+    *root = interpolated_root(NODES, x, f, low, high);
+    PetscCall(look(source, 3, (double[]){*root - reach, *root, *root + reach}, v_limit, NULL, g));
+    *curvature = (g[2] - g[0]) / (2.0 * reach);
+    correction = -g[1] / *curvature;
+    *error = *curvature > 0.0 && fabs(correction) < width
+                 ? correction * correction * fabs((g[2] - 2.0 * g[1] + g[0]) / (reach * reach * *curvature))
+                 : width;
+    if (*error < width) *root += correction;
+    if (*error < width && fabs(correction) < CORRECTED * width) break;
+    narrow(NODES, x, v, f, &low, &high);
+  }
   PetscFunctionReturn(0);
 }
 
@@ -380,14 +417,35 @@ static PetscErrorCode judge(const struct ebb_samples *samples, const struct ebb_
   PetscFunctionReturn(0);
 }
 
+/* Whether the mean volume is known where the search for a turning point outside the range has ended: the lattice is
+ * made for the range, and its noise may cover what lies far outside. */
+static PetscErrorCode lost_at(struct ebb_source *source, struct ebb_source *check, const struct ebb_budget *budget,
+                              double clock, struct ebb_bounce *bounce, bool *lost)
+{
+  double slope_error;
+  char text[256];
+
+  PetscFunctionBegin;
+  PetscCall(values_at(source, check, budget, clock, 0.0, bounce, &slope_error));
+  *lost = !(bounce->v.error <= ERROR_ALLOWED * fabs(bounce->v.value));
+  blank(bounce);
+  if (!*lost) PetscFunctionReturn(0);
+  PetscCall(PetscSNPrintf(text, sizeof text,
+                          "no turning point in the clock range; outside, at clock %.4g, the error of the mean volume "
+                          "hides one: let clock.from and clock.to enclose the bounce",
+                          clock));
+  PetscCall(say(bounce, EBB_VERDICT_UNDECIDED, text));
+  PetscFunctionReturn(0);
+}
+
 PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *check, const struct ebb_samples *samples,
                                const struct ebb_budget *budget, bool mean_exists, struct ebb_bounce *bounce)
 {
   const struct ebb_lattice *lattice = source->lattice;
   PetscInt at;
   bool found;
-  double low = NAN, high = NAN, root = NAN, curvature = NAN, limit = 0.0, median_clock = NAN, slope_error = 0.0,
-         ends[2];
+  double low = NAN, high = NAN, last = NAN, root = NAN, root_error = NAN, curvature = NAN, limit = 0.0,
+         median_clock = NAN, slope_error = 0.0, ends[2];
 
   PetscFunctionBegin;
   blank(bounce);
@@ -401,7 +459,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     low = samples->phi[at];
     high = samples->phi[at + 1];
   } else {
-    PetscCall(bracket_outside(source, samples, &low, &high, &found));
+    PetscCall(bracket_outside(source, samples, &low, &high, &last, &found));
     bounce->outside = found;
   }
   if (!found && budget->edge_probability > EDGE_ALLOWED) { /* what is cut off might turn */
@@ -409,6 +467,10 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     PetscFunctionReturn(0);
   }
   if (!found) {
+    bool lost = false;
+
+    PetscCall(lost_at(source, check, budget, last, bounce, &lost));
+    if (lost) PetscFunctionReturn(0);
     PetscCall(
         say(bounce, EBB_VERDICT_NO, "no turning point in the clock range, nor where the trend of the mean points"));
     PetscFunctionReturn(0);
@@ -416,7 +478,7 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
   ends[0] = low;
   ends[1] = high;
   PetscCall(reach(source, 2, ends, at >= 0 ? samples->v[at] : samples->v[0], &limit));
-  PetscCall(refine_mean(source, low, high, limit, &root, &curvature));
+  PetscCall(refine_mean(source, low, high, limit, &root, &curvature, &root_error));
   PetscCall(values_at(source, check, budget, root, limit, bounce, &slope_error));
   if (lattice->rows.prescription->continuum) {
     const double turning = bounce->v.value;
@@ -427,10 +489,12 @@ PetscErrorCode ebb_bounce_find(struct ebb_source *source, struct ebb_source *che
     PetscCall(judge_continuum(lattice, samples, true, turning, bounce));
     PetscFunctionReturn(0);
   }
-  /* clock: the slope's error over the curvature; the volume is flat there, so only its own error counts */
+  bounce->v.error += 0.5 * fabs(curvature) * root_error * root_error;
+  bounce->volume.error += 0.5 * fabs(curvature) * root_error * root_error * bounce->volume.value / bounce->v.value;
+  /* clock: the slope's error over the curvature; the volume is flat there, so its own error counts to second order */
   bounce->clock =
       (struct ebb_measured){root, (slope_error + bounce->v.error * source->lattice->rows.kappa) / curvature +
-                                      4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
+                                      root_error + 4.0 * PETSC_MACHINE_EPSILON * fmax(fabs(low), fabs(high))};
   PetscCall(
       refine_median(source, budget, low - (high - low), high + (high - low), limit, &median_clock, &bounce->v_median));
   if (!mean_exists) {

@@ -219,6 +219,16 @@ static double cut_of(const struct ebb_budget *budget, const struct ebb_lattice *
   return TWICE * 0.25 * budget->cut_tail * (power > 0.0 ? pow(top, power) / (power * l * l) : 1.0 / l);
 }
 
+/* The same of Theta^{-1/4} psi weighted with v^{4/3}: int_0 k^{-1/2} cos(k x) dk ~ x^{-1/2}, |psi|^2 = cut_tail
+ * pi/(kappa v ln v). */
+static double cut_dressed(const struct ebb_budget *budget, const struct ebb_lattice *lattice)
+{
+  static const double TWICE = 2.0, POWER = 4.0 / 3.0;
+  const double top = ebb_lattice_top(lattice);
+
+  return TWICE * 0.25 * budget->cut_tail * EBB_PI / lattice->rows.kappa * pow(top, POWER) / (POWER * log(top));
+}
+
 void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c, const struct ebb_lattice *lattice,
                        const struct ebb_sheet *sheet, PetscInt s, const double moment[EBB_MOMENTS],
                        double error[EBB_MOMENTS])
@@ -317,7 +327,8 @@ void ebb_budget_errors(struct ebb_budget *budget, const struct ebb_constants *c,
   /* a^4 weighs large volumes like v^{4/3}, and Theta^{-1/4} weighs the slow modes that live there */
   error[EBB_MOMENT_DRESSED_A4] += moment[EBB_MOMENT_DRESSED_A4] *
                                   (far / v + 4.0 * normalisation +
-                                   beyond(sheet->sum[EBB_SUM_EDGE_DRESSED][s], sheet->sum[EBB_SUM_INNER_DRESSED][s]) /
+                                   (beyond(sheet->sum[EBB_SUM_EDGE_DRESSED][s], sheet->sum[EBB_SUM_INNER_DRESSED][s]) +
+                                    cut_dressed(budget, lattice)) /
                                        fmax(sheet->sum[EBB_SUM_DRESSED][s], 1e-300));
   error[EBB_MOMENT_HUBBLE_SPREAD] = fmax(error[EBB_MOMENT_HUBBLE_SPREAD], 0.0);
   for (int i = 0; i < EBB_MOMENTS; i++)
@@ -337,15 +348,20 @@ double ebb_budget_quantile_error(const struct ebb_budget *budget, const struct e
   /* a shift of probability moves the quantile by shift/density. The mean density between the neighbouring levels
    * exceeds that at a level inside by less than INSIDE, that between the outer ones the density in a tail by less than
    * THIN. */
-  static const double INSIDE = 4.0, THIN = 20.0;
+  static const double INSIDE = 4.0, THIN = 20.0, THINNER = 2.0;
   const bool inside = which > 0 && which + 1 < levels;
   const size_t low = inside ? which - 1 : 0, high = inside ? which + 1 : levels - 1;
   const double width = levels > 1 ? (q[high] - q[low]) / (level[high] - level[low]) : spread;
+  /* what is left of a log-normal distribution beyond a level is at most as dense there as it is spread: in a thin tail
+   * that says more than the neighbours do */
+  const double mean = sheet->sum[EBB_SUM_LNV][s], square = sheet->sum[EBB_SUM_LNV2][s];
+  const double thin =
+      THINNER * fabs(q[which]) * sqrt(fmax(square - mean * mean, 0.0)) / fmin(level[which], 1.0 - level[which]);
 
   /* limit circle: beyond the last site only the probability is known, not where it lies */
   if (family && q[which] > ebb_lattice_top(lattice) - 2.0) return INFINITY;
   return fabs(q[which]) * (budget->quadrature_quantile + budget->grading_quantile + 4.0 * PETSC_MACHINE_EPSILON) +
-         (inside ? INSIDE : THIN) * fmax(width, 1.0) * (missing + 2.0 * budget->propagation);
+         fmax((inside ? INSIDE : THIN) * fmax(width, 1.0), thin) * (missing + 2.0 * budget->propagation);
 }
 
 /* Largest differences of two sheets of the same samples so far: moments and quantiles. */

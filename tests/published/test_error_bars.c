@@ -183,3 +183,35 @@ Test(errors, contain_what_a_short_lattice_cuts_off)
   cr_expect_leq(4 * scan.generous, scan.models, "%d of %d models state errors that are much too large", scan.generous,
                 scan.models);
 }
+
+/* Quantiles deep in the tail that a short lattice cuts off, against a lattice that holds it */
+Test(errors, contain_quantiles_that_a_short_lattice_cuts_off)
+{
+  static const double volume_max[] = {400.0, 500.0, 800.0, 0.0};
+  enum { LATTICES = 4, LEVELS = 4 };
+  double q[LATTICES][3 * LEVELS], error[LATTICES][3 * LEVELS];
+
+  for (int i = 0; i < LATTICES; i++) {
+    struct ebb_test_model model;
+    char lattice[64] = "";
+
+    if (volume_max[i] > 0.0) snprintf(lattice, sizeof lattice, "lattice: {volume_max: %g},", volume_max[i]);
+    ebb_test_model_create(&model,
+                          "{clock: {from: -0.3, to: 0.3, samples: 3}, %s state: {profile: gaussian_momentum,\n"
+                          "momentum: 100, relative_spread: 0.1}, output: {keep: [moments, quantiles],\n"
+                          "quantiles: [0.001, 0.5, 0.999, 0.9999999]}}",
+                          lattice);
+    ebb_test_model_conclude(&model);
+    for (int j = 0; j < 3 * LEVELS; j++) {
+      q[i][j] = model.record.quantile[j];
+      error[i][j] = model.record.quantile_error[j];
+    }
+    ebb_test_model_destroy(&model);
+  }
+  for (int i = 0; i + 1 < LATTICES; i++)
+    for (int j = 0; j < 3 * LEVELS; j++)
+      cr_expect_leq(fabs(q[i][j] - q[LATTICES - 1][j]), error[i][j] + error[LATTICES - 1][j],
+                    "up to %g quantile %d is %.17g +- %.2g, on the whole lattice %.17g", volume_max[i], j % LEVELS,
+                    q[i][j], error[i][j], q[LATTICES - 1][j]);
+  cr_expect_leq(error[LATTICES - 1][1], 1e-9 * q[LATTICES - 1][1]);
+}

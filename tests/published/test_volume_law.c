@@ -88,6 +88,51 @@ Test(law, bounce_is_where_the_exponentials_balance)
   ebb_test_model_destroy(&model);
 }
 
+/* The same where the samples stand far from the bounce: their distance is no error of its clock */
+Test(law, bounce_between_or_outside_sparse_samples_is_found)
+{
+  static const struct {
+    double from, to, samples, at;
+  } range[] = {{-1.4, 1.1, 2, 0.05}, {-0.2, 0.2, 5, -1.3}, {0.7, 1.2, 5, 0.0}};
+  const double p = 40.0, spread = 0.1;
+
+  for (size_t i = 0; i < sizeof range / sizeof *range; i++) {
+    struct ebb_test_model model;
+    struct ebb_test_law law;
+
+    ebb_test_model_create(&model,
+                          "{clock: {from: %g, to: %g, samples: %g}, output: {keep: [moments]},\n"
+                          "state: {profile: gaussian_momentum, momentum: %g, relative_spread: %g, bounce_at: %g}}",
+                          range[i].from, range[i].to, range[i].samples, p, spread, range[i].at);
+    ebb_test_model_conclude(&model);
+    law = ebb_test_law_gaussian_momentum(p / model.run.constants.kappa, spread * p / model.run.constants.kappa, 0.0,
+                                         range[i].at);
+    const struct ebb_bounce *bounce = &model.record.bounce;
+    const double v = (double)ebb_test_law_bounce_v(&law), clock = (double)ebb_test_law_bounce_clock(&law);
+
+    cr_expect_eq(bounce->verdict, EBB_VERDICT_YES, "%s", bounce->reason);
+    cr_expect_leq(fabs(bounce->clock.value - clock), bounce->clock.error, "%.17g +- %g for %.17g", bounce->clock.value,
+                  bounce->clock.error, clock);
+    cr_expect_leq(fabs(bounce->v.value - v), bounce->v.error, "%.17g +- %g for %.17g", bounce->v.value, bounce->v.error,
+                  v);
+    cr_expect_leq(bounce->v.error, 1e-9 * v);
+    ebb_test_model_destroy(&model);
+  }
+}
+
+/* A wide packet bounces at 0, where the law says so; seen from clock values whose lattice is too coarse in rounding for
+ * the volume there, that is no reason to deny it */
+Test(law, bounce_that_noise_hides_is_not_denied)
+{
+  struct ebb_test_model model;
+
+  ebb_test_model_create(&model, "{clock: {from: 4, to: 6, samples: 3}, output: {keep: [moments]},\n"
+                                "state: {profile: gaussian_momentum, momentum: 20, relative_spread: 0.03}}");
+  ebb_test_model_conclude(&model);
+  cr_expect_eq(model.record.bounce.verdict, EBB_VERDICT_UNDECIDED, "%s", model.record.bounce.reason);
+  ebb_test_model_destroy(&model);
+}
+
 /* A fixed sequence of numbers in [0, 1) (xorshift, Marsaglia, J. Stat. Softw. 8, 14 (2003)). */
 static double draw(void)
 {

@@ -49,7 +49,7 @@ static void warn(const struct ebb_evolution *w)
   else if (!ebb_run_mean_exists(&w->run))
     fprintf(stderr,
             "ebbturn: warning: c(k) does not vanish at k = 0 (|c(0)|^2 is %.1e of its maximum): the mean volume grows\n"
-            "  logarithmically with the lattice; the bounce is taken from the median\n",
+            "  with the lattice without end; the bounce is taken from the median\n",
             w->run.packet->low_weight);
 }
 
