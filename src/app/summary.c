@@ -8,12 +8,16 @@
 static void line(const char *name, struct ebb_measured x, const char *units)
 {
   int digits = 12;
+  double last = 0.0; /* unit of the last digit that the error leaves: less than half of it is written as 0 */
 
   if (isnan(x.value)) return;
-  if (x.error > 0.0 && isfinite(x.error)) digits = (int)fmin(fmax(2.0 - floor(log10(x.error)) - 1.0, 0.0), 18.0);
+  if (x.error > 0.0 && isfinite(x.error)) {
+    digits = (int)fmin(fmax(2.0 - floor(log10(x.error)) - 1.0, 0.0), 18.0);
+    last = pow(10.0, floor(log10(x.error)) - 1.0);
+  }
   if (fabs(x.value) >= 1e-3 && fabs(x.value) < 1e9)
     printf("  %-14s %.*f +- %.2g%s\n", name, digits, x.value, x.error, units);
-  else if (x.value == 0.0)
+  else if (fabs(x.value) <= last / 2.0)
     printf("  %-14s 0 +- %.2g%s\n", name, x.error, units);
   else
     printf("  %-14s %.*e +- %.2g%s\n", name,
