@@ -9,6 +9,7 @@
 #include <string.h>
 
 const double ebb_relation_identity_limit = 1e-11;
+enum { SITES_UNASKED = 1000000 };               /* of a full lattice that a reading wants and no setting asked for */
 static const double SAME_CLOCK = 1e-12;         /* of the run's range: a stored sample that is one of the window */
 static const double ACCUMULATOR_BYTES = 2.56e8; /* a histogram larger than this is binned in ln v */
 
@@ -163,6 +164,7 @@ static bool needs_every_site(const struct ebb_relation *r, char why[], size_t si
 PetscErrorCode ebb_relation_make_run(struct ebb_relation *r, const char *folder, MPI_Comm comm, char problem[],
                                      size_t size, int *code)
 {
+  bool unasked = false;
   char why[320];
 
   PetscFunctionBegin;
@@ -177,9 +179,18 @@ PetscErrorCode ebb_relation_make_run(struct ebb_relation *r, const char *folder,
                      why);
       PetscFunctionReturn(0);
     }
+    unasked = strcmp(r->settings.lattice.layout, "full") != 0;
     (void)snprintf(r->settings.lattice.layout, sizeof r->settings.lattice.layout, "full");
   }
   PetscCall(ebb_run_create_read(&r->settings, folder, comm, &r->readings, &r->run, code));
+  if (!*code && unasked && ebb_lattice_size(&r->run.lattice) > SITES_UNASKED) {
+    *code = EBB_EXIT_USAGE;
+    (void)snprintf(problem, size,
+                   "%s; all %" PetscInt_FMT " sites would be held: take a clock with instrument 'cosine_power', or set "
+                   "lattice.layout full in the model",
+                   why, ebb_lattice_size(&r->run.lattice));
+    PetscFunctionReturn(0);
+  }
   if (*code)
     (void)snprintf(problem, size, "%.320s%s%s", r->run.problem[0] ? r->run.problem : "the set-up failed",
                    why[0] ? "; every site is wanted: " : "", why);

@@ -85,7 +85,16 @@ static PetscErrorCode add_outcome(struct ebb_relational *r, struct ebb_engine *e
   PetscCall(e->clock->kind->backward(e->clock, e->masked, e->chi));
   for (PetscInt k = 0; k < s->slices; k++)
     for (PetscInt at = s->sites; at < s->ring; at++) /* half lattice: n <= 0; full lattice: beyond either end */
-      if (!r->model.lattice->rows.half || at >= s->wrap) e->leaked[i] += w * square(e->chi[k * s->ring + at]);
+      if (!r->model.lattice->rows.half || at >= s->wrap) {
+        const double p = w * square(e->chi[k * s->ring + at]);
+
+        e->leaked[i] += p;
+        /* a tail d^-2 has as much beyond twice a distance as between it and its half, on either side */
+        if (!r->model.lattice->rows.half)
+          e->beyond[i] += p;
+        else if (at < s->ring - s->sites / 2)
+          e->beyond[i] += 2.0 * p;
+      }
   PetscCall(forward(e->system, e->chi, e->s));
   e->lost[i] += w * missing(r, e);
   histogram(e, i, w);

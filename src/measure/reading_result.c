@@ -300,6 +300,27 @@ static PetscErrorCode purities(struct ebb_relational *r, struct ebb_engine *e)
   PetscFunctionReturn(0);
 }
 
+/* Share of an outcome's dwell that a lattice without an end would hold elsewhere: what the reading sends beyond the
+ * ring of sites; the square of a cell of the clock's values, as a share of the window, for windows seen on these values
+ * alone; and, where the edge of a sharp bin lies inside a cell, that cell. */
+static double cut_share(const struct ebb_engine *e, PetscInt i, double dwell)
+{
+  const struct ebb_windows *w = e->windows;
+  const double values = (double)(w->start[i + 1] - w->start[i]) / (double)e->clock->space->slices;
+  double share = e->beyond[i] / fmax(dwell, 1e-300);
+
+  if (e->direct || e->commuting || e->clock->keeps_sites || values < 1.0) return share;
+  share += 1.0 / (values * values);
+  if (e->settings.instrument != EBB_INSTRUMENT_SHARP) return share;
+  if (e->clock->phase) {
+    const double cell = EBB_PI / (double)e->clock->space->ring;
+    const double low = w->centre[i] / cell - 0.5 * values, high = w->centre[i] / cell + 0.5 * values;
+
+    if (fabs(low - round(low)) < 1e-6 && fabs(high - round(high)) < 1e-6) return share;
+  }
+  return share + 1.0 / values;
+}
+
 PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
 {
   struct ebb_reading_result *x = &e->result;
@@ -327,6 +348,7 @@ PetscErrorCode ebb_engine_result(struct ebb_relational *r, struct ebb_engine *e)
                       : NAN;
     share[i] = e->clock ? v.window_error + v.step_error + 2.0 * r->model.propagation * window / fmax(v.dwell, 1e-300)
                         : 2.0 * r->model.propagation;
+    if (e->clock && !e->cosine) share[i] += cut_share(e, i, v.dwell);
     PetscCall(set_status(r, e, i));
   }
   PetscCall(purities(r, e));

@@ -127,7 +127,7 @@ static PetscErrorCode allocate(struct ebb_relational *r, struct ebb_engine *e)
 
   PetscFunctionBegin;
   e->bin_count = e->bins->n;
-  PetscCall(PetscCalloc2(n * q, &e->sum, q, &e->rest_bin));
+  PetscCall(PetscCalloc3(n * q, &e->sum, q, &e->rest_bin, n, &e->beyond));
   PetscCall(PetscCalloc7(n, &e->first, n, &e->second, n, &e->leaked, n, &e->lost, q, &e->action, n * g, &e->reversed,
                          n * g, &e->joint));
   PetscCall(PetscCalloc1(is_parameter(r, e) ? 1 : n * m, &e->seen));
@@ -224,6 +224,28 @@ static PetscErrorCode prepare_stencils(struct ebb_relational *r, size_t n, const
   PetscFunctionReturn(0);
 }
 
+/* Least common multiple of the numbers of sharp bins of b, so that their edges are edges of cells; 1 where it would be
+ * a large part of the lattice (the error bars then say what an edge inside a cell may do). */
+static PetscInt parts_of(size_t n, const struct ebb_reading_settings reading[], PetscInt sites)
+{
+  PetscInt64 parts = 1;
+
+  for (size_t i = 0; i < n; i++) {
+    const struct ebb_reading_settings *s = &reading[i];
+    PetscInt64 a = parts, b = s->bins;
+
+    if (strcmp(s->clock.name, "b") != 0 || s->instrument != EBB_INSTRUMENT_SHARP || b < 1) continue;
+    while (b) {
+      const PetscInt64 rest = a % b;
+      a = b;
+      b = rest;
+    }
+    parts = parts / a * s->bins;
+    if (parts > sites / 4) return 1;
+  }
+  return (PetscInt)parts;
+}
+
 PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, size_t n,
                                      const struct ebb_reading_settings reading[], struct ebb_relational **relational,
                                      size_t *which, char problem[], size_t size)
@@ -245,7 +267,7 @@ PetscErrorCode ebb_relational_create(const struct ebb_relational_model *model, s
   }
   r->model.t = r->t;
   PetscCall(prepare_ranks(r));
-  PetscCall(ebb_space_create(&r->model, &r->space));
+  PetscCall(ebb_space_create(&r->model, parts_of(n, reading, ebb_lattice_size(model->lattice)), &r->space));
   if (model->lattice->grading) PetscCall(check_grading(r, n, reading));
   if (model->lattice->grading) PetscCall(prepare_stencils(r, n, reading));
   PetscCall(PetscCalloc1(n, &r->engine));
@@ -336,6 +358,7 @@ PetscErrorCode ebb_relational_finish(struct ebb_relational *r)
     PetscCall(add_up(r, n, e->second));
     PetscCall(add_up(r, n, e->leaked));
     PetscCall(add_up(r, n, e->lost));
+    PetscCall(add_up(r, n, e->beyond));
     PetscCall(add_up(r, n * groups, e->reversed));
     if (e->clock) PetscCall(add_up(r, n * (size_t)r->model.samples, e->seen));
     if (e->cosine) PetscCall(ebb_cosine_finish(r, e));
@@ -366,7 +389,7 @@ PetscErrorCode ebb_relational_destroy(struct ebb_relational **relational)
     PetscCall(ebb_bins_destroy(&e->bins));
     PetscCall(ebb_representation_destroy(&e->clock));
     PetscCall(ebb_representation_destroy(&e->system));
-    PetscCall(PetscFree2(e->sum, e->rest_bin));
+    PetscCall(PetscFree3(e->sum, e->rest_bin, e->beyond));
     PetscCall(PetscFree(e->seen));
     PetscCall(PetscFree(e->kept));
     PetscCall(PetscFree7(e->first, e->second, e->leaked, e->lost, e->action, e->reversed, e->joint));

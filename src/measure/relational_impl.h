@@ -19,15 +19,16 @@ struct ebb_engine {
   double *system_value;      /* [system->size] of the moments */
   bool direct;               /* the clock's coefficients are the system's sites: nothing has to be transformed back */
   bool commuting;
-  bool binned;                          /* the accumulator was too large for sites */
-  PetscInt n, bin_count;                /* outcomes, bins */
-  double *sum;                          /* * [n][bins] of N */
-  double *first, *second;               /* * [n]: system value and its square */
-  double *seen;                         /* * [n][samples]: I_T(t) */
-  double *leaked, *lost;                /* * [n]: dwell off the lattice, dwell outside the system's bins */
-  double *action;                       /* [bins]: D_Q */
-  double action_lost;                   /* the same outside the bins */
-  double rest, norm;                    /* dwell outside the clock's bins; int ||psi||^2 */
+  bool binned;            /* the accumulator was too large for sites */
+  PetscInt n, bin_count;  /* outcomes, bins */
+  double *sum;            /* * [n][bins] of N */
+  double *first, *second; /* * [n]: system value and its square */
+  double *seen;           /* * [n][samples]: I_T(t) */
+  double *leaked, *lost;  /* * [n]: dwell off the lattice, dwell outside the system's bins */
+  double *beyond;     /* * [n]: about what the reading sends beyond the ring of sites, from the ring's outer parts */
+  double *action;     /* [bins]: D_Q */
+  double action_lost; /* the same outside the bins */
+  double rest, norm;  /* dwell outside the clock's bins; int ||psi||^2 */
   double *rest_bin, rest_lost;          /* [bins]: the part of D_Q that no outcome sees; the same outside the bins */
   double end_mean[2];                   /* mean system value at the window's ends */
   double *reversed;                     /* * [n][groups]: system first, then clock */

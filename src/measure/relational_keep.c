@@ -171,7 +171,7 @@ PetscErrorCode ebb_relational_move(struct ebb_relational *r, bool load, PetscInt
   for (size_t i = 0; i < r->n; i++) {
     struct ebb_engine *e = &r->engine[i];
     const size_t n = (size_t)e->n;
-    double *const lines[] = {e->first, e->second, e->leaked, e->lost};
+    double *const lines[] = {e->first, e->second, e->leaked, e->lost, e->beyond};
 
     PetscCall(move_shape(&w, r, e));
     for (size_t j = 0; j < sizeof lines / sizeof lines[0]; j++) PetscCall(move_part(&w, 1, n, lines[j]));

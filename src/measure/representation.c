@@ -14,7 +14,7 @@ extern void dstevr_(const char *jobz, const char *range, const int *n, double *d
                     const int *ldz, int *isuppz, double *work, const int *lwork, int *iwork, const int *liwork,
                     int *info);
 
-PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct ebb_space **space)
+PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, PetscInt parts, struct ebb_space **space)
 {
   const struct ebb_lattice *l = model->lattice;
   const PetscInt sites = ebb_lattice_size(l);
@@ -26,8 +26,8 @@ PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct
   s->model = model;
   s->sites = sites;
   s->padded = !l->rows.prescription->grid && !l->grading;
-  s->ring = s->padded ? 2 * sites : sites;
-  s->wrap = !s->padded || l->rows.half ? sites : 2 * sites - sites / 2;
+  s->ring = s->padded ? (2 * sites + parts - 1) / parts * parts : sites;
+  s->wrap = !s->padded || l->rows.half ? sites : s->ring - sites / 2;
   s->slices = PetscMax(model->circle.points, 1);
   PetscCall(PetscMalloc1(s->ring, &s->v));
   for (PetscInt r = 0; r < s->ring; r++)

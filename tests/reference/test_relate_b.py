@@ -163,6 +163,30 @@ def without_time(f):
         check(abs(mass.sum() / f["relational/cosine/dwell"][outcome] - 1) < 5e-5, f"bin {outcome}: and the same dwell")
 
 
+def lengths(folder):
+    """Sharp and cosine windows reach far in v, and see the clock's values one by one: error bars hold what a lattice without
+    an end would change. b on cells of the circle, sin^2 b by the operator's eigenvalues on the sites that there are."""
+    text = "window: {tolerance: 1}\nreadings:\n" \
+           "  - {name: sharp, clock: {observable: b, instrument: sharp, bins: 14}}\n" \
+           "  - {name: cosine, clock: {observable: b, instrument: cosine, bins: 14}}\n" \
+           "  - {name: sin2, clock: {observable: sin2_b, instrument: cosine, bins: 12}}\n"
+    found = []
+    for points in (512, 651, 1400):
+        name = f"length{points}"
+        with open(os.path.join(folder, name + ".yaml"), "w", encoding="utf-8") as f:
+            f.write(MODEL.format(window=0.3, samples=41, keep="[state]", more="").replace("points: 512", f"points: {points}"))
+        run("evolve", os.path.join(folder, name + ".yaml"), "-o", os.path.join(folder, name + ".h5"))
+        path, _ = relate(folder, os.path.join(folder, name + ".h5"), text, name + "_r", 1)
+        with h5py.File(path) as f:
+            found.append({k: (f[f"relational/{k}/median"][()], f[f"relational/{k}/median_error"][()]) for k in f["relational"]})
+    for few in found[:2]:
+        for name, (median, error) in few.items():
+            other, error_other = found[2][name]
+            good = np.isfinite(median) & np.isfinite(other)
+            pull = (np.abs(median - other) / (error + error_other))[good]
+            check(good.sum() >= 10 and pull.max() < 1.0, f"{name}: a longer lattice moves medians by {pull.max():.2f} of their errors")
+
+
 with tempfile.TemporaryDirectory() as folder:
     result = make(folder, "run")
     path, _ = relate(folder, result, READINGS, "stored", 1)
@@ -179,4 +203,5 @@ with tempfile.TemporaryDirectory() as folder:
     orientation(folder, result)
     twirl(folder, result)
     truncated(folder)
+    lengths(folder)
 finish()

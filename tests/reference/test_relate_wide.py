@@ -52,6 +52,10 @@ def refused(folder):
         done = run("relate", result, relate_support.write(folder, "no.yaml", text), "-o", os.path.join(folder, "no.h5"), expect=2)
         for word in words:
             check(word in done.stderr, f"refused with '{word}'")
+    # layout auto would take every site, ten million of them
+    wide = relate_support.evolve(folder, "wide", MODEL.replace("relative_spread: 0.085", "relative_spread: 0.02").replace("lattice: {volume_max: 120000}\n", ""))
+    done = run("relate", wide, relate_support.write(folder, "no.yaml", NOT_LOCAL), "-o", os.path.join(folder, "no.h5"), expect=2)
+    check("sites would be held" in done.stderr and "cosine_power" in done.stderr, f"a lattice that nobody asked for is refused: {done.stderr}")
 
 
 with tempfile.TemporaryDirectory() as scratch:

@@ -173,6 +173,7 @@ def main():
                 sys.exit(0)
             os.environ["SLURM_CONF"] = started.stdout.strip().split("=")[1]
             os.environ["EBBTURN"] = os.path.abspath(PROGRAM)
+            os.environ["SCRIPTS"] = os.path.abspath(CLUSTER)  # jobs are not submitted from the top of the sources
             whole, folder = os.path.join(top, "whole"), os.path.join(top, "queue")
             prepare(whole)
             prepare(folder)

@@ -53,7 +53,7 @@ Test(relational, representations_are_unitary, .init = ebb_test_slepc_begin, .fin
 
   ebb_test_model_create(&m, "%s", universe);
   model = model_of(&m, 2, t);
-  ebb_test_call(ebb_space_create(&model, &space));
+  ebb_test_call(ebb_space_create(&model, 1, &space));
   for (size_t k = 0; k < ebb_reading_kinds(); k++) {
     const struct ebb_reading *kind = ebb_reading_kind_at(k);
     struct ebb_observable_settings what = {.function = EBB_FUNCTION_NONE};
@@ -99,7 +99,7 @@ Test(relational, density_is_bounded, .init = ebb_test_slepc_begin, .fini = ebb_t
 
   ebb_test_model_create(&m, "%s", universe);
   model = model_of(&m, 2, t);
-  ebb_test_call(ebb_space_create(&model, &space));
+  ebb_test_call(ebb_space_create(&model, 1, &space));
   ebb_test_call(ebb_representation_create(space, &one, false, &density, problem, sizeof problem));
   ebb_test_call(ebb_representation_create(space, &two, false, &sandwich, problem, sizeof problem));
   for (PetscInt j = 0; j < 512; j++) {

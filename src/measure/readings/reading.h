@@ -17,7 +17,8 @@ struct ebb_space {
   bool padded;
   double *v; /* [ring], signed */
 };
-PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, struct ebb_space **space);
+/* parts: the circle of b is divided into a multiple of so many cells. */
+PetscErrorCode ebb_space_create(const struct ebb_relational_model *model, PetscInt parts, struct ebb_space **space);
 PetscErrorCode ebb_space_destroy(struct ebb_space **space);
 /* Position on the integer line: site r (or the negative one it stands for) plus one, n of v = 4n at sector 4. */
 static inline PetscInt ebb_space_n(const struct ebb_space *space, PetscInt r)
