@@ -7,7 +7,7 @@ from common import check, h5py, os, run, tempfile
 
 INPUTS = os.path.join(os.path.dirname(__file__), "..", "..", "inputs")
 SLOW = ("closed_connection.yaml", "first_bounce.yaml", "open_universe.yaml", "polymer_scale.yaml", "polymer_scale_closed.yaml",
-        "polymer_scale_lambda.yaml")  # seconds each, or run by test_sweep_physics.py as well
+        "polymer_scale_lambda.yaml")  # seconds each, or run by test_sweep_physics_slow.py as well
 ELSEWHERE = ("wide_clock.yaml", "wide_readings.yaml")  # in test_relate_wide_slow.py
 PLANNED = ("survey.yaml", "thousand_cases.yaml")  # minutes: read, planned and left alone
 
