@@ -94,6 +94,32 @@ def writes_now(folder):
     return any(n.endswith(".part") and "checkpoint" in n for n in os.listdir(folder))
 
 
+def status(number):
+    """State and parent of a process, from the table of processes; None where there is none."""
+    try:
+        with open(f"/proc/{number}/stat", encoding="utf-8") as f:
+            fields = f.read().rsplit(")", 1)[1].split()
+        return fields[0], int(fields[1])
+    except (OSError, ValueError):
+        return None
+
+
+def kill_all(process):
+    """SIGKILL to a run and its ranks, which mpiexec gives groups of their own; returns when all of them are gone."""
+    parents = {int(n): status(n) for n in os.listdir("/proc") if n.isdigit()}
+    family = [process.pid]
+    for number in family:
+        family += [child for child, known in parents.items() if known and known[1] == number]
+    for number in family:
+        try:
+            os.kill(number, signal.SIGKILL)
+        except ProcessLookupError:
+            pass
+    deadline = time.monotonic() + 10.0
+    while any((status(n) or "Z")[0] != "Z" for n in family) and time.monotonic() < deadline:
+        time.sleep(0.002)
+
+
 def wait_for_write(process, folder, deadline):
     """Holds the run in the middle of a checkpoint; false where it was not found there in time."""
     while time.monotonic() < deadline and process.poll() is None:
@@ -120,7 +146,7 @@ def kill_and_resume(folder, rng, length, ranks=0, writing=False, most=6, job=EVO
             except subprocess.TimeoutExpired:
                 pass
         if attempt < 4 and process.poll() is None:
-            os.killpg(process.pid, signal.SIGKILL)
+            kill_all(process)
             kills += 1
             in_write += writes_now(folder)
         code, out, err = end(process)
