@@ -14,7 +14,7 @@ from checkpoints_relate import READINGS, RELATE, universe
 from checkpoints_relate import prepare as prepare_readings
 from common import MPIEXEC, PROGRAM, check, finish
 
-PROMPT = 15.0  # seconds; a job that hangs would stay for ever
+PROMPT = 30.0  # seconds; a job that hangs would stay for ever
 SETUP = """gravity: {prescription: slqc, curvature: closed}
 clock: {kind: scalar, from: -0.1, to: 0.1, samples: 11}
 state: {profile: gaussian_volume, v0: 6000, spread: 120, b0: 1.2}
