@@ -81,7 +81,9 @@ static double weight_beyond(const struct ebb_lattice *lattice, const struct ebb_
                             enum ebb_sum last, enum ebb_sum inner, double all)
 {
   static const double GOOD_PART = 0.1, MORE_THAN_NOISE = 1e-3;
-  const double norm = sheet->sum[EBB_SUM_NORM][s], charged = beyond(sheet->sum[last][s], sheet->sum[inner][s]);
+  static const double AT_THE_FLOOR = 2.0; /* of the extrapolation: noise in the windows that it is made from */
+  const double norm = sheet->sum[EBB_SUM_NORM][s];
+  const double charged = (lattice->grading ? AT_THE_FLOOR : 1.0) * beyond(sheet->sum[last][s], sheet->sum[inner][s]);
 
   if (sheet->sum[last][s] * (1.0 + SLOW) < sheet->sum[inner][s] * SLOW) return charged;
   /* a graded lattice reaches as far as the state is known: there more than the noise, and hardly falling, has no bound

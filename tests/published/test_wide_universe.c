@@ -87,6 +87,34 @@ Test(wide, dispersions_beyond_the_widest_published_are_known)
   }
 }
 
+/* Where the weighted tail meets the rounding floor of the waves, the error of the mean is large and holds (closed form
+ * as above) */
+Test(wide, a_tail_cut_at_the_rounding_floor_is_charged)
+{
+  static const double sigma[] = {0.3440794, 0.36, 0.38};
+  const double p = 50.20408163265306;
+  struct ebb_test_model model;
+
+  for (size_t i = 0; i < sizeof sigma / sizeof *sigma; i++) {
+    ebb_test_model_create(&model,
+                          "{clock: {from: -0.1, to: 0.1, samples: 5}, output: {keep: [moments]}, state: {\n"
+                          "profile: gaussian_momentum, momentum: %.17g, relative_spread: %.17g}}",
+                          p, sigma[i] / p);
+    ebb_test_model_conclude(&model);
+    const double kappa = model.run.constants.kappa;
+    const struct ebb_test_law law = ebb_test_law_gaussian_momentum(p / kappa, sigma[i] / kappa, 0.0, 0.0);
+
+    for (PetscInt s = 0; s < model.record.m; s++) {
+      const double v = (double)ebb_test_law_v(&law, model.run.phi[s]);
+      const double off = fabs(model.record.moment[EBB_MOMENT_V_MEAN][s] - v);
+
+      cr_expect_leq(off, model.record.error[EBB_MOMENT_V_MEAN][s], "sigma %g: %g of %g", sigma[i], off / v,
+                    model.record.error[EBB_MOMENT_V_MEAN][s] / v);
+    }
+    ebb_test_model_destroy(&model);
+  }
+}
+
 /* Where the full lattice is affordable both say the same of everything */
 Test(wide, a_graded_lattice_says_what_the_full_one_does)
 {
