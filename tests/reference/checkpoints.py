@@ -3,6 +3,7 @@
 import collections
 import os
 import resource
+import shutil
 import signal
 import subprocess
 import time
@@ -157,6 +158,21 @@ def kill_and_resume(folder, rng, length, ranks=0, writing=False, most=6, job=EVO
             break
     check(False, "the run did not end")
     return kills, in_write
+
+
+def many_kills(top, rng, runs, least, make, job=EVOLVE):
+    """Runs that are killed again and again until there were `least` kills: make(i, folder name) gives a fresh folder, the number
+    of ranks, how long a whole run takes and its result."""
+    kills = writes = 0
+    for i in range(runs):
+        folder, ranks, length, reference = make(i, os.path.join(top, f"killed{i}"))
+        more, in_write = kill_and_resume(folder, rng, length, ranks=ranks, writing=i % 3 == 0, job=job)
+        kills, writes = kills + more, writes + in_write
+        same(os.path.join(folder, "out.h5"), reference, f"run {i}, {max(ranks, 1)} ranks, {more} kills")
+        shutil.rmtree(folder)
+        if kills >= least:
+            break
+    check(kills >= least and writes > 0, f"{kills} kills, {writes} while a checkpoint was being written")
 
 
 def limit_files(process, size):

@@ -3,11 +3,10 @@
 """Twenty kills (SIGKILL) of `relate` at random moments and in the middle of checkpoints, on one and two ranks; what was resumed
 ends with the bytes of what was not interrupted. A chain of jobs with a time limit; another result under the same name. Program: $EBBTURN. Tolerance: none."""
 import os
-import shutil
 import tempfile
 
 import numpy as np
-from checkpoints import arguments, end, kill_and_resume, same, start, whole_run
+from checkpoints import arguments, end, many_kills, same, start, whole_run
 from checkpoints_relate import RELATE, prepare, resume, stop, universe
 from common import check, finish
 
@@ -39,7 +38,6 @@ def time_limit(top, result, reference, length):
 
 def main():
     rng = np.random.default_rng(13)
-    kills = writes = 0
     with tempfile.TemporaryDirectory() as top:
         result = universe(top)
         whole = {}
@@ -48,17 +46,7 @@ def main():
             whole[ranks] = (whole_run(folder, ranks, RELATE), os.path.join(folder, "out.h5"))
         another_result(top, result)
         time_limit(top, result, whole[0][1], whole[0][0])
-        for i in range(RUNS):
-            ranks = (0, 2)[i % 2]
-            length, reference = whole[ranks]
-            folder = prepare(os.path.join(top, f"killed{i}"), result)
-            more, in_write = kill_and_resume(folder, rng, length, ranks=ranks, writing=i % 3 == 0, job=RELATE)
-            kills, writes = kills + more, writes + in_write
-            same(os.path.join(folder, "out.h5"), reference, f"run {i}, {max(ranks, 1)} ranks, {more} kills")
-            shutil.rmtree(folder)
-            if kills >= KILLS:
-                break
-        check(kills >= KILLS and writes > 0, f"{kills} kills, {writes} while a checkpoint was being written")
+        many_kills(top, rng, RUNS, KILLS, lambda i, name: (prepare(name, result), (0, 2)[i % 2], *whole[(0, 2)[i % 2]]), RELATE)
     finish()
 
 

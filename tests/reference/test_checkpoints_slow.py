@@ -5,12 +5,11 @@ from its checkpoint. One hundred kills (SIGKILL) at random moments, on one and t
 that was resumed ends with the bytes of one that was not interrupted. Program: $EBBTURN. Tolerance: none."""
 import os
 import resource
-import shutil
 import tempfile
 import time
 
 import numpy as np
-from checkpoints import MODES, STEPS, checkpoints, end, kill_and_resume, prepare, same, start, whole_run
+from checkpoints import MODES, STEPS, checkpoints, end, many_kills, prepare, same, start, whole_run
 from common import check, finish
 
 KILLS = 100
@@ -41,23 +40,18 @@ def no_room(top, reference):
 
 def main():
     rng = np.random.default_rng(7)
-    kills = writes = 0
     with tempfile.TemporaryDirectory() as top:
         kinds = []
         for name, values, ranks in (("modes", MODES, 0), ("steps", STEPS, 0), ("two", MODES, 2)):
             folder = prepare(os.path.join(top, name), **values)
             kinds.append((values, ranks, whole_run(folder, ranks), os.path.join(folder, "out.h5")))
         no_room(top, kinds[0][3])
-        for i in range(RUNS):
-            values, ranks, length, reference = kinds[(0, 1, 0, 2)[i % 4]]
-            folder = prepare(os.path.join(top, f"killed{i}"), **values)
-            more, in_write = kill_and_resume(folder, rng, length, ranks=ranks, writing=i % 3 == 0)
-            kills, writes = kills + more, writes + in_write
-            same(os.path.join(folder, "out.h5"), reference, f"run {i}, {max(ranks, 1)} ranks, {more} kills")
-            shutil.rmtree(folder)
-            if kills >= KILLS:
-                break
-        check(kills >= KILLS and writes > 0, f"{kills} kills, {writes} while a checkpoint was being written")
+
+        def fresh(i, name):
+            values, *known = kinds[(0, 1, 0, 2)[i % 4]]
+            return prepare(name, **values), *known
+
+        many_kills(top, rng, RUNS, KILLS, fresh)
     finish()
 
 
