@@ -9,10 +9,6 @@
 
 #include <petscsys.h>
 
-/* Global index i ascending in v. Arm 0 (right): v = sector + step n, n = 0..sites[0]-1, global index sites[1] + n.
- * Arm 1 (left; empty on half lattices): v = -(step - sector) - step n, global index sites[1] - 1 - n.
- * On both arms |v| = first + step n and the operator reads alike in |v|; the crossing link joins the two first sites.
- */
 /* Rows of a graded lattice, alike on both arms: sites 0..plain-1 one by one, the sites beyond them in blocks, each
  * represented by the nodes of a rule that sums any polynomial of degree < 2 nodes in v over the block's sites exactly.
  * A row's weight is the number of sites it stands for. Made by ebb_grading_make. */
@@ -28,6 +24,10 @@ struct ebb_grading {
   double *place, *weight;          /* [rows - plain]: n in v = first + step n, a real number; weight */
 };
 
+/* Global index i ascending in v. Arm 0 (right): v = sector + step n, n = 0..sites[0]-1, global index sites[1] + n.
+ * Arm 1 (left; empty on half lattices): v = -(step - sector) - step n, global index sites[1] - 1 - n.
+ * On both arms |v| = first + step n and the operator reads alike in |v|; the crossing link joins the two first sites.
+ */
 struct ebb_lattice {
   struct ebb_rows rows; /* the model: prescription, sector, step between neighbours in v, half (one arm); on a grid in
                          * ln v only prescription and constants count */
